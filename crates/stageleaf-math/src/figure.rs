@@ -1,0 +1,125 @@
+//! The figures that a stage is judged by: stable ids, the same in limits, prose, JSON and code.
+
+use crate::dimension::Dimension;
+
+macro_rules! figures {
+    ($($name:ident $id:literal $dimension:ident $argument:ident $group:ident $title:literal, $meaning:literal;)*) => {
+        /// A figure of a stage.
+        #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash)]
+        pub enum Figure { $(#[doc = $meaning] $name,)* }
+
+        impl Figure {
+            /// Every figure, in the order in which reports list them.
+            pub const ALL: &'static [Self] = &[$(Self::$name,)*];
+
+            /// The stable id: in limits, prose, JSON.
+            #[must_use]
+            pub const fn id(self) -> &'static str { match self { $(Self::$name => $id,)* } }
+
+            /// What the number measures.
+            #[must_use]
+            pub const fn dimension(self) -> Dimension { match self { $(Self::$name => Dimension::$dimension,)* } }
+
+            /// What must be stated beside the id.
+            #[must_use]
+            pub const fn argument(self) -> Argument { match self { $(Self::$name => Argument::$argument,)* } }
+
+            /// The group under which reports list it.
+            #[must_use]
+            pub const fn group(self) -> Group { match self { $(Self::$name => Group::$group,)* } }
+
+            /// A short title, as an engineer would head a column.
+            #[must_use]
+            pub const fn title(self) -> &'static str { match self { $(Self::$name => $title,)* } }
+
+            /// The meaning in one sentence.
+            #[must_use]
+            pub const fn meaning(self) -> &'static str { match self { $(Self::$name => $meaning,)* } }
+        }
+    };
+}
+
+/// What stands beside a figure's id.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Argument {
+    /// Nothing: `bandwidth`.
+    None,
+    /// A frequency: `gain_at 20 kHz`.
+    Frequency,
+}
+
+/// Groups of figures, as reports list them.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+pub enum Group {
+    /// Linear response and loop.
+    SmallSignal,
+    /// Offsets and drifts.
+    Dc,
+    /// Densities, totals, ratios.
+    Noise,
+    /// Swing, range, current, slew.
+    LargeSignal,
+    /// Supply current, dissipation, temperature.
+    Power,
+}
+
+figures! {
+    Gain "gain" Gain None SmallSignal "Gain", "Signed transfer from the signal source to the load at the kind's pass-band reference (DC for DC-coupled kinds).";
+    GainError "gain_error" Fraction None SmallSignal "Gain error", "Relative difference of `gain` from the ideal closed form with the nominal components.";
+    GainAtSignal "gain_at_signal" Gain None SmallSignal "Gain at the signal frequency", "Magnitude of the transfer at the signal's highest frequency, with the sign of `gain`.";
+    GainAt "gain_at" Gain Frequency SmallSignal "Gain at", "Magnitude of the transfer at a stated frequency.";
+    PhaseAt "phase_at" Angle Frequency SmallSignal "Phase at", "Phase of the output against the source at a stated frequency, between −π and π.";
+    Bandwidth "bandwidth" Frequency None SmallSignal "Bandwidth (−3 dB)", "Lowest frequency at which the transfer has fallen to 1/√2 of `gain`.";
+    Peaking "peaking" Level None SmallSignal "Peaking", "Largest magnitude of the transfer over frequency, relative to `gain`.";
+    Crossover "crossover" Frequency None SmallSignal "Loop crossover", "Frequency at which the return ratio's magnitude is one; of several, the one with the least phase margin.";
+    PhaseMargin "phase_margin" Angle None SmallSignal "Phase margin", "Angle between the return ratio at crossover and −180°; of several crossings the least.";
+    GainMargin "gain_margin" Level None SmallSignal "Gain margin", "Factor by which the return ratio may grow before it reaches −1; least over all −180° crossings.";
+    SensitivityPeak "sensitivity_peak" Number None SmallSignal "Sensitivity peak", "Largest |1/(1+T)| over frequency: the reciprocal of the return ratio's distance from −1.";
+    NaturalFrequency "natural_frequency" Frequency None SmallSignal "Natural frequency", "Magnitude of the least damped complex pole pair.";
+    Q "q" Number None SmallSignal "Q", "Quality factor of the least damped complex pole pair.";
+    InputImpedance "input_impedance" Resistance None SmallSignal "Input impedance", "Magnitude of the impedance that the source sees behind its own impedance, at the signal frequency or at DC where none is stated.";
+    OutputImpedance "output_impedance" Resistance None SmallSignal "Output impedance", "Magnitude of the impedance at the output terminal with the load removed, at the signal frequency or at DC where none is stated.";
+    OutputOffset "output_offset" Voltage None Dc "Output offset", "Worst-case sum of the DC errors at the output with the signal at its DC value.";
+    InputOffset "input_offset" Voltage None Dc "Offset referred to the input", "`output_offset` divided by |gain|.";
+    OffsetDrift "offset_drift" VoltageDrift None Dc "Output offset drift", "Drift of the output offset with temperature.";
+    GainDrift "gain_drift" FractionDrift None Dc "Gain drift", "Largest relative change of gain per kelvin from the components' temperature coefficients.";
+    OutputNoise "output_noise" Voltage None Noise "Output noise", "Rms noise at the output integrated over the stated band.";
+    InputNoise "input_noise" Voltage None Noise "Noise referred to the input", "`output_noise` divided by |gain|.";
+    OutputNoisePeakToPeak "output_noise_peak_to_peak" Voltage None Noise "Output noise, peak to peak", "6.6 × `output_noise`: exceeded 0.1 % of the time by Gaussian noise.";
+    NoiseDensityAt "noise_density_at" VoltageDensity Frequency Noise "Output noise density at", "One-sided noise density at the output at a stated frequency.";
+    NoiseBandwidth "noise_bandwidth" Frequency None Noise "Noise bandwidth", "Width of the rectangle of height |gain|² with the transfer's area over all frequencies.";
+    Snr "snr" Level None Noise "Signal to noise", "Rms of the signal at the output over `output_noise`.";
+    SnrBits "snr_bits" Bits None Noise "Signal to noise in bits", "(SNR in dB − 1.76)/6.02, with exact constants.";
+    ClipMargin "clip_margin" Voltage None LargeSignal "Clip margin", "Room between the output pin's extreme and the limit set by rail and headroom at that output current.";
+    InputRangeMargin "input_range_margin" Voltage None LargeSignal "Input range margin", "Room between both inputs' extremes and the input range.";
+    CurrentMargin "current_margin" Current None LargeSignal "Output current margin", "Current limit less the peak output current.";
+    SlewMargin "slew_margin" Number None LargeSignal "Slew margin", "Slew available over slew needed.";
+    FullPowerBandwidth "full_power_bandwidth" Frequency None LargeSignal "Full-power bandwidth", "Highest frequency at which the stated output amplitude stays within slew, current and rails.";
+    SupplyCurrent "supply_current" Current None Power "Supply current", "Quiescent current plus the mean of what the load draws from the positive supply.";
+    Dissipation "dissipation" Power None Power "Dissipation", "Power turned to heat in the amplifier's package, at the worst amplitude up to the stated signal.";
+    JunctionTemperature "junction_temperature" Temperature None Power "Junction temperature", "Ambient plus dissipation times the thermal resistance.";
+    ResistorDissipation "resistor_dissipation" Power None Power "Resistor dissipation", "Largest power in any one resistor of the stage.";
+}
+
+/// A figure with its argument, as a limit or a prose quote names it.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Query {
+    /// The figure.
+    pub figure: Figure,
+    /// Its frequency in Hz, for figures whose [`Figure::argument`] is [`Argument::Frequency`].
+    pub at: Option<f64>,
+}
+
+impl Query {
+    /// A figure without an argument.
+    #[must_use]
+    pub const fn of(figure: Figure) -> Self {
+        Self { figure, at: None }
+    }
+
+    /// A figure at a frequency in Hz.
+    #[must_use]
+    pub const fn at(figure: Figure, hertz: f64) -> Self {
+        Self { figure, at: Some(hertz) }
+    }
+}

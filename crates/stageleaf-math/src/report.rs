@@ -1,0 +1,356 @@
+//! What the engine found about a stage: figures, verdicts, curves, budgets, working. Numbers only; text is made elsewhere.
+
+use alloc::{string::String, vec::Vec};
+
+use crate::{
+    figure::Query,
+    limit::{Basis, Limit, Verdict},
+    part::PartFigure,
+};
+
+/// Something that a figure needs and that was not stated.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+pub enum Need {
+    /// A scalar figure of the part.
+    Part(PartFigure),
+    /// The part's higher poles (`gain.poles`, an empty list is a statement) or its phase margin with conditions.
+    Poles,
+    /// The part's headroom towards the positive rail at this output current.
+    HeadroomHigh,
+    /// The part's headroom towards the negative rail at this output current.
+    HeadroomLow,
+    /// The stage's `[supply]`.
+    Supply,
+    /// The stage's `[signal]`.
+    Signal,
+    /// The stage's `[signal] frequency`.
+    SignalFrequency,
+    /// The stage's `[ambient]`.
+    Ambient,
+    /// The stage's `[band]`.
+    Band,
+}
+
+impl Need {
+    /// The key that must be stated: `table.key`, of the part file or of the stage block.
+    #[must_use]
+    pub const fn key(self) -> &'static str {
+        match self {
+            Self::Part(figure) => figure.id(),
+            Self::Poles => "gain.poles",
+            Self::HeadroomHigh => "output.headroom_high",
+            Self::HeadroomLow => "output.headroom_low",
+            Self::Supply => "supply",
+            Self::Signal => "signal",
+            Self::SignalFrequency => "signal.frequency",
+            Self::Ambient => "ambient",
+            Self::Band => "band",
+        }
+    }
+
+    /// Whether the part file, rather than the stage block, has to state it.
+    #[must_use]
+    pub const fn is_of_part(self) -> bool {
+        matches!(self, Self::Part(_) | Self::Poles | Self::HeadroomHigh | Self::HeadroomLow)
+    }
+}
+
+/// A figure's value, or why there is none.
+#[derive(Clone, Debug, PartialEq)]
+pub enum Outcome {
+    /// The value in SI units. Infinite where a bound is never reached (a gain margin without a −180° crossing).
+    Value(f64),
+    /// Data are missing.
+    Undetermined(Vec<Need>),
+    /// The figure means nothing here; why.
+    DoesNotApply(&'static str),
+    /// A pole lies in the right half plane: the stage oscillates, and the figure has no meaning.
+    Oscillates,
+    /// No DC path: the operating point does not exist.
+    NoDcPath,
+}
+
+impl Outcome {
+    /// The value, if there is one.
+    #[must_use]
+    pub const fn value(&self) -> Option<f64> {
+        match self {
+            Self::Value(v) => Some(*v),
+            _ => None,
+        }
+    }
+}
+
+/// What can vary from build to build.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+pub enum Parameter {
+    /// A component, by its name.
+    Component(&'static str),
+    /// Source resistance or capacitance.
+    SourceImpedance,
+    /// Load resistance.
+    LoadResistance,
+    /// Load capacitance.
+    LoadCapacitance,
+    /// Stray at the inverting input.
+    StrayInverting,
+    /// Stray at the non-inverting input.
+    StrayNonInverting,
+    /// Stray across the feedback.
+    StrayFeedback,
+    /// Positive supply.
+    SupplyPositive,
+    /// Negative supply.
+    SupplyNegative,
+    /// Ambient temperature.
+    Temperature,
+    /// A figure of the part.
+    Part(PartFigure),
+    /// Headroom tables between typical and guaranteed (0: typical, 1: guaranteed).
+    Headroom,
+}
+
+/// One coordinate of a corner.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Coordinate {
+    /// What varies.
+    pub parameter: Parameter,
+    /// Its value there, SI.
+    pub value: f64,
+    /// Its nominal value, SI.
+    pub nominal: f64,
+}
+
+/// A figure over the spread.
+#[derive(Clone, Debug, PartialEq)]
+pub struct FigureRow {
+    /// The figure.
+    pub query: Query,
+    /// At nominal values.
+    pub nominal: Outcome,
+    /// Least and greatest over the spread, where both are values.
+    pub range: Option<(f64, f64)>,
+    /// What it rests on.
+    pub basis: Option<Basis>,
+}
+
+/// A limit with its verdict.
+#[derive(Clone, Debug, PartialEq)]
+pub struct LimitRow {
+    /// The limit.
+    pub limit: Limit,
+    /// The figure at nominal values.
+    pub nominal: Outcome,
+    /// Least and greatest over the spread, where both are values.
+    pub range: Option<(f64, f64)>,
+    /// The figure at the worst case for this limit (a value, or what it became there: oscillates).
+    pub worst: Outcome,
+    /// Distance from the limit at the worst case; negative when it breaks. In the figure's unit.
+    pub margin: Option<f64>,
+    /// The judgement.
+    pub verdict: Verdict,
+    /// What it rests on.
+    pub basis: Option<Basis>,
+    /// The corner: only coordinates that differ from nominal and matter.
+    pub corner: Vec<Coordinate>,
+    /// The parameter that uses most of the margin.
+    pub dominant: Option<Parameter>,
+}
+
+/// The transfer from source to load.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct ResponsePoint {
+    /// Hz.
+    pub frequency: f64,
+    /// |H|, V/V.
+    pub magnitude: f64,
+    /// Unwrapped phase in rad.
+    pub phase: f64,
+}
+
+/// A point of the output envelope: the largest clean output against frequency, peak V at the load, by what bounds it.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct EnvelopePoint {
+    /// Hz.
+    pub frequency: f64,
+    /// Bound by rails and headroom.
+    pub rails: Option<f64>,
+    /// Bound by output current.
+    pub current: Option<f64>,
+    /// Bound by slew rate.
+    pub slew: Option<f64>,
+}
+
+/// A source of noise.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+pub enum NoiseOrigin {
+    /// Thermal noise of a component.
+    Component(&'static str),
+    /// Thermal noise of the source resistance.
+    SourceResistance,
+    /// Thermal noise of the load resistance.
+    LoadResistance,
+    /// The amplifier's voltage noise.
+    AmplifierVoltage,
+    /// Current noise at the non-inverting input.
+    CurrentNonInverting,
+    /// Current noise at the inverting input.
+    CurrentInverting,
+}
+
+/// A noise source's part in the total.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct NoiseShare {
+    /// The source.
+    pub origin: NoiseOrigin,
+    /// Its rms contribution at the output over the band, V.
+    pub rms: f64,
+    /// Its share of the total power, 0 to 1.
+    pub share: f64,
+}
+
+/// Noise density at the output.
+#[derive(Clone, Debug, PartialEq)]
+pub struct DensityPoint {
+    /// Hz.
+    pub frequency: f64,
+    /// Total, V/√Hz.
+    pub total: f64,
+    /// By source, in the order of [`Report::noise_shares`] (empty where that is empty), V/√Hz.
+    pub by_source: Vec<f64>,
+}
+
+/// A cause of DC error.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+pub enum DcCause {
+    /// Input offset voltage.
+    Offset,
+    /// Offset drift over the distance of the temperature from the ambient's nominal.
+    OffsetDrift,
+    /// Bias current through the impedances at the inputs.
+    BiasCurrent,
+    /// Difference of the two bias currents.
+    OffsetCurrent,
+    /// Common-mode voltage over the rejection.
+    CommonMode,
+    /// Supply deviation over the rejection, positive rail.
+    SupplyPositive,
+    /// Supply deviation over the rejection, negative rail.
+    SupplyNegative,
+}
+
+/// A line of the DC error budget.
+#[derive(Clone, Debug, PartialEq)]
+pub struct DcLine {
+    /// The cause.
+    pub cause: DcCause,
+    /// Magnitude at the output, V, at nominal part figures, or what it needs.
+    pub nominal: Outcome,
+    /// At guaranteed part figures and the worst temperature and supply.
+    pub worst: Outcome,
+}
+
+/// A closed form beside the exact value.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Working {
+    /// The figure.
+    pub query: Query,
+    /// The handbook's formula in the field's notation.
+    pub formula: &'static str,
+    /// The symbols of the formula with their values, SI, in the order in which they occur.
+    pub numbers: Vec<(&'static str, f64, crate::dimension::Dimension)>,
+    /// What the formula gives.
+    pub handbook: f64,
+    /// What the network gives.
+    pub exact: Outcome,
+    /// Where the formula comes from.
+    pub source: &'static str,
+    /// Why the two differ.
+    pub difference: &'static str,
+}
+
+/// A root of the closed loop's characteristic polynomial or of its numerator.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Root {
+    /// Real part, rad/s.
+    pub re: f64,
+    /// Imaginary part, rad/s.
+    pub im: f64,
+}
+
+/// Something to be careful about.
+#[derive(Clone, Debug, PartialEq)]
+pub enum Caution {
+    /// Noise gain at crossover below the part's least stable gain.
+    BelowStableGain {
+        /// Noise gain there.
+        noise_gain: f64,
+        /// What the part asks.
+        needed: f64,
+    },
+    /// Supply span outside the part's.
+    SupplySpan {
+        /// Greatest (or least) span of the stage, V.
+        span: f64,
+        /// The part's bound, V.
+        allowed: f64,
+    },
+    /// Junction hotter than the part allows at the worst case.
+    JunctionHot {
+        /// Junction temperature, K.
+        junction: f64,
+        /// Allowed, K.
+        allowed: f64,
+    },
+    /// A resistor beyond its stated rating.
+    ResistorHot {
+        /// Which.
+        component: &'static str,
+        /// Its dissipation, W.
+        power: f64,
+        /// Its rating, W.
+        rating: f64,
+    },
+    /// Supply span above the extra-low-voltage range.
+    HighVoltage {
+        /// Greatest span, V.
+        span: f64,
+    },
+    /// The part reverses phase when an input leaves its range.
+    PhaseReversal,
+    /// A part figure that was not stated and was taken as ideal in the small-signal figures.
+    TakenAsIdeal(PartFigure),
+    /// Both supplies the wrong way round or equal.
+    SupplyReversed,
+}
+
+/// Everything about a stage.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Report {
+    /// The stage's name.
+    pub name: String,
+    /// Figures without an argument, and those with one that limits name, in the order of [`crate::figure::Figure::ALL`].
+    pub figures: Vec<FigureRow>,
+    /// Limits, in the note's order.
+    pub limits: Vec<LimitRow>,
+    /// Transfer from source to load.
+    pub response: Vec<ResponsePoint>,
+    /// Return ratio.
+    pub loop_gain: Vec<ResponsePoint>,
+    /// Noise density at the output.
+    pub density: Vec<DensityPoint>,
+    /// Shares of the integrated noise.
+    pub noise_shares: Vec<NoiseShare>,
+    /// The DC error budget.
+    pub dc_budget: Vec<DcLine>,
+    /// Largest clean output.
+    pub envelope: Vec<EnvelopePoint>,
+    /// Closed-loop poles.
+    pub poles: Vec<Root>,
+    /// Zeros of the transfer.
+    pub zeros: Vec<Root>,
+    /// Closed forms beside exact values.
+    pub working: Vec<Working>,
+    /// What to be careful about.
+    pub cautions: Vec<Caution>,
+}

@@ -1,0 +1,178 @@
+//! A stage as a note states it: kind, component values, surroundings, signal, limits. SI units throughout.
+
+use alloc::{string::String, vec::Vec};
+
+use crate::{kind::Kind, limit::Limit, part::Part};
+
+/// A value with its tolerance and temperature coefficient.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Toleranced {
+    /// Nominal value.
+    pub nominal: f64,
+    /// Tolerance downwards, as a positive fraction of the nominal.
+    pub minus: f64,
+    /// Tolerance upwards, as a positive fraction of the nominal.
+    pub plus: f64,
+    /// Temperature coefficient, magnitude, 1/K; its sign is taken as unknown.
+    pub drift: f64,
+    /// Power rating in W, where stated.
+    pub rating: Option<f64>,
+}
+
+impl Toleranced {
+    /// A value without tolerance or drift.
+    #[must_use]
+    pub const fn exact(nominal: f64) -> Self {
+        Self { nominal, minus: 0.0, plus: 0.0, drift: 0.0, rating: None }
+    }
+}
+
+/// A component by its reference designator.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Component {
+    /// One of the kind's component names (see [`Kind::components`]).
+    pub name: &'static str,
+    /// Its value.
+    pub value: Toleranced,
+}
+
+/// A quantity that varies between two ends.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Span {
+    /// Lower end.
+    pub low: f64,
+    /// Nominal value.
+    pub nominal: f64,
+    /// Upper end.
+    pub high: f64,
+}
+
+impl Span {
+    /// A quantity that does not vary.
+    #[must_use]
+    pub const fn exact(nominal: f64) -> Self {
+        Self { low: nominal, nominal, high: nominal }
+    }
+}
+
+/// Supply voltages against the stage's ground, in V.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Supply {
+    /// Positive rail.
+    pub positive: Span,
+    /// Negative rail; 0 V for a single supply.
+    pub negative: Span,
+}
+
+/// What drives the stage.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Source {
+    /// A voltage behind a resistance (zero allowed).
+    Resistive {
+        /// Source resistance in Ω.
+        resistance: Toleranced,
+    },
+    /// A voltage behind a capacitance.
+    Capacitive {
+        /// Source capacitance in F.
+        capacitance: Toleranced,
+    },
+}
+
+/// The signal at the source.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Signal {
+    /// Peak amplitude of the alternating part, V.
+    pub peak: f64,
+    /// Highest frequency at full amplitude, Hz.
+    pub frequency: Option<f64>,
+    /// Steady part, V.
+    pub dc: f64,
+    /// Peak over rms; √2 for a sine.
+    pub crest_factor: f64,
+}
+
+/// What the stage drives; both absent: nothing.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub struct Load {
+    /// Load resistance to ground, Ω.
+    pub resistance: Option<Toleranced>,
+    /// Load capacitance to ground, F.
+    pub capacitance: Option<Toleranced>,
+}
+
+/// Stray capacitances of the board to ground, in F.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub struct Board {
+    /// At the inverting input.
+    pub inverting_node: Option<Toleranced>,
+    /// At the non-inverting input.
+    pub non_inverting_node: Option<Toleranced>,
+    /// Across the feedback.
+    pub across_feedback: Option<Toleranced>,
+}
+
+/// Ambient temperature in K.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Ambient {
+    /// Its range; component values hold at its nominal.
+    pub range: Span,
+}
+
+/// A band for integrated noise, in Hz.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Band {
+    /// Lower edge; above zero, since 1/f noise diverges there.
+    pub from: f64,
+    /// Upper edge.
+    pub to: f64,
+}
+
+/// Where an isolation resistor stands.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub enum Isolation {
+    /// Between the feedback point and the load.
+    #[default]
+    OutsideLoop,
+    /// Inside: the feedback resistor senses the load, the feedback capacitor the amplifier's pin.
+    InsideLoop,
+}
+
+/// A stage, whole.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Stage {
+    /// Its name in the note.
+    pub name: String,
+    /// Its kind.
+    pub kind: Kind,
+    /// Component values.
+    pub components: Vec<Component>,
+    /// The amplifier.
+    pub part: Part,
+    /// Where `Riso` stands, if there is one.
+    pub isolation: Isolation,
+    /// Supplies.
+    pub supply: Option<Supply>,
+    /// What drives it; `None` is an ideal voltage source.
+    pub source: Option<Source>,
+    /// The signal.
+    pub signal: Option<Signal>,
+    /// The load.
+    pub load: Load,
+    /// Board strays.
+    pub board: Board,
+    /// Ambient temperature.
+    pub ambient: Option<Ambient>,
+    /// Band for integrated noise.
+    pub band: Option<Band>,
+    /// Limits, in the note's order.
+    pub limits: Vec<Limit>,
+}
+
+impl Stage {
+    /// The component called `name`, if the stage has it.
+    #[must_use]
+    pub fn component(&self, name: &str) -> Option<&Toleranced> {
+        self.components.iter().find(|c| c.name == name).map(|c| &c.value)
+    }
+}

@@ -1,0 +1,1 @@
+//! stageleaf-web

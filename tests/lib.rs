@@ -1,0 +1,1 @@
+//! What spans crates: outside checks, browser, hostile input, outlets.
