@@ -16,6 +16,7 @@ pub mod limit;
 pub mod network;
 pub mod part;
 pub mod report;
+pub mod series;
 pub mod stage;
 pub mod units;
 
