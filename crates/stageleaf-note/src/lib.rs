@@ -33,6 +33,7 @@ pub mod settings;
 pub mod shelf;
 #[cfg(feature = "toml")]
 mod table;
+pub mod template;
 pub mod terms;
 pub mod unit;
 pub mod words;
@@ -53,4 +54,5 @@ pub use settings::read_settings;
 #[cfg(feature = "toml")]
 pub use shelf::read_part;
 pub use shelf::{Shelf, ShelfPart};
+pub use template::template;
 pub use terms::{parse_span, parse_toleranced};
