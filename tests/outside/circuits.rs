@@ -1,0 +1,293 @@
+//! Whole circuits that an independent program solved: response, loop, poles, noise.
+
+use serde::Deserialize;
+use stageleaf_math::{
+    figure::{Figure, Query},
+    kind::Kind,
+    report::{NoiseOrigin, Outcome},
+    stage::{Isolation, Source, Stage, Toleranced},
+};
+
+use crate::{
+    budget::budget,
+    ledger::{Ledger, Wanted, half_unit},
+    setup::{Amplifier, Complete, density_by_source, of_source, outcome, report, stage},
+};
+
+/// The tables.
+pub const TABLES: [&str; 3] = [include_str!("follower.toml"), include_str!("non_inverting.toml"), include_str!("inverting.toml")];
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+struct Table {
+    source: String,
+    status: String,
+    circuit: Vec<Circuit>,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+struct Circuit {
+    id: String,
+    kind: String,
+    #[serde(default)]
+    note: String,
+    temperature: f64,
+    isolation: String,
+    netlist: Vec<(String, String, String, String, f64)>,
+    amplifier_nodes: (String, String, String),
+    amplifier: Stated,
+    expected: Expected,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+struct Stated {
+    open_loop: f64,
+    pole: f64,
+    higher_poles: Vec<f64>,
+    output_resistance: f64,
+    differential_capacitance: f64,
+    common_mode_capacitance: f64,
+    voltage_noise: f64,
+    voltage_corner: f64,
+    current_noise: f64,
+    current_corner: f64,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+struct Expected {
+    gain: f64,
+    bandwidth: f64,
+    peaking: f64,
+    return_ratio_at_dc: f64,
+    crossover: f64,
+    phase_margin: f64,
+    gain_margin: Option<f64>,
+    phase_crossover: Option<f64>,
+    least_damped_pole: Option<Pole>,
+    response: Vec<(f64, f64, f64)>,
+    noise_sources: Vec<String>,
+    noise_density: Vec<(f64, f64, Vec<f64>)>,
+    integrated_noise: Integrated,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+struct Pole {
+    frequency: f64,
+    damping: f64,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+struct Integrated {
+    from: f64,
+    to: f64,
+    total: f64,
+    by_source: Vec<f64>,
+}
+
+/// What an element of a circuit is in a stage of ours.
+#[derive(Clone, Copy, Debug, PartialEq)]
+enum Role {
+    Component(&'static str),
+    SourceResistance,
+    LoadResistance,
+    LoadCapacitance,
+    StrayInverting,
+}
+
+impl Role {
+    fn origin(self) -> NoiseOrigin {
+        match self {
+            Self::Component(name) => NoiseOrigin::Component(name),
+            Self::SourceResistance => NoiseOrigin::SourceResistance,
+            Self::LoadResistance => NoiseOrigin::LoadResistance,
+            Self::LoadCapacitance | Self::StrayInverting => panic!("a capacitor makes no noise"),
+        }
+    }
+}
+
+impl Circuit {
+    fn kind(&self) -> Kind {
+        Kind::from_id(&self.kind).unwrap_or_else(|| panic!("{}: no kind is called {:?}", self.id, self.kind))
+    }
+
+    /// An element's role by the nodes that it joins; its name says nothing.
+    fn role(&self, element: &(String, String, String, String, f64)) -> Role {
+        let (plus, minus, pin) = (self.amplifier_nodes.0.as_str(), self.amplifier_nodes.1.as_str(), self.amplifier_nodes.2.as_str());
+        let (name, sort, a, b, _) = element;
+        let joins = |x: &str, y: &str| (a == x && b == y) || (a == y && b == x);
+        let inside = self.isolation == "inside";
+        match (sort.as_str(), self.kind()) {
+            ("R", Kind::Inverting) if joins("in", minus) => Role::Component("Rin"),
+            ("R", Kind::Inverting) if joins(plus, "0") => Role::Component("Rp"),
+            ("R", Kind::NonInverting | Kind::Follower) if joins("in", plus) => Role::SourceResistance,
+            ("R", Kind::NonInverting) if joins(minus, "0") => Role::Component("Rg"),
+            ("R", Kind::Inverting | Kind::NonInverting) if joins(minus, if inside { "out" } else { pin }) => Role::Component("Rf"),
+            ("R", _) if joins(pin, "out") => Role::Component("Riso"),
+            ("R", _) if joins("out", "0") => Role::LoadResistance,
+            ("C", _) if joins(minus, pin) => Role::Component("Cf"),
+            ("C", _) if joins(minus, "0") => Role::StrayInverting,
+            ("C", _) if joins("out", "0") => Role::LoadCapacitance,
+            _ => panic!("{}: {name} from {a} to {b} has no place in a {} stage", self.id, self.kind),
+        }
+    }
+
+    fn stage(&self) -> Stage {
+        let stated = &self.amplifier;
+        let amplifier = Amplifier {
+            higher_poles: Some(stated.higher_poles.clone()),
+            output_resistance: stated.output_resistance,
+            differential_capacitance: stated.differential_capacitance,
+            common_mode_capacitance: stated.common_mode_capacitance,
+            voltage_noise: stated.voltage_noise,
+            voltage_corner: stated.voltage_corner,
+            current_noise: stated.current_noise,
+            current_corner: stated.current_corner,
+            ..Amplifier::one_pole(stated.open_loop, stated.open_loop * stated.pole)
+        };
+        let integrated = &self.expected.integrated_noise;
+        let mut result = stage(self.kind(), amplifier.part()).at(self.temperature).over(integrated.from, integrated.to);
+        result.isolation = if self.isolation == "inside" { Isolation::InsideLoop } else { Isolation::OutsideLoop };
+        for element in &self.netlist {
+            let value = Toleranced::exact(element.4);
+            match self.role(element) {
+                Role::Component(name) => result = result.with(name, element.4),
+                Role::SourceResistance => result.source = Some(Source::Resistive { resistance: value }),
+                Role::LoadResistance => result.load.resistance = Some(value),
+                Role::LoadCapacitance => result.load.capacitance = Some(value),
+                Role::StrayInverting => result.board.inverting_node = Some(value),
+            }
+        }
+        result
+    }
+
+    fn origin(&self, source: &str) -> NoiseOrigin {
+        match source {
+            "A.en" => NoiseOrigin::AmplifierVoltage,
+            "A.in+" => NoiseOrigin::CurrentNonInverting,
+            "A.in-" => NoiseOrigin::CurrentInverting,
+            name => {
+                let element = self.netlist.iter().find(|e| e.0 == name);
+                self.role(element.unwrap_or_else(|| panic!("{}: no element is called {name}", self.id))).origin()
+            }
+        }
+    }
+
+    fn compare(&self, ledger: &mut Ledger, source: &str) {
+        let expected = &self.expected;
+        let stage = self.stage();
+        let mut queries: Vec<Query> = [
+            Figure::Gain,
+            Figure::Bandwidth,
+            Figure::Peaking,
+            Figure::Crossover,
+            Figure::PhaseMargin,
+            Figure::GainMargin,
+            Figure::NaturalFrequency,
+            Figure::Q,
+            Figure::OutputNoise,
+        ]
+        .map(Query::of)
+        .into();
+        for point in &expected.response {
+            queries.extend([Query::at(Figure::GainAt, point.0), Query::at(Figure::PhaseAt, point.0)]);
+        }
+        queries.extend(expected.noise_density.iter().map(|row| Query::at(Figure::NoiseDensityAt, row.0)));
+        let report = report(&stage, &queries);
+
+        let mut tell = |name: &str, query: Query, value: f64, half_digit: f64| {
+            let allowed = budget(query.figure).around(value) + half_digit;
+            let wanted = Wanted { id: &self.id, name, figure: query.figure, value, allowed, source };
+            ledger.outcome(&wanted, &outcome(&report, query));
+        };
+        let printed = |value: f64| half_unit(value, 10);
+        tell("gain", Query::of(Figure::Gain), expected.gain, printed(expected.gain));
+        tell("bandwidth", Query::of(Figure::Bandwidth), expected.bandwidth, printed(expected.bandwidth));
+        let (ratio, half) = level(expected.peaking, 6);
+        tell("peaking", Query::of(Figure::Peaking), ratio, half);
+        tell("crossover", Query::of(Figure::Crossover), expected.crossover, printed(expected.crossover));
+        let margin = expected.phase_margin;
+        tell("phase_margin", Query::of(Figure::PhaseMargin), margin.to_radians(), printed(margin).to_radians());
+        // No −180° crossing: the return ratio may grow without bound.
+        let (ratio, half) = expected.gain_margin.map_or((f64::INFINITY, 0.0), |decibels| level(decibels, 10));
+        tell("gain_margin", Query::of(Figure::GainMargin), ratio, half);
+        if let Some(pole) = &expected.least_damped_pole {
+            tell("natural_frequency", Query::of(Figure::NaturalFrequency), pole.frequency, printed(pole.frequency));
+            let q = 0.5 / pole.damping;
+            tell("q", Query::of(Figure::Q), q, printed(pole.damping) / pole.damping * q);
+        }
+        for &(frequency, magnitude, degrees) in &expected.response {
+            tell(&format!("gain_at {frequency}"), Query::at(Figure::GainAt, frequency), magnitude, printed(magnitude));
+            let half = half_unit(degrees, 9).to_radians();
+            tell(&format!("phase_at {frequency}"), Query::at(Figure::PhaseAt, frequency), degrees.to_radians(), half);
+        }
+        for (frequency, total, _) in &expected.noise_density {
+            tell(&format!("noise_density_at {frequency}"), Query::at(Figure::NoiseDensityAt, *frequency), *total, printed(*total));
+        }
+        let total = expected.integrated_noise.total;
+        tell("output_noise", Query::of(Figure::OutputNoise), total, printed(total));
+
+        if expected.least_damped_pole.is_none() {
+            let none = matches!(outcome(&report, Query::of(Figure::Q)), Outcome::DoesNotApply(_));
+            ledger.fact(&self.id, "q", none, "the circuit has no complex poles, yet `q` is not \"does not apply\"");
+        }
+        if let Some(first) = report.loop_gain.first() {
+            // The curve begins where the return ratio may have left its DC value already: an upper bound.
+            let below = first.magnitude <= expected.return_ratio_at_dc * (1.0 + 1e-9);
+            ledger.fact(&self.id, "return_ratio_at_dc", below, "the return ratio's curve begins above its value at DC");
+        }
+        let crossings = expected.phase_crossover.is_some() == expected.gain_margin.is_some();
+        ledger.fact(&self.id, "phase_crossover", crossings, "the table gives one of gain margin and its frequency alone");
+
+        let shares: Vec<_> = report.noise_shares.iter().map(|s| (s.origin, s.rms)).collect();
+        self.compare_sources(ledger, source, "rms", Figure::OutputNoise, &expected.integrated_noise.by_source, &shares);
+        for (frequency, _, by_source) in &expected.noise_density {
+            let got = density_by_source(&stage, *frequency);
+            self.compare_sources(ledger, source, &format!("density at {frequency}"), Figure::NoiseDensityAt, by_source, &got);
+        }
+        ledger.fact(&self.id, "circuit", true, "");
+    }
+
+    fn compare_sources(&self, ledger: &mut Ledger, source: &str, what: &str, figure: Figure, wanted: &[f64], got: &[(NoiseOrigin, f64)]) {
+        assert_eq!(wanted.len(), self.expected.noise_sources.len(), "{}: {what}", self.id);
+        // A density by source is a share of a narrow band: the integral's budget.
+        let exactness = budget(Figure::OutputNoise);
+        for (name, &value) in self.expected.noise_sources.iter().zip(wanted) {
+            let allowed = exactness.around(value) + half_unit(value, 8);
+            let wanted = Wanted { id: &self.id, name: &format!("{name} {what}"), figure, value, allowed, source };
+            ledger.value(&wanted, of_source(got, self.origin(name)));
+        }
+        let listed: Vec<_> = self.expected.noise_sources.iter().map(|name| self.origin(name)).collect();
+        for (origin, value) in got.iter().filter(|(origin, _)| !listed.contains(origin)) {
+            ledger.fact(&self.id, what, *value == 0.0, &format!("{origin:?} contributes {value:e}, and the circuit has no such source"));
+        }
+    }
+}
+
+/// A level printed in dB to `digits` digits, as a ratio with half a unit of its last digit.
+fn level(decibels: f64, digits: i32) -> (f64, f64) {
+    let ratio = libm::pow(10.0, decibels / 20.0);
+    (ratio, ratio * half_unit(decibels, digits) * core::f64::consts::LN_10 / 20.0)
+}
+
+/// Compares every circuit.
+pub fn all(ledger: &mut Ledger) {
+    for text in TABLES {
+        let table: Table = toml::from_str(text).unwrap_or_else(|error| panic!("{error}"));
+        let source = format!("{} [{}]", table.source, table.status);
+        for circuit in &table.circuit {
+            circuit.compare(ledger, &format!("{source} {}", circuit.note));
+        }
+    }
+}
+
+#[test]
+fn solved_circuits_are_met() {
+    let mut ledger = Ledger::default();
+    all(&mut ledger);
+    ledger.close();
+}

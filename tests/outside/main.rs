@@ -1,0 +1,17 @@
+//! Every figure against something that this project did not make: handbooks, exact mathematics, whole circuits solved by
+//! independent programs. Inputs, expected values, tolerances and sources stand in the tables beside this file.
+//!
+//! `scripts/outside` runs it and shows how much of each budget is used.
+
+mod budget;
+mod circuits;
+mod coverage;
+mod dc;
+mod gain;
+mod ledger;
+mod loops;
+mod noise;
+mod oracle;
+mod setup;
+mod swing;
+mod table;
