@@ -1,0 +1,230 @@
+//! One note, examined: a pure function of its bytes and the team's shelf and settings, so that notes may be taken in any order.
+
+use std::{
+    cell::RefCell,
+    collections::BTreeMap,
+    panic::{self, AssertUnwindSafe},
+    sync::Once,
+};
+
+use stageleaf_math::{
+    Error,
+    dimension::Dimension,
+    figure::Query,
+    limit::{Bound, Limit, Thin},
+    report::{FigureRow, LimitRow, Outcome, Report},
+    stage::Stage,
+};
+use stageleaf_note::{Block, Problem, Quote, problem::nearest, quote_agrees, quote_for, read_note, slug};
+
+use crate::{fault::Fault, team::Team};
+
+/// A note's stages and quotes, judged, and what could not be.
+#[derive(Debug)]
+pub struct Examined {
+    /// The note, as messages name it.
+    pub file: String,
+    /// Its stages, in the note's order.
+    pub stages: Vec<ExaminedStage>,
+    /// Its quotes, in the note's order.
+    pub quotes: Vec<QuoteState>,
+    /// What could not be read or judged.
+    pub faults: Vec<Fault>,
+}
+
+impl Examined {
+    /// The quotes that do not agree with their figure.
+    pub fn stale(&self) -> impl Iterator<Item = &QuoteState> {
+        self.quotes.iter().filter(|q| !matches!(q.current, Current::Agrees))
+    }
+}
+
+/// A stage with its report.
+#[derive(Debug)]
+pub struct ExaminedStage {
+    /// The block.
+    pub block: Block,
+    /// What the engine found. Its limits may end with figures that only the prose names.
+    pub report: Report,
+}
+
+impl ExaminedStage {
+    /// The note's own limits, judged.
+    #[must_use]
+    pub fn limits(&self) -> &[LimitRow] {
+        let own = self.block.stage.limits.len().min(self.report.limits.len());
+        &self.report.limits[..own]
+    }
+
+    /// The figures.
+    #[must_use]
+    pub fn figures(&self) -> &[FigureRow] {
+        &self.report.figures
+    }
+
+    fn outcome(&self, query: Query) -> Option<&Outcome> {
+        let row = self.report.figures.iter().find(|row| row.query == query).map(|row| &row.nominal);
+        row.or_else(|| self.report.limits.iter().find(|row| row.limit.query == query).map(|row| &row.nominal))
+    }
+}
+
+/// A quote and what its figure is now.
+#[derive(Debug)]
+pub struct QuoteState {
+    /// The quote.
+    pub quote: Quote,
+    /// The stage's name.
+    pub stage: String,
+    /// The figure now.
+    pub current: Current,
+}
+
+/// What a quoted figure is now.
+#[derive(Clone, Debug, PartialEq)]
+pub enum Current {
+    /// The shown digits are the figure's.
+    Agrees,
+    /// They are not.
+    Is {
+        /// The figure, with as many digits as the note shows.
+        text: String,
+    },
+    /// The figure has no value to quote.
+    NoValue {
+        /// What it is instead.
+        outcome: Outcome,
+        /// What the figure measures.
+        dimension: Dimension,
+    },
+}
+
+/// Reads and judges a note. One bad block hides nothing, and a panic in one stage is told as a bug of that stage.
+#[must_use]
+pub fn examine(bytes: &[u8], file: &str, team: &Team) -> Examined {
+    examine_with(bytes, file, team, &stageleaf_math::analyse)
+}
+
+/// [`examine`] with another analysis.
+#[must_use]
+pub fn examine_with(bytes: &[u8], file: &str, team: &Team, analyse: &dyn Fn(&Stage) -> Result<Report, Error>) -> Examined {
+    let note = match guarded(|| read_note(bytes, file, &team.shelf, &team.settings)) {
+        Ok(note) => note,
+        Err(message) => {
+            let bug = Fault::Bug { file: file.to_owned(), line: 1, stage: "(reading the note)".to_owned(), message };
+            return Examined { file: file.to_owned(), stages: Vec::new(), quotes: Vec::new(), faults: vec![bug] };
+        }
+    };
+    let mut faults: Vec<Fault> = note.problems.into_iter().map(|p| Fault::Text(Box::new(p))).collect();
+    // Stages that were written but could not be judged: a quote of theirs is not a second fault.
+    let mut lost = Vec::new();
+    let mut stages = Vec::new();
+    for block in note.blocks {
+        let name = slug(&block.stage.name);
+        let stage = with_quoted_figures(&block.stage, note.quotes.iter().filter(|q| q.slug == name));
+        match guarded(|| analyse(&stage)) {
+            Ok(Ok(report)) => stages.push(ExaminedStage { block, report }),
+            Ok(Err(error)) => {
+                faults.push(Fault::Text(Box::new(place(&block, error))));
+                lost.push(name);
+            }
+            Err(message) => {
+                faults.push(Fault::Bug { file: file.to_owned(), line: block.line, stage: block.stage.name.clone(), message });
+                lost.push(name);
+            }
+        }
+    }
+    let by_slug: BTreeMap<String, &ExaminedStage> = stages.iter().map(|s| (slug(&s.block.stage.name), s)).collect();
+    let unread = !faults.is_empty();
+    let mut quotes = Vec::new();
+    for quote in note.quotes {
+        match by_slug.get(&quote.slug) {
+            Some(stage) => {
+                let current = current(&quote, stage);
+                quotes.push(QuoteState { stage: stage.block.stage.name.clone(), quote, current });
+            }
+            None if lost.contains(&quote.slug) => {}
+            None => {
+                let near = nearest(&quote.slug, by_slug.keys().map(String::as_str));
+                // With a block that could not be read, the stage may well be that one.
+                if near.is_some() || !unread {
+                    faults.push(Fault::Text(Box::new(no_such_stage(bytes, file, &quote, near, by_slug.keys()))));
+                }
+            }
+        }
+    }
+    Examined { file: file.to_owned(), stages, quotes, faults }
+}
+
+/// The figures that the prose quotes and no limit names are asked for too, as limits that judge nothing.
+fn with_quoted_figures<'a>(stage: &Stage, quotes: impl Iterator<Item = &'a Quote>) -> Stage {
+    let mut stage = stage.clone();
+    for quote in quotes {
+        if quote.query.at.is_some() && stage.limits.iter().all(|l| l.query != quote.query) {
+            stage.limits.push(Limit { query: quote.query, bound: Bound::Report, thin: Thin::Fraction(0.0) });
+        }
+    }
+    stage
+}
+
+fn current(quote: &Quote, stage: &ExaminedStage) -> Current {
+    let dimension = quote.query.figure.dimension();
+    match stage.outcome(quote.query) {
+        Some(&Outcome::Value(value)) if quote_agrees(&quote.shown, value, dimension) => Current::Agrees,
+        Some(&Outcome::Value(value)) => Current::Is { text: quote_for(&quote.shown, value, dimension) },
+        Some(outcome) => Current::NoValue { outcome: outcome.clone(), dimension },
+        None => Current::NoValue { outcome: Outcome::DoesNotApply("the stage has no such figure"), dimension },
+    }
+}
+
+fn no_such_stage<'a>(bytes: &[u8], file: &str, quote: &Quote, near: Option<&str>, slugs: impl Iterator<Item = &'a String>) -> Problem {
+    let line_text = String::from_utf8_lossy(bytes).lines().nth(quote.line.saturating_sub(1)).unwrap_or_default().to_owned();
+    let names: Vec<String> = slugs.map(|s| format!("`{s}`")).collect();
+    let message = format!("this quotes a figure of `{}`; no stage of this note has that name", quote.slug);
+    Problem::on_line(file, quote.line, quote.column, quote.shown.chars().count().max(1), &line_text, message)
+        .allowed(if names.is_empty() { "the name of a stage in this note; it has none".to_owned() } else { names.join(", ") })
+        .attempt(near.map(str::to_owned))
+}
+
+/// Puts an error of the engine where the value stands in the note.
+fn place(block: &Block, error: Error) -> Problem {
+    let what = match error {
+        Error::NotPositive { what, .. }
+        | Error::Negative { what, .. }
+        | Error::MissingComponent { what }
+        | Error::RangeReversed { what, .. } => what,
+        Error::Unpaired { given, .. } => given,
+        Error::SupplyReversed { .. } => "supply.positive",
+    };
+    let field = block.field(&format!("components.{what}")).or_else(|| block.field(what));
+    let (line, column, length) = field.map_or((block.line, 1, 1), |f| (f.line, f.column, f.text.chars().count().max(1)));
+    let line_text = line.checked_sub(block.line).and_then(|n| block.text.lines().nth(n)).unwrap_or_default();
+    Problem::on_line(&block.file, line, column, length, line_text, format!("the stage “{}” cannot be analysed: {error}", block.stage.name))
+}
+
+thread_local! {
+    /// Where the last guarded panic happened, and its words.
+    static CAUGHT: RefCell<Option<String>> = const { RefCell::new(None) };
+    static GUARDED: RefCell<bool> = const { RefCell::new(false) };
+}
+
+/// Runs `work`; a panic becomes its message with the place in the source, and nothing is printed.
+fn guarded<T>(work: impl FnOnce() -> T) -> Result<T, String> {
+    static HOOK: Once = Once::new();
+    HOOK.call_once(|| {
+        let before = panic::take_hook();
+        panic::set_hook(Box::new(move |info| {
+            if GUARDED.with(|g| *g.borrow()) {
+                let words = info.payload().downcast_ref::<&str>().map(|s| (*s).to_owned());
+                let words = words.or_else(|| info.payload().downcast_ref::<String>().cloned()).unwrap_or_else(|| "a panic".to_owned());
+                let place = info.location().map(|l| format!(" ({}:{})", l.file(), l.line())).unwrap_or_default();
+                CAUGHT.with(|c| *c.borrow_mut() = Some(format!("{words}{place}")));
+            } else {
+                before(info);
+            }
+        }));
+    });
+    GUARDED.with(|g| *g.borrow_mut() = true);
+    let result = panic::catch_unwind(AssertUnwindSafe(work));
+    GUARDED.with(|g| *g.borrow_mut() = false);
+    result.map_err(|_| CAUGHT.with(|c| c.borrow_mut().take()).unwrap_or_else(|| "a panic".to_owned()))
+}

@@ -1,0 +1,286 @@
+//! `check --format json`, version 1.
+//!
+//! `{"version":1,"stages":[{"file","line","name","kind","figures":{id:…},"limits":[…]}],"errors":[{"file","line","column","message"}]}`.
+//! SI units and full precision: a number read back has the same bits. JSON has no infinity: there a number is `null` with
+//! `"unlimited": true` beside it. A figure that is not a number is `{"undetermined": "why"}`, `{"does_not_apply": "why"}`,
+//! `{"oscillates": true}` or `{"no_dc_path": true}`.
+//! An error's `sort` says what it is: `input`, `stale` (the prose quotes a number that is no longer the figure's) or `bug`.
+
+use serde::{Serialize, Serializer, ser::SerializeMap};
+use stageleaf_math::{
+    dimension::Dimension,
+    report::{FigureRow, LimitRow, Outcome},
+};
+use stageleaf_note::{limit_text, query_text, words};
+
+use super::{
+    examine::{Current, Examined, ExaminedStage, QuoteState},
+    text::{coordinate_dimension, outcome_words},
+};
+use crate::fault::Fault;
+
+/// The document.
+#[derive(Debug, Serialize)]
+pub struct Document {
+    version: u32,
+    stages: Vec<Stage>,
+    errors: Vec<Entry>,
+}
+
+impl Default for Document {
+    fn default() -> Self {
+        Self { version: 1, stages: Vec::new(), errors: Vec::new() }
+    }
+}
+
+impl Document {
+    /// Takes a note in.
+    pub fn note(&mut self, note: &Examined) {
+        self.stages.extend(note.stages.iter().map(|stage| Stage::of(&note.file, stage)));
+        self.errors.extend(note.faults.iter().map(Entry::of));
+        self.errors.extend(note.stale().map(|quote| Entry::stale(&note.file, quote)));
+    }
+
+    /// Takes a fault in.
+    pub fn fault(&mut self, fault: &Fault) {
+        self.errors.push(Entry::of(fault));
+    }
+
+    /// The document as text, with a line's end.
+    #[must_use]
+    pub fn text(&self) -> String {
+        let mut text = serde_json::to_string_pretty(self).expect("the document holds only strings, finite numbers and maps with text keys");
+        text.push('\n');
+        text
+    }
+}
+
+#[derive(Debug, Serialize)]
+struct Stage {
+    file: String,
+    line: usize,
+    name: String,
+    kind: &'static str,
+    figures: Figures,
+    limits: Vec<Judged>,
+}
+
+impl Stage {
+    fn of(file: &str, stage: &ExaminedStage) -> Self {
+        let part = part_file(stage);
+        Self {
+            file: file.to_owned(),
+            line: stage.block.line,
+            name: stage.block.stage.name.clone(),
+            kind: stage.block.stage.kind.id(),
+            figures: Figures(stage.figures().iter().map(|row| (query_text(row.query), Figure::of(row, &part))).collect()),
+            limits: stage.limits().iter().map(|row| Judged::of(row, stage, &part)).collect(),
+        }
+    }
+}
+
+/// The part file, as words about missing data name it.
+pub fn part_file(stage: &ExaminedStage) -> String {
+    format!("{}.toml", stage.block.stage.part.id)
+}
+
+/// Figures by id, in the order of the report.
+#[derive(Debug)]
+struct Figures(Vec<(String, Figure)>);
+
+impl Serialize for Figures {
+    fn serialize<S: Serializer>(&self, serializer: S) -> Result<S::Ok, S::Error> {
+        let mut map = serializer.serialize_map(Some(self.0.len()))?;
+        for (id, figure) in &self.0 {
+            map.serialize_entry(id, figure)?;
+        }
+        map.end()
+    }
+}
+
+#[derive(Debug, Serialize)]
+#[serde(untagged)]
+enum Figure {
+    Value {
+        value: Option<f64>,
+        unit: &'static str,
+        low: Option<f64>,
+        high: Option<f64>,
+        basis: Option<&'static str>,
+        #[serde(skip_serializing_if = "is_false")]
+        unlimited: bool,
+    },
+    Other(Other),
+}
+
+impl Figure {
+    fn of(row: &FigureRow, part: &str) -> Self {
+        match &row.nominal {
+            Outcome::Value(value) => Self::Value {
+                value: finite(*value),
+                unit: row.query.figure.dimension().si_unit(),
+                low: row.range.and_then(|(low, _)| finite(low)),
+                high: row.range.and_then(|(_, high)| finite(high)),
+                basis: row.basis.map(stageleaf_math::limit::Basis::word),
+                unlimited: value.is_infinite() || row.range.is_some_and(|(low, high)| low.is_infinite() || high.is_infinite()),
+            },
+            other => Self::Other(Other::of(other, row.query.figure.dimension(), part)),
+        }
+    }
+}
+
+/// A figure that is not a number.
+#[derive(Debug, Serialize)]
+#[serde(rename_all = "snake_case")]
+enum Other {
+    Undetermined(String),
+    DoesNotApply(String),
+    Oscillates(bool),
+    NoDcPath(bool),
+}
+
+impl Other {
+    fn of(outcome: &Outcome, dimension: Dimension, part: &str) -> Self {
+        match outcome {
+            Outcome::DoesNotApply(why) => Self::DoesNotApply((*why).to_owned()),
+            Outcome::Oscillates => Self::Oscillates(true),
+            Outcome::NoDcPath => Self::NoDcPath(true),
+            Outcome::Undetermined(_) | Outcome::Value(_) => Self::Undetermined(outcome_words(outcome, dimension, part)),
+        }
+    }
+}
+
+#[derive(Debug, Serialize)]
+#[serde(untagged)]
+enum Worst {
+    Value(Option<f64>),
+    Other(Other),
+}
+
+#[derive(Debug, Serialize)]
+struct Judged {
+    figure: String,
+    limit: String,
+    verdict: &'static str,
+    basis: Option<&'static str>,
+    worst: Worst,
+    #[serde(skip_serializing_if = "is_false")]
+    unlimited: bool,
+    margin: Option<f64>,
+    unit: &'static str,
+    corner: Vec<Coordinate>,
+    dominant: Option<String>,
+}
+
+impl Judged {
+    fn of(row: &LimitRow, stage: &ExaminedStage, part: &str) -> Self {
+        let dimension = row.limit.query.figure.dimension();
+        let worst = match &row.worst {
+            Outcome::Value(value) => Worst::Value(finite(*value)),
+            other => Worst::Other(Other::of(other, dimension, part)),
+        };
+        let corner = row.corner.iter().map(|c| Coordinate {
+            parameter: words::parameter_text(c.parameter),
+            value: finite(c.value),
+            nominal: finite(c.nominal),
+            unit: coordinate_dimension(c.parameter, stage).si_unit(),
+        });
+        Self {
+            figure: query_text(row.limit.query),
+            limit: limit_text(&row.limit),
+            verdict: row.verdict.word(),
+            basis: row.basis.map(stageleaf_math::limit::Basis::word),
+            unlimited: row.worst.value().is_some_and(f64::is_infinite) || row.margin.is_some_and(f64::is_infinite),
+            worst,
+            margin: row.margin.and_then(finite),
+            unit: dimension.si_unit(),
+            corner: corner.collect(),
+            dominant: row.dominant.map(words::parameter_text),
+        }
+    }
+}
+
+#[derive(Debug, Serialize)]
+struct Coordinate {
+    parameter: String,
+    value: Option<f64>,
+    nominal: Option<f64>,
+    unit: &'static str,
+}
+
+#[derive(Debug, Serialize)]
+struct Entry {
+    file: String,
+    line: Option<usize>,
+    column: Option<usize>,
+    message: String,
+    sort: &'static str,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    allowed: Option<String>,
+    #[serde(rename = "try", skip_serializing_if = "Option::is_none")]
+    attempt: Option<String>,
+}
+
+impl Entry {
+    fn of(fault: &Fault) -> Self {
+        match fault {
+            Fault::Text(p) => Self {
+                file: p.file.clone(),
+                line: Some(p.line),
+                column: Some(p.column),
+                message: p.message.clone(),
+                sort: "input",
+                allowed: p.allowed.clone(),
+                attempt: p.attempt.clone(),
+            },
+            Fault::Path { path, message, allowed, attempt } => Self {
+                file: path.clone(),
+                line: None,
+                column: None,
+                message: message.clone(),
+                sort: "input",
+                allowed: allowed.clone(),
+                attempt: attempt.clone(),
+            },
+            Fault::Bug { file, line, stage, message } => Self {
+                file: file.clone(),
+                line: Some(*line),
+                column: Some(1),
+                message: format!("bug in stageleaf at the stage “{stage}”: {message}"),
+                sort: "bug",
+                allowed: None,
+                attempt: None,
+            },
+        }
+    }
+
+    fn stale(file: &str, state: &QuoteState) -> Self {
+        let quote = &state.quote;
+        let now = match &state.current {
+            Current::Is { text } => format!("is {text} now"),
+            Current::NoValue { outcome, dimension } => format!("has no value now: {}", outcome_words(outcome, *dimension, "the part file")),
+            Current::Agrees => "agrees".to_owned(),
+        };
+        Self {
+            file: file.to_owned(),
+            line: Some(quote.line),
+            column: Some(quote.column),
+            message: format!("the prose says “{}”; `{}` of “{}” {now}", quote.shown, query_text(quote.query), state.stage),
+            sort: "stale",
+            allowed: None,
+            attempt: match &state.current {
+                Current::Is { text } => Some(text.clone()),
+                Current::Agrees | Current::NoValue { .. } => None,
+            },
+        }
+    }
+}
+
+fn finite(value: f64) -> Option<f64> {
+    value.is_finite().then_some(value)
+}
+
+#[expect(clippy::trivially_copy_pass_by_ref, reason = "serde hands the field by reference")]
+const fn is_false(value: &bool) -> bool {
+    !*value
+}

@@ -1,0 +1,168 @@
+//! `check`: every stage of every note against its limits, and every number that the prose quotes against its figure.
+
+mod examine;
+mod json;
+mod rewrite;
+mod text;
+
+use std::{fs, path::PathBuf};
+
+use clap::{Args, ValueEnum};
+
+pub use self::examine::{Current, Examined, ExaminedStage, QuoteState, examine, examine_with};
+use crate::{
+    fault::Fault,
+    team::Teams,
+    terminal::Terminal,
+    walk::{self, show, unreadable},
+};
+use stageleaf_math::limit::Verdict;
+
+/// How results are written.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, ValueEnum)]
+pub enum Format {
+    /// For people.
+    #[default]
+    Text,
+    /// For programs: version 1 of the JSON form, on standard output.
+    Json,
+}
+
+/// What `check` is asked.
+#[derive(Args, Clone, Debug)]
+pub struct Options {
+    /// Notes, and folders in which every `.md` file is a note
+    #[arg(required = true, value_name = "PATH")]
+    pub paths: Vec<PathBuf>,
+    /// How results are written
+    #[arg(long, value_enum, default_value_t, value_name = "FORMAT")]
+    pub format: Format,
+    /// Bring the numbers that the prose quotes up to date, in place; limits and everything else stay
+    #[arg(long)]
+    pub rewrite: bool,
+    /// Folder of part files, instead of the one that stageleaf.toml names
+    #[arg(long, value_name = "DIR")]
+    pub shelf: Option<PathBuf>,
+}
+
+/// How a run ended; the process's exit code.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+pub enum Ending {
+    /// Every limit holds (or is thin) and every quote agrees.
+    Good = 0,
+    /// A limit breaks or is undetermined, or the prose quotes a stale number.
+    Broken = 1,
+    /// Something could not be read.
+    BadInput = 2,
+}
+
+/// What a run counted.
+#[derive(Clone, Debug, Default, PartialEq, Eq)]
+pub struct Counts {
+    /// Notes read.
+    pub notes: usize,
+    /// Stages judged.
+    pub stages: usize,
+    /// Limits that hold.
+    pub holds: usize,
+    /// Limits that hold, barely.
+    pub thin: usize,
+    /// Limits that break.
+    pub breaks: usize,
+    /// Limits that could not be judged.
+    pub undetermined: usize,
+    /// Figures shown without a limit.
+    pub reported: usize,
+    /// Quotes in the prose.
+    pub quotes: usize,
+    /// Quotes that do not agree with their figure.
+    pub stale: usize,
+    /// Quotes brought up to date.
+    pub rewritten: usize,
+    /// What could not be read.
+    pub faults: usize,
+}
+
+impl Counts {
+    fn add(&mut self, note: &Examined) {
+        self.notes += 1;
+        self.stages += note.stages.len();
+        for row in note.stages.iter().flat_map(ExaminedStage::limits) {
+            *match row.verdict {
+                Verdict::Holds => &mut self.holds,
+                Verdict::Thin => &mut self.thin,
+                Verdict::Breaks => &mut self.breaks,
+                Verdict::Undetermined => &mut self.undetermined,
+                Verdict::Reported => &mut self.reported,
+            } += 1;
+        }
+        self.quotes += note.quotes.len();
+        self.stale += note.stale().count();
+        self.faults += note.faults.len();
+    }
+
+    /// How the run ended.
+    #[must_use]
+    pub const fn ending(&self) -> Ending {
+        if self.faults > 0 {
+            Ending::BadInput
+        } else if self.breaks + self.undetermined + self.stale > 0 {
+            Ending::Broken
+        } else {
+            Ending::Good
+        }
+    }
+}
+
+/// Runs `check`.
+pub fn run(options: &Options, terminal: &mut Terminal) -> Ending {
+    let mut teams = Teams::new(options.shelf.clone());
+    let mut counts = Counts::default();
+    let mut report = json::Document::default();
+    let as_json = options.format == Format::Json;
+    let tell = |faults: &[Fault], counts: &mut Counts, terminal: &mut Terminal, report: &mut json::Document| {
+        counts.faults += faults.len();
+        for fault in faults {
+            if as_json { report.fault(fault) } else { terminal.complain(&format!("{fault}\n")) }
+        }
+    };
+
+    let found = walk::notes(&options.paths);
+    tell(&found.faults, &mut counts, terminal, &mut report);
+    for (index, path) in found.notes.iter().enumerate() {
+        let file = show(path);
+        terminal.progress(&format!("{} of {}: {file}", index + 1, found.notes.len()));
+        let team = teams.of(path);
+        tell(&teams.take_faults(), &mut counts, terminal, &mut report);
+        let bytes = match fs::read(path) {
+            Ok(bytes) => bytes,
+            Err(error) => {
+                tell(&[unreadable(path, &error)], &mut counts, terminal, &mut report);
+                continue;
+            }
+        };
+        let mut note = examine(&bytes, &file, &team);
+        if options.rewrite {
+            match rewrite::rewrite(path, &bytes, &mut note) {
+                Ok(count) => counts.rewritten += count,
+                Err(fault) => note.faults.push(fault),
+            }
+        }
+        counts.add(&note);
+        if as_json {
+            report.note(&note);
+        } else {
+            terminal.out(&text::note(&note, terminal.colour()));
+            for fault in &note.faults {
+                terminal.complain(&format!("{fault}\n"));
+            }
+        }
+    }
+    terminal.clear();
+    if as_json {
+        terminal.out(&report.text());
+    } else {
+        terminal.out(&text::closing(&counts, terminal.colour()));
+    }
+    counts.ending()
+}

@@ -1,0 +1,232 @@
+//! `check` for people: one aligned table for each stage, then what the prose quotes wrongly, then one line that counts.
+
+use std::fmt::Write as _;
+
+use stageleaf_math::{
+    dimension::Dimension,
+    figure::Query,
+    limit::{Bound, Verdict},
+    report::{Coordinate, LimitRow, Outcome, Parameter},
+    stage::Source,
+};
+use stageleaf_note::{format as quantity_text, limit_text, query_text, words};
+
+use super::{
+    Counts,
+    examine::{Current, Examined, ExaminedStage, QuoteState},
+    json::part_file,
+};
+use crate::terminal::{Ink, paint, plain};
+
+/// Digits of a figure in a table: enough to see what is left of a limit.
+const DIGITS: usize = 4;
+
+/// A note's stages and stale quotes.
+#[must_use]
+pub fn note(note: &Examined, colour: bool) -> String {
+    let mut text = String::new();
+    for stage in &note.stages {
+        text.push_str(&self::stage(&note.file, stage, colour));
+        text.push('\n');
+    }
+    for state in note.stale() {
+        text.push_str(&stale(&note.file, state, colour));
+    }
+    if note.stale().next().is_some() {
+        text.push('\n');
+    }
+    text
+}
+
+fn stage(file: &str, stage: &ExaminedStage, colour: bool) -> String {
+    let of = &stage.block.stage;
+    let mut text = format!("{file}:{}  {}  ({}, {})\n", stage.block.line, plain(&of.name), of.kind.id(), plain(&of.part.id));
+    let rows: Vec<Row> = stage.limits().iter().map(|row| Row::of(row, stage)).collect();
+    if rows.is_empty() {
+        text.push_str("  no limits: nothing is judged\n");
+    }
+    let width = |column: usize| rows.iter().map(|r| r.cells[column].chars().count()).max().unwrap_or(0);
+    let widths: Vec<usize> = (0..Row::COLUMNS).map(width).collect();
+    for row in &rows {
+        let mut line = String::new();
+        for (column, (cell, width)) in row.cells.iter().zip(&widths).enumerate() {
+            let space = " ".repeat(width - cell.chars().count() + 2);
+            let cell = if column == 0 { paint(cell, row.ink, colour) } else { cell.clone() };
+            write!(line, "{cell}{space}").expect("a string takes all");
+        }
+        writeln!(text, "  {}", line.trim_end()).expect("a string takes all");
+        for more in &row.below {
+            writeln!(text, "  {}  {}", " ".repeat(widths[0]), paint(more, Ink::Quiet, colour)).expect("a string takes all");
+        }
+    }
+    for caution in &stage.report.cautions {
+        writeln!(text, "  {} {}", paint("caution:", Ink::Watch, colour), plain(&words::caution_text(caution))).expect("a string takes all");
+    }
+    text
+}
+
+struct Row {
+    ink: Ink,
+    cells: [String; Self::COLUMNS],
+    below: Vec<String>,
+}
+
+impl Row {
+    const COLUMNS: usize = 6;
+
+    fn of(row: &LimitRow, stage: &ExaminedStage) -> Self {
+        let dimension = row.limit.query.figure.dimension();
+        let ink = match row.verdict {
+            Verdict::Holds => Ink::Good,
+            Verdict::Thin | Verdict::Undetermined => Ink::Watch,
+            Verdict::Breaks => Ink::Bad,
+            Verdict::Reported => Ink::Quiet,
+        };
+        let mut below = Vec::new();
+        let worst = match &row.worst {
+            Outcome::Undetermined(_) | Outcome::DoesNotApply(_) => {
+                below.push(plain(&outcome_words(&row.worst, dimension, &part_file(stage))));
+                "–".to_owned()
+            }
+            outcome => outcome_words(outcome, dimension, &part_file(stage)),
+        };
+        if !row.corner.is_empty() {
+            let corner: Vec<String> = row.corner.iter().map(|c| coordinate_text(c, stage)).collect();
+            let most = row.dominant.map(|p| format!("; most from {}", words::parameter_text(p))).unwrap_or_default();
+            below.push(plain(&format!("at {}{most}", corner.join(", "))));
+        }
+        let basis = row.basis.map_or("", stageleaf_math::limit::Basis::word);
+        Self {
+            ink,
+            cells: [
+                row.verdict.word().to_owned(),
+                query_text(row.limit.query),
+                limit_text(&row.limit),
+                format!("worst {worst}"),
+                margin_text(row).map(|m| format!("margin {m}")).unwrap_or_default(),
+                basis.to_owned(),
+            ],
+            below,
+        }
+    }
+}
+
+/// What is left of a limit. Levels are told in dB, where a distance is a ratio.
+#[must_use]
+pub fn margin_text(row: &LimitRow) -> Option<String> {
+    let margin = row.margin?;
+    let dimension = row.limit.query.figure.dimension();
+    if dimension == Dimension::Level && margin.is_finite() {
+        let worst = row.worst.value()?;
+        let ratio = match row.limit.bound {
+            Bound::AtLeast(low) => worst / low,
+            Bound::AtMost(high) => high / worst,
+            Bound::Between { low, high } => (worst / low).min(high / worst),
+            Bound::Report => return None,
+        };
+        return Some(quantity_text(ratio, dimension, 3));
+    }
+    let dimension = match dimension {
+        Dimension::Temperature => Dimension::TemperatureDifference,
+        other => other,
+    };
+    Some(quantity_text(margin, dimension, 3))
+}
+
+/// A figure's value in words, or why there is none.
+#[must_use]
+pub fn outcome_words(outcome: &Outcome, dimension: Dimension, part_file: &str) -> String {
+    match outcome {
+        Outcome::Undetermined(needs) => {
+            let needs: Vec<String> = needs.iter().map(|need| words::need_text(*need, part_file)).collect();
+            format!("needs {}", needs.join("; "))
+        }
+        other => words::outcome_text(other, dimension, DIGITS),
+    }
+}
+
+fn coordinate_text(coordinate: &Coordinate, stage: &ExaminedStage) -> String {
+    let name = words::parameter_text(coordinate.parameter);
+    if coordinate.parameter == Parameter::Headroom {
+        return format!("{name} {}", if coordinate.value > 0.5 { "guaranteed" } else { "typical" });
+    }
+    format!("{name} {}", quantity_text(coordinate.value, coordinate_dimension(coordinate.parameter, stage), DIGITS))
+}
+
+/// What a parameter of `stage` measures.
+#[must_use]
+pub fn coordinate_dimension(parameter: Parameter, stage: &ExaminedStage) -> Dimension {
+    match parameter {
+        Parameter::Component(name) => {
+            let specs = stage.block.stage.kind.components();
+            specs.iter().find(|spec| spec.name == name).map_or(Dimension::Number, |spec| spec.dimension)
+        }
+        Parameter::SourceImpedance => match stage.block.stage.source {
+            Some(Source::Capacitive { .. }) => Dimension::Capacitance,
+            Some(Source::Resistive { .. }) | None => Dimension::Resistance,
+        },
+        Parameter::LoadResistance => Dimension::Resistance,
+        Parameter::LoadCapacitance | Parameter::StrayInverting | Parameter::StrayNonInverting | Parameter::StrayFeedback => {
+            Dimension::Capacitance
+        }
+        Parameter::SupplyPositive | Parameter::SupplyNegative => Dimension::Voltage,
+        Parameter::Temperature => Dimension::Temperature,
+        Parameter::Part(figure) => figure.dimension(),
+        Parameter::Headroom => Dimension::Number,
+    }
+}
+
+fn stale(file: &str, state: &QuoteState, colour: bool) -> String {
+    let quote = &state.quote;
+    let figure = figure_of(quote.query, &state.stage);
+    let now = match &state.current {
+        Current::Is { text } => format!("now {text}"),
+        Current::NoValue { outcome, dimension } => format!("now without a value: {}", outcome_words(outcome, *dimension, "the part file")),
+        Current::Agrees => return String::new(),
+    };
+    let word = paint("stale quote", Ink::Bad, colour);
+    format!("{file}:{}:{}  {word}  {figure}: shown {}, {}\n", quote.line, quote.column, plain(&quote.shown), plain(&now))
+}
+
+fn figure_of(query: Query, stage: &str) -> String {
+    format!("{} of “{}”", query_text(query), plain(stage))
+}
+
+/// The line at the end.
+#[must_use]
+pub fn closing(counts: &Counts, colour: bool) -> String {
+    let limits = counts.holds + counts.thin + counts.breaks + counts.undetermined;
+    let mut parts = vec![
+        paint_some(counts.holds, "hold", Ink::Good, colour),
+        paint_some(counts.thin, "thin", Ink::Watch, colour),
+        paint_some(counts.breaks, if counts.breaks == 1 { "breaks" } else { "break" }, Ink::Bad, colour),
+        paint_some(counts.undetermined, "undetermined", Ink::Watch, colour),
+    ];
+    parts.retain(|p| !p.is_empty());
+    let mut text = format!("{}, {}, {}", many(counts.notes, "note"), many(counts.stages, "stage"), many(limits, "limit"));
+    if !parts.is_empty() {
+        write!(text, ": {}", parts.join(", ")).expect("a string takes all");
+    }
+    if counts.quotes > 0 {
+        write!(text, "; {}", many(counts.quotes, "quote")).expect("a string takes all");
+        if counts.rewritten > 0 {
+            write!(text, ", {} rewritten", counts.rewritten).expect("a string takes all");
+        }
+        if counts.stale > 0 {
+            write!(text, ", {}", paint(&format!("{} stale", counts.stale), Ink::Bad, colour)).expect("a string takes all");
+        }
+    }
+    if counts.faults > 0 {
+        write!(text, "; {}", paint(&many(counts.faults, "error"), Ink::Bad, colour)).expect("a string takes all");
+    }
+    text.push('\n');
+    text
+}
+
+fn paint_some(count: usize, word: &str, ink: Ink, colour: bool) -> String {
+    if count == 0 { String::new() } else { paint(&format!("{count} {word}"), ink, colour) }
+}
+
+fn many(count: usize, word: &str) -> String {
+    format!("{count} {word}{}", if count == 1 { "" } else { "s" })
+}
