@@ -1,0 +1,95 @@
+// The custom element: it carries events into the wasm and brings the static sheet back when anything fails.
+// Its surroundings (see the site builder) define stageleaf_wasm, STAGELEAF_WASM (hex) and STAGELEAF_STYLE.
+if (!globalThis.customElements || customElements.get("stageleaf-sheet")) return;
+
+const EVENTS = ["keydown", "change", "click", "pointermove", "pointerleave", "focusin"];
+const QUIET = "Values cannot be tried here: the page shows the sheet as the note has it.";
+
+/** Compiles the wasm once. @returns {boolean} whether it is there */
+let started;
+function start() {
+  if (started === undefined) {
+    try {
+      const bytes = new Uint8Array(STAGELEAF_WASM.length / 2);
+      for (let i = 0; i < bytes.length; i++) bytes[i] = parseInt(STAGELEAF_WASM.substr(2 * i, 2), 16);
+      stageleaf_wasm.initSync({ module: bytes });
+      started = true;
+    } catch {
+      started = false; // no WebAssembly, or a policy that refuses it
+    }
+  }
+  return started;
+}
+
+/** Adds the stylesheet by a way that strict policies allow. */
+function dress() {
+  if (!document.adoptedStyleSheets || dress.done) return;
+  dress.done = true;
+  const sheet = new CSSStyleSheet();
+  sheet.replaceSync(STAGELEAF_STYLE);
+  document.adoptedStyleSheets = [...document.adoptedStyleSheets, sheet];
+}
+
+const seen = globalThis.IntersectionObserver && new IntersectionObserver(
+  (entries) => { for (const entry of entries) if (entry.isIntersecting) entry.target.mount(); },
+  { rootMargin: "600px" },
+);
+
+class StageleafSheet extends HTMLElement {
+  connectedCallback() {
+    if (this.known) return; // moved within the page
+    this.known = true;
+    dress();
+    const ready = () => {
+      for (const name of EVENTS) this.addEventListener(name, this);
+      addEventListener("hashchange", () => this.guard(() => this.live.follow(location.hash.slice(1))));
+      const named = location.hash.startsWith("#stageleaf-") && location.hash.includes("/" + encodeURIComponent(this.id) + "/");
+      if (named) this.scrollIntoView();
+      if (seen && !named) seen.observe(this); else this.mount();
+    };
+    if (document.readyState === "loading") addEventListener("DOMContentLoaded", ready, { once: true }); else ready();
+  }
+
+  mount() {
+    if (this.tried) return;
+    this.tried = true;
+    if (seen) seen.unobserve(this);
+    this.baked = this.innerHTML;
+    if (!start()) return this.fail();
+    try {
+      this.live = new stageleaf_wasm.Live(this, location.hash.slice(1));
+    } catch {
+      this.fail();
+    }
+  }
+
+  /** @param {Event} event */
+  handleEvent(event) {
+    if (event.type === "focusin") this.mount();
+    this.guard(() => {
+      if (!this.live.on(event) || this.frame) return;
+      this.frame = requestAnimationFrame(() => { this.frame = 0; this.guard(() => this.live.draw()); });
+    });
+  }
+
+  /** Runs `work` unless it is running already: changes of the page cause events of their own. @param {() => void} work */
+  guard(work) {
+    if (!this.live || this.busy) return;
+    this.busy = true;
+    try { work(); } catch { this.fail(); } finally { this.busy = false; }
+  }
+
+  /** The sheet as the page brought it, and one quiet line. */
+  fail() {
+    this.broken = this.live; // kept: freeing what a panic left half-way would fail again
+    this.live = undefined;
+    this.removeAttribute("data-live");
+    this.innerHTML = this.baked;
+    const line = document.createElement("p");
+    line.className = "stageleaf-quiet";
+    line.setAttribute("data-by-script", "");
+    line.textContent = QUIET;
+    this.append(line);
+  }
+}
+customElements.define("stageleaf-sheet", StageleafSheet);

@@ -1,0 +1,443 @@
+//! A sheet that follows its values: the page's side of it.
+
+use std::collections::BTreeMap;
+
+use stageleaf_math::{kind::Kind, limit::Verdict};
+use stageleaf_note::{Problem, template::template_for};
+use stageleaf_sheet::{Section, Sheet, problems_markup, render, sections};
+use wasm_bindgen::{JsCast, JsError, JsValue, prelude::wasm_bindgen};
+use web_sys::{Document, Element, Event, HtmlElement, HtmlInputElement, HtmlSelectElement, KeyboardEvent, MouseEvent};
+
+use crate::{
+    controls::{Action, Controls, set},
+    data::Data,
+    link,
+    model::{Model, announcement},
+    patch::{self, find},
+    readout::Readout,
+    step::{Step, step},
+};
+
+const PROBLEMS: &str = "problems";
+const BODY: &str = ":scope > .stageleaf-body";
+/// What an empty sheet starts with.
+const FIRST_KIND: Kind = Kind::NonInverting;
+const NEW_NAME: &str = "New stage";
+const HINT: &str = "Change a value in the sheet: Enter takes it, Escape restores it, ↑ and ↓ step it, Page keys by a decade.";
+
+/// A typed value that could not be taken.
+#[derive(Clone, Debug)]
+struct Trouble {
+    typed: String,
+    problems: Vec<Problem>,
+}
+
+/// What the next frame has to do.
+#[derive(Clone, Debug)]
+enum Work {
+    /// A value typed or stepped.
+    Edit { path: String, value: String },
+    /// The whole sheet again.
+    Show,
+}
+
+/// One live sheet. `element.js` owns it, and drops it when anything fails.
+#[wasm_bindgen]
+#[derive(Debug)]
+pub struct Live {
+    document: Document,
+    host: HtmlElement,
+    body: Element,
+    controls: Controls,
+    model: Model,
+    shown: Vec<Section>,
+    troubles: BTreeMap<String, Trouble>,
+    notices: Vec<Problem>,
+    work: Option<Work>,
+    readout: Readout,
+}
+
+#[wasm_bindgen]
+impl Live {
+    /// Makes the sheet in `host` live. `fragment` is the page's address after `#`.
+    #[wasm_bindgen(constructor)]
+    pub fn new(host: HtmlElement, fragment: &str) -> Result<Live, JsError> {
+        let document = host.owner_document().ok_or_else(|| JsError::new("the sheet is in no document"))?;
+        let json = find(&host, ":scope > script[type='application/json']").and_then(|script| script.text_content()).unwrap_or_default();
+        let data = Data::read(&json).map_err(|words| JsError::new(&words))?;
+        let empty = data.block.is_none();
+        let start = data.shelf.parts.first().map(|first| template_for(FIRST_KIND, NEW_NAME, &first.part.id)).unwrap_or_default();
+        let model = Model::new(data, &start).map_err(|problems| refusal(&problems))?;
+        let refused = || JsError::new("the page takes no elements");
+        let body = if empty {
+            empty_body(&document, &host, &model).ok_or_else(refused)?
+        } else {
+            find(&host, BODY).ok_or_else(|| JsError::new("the sheet has no static body"))?
+        };
+        let mut controls = Controls::new(&document, HINT).ok_or_else(refused)?;
+        if empty {
+            let kinds: Vec<(&str, &str)> = Kind::ALL.iter().map(|kind| (kind.id(), kind.spec().title)).collect();
+            let parts: Vec<(&str, &str)> =
+                model.shelf().parts.iter().map(|entry| (entry.part.id.as_str(), entry.part.name.as_str())).collect();
+            controls.choose("kind", "Stage kind", &kinds);
+            controls.choose("part", "Part", &parts);
+        }
+        let shown = rendered(&model, &host.id());
+        let mut live = Self {
+            document,
+            host,
+            body,
+            controls,
+            model,
+            shown,
+            troubles: BTreeMap::new(),
+            notices: Vec::new(),
+            work: None,
+            readout: Readout::default(),
+        };
+        live.verify();
+        live.host.prepend_with_node_1(live.controls.element()).map_err(|_| refused())?;
+        live.follow(fragment);
+        set(&live.host, "data-live", "");
+        live.settle();
+        Ok(live)
+    }
+
+    /// Takes an event that reached the host. Returns whether a frame is wanted.
+    pub fn on(&mut self, event: &Event) -> bool {
+        let Some(target) = event.target().and_then(|target| target.dyn_into::<Element>().ok()) else { return false };
+        match event.type_().as_str() {
+            "keydown" => {
+                if let Some(key) = event.dyn_ref::<KeyboardEvent>() {
+                    self.key(key, &target);
+                }
+            }
+            "change" => {
+                if let Some(input) = value_input(&target) {
+                    self.typed(&input);
+                } else if let Some(choice) = target.dyn_ref::<HtmlSelectElement>() {
+                    self.choose(choice);
+                }
+            }
+            "pointermove" => {
+                if let Some(pointer) = event.dyn_ref::<MouseEvent>() {
+                    let Self { readout, body, model, host, .. } = self;
+                    with_sheet(model, &host.id(), |sheet| readout.point(sheet, body, pointer, &target));
+                }
+            }
+            "pointerleave" => self.readout.hide(&self.body),
+            "focusin" => {
+                let Self { readout, model, host, .. } = self;
+                with_sheet(model, &host.id(), |sheet| readout.focus(sheet, &target));
+            }
+            "click" => {
+                if let Some(action) = Action::of(&target) {
+                    self.act(action);
+                }
+            }
+            _ => {}
+        }
+        self.work.is_some()
+    }
+
+    /// Does what events asked for since the last frame.
+    pub fn draw(&mut self) {
+        let before = self.model.verdicts();
+        match self.work.take() {
+            None => return,
+            Some(Work::Show) => {}
+            Some(Work::Edit { path, value }) => self.edit(path, value),
+        }
+        self.show(&before);
+    }
+
+    /// Follows the page's address when it changes.
+    pub fn follow(&mut self, fragment: &str) {
+        let before = self.model.verdicts();
+        let found = link::read(fragment, &self.host.id());
+        if found != link::Found::Nothing {
+            self.notices = self.model.follow(found);
+            self.troubles.clear();
+            self.show(&before);
+        }
+    }
+}
+
+impl Live {
+    fn key(&mut self, event: &KeyboardEvent, target: &Element) {
+        let plain = !(event.ctrl_key() || event.meta_key() || event.alt_key());
+        let key = event.key();
+        if plain && key != "Escape" {
+            // Books turn pages and open searches at single keys.
+            event.stop_propagation();
+        }
+        if !plain && !event.alt_key() {
+            let way = match (key.to_ascii_lowercase().as_str(), event.shift_key()) {
+                ("z", false) => Action::Undo,
+                ("z", true) | ("y", _) => Action::Redo,
+                _ => return,
+            };
+            // Inside a half-typed value the browser's own undo is meant.
+            if value_input(target).is_none_or(|input| self.accepted(&input).is_some_and(|text| text == input.value())) {
+                event.prevent_default();
+                self.act(way);
+            }
+            return;
+        }
+        if !plain {
+            return;
+        }
+        let Some(input) = value_input(target) else {
+            let Self { readout, model, host, .. } = self;
+            if with_sheet(model, &host.id(), |sheet| readout.key(sheet, &key, target)) == Some(true) {
+                event.prevent_default();
+            }
+            return;
+        };
+        let way = match key.as_str() {
+            "Enter" => {
+                event.prevent_default();
+                return self.typed(&input);
+            }
+            "Escape" => return self.restore(&input, event),
+            "ArrowUp" => Step::Up,
+            "ArrowDown" => Step::Down,
+            "PageUp" => Step::DecadeUp,
+            "PageDown" => Step::DecadeDown,
+            _ => return,
+        };
+        let path = path_of(&input);
+        let next = step(&path, &input.value(), way, self.model.block().stage.kind, self.model.settings());
+        if let Some(next) = next {
+            event.prevent_default();
+            input.set_value(&next);
+            self.ask(path, next);
+        }
+    }
+
+    /// Another kind or part, where the sheet is not a note's.
+    fn choose(&mut self, choice: &HtmlSelectElement) {
+        let value = choice.value();
+        let part = self.model.block().stage.part.id.clone();
+        let before = self.model.verdicts();
+        let result = match choice.name().as_str() {
+            "kind" => Kind::from_id(&value).map_or(Ok(()), |kind| self.model.replace(&template_for(kind, NEW_NAME, &part))),
+            "part" => self.model.edit("part", &value),
+            _ => return,
+        };
+        self.troubles.clear();
+        self.notices = result.err().unwrap_or_default();
+        self.show(&before);
+    }
+
+    /// The text that the sheet has for an input.
+    fn accepted(&self, input: &HtmlInputElement) -> Option<String> {
+        input.get_attribute("value").or_else(|| self.model.block().field(&path_of(input)).map(|field| field.text.clone()))
+    }
+
+    fn restore(&mut self, input: &HtmlInputElement, event: &KeyboardEvent) {
+        let Some(text) = self.accepted(input) else { return };
+        let path = path_of(input);
+        let pending = matches!(&self.work, Some(Work::Edit { path: other, .. }) if *other == path);
+        if text != input.value() || self.troubles.contains_key(&path) || pending {
+            event.stop_propagation();
+            input.set_value(&text);
+            self.troubles.remove(&path);
+            self.work = Some(Work::Show);
+        }
+    }
+
+    fn typed(&mut self, input: &HtmlInputElement) {
+        let (path, value) = (path_of(input), input.value());
+        if self.accepted(input).as_deref() == Some(value.as_str()) && !self.troubles.contains_key(&path) {
+            return;
+        }
+        self.ask(path, value);
+    }
+
+    /// Leaves an edit for the next frame; one of another value that still waits is done first.
+    fn ask(&mut self, path: String, value: String) {
+        if let Some(Work::Edit { path: other, value: waiting }) = self.work.take()
+            && other != path
+        {
+            self.edit(other, waiting);
+        }
+        self.work = Some(Work::Edit { path, value });
+    }
+
+    fn edit(&mut self, path: String, value: String) {
+        match self.model.edit(&path, value.trim()) {
+            Ok(()) => {
+                self.troubles.remove(&path);
+            }
+            Err(problems) => {
+                self.troubles.insert(path, Trouble { typed: value, problems });
+            }
+        }
+    }
+
+    fn act(&mut self, action: Action) {
+        if self.work.is_some() {
+            self.draw();
+        }
+        let way = match action {
+            Action::Undo => self.model.undo(),
+            Action::Redo => self.model.redo(),
+            Action::Reset => self.model.reset(),
+            Action::Copy => {
+                let block = self.model.block().text.trim_end();
+                return self.controls.offer("The block as it is now, for the note", &format!("```stageleaf\n{block}\n```"));
+            }
+            Action::Link => return self.link(),
+        };
+        self.troubles.clear();
+        self.notices = way.err().unwrap_or_default();
+        self.work = Some(Work::Show);
+    }
+
+    /// Puts the changed values into the address, by whichever way the page allows, and shows the address.
+    fn link(&self) {
+        let Some(window) = web_sys::window() else { return };
+        let location = window.location();
+        let now = location.hash().unwrap_or_default();
+        let fragment = format!("#{}", link::write(now.trim_start_matches('#'), &self.host.id(), &self.model.changes()));
+        let replaced = window.history().and_then(|history| history.replace_state_with_url(&JsValue::NULL, "", Some(&fragment)));
+        if replaced.is_err() {
+            // In a frame whose page is inline only this way is allowed; where neither is, the text is still there to copy.
+            let _ = location.set_hash(&fragment);
+        }
+        let href = location.href().unwrap_or_default();
+        let base = href.split('#').next().unwrap_or_default();
+        self.controls.offer("Address of the sheet with these values", &format!("{base}{fragment}"));
+    }
+
+    /// Renders, patches what differs, tells what changed.
+    fn show(&mut self, before: &[(String, Verdict)]) {
+        for section in self.fresh() {
+            if let (Some(new), Some(old)) = (patch::parse(&self.document, &section.markup), self.section(section.id)) {
+                patch::children(&old, &new);
+            }
+        }
+        if let Some(words) = announcement(before, &self.model.verdicts()) {
+            self.controls.say(&words);
+        } else if !self.troubles.is_empty() {
+            self.controls.say("The value was not taken; the sheet still shows the last good one.");
+        } else {
+            self.controls.say("");
+        }
+        self.settle();
+    }
+
+    /// Renders anew and returns the sections whose markup differs from what is shown.
+    fn fresh(&mut self) -> Vec<Section> {
+        let fresh = rendered(&self.model, &self.host.id());
+        let shown = std::mem::replace(&mut self.shown, fresh.clone());
+        // What is wrong with typed text is shown there by `settle`; the renderer leaves it empty.
+        fresh.into_iter().filter(|section| section.id != PROBLEMS && !shown.contains(section)).collect()
+    }
+
+    fn section(&self, id: &str) -> Option<Element> {
+        find(&self.body, &format!(":scope > [data-section='{id}']"))
+    }
+
+    /// Inputs, marks and buttons as the model has them.
+    fn settle(&self) {
+        let Ok(inputs) = self.body.query_selector_all("input[data-path]") else { return };
+        for input in (0..inputs.length()).filter_map(|index| inputs.item(index)?.dyn_into::<HtmlInputElement>().ok()) {
+            if let Some(trouble) = self.troubles.get(&path_of(&input)) {
+                set(&input, "aria-invalid", "true");
+                set(&input, "aria-errormessage", &self.problems_id());
+                if input.value() != trouble.typed {
+                    input.set_value(&trouble.typed);
+                }
+            } else {
+                let _ = input.remove_attribute("aria-invalid");
+                let _ = input.remove_attribute("aria-errormessage");
+                let text = input.get_attribute("value").unwrap_or_default();
+                if input.value() != text {
+                    input.set_value(&text);
+                }
+            }
+        }
+        self.explain();
+        self.controls.allow(self.model.ways());
+        let stage = &self.model.block().stage;
+        self.controls.chosen(&[("kind", stage.kind.id()), ("part", &stage.part.id)]);
+    }
+
+    /// The section of problems: what typed values and links were refused, and why.
+    fn explain(&self) {
+        let Some(section) = self.section(PROBLEMS) else { return };
+        let problems: Vec<Problem> = self.troubles.values().flat_map(|trouble| &trouble.problems).chain(&self.notices).cloned().collect();
+        section.set_inner_html(&problems_markup(&problems));
+        if let Some(list) = section.first_element_child() {
+            list.set_id(&self.problems_id());
+        }
+        if problems.is_empty() {
+            set(&section, "hidden", "");
+        } else {
+            let _ = section.remove_attribute("hidden");
+        }
+    }
+
+    fn problems_id(&self) -> String {
+        format!("{}.problems", self.host.id())
+    }
+
+    /// The page's static sheet is left as it is where it is the document that this crate renders, and mended where not.
+    fn verify(&self) {
+        for section in &self.shown {
+            let (Some(new), Some(old)) = (patch::parse(&self.document, &section.markup), self.section(section.id)) else { continue };
+            if !patch::same(&old, &new) {
+                set(&self.host, "data-mended", section.id);
+                patch::children(&old, &new);
+            }
+        }
+    }
+}
+
+fn rendered(model: &Model, id: &str) -> Vec<Section> {
+    with_sheet(model, id, sections).unwrap_or_default()
+}
+
+/// What the renderer takes. The block was read with this shelf, so its part is on it.
+fn with_sheet<T>(model: &Model, id: &str, work: impl FnOnce(&Sheet) -> T) -> Option<T> {
+    let block = model.block();
+    let part = model.shelf().find(&block.stage.part.id)?;
+    Some(work(&Sheet { block, report: model.report(), part, id }))
+}
+
+/// The place of a sheet that no note brought.
+fn empty_body(document: &Document, host: &HtmlElement, model: &Model) -> Option<Element> {
+    let whole = with_sheet(model, &host.id(), render)?;
+    host.set_text_content(None);
+    host.append_child(&*patch::parse(document, &whole)?).ok()?;
+    find(host, BODY)
+}
+
+fn refusal(problems: &[Problem]) -> JsError {
+    JsError::new(&problems.iter().map(ToString::to_string).collect::<Vec<_>>().join("\n"))
+}
+
+fn value_input(target: &Element) -> Option<HtmlInputElement> {
+    target.dyn_ref::<HtmlInputElement>().filter(|input| input.has_attribute("data-path")).cloned()
+}
+
+fn path_of(input: &HtmlInputElement) -> String {
+    input.get_attribute("data-path").unwrap_or_default()
+}
+
+/// Every figure of a sheet's data as `id value low high`, numbers as the hexadecimal bits of an IEEE 754 double, one
+/// figure a line: what the browser computed, for comparison with the native result bit by bit.
+#[wasm_bindgen]
+pub fn figures_bits(json: &str) -> Result<String, JsError> {
+    let data = Data::read(json).map_err(|words| JsError::new(&words))?;
+    let model = Model::new(data, "").map_err(|problems| refusal(&problems))?;
+    let bits = |value: f64| format!("{:016x}", value.to_bits());
+    let line = |row: &stageleaf_math::report::FigureRow| {
+        let value = row.nominal.value().map_or_else(|| "-".to_owned(), bits);
+        let (low, high) = row.range.map_or_else(|| ("-".to_owned(), "-".to_owned()), |(low, high)| (bits(low), bits(high)));
+        format!("{}\t{value}\t{low}\t{high}", stageleaf_note::query_text(row.query))
+    };
+    Ok(model.report().figures.iter().map(line).collect::<Vec<_>>().join("\n"))
+}

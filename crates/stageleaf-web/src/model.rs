@@ -1,0 +1,192 @@
+//! The sheet's state without a page: the block's text, its report, and the way back.
+
+use stageleaf_math::{limit::Verdict, report::Report};
+use stageleaf_note::{Block, Place, Problem, Settings, Shelf, problem::quoted, read_block};
+
+use crate::{data::Data, link::Found};
+
+/// Steps that undo can take back.
+const HISTORY: usize = 200;
+/// A longer value than this is no value.
+const LONGEST: usize = 400;
+
+/// A stage as the sheet shows it now, and as the note has it.
+#[derive(Debug)]
+pub struct Model {
+    shelf: Shelf,
+    settings: Settings,
+    place: Place,
+    original: Block,
+    block: Block,
+    report: Report,
+    undo: Vec<String>,
+    redo: Vec<String>,
+}
+
+impl Model {
+    /// Reads the page's data; an empty sheet starts with `start`.
+    ///
+    /// # Errors
+    /// What is wrong with a block that cannot be read or analysed: the page's sheet then stays as it is.
+    pub fn new(data: Data, start: &str) -> Result<Self, Vec<Problem>> {
+        let Data { block, file, line, shelf, settings } = data;
+        let place = Place::new(&file, line);
+        let text = block.unwrap_or_else(|| start.to_owned());
+        let (block, report) = analyse(&text, &place, &shelf, &settings)?;
+        Ok(Self { shelf, settings, place, original: block.clone(), block, report, undo: Vec::new(), redo: Vec::new() })
+    }
+
+    /// The block now.
+    pub const fn block(&self) -> &Block {
+        &self.block
+    }
+
+    /// What the engine found about it.
+    pub const fn report(&self) -> &Report {
+        &self.report
+    }
+
+    /// The parts at hand.
+    pub const fn shelf(&self) -> &Shelf {
+        &self.shelf
+    }
+
+    /// The team's settings.
+    pub const fn settings(&self) -> &Settings {
+        &self.settings
+    }
+
+    /// Whether there is something to take back, something to do again, and a difference from the note.
+    pub fn ways(&self) -> [bool; 3] {
+        [!self.undo.is_empty(), !self.redo.is_empty(), self.block.text != self.original.text]
+    }
+
+    /// Puts `value` at `path`.
+    ///
+    /// # Errors
+    /// What is wrong with it; nothing has changed then.
+    pub fn edit(&mut self, path: &str, value: &str) -> Result<(), Vec<Problem>> {
+        if value.len() > LONGEST {
+            let words = format!("{} characters are too long for a value", value.chars().count());
+            return Err(vec![self.problem(words).allowed(format!("at most {LONGEST} bytes"))]);
+        }
+        let text = self.block.rewrite(path, value);
+        self.replace(&text)
+    }
+
+    /// Puts a whole block in place.
+    ///
+    /// # Errors
+    /// What is wrong with it; nothing has changed then.
+    pub fn replace(&mut self, text: &str) -> Result<(), Vec<Problem>> {
+        if text == self.block.text {
+            return Ok(());
+        }
+        let before = self.block.text.clone();
+        self.take(text)?;
+        self.undo.push(before);
+        if self.undo.len() > HISTORY {
+            self.undo.remove(0);
+        }
+        self.redo.clear();
+        Ok(())
+    }
+
+    /// Takes the last change back.
+    pub fn undo(&mut self) -> Result<(), Vec<Problem>> {
+        let Some(text) = self.undo.pop() else { return Ok(()) };
+        self.redo.push(self.block.text.clone());
+        self.take(&text)
+    }
+
+    /// Makes a change again that was taken back.
+    pub fn redo(&mut self) -> Result<(), Vec<Problem>> {
+        let Some(text) = self.redo.pop() else { return Ok(()) };
+        self.undo.push(self.block.text.clone());
+        self.take(&text)
+    }
+
+    /// The note's own values; can be taken back.
+    pub fn reset(&mut self) -> Result<(), Vec<Problem>> {
+        let text = self.original.text.clone();
+        self.replace(&text)
+    }
+
+    /// Values that differ from the note's.
+    pub fn changes(&self) -> Vec<(String, String)> {
+        let differs = |path: &str, text: &str| self.original.field(path).is_none_or(|field| field.text != text);
+        self.block
+            .fields
+            .iter()
+            .filter(|field| differs(&field.path, &field.text))
+            .map(|field| (field.path.clone(), field.text.clone()))
+            .collect()
+    }
+
+    /// Applies what an address says; returns words about what was left out.
+    pub fn follow(&mut self, found: Found) -> Vec<Problem> {
+        let changes = match found {
+            Found::Nothing => return Vec::new(),
+            Found::OtherVersion => {
+                return vec![self.problem("the link is in a format of another version: its values were not used".to_owned())];
+            }
+            Found::Changes(changes) => changes,
+        };
+        let mut problems = Vec::new();
+        for (path, value) in changes {
+            let known = self.block.field(&path).is_some()
+                || path
+                    .strip_prefix("components.")
+                    .is_some_and(|name| self.block.stage.kind.components().iter().any(|spec| spec.name == name));
+            if known {
+                problems.extend(self.edit(&path, &value).err().unwrap_or_default());
+            } else {
+                problems.push(self.problem(format!("the link names {}, which this stage has not: it was left out", quoted(&path))));
+            }
+        }
+        problems
+    }
+
+    /// The limits' names with their verdicts.
+    pub fn verdicts(&self) -> Vec<(String, Verdict)> {
+        self.report.limits.iter().map(|row| (heading(row.limit.query), row.verdict)).collect()
+    }
+
+    /// A problem that is at no place of the block's text.
+    fn problem(&self, message: String) -> Problem {
+        Problem::on_line(&self.place.file, self.place.first_line, 1, 1, "", message)
+    }
+
+    fn take(&mut self, text: &str) -> Result<(), Vec<Problem>> {
+        let (block, report) = analyse(text, &self.place, &self.shelf, &self.settings)?;
+        self.block = block;
+        self.report = report;
+        Ok(())
+    }
+}
+
+/// What changed between two lists of verdicts, in words; nothing where nothing did.
+pub fn announcement(before: &[(String, Verdict)], after: &[(String, Verdict)]) -> Option<String> {
+    let changed: Vec<String> = after
+        .iter()
+        .filter_map(|(name, now)| {
+            let (_, then) = before.iter().find(|(other, _)| other == name)?;
+            (then != now).then(|| format!("{name}: {} now, {} before.", now.word(), then.word()))
+        })
+        .collect();
+    (!changed.is_empty()).then(|| changed.join(" "))
+}
+
+fn heading(query: stageleaf_math::figure::Query) -> String {
+    match query.at {
+        Some(at) => format!("{} {}", query.figure.title(), stageleaf_note::format(at, stageleaf_math::dimension::Dimension::Frequency, 3)),
+        None => query.figure.title().to_owned(),
+    }
+}
+
+fn analyse(text: &str, place: &Place, shelf: &Shelf, settings: &Settings) -> Result<(Block, Report), Vec<Problem>> {
+    let block = read_block(text, place, shelf, settings)?;
+    let report = stageleaf_math::analyse(&block.stage)
+        .map_err(|error| vec![Problem::on_line(&place.file, place.first_line, 1, 1, "", error.to_string())])?;
+    Ok((block, report))
+}

@@ -1,0 +1,135 @@
+//! Arrow keys on a value: the next text up or down.
+//!
+//! Resistances and capacitances go through the team's series; other quantities change in their second digit. Only the
+//! nominal value moves: tolerance, drift and rating stay as typed. All steps are made on decimal digits, so that no
+//! rounding creeps in.
+
+use stageleaf_math::{dimension::Dimension, kind::Kind, series::Series};
+use stageleaf_note::{Settings, code, format, parse};
+
+/// How far to go.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Step {
+    /// To the next value above.
+    Up,
+    /// To the next value below.
+    Down,
+    /// A decade up.
+    DecadeUp,
+    /// A decade down.
+    DecadeDown,
+}
+
+/// The text after a step from `text` at `path`, where that value has steps.
+pub fn step(path: &str, text: &str, step: Step, kind: Kind, settings: &Settings) -> Option<String> {
+    let dimension = dimension(path, kind)?;
+    let (nominal, rest) = split(text, dimension)?;
+    if rest.contains(" to ") {
+        return None;
+    }
+    let value = parse(nominal, dimension).ok().filter(|value| value.is_finite() && *value != 0.0)?;
+    let series = match dimension {
+        Dimension::Resistance => Some(settings.resistor_series),
+        Dimension::Capacitance => Some(settings.capacitor_series),
+        _ => None,
+    };
+    let next = match (step, series) {
+        (Step::DecadeUp, _) => shifted(value, 1),
+        (Step::DecadeDown, _) => shifted(value, -1),
+        (Step::Up, Some(series)) => in_series(series, value, true),
+        (Step::Down, Some(series)) => in_series(series, value, false),
+        (Step::Up, None) => by_digit(value, true),
+        (Step::Down, None) => by_digit(value, false),
+    };
+    // Nothing that a board holds lies outside of this.
+    let next = next.filter(|next| (1e-18..=1e15).contains(&next.abs()))?;
+    let shown = if series.is_some() && !nominal.contains(char::is_whitespace) { code(next, dimension) } else { format(next, dimension, 3) };
+    Some(format!("{shown}{rest}"))
+}
+
+fn dimension(path: &str, kind: Kind) -> Option<Dimension> {
+    if let Some(name) = path.strip_prefix("components.") {
+        return kind.components().iter().find(|spec| spec.name == name).map(|spec| spec.dimension);
+    }
+    match path {
+        "supply.positive" | "supply.negative" | "signal.peak" | "signal.peak_to_peak" | "signal.rms" | "signal.dc" => {
+            Some(Dimension::Voltage)
+        }
+        "signal.frequency" | "band.from" | "band.to" => Some(Dimension::Frequency),
+        "source.resistance" | "load.resistance" => Some(Dimension::Resistance),
+        "source.capacitance" | "load.capacitance" | "board.inverting_node" | "board.non_inverting_node" | "board.across_feedback" => {
+            Some(Dimension::Capacitance)
+        }
+        _ => None,
+    }
+}
+
+/// The longest beginning of `text` that is one quantity, and the rest.
+fn split(text: &str, dimension: Dimension) -> Option<(&str, &str)> {
+    let ends = text.char_indices().filter(|(_, c)| c.is_whitespace()).map(|(at, _)| at).chain([text.len()]);
+    let end = ends.filter(|end| parse(&text[..*end], dimension).is_ok()).last()?;
+    Some(text.split_at(end))
+}
+
+fn shifted(value: f64, decades: i32) -> Option<f64> {
+    let text = format!("{value:e}");
+    let (digits, exponent) = text.split_once('e')?;
+    format!("{digits}e{}", exponent.parse::<i32>().ok()? + decades).parse().ok()
+}
+
+fn by_digit(value: f64, up: bool) -> Option<f64> {
+    let text = format!("{:.1e}", value.abs());
+    let (digits, exponent) = text.split_once('e')?;
+    let digits: i64 = digits.replace('.', "").parse().ok()?;
+    let exponent: i32 = exponent.parse().ok()?;
+    let grows = up == (value > 0.0);
+    let (next, exponent) = match (digits, grows) {
+        (_, true) => (digits + 1, exponent - 1),
+        // Below 1.0 the second digit is the next decade's first.
+        (10, false) => (99, exponent - 2),
+        (_, false) => (digits - 1, exponent - 1),
+    };
+    let size: f64 = format!("{next}e{exponent}").parse().ok()?;
+    Some(if value > 0.0 { size } else { -size })
+}
+
+fn in_series(series: Series, value: f64, up: bool) -> Option<f64> {
+    if value <= 0.0 {
+        return None;
+    }
+    Some(if up { series.above(value) } else { series.below(value) })
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn after(path: &str, text: &str, way: Step) -> Option<String> {
+        step(path, text, way, Kind::NonInverting, &Settings::default())
+    }
+
+    #[test]
+    fn a_resistor_steps_through_its_series_and_keeps_its_tolerance() {
+        // IEC 60063, E24: 4.7, 5.1; 9.1, 10.
+        assert_eq!(after("components.Rf", "4k7 1% 50ppm", Step::Up).as_deref(), Some("5k1 1% 50ppm"));
+        assert_eq!(after("components.Rf", "91k", Step::Up).as_deref(), Some("100k"));
+        assert_eq!(after("components.Rf", "100k", Step::Down).as_deref(), Some("91k"));
+        assert_eq!(after("components.Rf", "4k7 1%", Step::DecadeUp).as_deref(), Some("47k 1%"));
+    }
+
+    #[test]
+    fn a_voltage_changes_in_its_second_digit() {
+        assert_eq!(after("signal.peak", "0.4 V", Step::Up).as_deref(), Some("410 mV"));
+        assert_eq!(after("signal.peak", "1 V", Step::Down).as_deref(), Some("990 mV"));
+        assert_eq!(after("supply.positive", "12 V ± 5 %", Step::Up).as_deref(), Some("13 V ± 5 %"));
+        assert_eq!(after("supply.negative", "-12 V", Step::Up).as_deref(), Some("−11 V"));
+    }
+
+    #[test]
+    fn what_has_no_steps_stays() {
+        assert_eq!(after("part", "alder-10", Step::Up), None);
+        assert_eq!(after("supply.positive", "3.0 V to 4.2 V", Step::Up), None);
+        assert_eq!(after("signal.dc", "0 V", Step::Up), None);
+        assert_eq!(after("components.Rf", "many", Step::Up), None);
+    }
+}
