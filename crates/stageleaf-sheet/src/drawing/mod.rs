@@ -1,0 +1,141 @@
+//! The circuit as a drawing whose values are fields: one file per stage kind over the symbols of [`kit`].
+
+pub mod follower;
+pub mod inverting;
+pub mod kit;
+pub mod non_inverting;
+mod surroundings;
+
+use maud::{Markup, html};
+use stageleaf_math::{
+    dimension::Dimension,
+    kind::Kind,
+    stage::{Isolation, Source, Stage, Toleranced},
+};
+use stageleaf_note::{Block, format, spoken};
+
+use crate::Sheet;
+use kit::{Canvas, Label};
+
+/// The labels of one stage's components, from its block.
+#[derive(Debug)]
+pub struct Labels<'a> {
+    block: &'a Block,
+}
+
+impl<'a> Labels<'a> {
+    /// The labels of `block`'s components.
+    #[must_use]
+    pub const fn of(block: &'a Block) -> Self {
+        Self { block }
+    }
+
+    /// The stage.
+    #[must_use]
+    pub const fn stage(&self) -> &'a Stage {
+        &self.block.stage
+    }
+
+    /// Whether the stage has this component.
+    #[must_use]
+    pub fn has(&self, name: &str) -> bool {
+        self.stage().component(name).is_some()
+    }
+
+    /// The label of a component, if the stage has it.
+    #[must_use]
+    pub fn component(&self, name: &str) -> Option<Label> {
+        let value = self.stage().component(name)?;
+        let spec = self.stage().kind.components().iter().find(|s| s.name == name)?;
+        Some(self.label(name, format!("components.{name}"), &spec.role.replace('`', ""), value, spec.dimension))
+    }
+
+    /// The label of the source's impedance; a resistance of zero is drawn as none.
+    #[must_use]
+    pub fn source_impedance(&self) -> Option<Label> {
+        match self.stage().source.as_ref()? {
+            Source::Resistive { resistance } => {
+                if resistance.nominal <= 0.0 {
+                    return None;
+                }
+                Some(self.label("Rs", "source.resistance".into(), "source resistance", resistance, Dimension::Resistance))
+            }
+            Source::Capacitive { capacitance } => {
+                Some(self.label("Cs", "source.capacitance".into(), "source capacitance", capacitance, Dimension::Capacitance))
+            }
+        }
+    }
+
+    /// The label of the load resistance, if there is one.
+    #[must_use]
+    pub fn load_resistance(&self) -> Option<Label> {
+        let value = self.stage().load.resistance.as_ref()?;
+        Some(self.label("RL", "load.resistance".into(), "load resistance", value, Dimension::Resistance))
+    }
+
+    /// The label of the load capacitance, if there is one.
+    #[must_use]
+    pub fn load_capacitance(&self) -> Option<Label> {
+        let value = self.stage().load.capacitance.as_ref()?;
+        Some(self.label("CL", "load.capacitance".into(), "load capacitance", value, Dimension::Capacitance))
+    }
+
+    /// The rails' texts; no negative one where that rail is the ground.
+    #[must_use]
+    pub fn rails(&self) -> (String, Option<String>) {
+        let Some(supply) = self.stage().supply else { return ("V+".into(), Some("V−".into())) };
+        let text = |volts: f64| {
+            let text = format(volts, Dimension::Voltage, 3);
+            // A rail reads "12 V", not "12.0 V".
+            let text = match text.split_once(' ') {
+                Some((number, unit)) if number.contains('.') => format!("{} {unit}", number.trim_end_matches('0').trim_end_matches('.')),
+                _ => text,
+            };
+            if volts > 0.0 { format!("+{text}") } else { text }
+        };
+        let n = supply.negative;
+        let grounded = n.low >= 0.0 && n.high <= 0.0;
+        (text(supply.positive.nominal), (!grounded).then(|| text(n.nominal)))
+    }
+
+    fn label(&self, name: &str, path: String, role: &str, value: &Toleranced, dimension: Dimension) -> Label {
+        let written = self.block.field(&path).map(|f| f.text.clone());
+        let spoken = format!("{name}, {role}, {}", spoken(value.nominal, dimension));
+        Label { name: name.into(), path, value: written.unwrap_or_else(|| format(value.nominal, dimension, 4)), spoken }
+    }
+}
+
+/// Lays out the stage's drawing.
+#[must_use]
+pub fn canvas(block: &Block) -> Canvas {
+    let mut canvas = Canvas::default();
+    let labels = Labels::of(block);
+    match block.stage.kind {
+        Kind::Follower => follower::draw(&mut canvas, &labels),
+        Kind::NonInverting => non_inverting::draw(&mut canvas, &labels),
+        Kind::Inverting => inverting::draw(&mut canvas, &labels),
+    }
+    canvas
+}
+
+/// The drawing, with a description in words.
+#[must_use]
+pub fn drawing(sheet: &Sheet) -> Markup {
+    let stage = &sheet.block.stage;
+    let spec = stage.kind.spec();
+    html! {
+        div class="drawing" {
+            (canvas(sheet.block).finish(sheet.id, &format!("Circuit: {}, {}", spec.title.to_lowercase(), spec.ideal_formula)))
+            p class="aside" {
+                (spec.summary) " "
+                @if stage.component("Riso").is_some() {
+                    @match stage.isolation {
+                        Isolation::InsideLoop => "Riso stands inside the loop: Rf senses the load, Cf the pin. ",
+                        Isolation::OutsideLoop => "Riso stands outside the loop: the feedback senses the pin. ",
+                    }
+                }
+                @if stage.source.is_none() { "The source is taken as ideal. " }
+            }
+        }
+    }
+}

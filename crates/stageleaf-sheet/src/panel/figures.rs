@@ -1,0 +1,50 @@
+//! All figures with their spread and basis, by group.
+
+use maud::{Markup, html};
+use stageleaf_math::figure::Group;
+use stageleaf_note::{query_anchor, query_text};
+
+use super::{limits::basis_cell, needs, outcome, title, value};
+use crate::Sheet;
+
+const GROUPS: [(Group, &str); 5] = [
+    (Group::SmallSignal, "Small signal"),
+    (Group::Dc, "DC"),
+    (Group::Noise, "Noise"),
+    (Group::LargeSignal, "Large signal"),
+    (Group::Power, "Power"),
+];
+
+/// The section.
+pub fn figures(sheet: &Sheet) -> Markup {
+    let all = &sheet.report.figures;
+    let judged = |q| sheet.report.limits.iter().any(|l| l.limit.query == q);
+    html! {
+        summary { "All figures" }
+        div class="scroll" tabindex="0" role="group" aria-label="All figures" {
+            table class="figures" {
+                thead { tr { th scope="col" { "figure" } th scope="col" { "nominal" } th scope="col" { "least" } th scope="col" { "greatest" } th scope="col" { "basis" } } }
+                @for (group, name) in GROUPS {
+                    @if all.iter().any(|r| r.query.figure.group() == group) {
+                        tbody {
+                            tr { th class="group" scope="rowgroup" colspan="5" { (name) } }
+                            @for row in all.iter().filter(|r| r.query.figure.group() == group) {
+                                @let d = row.query.figure.dimension();
+                                // The row of a judged figure, to which prose links, stands among the limits.
+                                tr id=[(!judged(row.query)).then(|| format!("{}.{}", sheet.id, query_anchor(row.query)))] {
+                                    th scope="row" { (title(row.query)) " " code { (query_text(row.query)) } (needs(sheet, &row.nominal)) }
+                                    td { (outcome(&row.nominal, d)) }
+                                    @match row.range {
+                                        Some((low, high)) => { td { (value(low, d)) } td { (value(high, d)) } }
+                                        None => { td { "–" } td { "–" } }
+                                    }
+                                    (basis_cell(row.basis))
+                                }
+                            }
+                        }
+                    }
+                }
+            }
+        }
+    }
+}

@@ -1,0 +1,168 @@
+//! The limits, each as a strip with its words, the worst first.
+
+use maud::{Markup, html};
+use stageleaf_math::{
+    dimension::Dimension,
+    limit::{Bound, Limit, Verdict},
+    report::{Coordinate, LimitRow, Outcome, Parameter},
+    stage::Source,
+};
+use stageleaf_note::{limit_text, query_anchor, words};
+
+use super::{basis_word, needs, outcome, title, value};
+use crate::{Sheet, strip::strip};
+
+/// The shape that stands beside a verdict's word.
+pub const fn shape(verdict: Verdict) -> &'static str {
+    match verdict {
+        Verdict::Holds => "●",
+        Verdict::Thin => "◐",
+        Verdict::Breaks => "✕",
+        Verdict::Undetermined => "?",
+        Verdict::Reported => "–",
+    }
+}
+
+/// The class of a verdict's word.
+pub const fn class(verdict: Verdict) -> &'static str {
+    match verdict {
+        Verdict::Holds => "verdict holds",
+        Verdict::Thin => "verdict thin",
+        Verdict::Breaks => "verdict breaks",
+        Verdict::Undetermined => "verdict undetermined",
+        Verdict::Reported => "verdict reported",
+    }
+}
+
+/// The section.
+pub fn limits(sheet: &Sheet) -> Markup {
+    let mut rows: Vec<&LimitRow> = sheet.report.limits.iter().collect();
+    rows.sort_by(|a, b| a.verdict.cmp(&b.verdict).then(relative(a).total_cmp(&relative(b))));
+    html! {
+        p class="caption" role="heading" aria-level="4" { "Limits at the worst case" }
+        @if rows.is_empty() { p class="aside" { "The note states no limits." } }
+        @else {
+            ol class="limits" { @for row in rows { (limit(sheet, row)) } }
+            p class="key aside" aria-hidden="true" { "◆ nominal, ├─┤ spread, hatched: not allowed, shaded: thin" }
+        }
+    }
+}
+
+/// The margin in parts of the limit's own scale, for sorting.
+fn relative(row: &LimitRow) -> f64 {
+    let scale = match row.limit.bound {
+        Bound::AtLeast(v) | Bound::AtMost(v) => v.abs(),
+        Bound::Between { low, high } => (high - low).abs() / 2.0,
+        Bound::Report => 1.0,
+    };
+    let scale = if scale > 0.0 { scale } else { 1.0 };
+    row.margin.filter(|m| !m.is_nan()).map_or(f64::INFINITY, |m| m / scale)
+}
+
+fn limit(sheet: &Sheet, row: &LimitRow) -> Markup {
+    let query = row.limit.query;
+    let d = query.figure.dimension();
+    html! {
+        li class="row" id=(format_args!("{}.{}", sheet.id, query_anchor(query))) {
+            div class="asked" {
+                span class=(class(row.verdict)) { span class="shape" aria-hidden="true" { (shape(row.verdict)) } " " (row.verdict.word()) }
+                @if let Some(basis) = row.basis { span class="basis" { " (" (basis.word()) ")" } }
+                b class="figure" { (title(query)) }
+                span class="asks" { (asks(&row.limit)) }
+            }
+            (strip(row, |v| value(v, d)))
+            div class="found" {
+                @if let (Outcome::Value(n), Outcome::Value(w)) = (&row.nominal, &row.worst) {
+                    span { "nominal " b { (value(*n, d)) } }
+                    @if row.limit.bound == Bound::Report {
+                        @if let Some((low, high)) = row.range { span { "spread " b { (value(low, d)) " to " (value(high, d)) } } }
+                    } @else {
+                        span { "worst " b { (value(*w, d)) } }
+                        @if let Some(text) = left(row) { span class="left" { (text) } }
+                    }
+                } @else if row.nominal == row.worst {
+                    span { (outcome(&row.nominal, d)) }
+                } @else {
+                    span { "nominal " b { (outcome(&row.nominal, d)) } }
+                    span { "worst " b { (outcome(&row.worst, d)) } }
+                }
+            }
+            (needs(sheet, if matches!(row.nominal, Outcome::Value(_)) { &row.worst } else { &row.nominal }))
+            @if !row.corner.is_empty() || row.dominant.is_some() {
+                div class="corner" {
+                    @if !row.corner.is_empty() {
+                        "worst at "
+                        @for (i, c) in row.corner.iter().enumerate() { @if i > 0 { ", " } (coordinate(sheet, c)) }
+                    }
+                    @if let Some(p) = row.dominant {
+                        @if !row.corner.is_empty() { "; " }
+                        (words::parameter_text(p)) " uses most of the margin"
+                    }
+                }
+            }
+        }
+    }
+}
+
+fn asks(limit: &Limit) -> String {
+    match limit.bound {
+        Bound::Report => "shown, not judged".into(),
+        _ => format!("asks {}", limit_text(limit)),
+    }
+}
+
+/// What is left to the limit, or by how much it is missed.
+fn left(row: &LimitRow) -> Option<String> {
+    let d = row.limit.query.figure.dimension();
+    let margin = row.margin.filter(|m| !m.is_nan())?;
+    let short = margin < 0.0;
+    let amount = match (d, row.limit.bound, row.worst.value()) {
+        // Levels are read in dB, so their distance is a ratio.
+        (Dimension::Level, Bound::AtLeast(l) | Bound::AtMost(l), Some(w)) if l > 0.0 && w > 0.0 => {
+            value(if w > l { w / l } else { l / w }, Dimension::Level)
+        }
+        (Dimension::Level, ..) => return None,
+        (Dimension::Temperature, ..) => value(margin.abs(), Dimension::TemperatureDifference),
+        _ => value(margin.abs(), d),
+    };
+    Some(match (short, row.limit.bound) {
+        (false, _) => format!("{amount} left"),
+        (true, Bound::AtLeast(_)) => format!("{amount} short"),
+        (true, Bound::AtMost(_)) => format!("{amount} over"),
+        (true, _) => format!("{amount} outside"),
+    })
+}
+
+/// One coordinate of the corner: "Rf 90.1 kΩ".
+fn coordinate(sheet: &Sheet, c: &Coordinate) -> String {
+    let stage = &sheet.block.stage;
+    let d = match c.parameter {
+        Parameter::Component(name) => {
+            stage.kind.components().iter().find(|s| s.name == name).map_or(Dimension::Number, |s| s.dimension)
+        }
+        Parameter::SourceImpedance => match stage.source {
+            Some(Source::Capacitive { .. }) => Dimension::Capacitance,
+            _ => Dimension::Resistance,
+        },
+        Parameter::LoadResistance => Dimension::Resistance,
+        Parameter::LoadCapacitance | Parameter::StrayInverting | Parameter::StrayNonInverting | Parameter::StrayFeedback => {
+            Dimension::Capacitance
+        }
+        Parameter::SupplyPositive | Parameter::SupplyNegative => Dimension::Voltage,
+        Parameter::Temperature => Dimension::Temperature,
+        Parameter::Part(figure) => figure.dimension(),
+        Parameter::Headroom => Dimension::Fraction,
+    };
+    let name = words::parameter_text(c.parameter);
+    if c.parameter == Parameter::Headroom {
+        let text = if c.value <= 0.0 { "typical".into() } else if c.value >= 1.0 { "guaranteed".into() } else { value(c.value, d) };
+        return format!("{name} {text}");
+    }
+    // Enough digits to see that it differs from the nominal value.
+    format!("{name} {}", if c.value.is_nan() { "–".into() } else { stageleaf_note::format(c.value, d, 4) })
+}
+
+/// The basis as a cell of a table.
+pub fn basis_cell(basis: Option<stageleaf_math::limit::Basis>) -> Markup {
+    html! { td { (basis_word(basis)) } }
+}

@@ -1,0 +1,91 @@
+//! The sections of the sheet beside the drawing.
+
+mod conditions;
+mod curves;
+mod figures;
+mod head;
+mod limits;
+mod origin;
+mod tables;
+mod working;
+
+pub use conditions::{conditions, problems_markup};
+pub use curves::{envelope, loop_gain, noise, response};
+pub use figures::figures;
+pub use head::head;
+pub use limits::limits;
+pub use origin::{model, provenance};
+pub use tables::{dc, poles};
+pub use working::working;
+
+use maud::{Markup, html};
+use stageleaf_math::{
+    dimension::Dimension,
+    figure::{Figure, Query},
+    limit::Basis,
+    report::{FigureRow, Outcome},
+};
+use stageleaf_note::{format, words};
+
+use crate::Sheet;
+
+/// Digits of a figure.
+const DIGITS: usize = 3;
+
+/// A figure's title with its argument: "Gain at 2 MHz".
+fn title(query: Query) -> String {
+    match query.at {
+        Some(f) => format!("{} {}", query.figure.title(), format(f, Dimension::Frequency, 4)),
+        None => query.figure.title().to_owned(),
+    }
+}
+
+/// A value in the figure's unit; never "NaN".
+fn value(v: f64, dimension: Dimension) -> String {
+    if v.is_nan() { "–".into() } else { format(v, dimension, DIGITS) }
+}
+
+/// An outcome in a few words, with what it needs in the list after it.
+fn outcome(o: &Outcome, dimension: Dimension) -> String {
+    match o {
+        Outcome::Value(v) => value(*v, dimension),
+        _ => words::outcome_text(o, dimension, DIGITS),
+    }
+}
+
+/// What an undetermined figure needs.
+fn needs(sheet: &Sheet, o: &Outcome) -> Markup {
+    html! {
+        @if let Outcome::Undetermined(needs) = o {
+            ul class="needs" { @for need in needs { li { "needs " (words::need_text(*need, &sheet.part.file)) } } }
+        }
+    }
+}
+
+/// What a basis means, in its word.
+fn basis_word(basis: Option<Basis>) -> &'static str {
+    basis.map_or("–", Basis::word)
+}
+
+fn row_of<'a>(sheet: &Sheet<'a>, figure: Figure) -> Option<&'a FigureRow> {
+    sheet.report.figures.iter().find(|r| r.query.figure == figure)
+}
+
+/// The figure's row in short: "512 kHz (480 kHz to 540 kHz)".
+fn brief(sheet: &Sheet, figure: Figure) -> Option<Markup> {
+    let row = row_of(sheet, figure)?;
+    let d = figure.dimension();
+    Some(html! {
+        span class="brief" {
+            (figure.title()) " " b { (outcome(&row.nominal, d)) }
+            @if let Some((low, high)) = row.range { " (" (value(low, d)) " to " (value(high, d)) ")" }
+        }
+    })
+}
+
+/// Several figures in short, in one line.
+fn briefs(sheet: &Sheet, figures: &[Figure]) -> Markup {
+    html! {
+        p class="briefs" { @for figure in figures { @if let Some(b) = brief(sheet, *figure) { (b) " " } } }
+    }
+}

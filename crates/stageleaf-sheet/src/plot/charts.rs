@@ -1,0 +1,190 @@
+//! Which charts a report holds, as data.
+
+use stageleaf_math::{
+    dimension::Dimension,
+    figure::Figure,
+    report::{Report, ResponsePoint},
+};
+use stageleaf_note::words;
+
+use super::axis::{Axis, Unit};
+use crate::Sheet;
+
+/// Curves of a chart are thinned to this many points.
+const MOST_POINTS: usize = 200;
+/// Density curves shown beside the total.
+pub const MOST_SOURCES: usize = 4;
+
+/// A curve.
+#[derive(Clone, Debug)]
+pub struct Curve {
+    /// What it shows.
+    pub name: String,
+    /// Its values, in the chart's unit; not finite where there is none.
+    pub y: Vec<f64>,
+}
+
+/// A marked point, or a span between two heights.
+#[derive(Clone, Debug)]
+pub struct Mark {
+    /// Hz.
+    pub x: f64,
+    /// Height in the chart's unit.
+    pub y: f64,
+    /// Other end of a vertical span.
+    pub to: Option<f64>,
+    /// Its words.
+    pub text: String,
+}
+
+/// A chart against frequency.
+#[derive(Clone, Debug)]
+pub struct Chart {
+    /// `response-magnitude`: the value of `data-plot`.
+    pub id: &'static str,
+    /// Title of the vertical axis, with its unit.
+    pub title: &'static str,
+    /// Hz.
+    pub x: Vec<f64>,
+    /// Curves over `x`.
+    pub curves: Vec<Curve>,
+    /// Marked points.
+    pub marks: Vec<Mark>,
+    /// Level drawn as a reference line.
+    pub reference: Option<f64>,
+    /// Unit of the heights.
+    pub unit: Unit,
+    /// Frequencies.
+    pub x_axis: Axis,
+    /// Heights.
+    pub y_axis: Axis,
+    /// Step of the labelled ticks, where not found from the span.
+    pub step: Option<f64>,
+}
+
+/// Ids of all charts, in the sheet's order.
+pub const IDS: [&str; 6] = ["response-magnitude", "response-phase", "loop-magnitude", "loop-phase", "noise", "envelope"];
+
+/// The charts that the report has data for, by the start of their id.
+#[must_use]
+pub fn charts(sheet: &Sheet, start: &str) -> Vec<Chart> {
+    IDS.iter().filter(|id| id.starts_with(start)).filter_map(|id| chart(sheet, id)).collect()
+}
+
+/// One chart, if the report has data for it.
+#[must_use]
+pub fn chart(sheet: &Sheet, id: &str) -> Option<Chart> {
+    let r = sheet.report;
+    match id {
+        "response-magnitude" => magnitude("response-magnitude", "magnitude, dB", &r.response, Vec::new(), None, 100.0),
+        "response-phase" => phase("response-phase", &r.response, Vec::new(), None),
+        "loop-magnitude" => {
+            let marks = nominal(r, Figure::Crossover)
+                .map(|x| Mark { x, y: 0.0, to: None, text: format!("crossover {}", stageleaf_note::format(x, Dimension::Frequency, 3)) });
+            magnitude("loop-magnitude", "loop gain |T|, dB", &r.loop_gain, marks.into_iter().collect(), Some(0.0), 160.0)
+        }
+        "loop-phase" => phase("loop-phase", &r.loop_gain, phase_margin_mark(r).into_iter().collect(), Some(-180.0)),
+        "noise" => noise(r),
+        "envelope" => envelope(sheet),
+        _ => None,
+    }
+}
+
+fn thinned<T>(points: &[T]) -> impl Iterator<Item = &T> {
+    let step = points.len().div_ceil(MOST_POINTS).max(1);
+    let last = points.len().saturating_sub(1);
+    points.iter().enumerate().filter(move |(i, _)| i % step == 0 || *i == last).map(|(_, p)| p)
+}
+
+fn x_axis(x: &[f64]) -> Option<Axis> {
+    Axis::decades(x.iter().copied(), false)
+}
+
+fn magnitude(
+    id: &'static str,
+    title: &'static str,
+    points: &[ResponsePoint],
+    marks: Vec<Mark>,
+    reference: Option<f64>,
+    depth: f64,
+) -> Option<Chart> {
+    let x: Vec<f64> = thinned(points).map(|p| p.frequency).collect();
+    let y: Vec<f64> = thinned(points).map(|p| decibels(p.magnitude)).collect();
+    let x_axis = x_axis(&x)?;
+    let y_axis = Axis::linear(y.iter().copied().chain(reference), depth, None)?;
+    let curves = vec![Curve { name: "magnitude".into(), y }];
+    Some(Chart { id, title, x, curves, marks, reference, unit: Unit::Decibel, x_axis, y_axis, step: None })
+}
+
+fn phase(id: &'static str, points: &[ResponsePoint], marks: Vec<Mark>, reference: Option<f64>) -> Option<Chart> {
+    let x: Vec<f64> = thinned(points).map(|p| p.frequency).collect();
+    let y: Vec<f64> = thinned(points).map(|p| p.phase.to_degrees()).collect();
+    let x_axis = x_axis(&x)?;
+    let probe = Axis::linear(y.iter().copied().chain(reference), 2000.0, None)?;
+    let step = if probe.high - probe.low > 400.0 { 90.0 } else { 45.0 };
+    let y_axis = Axis::linear(y.iter().copied().chain(reference), 2000.0, Some(step))?;
+    let curves = vec![Curve { name: "phase".into(), y }];
+    Some(Chart { id, title: "phase, °", x, curves, marks, reference, unit: Unit::Degree, x_axis, y_axis, step: Some(step) })
+}
+
+fn phase_margin_mark(r: &Report) -> Option<Mark> {
+    let (x, margin) = (nominal(r, Figure::Crossover)?, nominal(r, Figure::PhaseMargin)?);
+    let text = format!("phase margin {}", stageleaf_note::format(margin, Dimension::Angle, 3));
+    Some(Mark { x, y: margin.to_degrees() - 180.0, to: Some(-180.0), text })
+}
+
+fn noise(r: &Report) -> Option<Chart> {
+    let x: Vec<f64> = thinned(&r.density).map(|p| p.frequency).collect();
+    let total: Vec<f64> = thinned(&r.density).map(|p| p.total).collect();
+    let mut curves = vec![Curve { name: "total".into(), y: total }];
+    let mut order: Vec<usize> = (0..r.noise_shares.len()).collect();
+    order.sort_by(|a, b| r.noise_shares[*b].share.total_cmp(&r.noise_shares[*a].share));
+    for k in order.into_iter().take(MOST_SOURCES) {
+        let y: Vec<f64> = thinned(&r.density).map(|p| p.by_source.get(k).copied().unwrap_or(f64::NAN)).collect();
+        curves.push(Curve { name: words::origin_text(r.noise_shares[k].origin).to_string(), y });
+    }
+    let x_axis = x_axis(&x)?;
+    let all = curves.iter().flat_map(|c| c.y.iter().copied());
+    let mut y_axis = Axis::decades(all, true)?;
+    y_axis.low = y_axis.low.max(y_axis.high * 1e-4);
+    let unit = Unit::Si(Dimension::VoltageDensity);
+    Some(Chart { id: "noise", title: "density at the output, V/√Hz", x, curves, marks: Vec::new(), reference: None, unit, x_axis, y_axis, step: None })
+}
+
+fn envelope(sheet: &Sheet) -> Option<Chart> {
+    let r = sheet.report;
+    let x: Vec<f64> = thinned(&r.envelope).map(|p| p.frequency).collect();
+    let of = |pick: fn(&stageleaf_math::report::EnvelopePoint) -> Option<f64>, name: &str| {
+        let y: Vec<f64> = thinned(&r.envelope).map(|p| pick(p).unwrap_or(f64::NAN)).collect();
+        y.iter().any(|v| v.is_finite()).then(|| Curve { name: name.into(), y })
+    };
+    let curves: Vec<Curve> =
+        [of(|p| p.rails, "rails"), of(|p| p.current, "current"), of(|p| p.slew, "slew rate")].into_iter().flatten().collect();
+    let x_axis = x_axis(&x)?;
+    let mut marks = Vec::new();
+    if let Some(signal) = sheet.block.stage.signal
+        && let (Some(x), Some(gain)) = (signal.frequency, nominal(r, Figure::GainAtSignal).or_else(|| nominal(r, Figure::Gain)))
+    {
+        let y = signal.peak * gain.abs();
+        if x.is_finite() && y.is_finite() && y > 0.0 {
+            marks.push(Mark { x, y, to: None, text: format!("signal {}", stageleaf_note::format(y, Dimension::Voltage, 3)) });
+        }
+    }
+    // The lowest of the bounds decides; how far the others rise above it is of no use.
+    let lowest = (0..x.len()).map(|i| curves.iter().map(|c| c.y[i]).filter(|v| v.is_finite()).fold(f64::INFINITY, f64::min));
+    let mut y_axis = Axis::decades(lowest.chain(marks.iter().map(|m| m.y)), true)?;
+    y_axis.high *= 2.0;
+    y_axis.low = y_axis.low.max(y_axis.high * 1e-4);
+    let unit = Unit::Si(Dimension::Voltage);
+    Some(Chart { id: "envelope", title: "largest clean output, V peak", x, curves, marks, reference: None, unit, x_axis, y_axis, step: None })
+}
+
+/// A figure at nominal values, if it has a finite one.
+#[must_use]
+pub fn nominal(r: &Report, figure: Figure) -> Option<f64> {
+    r.figures.iter().find(|f| f.query.figure == figure).and_then(|f| f.nominal.value()).filter(|v| v.is_finite())
+}
+
+fn decibels(magnitude: f64) -> f64 {
+    20.0 * libm::log10(magnitude)
+}
