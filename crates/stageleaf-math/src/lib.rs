@@ -8,15 +8,21 @@
 #![no_std]
 extern crate alloc;
 
+pub mod analyse;
+pub mod analysis;
 pub mod dimension;
 pub mod error;
 pub mod figure;
 pub mod kind;
 pub mod limit;
+pub mod model;
 pub mod network;
+pub mod parameters;
 pub mod part;
+pub mod polynomial;
 pub mod report;
 pub mod series;
+pub mod solution;
 pub mod stage;
 pub mod units;
 
@@ -39,29 +45,4 @@ pub const NOT_MODELLED: &[&str] = &[
     "latch-up",
 ];
 
-/// Everything about a stage: figures, verdicts, curves, budgets, working.
-///
-/// # Errors
-/// What [`check`] finds.
-pub fn analyse(stage: &stage::Stage) -> Result<report::Report, Error> {
-    check(stage)?;
-    Ok(report::Report {
-        name: stage.name.clone(),
-        figures: alloc::vec![], limits: alloc::vec![], response: alloc::vec![], loop_gain: alloc::vec![], density: alloc::vec![],
-        noise_shares: alloc::vec![], dc_budget: alloc::vec![], envelope: alloc::vec![], poles: alloc::vec![], zeros: alloc::vec![],
-        working: alloc::vec![], cautions: alloc::vec![],
-    })
-}
-
-/// Whether the stage's values can be analysed at all.
-///
-/// # Errors
-/// The first [`Error`] found: a missing component, a value that is zero, negative or not finite, reversed supplies.
-pub fn check(stage: &stage::Stage) -> Result<(), Error> {
-    for spec in stage.kind.components() {
-        if spec.required && stage.component(spec.name).is_none() {
-            return Err(Error::MissingComponent { what: spec.name });
-        }
-    }
-    Ok(())
-}
+pub use analyse::{analyse, check};

@@ -1,9 +1,35 @@
-//! Inverting stage.
+//! Inverting stage: the signal drives `Rin` into the inverting input, which the feedback through `Rf` holds at the + input's level.
+//!
+//! # Formula
+//! Ideal gain `−Zf/Rin`, `Zf = Rf ∥ Cf`; at DC `−Rf/Rin`. The noise gain is `1 + Rf/Rin`: bandwidth, offset and amplifier noise
+//! follow it, not the signal gain. For the working and as a check; figures come from the network.
+//!
+//! # Units
+//! `Rin`, `Rf` in Ω (required); `Cf` in F; `Rp`, `Cp` at the + input (optional). Gain in V/V.
+//!
+//! # Does not apply
+//! The ideal form leaves out the source's resistance, which adds to `Rin`, and the real amplifier.
+//!
+//! # Source
+//! Derived here: the current through `Rin` flows on through `Rf`. Checked in `tests/outside/`.
+//!
+//! # Example
+//! ```
+//! use stageleaf_math::kind::Kind;
+//!
+//! assert_eq!(Kind::from_id("inverting"), Some(Kind::Inverting));
+//! ```
 
-use alloc::vec::Vec;
+use alloc::vec;
 
-use super::{ComponentSpec, INPUT_SERIES, INPUT_SHUNT, ISOLATION, NOISE_GAIN_C, NOISE_GAIN_R, SNUBBER_C, SNUBBER_R, Spec};
-use crate::dimension::Dimension;
+use super::{
+    ComponentSpec, INPUT_SERIES, INPUT_SHUNT, ISOLATION, NOISE_GAIN_C, NOISE_GAIN_R, SNUBBER_C, SNUBBER_R, Spec, closed_loop_edge, corner, dc_gain, nominal,
+};
+use crate::{dimension::Dimension, network::GROUND, stage::{Isolation, Stage}};
+
+fn ratio(stage: &Stage) -> f64 {
+    nominal(stage, "Rf") / nominal(stage, "Rin")
+}
 
 /// The inverting stage.
 pub static SPEC: Spec = Spec {
@@ -17,9 +43,39 @@ pub static SPEC: Spec = Spec {
         ComponentSpec::optional("Cf", Dimension::Capacitance, "feedback capacitor, across `Rf`"),
         ComponentSpec::optional("Rp", Dimension::Resistance, "bias-balancing resistor from the + input to ground"),
         ComponentSpec::optional("Cp", Dimension::Capacitance, "capacitor across `Rp`").beside("Rp"),
-        INPUT_SERIES, INPUT_SHUNT, ISOLATION, SNUBBER_R, SNUBBER_C, NOISE_GAIN_R, NOISE_GAIN_C,
+        INPUT_SERIES,
+        INPUT_SHUNT,
+        ISOLATION,
+        SNUBBER_R,
+        SNUBBER_C,
+        NOISE_GAIN_R,
+        NOISE_GAIN_C,
     ],
-    build: |_, _| {},
-    ideal_gain: |_| 1.0,
-    working: |_| Vec::new(),
+    build: |stage, network| {
+        let signal = network.signal();
+        let filtered = network.behind("Rser", signal);
+        network.component("Cshunt", filtered, GROUND);
+        let minus = network.node();
+        network.component("Rin", filtered, minus);
+        let plus = if stage.component("Rp").is_some() { network.node() } else { GROUND };
+        network.component("Rp", plus, GROUND);
+        network.component("Cp", plus, GROUND);
+        let pin = network.node();
+        let load = network.output(pin);
+        let sense = match stage.isolation {
+            Isolation::OutsideLoop => pin,
+            Isolation::InsideLoop => load,
+        };
+        network.component("Rf", sense, minus);
+        network.component("Cf", pin, minus);
+        network.series_rc("Rng", "Cng", plus, minus);
+        network.amplifier(plus, minus, pin);
+    },
+    ideal_gain: |stage| -ratio(stage),
+    noise_gain: |stage| 1.0 + ratio(stage),
+    working: |stage| {
+        let mut lines = vec![dc_gain("G = −Rf/Rin", &["Rf", "Rin"], stage, -ratio(stage)), closed_loop_edge(stage, 1.0 + ratio(stage))];
+        lines.extend(corner(stage));
+        lines
+    },
 };

@@ -4,7 +4,16 @@ pub mod follower;
 pub mod inverting;
 pub mod non_inverting;
 
-use crate::{dimension::Dimension, network::Builder, report::Working, stage::Stage};
+use alloc::{vec, vec::Vec};
+
+use crate::{
+    dimension::Dimension,
+    figure::{Figure, Query},
+    network::Builder,
+    part::PartFigure,
+    report::{Outcome, Working},
+    stage::Stage,
+};
 
 /// A component that a kind can have.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -56,11 +65,59 @@ pub struct Spec {
     /// Its components, in the order of the `new` block.
     pub components: &'static [ComponentSpec],
     /// Lays out the network.
-    pub build: fn(&Stage, &mut Builder),
+    pub build: fn(&Stage, &mut Builder<'_>),
     /// The ideal gain at the pass-band reference from nominal component values.
     pub ideal_gain: fn(&Stage) -> f64,
+    /// The ideal noise gain at DC from nominal component values.
+    pub noise_gain: fn(&Stage) -> f64,
     /// The kind's own closed forms beside the exact values (which the caller fills in).
-    pub working: fn(&Stage) -> alloc::vec::Vec<Working>,
+    pub working: fn(&Stage) -> Vec<Working>,
+}
+
+/// A component's nominal value; 0 where the stage does not have it ([`crate::check`] refuses a missing required one first).
+fn nominal(stage: &Stage, name: &str) -> f64 {
+    stage.component(name).map_or(0.0, |c| c.nominal)
+}
+
+/// The ideal gain at DC with the resistors in place.
+fn dc_gain(formula: &'static str, names: &[&'static str], stage: &Stage, value: f64) -> Working {
+    Working {
+        query: Query::of(Figure::Gain),
+        formula,
+        numbers: names.iter().map(|&n| (n, nominal(stage, n), Dimension::Resistance)).collect(),
+        handbook: value,
+        exact: Outcome::Undetermined(Vec::new()),
+        source: "derived here: the amplifier's inputs are held equal",
+        difference: "finite open-loop gain, source and load resistance",
+    }
+}
+
+/// The handbook's closed-loop edge `GBW/NG`.
+fn closed_loop_edge(stage: &Stage, noise_gain: f64) -> Working {
+    let gbw = stage.part.rating(PartFigure::Gbw).nominal(PartFigure::Gbw.worse()).unwrap_or(f64::NAN);
+    Working {
+        query: Query::of(Figure::Bandwidth),
+        formula: "f₋₃dB ≈ GBW/NG",
+        numbers: vec![("GBW", gbw, Dimension::Frequency), ("NG", noise_gain, Dimension::Number)],
+        handbook: gbw / noise_gain,
+        exact: Outcome::Undetermined(Vec::new()),
+        source: "common practice, no source",
+        difference: "higher poles, capacitances and load; the rule leaves out all but the dominant pole",
+    }
+}
+
+/// The corner of the feedback capacitor.
+fn corner(stage: &Stage) -> Option<Working> {
+    let (rf, cf) = (stage.component("Rf")?.nominal, stage.component("Cf")?.nominal);
+    Some(Working {
+        query: Query::of(Figure::Bandwidth),
+        formula: "f = 1/(2π·Rf·Cf)",
+        numbers: vec![("Rf", rf, Dimension::Resistance), ("Cf", cf, Dimension::Capacitance)],
+        handbook: 1.0 / (core::f64::consts::TAU * rf * cf),
+        exact: Outcome::Undetermined(Vec::new()),
+        source: "derived here: the corner of Rf ∥ Cf",
+        difference: "the amplifier's own bandwidth; a non-inverting gain falls to 1 and not to 0",
+    })
 }
 
 macro_rules! kinds {

@@ -1,9 +1,36 @@
-//! Non-inverting stage.
+//! Non-inverting stage: the signal drives the + input; `Rf` and `Rg` return part of the output to the other.
+//!
+//! # Formula
+//! Ideal gain `1 + Zf/Rg`, `Zf = Rf ∥ Cf`; at DC `1 + Rf/Rg`, never below 1. For the working and as a check; figures come
+//! from the network.
+//!
+//! # Units
+//! `Rf`, `Rg` in Ω (required); `Cf` in F (optional; rolls the gain off to 1, not to 0). Gain in V/V.
+//!
+//! # Does not apply
+//! The ideal form leaves out source resistance and the real amplifier (`gain_error` says how much that is).
+//! Both inputs follow the signal: look at `input_range_margin` first.
+//!
+//! # Source
+//! Derived here: the two resistors are a divider. Checked in `tests/outside/`.
+//!
+//! # Example
+//! ```
+//! use stageleaf_math::kind::Kind;
+//!
+//! assert_eq!(Kind::from_id("non-inverting"), Some(Kind::NonInverting));
+//! ```
 
-use alloc::vec::Vec;
+use alloc::vec;
 
-use super::{ComponentSpec, INPUT_SERIES, INPUT_SHUNT, ISOLATION, NOISE_GAIN_C, NOISE_GAIN_R, SNUBBER_C, SNUBBER_R, Spec};
-use crate::dimension::Dimension;
+use super::{
+    ComponentSpec, INPUT_SERIES, INPUT_SHUNT, ISOLATION, NOISE_GAIN_C, NOISE_GAIN_R, SNUBBER_C, SNUBBER_R, Spec, closed_loop_edge, corner, dc_gain, nominal,
+};
+use crate::{dimension::Dimension, network::GROUND, stage::{Isolation, Stage}};
+
+fn gain(stage: &Stage) -> f64 {
+    1.0 + nominal(stage, "Rf") / nominal(stage, "Rg")
+}
 
 /// The non-inverting stage.
 pub static SPEC: Spec = Spec {
@@ -15,9 +42,36 @@ pub static SPEC: Spec = Spec {
         ComponentSpec::required("Rf", Dimension::Resistance, "feedback resistor"),
         ComponentSpec::required("Rg", Dimension::Resistance, "resistor from the inverting input to ground"),
         ComponentSpec::optional("Cf", Dimension::Capacitance, "feedback capacitor, across `Rf`"),
-        INPUT_SERIES, INPUT_SHUNT, ISOLATION, SNUBBER_R, SNUBBER_C, NOISE_GAIN_R, NOISE_GAIN_C,
+        INPUT_SERIES,
+        INPUT_SHUNT,
+        ISOLATION,
+        SNUBBER_R,
+        SNUBBER_C,
+        NOISE_GAIN_R,
+        NOISE_GAIN_C,
     ],
-    build: |_, _| {},
-    ideal_gain: |_| 1.0,
-    working: |_| Vec::new(),
+    build: |stage, network| {
+        let signal = network.signal();
+        let plus = network.behind("Rser", signal);
+        network.component("Cshunt", plus, GROUND);
+        let minus = network.node();
+        network.component("Rg", minus, GROUND);
+        let pin = network.node();
+        let load = network.output(pin);
+        let sense = match stage.isolation {
+            Isolation::OutsideLoop => pin,
+            Isolation::InsideLoop => load,
+        };
+        network.component("Rf", sense, minus);
+        network.component("Cf", pin, minus);
+        network.series_rc("Rng", "Cng", plus, minus);
+        network.amplifier(plus, minus, pin);
+    },
+    ideal_gain: gain,
+    noise_gain: gain,
+    working: |stage| {
+        let mut lines = vec![dc_gain("G = 1 + Rf/Rg", &["Rf", "Rg"], stage, gain(stage)), closed_loop_edge(stage, gain(stage))];
+        lines.extend(corner(stage));
+        lines
+    },
 };

@@ -1,0 +1,307 @@
+//! The analyses: one file each. A figure's value in one build comes from [`outcome`].
+
+pub mod dc;
+pub mod margins;
+pub mod noise;
+pub mod response;
+pub mod second_pole;
+pub mod search;
+pub mod spread;
+pub mod swing;
+pub mod thermal;
+
+use alloc::vec::Vec;
+
+use crate::{
+    figure::{Figure, Query},
+    parameters::touch,
+    part::PartFigure,
+    report::{Need, Outcome},
+    solution::Solution,
+};
+
+/// Which results a figure belongs to (see [`touch`]).
+#[must_use]
+pub const fn touched_by(figure: Figure) -> u8 {
+    use Figure as F;
+    match figure {
+        F::Gain
+        | F::GainError
+        | F::GainAtSignal
+        | F::GainAt
+        | F::PhaseAt
+        | F::Bandwidth
+        | F::Peaking
+        | F::Crossover
+        | F::PhaseMargin
+        | F::GainMargin
+        | F::SensitivityPeak
+        | F::NaturalFrequency
+        | F::Q
+        | F::InputImpedance
+        | F::OutputImpedance
+        | F::GainDrift
+        | F::NoiseBandwidth => touch::NETWORK,
+        F::OutputOffset | F::InputOffset | F::OffsetDrift => touch::DC,
+        F::OutputNoise | F::InputNoise | F::OutputNoisePeakToPeak | F::NoiseDensityAt | F::Snr | F::SnrBits => touch::NOISE,
+        F::ClipMargin | F::InputRangeMargin | F::CurrentMargin | F::SlewMargin | F::FullPowerBandwidth => touch::SWING,
+        F::SupplyCurrent | F::Dissipation | F::JunctionTemperature | F::ResistorDissipation => touch::POWER,
+    }
+}
+
+/// A figure in one build.
+#[must_use]
+pub fn outcome(solution: &Solution<'_>, query: Query) -> Outcome {
+    use Figure as F;
+    let stage = solution.model.stage;
+    let mut missing = Missing::default();
+    match query.figure {
+        F::Gain | F::GainError | F::GainDrift => missing.part(solution, PartFigure::OpenLoop),
+        F::GainAtSignal => {
+            missing.small_signal(solution);
+            missing.signal_frequency(solution);
+        }
+        F::InputImpedance => {
+            missing.small_signal(solution);
+            missing.part(solution, PartFigure::DifferentialResistance);
+            missing.part(solution, PartFigure::CommonModeResistance);
+        }
+        F::GainAt
+        | F::PhaseAt
+        | F::Bandwidth
+        | F::Peaking
+        | F::Crossover
+        | F::PhaseMargin
+        | F::GainMargin
+        | F::SensitivityPeak
+        | F::NaturalFrequency
+        | F::Q
+        | F::OutputImpedance
+        | F::NoiseBandwidth => missing.small_signal(solution),
+        F::OutputOffset | F::InputOffset | F::OffsetDrift => missing.part(solution, PartFigure::OpenLoop),
+        F::OutputNoise | F::InputNoise | F::OutputNoisePeakToPeak => missing.integrated_noise(solution),
+        F::Snr | F::SnrBits => {
+            missing.integrated_noise(solution);
+            missing.signal_frequency(solution);
+        }
+        F::NoiseDensityAt => missing.noise(solution),
+        F::ClipMargin | F::InputRangeMargin => {
+            missing.signal_level(solution);
+            missing.supply(solution);
+        }
+        F::CurrentMargin => {
+            missing.signal_level(solution);
+            missing.part(solution, PartFigure::CurrentLimit);
+        }
+        F::SlewMargin | F::FullPowerBandwidth => {
+            missing.signal_level(solution);
+            missing.part(solution, PartFigure::SlewRise);
+            missing.part(solution, PartFigure::SlewFall);
+        }
+        F::SupplyCurrent => missing.part(solution, PartFigure::SupplyCurrent),
+        F::Dissipation | F::JunctionTemperature => {
+            missing.supply(solution);
+            missing.part(solution, PartFigure::SupplyCurrent);
+            missing.signal_level(solution);
+            if matches!(query.figure, F::JunctionTemperature) {
+                missing.part(solution, PartFigure::JunctionToAmbient);
+                missing.ambient(solution);
+            }
+        }
+        F::ResistorDissipation => missing.signal_level(solution),
+    }
+    if let Some(undetermined) = missing.outcome() {
+        return undetermined;
+    }
+    if solution.no_dc_path() {
+        return Outcome::NoDcPath;
+    }
+    let judged_by_roots = !matches!(query.figure, F::Crossover | F::PhaseMargin | F::GainMargin);
+    if judged_by_roots && missing_small_signal(solution).is_none() && solution.oscillates() {
+        return Outcome::Oscillates;
+    }
+    let value = match query.figure {
+        F::Gain => solution.dc_gain(),
+        F::GainError => solution.dc_gain() / (stage.kind.spec().ideal_gain)(stage) - 1.0,
+        F::GainAtSignal => {
+            let frequency = stage.signal.and_then(|s| s.frequency).unwrap_or(0.0);
+            let sign = if solution.dc_gain() < 0.0 { -1.0 } else { 1.0 };
+            sign * crate::solution::magnitude(solution.transfer(solution.scaled(frequency)))
+        }
+        F::GainAt => crate::solution::magnitude(solution.transfer(solution.scaled(query.at.unwrap_or(0.0)))),
+        F::PhaseAt => {
+            let h = solution.transfer(solution.scaled(query.at.unwrap_or(0.0)));
+            libm::atan2(h.im, h.re)
+        }
+        F::Bandwidth => response::edges(solution).bandwidth,
+        F::Peaking => response::edges(solution).peaking,
+        F::Crossover => match margins::margins(solution).crossover {
+            Some(f) => f,
+            None => return Outcome::DoesNotApply("the return ratio stays below one"),
+        },
+        F::PhaseMargin => match margins::margins(solution).phase {
+            Some(m) if solution.oscillates() && m > 0.0 => return Outcome::Oscillates,
+            Some(m) => m,
+            None => return Outcome::DoesNotApply("the return ratio stays below one"),
+        },
+        F::GainMargin => {
+            let margin = margins::margins(solution).gain;
+            if solution.oscillates() && margin > 1.0 {
+                return Outcome::Oscillates;
+            }
+            margin
+        }
+        F::SensitivityPeak => margins::margins(solution).sensitivity_peak,
+        F::NaturalFrequency => match response::least_damped(solution) {
+            Some((frequency, _)) => frequency,
+            None => return Outcome::DoesNotApply("all poles are real"),
+        },
+        F::Q => match response::least_damped(solution) {
+            Some((_, q)) => q,
+            None => return Outcome::DoesNotApply("all poles are real"),
+        },
+        F::InputImpedance => response::input_impedance(solution),
+        F::OutputImpedance => response::output_impedance(solution),
+        F::GainDrift => response::gain_drift(solution),
+        F::NoiseBandwidth => noise::noise_bandwidth(solution),
+        F::OutputOffset => return dc::budget(solution).total.clone(),
+        F::InputOffset => return scaled(&dc::budget(solution).total, 1.0 / solution.dc_gain().abs()),
+        F::OffsetDrift => return dc::budget(solution).drift.clone(),
+        F::OutputNoise | F::InputNoise | F::OutputNoisePeakToPeak | F::Snr | F::SnrBits => {
+            let Some(rms) = noise::integrated(solution) else { return Outcome::DoesNotApply("the band's edges are the same") };
+            match query.figure {
+                F::InputNoise => rms / solution.dc_gain().abs(),
+                F::OutputNoisePeakToPeak => noise::PEAK_TO_PEAK * rms,
+                F::Snr => noise::signal_rms(solution) / rms,
+                F::SnrBits => noise::bits(noise::signal_rms(solution) / rms),
+                _ => rms,
+            }
+        }
+        F::NoiseDensityAt => noise::density(solution, query.at.unwrap_or(0.0)),
+        F::ClipMargin => return swing::swing(solution).clip.clone(),
+        F::InputRangeMargin => return swing::swing(solution).range.clone(),
+        F::CurrentMargin => return swing::swing(solution).current.clone(),
+        F::SlewMargin => return swing::swing(solution).slew.clone(),
+        F::FullPowerBandwidth => return swing::full_power_bandwidth(solution),
+        F::SupplyCurrent => return thermal::power(solution).supply_current.clone(),
+        F::Dissipation => return thermal::power(solution).dissipation.clone(),
+        F::JunctionTemperature => return thermal::power(solution).junction.clone(),
+        F::ResistorDissipation => match thermal::hottest_resistor(solution) {
+            Some((_, power)) => power,
+            None => return Outcome::DoesNotApply("the stage has no resistor"),
+        },
+    };
+    if value.is_nan() { Outcome::DoesNotApply("the values leave the range in which it can be computed") } else { Outcome::Value(value) }
+}
+
+/// A value outcome scaled; others pass through.
+#[must_use]
+pub fn scaled(outcome: &Outcome, factor: f64) -> Outcome {
+    match outcome {
+        Outcome::Value(v) => Outcome::Value(v * factor),
+        other => other.clone(),
+    }
+}
+
+/// What the small-signal figures lack, if anything.
+#[must_use]
+pub fn missing_small_signal(solution: &Solution<'_>) -> Option<Outcome> {
+    let mut missing = Missing::default();
+    missing.small_signal(solution);
+    missing.outcome()
+}
+
+/// Collects what a figure lacks.
+#[derive(Debug, Default)]
+pub struct Missing(Vec<Need>);
+
+impl Missing {
+    /// Needs this.
+    pub fn need(&mut self, need: Need) {
+        if !self.0.contains(&need) {
+            self.0.push(need);
+        }
+    }
+
+    /// Needs a figure of the part.
+    pub fn part(&mut self, solution: &Solution<'_>, figure: PartFigure) {
+        if solution.part(figure).is_none() {
+            self.need(Need::Part(figure));
+        }
+    }
+
+    /// Needs all that response and loop depend on.
+    pub fn small_signal(&mut self, solution: &Solution<'_>) {
+        for figure in [
+            PartFigure::OpenLoop,
+            PartFigure::Gbw,
+            PartFigure::OutputResistance,
+            PartFigure::DifferentialCapacitance,
+            PartFigure::CommonModeCapacitance,
+        ] {
+            self.part(solution, figure);
+        }
+        if solution.model.poles.is_none() {
+            self.need(Need::Poles);
+        }
+    }
+
+    /// Needs all that the noise density depends on.
+    pub fn noise(&mut self, solution: &Solution<'_>) {
+        self.small_signal(solution);
+        self.part(solution, PartFigure::NoiseVoltage);
+        self.part(solution, PartFigure::NoiseVoltageCorner);
+        if noise::current_noise_counts(solution) {
+            self.part(solution, PartFigure::NoiseCurrent);
+            self.part(solution, PartFigure::NoiseCurrentCorner);
+        }
+        self.ambient(solution);
+    }
+
+    /// Needs all that integrated noise depends on.
+    pub fn integrated_noise(&mut self, solution: &Solution<'_>) {
+        self.noise(solution);
+        if solution.model.stage.band.is_none() {
+            self.need(Need::Band);
+        }
+    }
+
+    /// Needs the ambient temperature.
+    pub fn ambient(&mut self, solution: &Solution<'_>) {
+        if solution.model.parameters.temperature().is_none() {
+            self.need(Need::Ambient);
+        }
+    }
+
+    /// Needs the supplies.
+    pub fn supply(&mut self, solution: &Solution<'_>) {
+        if solution.model.parameters.supply().is_none() {
+            self.need(Need::Supply);
+        }
+    }
+
+    /// Needs the signal's frequency.
+    pub fn signal_frequency(&mut self, solution: &Solution<'_>) {
+        match solution.model.stage.signal {
+            None => self.need(Need::Signal),
+            Some(signal) if signal.frequency.is_none() => self.need(Need::SignalFrequency),
+            Some(_) => {}
+        }
+    }
+
+    /// Needs the signal and all that carries it to the pins.
+    pub fn signal_level(&mut self, solution: &Solution<'_>) {
+        self.small_signal(solution);
+        match solution.model.stage.signal {
+            None => self.need(Need::Signal),
+            Some(signal) if signal.peak > 0.0 && signal.frequency.is_none() => self.need(Need::SignalFrequency),
+            Some(_) => {}
+        }
+    }
+
+    /// What the needs amount to.
+    #[must_use]
+    pub fn outcome(self) -> Option<Outcome> {
+        (!self.0.is_empty()).then_some(Outcome::Undetermined(self.0))
+    }
+}

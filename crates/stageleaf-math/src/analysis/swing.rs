@@ -1,0 +1,403 @@
+//! Large signal at the amplifier's pins: clipping, input range, output current, slew.
+//!
+//! # Formula
+//! The network gives pin voltage and current as phasors; with the DC part they are `V(θ) = V0 + Vp·cos θ` and
+//! `I(θ) = I0 + Ip·cos(θ + φ)`. Clip margin: the least distance of `V(θ)`, widened by the output offset, from the rail less the
+//! headroom at `I(θ)`. Headroom is measured at the pin, so it is not added to the drop in the output resistance. Slew needed:
+//! `ω·|E|`, `E` the controlled source behind the output resistance; available: the smaller of rise and fall, or what the current
+//! limit leaves for the load's capacitance.
+//!
+//! # Does not apply
+//! Waveforms other than a sine at the highest frequency and full amplitude.
+//!
+//! # Source
+//! Common practice, no source; derived here.
+
+use core::f64::consts::TAU;
+
+use num_complex::Complex64;
+
+use super::{Missing, search};
+use crate::{
+    network::{Law, Node, dense::admittance},
+    part::{Headroom, PartFigure},
+    report::{EnvelopePoint, Need, Outcome},
+    solution::{Solution, magnitude},
+};
+
+/// The four margins.
+#[derive(Clone, Debug)]
+pub struct Swing {
+    /// Clip margin, V.
+    pub clip: Outcome,
+    /// Input range margin, V.
+    pub range: Outcome,
+    /// Output current margin, A.
+    pub current: Outcome,
+    /// Slew available over slew needed.
+    pub slew: Outcome,
+}
+
+/// The output pin, per volt of the source.
+#[derive(Clone, Copy, Debug)]
+pub struct Pin {
+    /// Voltage.
+    pub voltage: Complex64,
+    /// Current out of the pin, S.
+    pub current: Complex64,
+    /// The controlled source behind the output resistance.
+    pub behind: Complex64,
+}
+
+/// The output pin at a frequency in Hz; at 0 the DC transfer.
+pub fn pin(solution: &Solution<'_>, frequency: f64) -> Pin {
+    let network = &solution.model.network;
+    let omega = solution.scaled(frequency);
+    let at = |node: Node| solution.voltage(node, omega);
+    let node = network.amplifier.pin;
+    let voltage = at(node);
+    let s = Complex64::new(0.0, TAU * frequency);
+    let mut current = Complex64::new(0.0, 0.0);
+    for element in &network.elements {
+        let other = match (element.a == node, element.b == node) {
+            (true, false) => element.b,
+            (false, true) => element.a,
+            _ => continue,
+        };
+        if matches!(element.law, Law::Resistance(slot) if solution.values[slot] <= 0.0) {
+            continue; // a short: its current is found on the other side
+        }
+        current += (voltage - at(other)) * admittance(element.law, &solution.values, s);
+    }
+    let behind = voltage + current * solution.part(PartFigure::OutputResistance).unwrap_or(0.0);
+    Pin { voltage, current, behind }
+}
+
+/// The signal at the pin: DC and peak of voltage and current, with the current's phase against the voltage.
+#[derive(Clone, Copy, Debug)]
+pub struct Drive {
+    /// DC pin voltage, V.
+    pub v0: f64,
+    /// Peak of the alternating pin voltage, V.
+    pub vp: f64,
+    /// DC pin current, A.
+    pub i0: f64,
+    /// Peak of the alternating pin current, A.
+    pub ip: f64,
+    /// Its phase against the voltage, as cosine and sine.
+    pub phase: (f64, f64),
+}
+
+/// The stage's own signal at the pin.
+pub fn drive(solution: &Solution<'_>) -> Drive {
+    let signal = solution.model.stage.signal;
+    let (dc, peak) = signal.map_or((0.0, 0.0), |s| (s.dc, s.peak));
+    let steady = pin(solution, 0.0);
+    let moving = pin(solution, signal.and_then(|s| s.frequency).unwrap_or(0.0));
+    let mut drive = Drive { v0: steady.voltage.re * dc, vp: 0.0, i0: steady.current.re * dc, ip: 0.0, phase: (1.0, 0.0) };
+    drive.set_alternating(&moving, peak);
+    drive
+}
+
+impl Drive {
+    fn set_alternating(&mut self, moving: &Pin, peak: f64) {
+        let (v, i) = (magnitude(moving.voltage), magnitude(moving.current));
+        self.vp = v * peak;
+        self.ip = i * peak;
+        if v * i > 0.0 {
+            let product = moving.current * moving.voltage.conj();
+            self.phase = (product.re / (v * i), product.im / (v * i));
+        }
+    }
+
+    fn at(&self, cos: f64, sin: f64) -> (f64, f64) {
+        (self.v0 + self.vp * cos, self.i0 + self.ip * (cos * self.phase.0 - sin * self.phase.1))
+    }
+}
+
+/// Headroom at a current, between typical (0) and guaranteed (1); `None` beyond what the table states.
+fn headroom(table: &[Headroom], position: f64, current: f64) -> Option<f64> {
+    let volts = |row: &Headroom| {
+        let typ = row.volts.typ.or(row.volts.max).unwrap_or(0.0);
+        let max = row.volts.max.or(row.volts.typ).unwrap_or(0.0);
+        typ + position * (max - typ)
+    };
+    let first = table.first()?;
+    if current <= first.current {
+        return Some(volts(first));
+    }
+    table.windows(2).find(|pair| current <= pair[1].current).map(|pair| {
+        let (a, b) = (&pair[0], &pair[1]);
+        volts(a) + (volts(b) - volts(a)) * (current - a.current) / (b.current - a.current)
+    })
+}
+
+/// The rails' distance for a drive: least margin over a period, or which table ends too early.
+struct Rails<'a> {
+    high: f64,
+    low: f64,
+    above: &'a [Headroom],
+    below: &'a [Headroom],
+    position: f64,
+    offset: f64,
+}
+
+impl Rails<'_> {
+    fn margin(&self, drive: &Drive) -> Result<f64, Need> {
+        const STEPS: usize = 48;
+        let room = |angle: f64| -> Result<f64, Need> {
+            let (v, i) = drive.at(libm::cos(angle), libm::sin(angle));
+            let up = headroom(self.above, self.position, i).ok_or(Need::HeadroomHigh)?;
+            let down = headroom(self.below, self.position, -i).ok_or(Need::HeadroomLow)?;
+            Ok((self.high - up - v - self.offset).min(v - self.offset - self.low - down))
+        };
+        if drive.vp <= 0.0 && drive.ip <= 0.0 {
+            return room(0.0);
+        }
+        let (mut least, mut least_at) = (f64::INFINITY, 0.0);
+        #[expect(clippy::cast_precision_loss, reason = "few steps")]
+        for step in 0..STEPS {
+            let angle = TAU * step as f64 / STEPS as f64;
+            let here = room(angle)?;
+            if here < least {
+                (least, least_at) = (here, angle);
+            }
+        }
+        // Golden section around the least sample.
+        #[expect(clippy::cast_precision_loss, reason = "few steps")]
+        let width = TAU / STEPS as f64;
+        let (mut a, mut b) = (least_at - width, least_at + width);
+        for _ in 0..30 {
+            let (x, y) = (b - 0.618_033_988_749_894_9 * (b - a), a + 0.618_033_988_749_894_9 * (b - a));
+            let (fx, fy) = (room(x)?, room(y)?);
+            if fx < fy { b = y } else { a = x }
+            least = least.min(fx).min(fy);
+        }
+        Ok(least)
+    }
+}
+
+/// The four margins at the stage's signal.
+pub fn swing<'s>(solution: &'s Solution<'_>) -> &'s Swing {
+    solution.swing.get_or_init(|| {
+        let drive = drive(solution);
+        Swing { clip: clip(solution, &drive), range: range(solution), current: current(solution, &drive), slew: slew(solution, &drive) }
+    })
+}
+
+fn rails<'a>(solution: &'a Solution<'_>) -> Result<Rails<'a>, Outcome> {
+    let model = solution.model;
+    let Some((positive, negative)) = model.parameters.supply() else { return Err(Outcome::Undetermined(alloc::vec![Need::Supply])) };
+    let mut missing = Missing::default();
+    if model.stage.part.headroom_high.is_empty() {
+        missing.need(Need::HeadroomHigh);
+    }
+    if model.stage.part.headroom_low.is_empty() {
+        missing.need(Need::HeadroomLow);
+    }
+    let offset = match &super::dc::budget(solution).total {
+        Outcome::Value(v) => *v,
+        Outcome::Undetermined(needs) => {
+            for need in needs {
+                missing.need(*need);
+            }
+            0.0
+        }
+        other => return Err(other.clone()),
+    };
+    if let Some(undetermined) = missing.outcome() {
+        return Err(undetermined);
+    }
+    Ok(Rails {
+        high: solution.values[positive],
+        low: solution.values[negative],
+        above: &model.stage.part.headroom_high,
+        below: &model.stage.part.headroom_low,
+        position: solution.values[model.parameters.headroom()],
+        offset,
+    })
+}
+
+fn clip(solution: &Solution<'_>, drive: &Drive) -> Outcome {
+    match rails(solution) {
+        Err(outcome) => outcome,
+        Ok(rails) => match rails.margin(drive) {
+            Ok(margin) => Outcome::Value(margin),
+            Err(need) => Outcome::Undetermined(alloc::vec![need]),
+        },
+    }
+}
+
+fn range(solution: &Solution<'_>) -> Outcome {
+    let model = solution.model;
+    let mut missing = Missing::default();
+    missing.part(solution, PartFigure::RangeFromNegative);
+    missing.part(solution, PartFigure::RangeFromPositive);
+    missing.supply(solution);
+    if let Some(undetermined) = missing.outcome() {
+        return undetermined;
+    }
+    let (Some((positive, negative)), Some(from_negative), Some(from_positive)) = (
+        model.parameters.supply(),
+        solution.part(PartFigure::RangeFromNegative),
+        solution.part(PartFigure::RangeFromPositive),
+    ) else {
+        return Outcome::Undetermined(alloc::vec![Need::Supply]);
+    };
+    let (low, high) = (solution.values[negative] + from_negative, solution.values[positive] - from_positive);
+    let (dc, peak, frequency) = model.stage.signal.map_or((0.0, 0.0, 0.0), |s| (s.dc, s.peak, s.frequency.unwrap_or(0.0)));
+    let amplifier = model.network.amplifier;
+    let omega = solution.scaled(frequency);
+    let mut margin = f64::INFINITY;
+    for node in [amplifier.plus, amplifier.minus] {
+        let steady = solution.voltage(node, 0.0).re * dc;
+        let moving = magnitude(solution.voltage(node, omega)) * peak;
+        margin = margin.min(high - steady - moving).min(steady - moving - low);
+    }
+    Outcome::Value(margin)
+}
+
+fn current(solution: &Solution<'_>, drive: &Drive) -> Outcome {
+    match solution.part(PartFigure::CurrentLimit) {
+        Some(limit) => Outcome::Value(limit - drive.i0.abs() - drive.ip),
+        None => Outcome::Undetermined(alloc::vec![Need::Part(PartFigure::CurrentLimit)]),
+    }
+}
+
+fn slew_rate(solution: &Solution<'_>) -> f64 {
+    f64::min(
+        solution.part(PartFigure::SlewRise).unwrap_or(f64::INFINITY),
+        solution.part(PartFigure::SlewFall).unwrap_or(f64::INFINITY),
+    )
+}
+
+fn slew(solution: &Solution<'_>, drive: &Drive) -> Outcome {
+    let mut missing = Missing::default();
+    missing.part(solution, PartFigure::SlewRise);
+    missing.part(solution, PartFigure::SlewFall);
+    let capacitive = solution.model.stage.load.capacitance.is_some();
+    if capacitive {
+        missing.part(solution, PartFigure::CurrentLimit);
+    }
+    if let Some(undetermined) = missing.outcome() {
+        return undetermined;
+    }
+    let signal = solution.model.stage.signal;
+    let (peak, frequency) = signal.map_or((0.0, 0.0), |s| (s.peak, s.frequency.unwrap_or(0.0)));
+    let needed = TAU * frequency * magnitude(pin(solution, frequency).behind) * peak;
+    if needed <= 0.0 {
+        return Outcome::Value(f64::INFINITY);
+    }
+    let mut ratio = slew_rate(solution) / needed;
+    let charging = drive.ip * drive.phase.1.abs();
+    if let (true, Some(limit)) = (capacitive && charging > 0.0, solution.part(PartFigure::CurrentLimit)) {
+        ratio = ratio.min((limit - drive.i0.abs()).max(0.0) / charging);
+    }
+    Outcome::Value(ratio)
+}
+
+/// Highest frequency at which the signal's amplitude at the pin (as at low frequency) stays within slew and current limit.
+///
+/// # Formula
+/// `ω·|E/V|·Vp = SR`, for a pin without output resistance `f = SR/(2π·Vp)`; and `|I/V|·Vp + |I0| = I_limit`. The lower of the two.
+///
+/// # Does not apply
+/// The rails do not depend on frequency: see `clip_margin`.
+pub fn full_power_bandwidth(solution: &Solution<'_>) -> Outcome {
+    let stage = solution.model.stage;
+    let loaded = stage.load.resistance.is_some() || stage.load.capacitance.is_some();
+    let limit = solution.part(PartFigure::CurrentLimit);
+    if loaded && limit.is_none() {
+        return Outcome::Undetermined(alloc::vec![Need::Part(PartFigure::CurrentLimit)]);
+    }
+    let (dc, peak) = stage.signal.map_or((0.0, 0.0), |s| (s.dc, s.peak));
+    let steady = pin(solution, 0.0);
+    let amplitude = magnitude(steady.voltage) * peak;
+    if amplitude <= 0.0 {
+        return Outcome::DoesNotApply("the signal has no alternating part");
+    }
+    let rate = slew_rate(solution);
+    let excess = |omega: f64| {
+        let here = pin(solution, solution.hertz(omega));
+        let volts = magnitude(here.voltage);
+        let slope = omega * solution.model.scale.1 * magnitude(here.behind) / volts * amplitude / rate;
+        let amperes = limit.filter(|_| loaded).map_or(0.0, |l| {
+            (magnitude(here.current) / volts * amplitude + (steady.current.re * dc).abs()) / l
+        });
+        slope.max(amperes) - 1.0
+    };
+    // Bracket around the frequency that the slew rate alone gives.
+    let plain = rate / amplitude / solution.model.scale.1;
+    let (mut low, mut high) = (plain, plain);
+    for _ in 0..200 {
+        if excess(low) <= 0.0 {
+            break;
+        }
+        low /= 2.0;
+    }
+    if excess(low) > 0.0 {
+        return Outcome::DoesNotApply("the output current exceeds the limit at any frequency");
+    }
+    for _ in 0..200 {
+        if excess(high) >= 0.0 {
+            break;
+        }
+        high *= 2.0;
+    }
+    Outcome::Value(solution.hertz(if high > low { search::root(low, high, excess) } else { low }))
+}
+
+/// The output envelope: the largest clean peak at the load against frequency.
+pub fn envelope(solution: &Solution<'_>, from: f64, to: f64, points: usize) -> alloc::vec::Vec<EnvelopePoint> {
+    let model = solution.model;
+    let stage = model.stage;
+    let dc = stage.signal.map_or(0.0, |s| s.dc);
+    let steady = pin(solution, 0.0);
+    let rails = rails(solution).ok();
+    let limit = solution.part(PartFigure::CurrentLimit);
+    let rate = slew_rate(solution);
+    super::response::frequencies(from, to, points)
+        .map(|frequency| {
+            let here = pin(solution, frequency);
+            let gain = magnitude(solution.transfer(solution.scaled(frequency)));
+            let mut drive =
+                Drive { v0: steady.voltage.re * dc, vp: 0.0, i0: steady.current.re * dc, ip: 0.0, phase: (1.0, 0.0) };
+            let bound = rails.as_ref().and_then(|rails| largest(rails, &mut drive, &here)).map(|peak| peak * gain);
+            let current = limit.map(|l| (l - drive.i0.abs()).max(0.0) / magnitude(here.current) * gain);
+            let slew = rate.is_finite().then(|| rate / (TAU * frequency * magnitude(here.behind)) * gain);
+            let finite = |v: Option<f64>| v.filter(|v| v.is_finite());
+            EnvelopePoint { frequency, rails: finite(bound), current: finite(current), slew: finite(slew) }
+        })
+        .collect()
+}
+
+/// The source amplitude at which the clip margin is spent: the margin falls almost linearly, so the secant ends soon.
+fn largest(rails: &Rails<'_>, drive: &mut Drive, here: &Pin) -> Option<f64> {
+    let mut margin = |peak: f64| {
+        drive.set_alternating(here, peak);
+        // Beyond the table's last current the pin is taken to clip.
+        rails.margin(drive).unwrap_or(-peak)
+    };
+    let (mut a, mut fa) = (0.0, margin(0.0));
+    if fa <= 0.0 {
+        return Some(0.0);
+    }
+    let mut b = fa / magnitude(here.voltage);
+    let mut fb = margin(b);
+    for _ in 0..12 {
+        if fb.abs() <= 1e-6 * fa.abs() || (fb - fa).abs() <= 0.0 {
+            break;
+        }
+        let c = (b - fb * (b - a) / (fb - fa)).max(0.0);
+        if fb < 0.0 && fa > 0.0 || (fb - fa).abs() > 0.0 {
+            if fb > 0.0 {
+                (a, fa) = (b, fb);
+            }
+            b = c;
+            fb = margin(b);
+        }
+    }
+    drive.set_alternating(here, 0.0);
+    Some(b)
+}
+

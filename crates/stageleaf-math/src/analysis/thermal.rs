@@ -1,0 +1,116 @@
+//! Heat: supply current, dissipation, junction temperature, power in the resistors.
+//!
+//! # Formula
+//! With pin voltage `V0 + Vp·cos θ` and current `I0 + Ip·cos(θ + φ)`, the positive rail gives the current while it flows out and
+//! the negative one while it flows in: `P = V₊·⟨I⁺⟩ − V₋·⟨I⁻⟩ − ⟨V·I⟩`, all means in closed form. The quiescent current's
+//! power is added in full. The amplitude is the worst up to the stated one: with a resistive load the peak lies inside, at
+//! `2·Vs/π` for a symmetrical supply. Junction: `Tj = Ta + θja·P`.
+//!
+//! # Does not apply
+//! Class-AB overlap: counting the quiescent power in full is slightly high.
+//!
+//! # Source
+//! Class-B dissipation: A. Sedra, K. Smith, *Microelectronic Circuits*, output stages, from memory; derived here for any phase
+//! and DC part.
+
+use core::f64::consts::PI;
+
+use super::swing::{Drive, drive};
+use crate::{
+    network::{Law, dense::admittance},
+    part::PartFigure,
+    report::{Need, NoiseOrigin, Outcome},
+    solution::{Solution, magnitude},
+};
+
+/// Power figures of a build.
+#[derive(Clone, Debug)]
+pub struct Power {
+    /// Quiescent and mean load current from the positive supply, A.
+    pub supply_current: Outcome,
+    /// W.
+    pub dissipation: Outcome,
+    /// K.
+    pub junction: Outcome,
+}
+
+/// Means of a current's positive and negative parts.
+fn halves(i0: f64, ip: f64) -> (f64, f64) {
+    if ip <= i0.abs() {
+        return (i0.max(0.0), (-i0).max(0.0));
+    }
+    let angle = libm::acos(-i0 / ip);
+    let positive = (i0 * angle + ip * libm::sin(angle)) / PI;
+    (positive, positive - i0)
+}
+
+/// Heat in the output stage for a drive between two rails, W.
+#[must_use]
+pub fn output_stage(drive: &Drive, amplitude: f64, high: f64, low: f64) -> f64 {
+    let (vp, ip) = (drive.vp * amplitude, drive.ip * amplitude);
+    let (sourced, sunk) = halves(drive.i0, ip);
+    high * sourced - low * sunk - drive.v0 * drive.i0 - 0.5 * vp * ip * drive.phase.0
+}
+
+/// Power figures.
+pub fn power<'s>(solution: &'s Solution<'_>) -> &'s Power {
+    solution.power.get_or_init(|| {
+        let model = solution.model;
+        let lacking = |need: Need| Outcome::Undetermined(alloc::vec![need]);
+        let Some(quiescent) = solution.part(PartFigure::SupplyCurrent) else {
+            let outcome = lacking(Need::Part(PartFigure::SupplyCurrent));
+            return Power { supply_current: outcome.clone(), dissipation: outcome.clone(), junction: outcome };
+        };
+        let drive = drive(solution);
+        let amplifiers = f64::from(model.stage.part.amplifiers.unwrap_or(1).max(1));
+        let supply_current = Outcome::Value(quiescent * amplifiers + halves(drive.i0, drive.ip).0);
+        let Some((positive, negative)) = model.parameters.supply() else {
+            let outcome = lacking(Need::Supply);
+            return Power { supply_current, dissipation: outcome.clone(), junction: outcome };
+        };
+        let (high, low) = (solution.values[positive], solution.values[negative]);
+        let heat = |amplitude: f64| output_stage(&drive, amplitude, high, low);
+        // The heat is concave in the amplitude: a golden section, and both ends.
+        let (mut a, mut b) = (0.0, 1.0);
+        for _ in 0..40 {
+            let (x, y) = (b - 0.618_033_988_749_894_9 * (b - a), a + 0.618_033_988_749_894_9 * (b - a));
+            if heat(x) > heat(y) { b = y } else { a = x }
+        }
+        let worst = heat(0.0).max(heat(1.0)).max(heat(f64::midpoint(a, b)));
+        let total = quiescent * amplifiers * (high - low) + worst;
+        let junction = match (solution.part(PartFigure::JunctionToAmbient), model.parameters.temperature()) {
+            (None, _) => lacking(Need::Part(PartFigure::JunctionToAmbient)),
+            (_, None) => lacking(Need::Ambient),
+            (Some(resistance), Some(slot)) => Outcome::Value(solution.values[slot] + resistance * total),
+        };
+        Power { supply_current, dissipation: Outcome::Value(total), junction }
+    })
+}
+
+/// Power in every resistor of the stage: whose it is, W.
+pub fn resistors<'s>(solution: &'s Solution<'_>) -> impl Iterator<Item = (NoiseOrigin, f64)> + 's {
+    let model = solution.model;
+    let (dc, peak, crest, frequency) =
+        model.stage.signal.map_or((0.0, 0.0, 1.0, 0.0), |s| (s.dc, s.peak, s.crest_factor, s.frequency.unwrap_or(0.0)));
+    let omega = solution.scaled(frequency);
+    let s = num_complex::Complex64::new(0.0, core::f64::consts::TAU * frequency);
+    model.network.elements.iter().filter_map(move |element| {
+        let origin = element.noise.filter(|o| matches!(o, NoiseOrigin::Component(_)))?;
+        let across = |w: f64| solution.voltage(element.a, w) - solution.voltage(element.b, w);
+        let rms = magnitude(across(omega)) * peak / crest;
+        let steady = across(0.0).re * dc;
+        match element.law {
+            Law::Resistance(r) if solution.values[r] > 0.0 => Some((origin, (rms * rms + steady * steady) / solution.values[r])),
+            Law::SeriesRc(r, _) => {
+                let current = magnitude(admittance(element.law, &solution.values, s)) * rms;
+                Some((origin, current * current * solution.values[r]))
+            }
+            _ => None,
+        }
+    })
+}
+
+/// The resistor with the most power.
+pub fn hottest_resistor(solution: &Solution<'_>) -> Option<(NoiseOrigin, f64)> {
+    resistors(solution).max_by(|a, b| a.1.total_cmp(&b.1))
+}

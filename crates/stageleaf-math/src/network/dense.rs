@@ -1,0 +1,143 @@
+//! The same network by dense modified nodal analysis at one complex frequency: the check on the expansion.
+//!
+//! # Source
+//! Ho, Ruehli, Brennan, "The modified nodal approach to network analysis", IEEE Trans. Circuits and Systems 22 (1975).
+
+use alloc::{vec, vec::Vec};
+
+use num_complex::Complex64;
+
+use super::{DRIVEN, GROUND, Law, Network, Node};
+
+/// What drives the network.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Drive {
+    /// One volt at the driven node.
+    Source,
+    /// One ampere out of `from` and into `to`, the driven node held at zero.
+    Current {
+        /// Where it leaves.
+        from: Node,
+        /// Where it enters.
+        to: Node,
+    },
+    /// One volt in series with the amplifier's non-inverting input, the driven node held at zero.
+    AmplifierInput,
+}
+
+/// Node voltages (by node number, ground included), or `None` when the matrix is singular.
+///
+/// `values` is the parameter table's, `gain` the amplifier's open-loop gain and `resistance` its output resistance at `s`.
+#[must_use]
+pub fn solve(
+    network: &Network,
+    values: &[f64],
+    gain: Complex64,
+    resistance: f64,
+    s: Complex64,
+    drive: Drive,
+) -> Option<Vec<Complex64>> {
+    let nodes = network.nodes;
+    let n = nodes + 1; // unknowns 1..nodes: voltages; then source current, amplifier current, at index nodes−1, nodes
+    let mut matrix = vec![Complex64::new(0.0, 0.0); n * n];
+    let mut right = vec![Complex64::new(0.0, 0.0); n];
+    let row = |node: Node| usize::from(node.0).checked_sub(1);
+    let (source_row, amplifier_row) = (nodes - 1, nodes);
+    let mut add = |r: Option<usize>, c: Option<usize>, y: Complex64| {
+        if let (Some(r), Some(c)) = (r, c) {
+            matrix[r * n + c] += y;
+        }
+    };
+    for element in &network.elements {
+        let y = admittance(element.law, values, s);
+        let (a, b) = (row(element.a), row(element.b));
+        add(a, a, y);
+        add(b, b, y);
+        add(a, b, -y);
+        add(b, a, -y);
+    }
+    let one = Complex64::new(1.0, 0.0);
+    let driven = row(DRIVEN);
+    add(driven, Some(source_row), one);
+    add(Some(source_row), driven, one);
+    let amplifier = network.amplifier;
+    add(row(amplifier.pin), Some(amplifier_row), -one);
+    add(Some(amplifier_row), row(amplifier.pin), one);
+    add(Some(amplifier_row), Some(amplifier_row), Complex64::new(resistance, 0.0));
+    add(Some(amplifier_row), row(amplifier.plus), -gain);
+    add(Some(amplifier_row), row(amplifier.minus), gain);
+    match drive {
+        Drive::Source => right[source_row] = one,
+        Drive::Current { from, to } => {
+            if let Some(r) = row(to) {
+                right[r] += one;
+            }
+            if let Some(r) = row(from) {
+                right[r] -= one;
+            }
+        }
+        Drive::AmplifierInput => right[amplifier_row] = gain,
+    }
+    eliminate(&mut matrix, &mut right, n)?;
+    let mut voltages = vec![Complex64::new(0.0, 0.0); nodes];
+    voltages[1..].copy_from_slice(&right[..nodes - 1]);
+    voltages[usize::from(GROUND.0)] = Complex64::new(0.0, 0.0);
+    Some(voltages)
+}
+
+/// The admittance of an element at `s`.
+#[must_use]
+pub fn admittance(law: Law, values: &[f64], s: Complex64) -> Complex64 {
+    match law {
+        Law::Resistance(r) => Complex64::new(1.0 / values[r], 0.0),
+        Law::Capacitance(c) => s * values[c],
+        Law::SeriesRc(r, c) => s * values[c] / (s * (values[r] * values[c]) + 1.0),
+    }
+}
+
+/// Gaussian elimination with row scaling and partial pivoting; the solution replaces `right`.
+fn eliminate(matrix: &mut [Complex64], right: &mut [Complex64], n: usize) -> Option<()> {
+    for r in 0..n {
+        let scale = matrix[r * n..(r + 1) * n].iter().map(|v| v.l1_norm()).fold(0.0, f64::max);
+        if scale <= 0.0 {
+            return None;
+        }
+        for v in &mut matrix[r * n..(r + 1) * n] {
+            *v /= scale;
+        }
+        right[r] /= scale;
+    }
+    for k in 0..n {
+        let pivot = (k..n).max_by(|&a, &b| matrix[a * n + k].l1_norm().total_cmp(&matrix[b * n + k].l1_norm()))?;
+        if matrix[pivot * n + k].l1_norm() <= 0.0 {
+            return None;
+        }
+        if pivot != k {
+            for c in 0..n {
+                matrix.swap(pivot * n + c, k * n + c);
+            }
+            right.swap(pivot, k);
+        }
+        let inverse = Complex64::new(1.0, 0.0) / matrix[k * n + k];
+        for r in k + 1..n {
+            let factor = matrix[r * n + k] * inverse;
+            if factor.l1_norm() <= 0.0 {
+                continue;
+            }
+            for c in k..n {
+                let step = factor * matrix[k * n + c];
+                matrix[r * n + c] -= step;
+            }
+            let step = factor * right[k];
+            right[r] -= step;
+        }
+    }
+    for k in (0..n).rev() {
+        let mut sum = right[k];
+        for c in k + 1..n {
+            sum -= matrix[k * n + c] * right[c];
+        }
+        right[k] = sum / matrix[k * n + k];
+    }
+    Some(())
+}

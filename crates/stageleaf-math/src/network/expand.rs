@@ -1,0 +1,357 @@
+//! Determinants of the nodal matrix as polynomials in s, by expansion over the network's branches.
+//!
+//! # Formula
+//! The nodal matrix is a sum of rank-one stamps, `Y = Σ y_e·u_e·v_eᵀ`, so by Cauchy and Binet
+//! `det Y = Σ_S Π_{e∈S} y_e · det U_S · det V_S` over all sets `S` of as many elements as there are nodes. Either
+//! determinant is 0, 1 or −1: `S` must be a spanning tree of the graph in which currents flow (`u`) and of the one in
+//! which voltages are sensed (`v`); for a passive branch both are the same. The sum is taken branch by branch, merging all
+//! partial sets that leave the nodes joined in the same way.
+//!
+//! Passive networks have no negative term, so nothing cancels: a coefficient is as exact as the element values,
+//! however badly they are scaled. A branch carries two polynomials, its weight when left out and when taken (`R` and 1 for
+//! a resistor, 1 and `sC` for a capacitor), so that a resistance of zero needs no special case.
+//!
+//! # Source
+//! Feussner's expansion and the two-graph method: W.-K. Chen, *Applied Graph Theory*, North-Holland, chapters 2 and 4, from
+//! memory. Checked against a dense nodal solution in `tests/outside/`.
+
+use alloc::{collections::BTreeMap, vec, vec::Vec};
+
+use super::MAX_NODES;
+
+/// Something that takes part in the expansion.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Column {
+    /// A passive branch between two nodes.
+    Branch(u8, u8),
+    /// An amplifier's output: its resistance to ground, or its controlled source from `minus − plus`.
+    Amplifier {
+        /// Non-inverting input.
+        plus: u8,
+        /// Inverting input.
+        minus: u8,
+        /// Output pin.
+        pin: u8,
+    },
+}
+
+/// Which determinant to expand.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Shape {
+    /// `det Y` with the nodes in `both` joined to ground, in the rows of `rows` and the columns of `columns` struck out.
+    /// One row and one column at most.
+    Closed {
+        /// Joined to ground in both graphs (bit set).
+        both: u16,
+        /// Row struck out (node, or 0).
+        row: u8,
+        /// Column struck out (node, or 0).
+        column: u8,
+    },
+    /// Voltages at all nodes for a voltage at `source`: outcomes are split by the nodes that follow the source.
+    Forward {
+        /// The driven node.
+        source: u8,
+    },
+    /// The voltage at `sense` for a current into each node: outcomes are split by the nodes that reach it.
+    Adjoint {
+        /// Held at zero, since an ideal source drives it.
+        source: u8,
+        /// Where the voltage is sensed.
+        sense: u8,
+    },
+}
+
+/// Numeric weight of a column: polynomials in s when left out, when taken, and, for an amplifier, the controlled source's
+/// weight is kept symbolic (see [`Outcome::amplified`]).
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Weight {
+    /// When left out.
+    pub out: [f64; DEGREE + 1],
+    /// When taken.
+    pub taken: [f64; DEGREE + 1],
+}
+
+/// Greatest degree of a branch's weight.
+pub const DEGREE: usize = 3;
+
+/// Where an expansion's terms end up.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Outcome {
+    /// Open side's nodes that are not joined to ground (bit set); 0 for closed shapes.
+    pub joined: u16,
+    /// Whether the terms carry the amplifier's gain as a factor.
+    pub amplified: bool,
+    /// Its polynomial in the result of [`Plan::evaluate`].
+    start: usize,
+    length: usize,
+}
+
+#[derive(Clone, Copy, Debug)]
+struct Step {
+    from: u32,
+    to: u32,
+    length: u16,
+    column: u16,
+    which: Which,
+    negative: bool,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+enum Which {
+    Out,
+    Taken,
+    Controlled,
+}
+
+/// A compiled expansion: a flat list of multiply-and-add steps, for any element values.
+#[derive(Clone, Debug)]
+pub struct Plan {
+    steps: Vec<Step>,
+    size: usize,
+    /// Where the terms end up.
+    pub outcomes: Vec<Outcome>,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+struct State {
+    rows: [u8; MAX_NODES],
+    columns: [u8; MAX_NODES],
+    amplified: bool,
+}
+
+/// Joins the nodes of a column with +1 at `a` and −1 at `b`; the sign of the pivot, or `None` when they are joined already.
+fn join(partition: &mut [u8; MAX_NODES], a: u8, b: u8) -> Option<bool> {
+    let (a, b) = (partition[usize::from(a)], partition[usize::from(b)]);
+    if a == b {
+        return None;
+    }
+    let (high, low) = if a > b { (a, b) } else { (b, a) };
+    let below = (1..high).filter(|&node| partition[usize::from(node)] == node).count();
+    for member in partition.iter_mut() {
+        if *member == high {
+            *member = low;
+        }
+    }
+    Some((high != a) ^ (below % 2 == 1))
+}
+
+impl Plan {
+    /// Compiles the expansion of `shape` for a network of `nodes` nodes (ground included). `degrees` gives each column's
+    /// greatest degree, out and taken.
+    #[must_use]
+    pub fn compile(nodes: usize, columns: &[Column], degrees: &[usize], shape: Shape) -> Self {
+        assert!(nodes <= MAX_NODES && columns.len() == degrees.len());
+        let mut start = State { rows: [0; MAX_NODES], columns: [0; MAX_NODES], amplified: false };
+        for node in 0..nodes {
+            let label = u8::try_from(node).expect("few nodes");
+            start.rows[node] = label;
+            start.columns[node] = label;
+        }
+        let mut negative = false;
+        let rank = |partition: &[u8; MAX_NODES], node: u8| (1..node).filter(|&n| partition[usize::from(n)] == n).count();
+        match shape {
+            Shape::Closed { both, row, column } => {
+                for node in 1..nodes {
+                    if both >> node & 1 == 1 {
+                        start.rows[node] = 0;
+                        start.columns[node] = 0;
+                    }
+                }
+                if row != 0 || column != 0 {
+                    negative = (rank(&start.rows, row) + rank(&start.columns, column)) % 2 == 1;
+                    start.rows[usize::from(row)] = 0;
+                    start.columns[usize::from(column)] = 0;
+                }
+            }
+            Shape::Forward { source } => {
+                assert!(source == 1, "the sign below counts on the driven node's being the first");
+                start.rows[usize::from(source)] = 0;
+                negative = nodes % 2 == 1; // (−1) to the number of nodes besides ground and source
+            }
+            Shape::Adjoint { source, sense } => {
+                start.rows[usize::from(source)] = 0;
+                start.columns[usize::from(source)] = 0;
+                let live = nodes - 2;
+                negative = (live - 1 + rank(&start.columns, sense)) % 2 == 1;
+                start.columns[usize::from(sense)] = 0;
+            }
+        }
+        let (rows_open, columns_open) = match shape {
+            Shape::Closed { .. } => (0, 0),
+            Shape::Forward { .. } => (0, 1),
+            Shape::Adjoint { .. } => (1, 0),
+        };
+
+        let mut layers: Vec<Vec<State>> = vec![vec![start]];
+        let mut moves: Vec<Vec<(usize, usize, Which, bool)>> = Vec::new();
+        for (index, column) in columns.iter().enumerate() {
+            let mut next: BTreeMap<State, usize> = BTreeMap::new();
+            let mut made = Vec::new();
+            let mut here = Vec::new();
+            let rest = &columns[index + 1..];
+            for (from, state) in layers[index].iter().enumerate() {
+                let mut follow = |to: State, which: Which, sign: bool| {
+                    if stranded(&to.rows, nodes, rest, true) <= rows_open && stranded(&to.columns, nodes, rest, false) <= columns_open {
+                        let slot = *next.entry(to).or_insert_with(|| {
+                            made.push(to);
+                            made.len() - 1
+                        });
+                        here.push((from, slot, which, sign));
+                    }
+                };
+                follow(*state, Which::Out, false);
+                let mut try_join = |(ua, ub): (u8, u8), (va, vb): (u8, u8), which: Which, amplified: bool| {
+                    let mut to = *state;
+                    if let (Some(u), Some(v)) = (join(&mut to.rows, ua, ub), join(&mut to.columns, va, vb)) {
+                        to.amplified |= amplified;
+                        follow(to, which, u ^ v);
+                    }
+                };
+                match *column {
+                    Column::Branch(a, b) => try_join((a, b), (a, b), Which::Taken, false),
+                    Column::Amplifier { plus, minus, pin } => {
+                        try_join((pin, 0), (pin, 0), Which::Taken, false);
+                        try_join((pin, 0), (minus, plus), Which::Controlled, true);
+                    }
+                }
+            }
+            layers.push(made);
+            moves.push(here);
+        }
+
+        // Keep what reaches an end.
+        let mut alive: Vec<Vec<bool>> = layers.iter().map(|l| vec![false; l.len()]).collect();
+        let last = layers.len() - 1;
+        let open = |partition: &[u8; MAX_NODES]| {
+            let mut seen = 0u16;
+            for &member in &partition[..nodes] {
+                if member != 0 {
+                    seen |= 1 << member;
+                }
+            }
+            seen.count_ones()
+        };
+        for (slot, state) in layers[last].iter().enumerate() {
+            alive[last][slot] = open(&state.rows) == rows_open && open(&state.columns) == columns_open;
+        }
+        for index in (0..last).rev() {
+            for &(from, to, _, _) in &moves[index] {
+                if alive[index + 1][to] {
+                    alive[index][from] = true;
+                }
+            }
+        }
+
+        let mut place: Vec<Vec<(usize, usize)>> = layers.iter().map(|l| vec![(0, 0); l.len()]).collect();
+        place[0][0] = (0, 1);
+        let mut size = 1;
+        let mut steps = Vec::new();
+        for index in 0..last {
+            let mut lengths = vec![0usize; layers[index + 1].len()];
+            for &(from, to, _, _) in &moves[index] {
+                if alive[index][from] && alive[index + 1][to] {
+                    lengths[to] = lengths[to].max(place[index][from].1 + degrees[index]);
+                }
+            }
+            for (to, &length) in lengths.iter().enumerate() {
+                if length > 0 {
+                    place[index + 1][to] = (size, length);
+                    size += length;
+                }
+            }
+            for &(from, to, which, sign) in &moves[index] {
+                if alive[index][from] && alive[index + 1][to] {
+                    let narrow = |n: usize| u32::try_from(n).expect("small plan");
+                    steps.push(Step {
+                        from: narrow(place[index][from].0),
+                        to: narrow(place[index + 1][to].0),
+                        length: u16::try_from(place[index][from].1).expect("small degree"),
+                        column: u16::try_from(index).expect("few columns"),
+                        which,
+                        negative: sign ^ (negative && index == 0),
+                    });
+                }
+            }
+        }
+        let outcomes = layers[last]
+            .iter()
+            .enumerate()
+            .filter(|&(slot, _)| alive[last][slot])
+            .map(|(slot, state)| {
+                let side = if rows_open == 1 { &state.rows } else { &state.columns };
+                let joined = (0..nodes).filter(|&n| side[n] != 0).fold(0u16, |bits, n| bits | 1 << n);
+                let (start, length) = place[last][slot];
+                Outcome { joined, amplified: state.amplified, start, length }
+            })
+            .collect();
+        Self { steps, size, outcomes }
+    }
+
+    /// Carries out the expansion. `scratch` is reused between calls.
+    pub fn evaluate(&self, weights: &[Weight], scratch: &mut Vec<f64>) {
+        scratch.clear();
+        scratch.resize(self.size + DEGREE, 0.0);
+        scratch[0] = 1.0;
+        for step in &self.steps {
+            let weight = &weights[usize::from(step.column)];
+            let factors = match step.which {
+                Which::Out => &weight.out,
+                Which::Taken => &weight.taken,
+                Which::Controlled => &ONE,
+            };
+            let (from, to, length) = (step.from as usize, step.to as usize, usize::from(step.length));
+            for (power, &factor) in factors.iter().enumerate() {
+                if factor == 0.0 {
+                    continue;
+                }
+                let factor = if step.negative { -factor } else { factor };
+                let (low, high) = scratch.split_at_mut(to + power);
+                for (source, sink) in low[from..from + length].iter().zip(&mut high[..length]) {
+                    *sink += factor * source;
+                }
+            }
+        }
+    }
+
+    /// The polynomial of one outcome after [`Plan::evaluate`].
+    #[must_use]
+    pub fn polynomial<'s>(&self, outcome: &Outcome, scratch: &'s [f64]) -> &'s [f64] {
+        &scratch[outcome.start..outcome.start + outcome.length]
+    }
+
+    /// How many multiply-and-add steps an evaluation takes.
+    #[must_use]
+    pub fn steps(&self) -> usize {
+        self.steps.len()
+    }
+}
+
+const ONE: [f64; DEGREE + 1] = [1.0, 0.0, 0.0, 0.0];
+
+/// How many groups of nodes, ground's apart, no remaining column can join to anything.
+fn stranded(partition: &[u8; MAX_NODES], nodes: usize, rest: &[Column], rows: bool) -> u32 {
+    let mut reachable = 1u16;
+    for column in rest {
+        let mut mark = |a: u8, b: u8| {
+            let (a, b) = (partition[usize::from(a)], partition[usize::from(b)]);
+            if a != b {
+                reachable |= 1 << a | 1 << b;
+            }
+        };
+        match *column {
+            Column::Branch(a, b) => mark(a, b),
+            Column::Amplifier { plus, minus, pin } => {
+                mark(pin, 0);
+                if !rows {
+                    mark(minus, plus);
+                }
+            }
+        }
+    }
+    let mut groups = 0u16;
+    for &member in &partition[..nodes] {
+        groups |= 1 << member;
+    }
+    (groups & !reachable).count_ones()
+}

@@ -1,0 +1,260 @@
+//! The table of everything that can vary from build to build: one slot per value, with its range and its grade.
+
+use alloc::vec::Vec;
+
+use crate::{
+    part::{PartFigure, Rating, Worse},
+    report::Parameter,
+    stage::{Source, Stage, Toleranced},
+};
+
+/// How good a bound is.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Grade {
+    /// Stated by the note (a tolerance, a supply range): no question of the part's data.
+    Stated,
+    /// Guaranteed by the part's data sheet.
+    Guaranteed,
+    /// Typical.
+    Typical,
+}
+
+/// Groups of results, to skip work that a value cannot change.
+pub mod touch {
+    /// Response and loop.
+    pub const NETWORK: u8 = 1;
+    /// Noise.
+    pub const NOISE: u8 = 2;
+    /// DC errors.
+    pub const DC: u8 = 4;
+    /// Swing, range, current, slew.
+    pub const SWING: u8 = 8;
+    /// Dissipation and temperature.
+    pub const POWER: u8 = 16;
+    /// All of them.
+    pub const ALL: u8 = 31;
+}
+
+/// One slot.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Entry {
+    /// What it is.
+    pub parameter: Parameter,
+    /// Nominal value.
+    pub nominal: f64,
+    /// Least value over the spread.
+    pub low: f64,
+    /// Greatest value over the spread.
+    pub high: f64,
+    /// Grades of nominal, low and high.
+    pub grade: [Grade; 3],
+    /// Temperature coefficient's magnitude, 1/K (components only).
+    pub drift: f64,
+    /// Which results it can change.
+    pub touches: u8,
+}
+
+/// The table.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Parameters {
+    /// Slots, in a fixed order: components, source, load, strays, supplies, temperature, part figures, headroom.
+    pub entries: Vec<Entry>,
+    part: [u8; PartFigure::COUNT],
+    supply: Option<(usize, usize)>,
+    temperature: Option<usize>,
+    headroom: usize,
+}
+
+const ABSENT: u8 = u8::MAX;
+
+impl Parameters {
+    /// The table of a stage.
+    #[must_use]
+    pub fn of(stage: &Stage) -> Self {
+        let mut entries = Vec::new();
+        let away = stage.ambient.map_or(0.0, |a| f64::max(a.range.high - a.range.nominal, a.range.nominal - a.range.low));
+        let mut passive = |parameter: Parameter, value: &Toleranced| {
+            let drift = value.drift * away;
+            entries.push(Entry {
+                parameter,
+                nominal: value.nominal,
+                low: value.nominal * (1.0 - value.minus) * (1.0 - drift),
+                high: value.nominal * (1.0 + value.plus) * (1.0 + drift),
+                grade: [Grade::Stated; 3],
+                drift: value.drift,
+                touches: touch::ALL,
+            });
+        };
+        for component in &stage.components {
+            passive(Parameter::Component(component.name), &component.value);
+        }
+        match &stage.source {
+            Some(Source::Resistive { resistance: value } | Source::Capacitive { capacitance: value }) => {
+                passive(Parameter::SourceImpedance, value);
+            }
+            None => {}
+        }
+        for (parameter, value) in [
+            (Parameter::LoadResistance, &stage.load.resistance),
+            (Parameter::LoadCapacitance, &stage.load.capacitance),
+            (Parameter::StrayInverting, &stage.board.inverting_node),
+            (Parameter::StrayNonInverting, &stage.board.non_inverting_node),
+            (Parameter::StrayFeedback, &stage.board.across_feedback),
+        ] {
+            if let Some(value) = value {
+                passive(parameter, value);
+            }
+        }
+        let mut stated = |parameter: Parameter, span: crate::stage::Span, touches: u8| {
+            entries.push(Entry {
+                parameter,
+                nominal: span.nominal,
+                low: span.low,
+                high: span.high,
+                grade: [Grade::Stated; 3],
+                drift: 0.0,
+                touches,
+            });
+            entries.len() - 1
+        };
+        let supply = stage.supply.map(|s| {
+            let touches = touch::DC | touch::SWING | touch::POWER;
+            (stated(Parameter::SupplyPositive, s.positive, touches), stated(Parameter::SupplyNegative, s.negative, touches))
+        });
+        let temperature = stage
+            .ambient
+            .map(|a| stated(Parameter::Temperature, a.range, touch::NOISE | touch::DC | touch::SWING | touch::POWER));
+        let mut part = [ABSENT; PartFigure::COUNT];
+        for &figure in PartFigure::ALL {
+            if let Some(entry) = part_entry(figure, stage.part.rating(figure)) {
+                part[figure as usize] = u8::try_from(entries.len()).unwrap_or(ABSENT);
+                entries.push(entry);
+            }
+        }
+        let headroom = entries.len();
+        entries.push(headroom_entry(stage));
+        Self { entries, part, supply, temperature, headroom }
+    }
+
+    /// The slot of a parameter, if the stage has it.
+    #[must_use]
+    pub fn slot(&self, parameter: Parameter) -> Option<usize> {
+        match parameter {
+            Parameter::Part(figure) => self.part_slot(figure),
+            other => self.entries.iter().position(|e| e.parameter == other),
+        }
+    }
+
+    /// The slot of a part figure, if the part states it.
+    #[must_use]
+    pub const fn part_slot(&self, figure: PartFigure) -> Option<usize> {
+        let slot = self.part[figure as usize];
+        if slot == ABSENT { None } else { Some(slot as usize) }
+    }
+
+    /// Slots of positive and negative supply.
+    #[must_use]
+    pub const fn supply(&self) -> Option<(usize, usize)> {
+        self.supply
+    }
+
+    /// Slot of the ambient temperature.
+    #[must_use]
+    pub const fn temperature(&self) -> Option<usize> {
+        self.temperature
+    }
+
+    /// Slot of the headroom tables' position between typical (0) and guaranteed (1).
+    #[must_use]
+    pub const fn headroom(&self) -> usize {
+        self.headroom
+    }
+
+    /// Every nominal value, by slot; behind them, at [`Parameters::pole_factor`], the factor on the part's higher poles.
+    #[must_use]
+    pub fn nominal(&self) -> Vec<f64> {
+        self.entries.iter().map(|e| e.nominal).chain(core::iter::once(1.0)).collect()
+    }
+
+    /// Index of the factor on the part's higher poles, which no data sheet states a spread for: moved only to ask what rests on them.
+    #[must_use]
+    pub fn pole_factor(&self) -> usize {
+        self.entries.len()
+    }
+}
+
+fn part_entry(figure: PartFigure, rating: &Rating) -> Option<Entry> {
+    let nominal = rating.nominal(figure.worse())?;
+    let nominal_grade = match (rating.typ, figure.worse(), rating.min, rating.max) {
+        (Some(_), ..) => Grade::Typical,
+        (None, Worse::High, _, Some(_)) | (None, Worse::Low, Some(_), _) => Grade::Guaranteed,
+        _ => Grade::Typical,
+    };
+    let bound = |stated: Option<f64>, pick: fn(f64, f64) -> f64| match stated {
+        Some(v) => (pick(v, nominal), Grade::Guaranteed),
+        None => (nominal, nominal_grade),
+    };
+    let (low, low_grade) = bound(rating.min, f64::min);
+    let (high, high_grade) = bound(rating.max, f64::max);
+    Some(Entry {
+        parameter: Parameter::Part(figure),
+        nominal,
+        low,
+        high,
+        grade: [nominal_grade, low_grade, high_grade],
+        drift: 0.0,
+        touches: part_touches(figure),
+    })
+}
+
+const fn part_touches(figure: PartFigure) -> u8 {
+    use PartFigure as P;
+    match figure {
+        P::OpenLoop
+        | P::Gbw
+        | P::OutputResistance
+        | P::DifferentialResistance
+        | P::DifferentialCapacitance
+        | P::CommonModeResistance
+        | P::CommonModeCapacitance => touch::ALL,
+        P::NoiseVoltage | P::NoiseVoltageCorner | P::NoiseExponent | P::NoiseCurrent | P::NoiseCurrentCorner => touch::NOISE,
+        P::Offset
+        | P::OffsetDrift
+        | P::BiasCurrent
+        | P::BiasDoubling
+        | P::OffsetCurrent
+        | P::Cmrr
+        | P::PsrrPositive
+        | P::PsrrNegative => touch::DC | touch::SWING,
+        P::RangeFromNegative | P::RangeFromPositive | P::SlewRise | P::SlewFall | P::CurrentLimit => touch::SWING,
+        P::SupplyCurrent | P::JunctionToAmbient => touch::DC | touch::SWING | touch::POWER,
+        P::SupplySpanMin
+        | P::SupplySpanMax
+        | P::DifferentialMax
+        | P::ClampCurrentMax
+        | P::CmrrCorner
+        | P::PsrrPositiveCorner
+        | P::PsrrNegativeCorner
+        | P::StableGainMin
+        | P::OverloadRecovery
+        | P::JunctionMax => 0,
+    }
+}
+
+fn headroom_entry(stage: &Stage) -> Entry {
+    let rows = || stage.part.headroom_high.iter().chain(&stage.part.headroom_low);
+    let any_typical = rows().any(|h| h.volts.typ.is_some());
+    let all_guaranteed = !stage.part.headroom_high.is_empty() && rows().all(|h| h.volts.max.is_some());
+    let nominal = if any_typical { 0.0 } else { 1.0 };
+    let high_grade = if all_guaranteed { Grade::Guaranteed } else { Grade::Typical };
+    let low_grade = if any_typical { Grade::Typical } else { high_grade };
+    Entry {
+        parameter: Parameter::Headroom,
+        nominal,
+        low: nominal,
+        high: 1.0,
+        grade: [low_grade, low_grade, high_grade],
+        drift: 0.0,
+        touches: touch::SWING,
+    }
+}

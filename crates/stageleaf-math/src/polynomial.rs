@@ -1,0 +1,249 @@
+//! Real polynomials in s: evaluation on the imaginary axis, products, roots.
+
+use alloc::{vec, vec::Vec};
+
+use num_complex::Complex64;
+
+/// A real polynomial, lowest power first. Empty is zero.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct Polynomial(pub Vec<f64>);
+
+impl Polynomial {
+    /// Adds `factor · other`.
+    pub fn add_scaled(&mut self, other: &[f64], factor: f64) {
+        if self.0.len() < other.len() {
+            self.0.resize(other.len(), 0.0);
+        }
+        for (sink, source) in self.0.iter_mut().zip(other) {
+            *sink += factor * source;
+        }
+    }
+
+    /// The product with another.
+    #[must_use]
+    pub fn times(&self, other: &[f64]) -> Self {
+        if self.0.is_empty() || other.is_empty() {
+            return Self::default();
+        }
+        let mut product = vec![0.0; self.0.len() + other.len() - 1];
+        for (i, a) in self.0.iter().enumerate() {
+            for (j, b) in other.iter().enumerate() {
+                product[i + j] += a * b;
+            }
+        }
+        Self(product)
+    }
+
+    /// The value at `s = jω`: real and imaginary part.
+    #[must_use]
+    pub fn at(&self, omega: f64) -> Complex64 {
+        let x = -omega * omega;
+        let (mut even, mut odd) = (0.0, 0.0);
+        let mut i = self.0.len();
+        if i % 2 == 1 {
+            i -= 1;
+            even = self.0[i];
+        }
+        while i >= 2 {
+            odd = odd * x + self.0[i - 1];
+            even = even * x + self.0[i - 2];
+            i -= 2;
+        }
+        Complex64::new(even, odd * omega)
+    }
+
+    /// The constant term.
+    #[must_use]
+    pub fn constant(&self) -> f64 {
+        self.0.first().copied().unwrap_or(0.0)
+    }
+
+    /// Whether every coefficient is zero.
+    #[must_use]
+    pub fn is_zero(&self) -> bool {
+        self.0.iter().all(|c| c.abs() <= 0.0)
+    }
+
+    /// The roots, from `guesses` where their number fits (the roots of a neighbour), else from the Newton polygon.
+    ///
+    /// # Formula
+    /// Aberth's simultaneous Newton iteration; beyond the unit circle on the reversed polynomial, so that nothing overflows.
+    ///
+    /// # Source
+    /// O. Aberth, "Iteration methods for finding all zeros of a polynomial simultaneously", Math. Comp. 27 (1973);
+    /// starting points: D. Bini, "Numerical computation of polynomial zeros by means of Aberth's method", Numer. Algorithms 13
+    /// (1996); both from memory. Rejected: the eigenvalues of `C⁻¹G`, which lose the small poles when time constants span decades.
+    #[must_use]
+    pub fn roots(&self, guesses: Option<&[Complex64]>) -> Vec<Complex64> {
+        let first = self.0.iter().position(|c| c.abs() > 0.0);
+        let last = self.0.iter().rposition(|c| c.abs() > 0.0);
+        let (Some(first), Some(last)) = (first, last) else { return Vec::new() };
+        let coefficients = &self.0[first..=last];
+        let degree = coefficients.len() - 1;
+        let mut roots = match guesses {
+            Some(g) if g.len() == first + degree => g[first..].to_vec(),
+            _ => starting_points(coefficients),
+        };
+        aberth(coefficients, &mut roots);
+        pair_up(&mut roots);
+        let mut all = vec![Complex64::new(0.0, 0.0); first];
+        all.append(&mut roots);
+        all
+    }
+}
+
+/// Points on the circles that the upper convex hull of `(k, ln|a_k|)` gives.
+fn starting_points(coefficients: &[f64]) -> Vec<Complex64> {
+    let degree = coefficients.len() - 1;
+    let logs: Vec<Option<f64>> = coefficients.iter().map(|c| (c.abs() > 0.0).then(|| libm::log(c.abs()))).collect();
+    let mut hull: Vec<usize> = Vec::new();
+    for k in 0..=degree {
+        let Some(y) = logs[k] else { continue };
+        while hull.len() >= 2 {
+            let (a, b) = (hull[hull.len() - 2], hull[hull.len() - 1]);
+            let (ya, yb) = (logs[a].unwrap_or(0.0), logs[b].unwrap_or(0.0));
+            if (yb - ya) * span(a, k) <= (y - ya) * span(a, b) {
+                hull.pop();
+            } else {
+                break;
+            }
+        }
+        hull.push(k);
+    }
+    let mut points = Vec::with_capacity(degree);
+    for pair in hull.windows(2) {
+        let (a, b) = (pair[0], pair[1]);
+        let radius = libm::exp((logs[a].unwrap_or(0.0) - logs[b].unwrap_or(0.0)) / span(a, b));
+        for k in 0..b - a {
+            // Spread over the circle, slightly off the axes; the constant only breaks the symmetry.
+            let angle = core::f64::consts::TAU * (span(0, k) + 0.25) / span(a, b) + 0.7 + span(0, a);
+            points.push(Complex64::new(radius * libm::cos(angle), radius * libm::sin(angle)));
+        }
+    }
+    points
+}
+
+#[expect(clippy::cast_precision_loss, reason = "degrees are far below 2^53")]
+fn span(a: usize, b: usize) -> f64 {
+    (b - a) as f64
+}
+
+/// Newton's correction `p/p'` at `z`, without overflow.
+fn newton(coefficients: &[f64], z: Complex64) -> Complex64 {
+    let zero = Complex64::new(0.0, 0.0);
+    let (mut p, mut d) = (zero, zero);
+    if z.norm_sqr() <= 1.0 {
+        for &c in coefficients.iter().rev() {
+            d = d * z + p;
+            p = p * z + c;
+        }
+        if p.l1_norm() <= 0.0 { zero } else { p / d }
+    } else {
+        // p(z) = zⁿ·q(1/z): p'/p = n/z − q'(1/z)/(z²·q(1/z))
+        let w = Complex64::new(1.0, 0.0) / z;
+        for &c in coefficients {
+            d = d * w + p;
+            p = p * w + c;
+        }
+        if p.l1_norm() <= 0.0 {
+            return zero;
+        }
+        let ratio = w * (Complex64::new(span(0, coefficients.len() - 1), 0.0) - w * d / p);
+        Complex64::new(1.0, 0.0) / ratio
+    }
+}
+
+fn aberth(coefficients: &[f64], roots: &mut [Complex64]) {
+    let n = roots.len();
+    let mut done = vec![false; n];
+    for _ in 0..200 {
+        let mut moving = false;
+        for i in 0..n {
+            if done[i] {
+                continue;
+            }
+            let step = newton(coefficients, roots[i]);
+            let mut repulsion = Complex64::new(0.0, 0.0);
+            for j in 0..n {
+                if j != i {
+                    let gap = roots[i] - roots[j];
+                    let size = gap.norm_sqr();
+                    if size > 0.0 {
+                        repulsion += gap.conj() / size;
+                    }
+                }
+            }
+            let correction = step / (Complex64::new(1.0, 0.0) - step * repulsion);
+            if !(correction.re.is_finite() && correction.im.is_finite()) {
+                done[i] = true;
+                continue;
+            }
+            roots[i] -= correction;
+            if correction.norm_sqr() <= 1e-30 * roots[i].norm_sqr() {
+                done[i] = true;
+            } else {
+                moving = true;
+            }
+        }
+        if !moving {
+            break;
+        }
+    }
+}
+
+/// Real coefficients: roots are real or come in conjugate pairs. Orders them by magnitude.
+fn pair_up(roots: &mut [Complex64]) {
+    for i in 0..roots.len() {
+        if roots[i].im.abs() <= 1e-9 * roots[i].re.abs() {
+            roots[i].im = 0.0;
+        }
+    }
+    roots.sort_by(|a, b| a.norm_sqr().total_cmp(&b.norm_sqr()).then(a.re.total_cmp(&b.re)).then(a.im.total_cmp(&b.im)));
+    let mut used = vec![false; roots.len()];
+    for i in 0..roots.len() {
+        if used[i] || roots[i].im == 0.0 {
+            continue;
+        }
+        used[i] = true;
+        let mirrored = roots[i].conj();
+        let partner = (0..roots.len())
+            .filter(|&j| !used[j] && roots[j].im != 0.0)
+            .min_by(|&a, &b| (roots[a] - mirrored).norm_sqr().total_cmp(&(roots[b] - mirrored).norm_sqr()));
+        if let Some(j) = partner {
+            used[j] = true;
+            let (re, im) = ((roots[i].re + roots[j].re) / 2.0, (roots[i].im - roots[j].im).abs() / 2.0);
+            roots[i] = Complex64::new(re, -im);
+            roots[j] = Complex64::new(re, im);
+        }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn roots_over_thirteen_decades_are_found() {
+        // By hand: (s+1)(s+1e6)(s+1e13)
+        let p = Polynomial(vec![1.0, 1.0]).times(&[1e6, 1.0]).times(&[1e13, 1.0]);
+        let roots = p.roots(None);
+        for (root, want) in roots.iter().zip([-1.0, -1e6, -1e13]) {
+            assert!((root.re / want - 1.0).abs() < 1e-12 && root.im == 0.0, "{root} {want}");
+        }
+    }
+
+    #[test]
+    fn a_conjugate_pair_is_exact() {
+        // s² + 2s + 5: −1 ± 2j
+        let roots = Polynomial(vec![5.0, 2.0, 1.0]).roots(None);
+        assert!((roots[0] - Complex64::new(-1.0, -2.0)).norm() < 1e-14, "{}", roots[0]);
+        assert!((roots[1] - Complex64::new(-1.0, 2.0)).norm() < 1e-14, "{}", roots[1]);
+    }
+
+    #[test]
+    fn value_on_the_imaginary_axis() {
+        // (1 + 2s + 3s² + 4s³) at s = 2j: 1 − 12 + j(4 − 32)
+        let v = Polynomial(vec![1.0, 2.0, 3.0, 4.0]).at(2.0);
+        assert!((v.re + 11.0).abs() < 1e-14 && (v.im + 28.0).abs() < 1e-14);
+    }
+}
