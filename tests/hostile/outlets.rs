@@ -1,0 +1,74 @@
+//! What the other commands do with odd requests, and that a note's text cannot become markup.
+
+use crate::{Bench, block, fenced};
+
+#[test]
+fn an_unknown_kind_gets_the_list_and_the_nearest() {
+    let bench = Bench::new("unknown-kind");
+    let said = bench.run(&["new", "folower"]);
+    let wanted = "new: no stage kind is called `folower`\nallowed: follower, non-inverting, inverting\ntry: stageleaf new follower\n";
+    assert_eq!((said.code, said.out.as_str(), said.err.as_str()), (Some(2), "", wanted));
+}
+
+#[test]
+fn an_unknown_figure_gets_the_nearest() {
+    let bench = Bench::new("unknown-figure");
+    let said = bench.run(&["explain", "phase_margn"]);
+    let wanted = "explain: no figure is called `phase_margn`\nallowed: a figure id; `stageleaf explain` lists them\ntry: stageleaf explain phase_margin\n";
+    assert_eq!((said.code, said.out.as_str(), said.err.as_str()), (Some(2), "", wanted));
+}
+
+#[test]
+fn an_unknown_argument_is_bad_input() {
+    let bench = Bench::new("unknown-argument");
+    assert_eq!(bench.run(&["check"]).code, Some(2));
+    assert_eq!(bench.run(&["check", ".", "--format", "poem"]).code, Some(2));
+    assert_eq!(bench.run(&["--help"]).code, Some(0));
+}
+
+#[test]
+fn markup_in_a_name_stays_text_in_the_page() {
+    let bench = Bench::new("markup");
+    for (n, name) in
+        ["<script>alert(1)</script>", "</script><script>alert(1)</script>", "<img src=x onerror=alert(1)>", "a'b&c <!-- <![CDATA["]
+            .iter()
+            .enumerate()
+    {
+        let file = format!("note-{n}.md");
+        bench.write(&file, fenced(&block(name, &[])));
+        assert_eq!(bench.run(&["check", &file]).code, Some(0), "{name}");
+        let said = bench.run(&["page", &file]);
+        assert_eq!(said.code, Some(0), "{name}: {}", said.err);
+        for forbidden in ["<script>alert", "<img src=x", "<!--", "<![CDATA["] {
+            assert!(!said.out.contains(forbidden), "{name} became markup: {forbidden}");
+        }
+    }
+}
+
+#[test]
+fn a_page_of_a_stage_that_is_not_there_names_those_that_are() {
+    let bench = Bench::new("no-such-stage");
+    bench.write("note.md", fenced(&block("A stage", &[])));
+    let said = bench.run(&["page", "note.md", "--stage", "A stag"]);
+    let wanted = "note.md: no stage of this note is called “A stag”\nallowed: “A stage”\ntry: --stage \"A stage\"\n\n";
+    assert_eq!((said.code, said.out.as_str(), said.err.as_str()), (Some(2), "", wanted));
+}
+
+#[test]
+fn a_script_that_could_close_its_element_is_refused() {
+    let bench = Bench::new("bad-script");
+    bench.write("note.md", fenced(&block("A stage", &[])));
+    bench.write("bad.js", "'</SCRIPT>'");
+    let said = bench.run(&["page", "note.md", "--script", "bad.js"]);
+    let wanted = "bad.js: this script cannot stand inside a page: it holds `</script` or `<!--`\nallowed: the stageleaf.js that the site builder writes\n\n";
+    assert_eq!((said.code, said.out.as_str(), said.err.as_str()), (Some(2), "", wanted));
+}
+
+#[test]
+fn an_output_that_cannot_be_written_is_told() {
+    let bench = Bench::new("no-output");
+    bench.write("note.md", fenced(&block("A stage", &[])));
+    let said = bench.run(&["page", "note.md", "--out", "no/such/folder/page.html"]);
+    assert_eq!(said.code, Some(2));
+    assert!(said.err.starts_with("no/such/folder/page.html: the page could not be written: "), "{}", said.err);
+}
