@@ -1,10 +1,14 @@
-//! stub
-use crate::{problem::Problem, settings::Settings, shelf::Shelf};
+//! Stage blocks: a stage with the place of every value, so that one value can be changed and everything else kept.
+
+use std::ops::Range;
+
 use stageleaf_math::{
     figure::Query,
     stage::{Span, Stage},
 };
-use std::ops::Range;
+
+#[cfg(feature = "toml")]
+pub use crate::reading::read_block;
 
 /// Where a block's text stands in its file.
 #[derive(Clone, Debug, Default, PartialEq, Eq)]
@@ -16,6 +20,7 @@ pub struct Place {
     /// What stands in the file before each line of the block's text (list indent, `> `); missing lines have nothing.
     pub prefixes: Vec<String>,
 }
+
 impl Place {
     /// A block whose lines begin at the file's margin.
     #[must_use]
@@ -23,10 +28,11 @@ impl Place {
         Self { file: file.to_owned(), first_line, prefixes: Vec::new() }
     }
 }
+
 /// A value of a block, with its place.
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub struct Field {
-    /// `components.Rf`, `supply.positive`, `limits.bandwidth`, `part`.
+    /// Table and key: `components.Rf`, `supply.positive`, `limits.gain_at 2 MHz`, `part`.
     pub path: String,
     /// The value's text.
     pub text: String,
@@ -39,6 +45,7 @@ pub struct Field {
     /// Column in the file of the content.
     pub column: usize,
 }
+
 /// A figure measured at the bench.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Measured {
@@ -51,6 +58,7 @@ pub struct Measured {
     /// Temperature in K at which it was measured.
     pub temperature: Option<f64>,
 }
+
 /// A stage block that could be read.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Block {
@@ -67,20 +75,40 @@ pub struct Block {
     /// What `[measured]` states.
     pub measured: Vec<Measured>,
 }
+
 impl Block {
     /// The value at `path`.
     #[must_use]
     pub fn field(&self, path: &str) -> Option<&Field> {
         self.fields.iter().find(|f| f.path == path)
     }
-    /// The block's text with the value at `path` replaced by `value` (or added), everything else kept.
+
+    /// The block's text with the value at `path` replaced, everything else kept: comments, order, spacing.
+    ///
+    /// A key that is not there is added at the end of its table; a table that is not there, at the end of the text.
+    /// The value is written as a TOML string, whatever it holds.
+    #[cfg(feature = "toml")]
     #[must_use]
-    pub fn rewrite(&self, _path: &str, _value: &str) -> String {
-        self.text.clone()
+    pub fn rewrite(&self, path: &str, value: &str) -> String {
+        match self.field(path) {
+            Some(field) => crate::rewriting::replaced(&self.text, &field.whole, value),
+            None => crate::rewriting::added(&self.text, path, value),
+        }
     }
-}
-/// Reads a block.
-#[cfg(feature = "toml")]
-pub fn read_block(_text: &str, _place: &Place, _shelf: &Shelf, _settings: &Settings) -> Result<Block, Vec<Problem>> {
-    Err(vec![])
+
+    /// The block's text without the value at `path`: its line goes if nothing else stands on it. What is not there, or
+    /// shares its line, stays.
+    #[must_use]
+    pub fn without(&self, path: &str) -> String {
+        let Some(field) = self.field(path) else { return self.text.clone() };
+        let start = self.text[..field.whole.start].rfind('\n').map_or(0, |i| i + 1);
+        let end = self.text[field.whole.end..].find('\n').map_or(self.text.len(), |i| field.whole.end + i + 1);
+        let before = self.text[start..field.whole.start].trim();
+        let after = self.text[field.whole.end..end].trim();
+        let alone = before.ends_with('=')
+            && before.matches('=').count() == 1
+            && !before.contains('{')
+            && (after.is_empty() || after.starts_with('#'));
+        if alone { format!("{}{}", &self.text[..start], &self.text[end..]) } else { self.text.clone() }
+    }
 }

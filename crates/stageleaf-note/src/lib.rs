@@ -29,8 +29,14 @@ pub mod print;
 pub mod problem;
 pub mod quantity;
 pub mod query;
+#[cfg(feature = "toml")]
+mod reading;
+#[cfg(feature = "toml")]
+mod rewriting;
 pub mod settings;
 pub mod shelf;
+#[cfg(feature = "toml")]
+mod surroundings;
 #[cfg(feature = "toml")]
 mod table;
 pub mod template;

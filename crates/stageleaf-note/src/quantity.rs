@@ -196,7 +196,7 @@ fn number(text: &str, d: Dimension) -> Result<Number, Trouble> {
         number.comma = mark == ',';
         if number.comma && second.len() == 3 && (1..=3).contains(&first.len()) && first.trim_start_matches('0') == first {
             let message = format!("{} could be {first}.{second} or {first}{second}", quoted(text));
-            return Err(Trouble::new(whole, message, d).attempt(format!("{first}.{second} or {first}{second}")));
+            return Err(Trouble::new(whole, message, d));
         }
         if second.is_empty() && number.comma {
             return Err(Trouble::new(whole, format!("{} has a comma without digits behind it", quoted(text)), d));

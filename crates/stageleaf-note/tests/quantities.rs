@@ -211,7 +211,7 @@ fn what_could_be_two_numbers_is_an_error() {
     for text in ["1,000,000", "1.000,5", "1 000", "1'000", "1_000", "1\u{a0}000 Ω", "1,000.5"] {
         assert_eq!(error(text, Resistance), format!("\"{text}\" {separators}"));
     }
-    assert_eq!(error("1,000", Resistance), "\"1,000\" could be 1.000 or 1000 | ohms, as `91k`, `4k7`, `2R2`, `91 kΩ` | 1.000 or 1000");
+    assert_eq!(error("1,000", Resistance), "\"1,000\" could be 1.000 or 1000 | ohms, as `91k`, `4k7`, `2R2`, `91 kΩ`");
     assert_eq!(error("4.7k7", Resistance), "\"4.7k7\" has two decimal marks | ohms, as `91k`, `4k7`, `2R2`, `91 kΩ`");
     assert_eq!(error("12 V 5 %", Voltage), "\"12 V 5 %\" holds more than one number | volts, as `12 V`, `0.4 V`, `20 mV`");
     assert_eq!(
@@ -353,7 +353,7 @@ fn a_rounded_value_reads_back_within_half_of_its_last_digit() {
 fn hostile_text_is_refused_and_nothing_panics() {
     let mut draw = Draw(0xbad);
     let alphabet: Vec<char> = "0123456789.,-+−±eEkKMmµuΩVRF/√Hz°C% '_\u{a0}\u{0}\"€𝟜".chars().collect();
-    for _ in 0..50_000 {
+    for _ in 0..4_000 {
         let n = draw.next() % 9;
         let text: String = (0..n).map(|_| alphabet[usize::try_from(draw.next() % 1000).unwrap() % alphabet.len()]).collect();
         for d in DIMENSIONS {
