@@ -33,6 +33,8 @@ pub mod query;
 mod reading;
 #[cfg(feature = "toml")]
 mod rewriting;
+#[cfg(feature = "toml")]
+mod stocking;
 pub mod settings;
 pub mod shelf;
 #[cfg(feature = "toml")]

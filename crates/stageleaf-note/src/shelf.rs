@@ -1,31 +1,35 @@
-//! stub
-use crate::problem::Problem;
+//! The shelf: amplifiers as part files state them.
+//!
+//! Tables: `[part]` `[supply]` `[input]` `[gain]` `[slew]` `[output]` `[noise]` `[thermal]`. A figure is a text, which is
+//! its typical value, or a table `{ typ, min, max, source }`. Everything but `[part] name` may be left out.
+
 use stageleaf_math::part::Part;
+
+#[cfg(feature = "toml")]
+pub use crate::stocking::read_part;
+
 /// A part with the file that states it.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct ShelfPart {
     /// The part.
     pub part: Part,
-    /// The file.
+    /// The file, as it was named to the reader.
     pub file: String,
-    /// Its text.
+    /// The file's text.
     pub text: String,
 }
+
 /// The parts that stages can choose.
-#[derive(Clone, Debug, Default)]
+#[derive(Clone, Debug, Default, PartialEq)]
 pub struct Shelf {
-    /// In no particular order.
+    /// In the order in which they were added.
     pub parts: Vec<ShelfPart>,
 }
+
 impl Shelf {
     /// The part called `id`.
     #[must_use]
     pub fn find(&self, id: &str) -> Option<&ShelfPart> {
         self.parts.iter().find(|p| p.part.id == id)
     }
-}
-/// Reads a part file; its id is the file's stem.
-#[cfg(feature = "toml")]
-pub fn read_part(_text: &str, _file: &str) -> Result<Part, Vec<Problem>> {
-    Err(vec![])
 }

@@ -21,8 +21,8 @@ const LISTED: usize = 200;
 #[derive(Clone, Copy)]
 pub struct Entry<'t> {
     pub key: &'t str,
-    key_start: usize,
-    key_end: usize,
+    pub key_start: usize,
+    pub key_end: usize,
     pub value: &'t Spanned<DeValue<'t>>,
 }
 
