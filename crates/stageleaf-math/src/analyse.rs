@@ -56,12 +56,39 @@ const EXTRA_LOW_VOLTAGE: f64 = 60.0;
 /// # Ok::<(), stageleaf_math::Error>(())
 /// ```
 pub fn analyse(stage: &Stage) -> Result<Report, Error> {
+    analyse_in(stage, Detail::Full)
+}
+
+/// How much of the spread to work out.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Detail {
+    /// Ranges of the figures that limits judge; the others at nominal values alone. A tenth of the work.
+    Judged,
+    /// Ranges of every figure.
+    Full,
+}
+
+/// [`analyse`] with less detail, for a page that follows the hand: figures that no limit judges have no range and no basis.
+///
+/// # Errors
+/// What [`check`] finds.
+pub fn analyse_in(stage: &Stage, detail: Detail) -> Result<Report, Error> {
     check(stage)?;
     let model = Model::compile(stage);
     let first = Solution::new(&model, model.parameters.nominal(), None);
     let near = first.roots().clone();
     let mut spread = Spread::new(&model, &near);
-    let figures = queries(stage).into_iter().map(|query| figure_row(&mut spread, query)).collect();
+    let figures = queries(stage)
+        .into_iter()
+        .map(|query| {
+            let judged = stage.limits.iter().any(|l| l.query == query);
+            if judged || detail == Detail::Full {
+                figure_row(&mut spread, query)
+            } else {
+                FigureRow { query, nominal: outcome(&spread.nominal, query), range: None, basis: None }
+            }
+        })
+        .collect();
     let limits: Vec<LimitRow> = stage.limits.iter().map(|limit| limit_row(&mut spread, limit)).collect();
     let mut report = Report {
         name: stage.name.clone(),
@@ -242,19 +269,19 @@ fn range(low: &Extreme, high: &Extreme) -> Option<(f64, f64)> {
 }
 
 fn figure_row(spread: &mut Spread<'_>, query: Query) -> FigureRow {
-    let nominal = outcome(&spread.nominal, query);
     let extremes = spread.extremes(query);
-    let basis = nominal.value().map(|v| {
+    let basis = extremes.centre.value().map(|v| {
         let tolerance = 1e-3 * v.abs();
-        spread.basis(query, &extremes.low, tolerance).max(spread.basis(query, &extremes.high, tolerance))
+        let at_low = spread.basis(query, &extremes, &extremes.low, tolerance);
+        at_low.max(spread.basis(query, &extremes, &extremes.high, tolerance))
     });
-    FigureRow { query, range: range(&extremes.low, &extremes.high), nominal, basis }
+    FigureRow { query, range: range(&extremes.low, &extremes.high), nominal: extremes.centre, basis }
 }
 
 fn limit_row(spread: &mut Spread<'_>, limit: &Limit) -> LimitRow {
     let query = limit.query;
-    let nominal = outcome(&spread.nominal, query);
     let extremes = spread.extremes(query);
+    let nominal = extremes.centre.clone();
     let range = range(&extremes.low, &extremes.high);
     let room = |extreme: &Extreme, edge: f64, upper: bool| extreme.outcome.value().map(|v| if upper { edge - v } else { v - edge });
     // The side with less room decides; a side without a value decides at once.
@@ -284,7 +311,7 @@ fn limit_row(spread: &mut Spread<'_>, limit: &Limit) -> LimitRow {
             (Some(v), _) => 0.1 * v.abs(),
             _ => 0.0,
         };
-        spread.basis(query, &extreme, 0.01 * distance)
+        spread.basis(query, &extremes, &extreme, 0.01 * distance)
     });
     let dominant = extreme
         .effects

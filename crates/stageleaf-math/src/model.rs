@@ -1,6 +1,7 @@
 //! A stage compiled: its network, its expansions, its parameter table. One model serves every build of the stage.
 
 use alloc::{vec, vec::Vec};
+use core::cell::OnceCell;
 
 use crate::{
     analysis::second_pole,
@@ -43,7 +44,31 @@ pub struct Model<'a> {
     pub zeros: Vec<Zero>,
     /// Impedance and angular frequency by which the network is scaled.
     pub scale: (f64, f64),
+    /// Whether the part states all that response and loop depend on, so that stability can be judged.
+    pub small_signal: bool,
+    input: OnceCell<Probe>,
+    output: OnceCell<Probe>,
 }
+
+/// An impedance seen from outside: a network and the determinants whose ratio it is.
+#[derive(Clone, Debug)]
+pub struct Probe {
+    /// The network without what is outside.
+    pub network: Network,
+    /// With the terminal joined to ground.
+    pub above: Expansion,
+    /// With it open.
+    pub below: Expansion,
+}
+
+/// What response and loop depend on, besides the higher poles.
+pub const SMALL_SIGNAL: [PartFigure; 5] = [
+    PartFigure::OpenLoop,
+    PartFigure::Gbw,
+    PartFigure::OutputResistance,
+    PartFigure::DifferentialCapacitance,
+    PartFigure::CommonModeCapacitance,
+];
 
 impl<'a> Model<'a> {
     /// Lays out and compiles.
@@ -61,16 +86,47 @@ impl<'a> Model<'a> {
             Shape::Closed { both: 1 << source, row: network.amplifier.pin.0, column: network.load.0 },
         );
         let scale = scale(&network, &parameters);
+        let small_signal = SMALL_SIGNAL.iter().all(|&f| parameters.part_slot(f).is_some());
         let poles = stage.part.poles.clone().or_else(|| second_pole::solve(&stage.part).map(|f| vec![f]));
-        Self { stage, parameters, network, forward, adjoint, series_input, poles, zeros: stage.part.zeros.clone(), scale }
+        let has_poles = poles.is_some();
+        Self { stage, parameters, network, forward, adjoint, series_input, poles, zeros: stage.part.zeros.clone(), scale, small_signal: small_signal && has_poles, input: OnceCell::new(), output: OnceCell::new() }
     }
 
-    /// The network and expansion pair for an impedance seen from outside: numerator with `node` struck out, denominator.
-    #[must_use]
-    pub fn impedance_probe(&self, without: Without, shapes: [Shape; 2]) -> (Network, [Expansion; 2]) {
+    /// The impedance at the stage's signal terminal.
+    pub fn input_probe(&self) -> &Probe {
+        self.input.get_or_init(|| self.probe(Without { source: true, load: false }, 1 << DRIVEN.0, 0))
+    }
+
+    /// The impedance at the output terminal.
+    pub fn output_probe(&self) -> &Probe {
+        self.output.get_or_init(|| self.probe(Without { source: false, load: true }, 1 << self.network.load.0, 1 << DRIVEN.0))
+    }
+
+    fn probe(&self, without: Without, terminal: u16, held: u16) -> Probe {
         let network = Builder::lay_out(self.stage, &self.parameters, without);
-        let expansions = shapes.map(|shape| Expansion::compile(&network, shape));
-        (network, expansions)
+        let closed = |both| Expansion::compile(&network, Shape::Closed { both, row: 0, column: 0 });
+        let (above, below) = (closed(terminal | held), closed(held));
+        Probe { network, above, below }
+    }
+
+    /// The transfer from the source to the load at DC, without solving the rest.
+    #[must_use]
+    pub fn dc_gain(&self, values: &[f64]) -> f64 {
+        let resistance = self.part(values, PartFigure::OutputResistance).unwrap_or(0.0);
+        let open_loop = self.part(values, PartFigure::OpenLoop).unwrap_or(1.0);
+        let weights = self.forward.weights(&self.network, values, resistance, self.scale);
+        let mut scratch = Vec::new();
+        self.forward.plan.evaluate_constants(&weights, &mut scratch);
+        let constant = |node: Node| -> f64 {
+            self.forward
+                .plan
+                .outcomes
+                .iter()
+                .filter(|o| o.joined >> node.0 & 1 == 1)
+                .map(|o| self.forward.plan.polynomial(o, &scratch)[0] * if o.amplified { open_loop } else { 1.0 })
+                .sum()
+        };
+        constant(self.network.load) / constant(DRIVEN)
     }
 
     /// A part figure's value in a build.

@@ -52,6 +52,28 @@ impl Polynomial {
         Complex64::new(even, odd * omega)
     }
 
+    /// `|p(jω)|²` as a polynomial in `x = ω²`.
+    #[must_use]
+    pub fn squared_magnitude(&self) -> Vec<f64> {
+        // Even and odd part on the axis: p(jω) = e(−x) + jω·o(−x), so |p|² = e² + x·o².
+        let alternate = |start: usize| -> Vec<f64> {
+            self.0.iter().skip(start).step_by(2).enumerate().map(|(k, c)| if k % 2 == 1 { -c } else { *c }).collect()
+        };
+        let (even, odd) = (Self(alternate(0)), Self(alternate(1)));
+        let mut square = even.times(&even.0);
+        let odd = odd.times(&odd.0);
+        if !odd.0.is_empty() {
+            square.add_scaled(&core::iter::once(0.0).chain(odd.0).collect::<Vec<f64>>(), 1.0);
+        }
+        square.0
+    }
+
+    /// The value at a real argument.
+    #[must_use]
+    pub fn horner(&self, x: f64) -> f64 {
+        self.0.iter().rev().fold(0.0, |sum, c| sum * x + c)
+    }
+
     /// The constant term.
     #[must_use]
     pub fn constant(&self) -> f64 {

@@ -30,16 +30,25 @@ pub fn margins(solution: &Solution<'_>) -> Margins {
     *solution.margins.get_or_init(|| {
         let looped = solution.looped();
         let grid = solution.grid();
-        let size = |w: f64| looped.returned.at(w).norm_sqr() / looped.open.at(w).norm_sqr() - 1.0;
+        let at = |w: f64| (looped.returned.at(w), looped.open.at(w));
+        let size = |w: f64| {
+            let (r, o) = at(w);
+            r.norm_sqr() / o.norm_sqr() - 1.0
+        };
         // Im T has the sign of Im(N·conj D), without the division.
-        let turn = |w: f64| (looped.returned.at(w) * looped.open.at(w).conj()).im;
+        let turn = |w: f64| {
+            let (r, o) = at(w);
+            (r * o.conj()).im
+        };
         let sensitivity = |w: f64| looped.open.at(w).norm_sqr() / looped.closed.at(w).norm_sqr();
         let mut worst: Option<(f64, f64)> = None;
         let (mut above, mut below) = (f64::INFINITY, 0.0f64);
         let (mut top, mut top_at) = (0.0, 0);
         let mut before: Option<(f64, f64, f64)> = None;
         for (i, &omega) in grid.iter().enumerate() {
-            let (s, t, e) = (size(omega), turn(omega), sensitivity(omega));
+            let (r, o) = at(omega);
+            let open = o.norm_sqr();
+            let (s, t, e) = (r.norm_sqr() - open, (r * o.conj()).im, open / (r + o).norm_sqr());
             if e > top {
                 (top, top_at) = (e, i);
             }

@@ -52,8 +52,13 @@ pub const fn touched_by(figure: Figure) -> u8 {
 /// A figure in one build.
 #[must_use]
 pub fn outcome(solution: &Solution<'_>, query: Query) -> Outcome {
+    lacking(solution, query).unwrap_or_else(|| value(solution, query))
+}
+
+/// What a figure lacks, if anything: the same for every build of a stage.
+#[must_use]
+pub fn lacking(solution: &Solution<'_>, query: Query) -> Option<Outcome> {
     use Figure as F;
-    let stage = solution.model.stage;
     let mut missing = Missing::default();
     match query.figure {
         F::Gain | F::GainError | F::GainDrift => missing.part(solution, PartFigure::OpenLoop),
@@ -110,14 +115,19 @@ pub fn outcome(solution: &Solution<'_>, query: Query) -> Outcome {
         }
         F::ResistorDissipation => missing.signal_level(solution),
     }
-    if let Some(undetermined) = missing.outcome() {
-        return undetermined;
-    }
+    missing.outcome()
+}
+
+/// A figure in one build of a stage that lacks nothing for it (see [`lacking`]).
+#[must_use]
+pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
+    use Figure as F;
+    let stage = solution.model.stage;
     if solution.no_dc_path() {
         return Outcome::NoDcPath;
     }
     let judged_by_roots = !matches!(query.figure, F::Crossover | F::PhaseMargin | F::GainMargin);
-    if judged_by_roots && missing_small_signal(solution).is_none() && solution.oscillates() {
+    if judged_by_roots && solution.model.small_signal && solution.oscillates() {
         return Outcome::Oscillates;
     }
     let value = match query.figure {
@@ -232,13 +242,7 @@ impl Missing {
 
     /// Needs all that response and loop depend on.
     pub fn small_signal(&mut self, solution: &Solution<'_>) {
-        for figure in [
-            PartFigure::OpenLoop,
-            PartFigure::Gbw,
-            PartFigure::OutputResistance,
-            PartFigure::DifferentialCapacitance,
-            PartFigure::CommonModeCapacitance,
-        ] {
+        for figure in crate::model::SMALL_SIGNAL {
             self.part(solution, figure);
         }
         if solution.model.poles.is_none() {

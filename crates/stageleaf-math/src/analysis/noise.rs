@@ -127,22 +127,52 @@ fn power(solution: &Solution<'_>, generator: &Generator, frequency: f64, below: 
     generator.numerator.at(solution.scaled(frequency)).norm_sqr() / below * generator.spectrum.at(frequency)
 }
 
-fn total(solution: &Solution<'_>, list: &[Generator], frequency: f64) -> f64 {
-    let below = solution.looped().closed.at(solution.scaled(frequency)).norm_sqr();
-    list.iter().map(|g| power(solution, g, frequency, below)).sum()
+/// All generators together: those with a white or 1/f spectrum summed into polynomials in ω², once for all frequencies.
+#[derive(Debug)]
+struct Total {
+    white: Polynomial,
+    flicker: Polynomial,
+    others: Vec<Generator>,
+}
+
+impl Total {
+    fn of(solution: &Solution<'_>) -> Self {
+        let mut total = Self { white: Polynomial::default(), flicker: Polynomial::default(), others: Vec::new() };
+        for generator in generators(solution) {
+            match generator.spectrum {
+                Spectrum::White(level) => total.white.add_scaled(&generator.numerator.squared_magnitude(), level),
+                Spectrum::Flicker(level, corner, 1.0) => {
+                    let square = generator.numerator.squared_magnitude();
+                    total.white.add_scaled(&square, level);
+                    total.flicker.add_scaled(&square, level * corner);
+                }
+                _ => total.others.push(generator),
+            }
+        }
+        total
+    }
+
+    fn at(&self, solution: &Solution<'_>, frequency: f64) -> f64 {
+        let omega = solution.scaled(frequency);
+        let below = solution.looped().closed.at(omega).norm_sqr();
+        let x = omega * omega;
+        let sum = self.white.horner(x) + self.flicker.horner(x) / frequency;
+        let others: f64 = self.others.iter().map(|g| g.numerator.at(omega).norm_sqr() * g.spectrum.at(frequency)).sum();
+        (sum + others) / below
+    }
 }
 
 /// Density at the load at `frequency`, V/√Hz.
 pub fn density(solution: &Solution<'_>, frequency: f64) -> f64 {
-    libm::sqrt(total(solution, &generators(solution), frequency))
+    libm::sqrt(Total::of(solution).at(solution, frequency))
 }
 
 /// Rms at the load over the stage's band, V; `None` without a band.
 pub fn integrated(solution: &Solution<'_>) -> Option<f64> {
     *solution.noise.get_or_init(|| {
         let band = solution.model.stage.band?;
-        let list = generators(solution);
-        Some(libm::sqrt(integrate(solution, band.from, band.to, |f| total(solution, &list, f))))
+        let total = Total::of(solution);
+        Some(libm::sqrt(integrate(solution, band.from, band.to, |f| total.at(solution, f))))
     })
 }
 
@@ -247,7 +277,8 @@ fn integrate(solution: &Solution<'_>, from: f64, to: f64, mut f: impl FnMut(f64)
             let middle = libm::log(solution.hertz(size));
             // A resonance is as narrow as its damping; a real pole bends the curve over about a decade.
             let width = if root.im == 0.0 { 1.2 } else { (root.re.abs() / size).max(1e-6) };
-            for k in [-2.0, 0.0, 2.0] {
+            let offsets: &[f64] = if root.im == 0.0 { &[0.0] } else { &[-2.0, 0.0, 2.0] };
+            for k in offsets {
                 let edge = middle + k * width;
                 if edge > low && edge < high {
                     edges.push(edge);
@@ -260,22 +291,23 @@ fn integrate(solution: &Solution<'_>, from: f64, to: f64, mut f: impl FnMut(f64)
         let frequency = libm::exp(x);
         f(frequency) * frequency
     };
-    let mut stack: Vec<(f64, f64, u32)> = edges.windows(2).filter(|e| e[1] > e[0]).map(|e| (e[0], e[1], 0)).collect();
-    let mut sum = 0.0;
+    let mut stack: Vec<(f64, f64, u32, f64, f64)> = Vec::with_capacity(edges.len() + 8);
     let mut scale = 0.0;
-    // Largest panels last in, first out is as good as any order: the tolerance is relative to what is known so far.
-    let coarse: Vec<f64> = stack.iter().map(|&(a, b, _)| kronrod(a, b, &mut in_log).0).collect();
-    for value in &coarse {
+    for e in edges.windows(2).filter(|e| e[1] > e[0]) {
+        let (value, error) = kronrod(e[0], e[1], &mut in_log);
         scale += value.abs();
+        stack.push((e[0], e[1], 0, value, error));
     }
-    while let Some((a, b, depth)) = stack.pop() {
-        let (value, error) = kronrod(a, b, &mut in_log);
+    let mut sum = 0.0;
+    while let Some((a, b, depth, value, error)) = stack.pop() {
         if error <= 1e-10 * scale || depth >= 24 {
             sum += value;
         } else {
             let middle = f64::midpoint(a, b);
-            stack.push((a, middle, depth + 1));
-            stack.push((middle, b, depth + 1));
+            for (a, b) in [(a, middle), (middle, b)] {
+                let (value, error) = kronrod(a, b, &mut in_log);
+                stack.push((a, b, depth + 1, value, error));
+            }
         }
     }
     sum

@@ -6,7 +6,7 @@ use num_complex::Complex64;
 
 use super::search;
 use crate::{
-    network::{DRIVEN, Without, expand::Shape},
+    model::Probe,
     parameters::touch,
     report::{ResponsePoint, Root},
     solution::{Solution, magnitude},
@@ -75,29 +75,19 @@ pub fn least_damped(solution: &Solution<'_>) -> Option<(f64, f64)> {
 
 /// Magnitude of the impedance that the source sees at the stage's terminal, at the signal's frequency, else at DC; Ω.
 pub fn input_impedance(solution: &Solution<'_>) -> f64 {
-    let driven = 1 << DRIVEN.0;
-    let (network, [grounded, open]) = solution.model.impedance_probe(
-        Without { source: true, load: false },
-        [Shape::Closed { both: driven, row: 0, column: 0 }, Shape::Closed { both: 0, row: 0, column: 0 }],
-    );
-    impedance(solution, &solution.determinant(&grounded, &network), &solution.determinant(&open, &network))
+    impedance(solution, solution.model.input_probe())
 }
 
 /// Magnitude of the impedance at the output terminal without the load, at the signal's frequency, else at DC; Ω.
 pub fn output_impedance(solution: &Solution<'_>) -> f64 {
-    let driven: u16 = 1 << DRIVEN.0;
-    let load: u16 = 1 << solution.model.network.load.0;
-    let (network, [struck, whole]) = solution.model.impedance_probe(
-        Without { source: false, load: true },
-        [Shape::Closed { both: driven | load, row: 0, column: 0 }, Shape::Closed { both: driven, row: 0, column: 0 }],
-    );
-    impedance(solution, &solution.determinant(&struck, &network), &solution.determinant(&whole, &network))
+    impedance(solution, solution.model.output_probe())
 }
 
-fn impedance(solution: &Solution<'_>, above: &crate::polynomial::Polynomial, below: &crate::polynomial::Polynomial) -> f64 {
+fn impedance(solution: &Solution<'_>, probe: &Probe) -> f64 {
     let omega = solution.scaled(solution.model.stage.signal.and_then(|s| s.frequency).unwrap_or(0.0));
-    let (a, b) = (magnitude(above.at(omega)), magnitude(below.at(omega)));
-    if b <= 0.0 { f64::INFINITY } else { a / b * solution.model.scale.0 }
+    let size = |expansion| magnitude(solution.determinant(expansion, &probe.network).at(omega));
+    let (above, below) = (size(&probe.above), size(&probe.below));
+    if below <= 0.0 { f64::INFINITY } else { above / below * solution.model.scale.0 }
 }
 
 /// Largest relative change of the DC gain per kelvin: the sum of `|∂ln G/∂ln x|·tc` over the components.
@@ -106,15 +96,18 @@ fn impedance(solution: &Solution<'_>, above: &crate::polynomial::Polynomial, bel
 /// Central differences of 1e-4; the worst combination of signs, since a stated coefficient has none.
 pub fn gain_drift(solution: &Solution<'_>) -> f64 {
     const STEP: f64 = 1e-4;
+    let gain = solution.dc_gain();
+    let mut values = solution.values.clone();
     let mut sum = 0.0;
     for (slot, entry) in solution.model.parameters.entries.iter().enumerate() {
         if entry.drift > 0.0 && entry.touches & touch::NETWORK != 0 {
-            let gain = |factor: f64| {
-                let mut values = solution.values.clone();
-                values[slot] *= factor;
-                Solution::new(solution.model, values, None).dc_gain()
-            };
-            sum += ((gain(1.0 + STEP) - gain(1.0 - STEP)) / (2.0 * STEP * solution.dc_gain())).abs() * entry.drift;
+            let nominal = values[slot];
+            values[slot] = nominal * (1.0 + STEP);
+            let more = solution.model.dc_gain(&values);
+            values[slot] = nominal * (1.0 - STEP);
+            let less = solution.model.dc_gain(&values);
+            values[slot] = nominal;
+            sum += ((more - less) / (2.0 * STEP * gain)).abs() * entry.drift;
         }
     }
     sum

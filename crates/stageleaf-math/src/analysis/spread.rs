@@ -15,7 +15,7 @@
 
 use alloc::{collections::BTreeMap, rc::Rc, vec::Vec};
 
-use super::{outcome, touched_by};
+use super::{lacking, touched_by, value};
 use crate::{
     figure::Query,
     limit::Basis,
@@ -48,10 +48,14 @@ pub struct Spread<'m> {
 /// A figure at its two worst corners.
 #[derive(Clone, Debug)]
 pub struct Extremes {
+    /// At nominal values.
+    pub centre: Outcome,
     /// Where it is least.
     pub low: Extreme,
     /// Where it is greatest.
     pub high: Extreme,
+    /// With each parameter at its ends, by slot; `None` where it has no value or was not moved.
+    seen: Vec<(usize, [Option<f64>; 2])>,
 }
 
 /// One of them.
@@ -117,14 +121,15 @@ impl<'m> Spread<'m> {
 
     /// The figure's least and greatest value over the spread.
     pub fn extremes(&mut self, query: Query) -> Extremes {
-        let centre = outcome(&self.nominal, query);
+        let centre = lacking(&self.nominal, query).unwrap_or_else(|| value(&self.nominal, query));
         if matches!(centre, Outcome::Undetermined(_) | Outcome::DoesNotApply(_) | Outcome::NoDcPath) {
-            let same = Extreme { outcome: centre, corner: Vec::new(), effects: Vec::new(), ends: Vec::new() };
-            return Extremes { low: same.clone(), high: same };
+            let same = Extreme { outcome: centre.clone(), corner: Vec::new(), effects: Vec::new(), ends: Vec::new() };
+            return Extremes { centre, low: same.clone(), high: same, seen: Vec::new() };
         }
         let touched = touched_by(query.figure);
         let mut low = Search::new(&centre);
         let mut high = Search::new(&centre);
+        let mut all = Vec::new();
         let mut bad: Option<(Outcome, Vec<(usize, bool)>)> = None;
         let slots: Vec<usize> = self
             .model
@@ -143,7 +148,7 @@ impl<'m> Spread<'m> {
                 if (end - nominal).abs() <= 0.0 {
                     continue;
                 }
-                let there = outcome(&self.moved(slot, side), query);
+                let there = value(&self.moved(slot, side), query);
                 match there.value() {
                     Some(v) => seen[usize::from(side)] = Some(v),
                     // What does not apply there (no complex poles, say) takes nothing away here.
@@ -151,11 +156,12 @@ impl<'m> Spread<'m> {
                     None => bad = bad.or(Some((there, alloc::vec![(slot, side)]))),
                 }
             }
+            all.push((slot, seen));
             low.consider(slot, seen, |candidate, best| candidate < best);
             high.consider(slot, seen, |candidate, best| candidate > best);
         }
         let mut finish = |search: Search, better: fn(f64, f64) -> bool| -> Extreme {
-            let mut result = outcome(&self.corner(&search.ends), query);
+            let mut result = value(&self.corner(&search.ends), query);
             let mut ends = search.ends;
             if let (Some(v), Some((single, at))) = (result.value(), search.best_single)
                 && better(single, v)
@@ -174,7 +180,7 @@ impl<'m> Spread<'m> {
         };
         let low = finish(low, |a, b| a < b);
         let high = finish(high, |a, b| a > b);
-        Extremes { low, high }
+        Extremes { centre, low, high, seen: all }
     }
 
     /// What the slot holds.
@@ -199,10 +205,10 @@ impl<'m> Spread<'m> {
             .collect()
     }
 
-    /// What the figure at an extreme rests on. A part figure counts when moving it by its spread, or by a fifth where it has none,
-    /// changes the figure by more than `tolerance`.
-    pub fn basis(&mut self, query: Query, extreme: &Extreme, tolerance: f64) -> Basis {
-        let centre = outcome(&self.nominal, query);
+    /// What the figure at one of its extremes rests on. A part figure counts when moving it by its spread, or by a fifth where it
+    /// has none, changes the figure by more than `tolerance`.
+    pub fn basis(&mut self, query: Query, extremes: &Extremes, extreme: &Extreme, tolerance: f64) -> Basis {
+        let centre = &extremes.centre;
         let touched = touched_by(query.figure);
         let (mut guaranteed, mut typical) = (false, false);
         for slot in 0..self.model.parameters.entries.len() {
@@ -211,22 +217,27 @@ impl<'m> Spread<'m> {
             if !of_part || entry.touches & touched == 0 {
                 continue;
             }
-            let end = match extreme.ends.iter().find(|(s, _)| *s == slot) {
-                None => End::Nominal,
-                Some((_, false)) => End::Low,
-                Some((_, true)) => End::High,
-            };
-            let grade = entry.grade[end as usize];
             let counts = if entry.low < entry.high {
-                [false, true].iter().any(|&side| changes(&centre, &outcome(&self.moved(slot, side), query), tolerance))
+                extremes.seen.iter().find(|(s, _)| *s == slot).is_none_or(|(_, ends)| {
+                    let moved = |end: usize, at: f64| match ends[end] {
+                        Some(v) => changes(centre, &Outcome::Value(v), tolerance),
+                        None => (at - entry.nominal).abs() > 0.0,
+                    };
+                    moved(0, entry.low) || moved(1, entry.high)
+                })
             } else if matches!(entry.parameter, Parameter::Headroom) {
                 matches!(query.figure, crate::figure::Figure::ClipMargin)
             } else {
                 let probe = self.probe(slot, entry.nominal * 1.2);
-                changes(&centre, &outcome(&probe, query), tolerance)
+                changes(centre, &value(&probe, query), tolerance)
             };
             if counts {
-                match grade {
+                let end = match extreme.ends.iter().find(|(s, _)| *s == slot) {
+                    None => End::Nominal,
+                    Some((_, false)) => End::Low,
+                    Some((_, true)) => End::High,
+                };
+                match entry.grade[end as usize] {
                     Grade::Guaranteed => guaranteed = true,
                     Grade::Typical => typical = true,
                     Grade::Stated => {}
@@ -237,7 +248,7 @@ impl<'m> Spread<'m> {
         if self.model.poles.as_ref().is_some_and(|p| !p.is_empty()) && touched & ON_POLES != 0 {
             let slot = self.model.parameters.pole_factor();
             let probe = self.probe(slot, 1.2);
-            typical |= changes(&centre, &outcome(&probe, query), tolerance);
+            typical |= changes(centre, &value(&probe, query), tolerance);
         }
         match (guaranteed, typical) {
             (true, true) => Basis::Mixed,

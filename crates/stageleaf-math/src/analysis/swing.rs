@@ -145,35 +145,49 @@ struct Rails<'a> {
 impl Rails<'_> {
     fn margin(&self, drive: &Drive) -> Result<f64, Need> {
         const STEPS: usize = 48;
-        let room = |angle: f64| -> Result<f64, Need> {
-            let (v, i) = drive.at(libm::cos(angle), libm::sin(angle));
+        /// cos and sin of 2π/48.
+        const TURN: (f64, f64) = (0.991_444_861_373_810_4, 0.130_526_192_220_051_57);
+        const RATIO: f64 = 0.618_033_988_749_894_9;
+        let room = |cos: f64, sin: f64| -> Result<f64, Need> {
+            let (v, i) = drive.at(cos, sin);
             let up = headroom(self.above, self.position, i).ok_or(Need::HeadroomHigh)?;
             let down = headroom(self.below, self.position, -i).ok_or(Need::HeadroomLow)?;
             Ok((self.high - up - v - self.offset).min(v - self.offset - self.low - down))
         };
         if drive.vp <= 0.0 && drive.ip <= 0.0 {
-            return room(0.0);
+            return room(1.0, 0.0);
         }
-        let (mut least, mut least_at) = (f64::INFINITY, 0.0);
-        #[expect(clippy::cast_precision_loss, reason = "few steps")]
-        for step in 0..STEPS {
-            let angle = TAU * step as f64 / STEPS as f64;
-            let here = room(angle)?;
+        let (mut least, mut least_at) = (f64::INFINITY, (1.0, 0.0));
+        let (mut cos, mut sin) = (1.0, 0.0);
+        for _ in 0..STEPS {
+            let here = room(cos, sin)?;
             if here < least {
-                (least, least_at) = (here, angle);
+                (least, least_at) = (here, (cos, sin));
+            }
+            (cos, sin) = (cos * TURN.0 - sin * TURN.1, sin * TURN.0 + cos * TURN.1);
+        }
+        // Golden section around the least sample, by small rotations from it.
+        let near = |angle: f64| {
+            let (c, s) = (libm::cos(angle), libm::sin(angle));
+            room(least_at.0 * c - least_at.1 * s, least_at.1 * c + least_at.0 * s)
+        };
+        let (mut a, mut b) = (-TURN.1, TURN.1);
+        let (mut x, mut y) = (b - RATIO * (b - a), a + RATIO * (b - a));
+        let (mut fx, mut fy) = (near(x)?, near(y)?);
+        for _ in 0..16 {
+            if fx < fy {
+                b = y;
+                (y, fy) = (x, fx);
+                x = b - RATIO * (b - a);
+                fx = near(x)?;
+            } else {
+                a = x;
+                (x, fx) = (y, fy);
+                y = a + RATIO * (b - a);
+                fy = near(y)?;
             }
         }
-        // Golden section around the least sample.
-        #[expect(clippy::cast_precision_loss, reason = "few steps")]
-        let width = TAU / STEPS as f64;
-        let (mut a, mut b) = (least_at - width, least_at + width);
-        for _ in 0..30 {
-            let (x, y) = (b - 0.618_033_988_749_894_9 * (b - a), a + 0.618_033_988_749_894_9 * (b - a));
-            let (fx, fy) = (room(x)?, room(y)?);
-            if fx < fy { b = y } else { a = x }
-            least = least.min(fx).min(fy);
-        }
-        Ok(least)
+        Ok(least.min(fx).min(fy))
     }
 }
 

@@ -52,6 +52,37 @@ pub fn output_stage(drive: &Drive, amplitude: f64, high: f64, low: f64) -> f64 {
     high * sourced - low * sunk - drive.v0 * drive.i0 - 0.5 * vp * ip * drive.phase.0
 }
 
+/// The most heat over amplitudes up to the drive's own.
+fn worst_heat(drive: &Drive, high: f64, low: f64) -> f64 {
+    let heat = |amplitude: f64| output_stage(drive, amplitude, high, low);
+    let ends = heat(0.0).max(heat(1.0));
+    if drive.i0.abs() <= 0.0 {
+        // Without a DC part it is k1·a − k2·a².
+        let (k1, k2) = ((high - low) * drive.ip / PI, 0.5 * drive.vp * drive.ip * drive.phase.0);
+        let inside = k1 / (2.0 * k2);
+        return if inside > 0.0 && inside < 1.0 { ends.max(heat(inside)) } else { ends };
+    }
+    // Concave in the amplitude: a golden section.
+    const RATIO: f64 = 0.618_033_988_749_894_9;
+    let (mut a, mut b) = (0.0, 1.0);
+    let (mut x, mut y) = (1.0 - RATIO, RATIO);
+    let (mut fx, mut fy) = (heat(x), heat(y));
+    for _ in 0..26 {
+        if fx > fy {
+            b = y;
+            (y, fy) = (x, fx);
+            x = b - RATIO * (b - a);
+            fx = heat(x);
+        } else {
+            a = x;
+            (x, fx) = (y, fy);
+            y = a + RATIO * (b - a);
+            fy = heat(y);
+        }
+    }
+    ends.max(fx).max(fy)
+}
+
 /// Power figures.
 pub fn power<'s>(solution: &'s Solution<'_>) -> &'s Power {
     solution.power.get_or_init(|| {
@@ -69,14 +100,7 @@ pub fn power<'s>(solution: &'s Solution<'_>) -> &'s Power {
             return Power { supply_current, dissipation: outcome.clone(), junction: outcome };
         };
         let (high, low) = (solution.values[positive], solution.values[negative]);
-        let heat = |amplitude: f64| output_stage(&drive, amplitude, high, low);
-        // The heat is concave in the amplitude: a golden section, and both ends.
-        let (mut a, mut b) = (0.0, 1.0);
-        for _ in 0..40 {
-            let (x, y) = (b - 0.618_033_988_749_894_9 * (b - a), a + 0.618_033_988_749_894_9 * (b - a));
-            if heat(x) > heat(y) { b = y } else { a = x }
-        }
-        let worst = heat(0.0).max(heat(1.0)).max(heat(f64::midpoint(a, b)));
+        let worst = worst_heat(&drive, high, low);
         let total = quiescent * amplifiers * (high - low) + worst;
         let junction = match (solution.part(PartFigure::JunctionToAmbient), model.parameters.temperature()) {
             (None, _) => lacking(Need::Part(PartFigure::JunctionToAmbient)),

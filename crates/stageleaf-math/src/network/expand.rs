@@ -314,6 +314,25 @@ impl Plan {
         }
     }
 
+    /// Carries out the expansion for the constant terms alone: the same additions in the same order, so the same bits.
+    pub fn evaluate_constants(&self, weights: &[Weight], scratch: &mut Vec<f64>) {
+        scratch.clear();
+        scratch.resize(self.size, 0.0);
+        scratch[0] = 1.0;
+        for step in &self.steps {
+            let weight = &weights[usize::from(step.column)];
+            let factor = match step.which {
+                Which::Out => weight.out[0],
+                Which::Taken => weight.taken[0],
+                Which::Controlled => 1.0,
+            };
+            if factor != 0.0 {
+                let factor = if step.negative { -factor } else { factor };
+                scratch[step.to as usize] += factor * scratch[step.from as usize];
+            }
+        }
+    }
+
     /// The polynomial of one outcome after [`Plan::evaluate`].
     #[must_use]
     pub fn polynomial<'s>(&self, outcome: &Outcome, scratch: &'s [f64]) -> &'s [f64] {
