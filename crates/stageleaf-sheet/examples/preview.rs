@@ -8,9 +8,12 @@ use stageleaf_sheet::{Sheet, page, render};
 
 const ALL: [&str; 13] = ["Rf", "Rg", "Rin", "Cf", "Rp", "Cp", "Rser", "Cshunt", "Riso", "Rsn", "Csn", "Rng", "Cng"];
 
+/// Name, components, place of `Riso`, load resistance and capacitance, source resistance.
+type Case = (&'static str, &'static [&'static str], Isolation, (bool, bool), bool);
+
 fn main() -> std::io::Result<()> {
     let folder = std::env::args().nth(1).unwrap_or_else(|| ".".into());
-    let sets: [(&str, &[&str], Isolation, (bool, bool), bool); 6] = [
+    let sets: [Case; 6] = [
         ("bare", &["Rf", "Rg", "Rin"], Isolation::OutsideLoop, (false, false), false),
         ("usual", &["Rf", "Rg", "Rin", "Cf"], Isolation::OutsideLoop, (true, true), true),
         ("driver", &["Rf", "Rg", "Rin", "Cf", "Riso"], Isolation::InsideLoop, (true, true), true),

@@ -28,8 +28,10 @@ pub struct Places {
     pub thin: Vec<(f64, f64)>,
     /// The spread.
     pub whiskers: Option<(f64, f64)>,
-    /// The nominal value.
+    /// The nominal value, if it is finite.
     pub nominal: Option<f64>,
+    /// Whether nominal value or spread has no upper bound.
+    pub unbounded: bool,
 }
 
 /// Finds the places; none where nothing can be placed.
@@ -41,6 +43,8 @@ pub fn places(row: &LimitRow) -> Option<Places> {
         Bound::Between { low, high } => (Some(low), Some(high)),
         Bound::Report => (None, None),
     };
+    // A limit that is no finite number bounds nothing that could be drawn.
+    let (least, most) = (least.filter(|v| v.is_finite()), most.filter(|v| v.is_finite()));
     let edge = |limit: f64, inward: f64| {
         let distance = match (row.limit.thin, row.limit.bound) {
             (Thin::Distance(d), _) => d,
@@ -52,6 +56,7 @@ pub fn places(row: &LimitRow) -> Option<Places> {
     let thin_low = least.map(|v| edge(v, 1.0));
     let thin_high = most.map(|v| edge(v, -1.0));
     let nominal = row.nominal.value().filter(|v| !v.is_nan());
+    let endless = |v: f64| v.is_infinite() && v > 0.0;
     let mut spread = row.range.filter(|(a, b)| !a.is_nan() && !b.is_nan());
     if let Some(w) = row.worst.value().filter(|v| !v.is_nan()) {
         // The spread encloses the worst case even where the row states none.
@@ -61,7 +66,13 @@ pub fn places(row: &LimitRow) -> Option<Places> {
     let all = [least, most, thin_low, thin_high, nominal, spread.map(|s| s.0), spread.map(|s| s.1)];
     let scale = Scale::around(all.into_iter().flatten(), least.is_some(), most.is_some())?;
     let at = |v: f64| scale.place(v);
-    let mut p = Places { nominal: nominal.map(at), whiskers: spread.map(|(a, b)| (at(a), at(b))), ..Places::default() };
+    let mut p = Places {
+        // A value without bound has no place: its whisker's arrow says so.
+        nominal: nominal.filter(|v| v.is_finite()).map(at),
+        unbounded: nominal.is_some_and(endless) || spread.is_some_and(|s| endless(s.1)),
+        whiskers: spread.map(|(a, b)| (at(a), at(b))),
+        ..Places::default()
+    };
     if let (Some(v), Some(t)) = (least, thin_low) {
         p.limits.push((at(v), v));
         p.forbidden.push((0.0, at(v)));
@@ -113,7 +124,8 @@ impl Scale {
         } else {
             f64::NEG_INFINITY
         };
-        (WIDTH * (v - self.low) / (self.high - self.low)).clamp(0.0, WIDTH)
+        let place = WIDTH * ((v - self.low) / (self.high - self.low));
+        if place.is_nan() { 0.0 } else { place.clamp(0.0, WIDTH) }
     }
 }
 
@@ -126,12 +138,11 @@ pub fn strip(row: &LimitRow, text: impl Fn(f64) -> String) -> Markup {
     for (a, b) in &p.forbidden {
         hatched(&mut hatch, whole(*a), whole(*b));
     }
-    let endless = |v: Option<f64>| v.is_some_and(f64::is_infinite);
-    let arrow = endless(row.nominal.value()) || endless(row.worst.value()) || row.range.is_some_and(|(_, b)| b.is_infinite());
     html! {
         svg class="strip" viewBox=(format_args!("0 0 {} 44", whole(WIDTH))) aria-hidden="true" {
             rect class="ground" x="0" y=(top) width=(whole(WIDTH)) height=(bottom - top) {}
             @for (a, b) in &p.thin { rect class="thinly" x=(whole(*a)) y=(top) width=((whole(*b) - whole(*a)).max(0)) height=(bottom - top) {} }
+            @for (a, b) in &p.thin { path class="edge" d=(format_args!("M{} {top}V{bottom}", whole(if p.limits.iter().any(|l| whole(l.0) == whole(*a)) { *b } else { *a }))) {} }
             @for (a, b) in &p.forbidden { rect class="forbidden" x=(whole(*a)) y=(top) width=((whole(*b) - whole(*a)).max(0)) height=(bottom - top) {} }
             path class="hatch" d=(PreEscaped(hatch)) {}
             @for (x, value) in &p.limits {
@@ -140,8 +151,9 @@ pub fn strip(row: &LimitRow, text: impl Fn(f64) -> String) -> Markup {
             }
             @if let Some((a, b)) = p.whiskers {
                 @let (a, b) = (whole(a), whole(b));
-                path class="whisker" d=(format_args!("M{a} {}v10M{b} {}v10M{a} {MIDDLE}H{b}", MIDDLE - 5, MIDDLE - 5)) {}
-                @if arrow { path class="whisker" d=(format_args!("M{} {}l6 5l-6 5", b.min(whole(WIDTH)) - 7, MIDDLE - 5)) {} }
+                path class="whisker" d=(format_args!("M{a} {}v10M{a} {MIDDLE}H{b}", MIDDLE - 5)) {}
+                @if !p.unbounded { path class="whisker" d=(format_args!("M{b} {}v10", MIDDLE - 5)) {} }
+                @if p.unbounded { path class="whisker" d=(format_args!("M{} {}l6 5l-6 5", whole(WIDTH) - 7, MIDDLE - 5)) {} }
             }
             @if let Some(x) = p.nominal { path class="nominal" d=(format_args!("M{} {MIDDLE}l5-6l5 6l-5 6z", whole(x) - 5)) {} }
             @if !matches!(row.nominal, Outcome::Value(_)) { text class="unknown" x=(whole(WIDTH / 2.0)) y=(MIDDLE + 5) text-anchor="middle" { "?" } }

@@ -9,7 +9,7 @@ use super::{
 /// Draws the stage.
 pub fn draw(c: &mut Canvas, l: &Labels) {
     let extended = l.has("Rser") || l.has("Cshunt") || l.has("Rng");
-    let (x, y) = (if extended { 252 } else { 140 }, 0);
+    let (x, y) = (if extended { 258 } else { 140 }, 0);
     let shunt = 136;
     s::amplifier_and_output(c, l, (x, y));
     s::source_and_input(c, l, y, shunt, if extended { shunt } else { 0 });
@@ -28,9 +28,9 @@ pub fn draw(c: &mut Canvas, l: &Labels) {
     }
     match (l.component("Rp"), l.component("Cp")) {
         (Some(r), k) => {
-            // Below the source's texts, and below the snubber's labels where the capacitor's wire would cross them.
+            // Below the source's texts, and below the snubber's labels.
             let mut top = line.max(y + 78);
-            if k.is_some() && l.has("Rsn") {
+            if l.has("Rsn") {
                 top = top.max(y + 172);
             }
             c.wire(&[(drop, line), (drop, top)]);
@@ -42,6 +42,12 @@ pub fn draw(c: &mut Canvas, l: &Labels) {
                 c.upright_left(Symbol::Capacitor, drop + 26, top, top + 104, top + 88, label);
                 c.ground(drop + 26, top + 104);
             }
+        }
+        // Below the noise-gain branch rather than below the other wire: the snubber's labels stand there.
+        _ if l.has("Rng") => {
+            c.dot(x, line);
+            c.wire(&[(x, line), (x, line + 14)]);
+            c.ground(x, line + 14);
         }
         _ => {
             c.wire(&[(drop, line), (drop, line + 18)]);

@@ -183,12 +183,7 @@ impl Canvas {
     /// An alternating voltage source standing at `x`, its circle's middle at `middle`, grounded below.
     pub fn source(&mut self, x: i32, from: i32, middle: i32) {
         self.wire(&[(x, from), (x, middle - 13)]);
-        let _ = write!(
-            self.bodies,
-            "M{} {middle}a13 13 0 1 0 26 0a13 13 0 1 0-26 0zM{} {middle}c3-9 5-9 7 0s4 9 7 0",
-            x - 13,
-            x - 7
-        );
+        let _ = write!(self.bodies, "M{} {middle}a13 13 0 1 0 26 0a13 13 0 1 0-26 0zM{} {middle}c3-9 5-9 7 0s4 9 7 0", x - 13, x - 7);
         self.ink.push(Area { x0: x - 13, y0: middle - 13, x1: x + 13, y1: middle + 13 });
         self.wire(&[(x, middle + 13), (x, middle + 22)]);
         self.ground(x, middle + 22);

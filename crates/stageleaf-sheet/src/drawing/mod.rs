@@ -14,7 +14,7 @@ use stageleaf_math::{
 };
 use stageleaf_note::{Block, format, spoken};
 
-use crate::Sheet;
+use crate::{Sheet, sheet::trimmed};
 use kit::{Canvas, Label};
 
 /// The labels of one stage's components, from its block.
@@ -85,12 +85,7 @@ impl<'a> Labels<'a> {
     pub fn rails(&self) -> (String, Option<String>) {
         let Some(supply) = self.stage().supply else { return ("V+".into(), Some("V−".into())) };
         let text = |volts: f64| {
-            let text = format(volts, Dimension::Voltage, 3);
-            // A rail reads "12 V", not "12.0 V".
-            let text = match text.split_once(' ') {
-                Some((number, unit)) if number.contains('.') => format!("{} {unit}", number.trim_end_matches('0').trim_end_matches('.')),
-                _ => text,
-            };
+            let text = trimmed(format(volts, Dimension::Voltage, 3));
             if volts > 0.0 { format!("+{text}") } else { text }
         };
         let n = supply.negative;

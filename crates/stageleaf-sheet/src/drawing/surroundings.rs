@@ -13,7 +13,7 @@ pub const DROP: i32 = 12;
 /// From the inverting node to the amplifier's pins.
 const PINS: i32 = 34;
 /// From the inverting node to the output node.
-const OUTPUT: i32 = 122;
+const OUTPUT: i32 = 126;
 /// From the output node to the load.
 const LOAD: i32 = 114;
 /// From the inverting input's height to the other's.

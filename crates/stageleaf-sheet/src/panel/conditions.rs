@@ -8,11 +8,11 @@ use crate::{Sheet, drawing::Labels};
 /// Fields with their labels, in the order in which they stand.
 const FIELDS: &[(&str, &str)] = &[
     ("part", "Part"),
-    ("supply.positive", "Supply, positive"),
-    ("supply.negative", "Supply, negative"),
+    ("supply.positive", "Supply +"),
+    ("supply.negative", "Supply −"),
     ("source.resistance", "Source resistance"),
     ("signal.peak", "Signal, peak"),
-    ("signal.peak_to_peak", "Signal, peak to peak"),
+    ("signal.peak_to_peak", "Signal, p-p"),
     ("signal.rms", "Signal, rms"),
     ("signal.range", "Signal range"),
     ("signal.dc", "Signal, DC"),
@@ -25,7 +25,7 @@ const FIELDS: &[(&str, &str)] = &[
     ("band.to", "Noise band to"),
     ("board.inverting_node", "Stray at − input"),
     ("board.non_inverting_node", "Stray at + input"),
-    ("board.across_feedback", "Stray across feedback"),
+    ("board.across_feedback", "Stray, feedback"),
 ];
 
 /// Fields that a live sheet offers even where the note states nothing.

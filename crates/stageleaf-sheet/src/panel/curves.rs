@@ -5,7 +5,7 @@ use stageleaf_math::{dimension::Dimension, figure::Figure};
 use stageleaf_note::words;
 
 use super::{briefs, value};
-use crate::{Sheet, plot};
+use crate::{Sheet, plot, sheet::trimmed};
 
 fn plots(sheet: &Sheet, start: &str, empty: &str) -> Markup {
     let charts = plot::charts(sheet, start);
@@ -46,7 +46,7 @@ pub fn noise(sheet: &Sheet) -> Markup {
         @if shares.is_empty() { p class="aside" { "Shares need the band over which the noise is integrated." } }
         @else {
             table class="shares" {
-                caption { "At the output, over the band" @if let Some(b) = sheet.block.stage.band { " " (value(b.from, Dimension::Frequency)) " to " (value(b.to, Dimension::Frequency)) } }
+                caption { "At the output, over the band" @if let Some(b) = sheet.block.stage.band { " " (trimmed(value(b.from, Dimension::Frequency))) " to " (trimmed(value(b.to, Dimension::Frequency))) } }
                 thead { tr { th scope="col" { "source" } th scope="col" { "rms" } th scope="col" { "share of the power" } td {} } }
                 tbody { @for s in shares { tr {
                     th scope="row" { (words::origin_text(s.origin)) }
@@ -70,7 +70,8 @@ pub fn envelope(sheet: &Sheet) -> Markup {
 
 /// A share as a percentage with one decimal.
 pub fn percent(share: f64) -> String {
-    if share.is_finite() { format!("{:.1} %", share * 100.0) } else { "–".into() }
+    let percent = share * 100.0;
+    if percent.abs() < 1e6 { format!("{percent:.1} %") } else { "–".into() }
 }
 
 /// A share as a bar.

@@ -11,12 +11,11 @@ use super::limits::shape;
 use crate::Sheet;
 
 /// The verdicts, worst first, with what is said of one and of several.
-const ORDER: [(Verdict, &str, &str); 5] = [
+const ORDER: [(Verdict, &str, &str); 4] = [
     (Verdict::Breaks, "breaks", "break"),
     (Verdict::Undetermined, "undetermined", "undetermined"),
     (Verdict::Thin, "thin", "thin"),
     (Verdict::Holds, "holds", "hold"),
-    (Verdict::Reported, "reported", "reported"),
 ];
 
 /// How many limits stand how: "2 break, 1 thin, 5 hold".
@@ -42,7 +41,7 @@ pub fn head(sheet: &Sheet) -> Markup {
     html! {
         p class="title" role="heading" aria-level="3" { (stage.name) }
         p class="summary" {
-            @if verdicts.is_empty() { "no limits stated" }
+            @if verdicts.is_empty() { "no limits to judge" }
             @for (i, (verdict, text)) in verdicts.iter().enumerate() {
                 @if i > 0 { ", " }
                 span class=(super::limits::class(*verdict)) { span class="shape" aria-hidden="true" { (shape(*verdict)) } " " (text) }

@@ -10,7 +10,7 @@ use stageleaf_math::{
 use stageleaf_note::{limit_text, query_anchor, words};
 
 use super::{basis_word, needs, outcome, title, value};
-use crate::{Sheet, strip::strip};
+use crate::{Sheet, sheet::trimmed, strip::strip};
 
 /// The shape that stands beside a verdict's word.
 pub const fn shape(verdict: Verdict) -> &'static str {
@@ -70,7 +70,7 @@ fn limit(sheet: &Sheet, row: &LimitRow) -> Markup {
                 b class="figure" { (title(query)) }
                 span class="asks" { (asks(&row.limit)) }
             }
-            (strip(row, |v| value(v, d)))
+            (strip(row, |v| trimmed(value(v, d))))
             div class="found" {
                 @if let (Outcome::Value(n), Outcome::Value(w)) = (&row.nominal, &row.worst) {
                     span { "nominal " b { (value(*n, d)) } }
@@ -137,9 +137,7 @@ fn left(row: &LimitRow) -> Option<String> {
 fn coordinate(sheet: &Sheet, c: &Coordinate) -> String {
     let stage = &sheet.block.stage;
     let d = match c.parameter {
-        Parameter::Component(name) => {
-            stage.kind.components().iter().find(|s| s.name == name).map_or(Dimension::Number, |s| s.dimension)
-        }
+        Parameter::Component(name) => stage.kind.components().iter().find(|s| s.name == name).map_or(Dimension::Number, |s| s.dimension),
         Parameter::SourceImpedance => match stage.source {
             Some(Source::Capacitive { .. }) => Dimension::Capacitance,
             _ => Dimension::Resistance,
@@ -155,7 +153,13 @@ fn coordinate(sheet: &Sheet, c: &Coordinate) -> String {
     };
     let name = words::parameter_text(c.parameter);
     if c.parameter == Parameter::Headroom {
-        let text = if c.value <= 0.0 { "typical".into() } else if c.value >= 1.0 { "guaranteed".into() } else { value(c.value, d) };
+        let text = if c.value <= 0.0 {
+            "typical".into()
+        } else if c.value >= 1.0 {
+            "guaranteed".into()
+        } else {
+            value(c.value, d)
+        };
         return format!("{name} {text}");
     }
     // Enough digits to see that it differs from the nominal value.

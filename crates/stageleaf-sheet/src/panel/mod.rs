@@ -27,7 +27,7 @@ use stageleaf_math::{
 };
 use stageleaf_note::{format, words};
 
-use crate::Sheet;
+use crate::{Sheet, sheet::trimmed};
 
 /// Digits of a figure.
 const DIGITS: usize = 3;
@@ -35,7 +35,7 @@ const DIGITS: usize = 3;
 /// A figure's title with its argument: "Gain at 2 MHz".
 fn title(query: Query) -> String {
     match query.at {
-        Some(f) => format!("{} {}", query.figure.title(), format(f, Dimension::Frequency, 4)),
+        Some(f) => format!("{} {}", query.figure.title(), trimmed(format(f, Dimension::Frequency, 4))),
         None => query.figure.title().to_owned(),
     }
 }

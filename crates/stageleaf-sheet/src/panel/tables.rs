@@ -3,11 +3,7 @@
 use std::f64::consts::TAU;
 
 use maud::{Markup, html};
-use stageleaf_math::{
-    dimension::Dimension,
-    figure::Figure,
-    report::Root,
-};
+use stageleaf_math::{dimension::Dimension, figure::Figure, report::Root};
 use stageleaf_note::words;
 
 use super::{

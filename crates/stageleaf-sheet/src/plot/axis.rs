@@ -59,8 +59,8 @@ pub struct Axis {
     pub low: f64,
     /// Upper end.
     pub high: f64,
-    /// Decades rather than equal steps.
-    pub logarithmic: bool,
+    /// Distance of the ticks; `None` for decades.
+    pub step: Option<f64>,
 }
 
 impl Axis {
@@ -82,7 +82,7 @@ impl Axis {
         if high / low < 1.5 {
             (low, high) = (low / 2.0, high * 2.0);
         }
-        (low > 0.0 && high.is_finite()).then_some(Self { low, high, logarithmic: true })
+        (low > 0.0 && high.is_finite()).then_some(Self { low, high, step: None })
     }
 
     /// An axis of equal steps around `values`, with ends on ticks; at most `depth` deep below its top.
@@ -100,16 +100,16 @@ impl Axis {
         if high - low < 1e-9 * high.abs().max(1.0) {
             (low, high) = (low - 1.0, high + 1.0);
         }
-        let step = step.unwrap_or_else(|| tick_step(high - low));
         // A curve never runs along the frame.
         let air = (high - low) * 0.04;
-        Some(Self { low: libm::floor((low - air) / step) * step, high: libm::ceil((high + air) / step) * step, logarithmic: false })
+        let step = step.unwrap_or_else(|| tick_step(high - low));
+        Some(Self { low: libm::floor((low - air) / step) * step, high: libm::ceil((high + air) / step) * step, step: Some(step) })
     }
 
     /// Where a value lies, 0 to 1 inside the axis.
     #[must_use]
     pub fn place(&self, value: f64) -> f64 {
-        if self.logarithmic {
+        if self.step.is_none() {
             if value <= 0.0 {
                 return f64::NEG_INFINITY;
             }
@@ -122,32 +122,37 @@ impl Axis {
     /// The value at a place.
     #[must_use]
     pub fn value(&self, place: f64) -> f64 {
-        if self.logarithmic { self.low * libm::pow(self.high / self.low, place) } else { self.low + (self.high - self.low) * place }
+        if self.step.is_none() { self.low * libm::pow(self.high / self.low, place) } else { self.low + (self.high - self.low) * place }
     }
 
     /// Values with a labelled tick.
     #[must_use]
-    pub fn ticks(&self, step: Option<f64>) -> Vec<f64> {
+    pub fn ticks(&self) -> Vec<f64> {
         let mut ticks = Vec::new();
-        if self.logarithmic {
+        let Some(step) = self.step else {
             let span = libm::log10(self.high / self.low);
             let (first, last) = (decade(self.low), decade(self.high));
             // Whole decades where there are enough of them, else 1-2-5.
-            let every = if span > 15.0 { 3 } else if span > 9.5 { 2 } else { 1 };
+            let every = if span > 15.0 {
+                3
+            } else if span > 9.5 {
+                2
+            } else {
+                1
+            };
             for d in first..=last {
                 let factors: &[f64] = if span < 2.2 { &[1.0, 2.0, 5.0] } else { &[1.0] };
                 if d.rem_euclid(every) == 0 {
                     ticks.extend(factors.iter().map(|f| f * power(d)).filter(|v| *v >= self.low * 0.999 && *v <= self.high * 1.001));
                 }
             }
-        } else {
-            let step = step.unwrap_or_else(|| tick_step(self.high - self.low));
-            let count = libm::round((self.high - self.low) / step);
-            let mut k = 0.0;
-            while k <= count && ticks.len() < 40 {
-                ticks.push(self.low + k * step);
-                k += 1.0;
-            }
+            return ticks;
+        };
+        // Multiples of the step, so that zero is one of them.
+        let mut k = libm::round(self.low / step);
+        while k * step <= self.high + step / 2.0 && ticks.len() < 40 {
+            ticks.push(k * step);
+            k += 1.0;
         }
         ticks
     }
@@ -156,7 +161,7 @@ impl Axis {
     #[must_use]
     pub fn minor_ticks(&self) -> Vec<f64> {
         let mut ticks = Vec::new();
-        if self.logarithmic && libm::log10(self.high / self.low) < 12.0 {
+        if self.step.is_none() && libm::log10(self.high / self.low) < 12.0 {
             for d in decade(self.low)..=decade(self.high) {
                 ticks.extend((2..10).map(|k| f64::from(k) * power(d)).filter(|v| *v > self.low && *v < self.high));
             }
@@ -170,17 +175,37 @@ impl Axis {
 pub fn tick_step(span: f64) -> f64 {
     let base = power(decade(span / 4.0));
     let ratio = span / 4.0 / base;
-    base * if ratio >= 5.0 { 5.0 } else if ratio >= 2.0 { 2.0 } else { 1.0 }
+    base * if ratio >= 5.0 {
+        5.0
+    } else if ratio >= 2.0 {
+        2.0
+    } else {
+        1.0
+    }
 }
 
 fn step_below(value: f64) -> f64 {
     let base = power(decade(value));
-    base * if value >= 5.0 * base { 5.0 } else if value >= 2.0 * base { 2.0 } else { 1.0 }
+    base * if value >= 5.0 * base {
+        5.0
+    } else if value >= 2.0 * base {
+        2.0
+    } else {
+        1.0
+    }
 }
 
 fn step_above(value: f64) -> f64 {
     let base = power(decade(value));
-    base * if value <= 1.001 * base { 1.0 } else if value <= 2.0 * base { 2.0 } else if value <= 5.0 * base { 5.0 } else { 10.0 }
+    base * if value <= 1.001 * base {
+        1.0
+    } else if value <= 2.0 * base {
+        2.0
+    } else if value <= 5.0 * base {
+        5.0
+    } else {
+        10.0
+    }
 }
 
 /// The decade that a value starts in.

@@ -35,6 +35,8 @@ pub struct Mark {
     pub to: Option<f64>,
     /// Its words.
     pub text: String,
+    /// Whether the words stand below the point, where a bound runs above it.
+    pub below: bool,
 }
 
 /// A chart against frequency.
@@ -58,8 +60,6 @@ pub struct Chart {
     pub x_axis: Axis,
     /// Heights.
     pub y_axis: Axis,
-    /// Step of the labelled ticks, where not found from the span.
-    pub step: Option<f64>,
 }
 
 /// Ids of all charts, in the sheet's order.
@@ -79,8 +79,13 @@ pub fn chart(sheet: &Sheet, id: &str) -> Option<Chart> {
         "response-magnitude" => magnitude("response-magnitude", "magnitude, dB", &r.response, Vec::new(), None, 100.0),
         "response-phase" => phase("response-phase", &r.response, Vec::new(), None),
         "loop-magnitude" => {
-            let marks = nominal(r, Figure::Crossover)
-                .map(|x| Mark { x, y: 0.0, to: None, text: format!("crossover {}", stageleaf_note::format(x, Dimension::Frequency, 3)) });
+            let marks = nominal(r, Figure::Crossover).map(|x| Mark {
+                x,
+                y: 0.0,
+                to: None,
+                text: format!("crossover {}", stageleaf_note::format(x, Dimension::Frequency, 3)),
+                below: false,
+            });
             magnitude("loop-magnitude", "loop gain |T|, dB", &r.loop_gain, marks.into_iter().collect(), Some(0.0), 160.0)
         }
         "loop-phase" => phase("loop-phase", &r.loop_gain, phase_margin_mark(r).into_iter().collect(), Some(-180.0)),
@@ -113,7 +118,7 @@ fn magnitude(
     let x_axis = x_axis(&x)?;
     let y_axis = Axis::linear(y.iter().copied().chain(reference), depth, None)?;
     let curves = vec![Curve { name: "magnitude".into(), y }];
-    Some(Chart { id, title, x, curves, marks, reference, unit: Unit::Decibel, x_axis, y_axis, step: None })
+    Some(Chart { id, title, x, curves, marks, reference, unit: Unit::Decibel, x_axis, y_axis })
 }
 
 fn phase(id: &'static str, points: &[ResponsePoint], marks: Vec<Mark>, reference: Option<f64>) -> Option<Chart> {
@@ -124,13 +129,13 @@ fn phase(id: &'static str, points: &[ResponsePoint], marks: Vec<Mark>, reference
     let step = if probe.high - probe.low > 400.0 { 90.0 } else { 45.0 };
     let y_axis = Axis::linear(y.iter().copied().chain(reference), 2000.0, Some(step))?;
     let curves = vec![Curve { name: "phase".into(), y }];
-    Some(Chart { id, title: "phase, °", x, curves, marks, reference, unit: Unit::Degree, x_axis, y_axis, step: Some(step) })
+    Some(Chart { id, title: "phase, °", x, curves, marks, reference, unit: Unit::Degree, x_axis, y_axis })
 }
 
 fn phase_margin_mark(r: &Report) -> Option<Mark> {
     let (x, margin) = (nominal(r, Figure::Crossover)?, nominal(r, Figure::PhaseMargin)?);
     let text = format!("phase margin {}", stageleaf_note::format(margin, Dimension::Angle, 3));
-    Some(Mark { x, y: margin.to_degrees() - 180.0, to: Some(-180.0), text })
+    Some(Mark { x, y: margin.to_degrees() - 180.0, to: Some(-180.0), text, below: false })
 }
 
 fn noise(r: &Report) -> Option<Chart> {
@@ -148,7 +153,9 @@ fn noise(r: &Report) -> Option<Chart> {
     let mut y_axis = Axis::decades(all, true)?;
     y_axis.low = y_axis.low.max(y_axis.high * 1e-4);
     let unit = Unit::Si(Dimension::VoltageDensity);
-    Some(Chart { id: "noise", title: "density at the output, V/√Hz", x, curves, marks: Vec::new(), reference: None, unit, x_axis, y_axis, step: None })
+    Some(Chart {
+        id: "noise", title: "density at the output, V/√Hz", x, curves, marks: Vec::new(), reference: None, unit, x_axis, y_axis
+    })
 }
 
 fn envelope(sheet: &Sheet) -> Option<Chart> {
@@ -167,7 +174,7 @@ fn envelope(sheet: &Sheet) -> Option<Chart> {
     {
         let y = signal.peak * gain.abs();
         if x.is_finite() && y.is_finite() && y > 0.0 {
-            marks.push(Mark { x, y, to: None, text: format!("signal {}", stageleaf_note::format(y, Dimension::Voltage, 3)) });
+            marks.push(Mark { x, y, to: None, text: format!("signal {}", stageleaf_note::format(y, Dimension::Voltage, 3)), below: true });
         }
     }
     // The lowest of the bounds decides; how far the others rise above it is of no use.
@@ -176,7 +183,7 @@ fn envelope(sheet: &Sheet) -> Option<Chart> {
     y_axis.high *= 2.0;
     y_axis.low = y_axis.low.max(y_axis.high * 1e-4);
     let unit = Unit::Si(Dimension::Voltage);
-    Some(Chart { id: "envelope", title: "largest clean output, V peak", x, curves, marks, reference: None, unit, x_axis, y_axis, step: None })
+    Some(Chart { id: "envelope", title: "largest clean output, V peak", x, curves, marks, reference: None, unit, x_axis, y_axis })
 }
 
 /// A figure at nominal values, if it has a finite one.

@@ -17,7 +17,7 @@ const TOP: f64 = 22.0;
 /// Room below the area for tick labels and title.
 const BELOW: f64 = 36.0;
 /// Room right of the area for curve labels, where there are several curves.
-const LABELS: f64 = 132.0;
+const LABELS: f64 = 150.0;
 /// Curves are drawn on a grid this many times finer, so that their numbers are whole.
 const FINE: f64 = 10.0;
 
@@ -26,13 +26,13 @@ const FINE: f64 = 10.0;
 pub fn svg(sheet: &Sheet, c: &Chart) -> Markup {
     let several = c.curves.len() > 1;
     let height = if c.unit == super::axis::Unit::Degree { 110.0 } else { 190.0 };
-    let (width, total) = (AREA_LEFT + AREA_WIDTH + if several { LABELS } else { 12.0 }, TOP + height + BELOW);
+    let (width, total) = (AREA_LEFT + AREA_WIDTH + if several { LABELS } else { 24.0 }, TOP + height + BELOW);
     let px = |v: f64| AREA_LEFT + AREA_WIDTH * c.x_axis.place(v);
     let py = |v: f64| TOP + height * (1.0 - c.y_axis.place(v));
     let (right, bottom) = (AREA_LEFT + AREA_WIDTH, TOP + height);
     let mut grid = String::new();
-    let x_ticks = c.x_axis.ticks(None);
-    let y_ticks = c.y_axis.ticks(c.step);
+    let x_ticks = c.x_axis.ticks();
+    let y_ticks = c.y_axis.ticks();
     for x in &x_ticks {
         let _ = write!(grid, "M{} {}V{}", tenth(px(*x)), whole(bottom), whole(TOP));
     }
@@ -87,7 +87,7 @@ fn mark(c: &Chart, m: &super::Mark, px: &impl Fn(f64) -> f64, py: &impl Fn(f64) 
     html! {
         @if let Some(to) = m.to { path class="span" d=(format_args!("M{} {}V{}", tenth(x), tenth(y), tenth(py(to)))) {} }
         circle class="mark" cx=(tenth(x)) cy=(tenth(y)) r="4" {}
-        text class="mark" x=(tenth(if left { x - 9.0 } else { x + 9.0 })) y=(tenth(if left { y + 16.0 } else { y - 7.0 })) text-anchor=(if left { "end" } else { "start" }) { (m.text) }
+        text class="mark" x=(tenth(if left { x - 9.0 } else { x + 9.0 })) y=(tenth(if left || m.below { y + 16.0 } else { y - 7.0 })) text-anchor=(if left { "end" } else { "start" }) { (m.text) }
     }
 }
 

@@ -12,7 +12,7 @@ pub use tables::{csv, table};
 use crate::Sheet;
 
 /// Left edge of a plot's area, in units of its view box.
-pub const AREA_LEFT: f64 = 58.0;
+pub const AREA_LEFT: f64 = 52.0;
 /// Width of a plot's area.
 pub const AREA_WIDTH: f64 = 410.0;
 

@@ -1,7 +1,5 @@
 //! A stage and a report made up by hand, to look at and to render in tests. No figure in it is a result.
 
-#![expect(dead_code, reason = "each test and the preview use a part of it")]
-
 use stageleaf_math::{
     dimension::Dimension,
     figure::{Argument, Figure, Query},
@@ -122,7 +120,7 @@ fn row(query: Query, bound: Bound, numbers: (f64, f64, f64), worst: f64, margin:
 }
 
 fn sweep(low: f64, decades: i32, per: i32) -> impl Iterator<Item = f64> {
-    (0..=decades * per).map(move |k| low * 10f64.powf(f64::from(k) / f64::from(per)))
+    (0..=decades * per).map(move |k| low * libm::pow(10.0, f64::from(k) / f64::from(per)))
 }
 
 /// A report in which every list holds something and every verdict occurs.
@@ -176,7 +174,7 @@ pub fn report(kind: Kind) -> Report {
     let response = sweep(1.0, 8, 20)
         .map(|f| {
             let x = f / 512e3;
-            ResponsePoint { frequency: f, magnitude: 20.3 / (1.0 + x * x).sqrt(), phase: -x.atan() }
+            ResponsePoint { frequency: f, magnitude: 20.3 / libm::sqrt(1.0 + x * x), phase: -libm::atan(x) }
         })
         .collect();
     let loop_gain = sweep(1.0, 8, 20)
@@ -184,8 +182,8 @@ pub fn report(kind: Kind) -> Report {
             let (a, b) = (f / 5.0, f / 900e3);
             ResponsePoint {
                 frequency: f,
-                magnitude: 9.6e4 / ((1.0 + a * a) * (1.0 + b * b)).sqrt(),
-                phase: -a.atan() - b.atan(),
+                magnitude: 9.6e4 / libm::sqrt((1.0 + a * a) * (1.0 + b * b)),
+                phase: -libm::atan(a) - libm::atan(b),
             }
         })
         .collect();
@@ -199,9 +197,9 @@ pub fn report(kind: Kind) -> Report {
     ];
     let density = sweep(10.0, 6, 20)
         .map(|f| {
-            let roll = 20.3 / (1.0 + (f / 512e3) * (f / 512e3)).sqrt();
-            let total = 22e-9 * roll * (1.0 + 300.0 / f).sqrt();
-            DensityPoint { frequency: f, total, by_source: shares.iter().map(|s| total * f64::sqrt(s.1)).collect() }
+            let roll = 20.3 / libm::sqrt(1.0 + (f / 512e3) * (f / 512e3));
+            let total = 22e-9 * roll * libm::sqrt(1.0 + 300.0 / f);
+            DensityPoint { frequency: f, total, by_source: shares.iter().map(|s| total * libm::sqrt(s.1)).collect() }
         })
         .collect();
     let envelope = sweep(10.0, 6, 20)
@@ -215,7 +213,7 @@ pub fn report(kind: Kind) -> Report {
         response,
         loop_gain,
         density,
-        noise_shares: shares.iter().map(|s| NoiseShare { origin: s.0, rms: 61e-6 * f64::sqrt(s.1), share: s.1 }).collect(),
+        noise_shares: shares.iter().map(|s| NoiseShare { origin: s.0, rms: 61e-6 * libm::sqrt(s.1), share: s.1 }).collect(),
         dc_budget: vec![
             cause(DcCause::Offset, 1e-3, 4.1e-3),
             cause(DcCause::OffsetDrift, 0.1e-3, 0.6e-3),
@@ -238,9 +236,6 @@ pub fn report(kind: Kind) -> Report {
             source: "derived here: the two resistors are a divider",
             difference: "the amplifier's gain is finite, and the source's resistance counts",
         }],
-        cautions: vec![
-            Caution::BelowStableGain { noise_gain: 3.0, needed: 5.0 },
-            Caution::TakenAsIdeal(PartFigure::OutputResistance),
-        ],
+        cautions: vec![Caution::BelowStableGain { noise_gain: 3.0, needed: 5.0 }, Caution::TakenAsIdeal(PartFigure::OutputResistance)],
     }
 }
