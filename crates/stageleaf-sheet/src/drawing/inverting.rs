@@ -29,7 +29,7 @@ pub fn draw(c: &mut Canvas, l: &Labels) {
     match (l.component("Rp"), l.component("Cp")) {
         (Some(r), k) => {
             // Below the source's texts, and below the snubber's labels.
-            let mut top = line.max(y + 78);
+            let mut top = line.max(y + 86);
             if l.has("Rsn") {
                 top = top.max(y + 172);
             }
