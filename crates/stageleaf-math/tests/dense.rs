@@ -1,0 +1,211 @@
+//! The expansion against the dense nodal solution of the same network: random stages of every kind, well and badly scaled.
+//!
+//! The dense solution cancels where a loop gain is high, and keeps five digits at worst; Kirchhoff's law holds to thirteen.
+//! The two share the network's layout and nothing else. What both could get wrong together (the layout itself) is checked
+//! against an independent program in `tests/outside/`.
+
+use num_complex::Complex64;
+use stageleaf_math::{
+    kind::Kind,
+    model::Model,
+    network::{
+        DRIVEN, GROUND, Node,
+        dense::{Drive, solve},
+    },
+    part::{Part, PartFigure, Rating, Zero},
+    solution::Solution,
+    stage::{Board, Component, Isolation, Load, Source, Stage, Toleranced},
+};
+
+/// SplitMix64, so that a failure's seed reproduces it.
+struct Draw(u64);
+
+impl Draw {
+    fn next(&mut self) -> f64 {
+        self.0 = self.0.wrapping_add(0x9E37_79B9_7F4A_7C15);
+        let mut z = self.0;
+        z = (z ^ (z >> 30)).wrapping_mul(0xBF58_476D_1CE4_E5B9);
+        z = (z ^ (z >> 27)).wrapping_mul(0x94D0_49BB_1331_11EB);
+        z ^= z >> 31;
+        #[expect(clippy::cast_precision_loss, reason = "53 bits")]
+        let unit = (z >> 11) as f64 / 9_007_199_254_740_992.0;
+        unit
+    }
+
+    fn log(&mut self, low: f64, high: f64) -> f64 {
+        low * libm::pow(high / low, self.next())
+    }
+
+    fn chance(&mut self) -> bool {
+        self.next() < 0.5
+    }
+}
+
+fn random_stage(draw: &mut Draw, kind: Kind, ohms: (f64, f64), farads: (f64, f64)) -> Stage {
+    let mut components = Vec::new();
+    let skip: Vec<bool> = kind.components().iter().map(|_| draw.chance()).collect();
+    for (spec, skip) in kind.components().iter().zip(skip) {
+        if !spec.required && skip {
+            continue;
+        }
+        let (low, high) = if spec.name.starts_with('R') { ohms } else { farads };
+        components.push(Component { name: spec.name, value: Toleranced::exact(draw.log(low, high)) });
+    }
+    let names: Vec<&str> = components.iter().map(|c| c.name).collect();
+    let alone: Vec<&str> =
+        kind.components().iter().filter(|s| s.with.is_some_and(|w| !names.contains(&w))).map(|s| s.name).collect();
+    components.retain(|c| !alone.contains(&c.name));
+    let mut part = Part::default();
+    part.state(PartFigure::OpenLoop, Rating::typical(draw.log(1e2, 1e8)));
+    part.state(PartFigure::Gbw, Rating::typical(draw.log(1e4, 1e9)));
+    part.state(PartFigure::OutputResistance, Rating::typical(if draw.chance() { 0.0 } else { draw.log(1.0, 1e3) }));
+    part.state(PartFigure::DifferentialCapacitance, Rating::typical(draw.log(1e-13, 1e-11)));
+    part.state(PartFigure::CommonModeCapacitance, Rating::typical(draw.log(1e-13, 1e-11)));
+    if draw.chance() {
+        part.state(PartFigure::DifferentialResistance, Rating::typical(draw.log(1e5, 1e13)));
+        part.state(PartFigure::CommonModeResistance, Rating::typical(draw.log(1e6, 1e14)));
+    }
+    part.poles = Some(if draw.chance() { vec![] } else { vec![draw.log(1e6, 1e9), draw.log(1e7, 1e10)] });
+    if draw.chance() {
+        part.zeros = vec![Zero { frequency: draw.log(1e6, 1e9), right_half_plane: draw.chance() }];
+    }
+    let exact = |draw: &mut Draw, (low, high): (f64, f64)| draw.chance().then(|| Toleranced::exact(draw.log(low, high)));
+    let load = Load { resistance: exact(draw, ohms), capacitance: exact(draw, farads) };
+    let board = Board {
+        inverting_node: exact(draw, (1e-13, 1e-11)),
+        non_inverting_node: exact(draw, (1e-13, 1e-11)),
+        across_feedback: exact(draw, (1e-14, 1e-12)),
+    };
+    let source = match (draw.chance(), draw.chance()) {
+        (true, true) => Some(Source::Resistive { resistance: Toleranced::exact(draw.log(ohms.0, ohms.1)) }),
+        (true, false) => Some(Source::Capacitive { capacitance: Toleranced::exact(draw.log(farads.0, farads.1)) }),
+        _ => None,
+    };
+    Stage {
+        name: "random".into(),
+        kind,
+        components,
+        part,
+        isolation: if draw.chance() { Isolation::InsideLoop } else { Isolation::OutsideLoop },
+        supply: None,
+        source,
+        signal: None,
+        load,
+        board,
+        ambient: None,
+        band: None,
+        limits: vec![],
+    }
+}
+
+fn compare(seed: u64, what: &str, ours: Complex64, dense: Complex64, allowed: f64) {
+    let (difference, size) = ((ours - dense).norm(), dense.norm().max(ours.norm()));
+    assert!(ours.re.is_finite() && ours.im.is_finite(), "seed {seed}: {what} is {ours}");
+    assert!(difference <= allowed * size + 1e-290, "seed {seed}: {what}: expansion {ours}, dense {dense}, off by {:e}", difference / size);
+}
+
+/// `condition` says how far the dense solution itself may be off: it loses digits where the values are badly scaled.
+fn check(seed: u64, kind: Kind, ohms: (f64, f64), farads: (f64, f64), condition: f64) {
+    let mut draw = Draw(seed);
+    let stage = random_stage(&mut draw, kind, ohms, farads);
+    let model = Model::compile(&stage);
+    let solution = Solution::new(&model, model.parameters.nominal(), None);
+    let resistance = solution.part(PartFigure::OutputResistance).unwrap_or(0.0);
+    for _ in 0..6 {
+        let frequency = draw.log(1.0, 1e9);
+        let omega = solution.scaled(frequency);
+        let s = Complex64::new(0.0, std::f64::consts::TAU * frequency);
+        let (above, below) = solution.amplifier();
+        let gain = above.at(omega) / below.at(omega);
+        let solved = |drive| solve(&model.network, &solution.values, gain, resistance, s, drive);
+        let Some(voltages) = solved(Drive::Source) else { continue };
+        for node in 1..model.network.nodes {
+            let node8 = u8::try_from(node).expect("few");
+            compare(seed, &format!("v({node}) at {frequency:e}"), solution.voltage(Node(node8), omega), voltages[node], condition);
+        }
+        let load = usize::from(model.network.load.0);
+        let closed = solution.looped().closed.at(omega);
+        let Some(voltages) = solved(Drive::AmplifierInput) else { continue };
+        compare(seed, "series input", solution.injection().input.at(omega) / closed, voltages[load], condition);
+        for node in 2..model.network.nodes {
+            let to = Node(u8::try_from(node).expect("few"));
+            let Some(voltages) = solved(Drive::Current { from: GROUND, to }) else { continue };
+            let ours = solution.injection().current[node].at(omega) / closed * model.scale.0;
+            compare(seed, &format!("transimpedance from {node} at {frequency:e}"), ours, voltages[load], condition);
+        }
+        // The return ratio: one volt behind the output resistance in the controlled source's place, T = −A·(vp − vn).
+        let one = Complex64::new(1.0, 0.0);
+        let amplifier = model.network.amplifier;
+        let mut unit = model.network.clone();
+        unit.amplifier.plus = GROUND;
+        unit.amplifier.minus = GROUND;
+        if let Some(voltages) = solve(&unit, &solution.values, one, resistance, s, Drive::AmplifierInput) {
+            let at = |n: Node| voltages[usize::from(n.0)];
+            let ratio = -gain * (at(amplifier.plus) - at(amplifier.minus));
+            compare(seed, "return ratio", solution.return_ratio(omega), ratio, condition);
+        }
+    }
+    assert!(model.network.nodes > usize::from(DRIVEN.0));
+}
+
+#[test]
+fn well_scaled_stages_agree_with_the_dense_solution() {
+    for &kind in Kind::ALL {
+        for seed in 0..400 {
+            check(seed, kind, (10.0, 1e6), (1e-12, 1e-7), 1e-5);
+        }
+    }
+}
+
+/// Kirchhoff's current law at every node but the driven one and the pin, and the amplifier's own equation, with the expansion's
+/// voltages put in: each sum must vanish against the largest of its terms. No solution of ours or of a library's is involved, so
+/// this holds where a dense solution has lost its digits.
+#[test]
+fn badly_scaled_stages_satisfy_kirchhoff() {
+    use stageleaf_math::network::dense::admittance;
+
+    for &kind in Kind::ALL {
+        for seed in 0..2000 {
+            let mut draw = Draw(seed);
+            let stage = random_stage(&mut draw, kind, (1e-2, 1e12), (1e-15, 1.0));
+            let model = Model::compile(&stage);
+            let solution = Solution::new(&model, model.parameters.nominal(), None);
+            let network = &model.network;
+            for _ in 0..4 {
+                let frequency = draw.log(1e-2, 1e10);
+                let omega = solution.scaled(frequency);
+                let s = Complex64::new(0.0, std::f64::consts::TAU * frequency);
+                let volts: Vec<Complex64> =
+                    (0..network.nodes).map(|n| solution.voltage(Node(u8::try_from(n).expect("few")), omega)).collect();
+                let at = |n: Node| volts[usize::from(n.0)];
+                let mut sums = vec![(Complex64::new(0.0, 0.0), 0.0f64); network.nodes];
+                for element in &network.elements {
+                    let y = admittance(element.law, &solution.values, s);
+                    let current = (at(element.a) - at(element.b)) * y;
+                    // What rounding of the two voltages may leave behind.
+                    let size = y.norm() * (at(element.a).norm() + at(element.b).norm());
+                    for (node, sign) in [(element.a, 1.0), (element.b, -1.0)] {
+                        let sum = &mut sums[usize::from(node.0)];
+                        sum.0 += current * sign;
+                        sum.1 += size;
+                    }
+                }
+                let amplifier = network.amplifier;
+                for (node, (sum, size)) in sums.iter().enumerate() {
+                    if node > usize::from(DRIVEN.0) && node != usize::from(amplifier.pin.0) {
+                        assert!(sum.norm() <= 1e-13 * size + 1e-300, "seed {seed} {kind:?}: {sum} of {size:e} left at node {node}");
+                    }
+                }
+                let (above, below) = solution.amplifier();
+                let gain = above.at(omega) / below.at(omega);
+                let resistance = solution.part(PartFigure::OutputResistance).unwrap_or(0.0);
+                let out = sums[usize::from(amplifier.pin.0)];
+                let left = gain * (at(amplifier.plus) - at(amplifier.minus)) - at(amplifier.pin) - out.0 * resistance;
+                let size = gain.norm() * (at(amplifier.plus).norm() + at(amplifier.minus).norm())
+                    + at(amplifier.pin).norm()
+                    + out.1 * resistance;
+                assert!(left.norm() <= 1e-13 * size + 1e-300, "seed {seed} {kind:?}: the amplifier's equation leaves {left} of {size:e}");
+            }
+        }
+    }
+}
