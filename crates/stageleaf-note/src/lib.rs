@@ -29,14 +29,15 @@ pub mod print;
 pub mod problem;
 pub mod quantity;
 pub mod query;
+mod quoting;
 #[cfg(feature = "toml")]
 mod reading;
 #[cfg(feature = "toml")]
 mod rewriting;
-#[cfg(feature = "toml")]
-mod stocking;
 pub mod settings;
 pub mod shelf;
+#[cfg(feature = "toml")]
+mod stocking;
 #[cfg(feature = "toml")]
 mod surroundings;
 #[cfg(feature = "toml")]
@@ -51,11 +52,12 @@ pub use block::read_block;
 pub use block::{Block, Field, Measured, Place};
 pub use limit::{limit_text, parse_limit};
 #[cfg(feature = "markdown")]
-pub use markdown::{Note, Quote, duplicate_names, quote_agrees, quote_for, read_note};
+pub use markdown::{Note, Quote, duplicate_names, read_note};
 pub use print::{code, format, full, spoken};
 pub use problem::Problem;
 pub use quantity::{Trouble, parse};
 pub use query::{fingerprint, parse_query, query_anchor, query_text, slug};
+pub use quoting::{quote_agrees, quote_for};
 pub use settings::Settings;
 #[cfg(feature = "toml")]
 pub use settings::read_settings;

@@ -228,7 +228,12 @@ fn rating<'a>(reader: &mut Reader<'a>, entry: &Entry<'a>, path: &str, d: Dimensi
     }
     let ordered = [rating.min, rating.typ, rating.max].into_iter().flatten().is_sorted();
     if !ordered {
-        reader.problem(entry.value.span(), format!("`{}` is out of order", entry.key), "`min` not above `typ`, `typ` not above `max`", None);
+        reader.problem(
+            entry.value.span(),
+            format!("`{}` is out of order", entry.key),
+            "`min` not above `typ`, `typ` not above `max`",
+            None,
+        );
     }
     ordered.then_some(rating)
 }
@@ -276,7 +281,13 @@ fn rejection<'a>(reader: &mut Reader<'a>, part: &mut Part, entry: &Entry<'a>, fi
     }
 }
 
-fn list<'a, T>(reader: &mut Reader<'a>, entry: &Entry<'a>, path: &str, takes: &str, parse: impl Fn(&str) -> Result<T, Trouble>) -> Option<Vec<T>> {
+fn list<'a, T>(
+    reader: &mut Reader<'a>,
+    entry: &Entry<'a>,
+    path: &str,
+    takes: &str,
+    parse: impl Fn(&str) -> Result<T, Trouble>,
+) -> Option<Vec<T>> {
     let Some(array) = entry.value.get_ref().as_array() else {
         let message = format!("`{}` {takes} in a list", entry.key);
         reader.problem(entry.value.span(), message, "a list of texts, as `[\"22 MHz\"]`; `[]` states that there are none", None);

@@ -1,35 +1,191 @@
-//! stub
+//! The one table of words for what the engine reports as data.
+
 use stageleaf_math::{
     dimension::Dimension,
+    part::{PartFigure, Rating},
     report::{Caution, DcCause, Need, NoiseOrigin, Outcome, Parameter},
 };
-/// "`Rf`", "supply, positive".
+
+use crate::{
+    print::{format, trimmed},
+    unit,
+};
+
+/// What varies, as a corner or a verdict names it: "Rf", "positive supply", "gain-bandwidth product (gain.gbw)".
 #[must_use]
-pub fn parameter_text(_: Parameter) -> String {
-    String::new()
+pub fn parameter_text(parameter: Parameter) -> String {
+    match parameter {
+        Parameter::Component(name) => name.into(),
+        Parameter::SourceImpedance => "source impedance".into(),
+        Parameter::LoadResistance => "load resistance".into(),
+        Parameter::LoadCapacitance => "load capacitance".into(),
+        Parameter::StrayInverting => "stray capacitance at the inverting input".into(),
+        Parameter::StrayNonInverting => "stray capacitance at the non-inverting input".into(),
+        Parameter::StrayFeedback => "stray capacitance across the feedback".into(),
+        Parameter::SupplyPositive => "positive supply".into(),
+        Parameter::SupplyNegative => "negative supply".into(),
+        Parameter::Temperature => "ambient temperature".into(),
+        Parameter::Part(figure) => figure.meaning().into(),
+        Parameter::Headroom => "output headroom".into(),
+    }
 }
-/// What must be stated, and where.
+
+/// What a parameter measures, for its values in a corner.
+///
+/// The headroom's coordinate is a plain number from 0 (typical) to 1 (guaranteed); a source may be resistive or
+/// capacitive, which the stage tells.
 #[must_use]
-pub fn need_text(_: Need, _part_file: &str) -> String {
-    String::new()
+pub fn parameter_dimension(parameter: Parameter, stage: &stageleaf_math::stage::Stage) -> Dimension {
+    use stageleaf_math::stage::Source;
+    match parameter {
+        Parameter::Component(name) => stage.kind.components().iter().find(|s| s.name == name).map_or(Dimension::Number, |s| s.dimension),
+        Parameter::SourceImpedance => match stage.source {
+            Some(Source::Capacitive { .. }) => Dimension::Capacitance,
+            _ => Dimension::Resistance,
+        },
+        Parameter::LoadResistance => Dimension::Resistance,
+        Parameter::LoadCapacitance | Parameter::StrayInverting | Parameter::StrayNonInverting | Parameter::StrayFeedback => {
+            Dimension::Capacitance
+        }
+        Parameter::SupplyPositive | Parameter::SupplyNegative => Dimension::Voltage,
+        Parameter::Temperature => Dimension::Temperature,
+        Parameter::Part(figure) => figure.dimension(),
+        Parameter::Headroom => Dimension::Number,
+    }
 }
-/// The caution in a sentence.
+
+/// What must be stated and where: "`junction_to_ambient` (K/W) under [thermal] in site/shelf/alder-10.toml, with its
+/// source".
 #[must_use]
-pub fn caution_text(_: &Caution) -> String {
-    String::new()
+pub fn need_text(need: Need, part_file: &str) -> String {
+    let part = |table: &str, key: &str, what: &str| format!("`{key}` ({what}) under [{table}] in {part_file}, with its source");
+    match need {
+        Need::Part(figure) => {
+            let unit = figure.dimension();
+            let (table, key) = figure.id().split_once('.').unwrap_or(("part", figure.id()));
+            match figure {
+                PartFigure::SupplySpanMin | PartFigure::SupplySpanMax => part("supply", "span", "V"),
+                PartFigure::RangeFromNegative => part("input", "range = { from_negative }", "V"),
+                PartFigure::RangeFromPositive => part("input", "range = { from_positive }", "V"),
+                PartFigure::CmrrCorner => part("input", "cmrr = { corner }", "Hz"),
+                PartFigure::PsrrPositiveCorner => part("input", "psrr_positive = { corner }", "Hz"),
+                PartFigure::PsrrNegativeCorner => part("input", "psrr_negative = { corner }", "Hz"),
+                _ => part(table, key, shown_unit(unit)),
+            }
+        }
+        Need::Poles => format!(
+            "`poles` (a list in Hz, `[]` where there are none) or `phase_margin` with its conditions under [gain] in {part_file}, with its source"
+        ),
+        Need::HeadroomHigh => part("output", "headroom_high", "rows of current against V, up to the current asked"),
+        Need::HeadroomLow => part("output", "headroom_low", "rows of current against V, up to the current asked"),
+        Need::Supply => "[supply] with `positive` and `negative` in the stage's block".into(),
+        Need::Signal => "[signal] with its amplitude in the stage's block".into(),
+        Need::SignalFrequency => "`frequency` under [signal] in the stage's block".into(),
+        Need::Ambient => "[ambient] with `range` in the stage's block".into(),
+        Need::Band => "[band] with `from` and `to` in the stage's block".into(),
+    }
 }
+
+/// A caution in a sentence.
+#[must_use]
+pub fn caution_text(caution: &Caution) -> String {
+    match caution {
+        Caution::BelowStableGain { noise_gain, needed } => format!(
+            "The noise gain at crossover is {}; the part asks for at least {}.",
+            format(*noise_gain, Dimension::Number, 3),
+            trimmed(*needed, Dimension::Number, 3)
+        ),
+        Caution::SupplySpan { span, allowed } => format!(
+            "The supply span reaches {}; the part's bound is {}.",
+            trimmed(*span, Dimension::Voltage, 3),
+            trimmed(*allowed, Dimension::Voltage, 3)
+        ),
+        Caution::JunctionHot { junction, allowed } => format!(
+            "The junction reaches {} at the worst case; the part allows {}.",
+            format(*junction, Dimension::Temperature, 3),
+            trimmed(*allowed, Dimension::Temperature, 3)
+        ),
+        Caution::ResistorHot { component, power, rating } => format!(
+            "{component} turns {} to heat at the worst case; its rating is {}.",
+            format(*power, Dimension::Power, 3),
+            trimmed(*rating, Dimension::Power, 3)
+        ),
+        Caution::HighVoltage { span } => format!(
+            "The supply span of {} lies above the extra-low-voltage range: local codes and licensed practice decide.",
+            trimmed(*span, Dimension::Voltage, 3)
+        ),
+        Caution::PhaseReversal => "The output reverses when an input leaves its range: keep the input range margin.".into(),
+        Caution::TakenAsIdeal(figure) => {
+            format!("The part states no {} ({}); the small-signal figures take it as ideal.", figure.meaning(), figure.id())
+        }
+        Caution::SupplyReversed => "The positive supply is not above the negative one.".into(),
+    }
+}
+
 /// The cause of a DC error.
 #[must_use]
-pub fn cause_text(_: DcCause) -> String {
-    String::new()
+pub fn cause_text(cause: DcCause) -> String {
+    match cause {
+        DcCause::Offset => "Input offset voltage",
+        DcCause::OffsetDrift => "Offset drift over temperature",
+        DcCause::BiasCurrent => "Bias current",
+        DcCause::OffsetCurrent => "Offset current",
+        DcCause::CommonMode => "Common-mode voltage",
+        DcCause::SupplyPositive => "Deviation of the positive supply",
+        DcCause::SupplyNegative => "Deviation of the negative supply",
+    }
+    .into()
 }
+
 /// The source of noise.
 #[must_use]
-pub fn origin_text(_: NoiseOrigin) -> String {
-    String::new()
+pub fn origin_text(origin: NoiseOrigin) -> String {
+    match origin {
+        NoiseOrigin::Component(name) => return format!("{name}, thermal"),
+        NoiseOrigin::SourceResistance => "Source resistance, thermal",
+        NoiseOrigin::LoadResistance => "Load resistance, thermal",
+        NoiseOrigin::AmplifierVoltage => "Amplifier voltage noise",
+        NoiseOrigin::CurrentNonInverting => "Current noise, non-inverting input",
+        NoiseOrigin::CurrentInverting => "Current noise, inverting input",
+    }
+    .into()
 }
-/// A value, or why there is none, in a few words.
+
+/// A value with `digits` significant digits, or why there is none, in a few words.
 #[must_use]
-pub fn outcome_text(_: &Outcome, _: Dimension, _digits: usize) -> String {
-    String::new()
+pub fn outcome_text(outcome: &Outcome, d: Dimension, digits: usize) -> String {
+    match outcome {
+        Outcome::Value(value) => format(*value, d, digits),
+        Outcome::Undetermined(needs) => {
+            let keys: Vec<String> = needs.iter().map(|n| format!("`{}`", n.key())).collect();
+            if keys.is_empty() { "undetermined".into() } else { format!("undetermined: needs {}", keys.join(", ")) }
+        }
+        Outcome::DoesNotApply(why) => format!("does not apply: {why}"),
+        Outcome::Oscillates => "oscillates".into(),
+        Outcome::NoDcPath => "no DC path".into(),
+    }
+}
+
+/// A data-sheet figure as stated: "9 nV/√Hz typical", "0.5 mV typical, 2 mV at most".
+#[must_use]
+pub fn rating_text(rating: &Rating, d: Dimension) -> String {
+    let show = |v: f64| trimmed(v, d, 6);
+    let stated = [
+        rating.min.map(|v| format!("{} at least", show(v))),
+        rating.typ.map(|v| format!("{} typical", show(v))),
+        rating.max.map(|v| format!("{} at most", show(v))),
+    ];
+    let stated: Vec<String> = stated.into_iter().flatten().collect();
+    if stated.is_empty() { "not stated".into() } else { stated.join(", ") }
+}
+
+/// The unit in which a dimension is usually stated.
+fn shown_unit(d: Dimension) -> &'static str {
+    match d {
+        Dimension::Number => "a number",
+        Dimension::Gain => "V/V or dB",
+        Dimension::Angle => "°",
+        Dimension::SlewRate => "V/µs",
+        d => unit::spellings(d).first().copied().unwrap_or(""),
+    }
 }
