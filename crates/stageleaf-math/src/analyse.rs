@@ -313,11 +313,7 @@ fn limit_row(spread: &mut Spread<'_>, limit: &Limit) -> LimitRow {
         };
         spread.basis(query, &extremes, &extreme, 0.01 * distance)
     });
-    let dominant = extreme
-        .effects
-        .iter()
-        .max_by(|a, b| a.1.abs().total_cmp(&b.1.abs()))
-        .map(|&(slot, _)| spread.parameter(slot));
+    let dominant = extreme.effects.iter().max_by(|a, b| a.1.abs().total_cmp(&b.1.abs())).map(|&(slot, _)| spread.parameter(slot));
     let corner = if matches!(limit.bound, Bound::Report) { Vec::new() } else { extreme.corner };
     LimitRow {
         limit: limit.clone(),
@@ -489,4 +485,3 @@ fn window(solution: &Solution<'_>, crossover: Option<f64>) -> (f64, f64) {
     let decade = |x: f64| libm::pow(10.0, x);
     (decade(libm::floor(libm::log10(low)) - 2.0), decade(libm::ceil(libm::log10(high)) + 1.0))
 }
-

@@ -59,7 +59,9 @@ impl fmt::Display for Error {
             Self::SupplyReversed { positive, negative } => {
                 write!(f, "the positive supply ({positive} V) is not above the negative one ({negative} V)")
             }
-            Self::RangeReversed { what, low, high } => write!(f, "`{what}` runs from {low} to {high}: the lower end is above the upper one"),
+            Self::RangeReversed { what, low, high } => {
+                write!(f, "`{what}` runs from {low} to {high}: the lower end is above the upper one")
+            }
         }
     }
 }

@@ -81,15 +81,26 @@ impl<'a> Model<'a> {
         let source = DRIVEN.0;
         let forward = Expansion::compile(&network, Shape::Forward { source });
         let adjoint = Expansion::compile(&network, Shape::Adjoint { source, sense: network.load.0 });
-        let series_input = Expansion::compile(
-            &network,
-            Shape::Closed { both: 1 << source, row: network.amplifier.pin.0, column: network.load.0 },
-        );
+        let series_input =
+            Expansion::compile(&network, Shape::Closed { both: 1 << source, row: network.amplifier.pin.0, column: network.load.0 });
         let scale = scale(&network, &parameters);
         let small_signal = SMALL_SIGNAL.iter().all(|&f| parameters.part_slot(f).is_some());
         let poles = stage.part.poles.clone().or_else(|| second_pole::solve(&stage.part).map(|f| vec![f]));
         let has_poles = poles.is_some();
-        Self { stage, parameters, network, forward, adjoint, series_input, poles, zeros: stage.part.zeros.clone(), scale, small_signal: small_signal && has_poles, input: OnceCell::new(), output: OnceCell::new() }
+        Self {
+            stage,
+            parameters,
+            network,
+            forward,
+            adjoint,
+            series_input,
+            poles,
+            zeros: stage.part.zeros.clone(),
+            scale,
+            small_signal: small_signal && has_poles,
+            input: OnceCell::new(),
+            output: OnceCell::new(),
+        }
     }
 
     /// The impedance at the stage's signal terminal.

@@ -121,9 +121,8 @@ impl Parameters {
             let touches = touch::DC | touch::SWING | touch::POWER;
             (stated(Parameter::SupplyPositive, s.positive, touches), stated(Parameter::SupplyNegative, s.negative, touches))
         });
-        let temperature = stage
-            .ambient
-            .map(|a| stated(Parameter::Temperature, a.range, touch::NOISE | touch::DC | touch::SWING | touch::POWER));
+        let temperature =
+            stage.ambient.map(|a| stated(Parameter::Temperature, a.range, touch::NOISE | touch::DC | touch::SWING | touch::POWER));
         let mut part = [ABSENT; PartFigure::COUNT];
         for &figure in PartFigure::ALL {
             if let Some(entry) = part_entry(figure, stage.part.rating(figure)) {
@@ -218,14 +217,9 @@ const fn part_touches(figure: PartFigure) -> u8 {
         | P::CommonModeResistance
         | P::CommonModeCapacitance => touch::ALL,
         P::NoiseVoltage | P::NoiseVoltageCorner | P::NoiseExponent | P::NoiseCurrent | P::NoiseCurrentCorner => touch::NOISE,
-        P::Offset
-        | P::OffsetDrift
-        | P::BiasCurrent
-        | P::BiasDoubling
-        | P::OffsetCurrent
-        | P::Cmrr
-        | P::PsrrPositive
-        | P::PsrrNegative => touch::DC | touch::SWING,
+        P::Offset | P::OffsetDrift | P::BiasCurrent | P::BiasDoubling | P::OffsetCurrent | P::Cmrr | P::PsrrPositive | P::PsrrNegative => {
+            touch::DC | touch::SWING
+        }
         P::RangeFromNegative | P::RangeFromPositive | P::SlewRise | P::SlewFall | P::CurrentLimit => touch::SWING,
         P::SupplyCurrent | P::JunctionToAmbient => touch::DC | touch::SWING | touch::POWER,
         P::SupplySpanMin

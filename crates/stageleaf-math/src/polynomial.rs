@@ -215,9 +215,9 @@ fn aberth(coefficients: &[f64], roots: &mut [Complex64]) {
 
 /// Real coefficients: roots are real or come in conjugate pairs. Orders them by magnitude.
 fn pair_up(roots: &mut [Complex64]) {
-    for i in 0..roots.len() {
-        if roots[i].im.abs() <= 1e-9 * roots[i].re.abs() {
-            roots[i].im = 0.0;
+    for root in roots.iter_mut() {
+        if root.im.abs() <= 1e-9 * root.re.abs() {
+            root.im = 0.0;
         }
     }
     roots.sort_by(|a, b| a.norm_sqr().total_cmp(&b.norm_sqr()).then(a.re.total_cmp(&b.re)).then(a.im.total_cmp(&b.im)));

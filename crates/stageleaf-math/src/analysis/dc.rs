@@ -53,7 +53,8 @@ pub fn budget<'s>(solution: &'s Solution<'_>) -> &'s Budget {
             Some(v) => Outcome::Value(v),
             None => Outcome::Undetermined(alloc::vec![Need::Part(figure)]),
         };
-        let times = |outcome: Outcome, factor: f64| if factor.abs() <= 0.0 { Outcome::Value(0.0) } else { super::scaled(&outcome, factor.abs()) };
+        let times =
+            |outcome: Outcome, factor: f64| if factor.abs() <= 0.0 { Outcome::Value(0.0) } else { super::scaled(&outcome, factor.abs()) };
 
         let mut lines = alloc::vec![(DcCause::Offset, times(part(PartFigure::Offset), input))];
         let away = parameters.temperature().map_or(0.0, |slot| solution.values[slot] - parameters.entries[slot].nominal);
@@ -137,4 +138,3 @@ fn sum<'o>(outcomes: impl Iterator<Item = &'o Outcome>) -> Outcome {
     }
     if needs.is_empty() { Outcome::Value(total) } else { Outcome::Undetermined(needs) }
 }
-

@@ -78,12 +78,13 @@ pub fn margins(solution: &Solution<'_>) -> Margins {
             sensitivity_peak = libm::sqrt(search::peak(a, c, sensitivity).1.max(top));
         }
         let unstable = solution.oscillates();
-        let gain = if unstable && below > 0.0 { below } else if above.is_finite() || below <= 0.0 { above } else { below };
-        Margins {
-            crossover: worst.map(|(w, _)| solution.hertz(w)),
-            phase: worst.map(|(_, m)| m),
-            gain,
-            sensitivity_peak,
-        }
+        let gain = if unstable && below > 0.0 {
+            below
+        } else if above.is_finite() || below <= 0.0 {
+            above
+        } else {
+            below
+        };
+        Margins { crossover: worst.map(|(w, _)| solution.hertz(w)), phase: worst.map(|(_, m)| m), gain, sensitivity_peak }
     })
 }

@@ -61,7 +61,7 @@ impl Spectrum {
             }
             Self::Flicker(level, corner, exponent) => {
                 let ratio = corner / frequency;
-                let flicker = if exponent == 1.0 { ratio } else { libm::pow(ratio, exponent) };
+                let flicker = if (exponent - 1.0).abs() <= 0.0 { ratio } else { libm::pow(ratio, exponent) };
                 level * (1.0 + flicker)
             }
         }
@@ -107,9 +107,7 @@ fn generators(solution: &Solution<'_>) -> Vec<Generator> {
     }
     if let (Some(level), Some(corner)) = (solution.part(PartFigure::NoiseCurrent), solution.part(PartFigure::NoiseCurrentCorner)) {
         let amplifier = model.network.amplifier;
-        for (node, origin) in
-            [(amplifier.plus, NoiseOrigin::CurrentNonInverting), (amplifier.minus, NoiseOrigin::CurrentInverting)]
-        {
+        for (node, origin) in [(amplifier.plus, NoiseOrigin::CurrentNonInverting), (amplifier.minus, NoiseOrigin::CurrentInverting)] {
             let numerator = &injection.current[usize::from(node.0)];
             if node != GROUND && !numerator.is_zero() {
                 list.push(Generator {
@@ -141,7 +139,7 @@ impl Total {
         for generator in generators(solution) {
             match generator.spectrum {
                 Spectrum::White(level) => total.white.add_scaled(&generator.numerator.squared_magnitude(), level),
-                Spectrum::Flicker(level, corner, 1.0) => {
+                Spectrum::Flicker(level, corner, exponent) if (exponent - 1.0).abs() <= 0.0 => {
                     let square = generator.numerator.squared_magnitude();
                     total.white.add_scaled(&square, level);
                     total.flicker.add_scaled(&square, level * corner);
@@ -183,19 +181,15 @@ pub fn shares(solution: &Solution<'_>) -> Vec<NoiseShare> {
     let closed = &solution.looped().closed;
     let mut powers: Vec<(NoiseOrigin, f64)> = Vec::new();
     for generator in &list {
-        let rms2 = integrate(solution, band.from, band.to, |f| {
-            power(solution, generator, f, closed.at(solution.scaled(f)).norm_sqr())
-        });
+        let rms2 = integrate(solution, band.from, band.to, |f| power(solution, generator, f, closed.at(solution.scaled(f)).norm_sqr()));
         match powers.iter_mut().find(|(o, _)| *o == generator.origin) {
             Some((_, p)) => *p += rms2,
             None => powers.push((generator.origin, rms2)),
         }
     }
     let sum: f64 = powers.iter().map(|(_, p)| p).sum();
-    let mut shares: Vec<NoiseShare> = powers
-        .iter()
-        .map(|&(origin, p)| NoiseShare { origin, rms: libm::sqrt(p), share: if sum > 0.0 { p / sum } else { 0.0 } })
-        .collect();
+    let mut shares: Vec<NoiseShare> =
+        powers.iter().map(|&(origin, p)| NoiseShare { origin, rms: libm::sqrt(p), share: if sum > 0.0 { p / sum } else { 0.0 } }).collect();
     shares.sort_by(|a, b| b.share.total_cmp(&a.share));
     shares
 }
@@ -333,7 +327,7 @@ const KRONROD: [f64; 8] = [
     0.204_432_940_075_298_9,
     0.209_482_141_084_727_82,
 ];
-const GAUSS: [f64; 4] = [0.129_484_966_168_869_7, 0.279_705_391_489_276_64, 0.381_830_050_505_118_93, 0.417_959_183_673_469_4];
+const GAUSS: [f64; 4] = [0.129_484_966_168_869_7, 0.279_705_391_489_276_7, 0.381_830_050_505_118_93, 0.417_959_183_673_469_4];
 
 /// 15-point value and its distance from the 7-point one.
 fn kronrod(a: f64, b: f64, f: &mut impl FnMut(f64) -> f64) -> (f64, f64) {

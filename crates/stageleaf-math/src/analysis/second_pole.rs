@@ -21,8 +21,7 @@ use crate::part::{Part, PartFigure};
 pub fn solve(part: &Part) -> Option<f64> {
     let stated = part.phase_margin.as_ref()?;
     let nominal = |figure: PartFigure| part.rating(figure).nominal(figure.worse());
-    let (open_loop, gbw, resistance) =
-        (nominal(PartFigure::OpenLoop)?, nominal(PartFigure::Gbw)?, nominal(PartFigure::OutputResistance)?);
+    let (open_loop, gbw, resistance) = (nominal(PartFigure::OpenLoop)?, nominal(PartFigure::Gbw)?, nominal(PartFigure::OutputResistance)?);
     let load = |s: Complex64| {
         let y = s * stated.load_capacitance.unwrap_or(0.0) + stated.load_resistance.map_or(0.0, |r| 1.0 / r);
         Complex64::new(1.0, 0.0) / (y * resistance + 1.0)

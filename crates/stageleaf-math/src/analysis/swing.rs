@@ -251,11 +251,9 @@ fn range(solution: &Solution<'_>) -> Outcome {
     if let Some(undetermined) = missing.outcome() {
         return undetermined;
     }
-    let (Some((positive, negative)), Some(from_negative), Some(from_positive)) = (
-        model.parameters.supply(),
-        solution.part(PartFigure::RangeFromNegative),
-        solution.part(PartFigure::RangeFromPositive),
-    ) else {
+    let (Some((positive, negative)), Some(from_negative), Some(from_positive)) =
+        (model.parameters.supply(), solution.part(PartFigure::RangeFromNegative), solution.part(PartFigure::RangeFromPositive))
+    else {
         return Outcome::Undetermined(alloc::vec![Need::Supply]);
     };
     let (low, high) = (solution.values[negative] + from_negative, solution.values[positive] - from_positive);
@@ -279,10 +277,7 @@ fn current(solution: &Solution<'_>, drive: &Drive) -> Outcome {
 }
 
 fn slew_rate(solution: &Solution<'_>) -> f64 {
-    f64::min(
-        solution.part(PartFigure::SlewRise).unwrap_or(f64::INFINITY),
-        solution.part(PartFigure::SlewFall).unwrap_or(f64::INFINITY),
-    )
+    f64::min(solution.part(PartFigure::SlewRise).unwrap_or(f64::INFINITY), solution.part(PartFigure::SlewFall).unwrap_or(f64::INFINITY))
 }
 
 fn slew(solution: &Solution<'_>, drive: &Drive) -> Outcome {
@@ -335,9 +330,8 @@ pub fn full_power_bandwidth(solution: &Solution<'_>) -> Outcome {
         let here = pin(solution, solution.hertz(omega));
         let volts = magnitude(here.voltage);
         let slope = omega * solution.model.scale.1 * magnitude(here.behind) / volts * amplitude / rate;
-        let amperes = limit.filter(|_| loaded).map_or(0.0, |l| {
-            (magnitude(here.current) / volts * amplitude + (steady.current.re * dc).abs()) / l
-        });
+        let amperes =
+            limit.filter(|_| loaded).map_or(0.0, |l| (magnitude(here.current) / volts * amplitude + (steady.current.re * dc).abs()) / l);
         slope.max(amperes) - 1.0
     };
     // Bracket around the frequency that the slew rate alone gives.
@@ -374,8 +368,7 @@ pub fn envelope(solution: &Solution<'_>, from: f64, to: f64, points: usize) -> a
         .map(|frequency| {
             let here = pin(solution, frequency);
             let gain = magnitude(solution.transfer(solution.scaled(frequency)));
-            let mut drive =
-                Drive { v0: steady.voltage.re * dc, vp: 0.0, i0: steady.current.re * dc, ip: 0.0, phase: (1.0, 0.0) };
+            let mut drive = Drive { v0: steady.voltage.re * dc, vp: 0.0, i0: steady.current.re * dc, ip: 0.0, phase: (1.0, 0.0) };
             let bound = rails.as_ref().and_then(|rails| largest(rails, &mut drive, &here)).map(|peak| peak * gain);
             let current = limit.map(|l| (l - drive.i0.abs()).max(0.0) / magnitude(here.current) * gain);
             let slew = rate.is_finite().then(|| rate / (TAU * frequency * magnitude(here.behind)) * gain);
@@ -414,4 +407,3 @@ fn largest(rails: &Rails<'_>, drive: &mut Drive, here: &Pin) -> Option<f64> {
     drive.set_alternating(here, 0.0);
     Some(b)
 }
-

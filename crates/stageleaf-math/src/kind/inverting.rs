@@ -23,9 +23,14 @@
 use alloc::vec;
 
 use super::{
-    ComponentSpec, INPUT_SERIES, INPUT_SHUNT, ISOLATION, NOISE_GAIN_C, NOISE_GAIN_R, SNUBBER_C, SNUBBER_R, Spec, closed_loop_edge, corner, dc_gain, nominal,
+    ComponentSpec, INPUT_SERIES, INPUT_SHUNT, ISOLATION, NOISE_GAIN_C, NOISE_GAIN_R, SNUBBER_C, SNUBBER_R, Spec, closed_loop_edge, corner,
+    dc_gain, nominal,
 };
-use crate::{dimension::Dimension, network::GROUND, stage::{Isolation, Stage}};
+use crate::{
+    dimension::Dimension,
+    network::GROUND,
+    stage::{Isolation, Stage},
+};
 
 fn ratio(stage: &Stage) -> f64 {
     nominal(stage, "Rf") / nominal(stage, "Rin")

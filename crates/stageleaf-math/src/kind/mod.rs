@@ -169,14 +169,20 @@ impl Kind {
 /// `Rser`: series resistor at the signal input.
 pub const INPUT_SERIES: ComponentSpec = ComponentSpec::optional("Rser", Dimension::Resistance, "series resistor at the signal input");
 /// `Cshunt`: capacitor from the signal input to ground, behind `Rser`.
-pub const INPUT_SHUNT: ComponentSpec = ComponentSpec::optional("Cshunt", Dimension::Capacitance, "capacitor from the signal input to ground, behind `Rser`");
+pub const INPUT_SHUNT: ComponentSpec =
+    ComponentSpec::optional("Cshunt", Dimension::Capacitance, "capacitor from the signal input to ground, behind `Rser`");
 /// `Riso`: isolation resistor between pin and load.
-pub const ISOLATION: ComponentSpec = ComponentSpec::optional("Riso", Dimension::Resistance, "isolation resistor between the output pin and the load");
+pub const ISOLATION: ComponentSpec =
+    ComponentSpec::optional("Riso", Dimension::Resistance, "isolation resistor between the output pin and the load");
 /// `Rsn`: snubber resistor.
-pub const SNUBBER_R: ComponentSpec = ComponentSpec::optional("Rsn", Dimension::Resistance, "snubber resistor from the output, in series with `Csn`").beside("Csn");
+pub const SNUBBER_R: ComponentSpec =
+    ComponentSpec::optional("Rsn", Dimension::Resistance, "snubber resistor from the output, in series with `Csn`").beside("Csn");
 /// `Csn`: snubber capacitor.
-pub const SNUBBER_C: ComponentSpec = ComponentSpec::optional("Csn", Dimension::Capacitance, "snubber capacitor to ground, in series with `Rsn`").beside("Rsn");
+pub const SNUBBER_C: ComponentSpec =
+    ComponentSpec::optional("Csn", Dimension::Capacitance, "snubber capacitor to ground, in series with `Rsn`").beside("Rsn");
 /// `Rng`: noise-gain resistor.
-pub const NOISE_GAIN_R: ComponentSpec = ComponentSpec::optional("Rng", Dimension::Resistance, "noise-gain resistor between the inputs, in series with `Cng`").beside("Cng");
+pub const NOISE_GAIN_R: ComponentSpec =
+    ComponentSpec::optional("Rng", Dimension::Resistance, "noise-gain resistor between the inputs, in series with `Cng`").beside("Cng");
 /// `Cng`: noise-gain capacitor.
-pub const NOISE_GAIN_C: ComponentSpec = ComponentSpec::optional("Cng", Dimension::Capacitance, "noise-gain capacitor between the inputs, in series with `Rng`").beside("Rng");
+pub const NOISE_GAIN_C: ComponentSpec =
+    ComponentSpec::optional("Cng", Dimension::Capacitance, "noise-gain capacitor between the inputs, in series with `Rng`").beside("Rng");

@@ -29,14 +29,7 @@ pub enum Drive {
 ///
 /// `values` is the parameter table's, `gain` the amplifier's open-loop gain and `resistance` its output resistance at `s`.
 #[must_use]
-pub fn solve(
-    network: &Network,
-    values: &[f64],
-    gain: Complex64,
-    resistance: f64,
-    s: Complex64,
-    drive: Drive,
-) -> Option<Vec<Complex64>> {
+pub fn solve(network: &Network, values: &[f64], gain: Complex64, resistance: f64, s: Complex64, drive: Drive) -> Option<Vec<Complex64>> {
     let nodes = network.nodes;
     let n = nodes + 1; // unknowns 1..nodes: voltages; then source current, amplifier current, at index nodes−1, nodes
     let mut matrix = vec![Complex64::new(0.0, 0.0); n * n];
