@@ -118,12 +118,3 @@ fn one_line(markup: String) -> String {
 pub(crate) fn whole(value: f64) -> i32 {
     libm::round(value.clamp(-1e6, 1e6)) as i32
 }
-
-/// A value's text without trailing zeros: "12 V" for "12.0 V".
-pub(crate) fn trimmed(text: String) -> String {
-    match text.split_once(' ') {
-        Some((number, unit)) if number.contains('.') => format!("{} {unit}", number.trim_end_matches('0').trim_end_matches('.')),
-        None if text.contains('.') => text.trim_end_matches('0').trim_end_matches('.').to_owned(),
-        _ => text,
-    }
-}

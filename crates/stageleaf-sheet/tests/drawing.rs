@@ -53,7 +53,7 @@ fn no_label_covers_another_or_a_wire() {
                 }
             }
             let frame = drawing.frame(0);
-            assert!(frame.x1 - frame.x0 <= 570, "{}: {} wide", case(), frame.x1 - frame.x0);
+            assert!(frame.x1 - frame.x0 <= 600, "{}: {} wide", case(), frame.x1 - frame.x0);
         }
     }
 }

@@ -68,7 +68,9 @@ fn hostile_text_never_becomes_markup() {
         (part.description, part.source) = (Some(HOSTILE.into()), Some(HOSTILE.into()));
         let (a, b) = (rendered(&plain), rendered(&hostile));
         assert!(b.contains("&lt;script&gt;"), "the hostile text is shown");
-        assert_eq!(tags(&a), tags(&b), "{kind:?}");
+        // A back-tick marks code in the words of `needs`, so a file's name may start one: the only tag that text can ask for.
+        let without_code = |html: &str| tags(html).into_iter().filter(|t| t != "code" && t != "/code").collect::<Vec<_>>();
+        assert_eq!(without_code(&a), without_code(&b), "{kind:?}");
         assert!(!b.contains(['\n', '\r']), "{kind:?}: a line break");
     }
 }

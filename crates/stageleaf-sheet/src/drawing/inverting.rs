@@ -9,8 +9,8 @@ use super::{
 /// Draws the stage.
 pub fn draw(c: &mut Canvas, l: &Labels) {
     let extended = l.has("Rser") || l.has("Cshunt") || l.has("Rng");
-    let (x, y) = (if extended { 258 } else { 140 }, 0);
-    let shunt = 136;
+    let (x, y) = (if extended { 270 } else { 146 }, 0);
+    let shunt = 140;
     s::amplifier_and_output(c, l, (x, y));
     s::source_and_input(c, l, y, shunt, if extended { shunt } else { 0 });
     if let Some(label) = l.component("Rin") {

@@ -8,7 +8,7 @@ use std::fmt::Write as _;
 use maud::{Markup, PreEscaped, html};
 
 /// Width of a label's value field.
-pub const LABEL_WIDTH: i32 = 96;
+pub const LABEL_WIDTH: i32 = 102;
 /// Height of a label: designator over value field.
 pub const LABEL_HEIGHT: i32 = 36;
 /// Half the length of a resistor's body.

@@ -12,9 +12,9 @@ use stageleaf_math::{
     kind::Kind,
     stage::{Isolation, Source, Stage, Toleranced},
 };
-use stageleaf_note::{Block, format, spoken};
+use stageleaf_note::{Block, format, print::trimmed, spoken};
 
-use crate::{Sheet, sheet::trimmed};
+use crate::Sheet;
 use kit::{Canvas, Label};
 
 /// The labels of one stage's components, from its block.
@@ -85,7 +85,7 @@ impl<'a> Labels<'a> {
     pub fn rails(&self) -> (String, Option<String>) {
         let Some(supply) = self.stage().supply else { return ("V+".into(), Some("V−".into())) };
         let text = |volts: f64| {
-            let text = trimmed(format(volts, Dimension::Voltage, 3));
+            let text = trimmed(volts, Dimension::Voltage, 3);
             if volts > 0.0 { format!("+{text}") } else { text }
         };
         let n = supply.negative;

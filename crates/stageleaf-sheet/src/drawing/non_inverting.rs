@@ -8,7 +8,7 @@ use super::{
 
 /// Draws the stage.
 pub fn draw(c: &mut Canvas, l: &Labels) {
-    let (x, y) = (140, 0);
+    let (x, y) = (146, 0);
     s::amplifier_and_output(c, l, (x, y));
     let mut depth = 0;
     if let Some(label) = l.component("Rg") {

@@ -13,9 +13,9 @@ pub const DROP: i32 = 12;
 /// From the inverting node to the amplifier's pins.
 const PINS: i32 = 34;
 /// From the inverting node to the output node.
-const OUTPUT: i32 = 126;
+const OUTPUT: i32 = 132;
 /// From the output node to the load.
-const LOAD: i32 = 114;
+const LOAD: i32 = 120;
 /// From the inverting input's height to the other's.
 pub const PITCH: i32 = 44;
 

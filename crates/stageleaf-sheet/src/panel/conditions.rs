@@ -77,8 +77,8 @@ pub fn problems_markup(problems: &[Problem]) -> String {
         ul class="problems" {
             @for p in problems {
                 li {
-                    b { (p.message) }
-                    @if let Some(allowed) = &p.allowed { br; "allowed: " (allowed) }
+                    b { (super::coded(&p.message)) }
+                    @if let Some(allowed) = &p.allowed { br; "allowed: " (super::coded(allowed)) }
                     @if let Some(attempt) = &p.attempt { br; "try: " (attempt) }
                     br; span class="aside" { "The sheet shows the last values that could be used." }
                 }

@@ -4,8 +4,8 @@ use maud::{Markup, html};
 use stageleaf_math::{dimension::Dimension, figure::Figure};
 use stageleaf_note::words;
 
-use super::{briefs, value};
-use crate::{Sheet, plot, sheet::trimmed};
+use super::{briefs, round, scroll, value};
+use crate::{Sheet, plot};
 
 fn plots(sheet: &Sheet, start: &str, empty: &str) -> Markup {
     let charts = plot::charts(sheet, start);
@@ -45,8 +45,8 @@ pub fn noise(sheet: &Sheet) -> Markup {
         @if shares.len() > plot::charts::MOST_SOURCES { p class="aside" { "The plot shows the total and the four largest sources; all are in this table." } }
         @if shares.is_empty() { p class="aside" { "Shares need the band over which the noise is integrated." } }
         @else {
-            table class="shares" {
-                caption { "At the output, over the band" @if let Some(b) = sheet.block.stage.band { " " (trimmed(value(b.from, Dimension::Frequency))) " to " (trimmed(value(b.to, Dimension::Frequency))) } }
+            (scroll("Noise by source", &html! { table class="shares" {
+                caption { "At the output, over the band" @if let Some(b) = sheet.block.stage.band { " " (round(b.from, Dimension::Frequency)) " to " (round(b.to, Dimension::Frequency)) } }
                 thead { tr { th scope="col" { "source" } th scope="col" { "rms" } th scope="col" { "share of the power" } td {} } }
                 tbody { @for s in shares { tr {
                     th scope="row" { (words::origin_text(s.origin)) }
@@ -54,7 +54,7 @@ pub fn noise(sheet: &Sheet) -> Markup {
                     td { (percent(s.share)) }
                     td { (bar(s.share)) }
                 } } }
-            }
+            } }))
         }
     }
 }

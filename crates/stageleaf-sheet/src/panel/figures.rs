@@ -4,7 +4,7 @@ use maud::{Markup, html};
 use stageleaf_math::figure::Group;
 use stageleaf_note::{query_anchor, query_text};
 
-use super::{limits::basis_cell, needs, outcome, title, value};
+use super::{cell, limits::basis_cell, needs, scroll, title, value};
 use crate::Sheet;
 
 const GROUPS: [(Group, &str); 5] = [
@@ -21,7 +21,7 @@ pub fn figures(sheet: &Sheet) -> Markup {
     let judged = |q| sheet.report.limits.iter().any(|l| l.limit.query == q);
     html! {
         summary { "All figures" }
-        div class="scroll" tabindex="0" role="group" aria-label="All figures" {
+        (scroll("All figures", &html! {
             table class="figures" {
                 thead { tr { th scope="col" { "figure" } th scope="col" { "nominal" } th scope="col" { "least" } th scope="col" { "greatest" } th scope="col" { "basis" } } }
                 @for (group, name) in GROUPS {
@@ -33,7 +33,7 @@ pub fn figures(sheet: &Sheet) -> Markup {
                                 // The row of a judged figure, to which prose links, stands among the limits.
                                 tr id=[(!judged(row.query)).then(|| format!("{}.{}", sheet.id, query_anchor(row.query)))] {
                                     th scope="row" { (title(row.query)) " " code { (query_text(row.query)) } (needs(sheet, &row.nominal)) }
-                                    td { (outcome(&row.nominal, d)) }
+                                    (cell(&row.nominal, d))
                                     @match row.range {
                                         Some((low, high)) => { td { (value(low, d)) } td { (value(high, d)) } }
                                         None => { td { "–" } td { "–" } }
@@ -45,6 +45,6 @@ pub fn figures(sheet: &Sheet) -> Markup {
                     }
                 }
             }
-        }
+        }))
     }
 }

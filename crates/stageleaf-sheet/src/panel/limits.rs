@@ -5,12 +5,11 @@ use stageleaf_math::{
     dimension::Dimension,
     limit::{Bound, Limit, Verdict},
     report::{Coordinate, LimitRow, Outcome, Parameter},
-    stage::Source,
 };
 use stageleaf_note::{limit_text, query_anchor, words};
 
-use super::{basis_word, needs, outcome, title, value};
-use crate::{Sheet, sheet::trimmed, strip::strip};
+use super::{basis_word, needs, outcome, round, title, value};
+use crate::{Sheet, strip::strip};
 
 /// The shape that stands beside a verdict's word.
 pub const fn shape(verdict: Verdict) -> &'static str {
@@ -70,7 +69,7 @@ fn limit(sheet: &Sheet, row: &LimitRow) -> Markup {
                 b class="figure" { (title(query)) }
                 span class="asks" { (asks(&row.limit)) }
             }
-            (strip(row, |v| trimmed(value(v, d))))
+            (strip(row, |v| round(v, d)))
             div class="found" {
                 @if let (Outcome::Value(n), Outcome::Value(w)) = (&row.nominal, &row.worst) {
                     span { "nominal " b { (value(*n, d)) } }
@@ -135,22 +134,7 @@ fn left(row: &LimitRow) -> Option<String> {
 
 /// One coordinate of the corner: "Rf 90.1 kΩ".
 fn coordinate(sheet: &Sheet, c: &Coordinate) -> String {
-    let stage = &sheet.block.stage;
-    let d = match c.parameter {
-        Parameter::Component(name) => stage.kind.components().iter().find(|s| s.name == name).map_or(Dimension::Number, |s| s.dimension),
-        Parameter::SourceImpedance => match stage.source {
-            Some(Source::Capacitive { .. }) => Dimension::Capacitance,
-            _ => Dimension::Resistance,
-        },
-        Parameter::LoadResistance => Dimension::Resistance,
-        Parameter::LoadCapacitance | Parameter::StrayInverting | Parameter::StrayNonInverting | Parameter::StrayFeedback => {
-            Dimension::Capacitance
-        }
-        Parameter::SupplyPositive | Parameter::SupplyNegative => Dimension::Voltage,
-        Parameter::Temperature => Dimension::Temperature,
-        Parameter::Part(figure) => figure.dimension(),
-        Parameter::Headroom => Dimension::Fraction,
-    };
+    let d = words::parameter_dimension(c.parameter, &sheet.block.stage);
     let name = words::parameter_text(c.parameter);
     if c.parameter == Parameter::Headroom {
         let text = if c.value <= 0.0 {
@@ -158,7 +142,7 @@ fn coordinate(sheet: &Sheet, c: &Coordinate) -> String {
         } else if c.value >= 1.0 {
             "guaranteed".into()
         } else {
-            value(c.value, d)
+            format!("{} between typical and guaranteed", value(c.value, Dimension::Fraction))
         };
         return format!("{name} {text}");
     }

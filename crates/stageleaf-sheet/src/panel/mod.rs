@@ -25,17 +25,22 @@ use stageleaf_math::{
     limit::Basis,
     report::{FigureRow, Outcome},
 };
-use stageleaf_note::{format, words};
+use stageleaf_note::{format, print::trimmed, words};
 
-use crate::{Sheet, sheet::trimmed};
+use crate::Sheet;
 
 /// Digits of a figure.
 const DIGITS: usize = 3;
 
+/// A table that may be wider than a phone: it scrolls by itself, by keyboard too.
+fn scroll(name: &str, table: &Markup) -> Markup {
+    html! { div class="scroll" tabindex="0" role="group" aria-label=(name) { (table) } }
+}
+
 /// A figure's title with its argument: "Gain at 2 MHz".
 fn title(query: Query) -> String {
     match query.at {
-        Some(f) => format!("{} {}", query.figure.title(), trimmed(format(f, Dimension::Frequency, 4))),
+        Some(f) => format!("{} {}", query.figure.title(), trimmed(f, Dimension::Frequency, 6)),
         None => query.figure.title().to_owned(),
     }
 }
@@ -45,10 +50,26 @@ fn value(v: f64, dimension: Dimension) -> String {
     if v.is_nan() { "–".into() } else { format(v, dimension, DIGITS) }
 }
 
-/// An outcome in a few words, with what it needs in the list after it.
+/// A value with what adds nothing cut off: "12 V".
+fn round(v: f64, dimension: Dimension) -> String {
+    if v.is_nan() { "–".into() } else { trimmed(v, dimension, 6) }
+}
+
+/// Words with their `` `code` `` marked as such.
+fn coded(text: &str) -> Markup {
+    html! { @for (i, piece) in text.split('`').enumerate() { @if i % 2 == 1 { code { (piece) } } @else { (piece) } } }
+}
+
+/// An outcome as a table's cell.
+fn cell(o: &Outcome, dimension: Dimension) -> Markup {
+    html! { td class=[o.value().is_none().then_some("words")] { (outcome(o, dimension)) } }
+}
+
+/// An outcome in a few words; what it needs stands in a list of its own.
 fn outcome(o: &Outcome, dimension: Dimension) -> String {
     match o {
         Outcome::Value(v) => value(*v, dimension),
+        Outcome::Undetermined(_) => "undetermined".into(),
         _ => words::outcome_text(o, dimension, DIGITS),
     }
 }
@@ -57,7 +78,7 @@ fn outcome(o: &Outcome, dimension: Dimension) -> String {
 fn needs(sheet: &Sheet, o: &Outcome) -> Markup {
     html! {
         @if let Outcome::Undetermined(needs) = o {
-            ul class="needs" { @for need in needs { li { "needs " (words::need_text(*need, &sheet.part.file)) } } }
+            ul class="needs" { @for need in needs { li { "needs " (coded(&words::need_text(*need, &sheet.part.file))) } } }
         }
     }
 }

@@ -7,8 +7,9 @@ use stageleaf_math::{dimension::Dimension, figure::Figure, report::Root};
 use stageleaf_note::words;
 
 use super::{
+    cell,
     curves::{bar, percent},
-    needs, outcome, row_of, value,
+    needs, row_of, scroll, value,
 };
 use crate::Sheet;
 
@@ -22,27 +23,27 @@ pub fn dc(sheet: &Sheet) -> Markup {
         summary { "DC error budget" }
         @if lines.is_empty() { p class="aside" { "No DC errors could be computed." } }
         @else {
-            table class="shares" {
+            (scroll("DC error budget", &html! { table class="shares" {
                 caption { "Magnitudes at the output" }
                 thead { tr { th scope="col" { "cause" } th scope="col" { "nominal" } th scope="col" { "worst case" } th scope="col" { "share" } td {} } }
                 tbody { @for line in lines { tr {
                     @let share = line.worst.value().map_or(f64::NAN, |v| v.abs() / total);
                     th scope="row" { (words::cause_text(line.cause)) (needs(sheet, if line.nominal.value().is_some() { &line.worst } else { &line.nominal })) }
-                    td { (outcome(&line.nominal, Dimension::Voltage)) }
-                    td { (outcome(&line.worst, Dimension::Voltage)) }
+                    (cell(&line.nominal, Dimension::Voltage))
+                    (cell(&line.worst, Dimension::Voltage))
                     td { (percent(share)) }
                     td { (bar(share)) }
                 } } }
                 tfoot {
                     @if let Some(row) = row_of(sheet, Figure::OutputOffset) { tr {
                         th scope="row" { "output offset (sum)" }
-                        td { (outcome(&row.nominal, Dimension::Voltage)) }
+                        (cell(&row.nominal, Dimension::Voltage))
                         td { (row.range.map_or_else(|| "–".into(), |r| value(if r.1.abs() >= r.0.abs() { r.1 } else { r.0 }, Dimension::Voltage))) }
                         td {} td {}
                     } }
                     @if whole { tr { th scope="row" { "root of the sum of squares" } td {} td { (value(libm::sqrt(squares), Dimension::Voltage)) } td {} td {} } }
                 }
-            }
+            } }))
         }
     }
 }
@@ -54,10 +55,10 @@ pub fn poles(sheet: &Sheet) -> Markup {
         summary { "Poles and zeros" }
         @if r.poles.is_empty() && r.zeros.is_empty() { p class="aside" { "No poles could be computed." } }
         @else {
-            table {
+            (scroll("Poles and zeros", &html! { table {
                 thead { tr { th scope="col" { "root" } th scope="col" { "frequency" } th scope="col" { "Q" } th scope="col" { "damping ratio" } th scope="col" { "half plane" } } }
                 tbody { (roots("pole", &r.poles, true)) (roots("zero", &r.zeros, false)) }
-            }
+            } }))
         }
     }
 }

@@ -135,7 +135,7 @@ impl Axis {
             // Whole decades where there are enough of them, else 1-2-5.
             let every = if span > 15.0 {
                 3
-            } else if span > 9.5 {
+            } else if span > 8.5 {
                 2
             } else {
                 1

@@ -1,14 +1,12 @@
 //! Which charts a report holds, as data.
 
+use super::axis::{Axis, Unit};
+use crate::Sheet;
 use stageleaf_math::{
     dimension::Dimension,
     figure::Figure,
-    report::{Report, ResponsePoint},
+    report::{NoiseOrigin, Report, ResponsePoint},
 };
-use stageleaf_note::words;
-
-use super::axis::{Axis, Unit};
-use crate::Sheet;
 
 /// Curves of a chart are thinned to this many points.
 const MOST_POINTS: usize = 200;
@@ -146,7 +144,7 @@ fn noise(r: &Report) -> Option<Chart> {
     order.sort_by(|a, b| r.noise_shares[*b].share.total_cmp(&r.noise_shares[*a].share));
     for k in order.into_iter().take(MOST_SOURCES) {
         let y: Vec<f64> = thinned(&r.density).map(|p| p.by_source.get(k).copied().unwrap_or(f64::NAN)).collect();
-        curves.push(Curve { name: words::origin_text(r.noise_shares[k].origin).to_string(), y });
+        curves.push(Curve { name: short_name(r.noise_shares[k].origin), y });
     }
     let x_axis = x_axis(&x)?;
     let all = curves.iter().flat_map(|c| c.y.iter().copied());
@@ -156,6 +154,19 @@ fn noise(r: &Report) -> Option<Chart> {
     Some(Chart {
         id: "noise", title: "density at the output, V/√Hz", x, curves, marks: Vec::new(), reference: None, unit, x_axis, y_axis
     })
+}
+
+/// A source's name beside its curve; the table of shares has the whole one.
+fn short_name(origin: NoiseOrigin) -> String {
+    match origin {
+        NoiseOrigin::Component(name) => name,
+        NoiseOrigin::SourceResistance => "source",
+        NoiseOrigin::LoadResistance => "load",
+        NoiseOrigin::AmplifierVoltage => "voltage noise",
+        NoiseOrigin::CurrentNonInverting => "current noise +",
+        NoiseOrigin::CurrentInverting => "current noise −",
+    }
+    .to_owned()
 }
 
 fn envelope(sheet: &Sheet) -> Option<Chart> {

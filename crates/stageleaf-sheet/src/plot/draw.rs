@@ -17,7 +17,7 @@ const TOP: f64 = 22.0;
 /// Room below the area for tick labels and title.
 const BELOW: f64 = 36.0;
 /// Room right of the area for curve labels, where there are several curves.
-const LABELS: f64 = 150.0;
+const LABELS: f64 = 112.0;
 /// Curves are drawn on a grid this many times finer, so that their numbers are whole.
 const FINE: f64 = 10.0;
 
@@ -25,7 +25,7 @@ const FINE: f64 = 10.0;
 #[must_use]
 pub fn svg(sheet: &Sheet, c: &Chart) -> Markup {
     let several = c.curves.len() > 1;
-    let height = if c.unit == super::axis::Unit::Degree { 110.0 } else { 190.0 };
+    let height = if c.unit == super::axis::Unit::Degree { 108.0 } else { 170.0 };
     let (width, total) = (AREA_LEFT + AREA_WIDTH + if several { LABELS } else { 24.0 }, TOP + height + BELOW);
     let px = |v: f64| AREA_LEFT + AREA_WIDTH * c.x_axis.place(v);
     let py = |v: f64| TOP + height * (1.0 - c.y_axis.place(v));

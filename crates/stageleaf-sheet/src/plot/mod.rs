@@ -14,7 +14,7 @@ use crate::Sheet;
 /// Left edge of a plot's area, in units of its view box.
 pub const AREA_LEFT: f64 = 52.0;
 /// Width of a plot's area.
-pub const AREA_WIDTH: f64 = 410.0;
+pub const AREA_WIDTH: f64 = 340.0;
 
 /// What the readout says at one point of a plot.
 #[derive(Clone, Debug, PartialEq)]
