@@ -63,7 +63,7 @@ pub struct Extremes {
 pub struct Extreme {
     /// The figure there.
     pub outcome: Outcome,
-    /// The corner: coordinates off nominal.
+    /// The corner: coordinates off nominal that matter.
     pub corner: Vec<Coordinate>,
     /// What each parameter alone does to the figure on the way there, by slot.
     pub effects: Vec<(usize, f64)>,
@@ -175,7 +175,7 @@ impl<'m> Spread<'m> {
                 result = outcome.clone();
                 ends.clone_from(at);
             }
-            let corner = self.coordinates(&ends);
+            let corner = self.coordinates(&ends, &search.effects);
             Extreme { outcome: result, corner, effects: search.effects, ends }
         };
         let low = finish(low, |a, b| a < b);
@@ -196,8 +196,11 @@ impl<'m> Spread<'m> {
         Some(self.corner(&extremes.high.ends))
     }
 
-    fn coordinates(&self, ends: &[(usize, bool)]) -> Vec<Coordinate> {
+    /// The coordinates that matter: those that alone do at least a hundredth of what all do together.
+    fn coordinates(&self, ends: &[(usize, bool)], effects: &[(usize, f64)]) -> Vec<Coordinate> {
+        let total: f64 = effects.iter().map(|(_, e)| e.abs()).filter(|e| e.is_finite()).sum();
         ends.iter()
+            .filter(|(slot, _)| effects.iter().find(|(s, _)| s == slot).is_none_or(|(_, e)| e.abs() >= 0.01 * total))
             .map(|&(slot, high)| {
                 let entry = &self.model.parameters.entries[slot];
                 Coordinate { parameter: entry.parameter, value: if high { entry.high } else { entry.low }, nominal: entry.nominal }
