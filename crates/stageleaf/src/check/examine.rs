@@ -15,7 +15,7 @@ use stageleaf_math::{
     report::{FigureRow, LimitRow, Outcome, Report},
     stage::Stage,
 };
-use stageleaf_note::{Block, Problem, Quote, problem::nearest, quote_agrees, quote_for, read_note, slug};
+use stageleaf_note::{Block, Problem, Quote, quote_agrees, quote_for, read_note, slug};
 
 use crate::{fault::Fault, team::Team};
 
@@ -54,6 +54,12 @@ impl ExaminedStage {
     pub fn limits(&self) -> &[LimitRow] {
         let own = self.block.stage.limits.len().min(self.report.limits.len());
         &self.report.limits[..own]
+    }
+
+    /// The note's own limits, judged, with the words in which the note states them.
+    pub fn limits_in_words(&self) -> impl Iterator<Item = (&LimitRow, &str)> {
+        let words = self.block.fields.iter().filter(|f| f.path.starts_with("limits.")).map(|f| f.text.as_str());
+        self.limits().iter().zip(words)
     }
 
     /// The figures.
@@ -115,43 +121,24 @@ pub fn examine_with(bytes: &[u8], file: &str, team: &Team, analyse: &dyn Fn(&Sta
         }
     };
     let mut faults: Vec<Fault> = note.problems.into_iter().map(|p| Fault::Text(Box::new(p))).collect();
-    // Stages that were written but could not be judged: a quote of theirs is not a second fault.
-    let mut lost = Vec::new();
     let mut stages = Vec::new();
     for block in note.blocks {
         let name = slug(&block.stage.name);
         let stage = with_quoted_figures(&block.stage, note.quotes.iter().filter(|q| q.slug == name));
         match guarded(|| analyse(&stage)) {
             Ok(Ok(report)) => stages.push(ExaminedStage { block, report }),
-            Ok(Err(error)) => {
-                faults.push(Fault::Text(Box::new(place(&block, error))));
-                lost.push(name);
-            }
-            Err(message) => {
-                faults.push(Fault::Bug { file: file.to_owned(), line: block.line, stage: block.stage.name.clone(), message });
-                lost.push(name);
-            }
+            Ok(Err(error)) => faults.push(Fault::Text(Box::new(place(&block, error)))),
+            Err(message) => faults.push(Fault::Bug { file: file.to_owned(), line: block.line, stage: block.stage.name.clone(), message }),
         }
     }
     let by_slug: BTreeMap<String, &ExaminedStage> = stages.iter().map(|s| (slug(&s.block.stage.name), s)).collect();
-    let unread = !faults.is_empty();
-    let mut quotes = Vec::new();
-    for quote in note.quotes {
-        match by_slug.get(&quote.slug) {
-            Some(stage) => {
-                let current = current(&quote, stage);
-                quotes.push(QuoteState { stage: stage.block.stage.name.clone(), quote, current });
-            }
-            None if lost.contains(&quote.slug) => {}
-            None => {
-                let near = nearest(&quote.slug, by_slug.keys().map(String::as_str));
-                // With a block that could not be read, the stage may well be that one.
-                if near.is_some() || !unread {
-                    faults.push(Fault::Text(Box::new(no_such_stage(bytes, file, &quote, near, by_slug.keys()))));
-                }
-            }
-        }
-    }
+    // A quote of a stage that could not be read or judged is no second fault.
+    let of = |quote: &Quote| by_slug.get(&quote.slug).copied();
+    let quotes = note.quotes.into_iter().filter_map(|quote| {
+        let stage = of(&quote)?;
+        Some(QuoteState { current: current(&quote, stage), stage: stage.block.stage.name.clone(), quote })
+    });
+    let quotes = quotes.collect();
     Examined { file: file.to_owned(), stages, quotes, faults }
 }
 
@@ -174,15 +161,6 @@ fn current(quote: &Quote, stage: &ExaminedStage) -> Current {
         Some(outcome) => Current::NoValue { outcome: outcome.clone(), dimension },
         None => Current::NoValue { outcome: Outcome::DoesNotApply("the stage has no such figure"), dimension },
     }
-}
-
-fn no_such_stage<'a>(bytes: &[u8], file: &str, quote: &Quote, near: Option<&str>, slugs: impl Iterator<Item = &'a String>) -> Problem {
-    let line_text = String::from_utf8_lossy(bytes).lines().nth(quote.line.saturating_sub(1)).unwrap_or_default().to_owned();
-    let names: Vec<String> = slugs.map(|s| format!("`{s}`")).collect();
-    let message = format!("this quotes a figure of `{}`; no stage of this note has that name", quote.slug);
-    Problem::on_line(file, quote.line, quote.column, quote.shown.chars().count().max(1), &line_text, message)
-        .allowed(if names.is_empty() { "the name of a stage in this note; it has none".to_owned() } else { names.join(", ") })
-        .attempt(near.map(str::to_owned))
 }
 
 /// Puts an error of the engine where the value stands in the note.

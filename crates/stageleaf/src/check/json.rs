@@ -11,7 +11,7 @@ use stageleaf_math::{
     dimension::Dimension,
     report::{FigureRow, LimitRow, Outcome},
 };
-use stageleaf_note::{limit_text, query_text, words};
+use stageleaf_note::{query_text, words};
 
 use super::{
     examine::{Current, Examined, ExaminedStage, QuoteState},
@@ -74,7 +74,7 @@ impl Stage {
             name: stage.block.stage.name.clone(),
             kind: stage.block.stage.kind.id(),
             figures: Figures(stage.figures().iter().map(|row| (query_text(row.query), Figure::of(row, &part))).collect()),
-            limits: stage.limits().iter().map(|row| Judged::of(row, stage, &part)).collect(),
+            limits: stage.limits_in_words().map(|(row, words)| Judged::of(row, words, stage, &part)).collect(),
         }
     }
 }
@@ -173,7 +173,7 @@ struct Judged {
 }
 
 impl Judged {
-    fn of(row: &LimitRow, stage: &ExaminedStage, part: &str) -> Self {
+    fn of(row: &LimitRow, limit: &str, stage: &ExaminedStage, part: &str) -> Self {
         let dimension = row.limit.query.figure.dimension();
         let worst = match &row.worst {
             Outcome::Value(value) => Worst::Value(finite(*value)),
@@ -187,7 +187,7 @@ impl Judged {
         });
         Self {
             figure: query_text(row.limit.query),
-            limit: limit_text(&row.limit),
+            limit: limit.to_owned(),
             verdict: row.verdict.word(),
             basis: row.basis.map(stageleaf_math::limit::Basis::word),
             unlimited: row.worst.value().is_some_and(f64::is_infinite) || row.margin.is_some_and(f64::is_infinite),

@@ -9,7 +9,7 @@ use stageleaf_math::{
     report::{Coordinate, LimitRow, Outcome, Parameter},
     stage::Source,
 };
-use stageleaf_note::{format as quantity_text, limit_text, query_text, words};
+use stageleaf_note::{format as quantity_text, query_text, words};
 
 use super::{
     Counts,
@@ -20,6 +20,9 @@ use crate::terminal::{Ink, paint, plain};
 
 /// Digits of a figure in a table: enough to see what is left of a limit.
 const DIGITS: usize = 4;
+
+/// Characters of a line below a row.
+const WIDTH: usize = 96;
 
 /// A note's stages and stale quotes.
 #[must_use]
@@ -41,7 +44,7 @@ pub fn note(note: &Examined, colour: bool) -> String {
 fn stage(file: &str, stage: &ExaminedStage, colour: bool) -> String {
     let of = &stage.block.stage;
     let mut text = format!("{file}:{}  {}  ({}, {})\n", stage.block.line, plain(&of.name), of.kind.id(), plain(&of.part.id));
-    let rows: Vec<Row> = stage.limits().iter().map(|row| Row::of(row, stage)).collect();
+    let rows: Vec<Row> = stage.limits_in_words().map(|(row, words)| Row::of(row, words, stage)).collect();
     if rows.is_empty() {
         text.push_str("  no limits: nothing is judged\n");
     }
@@ -74,7 +77,7 @@ struct Row {
 impl Row {
     const COLUMNS: usize = 6;
 
-    fn of(row: &LimitRow, stage: &ExaminedStage) -> Self {
+    fn of(row: &LimitRow, limit: &str, stage: &ExaminedStage) -> Self {
         let dimension = row.limit.query.figure.dimension();
         let ink = match row.verdict {
             Verdict::Holds => Ink::Good,
@@ -91,9 +94,20 @@ impl Row {
             outcome => outcome_words(outcome, dimension, &part_file(stage)),
         };
         if !row.corner.is_empty() {
-            let corner: Vec<String> = row.corner.iter().map(|c| coordinate_text(c, stage)).collect();
-            let most = row.dominant.map(|p| format!("; most from {}", words::parameter_text(p))).unwrap_or_default();
-            below.push(plain(&format!("at {}{most}", corner.join(", "))));
+            let last = row.corner.len() - 1;
+            let mut pieces: Vec<String> = row
+                .corner
+                .iter()
+                .enumerate()
+                .map(|(i, c)| {
+                    format!("{}{}{}", if i == 0 { "at " } else { "" }, coordinate_text(c, stage), if i == last { "" } else { "," })
+                })
+                .collect();
+            if let Some(most) = row.dominant {
+                pieces[last].push(';');
+                pieces.push(format!("most from {}", words::parameter_text(most).trim_end_matches(" (magnitude)")));
+            }
+            below.extend(wrapped(pieces));
         }
         let basis = row.basis.map_or("", stageleaf_math::limit::Basis::word);
         Self {
@@ -101,8 +115,8 @@ impl Row {
             cells: [
                 row.verdict.word().to_owned(),
                 query_text(row.limit.query),
-                limit_text(&row.limit),
-                format!("worst {worst}"),
+                plain(limit),
+                if row.verdict == Verdict::Reported { worst } else { format!("worst {worst}") },
                 margin_text(row).map(|m| format!("margin {m}")).unwrap_or_default(),
                 basis.to_owned(),
             ],
@@ -150,7 +164,30 @@ fn coordinate_text(coordinate: &Coordinate, stage: &ExaminedStage) -> String {
     if coordinate.parameter == Parameter::Headroom {
         return format!("{name} {}", if coordinate.value > 0.5 { "guaranteed" } else { "typical" });
     }
-    format!("{name} {}", quantity_text(coordinate.value, coordinate_dimension(coordinate.parameter, stage), DIGITS))
+    let value = quantity_text(coordinate.value, coordinate_dimension(coordinate.parameter, stage), DIGITS);
+    format!("{} {}", name.trim_end_matches(" (magnitude)"), without_idle_zeros(&value))
+}
+
+/// "75.00 µV" as "75 µV": the coordinates of a corner are stated values, not results.
+fn without_idle_zeros(text: &str) -> String {
+    let (number, unit) = text.split_once(' ').unwrap_or((text, ""));
+    let number = if number.contains('.') { number.trim_end_matches('0').trim_end_matches('.') } else { number };
+    if unit.is_empty() { number.to_owned() } else { format!("{number} {unit}") }
+}
+
+/// Pieces put on lines of at most [`WIDTH`] characters.
+fn wrapped(pieces: impl IntoIterator<Item = String>) -> Vec<String> {
+    let mut lines: Vec<String> = Vec::new();
+    for piece in pieces {
+        match lines.last_mut() {
+            Some(line) if line.chars().count() + piece.chars().count() < WIDTH => {
+                line.push(' ');
+                line.push_str(&piece);
+            }
+            _ => lines.push(piece),
+        }
+    }
+    lines
 }
 
 /// What a parameter of `stage` measures.
