@@ -96,9 +96,7 @@ impl<'m> Spread<'m> {
     fn moved(&mut self, slot: usize, high: bool) -> Rc<Solution<'m>> {
         let side = usize::from(high);
         if self.moved[slot][side].is_none() {
-            let entry = &self.model.parameters.entries[slot];
-            let value = if high { entry.high } else { entry.low };
-            self.moved[slot][side] = Some(self.build(&[(slot, value)]));
+            self.moved[slot][side] = Some(self.build(&[(slot, self.end(slot, high))]));
         }
         self.moved[slot][side].clone().expect("just built")
     }
@@ -107,13 +105,7 @@ impl<'m> Spread<'m> {
         if let Some(found) = self.corners.get(ends) {
             return found.clone();
         }
-        let changes: Vec<(usize, f64)> = ends
-            .iter()
-            .map(|&(slot, high)| {
-                let entry = &self.model.parameters.entries[slot];
-                (slot, if high { entry.high } else { entry.low })
-            })
-            .collect();
+        let changes: Vec<(usize, f64)> = ends.iter().map(|&(slot, high)| (slot, self.end(slot, high))).collect();
         let solution = if let [(slot, high)] = *ends { self.moved(slot, high) } else { self.build(&changes) };
         self.corners.insert(ends.to_vec(), solution.clone());
         solution
@@ -203,15 +195,18 @@ impl<'m> Spread<'m> {
             .filter(|(slot, _)| effects.iter().find(|(s, _)| s == slot).is_none_or(|(_, e)| e.abs() >= 0.01 * total))
             .map(|&(slot, high)| {
                 let entry = &self.model.parameters.entries[slot];
-                Coordinate { parameter: entry.parameter, value: if high { entry.high } else { entry.low }, nominal: entry.nominal }
+                Coordinate { parameter: entry.parameter, value: self.end(slot, high), nominal: entry.nominal }
             })
             .collect()
     }
 
     /// What the figure at one of its extremes rests on. A part figure counts when moving it by its spread, or by a fifth where it
     /// has none, changes the figure by more than `tolerance`.
+    ///
+    /// It is moved from the nominal build; where the figure is flat there (no peaking, an unlimited margin) and not at the extreme,
+    /// from the extreme's.
     pub fn basis(&mut self, query: Query, extremes: &Extremes, extreme: &Extreme, tolerance: f64) -> Basis {
-        let centre = &extremes.centre;
+        let at_extreme = flat(query, &extremes.centre) && !flat(query, &extreme.outcome);
         let touched = touched_by(query.figure);
         let (mut guaranteed, mut typical) = (false, false);
         for slot in 0..self.model.parameters.entries.len() {
@@ -220,10 +215,15 @@ impl<'m> Spread<'m> {
             if !of_part || entry.touches & touched == 0 {
                 continue;
             }
-            let counts = if entry.low < entry.high {
+            let end = extreme.ends.iter().find(|(s, _)| *s == slot);
+            let counts = if at_extreme {
+                let moved = if end.is_some() { entry.nominal } else { entry.nominal * 1.2 };
+                let there = value(&self.off_corner(&extreme.ends, slot, moved), query);
+                changes(&extreme.outcome, &there, tolerance)
+            } else if entry.low < entry.high {
                 extremes.seen.iter().find(|(s, _)| *s == slot).is_none_or(|(_, ends)| {
                     let moved = |end: usize, at: f64| match ends[end] {
-                        Some(v) => changes(centre, &Outcome::Value(v), tolerance),
+                        Some(v) => changes(&extremes.centre, &Outcome::Value(v), tolerance),
                         None => (at - entry.nominal).abs() > 0.0,
                     };
                     moved(0, entry.low) || moved(1, entry.high)
@@ -232,10 +232,10 @@ impl<'m> Spread<'m> {
                 matches!(query.figure, crate::figure::Figure::ClipMargin)
             } else {
                 let probe = self.probe(slot, entry.nominal * 1.2);
-                changes(centre, &value(&probe, query), tolerance)
+                changes(&extremes.centre, &value(&probe, query), tolerance)
             };
             if counts {
-                let end = match extreme.ends.iter().find(|(s, _)| *s == slot) {
+                let end = match end {
                     None => End::Nominal,
                     Some((_, false)) => End::Low,
                     Some((_, true)) => End::High,
@@ -250,14 +250,30 @@ impl<'m> Spread<'m> {
         // Higher poles have no guaranteed value on any data sheet.
         if self.model.poles.as_ref().is_some_and(|p| !p.is_empty()) && touched & ON_POLES != 0 {
             let slot = self.model.parameters.pole_factor();
-            let probe = self.probe(slot, 1.2);
-            typical |= changes(centre, &value(&probe, query), tolerance);
+            let (from, there) = if at_extreme {
+                (&extreme.outcome, value(&self.off_corner(&extreme.ends, slot, 1.2), query))
+            } else {
+                (&extremes.centre, value(&self.probe(slot, 1.2), query))
+            };
+            typical |= changes(from, &there, tolerance);
         }
         match (guaranteed, typical) {
             (true, true) => Basis::Mixed,
             (false, true) => Basis::Typical,
             _ => Basis::Guaranteed,
         }
+    }
+
+    /// A corner with one value changed.
+    fn off_corner(&self, ends: &[(usize, bool)], slot: usize, value: f64) -> Rc<Solution<'m>> {
+        let mut changes: Vec<(usize, f64)> = ends.iter().map(|&(s, high)| (s, self.end(s, high))).collect();
+        changes.push((slot, value));
+        self.build(&changes)
+    }
+
+    fn end(&self, slot: usize, high: bool) -> f64 {
+        let entry = &self.model.parameters.entries[slot];
+        if high { entry.high } else { entry.low }
     }
 
     fn probe(&mut self, slot: usize, value: f64) -> Rc<Solution<'m>> {
@@ -270,6 +286,11 @@ impl<'m> Spread<'m> {
 
 /// Results that higher poles can change.
 const ON_POLES: u8 = touch::NETWORK | touch::NOISE | touch::SWING;
+
+/// Where a figure does not answer to small changes: a bound that is not reached, a peak that is none.
+fn flat(query: Query, outcome: &Outcome) -> bool {
+    outcome.value().is_some_and(|v| v.is_infinite() || matches!(query.figure, crate::figure::Figure::Peaking) && v <= 1.0)
+}
 
 fn changes(centre: &Outcome, there: &Outcome, tolerance: f64) -> bool {
     match (centre.value(), there.value()) {
