@@ -1,9 +1,12 @@
-//! Writes pages with sheets of made-up stages into a folder, to look at: `cargo run -p stageleaf-sheet --example preview -- FOLDER`.
+//! Writes pages with sheets into a folder, to look at: of made-up stages, and of the stages of a site, if one is named.
+//!
+//! `cargo run -p stageleaf-sheet --example preview -- FOLDER site`
 
 #[path = "../tests/samples/mod.rs"]
 mod samples;
 
-use stageleaf_math::{kind::Kind, stage::Isolation};
+use stageleaf_math::{analyse, kind::Kind, stage::Isolation};
+use stageleaf_note::{Settings, Shelf, ShelfPart, read_note, read_part, slug};
 use stageleaf_sheet::{Sheet, page, render};
 
 const ALL: [&str; 13] = ["Rf", "Rg", "Rin", "Cf", "Rp", "Cp", "Rser", "Cshunt", "Riso", "Rsn", "Csn", "Rng", "Cng"];
@@ -39,5 +42,41 @@ fn main() -> std::io::Result<()> {
             ));
         }
     }
-    std::fs::write(format!("{folder}/drawings.html"), page("Drawings", &drawings, None))
+    std::fs::write(format!("{folder}/drawings.html"), page("Drawings", &drawings, None))?;
+    std::env::args().nth(2).map_or(Ok(()), |site| notes(&folder, &site))
+}
+
+/// One page per note of a site.
+fn notes(folder: &str, site: &str) -> std::io::Result<()> {
+    let mut shelf = Shelf::default();
+    for entry in std::fs::read_dir(format!("{site}/shelf"))? {
+        let path = entry?.path();
+        let (text, file) = (std::fs::read_to_string(&path)?, path.display().to_string());
+        match read_part(&text, &file) {
+            Ok(part) => shelf.parts.push(ShelfPart { part, file, text }),
+            Err(problems) => problems.iter().for_each(|p| eprintln!("{p}")),
+        }
+    }
+    for entry in std::fs::read_dir(format!("{site}/notes"))? {
+        let path = entry?.path();
+        let file = path.display().to_string();
+        let note = read_note(&std::fs::read(&path)?, &file, &shelf, &Settings::default());
+        note.problems.iter().for_each(|p| eprintln!("{p}"));
+        let mut body = String::new();
+        for block in &note.blocks {
+            let (Ok(report), Some(part)) = (analyse(&block.stage), shelf.find(&block.stage.part.id)) else {
+                eprintln!("{file}: not analysed");
+                continue;
+            };
+            let id = slug(&block.stage.name);
+            let start = std::time::Instant::now();
+            let sheet = render(&Sheet { block, report: &report, part, id: &id });
+            eprintln!("{id}: {} bytes in {:?}", sheet.len(), start.elapsed());
+            body.push_str(&format!("<div class=\"stageleaf\"><stageleaf-sheet id=\"{id}\">{sheet}</stageleaf-sheet></div>"));
+        }
+        if let (false, Some(stem)) = (body.is_empty(), path.file_stem()) {
+            std::fs::write(format!("{folder}/note-{}.html", stem.display()), page(&file, &body, None))?;
+        }
+    }
+    Ok(())
 }

@@ -245,6 +245,11 @@ impl Canvas {
         labels.chain(self.texts.iter().map(|(a, .., t)| (*a, t.as_str())))
     }
 
+    /// Labels whose value is longer than its field shows.
+    pub fn cut(&self) -> impl Iterator<Item = &Label> {
+        self.labels.iter().map(|(.., l)| l).filter(|l| l.value.chars().count() > 12)
+    }
+
     /// Wires and bodies, as boxes.
     #[must_use]
     pub fn ink(&self) -> &[Area] {

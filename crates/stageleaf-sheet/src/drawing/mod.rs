@@ -118,9 +118,11 @@ pub fn canvas(block: &Block) -> Canvas {
 pub fn drawing(sheet: &Sheet) -> Markup {
     let stage = &sheet.block.stage;
     let spec = stage.kind.spec();
+    let canvas = canvas(sheet.block);
+    let cut: Vec<&Label> = canvas.cut().collect();
     html! {
         div class="drawing" {
-            (canvas(sheet.block).finish(sheet.id, &format!("Circuit: {}, {}", spec.title.to_lowercase(), spec.ideal_formula)))
+            (canvas.finish(sheet.id, &format!("Circuit: {}, {}", spec.title.to_lowercase(), spec.ideal_formula)))
             p class="aside" {
                 (spec.summary) " "
                 @if stage.component("Riso").is_some() {
@@ -128,6 +130,10 @@ pub fn drawing(sheet: &Sheet) -> Markup {
                         Isolation::InsideLoop => "Riso stands inside the loop: Rf senses the load, Cf the pin. ",
                         Isolation::OutsideLoop => "Riso stands outside the loop: the feedback senses the pin. ",
                     }
+                }
+                // Paper does not scroll.
+                @if !cut.is_empty() {
+                    "In full: " @for (i, l) in cut.iter().enumerate() { @if i > 0 { ", " } (l.name) " " (l.value) } ". "
                 }
                 @if stage.source.is_none() { "The source is taken as ideal. " }
             }

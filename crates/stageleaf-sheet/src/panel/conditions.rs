@@ -55,7 +55,8 @@ pub fn conditions(sheet: &Sheet) -> Markup {
             @for (path, label) in FIELDS {
                 @let stated = sheet.block.field(path).is_some() || *path == "part";
                 @if !drawn(path) && (stated || OFFERED.contains(path)) {
-                    div class=(if stated { "field" } else { "field unstated" }) {
+                    @let long = text(path).chars().count() > 15;
+                    div class=(if !stated { "field unstated" } else if long { "field long" } else { "field" }) {
                         label for=(format_args!("{}.{path}", sheet.id)) { (label) }
                         input id=(format_args!("{}.{path}", sheet.id)) type="text" inputmode=(if *path == "part" { "text" } else { "decimal" })
                             autocomplete="off" spellcheck="false" data-path=(path)

@@ -11,7 +11,7 @@ fn plots(sheet: &Sheet, start: &str, empty: &str) -> Markup {
     let charts = plot::charts(sheet, start);
     html! {
         @if charts.is_empty() { p class="aside" { (empty) } }
-        @for chart in &charts { (plot::svg(sheet, chart)) }
+        @for chart in &charts { (plot::svg(chart)) }
         (plot::table(&charts))
     }
 }

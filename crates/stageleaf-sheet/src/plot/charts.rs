@@ -74,7 +74,9 @@ pub fn charts(sheet: &Sheet, start: &str) -> Vec<Chart> {
 pub fn chart(sheet: &Sheet, id: &str) -> Option<Chart> {
     let r = sheet.report;
     match id {
-        "response-magnitude" => magnitude("response-magnitude", "magnitude, dB", &r.response, Vec::new(), None, 100.0),
+        "response-magnitude" => {
+            magnitude("response-magnitude", "magnitude, dB", &r.response, edge_mark(r).into_iter().collect(), None, 100.0)
+        }
         "response-phase" => phase("response-phase", &r.response, Vec::new(), None),
         "loop-magnitude" => {
             let marks = nominal(r, Figure::Crossover).map(|x| Mark {
@@ -128,6 +130,13 @@ fn phase(id: &'static str, points: &[ResponsePoint], marks: Vec<Mark>, reference
     let y_axis = Axis::linear(y.iter().copied().chain(reference), 2000.0, Some(step))?;
     let curves = vec![Curve { name: "phase".into(), y }];
     Some(Chart { id, title: "phase, °", x, curves, marks, reference, unit: Unit::Degree, x_axis, y_axis })
+}
+
+/// Where the response has fallen by 3 dB from the gain.
+fn edge_mark(r: &Report) -> Option<Mark> {
+    let (x, gain) = (nominal(r, Figure::Bandwidth)?, nominal(r, Figure::Gain)?);
+    let text = format!("−3 dB at {}", stageleaf_note::format(x, Dimension::Frequency, 3));
+    Some(Mark { x, y: decibels(gain.abs() * std::f64::consts::FRAC_1_SQRT_2), to: None, text, below: true })
 }
 
 fn phase_margin_mark(r: &Report) -> Option<Mark> {

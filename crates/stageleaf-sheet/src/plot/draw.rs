@@ -8,9 +8,9 @@ use stageleaf_math::dimension::Dimension;
 use super::{
     AREA_LEFT, AREA_WIDTH,
     axis::{plain, short},
-    charts::{Chart, Curve, nominal},
+    charts::{Chart, Curve},
 };
-use crate::{Sheet, sheet::whole};
+use crate::sheet::whole;
 
 /// Upper edge of the area.
 const TOP: f64 = 22.0;
@@ -23,7 +23,7 @@ const FINE: f64 = 10.0;
 
 /// The chart as a figure: SVG that takes the focus, and an empty readout.
 #[must_use]
-pub fn svg(sheet: &Sheet, c: &Chart) -> Markup {
+pub fn svg(c: &Chart) -> Markup {
     let several = c.curves.len() > 1;
     let height = if c.unit == super::axis::Unit::Degree { 108.0 } else { 170.0 };
     let (width, total) = (AREA_LEFT + AREA_WIDTH + if several { LABELS } else { 24.0 }, TOP + height + BELOW);
@@ -46,7 +46,7 @@ pub fn svg(sheet: &Sheet, c: &Chart) -> Markup {
     let shape = if several { "plot several" } else { "plot" };
     html! {
         figure class=(shape) data-plot=(c.id) data-points=(c.x.len()) {
-            svg viewBox=(format_args!("0 0 {} {}", whole(width), whole(total))) role="img" tabindex="0" aria-label=(summary(sheet, c)) {
+            svg viewBox=(format_args!("0 0 {} {}", whole(width), whole(total))) role="img" tabindex="0" aria-label=(summary(c)) {
                 path class="grid" d=(PreEscaped(grid)) {}
                 path class="minor" d=(PreEscaped(minor)) {}
                 @if let Some(level) = c.reference { path class="reference" d=(format_args!("M{} {}H{}", whole(AREA_LEFT), tenth(py(level)), whole(right))) {} }
@@ -156,8 +156,7 @@ fn tenth(value: f64) -> String {
 }
 
 /// The chart in one sentence, for those who do not see it.
-fn summary(sheet: &Sheet, c: &Chart) -> String {
-    use stageleaf_math::figure::Figure;
+fn summary(c: &Chart) -> String {
     let hertz = |v: f64| stageleaf_note::format(v, Dimension::Frequency, 3);
     let (first, last) = (c.x.first().copied().unwrap_or(0.0), c.x.last().copied().unwrap_or(0.0));
     let mut text = format!("{} against frequency, {} to {}.", capital(c.title), hertz(first), hertz(last));
@@ -167,13 +166,9 @@ fn summary(sheet: &Sheet, c: &Chart) -> String {
             let _ = write!(text, " {}: {} at the left, {} at the right.", capital(&curve.name), c.unit.text(a, 3), c.unit.text(b, 3));
         }
     }
-    if c.id == "response-magnitude"
-        && let Some(edge) = nominal(sheet.report, Figure::Bandwidth)
-    {
-        let _ = write!(text, " Down by 3 dB at {}.", hertz(edge));
-    }
     for m in &c.marks {
-        let _ = write!(text, " {} at {}.", capital(&m.text), hertz(m.x));
+        let at = hertz(m.x);
+        let _ = if m.text.contains(&at) { write!(text, " {}.", capital(&m.text)) } else { write!(text, " {} at {at}.", capital(&m.text)) };
     }
     text.push_str(" The numbers are in the table below.");
     text
