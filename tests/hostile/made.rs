@@ -29,7 +29,7 @@ fn a_mistake_behind_a_byte_order_mark_and_windows_line_ends_is_placed_in_charact
     bench.write("note.md", format!("\u{feff}{}", note.replace('\n', "\r\n")));
     let said = bench.run(&["check", "note.md"]);
     assert_eq!(said.code, Some(2));
-    assert!(said.err.starts_with("note.md:11:7: "), "{}", said.err);
+    assert!(said.err.starts_with("note.md:11:6: "), "{}", said.err);
 }
 
 #[test]
@@ -50,7 +50,7 @@ fn a_part_file_that_is_no_text_is_told_and_the_other_parts_stay() {
     bench.write("note.md", fenced(&block("A stage", &[])));
     let said = bench.run(&["check", "note.md"]);
     assert_eq!((said.code, said.err.trim_end()), (Some(2), "shelf/pine-1.toml:2: the text is not UTF-8\ntry: save the file as UTF-8"));
-    assert_eq!(last_line(&said.out), "1 note, 1 stage, 1 limit: 1 hold; 1 error");
+    assert_eq!(last_line(&said.out), "1 note, 1 stage, 1 limit: 1 holds; 1 error");
 }
 
 #[test]
@@ -69,7 +69,7 @@ fn a_missing_path_is_told_and_the_others_are_judged() {
     bench.write("note.md", fenced(&block("A stage", &[])));
     let said = bench.run(&["check", "nowhere.md", "note.md"]);
     assert_eq!((said.code, said.err.trim_end()), (Some(2), "nowhere.md: there is no such file or folder"));
-    assert_eq!(last_line(&said.out), "1 note, 1 stage, 1 limit: 1 hold; 1 error");
+    assert_eq!(last_line(&said.out), "1 note, 1 stage, 1 limit: 1 holds; 1 error");
 }
 
 #[test]
@@ -147,7 +147,7 @@ fn links_that_lead_in_a_circle_end_and_a_note_counts_once() {
     symlink("note.md", bench.0.join("notes/again.md")).expect("a link");
     let said = bench.run(&["check", "notes", "notes/note.md", "notes"]);
     assert_eq!((said.code, said.err.as_str()), (Some(0), ""));
-    assert_eq!(last_line(&said.out), "1 note, 1 stage, 1 limit: 1 hold");
+    assert_eq!(last_line(&said.out), "1 note, 1 stage, 1 limit: 1 holds");
 }
 
 #[cfg(unix)]
@@ -201,4 +201,24 @@ fn the_same_folder_says_the_same_twice_and_in_the_order_of_names() {
     assert_eq!(bench.run(&["check", "."]).out, first.out);
     let heads: Vec<&str> = first.out.lines().filter(|l| l.contains(".md:")).map(|l| &l[..4]).collect();
     assert_eq!(heads, ["a.md", "b.md", "c.md"]);
+}
+
+#[test]
+fn a_note_is_told_as_an_aligned_table() {
+    let bench = Bench::new("table");
+    // By hand: 50 Ω into 9 kΩ + 1 kΩ leave a return ratio of 10⁵/10 · 10/10.05 = 9950.2. The gain error is −1/9951.2 = −100.49 ppm,
+    // 99.49 ppm beyond −1 ppm; the gain is 10 · 9950.2/9951.2 = 9.9990, 0.0990 above 9.9.
+    bench.write(
+        "note.md",
+        fenced(&block("A stage", &[("bandwidth = \"at least 100 kHz\"", "gain = \"10 ± 1 %\"\ngain_error = \"at least -1 ppm\"")])),
+    );
+    let said = bench.run(&["check", "note.md"]);
+    let wanted = "\
+note.md:2  A stage  (non-inverting, oak-1)
+  holds   gain        10 ± 1 %         worst 9.999       margin 0.0990     guaranteed
+  breaks  gain_error  at least -1 ppm  worst −0.01005 %  margin −99.5 ppm  typical
+
+1 note, 1 stage, 2 limits: 1 holds, 1 breaks
+";
+    assert_eq!((said.code, said.out.as_str(), said.err.as_str()), (Some(1), wanted, ""));
 }

@@ -73,6 +73,9 @@ pub fn make(options: &Options) -> Page {
     };
     let team = teams.of(&options.note);
     page.faults.extend(teams.take_faults());
+    if team.settings_lost {
+        return page;
+    }
     let file = show(&options.note);
     let note = examine(&bytes, &file, &team);
     page.faults.extend(note.faults);

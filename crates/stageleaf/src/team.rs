@@ -24,6 +24,8 @@ pub struct Team {
     pub settings: Settings,
     /// The parts.
     pub shelf: Shelf,
+    /// There are settings, and they could not be read: what they would have said is not known, so nothing is judged by defaults.
+    pub settings_lost: bool,
 }
 
 /// Teams that were looked up, each read once.
@@ -59,21 +61,19 @@ impl Teams {
     }
 
     fn read(&mut self, root: Option<&Path>) -> Team {
-        let settings = root.map_or_else(Settings::default, |root| self.settings(root));
+        let read = root.map_or_else(|| Some(Settings::default()), |root| self.settings(root));
+        let settings_lost = read.is_none();
+        let settings = read.unwrap_or_default();
         let named = root.and_then(|root| settings.shelf.as_ref().map(|shelf| root.join(shelf)));
         let folder = self.shelf.clone().or(named);
         let shelf = folder.map_or_else(Shelf::default, |folder| self.shelf(&folder));
-        Team { settings, shelf }
+        Team { settings, shelf, settings_lost }
     }
 
-    fn settings(&mut self, root: &Path) -> Settings {
+    fn settings(&mut self, root: &Path) -> Option<Settings> {
         let path = root.join(SETTINGS_FILE);
-        self.text(&path).map_or_else(Settings::default, |text| {
-            read_settings(&text, &show(&path)).unwrap_or_else(|problems| {
-                self.problems(problems);
-                Settings::default()
-            })
-        })
+        let text = self.text(&path)?;
+        read_settings(&text, &show(&path)).map_err(|problems| self.problems(problems)).ok()
     }
 
     fn shelf(&mut self, folder: &Path) -> Shelf {

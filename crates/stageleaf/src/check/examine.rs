@@ -44,6 +44,8 @@ impl Examined {
 pub struct ExaminedStage {
     /// The block.
     pub block: Block,
+    /// The part's file, as messages name it.
+    pub part_file: String,
     /// What the engine found. Its limits may end with figures that only the prose names.
     pub report: Report,
 }
@@ -81,6 +83,8 @@ pub struct QuoteState {
     pub quote: Quote,
     /// The stage's name.
     pub stage: String,
+    /// The file of its part.
+    pub part_file: String,
     /// The figure now.
     pub current: Current,
 }
@@ -126,7 +130,11 @@ pub fn examine_with(bytes: &[u8], file: &str, team: &Team, analyse: &dyn Fn(&Sta
         let name = slug(&block.stage.name);
         let stage = with_quoted_figures(&block.stage, note.quotes.iter().filter(|q| q.slug == name));
         match guarded(|| analyse(&stage)) {
-            Ok(Ok(report)) => stages.push(ExaminedStage { block, report }),
+            Ok(Ok(report)) => {
+                let id = &block.stage.part.id;
+                let part_file = team.shelf.find(id).map_or_else(|| format!("{id}.toml"), |part| part.file.clone());
+                stages.push(ExaminedStage { block, part_file, report });
+            }
             Ok(Err(error)) => faults.push(Fault::Text(Box::new(place(&block, error)))),
             Err(message) => faults.push(Fault::Bug { file: file.to_owned(), line: block.line, stage: block.stage.name.clone(), message }),
         }
@@ -136,7 +144,12 @@ pub fn examine_with(bytes: &[u8], file: &str, team: &Team, analyse: &dyn Fn(&Sta
     let of = |quote: &Quote| by_slug.get(&quote.slug).copied();
     let quotes = note.quotes.into_iter().filter_map(|quote| {
         let stage = of(&quote)?;
-        Some(QuoteState { current: current(&quote, stage), stage: stage.block.stage.name.clone(), quote })
+        Some(QuoteState {
+            current: current(&quote, stage),
+            stage: stage.block.stage.name.clone(),
+            part_file: stage.part_file.clone(),
+            quote,
+        })
     });
     let quotes = quotes.collect();
     Examined { file: file.to_owned(), stages, quotes, faults }

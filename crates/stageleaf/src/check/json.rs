@@ -67,21 +67,16 @@ struct Stage {
 
 impl Stage {
     fn of(file: &str, stage: &ExaminedStage) -> Self {
-        let part = part_file(stage);
+        let part = &stage.part_file;
         Self {
             file: file.to_owned(),
             line: stage.block.line,
             name: stage.block.stage.name.clone(),
             kind: stage.block.stage.kind.id(),
-            figures: Figures(stage.figures().iter().map(|row| (query_text(row.query), Figure::of(row, &part))).collect()),
-            limits: stage.limits_in_words().map(|(row, words)| Judged::of(row, words, stage, &part)).collect(),
+            figures: Figures(stage.figures().iter().map(|row| (query_text(row.query), Figure::of(row, part))).collect()),
+            limits: stage.limits_in_words().map(|(row, words)| Judged::of(row, words, stage, part)).collect(),
         }
     }
-}
-
-/// The part file, as words about missing data name it.
-pub fn part_file(stage: &ExaminedStage) -> String {
-    format!("{}.toml", stage.block.stage.part.id)
 }
 
 /// Figures by id, in the order of the report.
@@ -258,7 +253,9 @@ impl Entry {
         let quote = &state.quote;
         let now = match &state.current {
             Current::Is { text } => format!("is {text} now"),
-            Current::NoValue { outcome, dimension } => format!("has no value now: {}", outcome_words(outcome, *dimension, "the part file")),
+            Current::NoValue { outcome, dimension } => {
+                format!("has no value now: {}", outcome_words(outcome, *dimension, &state.part_file))
+            }
             Current::Agrees => "agrees".to_owned(),
         };
         Self {

@@ -79,6 +79,8 @@ pub struct Counts {
     pub stale: usize,
     /// Quotes brought up to date.
     pub rewritten: usize,
+    /// Notes that were not looked at, because their settings could not be read.
+    pub passed_over: usize,
     /// What could not be read.
     pub faults: usize,
 }
@@ -134,6 +136,10 @@ pub fn run(options: &Options, terminal: &mut Terminal) -> Ending {
         terminal.progress(&format!("{} of {}: {file}", index + 1, found.notes.len()));
         let team = teams.of(path);
         tell(&teams.take_faults(), &mut counts, terminal, &mut report);
+        if team.settings_lost {
+            counts.passed_over += 1;
+            continue;
+        }
         let bytes = match fs::read(path) {
             Ok(bytes) => bytes,
             Err(error) => {

@@ -14,7 +14,6 @@ use stageleaf_note::{format as quantity_text, query_text, words};
 use super::{
     Counts,
     examine::{Current, Examined, ExaminedStage, QuoteState},
-    json::part_file,
 };
 use crate::terminal::{Ink, paint, plain};
 
@@ -88,10 +87,10 @@ impl Row {
         let mut below = Vec::new();
         let worst = match &row.worst {
             Outcome::Undetermined(_) | Outcome::DoesNotApply(_) => {
-                below.push(plain(&outcome_words(&row.worst, dimension, &part_file(stage))));
+                below.extend(outcome_words(&row.worst, dimension, &stage.part_file).split("; ").map(plain));
                 "–".to_owned()
             }
-            outcome => outcome_words(outcome, dimension, &part_file(stage)),
+            outcome => outcome_words(outcome, dimension, &stage.part_file),
         };
         if !row.corner.is_empty() {
             let last = row.corner.len() - 1;
@@ -218,7 +217,7 @@ fn stale(file: &str, state: &QuoteState, colour: bool) -> String {
     let figure = figure_of(quote.query, &state.stage);
     let now = match &state.current {
         Current::Is { text } => format!("now {text}"),
-        Current::NoValue { outcome, dimension } => format!("now without a value: {}", outcome_words(outcome, *dimension, "the part file")),
+        Current::NoValue { outcome, dimension } => format!("now without a value: {}", outcome_words(outcome, *dimension, &state.part_file)),
         Current::Agrees => return String::new(),
     };
     let word = paint("stale quote", Ink::Bad, colour);
@@ -234,7 +233,7 @@ fn figure_of(query: Query, stage: &str) -> String {
 pub fn closing(counts: &Counts, colour: bool) -> String {
     let limits = counts.holds + counts.thin + counts.breaks + counts.undetermined;
     let mut parts = vec![
-        paint_some(counts.holds, "hold", Ink::Good, colour),
+        paint_some(counts.holds, if counts.holds == 1 { "holds" } else { "hold" }, Ink::Good, colour),
         paint_some(counts.thin, "thin", Ink::Watch, colour),
         paint_some(counts.breaks, if counts.breaks == 1 { "breaks" } else { "break" }, Ink::Bad, colour),
         paint_some(counts.undetermined, "undetermined", Ink::Watch, colour),
@@ -252,6 +251,9 @@ pub fn closing(counts: &Counts, colour: bool) -> String {
         if counts.stale > 0 {
             write!(text, ", {}", paint(&format!("{} stale", counts.stale), Ink::Bad, colour)).expect("a string takes all");
         }
+    }
+    if counts.passed_over > 0 {
+        write!(text, "; {} not judged: the settings could not be read", many(counts.passed_over, "note")).expect("a string takes all");
     }
     if counts.faults > 0 {
         write!(text, "; {}", paint(&many(counts.faults, "error"), Ink::Bad, colour)).expect("a string takes all");
