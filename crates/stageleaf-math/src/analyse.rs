@@ -455,11 +455,13 @@ fn curves(solution: &Solution<'_>, report: &mut Report) {
     report.zeros = response::unscaled(solution, &roots.zeros);
     let loop_edge = margins::margins(solution).crossover;
     let (from, to) = window(solution, loop_edge);
-    report.loop_gain = response::curve(from, to, POINTS, |f| solution.return_ratio(solution.scaled(f)));
+    let looped = solution.looped();
+    report.loop_gain = response::curve(solution, &looped.returned, &looped.open, from, to, POINTS);
     if solution.oscillates() {
         return;
     }
-    report.response = response::curve(from, to, POINTS, |f| solution.transfer(solution.scaled(f)));
+    let load = &looped.forward[usize::from(solution.model.network.load.0)];
+    report.response = response::curve(solution, load, &looped.closed, from, to, POINTS);
     if outcome(solution, Query::at(Figure::NoiseDensityAt, 1e3)).value().is_some() {
         report.noise_shares = noise::shares(solution);
         let (low, high) = solution.model.stage.band.map_or((from, to), |b| (f64::min(b.from, from), f64::max(b.to, to)));

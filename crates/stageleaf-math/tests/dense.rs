@@ -210,3 +210,20 @@ fn badly_scaled_stages_satisfy_kirchhoff() {
         }
     }
 }
+
+#[test]
+fn a_sweep_has_the_bits_of_single_points() {
+    for seed in 0..50 {
+        let stage = random_stage(&mut Draw(seed), Kind::NonInverting, (10.0, 1e6), (1e-12, 1e-7));
+        let model = Model::compile(&stage);
+        let solution = Solution::new(&model, model.parameters.nominal(), None);
+        let frequencies: Vec<f64> = stageleaf_math::analysis::response::frequencies(1.0, 1e8, 37).collect();
+        let looped = solution.looped();
+        let load = &looped.forward[usize::from(model.network.load.0)];
+        let swept = stageleaf_math::analysis::sweep::ratio(&solution, load, &looped.closed, &frequencies);
+        for (frequency, value) in frequencies.iter().zip(swept) {
+            let single = solution.transfer(solution.scaled(*frequency));
+            assert_eq!((value.re.to_bits(), value.im.to_bits()), (single.re.to_bits(), single.im.to_bits()), "seed {seed}");
+        }
+    }
+}

@@ -7,6 +7,7 @@ pub mod response;
 pub mod search;
 pub mod second_pole;
 pub mod spread;
+pub mod sweep;
 pub mod swing;
 pub mod thermal;
 

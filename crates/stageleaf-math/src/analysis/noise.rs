@@ -35,14 +35,14 @@ pub const PEAK_TO_PEAK: f64 = 6.6;
 
 /// A noise source with its transfer's numerator.
 #[derive(Debug)]
-struct Generator {
-    origin: NoiseOrigin,
-    numerator: Polynomial,
-    spectrum: Spectrum,
+pub(super) struct Generator {
+    pub(super) origin: NoiseOrigin,
+    pub(super) numerator: Polynomial,
+    pub(super) spectrum: Spectrum,
 }
 
 #[derive(Clone, Copy, Debug)]
-enum Spectrum {
+pub(super) enum Spectrum {
     /// Constant, V² or A² per Hz (scaled by the network's impedance for currents).
     White(f64),
     /// Thermal current of a series R–C: `4kTR·(ωC)²/(1 + (ωRC)²)`; `(4kTR·C², RC)`.
@@ -66,6 +66,14 @@ impl Spectrum {
             }
         }
     }
+
+    pub(super) fn at_lanes(self, frequencies: &super::sweep::Lane) -> super::sweep::Lane {
+        match self {
+            Self::White(level) => [level; super::sweep::LANES],
+            Self::Flicker(level, corner, exponent) if (exponent - 1.0).abs() <= 0.0 => frequencies.map(|f| level * (1.0 + corner / f)),
+            other => frequencies.map(|f| other.at(f)),
+        }
+    }
 }
 
 /// Whether the inputs' current noise reaches the output at all.
@@ -76,7 +84,7 @@ pub fn current_noise_counts(solution: &Solution<'_>) -> bool {
     [amplifier.plus, amplifier.minus].iter().any(|n| !current[usize::from(n.0)].is_zero())
 }
 
-fn generators(solution: &Solution<'_>) -> Vec<Generator> {
+pub(super) fn generators(solution: &Solution<'_>) -> Vec<Generator> {
     let model = solution.model;
     let injection = solution.injection();
     let scale = model.scale.0;
@@ -196,23 +204,23 @@ pub fn shares(solution: &Solution<'_>) -> Vec<NoiseShare> {
 
 /// The density's curve, by source in the order of `shares`.
 pub fn curve(solution: &Solution<'_>, from: f64, to: f64, points: usize, shares: &[NoiseShare]) -> Vec<DensityPoint> {
-    let list = generators(solution);
-    super::response::frequencies(from, to, points)
-        .map(|frequency| {
-            let below = solution.looped().closed.at(solution.scaled(frequency)).norm_sqr();
+    let frequencies: Vec<f64> = super::response::frequencies(from, to, points).collect();
+    let sweep = super::sweep::noise(solution, &frequencies);
+    let places: Vec<Option<usize>> = sweep.origins.iter().map(|o| shares.iter().position(|s| s.origin == *o)).collect();
+    frequencies
+        .iter()
+        .enumerate()
+        .map(|(i, &frequency)| {
             let mut by_source = alloc::vec![0.0; shares.len()];
-            let mut sum = 0.0;
-            for generator in &list {
-                let p = power(solution, generator, frequency, below);
-                sum += p;
-                if let Some(i) = shares.iter().position(|s| s.origin == generator.origin) {
-                    by_source[i] += p;
+            for (row, place) in sweep.rows.iter().zip(&places) {
+                if let Some(place) = place {
+                    by_source[*place] += row[i];
                 }
             }
             for p in &mut by_source {
                 *p = libm::sqrt(*p);
             }
-            DensityPoint { frequency, total: libm::sqrt(sum), by_source }
+            DensityPoint { frequency, total: libm::sqrt(sweep.total[i]), by_source }
         })
         .collect()
 }

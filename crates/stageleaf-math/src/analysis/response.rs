@@ -1,5 +1,6 @@
 //! The closed loop's response: −3 dB edge, peaking, natural frequency, impedances, drift of the gain.
 
+use alloc::vec::Vec;
 use core::f64::consts::TAU;
 
 use num_complex::Complex64;
@@ -8,6 +9,7 @@ use super::search;
 use crate::{
     model::Probe,
     parameters::touch,
+    polynomial::Polynomial,
     report::{ResponsePoint, Root},
     solution::{Solution, magnitude},
 };
@@ -113,13 +115,16 @@ pub fn gain_drift(solution: &Solution<'_>) -> f64 {
     sum
 }
 
-/// The curve of a transfer over `points` frequencies between two, phase unwrapped from its value at the lowest.
-pub fn curve(from: f64, to: f64, points: usize, mut f: impl FnMut(f64) -> Complex64) -> alloc::vec::Vec<ResponsePoint> {
+/// The curve of a ratio of polynomials over `points` frequencies between two, phase unwrapped from its value at the lowest.
+pub fn curve(solution: &Solution<'_>, above: &Polynomial, below: &Polynomial, from: f64, to: f64, points: usize) -> Vec<ResponsePoint> {
+    let frequencies: Vec<f64> = frequencies(from, to, points).collect();
+    let values = super::sweep::ratio(solution, above, below, &frequencies);
     let mut turns = 0.0;
     let mut before: Option<f64> = None;
-    frequencies(from, to, points)
-        .map(|frequency| {
-            let value = f(frequency);
+    frequencies
+        .into_iter()
+        .zip(values)
+        .map(|(frequency, value)| {
             let angle = libm::atan2(value.im, value.re);
             if let Some(b) = before {
                 if angle - b > core::f64::consts::PI {
@@ -142,7 +147,7 @@ pub fn frequencies(from: f64, to: f64, points: usize) -> impl Iterator<Item = f6
 }
 
 /// Poles or zeros in rad/s.
-pub fn unscaled(solution: &Solution<'_>, roots: &[Complex64]) -> alloc::vec::Vec<Root> {
+pub fn unscaled(solution: &Solution<'_>, roots: &[Complex64]) -> Vec<Root> {
     let omega = solution.model.scale.1;
     roots.iter().map(|r| Root { re: r.re * omega, im: r.im * omega }).collect()
 }
