@@ -127,7 +127,6 @@ impl Series {
     fn at(self, position: i32) -> f64 {
         let decade = self.decade();
         let n = length(decade);
-        #[expect(clippy::cast_sign_loss, reason = "a remainder by the table's length lies in it")]
         let digits = f64::from(decade[position.rem_euclid(n) as usize]);
         let power = position.div_euclid(n) - 2;
         // Powers of ten up to 22 are exact, so one division or product rounds once: 470 over 10^9 is the double
