@@ -37,25 +37,27 @@ pub fn quote_agrees(shown: &str, value: f64, d: Dimension) -> bool {
 #[must_use]
 pub fn quote_for(shown: &str, value: f64, d: Dimension) -> String {
     let Ok(q) = read(shown, d) else { return format(value, d, 3) };
-    let Some((now, power)) = in_unit(&q, value) else { return format(value, d, q.digits) };
     let comma = |text: String| if q.comma { text.replacen('.', ",", 1) } else { text };
-    let digits = q.digits.max(1);
-    let fitting = Decimal::significant(now, digits).map(|n| n.scaled(-power)).filter(|n| {
-        let least = if q.suffix.is_empty() { -3 } else { 0 };
-        let most = i32::try_from(digits).unwrap_or(i32::MAX).max(3);
-        n.is_zero() || (least..most).contains(&n.exponent)
-    });
-    let inside = q.suffix.is_empty() && shown[q.number.clone()].contains(|c: char| c.is_alphabetic());
-    match fitting {
-        Some(number) if !inside => {
-            let minus = if shown[q.number.clone()].starts_with('-') { "-" } else { "−" };
-            let sign = if number.negative { minus } else { "" };
-            let text = format!("{}{sign}{}{}", &shown[..q.number.start], comma(number.plain()), &shown[q.number.end..]);
-            // A number whose trailing zeros moved before the point shows fewer digits than it has.
-            if quote_agrees(&text, value, d) { text } else { comma(format(value, d, digits)) }
+    let same_unit = in_unit(&q, value).and_then(|(now, power)| {
+        let number = Decimal::significant(now, q.digits)?.scaled(-power);
+        // "0.51 MHz" may become "0.49 MHz"; "512 kHz" does not become "0.512 kHz".
+        let least = if q.suffix.is_empty() {
+            -3
+        } else {
+            -i32::from(shown[q.number.clone()].trim_start_matches(['-', '−', '+']).starts_with('0'))
+        };
+        let fits = number.is_zero() || (least..i32::try_from(q.digits).unwrap_or(i32::MAX).max(3)).contains(&number.exponent);
+        let code = q.suffix.is_empty() && shown[q.number.clone()].contains(char::is_alphabetic);
+        if !fits || code {
+            return None;
         }
-        _ => comma(format(value, d, digits)),
-    }
+        let minus = if shown[q.number.clone()].starts_with('-') { "-" } else { "−" };
+        let sign = if number.negative { minus } else { "" };
+        Some(format!("{}{sign}{}{}", &shown[..q.number.start], comma(number.plain()), &shown[q.number.end..]))
+    });
+    // Zeros before the point show fewer digits than they stand for ("500 kHz" for two), so more may be needed.
+    let others = (q.digits..=17).map(|digits| comma(format(value, d, digits)));
+    same_unit.into_iter().chain(others).find(|text| quote_agrees(text, value, d)).unwrap_or_else(|| format(value, d, q.digits))
 }
 
 /// A value in the unit of a quote, and the power of ten by which the unit's number is still to be scaled.

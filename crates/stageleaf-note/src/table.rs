@@ -1,6 +1,6 @@
 //! TOML with the place of every key and value, and the problems found on the way.
 
-use std::{borrow::Cow, ops::Range};
+use std::{borrow::Cow, collections::BTreeSet, ops::Range};
 
 use toml::{
     Spanned,
@@ -50,7 +50,7 @@ pub struct Reader<'a> {
     problems: Vec<Problem>,
     unlisted: usize,
     /// Lines (of the text) that TOML could not read: what is missing may stand there.
-    broken: Vec<usize>,
+    broken: BTreeSet<usize>,
 }
 
 /// A table's keys in the order of the text.
@@ -63,7 +63,7 @@ pub fn entries<'t>(table: &'t DeTable<'_>) -> Vec<Entry<'t>> {
 
 impl<'a> Reader<'a> {
     pub fn new(text: &'a str, place: &'a Place) -> Self {
-        Self { text, place, lines: Lines::of(text), fields: Vec::new(), problems: Vec::new(), unlisted: 0, broken: Vec::new() }
+        Self { text, place, lines: Lines::of(text), fields: Vec::new(), problems: Vec::new(), unlisted: 0, broken: BTreeSet::new() }
     }
 
     /// The table of the whole text, as far as it can be read.
@@ -75,7 +75,7 @@ impl<'a> Reader<'a> {
             let line = self.lines.position(span.start).0;
             // What follows on the same line is mostly an echo of the first.
             if line != last_line {
-                self.broken.push(line);
+                self.broken.insert(line);
                 self.syntax(error.message(), span);
             }
             last_line = line;
@@ -111,6 +111,13 @@ impl<'a> Reader<'a> {
     }
 
     pub fn problem(&mut self, range: Range<usize>, message: impl Into<String>, allowed: impl Into<String>, attempt: Option<String>) {
+        // A line that TOML could not read has its problem already.
+        if !self.broken.contains(&self.lines.position(range.start).0) {
+            self.tell(range, message.into(), allowed.into(), attempt);
+        }
+    }
+
+    fn tell(&mut self, range: Range<usize>, message: String, allowed: String, attempt: Option<String>) {
         if self.problems.len() >= LISTED {
             self.unlisted += 1;
             return;
@@ -123,7 +130,7 @@ impl<'a> Reader<'a> {
         let length = self.text.get(start..end).map_or(1, |t| t.chars().count()).max(1);
         let prefix = self.place.prefixes.get(own_line - 1).map_or("", String::as_str);
         let line_text = format!("{prefix}{}", &self.text[on_line]);
-        let problem = Problem::on_line(&self.place.file, line, column, length, &line_text, message.into()).allowed(allowed);
+        let problem = Problem::on_line(&self.place.file, line, column, length, &line_text, message).allowed(allowed);
         self.problems.push(problem.attempt(attempt));
     }
 
@@ -228,7 +235,7 @@ impl<'a> Reader<'a> {
         None
     }
 
-    fn syntax(&mut self, said: &str, span: Range<usize>) {
+    fn syntax(&mut self, said: &str, mut span: Range<usize>) {
         let (own_line, _) = self.lines.position(span.start);
         let on_line = self.lines.range(own_line);
         let given = self.text.get(span.clone()).unwrap_or("").lines().next().unwrap_or("");
@@ -244,17 +251,17 @@ impl<'a> Reader<'a> {
                 }
             }
         } else if said == "duplicate key" {
-            (format!("`{}` is given twice", shown(given)), "each key and each table once", None)
+            (format!("`{}` is given twice", shown(given.trim_matches('"'))), "each key and each table once", None)
         } else if said.starts_with("key with no value") || said.starts_with("invalid unquoted key") {
             let line = &self.text[on_line.clone()];
             match line.split_once('=') {
                 Some((name, value)) => {
                     let name = name.trim();
                     let attempt = format!("{} = {}", toml_string(name), value.trim());
-                    self.problem(
+                    self.tell(
                         on_line.start..on_line.start + name.len(),
                         format!("{} needs quotes as a key", quoted(name)),
-                        "letters, digits, `-`, `_`; a key with anything else stands in double quotes",
+                        "letters, digits, `-`, `_`; a key with anything else stands in double quotes".into(),
                         Some(attempt),
                     );
                     return;
@@ -266,12 +273,14 @@ impl<'a> Reader<'a> {
         } else if said.contains("string, expected `\"`") || said.contains("string, expected `'`") {
             ("the text has no closing quote".to_owned(), "text in double quotes, on one line", None)
         } else if said.starts_with("unexpected key or value") {
-            (format!("{} stands behind the value", quoted(given)), "one value, then the end of the line or `# remark`", None)
+            let rest = self.text.get(span.start..on_line.end).unwrap_or("").trim_end();
+            span.end = span.start + rest.len();
+            (format!("{} stands behind the value", quoted(rest)), "one value, then the end of the line or `# remark`", None)
         } else {
             let plain = said.replace("invalid ", "unreadable ");
             (format!("this is not TOML: {plain}"), "`key = \"value\"`, `[table]`, or `# remark`", None)
         };
-        self.problem(span, message, allowed, attempt);
+        self.tell(span, message, allowed.into(), attempt);
     }
 }
 

@@ -175,14 +175,15 @@ pub(crate) fn pair(low: &str, low_at: usize, high: &str, high_at: usize, d: Dime
     Ok((lower, upper))
 }
 
-/// The part of `text` behind its last comma or semicolon with space behind it, if it is as wanted: where the main part
+/// The part of `text` behind the first comma or semicolon with space behind it that is as wanted: where the main part
 /// ends, and the bytes of the tail. A decimal comma has no space behind it.
 pub(crate) fn after_comma(text: &str, wanted: impl Fn(&str) -> bool) -> Option<(usize, Range<usize>)> {
-    let at = text.rfind([',', ';'])?;
-    let tail = &text[at + 1..];
-    let body = tail.trim_start();
-    let start = text.len() - body.len();
-    (body.len() < tail.len() && wanted(body)).then(|| (at, start..start + body.trim_end().len()))
+    text.match_indices([',', ';']).find_map(|(at, _)| {
+        let tail = &text[at + 1..];
+        let body = tail.trim_start();
+        let start = text.len() - body.len();
+        (body.len() < tail.len() && wanted(body)).then(|| (at, start..start + body.trim_end().len()))
+    })
 }
 
 /// The dimension of a distance between two values of `d`.

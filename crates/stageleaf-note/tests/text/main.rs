@@ -1,0 +1,8 @@
+//! Text in, text out: quantities, stage blocks, part files, whole notes. Every kind of problem is checked with its
+//! whole text, written by hand.
+
+mod blocks;
+mod common;
+mod notes;
+mod parts;
+mod quantities;
