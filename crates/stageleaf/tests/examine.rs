@@ -64,3 +64,22 @@ fn the_same_bytes_give_the_same_result() {
     let (first, second) = (examine(NOTE.as_bytes(), "note.md", &team()), examine(NOTE.as_bytes(), "note.md", &team()));
     assert_eq!(format!("{first:?}"), format!("{second:?}"));
 }
+
+#[test]
+fn the_numbers_of_the_json_form_have_the_bits_of_the_engine() {
+    let notes = Path::new(env!("CARGO_MANIFEST_DIR")).join("../../site/notes");
+    let path = notes.join("hydrophone-line-amplifier.md");
+    let bytes = std::fs::read(&path).expect("a note of the demo");
+    let note = examine(&bytes, "note.md", &Teams::default().of(&path));
+    let wanted: Vec<u64> = note.stages[0].figures().iter().filter_map(|f| f.nominal.value()).map(f64::to_bits).collect();
+    let run = std::process::Command::new(env!("CARGO_BIN_EXE_stageleaf")).args(["check", "--format", "json"]).arg(&path).output();
+    let text = String::from_utf8(run.expect("the program runs").stdout).expect("text");
+    let (figures, _) = text.split_once("\"limits\"").expect("limits behind the figures");
+    // Read by the standard library, which rounds correctly: the JSON library's reader need not.
+    let got = figures
+        .lines()
+        .filter_map(|l| l.trim().strip_prefix("\"value\": "))
+        .map(|n| n.trim_end_matches(',').parse::<f64>().expect("a number"));
+    assert!(wanted.len() > 30);
+    assert_eq!(got.map(f64::to_bits).collect::<Vec<_>>(), wanted);
+}

@@ -1,0 +1,88 @@
+//! `check --format json`, version 1: the keys of the design, full precision, no number that JSON does not have.
+
+use serde_json::Value;
+
+use crate::{Bench, block, fenced};
+
+fn document(said: &crate::Said) -> Value {
+    serde_json::from_str(&said.out).unwrap_or_else(|error| panic!("{error}: {}", said.out))
+}
+
+fn keys(value: &Value) -> Vec<&str> {
+    value.as_object().expect("an object").keys().map(String::as_str).collect()
+}
+
+#[test]
+fn the_document_has_the_keys_of_version_1() {
+    let bench = Bench::new("json-keys");
+    bench.write("note.md", fenced(&block("A stage", &[])));
+    let said = bench.run(&["check", ".", "--format", "json"]);
+    assert_eq!((said.code, said.err.as_str()), (Some(0), ""));
+    let document = document(&said);
+    assert_eq!(document["version"], 1);
+    assert_eq!(document["errors"], Value::Array(vec![]));
+    let stage = &document["stages"][0];
+    for (key, wanted) in [("file", "note.md"), ("name", "A stage"), ("kind", "non-inverting")] {
+        assert_eq!(stage[key], wanted);
+    }
+    assert_eq!(stage["line"], 2);
+    let gain = &stage["figures"]["gain"];
+    assert_eq!(gain["unit"], "V/V");
+    for key in ["value", "low", "high"] {
+        assert!((gain[key].as_f64().expect("a number") - 9.999).abs() < 1e-4, "{gain}");
+    }
+    let limit = &stage["limits"][0];
+    for key in ["figure", "limit", "verdict", "basis", "worst", "margin", "corner"] {
+        assert!(keys(limit).contains(&key), "{key} of {limit}");
+    }
+    assert_eq!((&limit["figure"], &limit["limit"], &limit["verdict"]), (&"bandwidth".into(), &"at least 100 kHz".into(), &"holds".into()));
+}
+
+#[test]
+fn a_figure_without_a_bound_is_null_and_unlimited() {
+    let bench = Bench::new("json-unlimited");
+    // One pole behind a resistor that drives resistors never turns by 180°, whatever the input capacitance does below −90°.
+    bench.write("note.md", fenced(&block("A stage", &[("part = \"oak-1\"", "part = \"one-pole\"")])));
+    let part = String::from_utf8(bench.read("shelf/oak-1.toml")).expect("text").replace("\"2 pF\"", "\"0 F\"");
+    bench.write("shelf/one-pole.toml", part);
+    let document = document(&bench.run(&["check", ".", "--format", "json"]));
+    let margin = &document["stages"][0]["figures"]["gain_margin"];
+    assert_eq!((&margin["value"], &margin["unlimited"]), (&Value::Null, &Value::Bool(true)), "{margin}");
+}
+
+#[test]
+fn a_figure_that_needs_data_says_which() {
+    let bench = Bench::new("json-needs");
+    bench.write(
+        "note.md",
+        fenced(&block("A stage", &[("bandwidth = \"at least 100 kHz\"", "junction_temperature = \"at most 80 °C, thin within 5 K\"")])),
+    );
+    let said = bench.run(&["check", "note.md", "--format", "json"]);
+    assert_eq!(said.code, Some(1));
+    let document = document(&said);
+    let why = document["stages"][0]["limits"][0]["worst"]["undetermined"].as_str().expect("a reason");
+    assert!(why.contains("`junction_to_ambient` (K/W) under [thermal] in shelf/oak-1.toml"), "{why}");
+    assert_eq!(document["stages"][0]["limits"][0]["verdict"], "undetermined");
+    assert_eq!(document["stages"][0]["limits"][0]["margin"], Value::Null);
+}
+
+#[test]
+fn errors_and_stale_quotes_have_their_place() {
+    let bench = Bench::new("json-errors");
+    bench.write("bad.md", fenced(&block("Bad", &[("\"9k\"", "\"9k V\"")])));
+    bench.write("stale.md", format!("It is [12.0](#stale.gain).\n\n{}", fenced(&block("Stale", &[]))));
+    let said = bench.run(&["check", "bad.md", "stale.md", "missing.md", "--format", "json"]);
+    assert_eq!((said.code, said.err.as_str()), (Some(2), ""));
+    let document = document(&said);
+    let errors = document["errors"].as_array().expect("a list");
+    let places: Vec<(&str, Option<u64>, Option<u64>, &str)> = errors
+        .iter()
+        .map(|e| (e["file"].as_str().unwrap_or(""), e["line"].as_u64(), e["column"].as_u64(), e["message"].as_str().unwrap_or("")))
+        .collect();
+    let wanted = [
+        ("missing.md", None, None, "there is no such file or folder"),
+        ("bad.md", Some(9), Some(6), "`Rf` takes a resistance; \"9k V\" is a voltage"),
+        ("stale.md", Some(1), Some(8), "the prose says “12.0”; `gain` of “Stale” is 10.0 now"),
+    ];
+    assert_eq!(places, wanted);
+}
