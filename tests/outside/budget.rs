@@ -28,25 +28,28 @@ pub const fn budget(figure: Figure) -> Exactness {
     use Exactness::{Absolute, Relative};
     match figure {
         // One evaluation of the network: rounding of some hundred operations, more where terms nearly cancel.
-        Figure::Gain | Figure::GainAtSignal | Figure::GainAt => Relative(1e-9),
-        Figure::PhaseAt => Absolute(1e-9), // rad, the same evaluation
+        Figure::Gain | Figure::GainAtSignal | Figure::GainAt => Relative(1e-10),
+        Figure::PhaseAt => Absolute(1e-10), // rad, the same evaluation
         // A difference from one: it keeps the digits that the subtraction leaves.
         Figure::GainError => Absolute(1e-12),
         // A root search to the last bits on |H|², whose slope at the edge may be small.
-        Figure::Bandwidth => Relative(1e-9),
-        // A flat maximum: its height is exact to the square of its place.
+        Figure::Bandwidth => Relative(1e-10),
+        // A flat maximum: its height is exact to the square of its place, and |H(0)| enters.
         Figure::Peaking | Figure::SensitivityPeak => Relative(1e-9),
-        Figure::Crossover => Relative(1e-9),                                // root of |T|² = 1
-        Figure::PhaseMargin => Absolute(1e-8),                              // rad: the crossover search times the slope of the phase
-        Figure::GainMargin => Relative(1e-8),                               // root of Im T = 0, which may be shallow
-        Figure::NaturalFrequency | Figure::Q => Relative(1e-8),             // polished roots; Q amplifies the real part's error
-        Figure::InputImpedance | Figure::OutputImpedance => Relative(1e-9), // one evaluation of the network
+        Figure::Crossover => Relative(1e-10),                                // root of |T|² = 1
+        Figure::PhaseMargin => Absolute(1e-9),                               // rad: the crossover search times the slope of the phase
+        Figure::GainMargin => Relative(1e-9),                                // root of Im T = 0, which may be shallow
+        Figure::NaturalFrequency | Figure::Q => Relative(1e-9),              // polished roots; Q amplifies the real part's error
+        Figure::InputImpedance | Figure::OutputImpedance => Relative(1e-10), // one evaluation of the network
         // Sums of products of stated values with gains from the network.
-        Figure::OutputOffset | Figure::InputOffset | Figure::OffsetDrift | Figure::GainDrift => Relative(1e-9),
-        // The integral's own target; the ratios follow it.
-        Figure::OutputNoise | Figure::InputNoise | Figure::OutputNoisePeakToPeak | Figure::NoiseBandwidth | Figure::Snr => Relative(1e-7),
-        Figure::SnrBits => Absolute(1e-6),        // bit: the logarithm of the same ratio
-        Figure::NoiseDensityAt => Relative(1e-9), // one evaluation of the network
+        Figure::OutputOffset | Figure::InputOffset | Figure::OffsetDrift => Relative(1e-9),
+        // A central difference: exact to the square of its step of 1e-4.
+        Figure::GainDrift => Relative(1e-7),
+        // The quadrature's own target, with a margin for sources of little weight; the ratios follow it.
+        Figure::OutputNoise | Figure::InputNoise | Figure::OutputNoisePeakToPeak | Figure::Snr => Relative(1e-8),
+        Figure::NoiseBandwidth => Relative(1e-8),  // the same, over all frequencies
+        Figure::SnrBits => Absolute(1e-8),         // bit: the logarithm of the same ratio
+        Figure::NoiseDensityAt => Relative(1e-10), // one evaluation of the network
         // Differences and ratios of stated values and gains.
         Figure::ClipMargin | Figure::InputRangeMargin => Absolute(1e-9), // V, of rails of some volts
         Figure::CurrentMargin => Absolute(1e-12),                        // A, of milliamperes

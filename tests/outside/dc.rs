@@ -5,11 +5,12 @@ use stageleaf_math::{
     kind::Kind,
     part::{PartFigure, Rating},
     report::{DcCause, Outcome, Report},
-    stage::{Ambient, Span, Supply},
+    stage::{Ambient, Span, Stage, Supply},
 };
 
 use crate::{
-    ledger::Ledger,
+    budget::budget,
+    ledger::{Ledger, Wanted},
     setup::{Amplifier, Complete, figure, map, report, stage},
     table::Rows,
 };
@@ -22,6 +23,46 @@ pub fn all(ledger: &mut Ledger) {
     let rows = Rows::read(TABLE);
     drift(&rows, ledger);
     rejection(&rows, ledger);
+    by_hand(ledger);
+}
+
+/// Offset, bias and drift that no table reaches, worked by hand.
+fn by_hand(ledger: &mut Ledger) {
+    let mut tell = |name: &str, figure_asked: Figure, value: f64, stage: &Stage| {
+        let wanted = Wanted {
+            id: "by hand",
+            name,
+            figure: figure_asked,
+            value,
+            allowed: budget(figure_asked).around(value),
+            source: "worked by hand, beside the call",
+        };
+        ledger.outcome(&wanted, &figure(stage, figure_asked));
+    };
+    let times_ten = stage(Kind::NonInverting, Amplifier::ideal().part())
+        .with("Rf", 9e3)
+        .with("Rg", 1e3)
+        .stating(PartFigure::Offset, 1e-3)
+        .stating(PartFigure::BiasCurrent, 1e-7)
+        .stating(PartFigure::OffsetCurrent, 2e-8)
+        .stating(PartFigure::OffsetDrift, 0.0);
+    // 1 mV × 10, 100 nA × 9 kΩ, half of 20 nA × 9 kΩ: 10 mV + 0.9 mV + 0.09 mV.
+    tell("offset and bias, grounded input", Figure::OutputOffset, 10.99e-3, &times_ten);
+    tell("offset and bias at the input", Figure::InputOffset, 1.099e-3, &times_ten);
+    // 900 Ω at the other input carry the same bias current the other way; the offset current's halves add.
+    let balanced = times_ten.clone().behind_resistance(900.0);
+    tell("bias balanced", Figure::OutputOffset, 10e-3 + 0.18e-3, &balanced);
+
+    let drifting = |mut stage: Stage| {
+        for component in &mut stage.components {
+            component.value.drift = 50e-6;
+        }
+        stage
+    };
+    // G = 1 + Rf/Rg: 9/10 of the ratio's 100 ppm/K; G = −Rf/Rin: all of it.
+    tell("drift of 1 + Rf/Rg", Figure::GainDrift, 90e-6, &drifting(times_ten));
+    let inverting = stage(Kind::Inverting, Amplifier::ideal().part()).with("Rf", 1e4).with("Rin", 1e3);
+    tell("drift of Rf/Rin", Figure::GainDrift, 100e-6, &drifting(inverting));
 }
 
 fn line(report: &Report, cause: DcCause, worst: bool) -> Outcome {
@@ -35,6 +76,9 @@ fn drift(rows: &Rows, ledger: &mut Ledger) {
     let drift = row.input("drift_uV_per_C") * 1e-6;
     let mut stage = stage(Kind::NonInverting, Amplifier::ideal().part()).with("Rg", 1e3).with("Rf", (gain - 1.0) * 1e3);
     stage.part.state(PartFigure::OffsetDrift, Rating { typ: Some(drift), max: Some(drift), ..Rating::default() });
+    for figure in [PartFigure::Offset, PartFigure::BiasCurrent, PartFigure::OffsetCurrent] {
+        stage.part.state(figure, Rating::typical(0.0));
+    }
     stage.ambient = Some(Ambient { range: Span { low: 298.15, nominal: 298.15, high: 298.15 + rise } });
     let slope = figure(&stage, Figure::OffsetDrift);
     row.check(ledger, "rti", Figure::OffsetDrift, &map(slope.clone(), |s| s * rise / gain));
@@ -52,6 +96,9 @@ fn rejection(rows: &Rows, ledger: &mut Ledger) {
     let stated = |value: f64| Rating { typ: Some(value), min: Some(value), ..Rating::default() };
     stage.part.state(PartFigure::Cmrr, stated(ratio("CMRR_dB")));
     stage.part.state(PartFigure::PsrrPositive, stated(ratio("PSRR_dB")));
+    for figure in [PartFigure::Offset, PartFigure::OffsetDrift, PartFigure::BiasCurrent, PartFigure::OffsetCurrent] {
+        stage.part.state(figure, Rating::typical(0.0));
+    }
     stage.supply =
         Some(Supply { positive: Span { low: 15.0 - deviation, nominal: 15.0, high: 15.0 + deviation }, negative: Span::exact(-15.0) });
     let report = report(&stage, &[]);

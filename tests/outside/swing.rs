@@ -11,7 +11,8 @@ use stageleaf_math::{
 };
 
 use crate::{
-    ledger::Ledger,
+    budget::budget,
+    ledger::{Ledger, Wanted},
     setup::{Amplifier, Complete, figure, map, outcome, report, stage},
     table::Rows,
 };
@@ -30,6 +31,33 @@ pub fn all(ledger: &mut Ledger) {
     output_current(&rows, ledger);
     class_b(&rows, ledger);
     junction(&rows, ledger);
+    by_hand(ledger);
+}
+
+/// Power figures that no table reaches, worked by hand.
+fn by_hand(ledger: &mut Ledger) {
+    let mut tell = |name: &str, figure_asked: Figure, value: f64, stage: &Stage| {
+        let wanted = Wanted {
+            id: "by hand",
+            name,
+            figure: figure_asked,
+            value,
+            allowed: budget(figure_asked).around(value),
+            source: "worked by hand, beside the call",
+        };
+        ledger.outcome(&wanted, &figure(stage, figure_asked));
+    };
+    // 10 V peak into 1 kΩ: the positive supply gives half sines of 10 mA, whose mean is 10 mA/π; 1 mA quiescent.
+    let follower = between_rails(Kind::Follower, 15.0, 1.0).stating(PartFigure::SupplyCurrent, 1e-3).loaded(Some(1e3), None).driven(
+        0.0,
+        10.0,
+        Some(1e3),
+        SQRT_2,
+    );
+    tell("supply current of a sine", Figure::SupplyCurrent, 1e-3 + 1e-2 / core::f64::consts::PI, &follower);
+    // 1 V peak through 1 kΩ: 0.5 mW; 10 V peak across 10 kΩ: 5 mW.
+    let inverting = between_rails(Kind::Inverting, 15.0, 1.0).with("Rin", 1e3).with("Rf", 1e4).driven(0.0, 1.0, Some(1.0), SQRT_2);
+    tell("hottest resistor", Figure::ResistorDissipation, 5e-3, &inverting);
 }
 
 /// A stage of `kind` around an ideal amplifier between ± `rail`, with every large-signal figure stated generously.
@@ -44,6 +72,12 @@ fn between_rails(kind: Kind, rail: f64, headroom: f64) -> Stage {
         .stating(PartFigure::SupplyCurrent, 0.0)
         .stating(PartFigure::RangeFromNegative, 0.0)
         .stating(PartFigure::RangeFromPositive, 0.0)
+        .stating(PartFigure::Offset, 0.0)
+        .stating(PartFigure::BiasCurrent, 0.0)
+        .stating(PartFigure::OffsetCurrent, 0.0)
+        .stating(PartFigure::Cmrr, 1e15)
+        .stating(PartFigure::PsrrPositive, 1e15)
+        .stating(PartFigure::PsrrNegative, 1e15)
 }
 
 fn slew(rows: &Rows, ledger: &mut Ledger) {
