@@ -107,7 +107,7 @@ pub fn page(title: &str, body: &str, script: Option<&str>) -> String {
 
 /// Line breaks in the note's text become references, which mean the same inside an attribute and in text.
 fn one_line(markup: String) -> String {
-    if !markup.contains(['\n', '\r']) {
+    if !markup.contains('\n') && !markup.contains('\r') {
         return markup;
     }
     markup.replace('\r', "&#13;").replace('\n', "&#10;")

@@ -4,7 +4,7 @@ use maud::{Markup, html};
 use stageleaf_math::figure::Group;
 use stageleaf_note::{query_anchor, query_text};
 
-use super::{cell, limits::basis_cell, needs, scroll, title, value};
+use super::{limits::basis_cell, needs, scroll, title, value};
 use crate::Sheet;
 
 const GROUPS: [(Group, &str); 5] = [
@@ -33,10 +33,13 @@ pub fn figures(sheet: &Sheet) -> Markup {
                                 // The row of a judged figure, to which prose links, stands among the limits.
                                 tr id=[(!judged(row.query)).then(|| format!("{}.{}", sheet.id, query_anchor(row.query)))] {
                                     th scope="row" { (title(row.query)) " " code { (query_text(row.query)) } (needs(sheet, &row.nominal)) }
-                                    (cell(&row.nominal, d))
-                                    @match row.range {
-                                        Some((low, high)) => { td { (value(low, d)) } td { (value(high, d)) } }
-                                        None => { td { "–" } td { "–" } }
+                                    @if row.nominal.value().is_none() { td class="words" colspan="3" { (super::outcome(&row.nominal, d)) } }
+                                    @else {
+                                        td { (super::outcome(&row.nominal, d)) }
+                                        @match row.range {
+                                            Some((low, high)) => { td { (value(low, d)) } td { (value(high, d)) } }
+                                            None => { td { "–" } td { "–" } }
+                                        }
                                     }
                                     (basis_cell(row.basis))
                                 }

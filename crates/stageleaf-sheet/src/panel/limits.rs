@@ -6,7 +6,7 @@ use stageleaf_math::{
     limit::{Bound, Limit, Verdict},
     report::{Coordinate, LimitRow, Outcome, Parameter},
 };
-use stageleaf_note::{limit_text, query_anchor, words};
+use stageleaf_note::{format, limit_text, print::trimmed, query_anchor, words};
 
 use super::{basis_word, needs, outcome, round, title, value};
 use crate::{Sheet, strip::strip};
@@ -72,11 +72,12 @@ fn limit(sheet: &Sheet, row: &LimitRow) -> Markup {
             (strip(row, |v| round(v, d)))
             div class="found" {
                 @if let (Outcome::Value(n), Outcome::Value(w)) = (&row.nominal, &row.worst) {
-                    span { "nominal " b { (value(*n, d)) } }
+                    @let digits = digits(row);
+                    span { "nominal " b { (exact(*n, d, digits)) } }
                     @if row.limit.bound == Bound::Report {
                         @if let Some((low, high)) = row.range { span { "spread " b { (value(low, d)) " to " (value(high, d)) } } }
                     } @else {
-                        span { "worst " b { (value(*w, d)) } }
+                        span { "worst " b { (exact(*w, d, digits)) } }
                         @if let Some(text) = left(row) { span class="left" { (text) } }
                     }
                 } @else if row.nominal == row.worst {
@@ -94,13 +95,35 @@ fn limit(sheet: &Sheet, row: &LimitRow) -> Markup {
                         @for (i, c) in row.corner.iter().enumerate() { @if i > 0 { ", " } (coordinate(sheet, c)) }
                     }
                     @if let Some(p) = row.dominant {
-                        @if !row.corner.is_empty() { "; " }
-                        (words::parameter_text(p)) " uses most of the margin"
+                        @match row.corner.as_slice() {
+                            [] => { (words::parameter_text(p)) " uses most of the margin" }
+                            [only] if only.parameter == p => ", which uses most of the margin",
+                            _ => { "; " (words::parameter_text(p)) " uses most of the margin" }
+                        }
                     }
                 }
             }
         }
     }
+}
+
+/// Digits with which value and limit are told apart: three, more where little is left of much.
+fn digits(row: &LimitRow) -> usize {
+    let (Some(worst), Some(margin)) = (row.worst.value(), row.margin) else { return 3 };
+    let ratio = (worst / margin).abs();
+    if !ratio.is_finite() || matches!(row.limit.query.figure.dimension(), Dimension::Level | Dimension::Temperature) {
+        return 3;
+    }
+    match ratio {
+        r if r < 100.0 => 3,
+        r if r < 1000.0 => 4,
+        r if r < 10_000.0 => 5,
+        _ => 6,
+    }
+}
+
+fn exact(v: f64, d: Dimension, digits: usize) -> String {
+    if v.is_nan() { "–".into() } else { format(v, d, digits) }
 }
 
 fn asks(limit: &Limit) -> String {
@@ -147,7 +170,7 @@ fn coordinate(sheet: &Sheet, c: &Coordinate) -> String {
         return format!("{name} {text}");
     }
     // Enough digits to see that it differs from the nominal value.
-    format!("{name} {}", if c.value.is_nan() { "–".into() } else { stageleaf_note::format(c.value, d, 4) })
+    format!("{name} {}", if c.value.is_nan() { "–".into() } else { trimmed(c.value, d, 4) })
 }
 
 /// The basis as a cell of a table.

@@ -5,7 +5,7 @@ use stageleaf_math::{
     dimension::Dimension,
     report::{Outcome, Working},
 };
-use stageleaf_note::format;
+use stageleaf_note::{format, print::trimmed};
 
 use super::{outcome, title, value};
 use crate::Sheet;
@@ -22,7 +22,6 @@ pub fn working(sheet: &Sheet) -> Markup {
                 p class="formula" { code { (w.formula) } }
                 @if !w.numbers.is_empty() {
                     p class="formula" { code { (in_place(w)) " = " (value(w.handbook, d)) } }
-                    p class="aside" { "with " @for (i, (symbol, v, dim)) in w.numbers.iter().enumerate() { @if i > 0 { ", " } (symbol) " = " (number(*v, *dim)) } }
                 }
                 dl {
                     div { dt { "handbook" } dd { (value(w.handbook, d)) } }
@@ -37,7 +36,7 @@ pub fn working(sheet: &Sheet) -> Markup {
 }
 
 fn number(v: f64, d: Dimension) -> String {
-    if v.is_nan() { "–".into() } else { format(v, d, 4) }
+    if v.is_nan() { "–".into() } else { trimmed(v, d, 4) }
 }
 
 /// What the formula says of the figure, its symbols replaced by their values.

@@ -109,13 +109,15 @@ impl Axis {
     /// Where a value lies, 0 to 1 inside the axis.
     #[must_use]
     pub fn place(&self, value: f64) -> f64 {
-        if self.step.is_none() {
-            if value <= 0.0 {
-                return f64::NEG_INFINITY;
-            }
-            libm::log10(value / self.low) / libm::log10(self.high / self.low)
-        } else {
-            (value - self.low) / (self.high - self.low)
+        self.ruler().place(value)
+    }
+
+    /// The same for many values.
+    #[must_use]
+    pub fn ruler(&self) -> Ruler {
+        match self.step {
+            Some(_) => Ruler { start: self.low, scale: 1.0 / (self.high - self.low), logarithmic: false },
+            None => Ruler { start: libm::log10(self.low), scale: 1.0 / libm::log10(self.high / self.low), logarithmic: true },
         }
     }
 
@@ -163,10 +165,33 @@ impl Axis {
         let mut ticks = Vec::new();
         if self.step.is_none() && libm::log10(self.high / self.low) < 12.0 {
             for d in decade(self.low)..=decade(self.high) {
-                ticks.extend((2..10).map(|k| f64::from(k) * power(d)).filter(|v| *v > self.low && *v < self.high));
+                let base = power(d);
+                ticks.extend((2..10).map(|k| f64::from(k) * base).filter(|v| *v > self.low && *v < self.high));
             }
         }
         ticks
+    }
+}
+
+/// An axis made ready to place many values.
+#[derive(Clone, Copy, Debug)]
+pub struct Ruler {
+    start: f64,
+    scale: f64,
+    logarithmic: bool,
+}
+
+impl Ruler {
+    /// Where a value lies, 0 to 1 inside the axis; far below it where a logarithmic axis has no place for it.
+    #[must_use]
+    pub fn place(&self, value: f64) -> f64 {
+        if !self.logarithmic {
+            (value - self.start) * self.scale
+        } else if value <= 0.0 {
+            f64::NEG_INFINITY
+        } else {
+            (libm::log10(value) - self.start) * self.scale
+        }
     }
 }
 

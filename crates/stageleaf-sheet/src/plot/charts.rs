@@ -5,7 +5,7 @@ use crate::Sheet;
 use stageleaf_math::{
     dimension::Dimension,
     figure::Figure,
-    report::{NoiseOrigin, Report, ResponsePoint},
+    report::{DensityPoint, EnvelopePoint, NoiseOrigin, Report, ResponsePoint},
 };
 
 /// Curves of a chart are thinned to this many points.
@@ -89,7 +89,7 @@ pub fn chart(sheet: &Sheet, id: &str) -> Option<Chart> {
             magnitude("loop-magnitude", "loop gain |T|, dB", &r.loop_gain, marks.into_iter().collect(), Some(0.0), 160.0)
         }
         "loop-phase" => phase("loop-phase", &r.loop_gain, phase_margin_mark(r).into_iter().collect(), Some(-180.0)),
-        "noise" => noise(r),
+        "noise" => noise(sheet),
         "envelope" => envelope(sheet),
         _ => None,
     }
@@ -145,20 +145,24 @@ fn phase_margin_mark(r: &Report) -> Option<Mark> {
     Some(Mark { x, y: margin.to_degrees() - 180.0, to: Some(-180.0), text, below: false })
 }
 
-fn noise(r: &Report) -> Option<Chart> {
-    let x: Vec<f64> = thinned(&r.density).map(|p| p.frequency).collect();
-    let total: Vec<f64> = thinned(&r.density).map(|p| p.total).collect();
-    let mut curves = vec![Curve { name: "total".into(), y: total }];
+fn noise(sheet: &Sheet) -> Option<Chart> {
+    let r = sheet.report;
+    // Far above the response's edge and the band there is nothing to see.
+    let edge = nominal(r, Figure::Bandwidth).map(|f| 10.0 * f);
+    let end = edge.map_or(f64::INFINITY, |f| f.max(sheet.block.stage.band.map_or(0.0, |b| b.to)) * 1.001);
+    let points: Vec<&DensityPoint> = thinned(&r.density).filter(|p| p.frequency <= end).collect();
+    let x: Vec<f64> = points.iter().map(|p| p.frequency).collect();
+    let mut curves = vec![Curve { name: "total".into(), y: points.iter().map(|p| p.total).collect() }];
     let mut order: Vec<usize> = (0..r.noise_shares.len()).collect();
     order.sort_by(|a, b| r.noise_shares[*b].share.total_cmp(&r.noise_shares[*a].share));
     for k in order.into_iter().take(MOST_SOURCES) {
-        let y: Vec<f64> = thinned(&r.density).map(|p| p.by_source.get(k).copied().unwrap_or(f64::NAN)).collect();
+        let y = points.iter().map(|p| p.by_source.get(k).copied().unwrap_or(f64::NAN)).collect();
         curves.push(Curve { name: short_name(r.noise_shares[k].origin), y });
     }
     let x_axis = x_axis(&x)?;
-    let all = curves.iter().flat_map(|c| c.y.iter().copied());
-    let mut y_axis = Axis::decades(all, true)?;
-    y_axis.low = y_axis.low.max(y_axis.high * 1e-4);
+    let mut y_axis = Axis::decades(curves.iter().flat_map(|c| c.y.iter().copied()), true)?;
+    y_axis.low = y_axis.low.max(y_axis.high * 1e-5);
+    curves.retain(|c| c.y.iter().any(|v| *v >= y_axis.low));
     let unit = Unit::Si(Dimension::VoltageDensity);
     Some(Chart {
         id: "noise", title: "density at the output, V/√Hz", x, curves, marks: Vec::new(), reference: None, unit, x_axis, y_axis
@@ -180,14 +184,6 @@ fn short_name(origin: NoiseOrigin) -> String {
 
 fn envelope(sheet: &Sheet) -> Option<Chart> {
     let r = sheet.report;
-    let x: Vec<f64> = thinned(&r.envelope).map(|p| p.frequency).collect();
-    let of = |pick: fn(&stageleaf_math::report::EnvelopePoint) -> Option<f64>, name: &str| {
-        let y: Vec<f64> = thinned(&r.envelope).map(|p| pick(p).unwrap_or(f64::NAN)).collect();
-        y.iter().any(|v| v.is_finite()).then(|| Curve { name: name.into(), y })
-    };
-    let curves: Vec<Curve> =
-        [of(|p| p.rails, "rails"), of(|p| p.current, "current"), of(|p| p.slew, "slew rate")].into_iter().flatten().collect();
-    let x_axis = x_axis(&x)?;
     let mut marks = Vec::new();
     if let Some(signal) = sheet.block.stage.signal
         && let (Some(x), Some(gain)) = (signal.frequency, nominal(r, Figure::GainAtSignal).or_else(|| nominal(r, Figure::Gain)))
@@ -197,11 +193,27 @@ fn envelope(sheet: &Sheet) -> Option<Chart> {
             marks.push(Mark { x, y, to: None, text: format!("signal {}", stageleaf_note::format(y, Dimension::Voltage, 3)), below: true });
         }
     }
-    // The lowest of the bounds decides; how far the others rise above it is of no use.
-    let lowest = (0..x.len()).map(|i| curves.iter().map(|c| c.y[i]).filter(|v| v.is_finite()).fold(f64::INFINITY, f64::min));
-    let mut y_axis = Axis::decades(lowest.chain(marks.iter().map(|m| m.y)), true)?;
+    // The lowest of the bounds decides; how far the others rise above it is of no use, nor is what it falls to far below its best.
+    let lowest =
+        |p: &EnvelopePoint| [p.rails, p.current, p.slew].into_iter().flatten().filter(|v| v.is_finite()).fold(f64::INFINITY, f64::min);
+    let best = thinned(&r.envelope).map(lowest).filter(|v| v.is_finite()).fold(0.0, f64::max);
+    let floor = marks.iter().fold(best * 1e-3, |floor, m| floor.min(m.y / 2.0));
+    let last = marks.iter().fold(0.0, |last: f64, m| last.max(10.0 * m.x));
+    let points: Vec<&EnvelopePoint> = thinned(&r.envelope).filter(|p| lowest(p) >= floor || p.frequency <= last).collect();
+    let x: Vec<f64> = points.iter().map(|p| p.frequency).collect();
+    let mut curves = Vec::new();
+    for (name, pick) in
+        [("rails", (|p| p.rails) as fn(&EnvelopePoint) -> Option<f64>), ("current", |p| p.current), ("slew rate", |p| p.slew)]
+    {
+        let y: Vec<f64> = points.iter().map(|p| pick(p).unwrap_or(f64::NAN)).collect();
+        if y.iter().any(|v| v.is_finite()) {
+            curves.push(Curve { name: name.into(), y });
+        }
+    }
+    let x_axis = x_axis(&x)?;
+    let mut y_axis = Axis::decades(points.iter().map(|p| lowest(p)).chain(marks.iter().map(|m| m.y)), true)?;
     y_axis.high *= 2.0;
-    y_axis.low = y_axis.low.max(y_axis.high * 1e-4);
+    y_axis.low = y_axis.low.max(y_axis.high * 1e-5);
     let unit = Unit::Si(Dimension::Voltage);
     Some(Chart { id: "envelope", title: "largest clean output, V peak", x, curves, marks, reference: None, unit, x_axis, y_axis })
 }

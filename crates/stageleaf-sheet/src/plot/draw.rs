@@ -7,7 +7,7 @@ use stageleaf_math::dimension::Dimension;
 
 use super::{
     AREA_LEFT, AREA_WIDTH,
-    axis::{plain, short},
+    axis::{Axis, plain, short},
     charts::{Chart, Curve},
 };
 use crate::sheet::whole;
@@ -15,7 +15,7 @@ use crate::sheet::whole;
 /// Upper edge of the area.
 const TOP: f64 = 22.0;
 /// Room below the area for tick labels and title.
-const BELOW: f64 = 36.0;
+const BELOW: f64 = 38.0;
 /// Room right of the area for curve labels, where there are several curves.
 const LABELS: f64 = 112.0;
 /// Curves are drawn on a grid this many times finer, so that their numbers are whole.
@@ -27,38 +27,41 @@ pub fn svg(c: &Chart) -> Markup {
     let several = c.curves.len() > 1;
     let height = if c.unit == super::axis::Unit::Degree { 108.0 } else { 170.0 };
     let (width, total) = (AREA_LEFT + AREA_WIDTH + if several { LABELS } else { 24.0 }, TOP + height + BELOW);
-    let px = |v: f64| AREA_LEFT + AREA_WIDTH * c.x_axis.place(v);
-    let py = |v: f64| TOP + height * (1.0 - c.y_axis.place(v));
+    let (x_ruler, y_ruler) = (c.x_axis.ruler(), c.y_axis.ruler());
+    let px = |v: f64| AREA_LEFT + AREA_WIDTH * x_ruler.place(v);
+    let py = |v: f64| TOP + height * (1.0 - y_ruler.place(v));
     let (right, bottom) = (AREA_LEFT + AREA_WIDTH, TOP + height);
-    let mut grid = String::new();
+    let mut lines = String::new();
     let x_ticks = c.x_axis.ticks();
     let y_ticks = c.y_axis.ticks();
     for x in &x_ticks {
-        let _ = write!(grid, "M{} {}V{}", tenth(px(*x)), whole(bottom), whole(TOP));
+        let _ = write!(lines, "M{} {}V{}", tenth(px(*x)), whole(bottom), whole(TOP));
     }
     for y in &y_ticks {
-        let _ = write!(grid, "M{} {}H{}", whole(AREA_LEFT), tenth(py(*y)), whole(right));
+        let _ = write!(lines, "M{} {}H{}", whole(AREA_LEFT), tenth(py(*y)), whole(right));
     }
     let mut minor = String::new();
     for x in c.x_axis.minor_ticks() {
         let _ = write!(minor, "M{} {}v-4", tenth(px(x)), whole(bottom));
     }
+    let xs: Vec<Option<i32>> =
+        c.x.iter().map(|x| Some(x_ruler.place(*x)).filter(|p| p.is_finite()).map(|p| grid(p * AREA_WIDTH * FINE))).collect();
     let shape = if several { "plot several" } else { "plot" };
     html! {
         figure class=(shape) data-plot=(c.id) data-points=(c.x.len()) {
             svg viewBox=(format_args!("0 0 {} {}", whole(width), whole(total))) role="img" tabindex="0" aria-label=(summary(c)) {
-                path class="grid" d=(PreEscaped(grid)) {}
+                path class="grid" d=(PreEscaped(lines)) {}
                 path class="minor" d=(PreEscaped(minor)) {}
                 @if let Some(level) = c.reference { path class="reference" d=(format_args!("M{} {}H{}", whole(AREA_LEFT), tenth(py(level)), whole(right))) {} }
                 svg x=(whole(AREA_LEFT)) y=(whole(TOP)) width=(whole(AREA_WIDTH)) height=(whole(height)) viewBox=(format_args!("0 0 {} {}", whole(AREA_WIDTH * FINE), whole(height * FINE))) {
                     @for (k, curve) in c.curves.iter().enumerate() {
-                        path class=(format_args!("curve c{k}")) d=(PreEscaped(path(c, curve, height))) {}
+                        path class=(format_args!("curve c{k}")) d=(PreEscaped(path(&xs, &c.y_axis, curve, height))) {}
                     }
                 }
                 path class="frame" d=(format_args!("M{} {}V{}H{}", whole(AREA_LEFT), whole(TOP), whole(bottom), whole(right))) {}
-                @for x in &x_ticks { text x=(tenth(px(*x))) y=(whole(bottom + 15.0)) text-anchor="middle" { (short(*x)) } }
-                @for y in &y_ticks { text x=(whole(AREA_LEFT - 6.0)) y=(tenth(py(*y) + 4.0)) text-anchor="end" { (tick(c, *y)) } }
-                text class="axis" x=(whole(right)) y=(whole(bottom + 31.0)) text-anchor="end" { "frequency, Hz" }
+                @for x in &x_ticks { text x=(tenth(px(*x))) y=(whole(bottom + 17.0)) text-anchor="middle" { (short(*x)) } }
+                @for y in &y_ticks { text x=(whole(AREA_LEFT - 6.0)) y=(tenth((py(*y) + 4.0).min(bottom + 1.0))) text-anchor="end" { (tick(c, *y)) } }
+                text class="axis" x=(whole(right)) y=(whole(bottom + 33.0)) text-anchor="end" { "frequency, Hz" }
                 text class="axis" x="4" y="12" { (c.title) }
                 @if several { (labels(c, height)) }
                 @for m in &c.marks { (mark(c, m, &px, &py)) }
@@ -78,16 +81,21 @@ fn tick(c: &Chart, value: f64) -> String {
 
 fn mark(c: &Chart, m: &super::Mark, px: &impl Fn(f64) -> f64, py: &impl Fn(f64) -> f64) -> Markup {
     let (x, y) = (px(m.x), py(m.y));
-    let inside = |v: f64, axis: &super::axis::Axis| (-0.001..=1.001).contains(&axis.place(v));
+    let inside = |v: f64, axis: &Axis| (-0.001..=1.001).contains(&axis.place(v));
     if !inside(m.x, &c.x_axis) || !inside(m.y, &c.y_axis) {
         return html! {};
     }
     // The words go to the emptier side: curves fall to the right, so right of the point is free, unless the edge is near.
     let left = x > AREA_LEFT + AREA_WIDTH * 0.62;
+    let baseline = match m.to {
+        Some(to) => f64::midpoint(y, py(to)) + 4.0,
+        None if left || m.below => y + 16.0,
+        None => y - 7.0,
+    };
     html! {
         @if let Some(to) = m.to { path class="span" d=(format_args!("M{} {}V{}", tenth(x), tenth(y), tenth(py(to)))) {} }
         circle class="mark" cx=(tenth(x)) cy=(tenth(y)) r="4" {}
-        text class="mark" x=(tenth(if left { x - 9.0 } else { x + 9.0 })) y=(tenth(if left || m.below { y + 16.0 } else { y - 7.0 })) text-anchor=(if left { "end" } else { "start" }) { (m.text) }
+        text class="mark" x=(tenth(if left { x - 9.0 } else { x + 9.0 })) y=(tenth(baseline)) text-anchor=(if left { "end" } else { "start" }) { (m.text) }
     }
 }
 
@@ -118,28 +126,53 @@ fn labels(c: &Chart, height: f64) -> Markup {
 }
 
 /// A curve as a path in whole numbers; broken where there is no value, and held near the area where it leaves it.
-fn path(c: &Chart, curve: &Curve, height: f64) -> String {
+fn path(x: &[Option<i32>], y_axis: &Axis, curve: &Curve, height: f64) -> String {
     let mut d = String::with_capacity(curve.y.len() * 8);
+    let ruler = y_axis.ruler();
     let mut last: Option<(i32, i32)> = None;
-    for (x, y) in c.x.iter().zip(&curve.y) {
-        let (x, y) = (c.x_axis.place(*x), c.y_axis.place(*y));
-        if !x.is_finite() || y.is_nan() {
+    for (x, y) in x.iter().zip(&curve.y) {
+        let y = ruler.place(*y);
+        let (Some(x), false) = (*x, y.is_nan()) else {
             last = None;
             continue;
-        }
-        let point = (grid(x * AREA_WIDTH * FINE), grid((1.0 - y.clamp(-1.0, 2.0)) * height * FINE));
+        };
+        let point = (x, grid((1.0 - y.clamp(-1.0, 2.0)) * height * FINE));
         match last {
             None => {
-                let _ = write!(d, "M{} {}", point.0, point.1);
+                d.push('M');
+                push(&mut d, point.0);
+                d.push(' ');
+                push(&mut d, point.1);
             }
             Some(p) => {
-                let (dx, dy) = (point.0 - p.0, point.1 - p.1);
-                let _ = write!(d, "l{dx}{}{dy}", if dy < 0 { "" } else { " " });
+                d.push('l');
+                push(&mut d, point.0 - p.0);
+                if point.1 >= p.1 {
+                    d.push(' ');
+                }
+                push(&mut d, point.1 - p.1);
             }
         }
         last = Some(point);
     }
     d
+}
+
+/// Writes a whole number; a curve has hundreds, and the formatting machinery takes most of a sheet's time for them.
+fn push(d: &mut String, value: i32) {
+    if value < 0 {
+        d.push('-');
+    }
+    let mut rest = value.unsigned_abs();
+    let mut power = 1;
+    while rest / power >= 10 {
+        power *= 10;
+    }
+    while power > 0 {
+        d.push(char::from_digit(rest / power, 10).unwrap_or('0'));
+        rest %= power;
+        power /= 10;
+    }
 }
 
 #[expect(clippy::cast_possible_truncation, reason = "clamped to the drawing's grid")]
@@ -150,9 +183,16 @@ fn grid(value: f64) -> i32 {
 /// One decimal, as SVG wants it.
 fn tenth(value: f64) -> String {
     let n = grid(value.clamp(-2000.0, 2000.0) * 10.0);
-    let sign = if n < 0 { "-" } else { "" };
-    let (units, tenths) = (n.abs() / 10, n.abs() % 10);
-    if tenths == 0 { format!("{sign}{units}") } else { format!("{sign}{units}.{tenths}") }
+    let mut text = String::with_capacity(7);
+    if n < 0 {
+        text.push('-');
+    }
+    push(&mut text, n.abs() / 10);
+    if n % 10 != 0 {
+        text.push('.');
+        push(&mut text, n.abs() % 10);
+    }
+    text
 }
 
 /// The chart in one sentence, for those who do not see it.
