@@ -24,6 +24,8 @@ pub struct Team {
     pub settings: Settings,
     /// The parts.
     pub shelf: Shelf,
+    /// Part files of the shelf that could not be read: the part's id and the file.
+    pub lost_parts: Vec<(String, String)>,
     /// There are settings, and they could not be read: what they would have said is not known, so nothing is judged by defaults.
     pub settings_lost: bool,
 }
@@ -66,8 +68,8 @@ impl Teams {
         let settings = read.unwrap_or_default();
         let named = root.and_then(|root| settings.shelf.as_ref().map(|shelf| root.join(shelf)));
         let folder = self.shelf.clone().or(named);
-        let shelf = folder.map_or_else(Shelf::default, |folder| self.shelf(&folder));
-        Team { settings, shelf, settings_lost }
+        let (shelf, lost_parts) = folder.map_or_else(Default::default, |folder| self.shelf(&folder));
+        Team { settings, shelf, lost_parts, settings_lost }
     }
 
     fn settings(&mut self, root: &Path) -> Option<Settings> {
@@ -76,8 +78,8 @@ impl Teams {
         read_settings(&text, &show(&path)).map_err(|problems| self.problems(problems)).ok()
     }
 
-    fn shelf(&mut self, folder: &Path) -> Shelf {
-        let mut shelf = Shelf::default();
+    fn shelf(&mut self, folder: &Path) -> (Shelf, Vec<(String, String)>) {
+        let (mut shelf, mut lost) = (Shelf::default(), Vec::new());
         let entries = match fs::read_dir(folder) {
             Ok(entries) => entries,
             Err(error) => {
@@ -88,20 +90,25 @@ impl Teams {
                     attempt: None,
                 };
                 self.faults.push(fault);
-                return shelf;
+                return (shelf, lost);
             }
         };
         let mut files: Vec<PathBuf> = entries.filter_map(|entry| entry.ok().map(|e| e.path())).filter(|path| is_part(path)).collect();
         files.sort();
         for path in files {
-            let Some(text) = self.text(&path) else { continue };
             let file = show(&path);
-            match read_part(&text, &file) {
-                Ok(part) => shelf.parts.push(ShelfPart { part, file, text }),
-                Err(problems) => self.problems(problems),
+            let text = self.text(&path);
+            match text.map(|text| (read_part(&text, &file), text)) {
+                Some((Ok(part), text)) => shelf.parts.push(ShelfPart { part, file, text }),
+                unread => {
+                    if let Some((Err(problems), _)) = unread {
+                        self.problems(problems);
+                    }
+                    lost.push((path.file_stem().map(|s| s.to_string_lossy().into_owned()).unwrap_or_default(), file));
+                }
             }
         }
-        shelf
+        (shelf, lost)
     }
 
     fn text(&mut self, path: &Path) -> Option<String> {

@@ -1,6 +1,7 @@
 //! One note, examined: a pure function of its bytes and the team's shelf and settings, so that notes may be taken in any order.
 
 use std::{
+    borrow::Cow,
     cell::RefCell,
     collections::BTreeMap,
     panic::{self, AssertUnwindSafe},
@@ -12,10 +13,11 @@ use stageleaf_math::{
     dimension::Dimension,
     figure::Query,
     limit::{Bound, Limit, Thin},
+    part::Part,
     report::{FigureRow, LimitRow, Outcome, Report},
     stage::Stage,
 };
-use stageleaf_note::{Block, Problem, Quote, quote_agrees, quote_for, read_note, slug};
+use stageleaf_note::{Block, Problem, Quote, Shelf, ShelfPart, quote_agrees, quote_for, read_note, slug};
 
 use crate::{fault::Fault, team::Team};
 
@@ -117,7 +119,7 @@ pub fn examine(bytes: &[u8], file: &str, team: &Team) -> Examined {
 /// [`examine`] with another analysis.
 #[must_use]
 pub fn examine_with(bytes: &[u8], file: &str, team: &Team, analyse: &dyn Fn(&Stage) -> Result<Report, Error>) -> Examined {
-    let note = match guarded(|| read_note(bytes, file, &team.shelf, &team.settings)) {
+    let note = match guarded(|| read_note(bytes, file, &with_lost_parts(team), &team.settings)) {
         Ok(note) => note,
         Err(message) => {
             let bug = Fault::Bug { file: file.to_owned(), line: 1, stage: "(reading the note)".to_owned(), message };
@@ -127,6 +129,10 @@ pub fn examine_with(bytes: &[u8], file: &str, team: &Team, analyse: &dyn Fn(&Sta
     let mut faults: Vec<Fault> = note.problems.into_iter().map(|p| Fault::Text(Box::new(p))).collect();
     let mut stages = Vec::new();
     for block in note.blocks {
+        if let Some((_, part_file)) = team.lost_parts.iter().find(|(id, _)| *id == block.stage.part.id) {
+            faults.push(Fault::Text(Box::new(part_lost(bytes, &block, part_file))));
+            continue;
+        }
         let name = slug(&block.stage.name);
         let stage = with_quoted_figures(&block.stage, note.quotes.iter().filter(|q| q.slug == name));
         match guarded(|| analyse(&stage)) {
@@ -135,7 +141,7 @@ pub fn examine_with(bytes: &[u8], file: &str, team: &Team, analyse: &dyn Fn(&Sta
                 let part_file = team.shelf.find(id).map_or_else(|| format!("{id}.toml"), |part| part.file.clone());
                 stages.push(ExaminedStage { block, part_file, report });
             }
-            Ok(Err(error)) => faults.push(Fault::Text(Box::new(place(&block, error)))),
+            Ok(Err(error)) => faults.push(Fault::Text(Box::new(place(bytes, &block, error)))),
             Err(message) => faults.push(Fault::Bug { file: file.to_owned(), line: block.line, stage: block.stage.name.clone(), message }),
         }
     }
@@ -153,6 +159,25 @@ pub fn examine_with(bytes: &[u8], file: &str, team: &Team, analyse: &dyn Fn(&Sta
     });
     let quotes = quotes.collect();
     Examined { file: file.to_owned(), stages, quotes, faults }
+}
+
+/// The shelf with an empty part for each file that could not be read: a block that names one has the rest of its mistakes told,
+/// instead of hearing that there is no such part.
+fn with_lost_parts(team: &Team) -> Cow<'_, Shelf> {
+    if team.lost_parts.is_empty() {
+        return Cow::Borrowed(&team.shelf);
+    }
+    let mut shelf = team.shelf.clone();
+    for (id, file) in &team.lost_parts {
+        let part = Part { id: id.clone(), name: id.clone(), ..Part::default() };
+        shelf.parts.push(ShelfPart { part, file: file.clone(), text: String::new() });
+    }
+    Cow::Owned(shelf)
+}
+
+fn part_lost(note: &[u8], block: &Block, part_file: &str) -> Problem {
+    at_field(note, block, "part", format!("the stage “{}” is not judged: its part could not be read", block.stage.name))
+        .allowed(format!("a part file without mistakes; those of {part_file} are told once"))
 }
 
 /// The figures that the prose quotes and no limit names are asked for too, as limits that judge nothing.
@@ -177,7 +202,7 @@ fn current(quote: &Quote, stage: &ExaminedStage) -> Current {
 }
 
 /// Puts an error of the engine where the value stands in the note.
-fn place(block: &Block, error: Error) -> Problem {
+fn place(note: &[u8], block: &Block, error: Error) -> Problem {
     let what = match error {
         Error::NotPositive { what, .. }
         | Error::Negative { what, .. }
@@ -186,10 +211,18 @@ fn place(block: &Block, error: Error) -> Problem {
         Error::Unpaired { given, .. } => given,
         Error::SupplyReversed { .. } => "supply.positive",
     };
-    let field = block.field(&format!("components.{what}")).or_else(|| block.field(what));
-    let (line, column, length) = field.map_or((block.line, 1, 1), |f| (f.line, f.column, f.text.chars().count().max(1)));
-    let line_text = line.checked_sub(block.line).and_then(|n| block.text.lines().nth(n)).unwrap_or_default();
-    Problem::on_line(&block.file, line, column, length, line_text, format!("the stage “{}” cannot be analysed: {error}", block.stage.name))
+    let component = format!("components.{what}");
+    let path = if block.field(&component).is_some() { component.as_str() } else { what };
+    at_field(note, block, path, format!("the stage “{}” cannot be analysed: {error}", block.stage.name))
+}
+
+/// A problem at the value of `path`, or at the block where it has none.
+fn at_field(note: &[u8], block: &Block, path: &str, message: String) -> Problem {
+    let (line, column, length) = block.field(path).map_or((block.line, 1, 1), |f| (f.line, f.column, f.text.chars().count().max(1)));
+    // The file's own line: in a list or quotation more stands on it than in the block's text.
+    let text = String::from_utf8_lossy(note);
+    let line_text = text.trim_start_matches('\u{feff}').lines().nth(line - 1).unwrap_or_default();
+    Problem::on_line(&block.file, line, column, length, line_text, message)
 }
 
 thread_local! {
