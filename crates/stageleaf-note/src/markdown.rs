@@ -24,6 +24,9 @@ use crate::{
 
 const LANGUAGE: &str = "stageleaf";
 
+/// More problems than this in one note are counted, not listed.
+const LISTED: usize = 1000;
+
 /// A figure quoted in prose.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Quote {
@@ -124,6 +127,13 @@ pub fn read_note(bytes: &[u8], file: &str, shelf: &Shelf, settings: &Settings) -
         read_quote(&mut note, link, &text, &lines, &names, unread);
     }
     note.problems.sort_by_key(|p| (p.line, p.column));
+    if note.problems.len() > LISTED {
+        let rest = note.problems.len() - LISTED;
+        note.problems.truncate(LISTED);
+        let message = format!("{rest} more problems of this note are not listed");
+        let more = Problem { message, allowed: None, attempt: None, ..note.problems[LISTED - 1].clone() };
+        note.problems.push(more);
+    }
     note
 }
 

@@ -4,7 +4,7 @@ use std::ops::Range;
 
 /// How many bytes lie between two remembered character counts: a column costs at most this many bytes of counting,
 /// however long its line is.
-const STRIDE: usize = 4096;
+const STRIDE: usize = 256;
 
 /// Where a text's lines begin. A line ends with LF, CR LF or a lone CR, as Markdown has it.
 #[derive(Clone, Debug)]

@@ -49,20 +49,22 @@ impl Problem {
         let start = offset.clamp(whole.start, whole.end);
         let end = offset.saturating_add(bytes).clamp(start, whole.end);
         let length = text.get(start..end).map_or(1, |t| t.chars().count()).max(1);
-        Self::on_line(file, line, column, length, &text[whole], message)
+        let (line_text, line_text_column) = cut(&text[whole.clone()], start - whole.start, column);
+        Self { file: file.to_owned(), line, column, length, line_text, line_text_column, message, allowed: None, attempt: None }
     }
 
     /// A problem on a line whose text is known.
     #[must_use]
     pub fn on_line(file: &str, line: usize, column: usize, length: usize, line_text: &str, message: String) -> Self {
-        let first = if column > SHOWN * 3 / 4 { column - SHOWN / 2 } else { 1 };
+        let offset = line_text.char_indices().nth(column.saturating_sub(1)).map_or(line_text.len(), |(i, _)| i);
+        let (line_text, line_text_column) = cut(line_text, offset, column);
         Self {
             file: file.to_owned(),
             line,
             column,
-            length,
-            line_text: line_text.chars().skip(first - 1).take(SHOWN).collect(),
-            line_text_column: first,
+            length: length.max(1),
+            line_text,
+            line_text_column,
             message,
             allowed: None,
             attempt: None,
@@ -102,6 +104,18 @@ impl fmt::Display for Problem {
         }
         Ok(())
     }
+}
+
+/// A line as a problem carries it: whole, or the part around a place of it, with that part's first column. The cost does
+/// not grow with the line.
+pub(crate) fn cut(line: &str, offset: usize, column: usize) -> (String, usize) {
+    if column <= SHOWN * 3 / 4 {
+        return (line.chars().take(SHOWN).collect(), 1);
+    }
+    let offset = (0..=offset.min(line.len())).rev().find(|i| line.is_char_boundary(*i)).unwrap_or(0);
+    let before: Vec<char> = line[..offset].chars().rev().take(SHOWN / 2).collect();
+    let first = column - before.len();
+    (before.iter().rev().copied().chain(line[offset..].chars()).take(SHOWN).collect(), first)
 }
 
 /// The user's text in quotes, on one line, at most 60 characters of it.

@@ -3,7 +3,7 @@
 //! Keys at the top: `stage`, `name`, `part`, `isolation`. Tables: `[components]`, `[supply]`, `[source]`, `[signal]`,
 //! `[load]`, `[ambient]`, `[band]`, `[board]`, `[limits]`, `[measured]`.
 
-use std::ops::Range;
+use std::{collections::BTreeSet, ops::Range};
 
 use stageleaf_math::{
     Error,
@@ -215,13 +215,14 @@ fn components<'a>(
 
 fn limits<'a>(reader: &mut Reader<'a>, entry: Option<Entry<'a>>, settings: &Settings) -> Vec<Limit> {
     let mut limits: Vec<Limit> = Vec::new();
+    let mut named = BTreeSet::new();
     for entry in entry.and_then(|e| reader.table(&e).map(entries)).unwrap_or_default() {
         let path = format!("limits.{}", entry.key);
         let Some(query) = query(reader, &entry) else {
             reader.text(&entry, &path);
             continue;
         };
-        if limits.iter().any(|l| l.query == query) {
+        if !named.insert((query.figure, query.at.map(f64::to_bits))) {
             reader.problem(entry.key_range(), format!("`{}` has a limit already", shown(entry.key)), "one limit for each figure", None);
         }
         let d = query.figure.dimension();

@@ -10,7 +10,7 @@ use toml::{
 use crate::{
     block::{Field, Place},
     place::Lines,
-    problem::{Problem, nearest, quoted},
+    problem::{Problem, cut, nearest, quoted},
     quantity::Trouble,
 };
 
@@ -97,7 +97,7 @@ impl<'a> Reader<'a> {
         self.problems.sort_by_key(|p| (p.line, p.column));
         if let Some(last) = self.problems.last().filter(|_| self.unlisted > 0) {
             let message = format!("{} more problems are not listed", self.unlisted);
-            let more = Problem::on_line(&last.file, last.line, last.column, 1, &last.line_text, message);
+            let more = Problem { message, allowed: None, attempt: None, ..last.clone() };
             self.problems.push(more);
         }
         self.problems
@@ -123,15 +123,17 @@ impl<'a> Reader<'a> {
             return;
         }
         let (line, column) = self.position(range.start);
-        let own_line = self.lines.position(range.start).0;
+        let (own_line, own_column) = self.lines.position(range.start);
         let on_line = self.lines.range(own_line);
         let start = range.start.clamp(on_line.start, on_line.end);
         let end = range.end.clamp(start, on_line.end);
         let length = self.text.get(start..end).map_or(1, |t| t.chars().count()).max(1);
+        let (shown, first) = cut(&self.text[on_line.clone()], start - on_line.start, own_column);
         let prefix = self.place.prefixes.get(own_line - 1).map_or("", String::as_str);
-        let line_text = format!("{prefix}{}", &self.text[on_line]);
-        let problem = Problem::on_line(&self.place.file, line, column, length, &line_text, message).allowed(allowed);
-        self.problems.push(problem.attempt(attempt));
+        let (line_text, line_text_column) = if first == 1 { (format!("{prefix}{shown}"), 1) } else { (shown, first + column - own_column) };
+        let file = self.place.file.clone();
+        let problem = Problem { file, line, column, length, line_text, line_text_column, message, allowed: None, attempt };
+        self.problems.push(problem.allowed(allowed));
     }
 
     /// A key that is not there. Silent while a broken line may hold it.
@@ -143,6 +145,10 @@ impl<'a> Reader<'a> {
 
     /// A key that has no meaning here.
     pub fn unknown(&mut self, entry: &Entry<'_>, message: String, names: &[&str]) {
+        if self.problems.len() >= LISTED {
+            self.unlisted += 1;
+            return;
+        }
         let list: Vec<String> = names.iter().map(|n| format!("`{n}`")).collect();
         let near = nearest(entry.key, names.iter().copied()).map(str::to_owned);
         self.problem(entry.key_range(), message, list.join(", "), near);
@@ -236,6 +242,10 @@ impl<'a> Reader<'a> {
     }
 
     fn syntax(&mut self, said: &str, mut span: Range<usize>) {
+        if self.problems.len() >= LISTED {
+            self.unlisted += 1;
+            return;
+        }
         let (own_line, _) = self.lines.position(span.start);
         let on_line = self.lines.range(own_line);
         let given = self.text.get(span.clone()).unwrap_or("").lines().next().unwrap_or("");

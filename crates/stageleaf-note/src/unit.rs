@@ -4,6 +4,8 @@
 //! Symbols and prefixes: BIPM, The International System of Units, 9th edition, tables 2, 4 and 7; from memory.
 //! `R`, `ohm`, `u`, `deg`, `rtHz` for keyboards without the symbols: common practice, no source.
 
+use std::borrow::Cow;
+
 use stageleaf_math::dimension::Dimension;
 
 /// How the number before a unit becomes SI.
@@ -254,7 +256,12 @@ pub fn spellings(d: Dimension) -> &'static [&'static str] {
 }
 
 /// One spelling for each symbol: no spaces, one micro, one omega, one degree Celsius, ASCII roots as the sign.
-fn simplified(suffix: &str) -> String {
+fn simplified(suffix: &str) -> Cow<'_, str> {
+    let plain = |b: u8| b.is_ascii_alphabetic() || b == b'%' || b == b'/';
+    if suffix.bytes().all(plain) && !suffix.contains("/us") && !suffix.contains("/uV") && !suffix.contains("/rt") && !suffix.contains("/sq")
+    {
+        return Cow::Borrowed(suffix);
+    }
     let mut s = String::with_capacity(suffix.len() + 2);
     for c in suffix.chars() {
         match c {
@@ -276,7 +283,7 @@ fn simplified(suffix: &str) -> String {
             _ => tail,
         });
     }
-    s
+    Cow::Owned(s)
 }
 
 fn resistance(s: &str) -> Option<i32> {
