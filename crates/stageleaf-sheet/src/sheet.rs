@@ -118,3 +118,9 @@ fn one_line(markup: String) -> String {
 pub(crate) fn whole(value: f64) -> i32 {
     libm::round(value.clamp(-1e6, 1e6)) as i32
 }
+
+/// Text with a capital at its start.
+pub(crate) fn capital(text: &str) -> String {
+    let mut chars = text.chars();
+    chars.next().map_or_else(String::new, |c| c.to_uppercase().chain(chars).collect())
+}

@@ -9,7 +9,7 @@ use stageleaf_math::{
 use stageleaf_note::{format, limit_text, print::trimmed, query_anchor, words};
 
 use super::{basis_word, needs, outcome, round, title, value};
-use crate::{Sheet, strip::strip};
+use crate::{Sheet, sheet::capital, strip::strip};
 
 /// The shape that stands beside a verdict's word.
 pub const fn shape(verdict: Verdict) -> &'static str {
@@ -91,14 +91,15 @@ fn limit(sheet: &Sheet, row: &LimitRow) -> Markup {
             @if !row.corner.is_empty() || row.dominant.is_some() {
                 div class="corner" {
                     @if !row.corner.is_empty() {
-                        "worst at "
-                        @for (i, c) in row.corner.iter().enumerate() { @if i > 0 { ", " } (coordinate(sheet, c)) }
+                        "Worst at "
+                        // Names may hold commas: "slew rate, rising".
+                        @for (i, c) in row.corner.iter().enumerate() { @if i > 0 { "; " } (coordinate(sheet, c)) }
                     }
                     @if let Some(p) = row.dominant {
                         @match row.corner.as_slice() {
-                            [] => { (words::parameter_text(p)) " uses most of the margin" }
-                            [only] if only.parameter == p => ", which uses most of the margin",
-                            _ => { "; " (words::parameter_text(p)) " uses most of the margin" }
+                            [only] if only.parameter == p => ", which uses most of the margin.",
+                            [] => { (capital(&words::parameter_text(p))) " uses most of the margin." }
+                            _ => { ". " (capital(&words::parameter_text(p))) " uses most of the margin." }
                         }
                     }
                 }

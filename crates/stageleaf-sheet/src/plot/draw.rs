@@ -10,14 +10,14 @@ use super::{
     axis::{Axis, plain, short},
     charts::{Chart, Curve},
 };
-use crate::sheet::whole;
+use crate::sheet::{capital, whole};
 
 /// Upper edge of the area.
 const TOP: f64 = 22.0;
 /// Room below the area for tick labels and title.
 const BELOW: f64 = 38.0;
 /// Room right of the area for curve labels, where there are several curves.
-const LABELS: f64 = 112.0;
+const LABELS: f64 = 124.0;
 /// Curves are drawn on a grid this many times finer, so that their numbers are whole.
 const FINE: f64 = 10.0;
 
@@ -109,12 +109,12 @@ fn labels(c: &Chart, height: f64) -> Markup {
     ends.sort_by(|a, b| a.0.total_cmp(&b.0));
     let mut at: Vec<f64> = ends.iter().map(|e| e.0).collect();
     for i in 1..at.len() {
-        at[i] = at[i].max(at[i - 1] + 15.0);
+        at[i] = at[i].max(at[i - 1] + 17.0);
     }
     let mut bound = TOP + height;
     for y in at.iter_mut().rev() {
         *y = y.min(bound);
-        bound = *y - 15.0;
+        bound = *y - 17.0;
     }
     let right = AREA_LEFT + AREA_WIDTH;
     html! {
@@ -212,9 +212,4 @@ fn summary(c: &Chart) -> String {
     }
     text.push_str(" The numbers are in the table below.");
     text
-}
-
-fn capital(text: &str) -> String {
-    let mut chars = text.chars();
-    chars.next().map_or_else(String::new, |c| c.to_uppercase().chain(chars).collect())
 }
