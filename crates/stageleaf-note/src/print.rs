@@ -4,10 +4,7 @@ use std::f64::consts::PI;
 
 use stageleaf_math::dimension::Dimension;
 
-use crate::{
-    decimal::Decimal,
-    unit::{prefix_power, prefix_symbol},
-};
+use crate::{decimal::Decimal, unit::prefix_symbol};
 
 /// How a dimension is shown.
 struct Style {
@@ -204,10 +201,4 @@ const fn unusual(value: f64) -> &'static str {
     } else {
         "−unlimited"
     }
-}
-
-/// The power of ten of a unit's prefix as shown; used where a quoted number keeps its unit.
-#[must_use]
-pub fn shown_power(prefix: char) -> i32 {
-    prefix_power(prefix).unwrap_or(0)
 }

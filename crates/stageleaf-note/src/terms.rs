@@ -182,7 +182,7 @@ pub(crate) fn after_comma(text: &str, wanted: impl Fn(&str) -> bool) -> Option<(
         let tail = &text[at + 1..];
         let body = tail.trim_start();
         let start = text.len() - body.len();
-        (body.len() < tail.len() && wanted(body)).then(|| (at, start..start + body.trim_end().len()))
+        (body.len() < tail.len() && wanted(body.trim_end())).then(|| (at, start..start + body.trim_end().len()))
     })
 }
 
@@ -230,7 +230,7 @@ fn split(text: &str) -> Vec<Range<usize>> {
         }
         let sign = "±+-−".contains(c);
         let begins = (c == '±' && !after_sign)
-            || (sign && !after_sign && (spaced || before == '%'))
+            || (sign && !after_sign && (spaced || !"eE/".contains(before)))
             || (c.is_ascii_digit() && spaced && !after_sign);
         // `1/K` and `V / 1`: a number behind a stroke belongs to the unit.
         if begins && before != '/' && i > starts[0] {

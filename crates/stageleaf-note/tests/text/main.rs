@@ -3,6 +3,8 @@
 
 mod blocks;
 mod common;
+mod hostile;
 mod notes;
 mod parts;
 mod quantities;
+mod terms;
