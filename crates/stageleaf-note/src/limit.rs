@@ -1,4 +1,4 @@
-//! Limits as text: `at least 300 kHz`, `20.4 ± 3 %`, `at most 1 dB, thin above 0.5 dB`, `report`.
+//! Limits as text: `at least 300 kHz`, `20.4 ± 3 %`, `± 0.1 %`, `at most 1 dB, thin above 0.5 dB`, `report`.
 //!
 //! Where a limit does not say when it counts as thin, a fraction of its own scale does. A limit at zero has no scale of
 //! its own, nor has one in dB or on a temperature (10 % of 398 K would be 40 K): those must say it.
@@ -66,6 +66,14 @@ pub fn parse_limit(text: &str, d: Dimension, fraction: f64) -> Result<(Bound, Th
         };
         let (low, high) = pair(a, offset, b, offset + a.len() + 5, d)?;
         (low.value, high.value)
+    } else if let Some(about_zero) = body.strip_prefix('±').or_else(|| body.strip_prefix("+/-")) {
+        let half = read(about_zero, d).map_err(|t| t.shifted(whole.end - about_zero.len()))?;
+        match (half.reading, d) {
+            // 0 dB is a ratio of 1.
+            (Reading::Decibel, _) => (1.0 / half.value, half.value),
+            (_, Dimension::Temperature | Dimension::Level) => return Err(no_direction(body, whole, d)),
+            _ => (-half.value, half.value),
+        }
     } else if body.contains('±') || body.contains("+/-") || body.contains("+-") {
         let span = band(body, d).map_err(|t| t.shifted(start))?;
         (span.low, span.high)
@@ -178,7 +186,7 @@ fn no_direction(body: &str, whole: Range<usize>, d: Dimension) -> Trouble {
 
 fn grammar(range: Range<usize>, message: String, attempt: Option<String>) -> Trouble {
     let allowed =
-        "`at least X`, `at most X`, `between A and B`, `X ± Y`, `report`; then `, thin below X`, `, thin above X` or `, thin within X`"
+        "`at least X`, `at most X`, `between A and B`, `X ± Y`, `± Y`, `report`; then `, thin below X`, `, thin above X` or `, thin within X`"
             .into();
     Trouble { range, message, allowed, attempt }
 }

@@ -9,6 +9,7 @@ use stageleaf_math::{
 
 use crate::{
     parse,
+    problem::quoted,
     reading::{above_zero, not_negative, takes},
     settings::Settings,
     table::{Entry, Reader, entries, shown},
@@ -231,9 +232,11 @@ fn signal<'a>(reader: &mut Reader<'a>, entry: &Entry<'a>) -> Option<Signal> {
 }
 
 fn crest_factor<'a>(reader: &mut Reader<'a>, table: &Table<'a>) -> Option<f64> {
-    let stated = table.read(reader, "crest_factor", "takes a number of at least 1", |t| {
+    let stated = table.read(reader, "crest_factor", "takes a number", |t| {
         let value = parse(t, Dimension::Number)?;
-        if value >= 1.0 { Ok(value) } else { above_zero(t, 0.0, Dimension::Number).map(|()| value) }
+        let allowed = "peak over rms, at least 1".into();
+        let below = || crate::Trouble { range: 0..t.len(), message: format!("{} is below 1", quoted(t)), allowed, attempt: None };
+        if value >= 1.0 { Ok(value) } else { Err(below()) }
     });
     let Some(entry) = table.find("waveform") else { return stated };
     let word = reader.word(entry, "signal.waveform", &["sine", "triangle", "square"])?;

@@ -346,8 +346,7 @@ allowed: `capacitance`"#
 
 #[test]
 fn limits_that_cannot_be_judged() {
-    let limits =
-        "`at least X`, `at most X`, `between A and B`, `X ± Y`, `report`; then `, thin below X`, `, thin above X` or `, thin within X`";
+    let limits = "`at least X`, `at most X`, `between A and B`, `X ± Y`, `± Y`, `report`; then `, thin below X`, `, thin above X` or `, thin within X`";
     let row = |given: &str, message: &str, end: &str| {
         let carets = "^".repeat(given.chars().count() + 2);
         format!(
@@ -357,6 +356,12 @@ fn limits_that_cannot_be_judged() {
     let bandwidth = |given: &str| with("\"at least 300 kHz\"", &format!("\"{given}\""));
     assert_eq!(bandwidth("300 kHz"), row("300 kHz", "\"300 kHz\" does not say which way it limits", ""));
     assert_eq!(bandwidth("≥ 300 kHz"), row("≥ 300 kHz", "\"≥ 300 kHz\" is written with a sign", "\ntry: bandwidth = \"at least 300 kHz\""));
+    assert_eq!(
+        with("bandwidth      = \"at least 300 kHz\"", "junction_temperature = \"± 5 °C\""),
+        format!(
+            "notes/a.md:49:24: `junction_temperature` is a temperature; \"± 5 °C\" is no limit\n  49 | junction_temperature = \"± 5 °C\"\n     |                        ^^^^^^^^\nallowed: {limits}"
+        )
+    );
     assert_eq!(bandwidth("high"), row("high", "\"high\" is no limit", ""));
     assert_eq!(
         bandwidth("between 3 MHz and 2 MHz"),
@@ -426,6 +431,7 @@ fn limits_and_their_thin_distances() {
             .limits[4]
             .clone()
     };
+    assert_eq!(read("gain_error = \"± 0.1 %\"").bound, Bound::Between { low: -0.001, high: 0.001 });
     assert_eq!(read("clip_margin = \"at least 0,5 V\"").thin, Thin::Fraction(0.1));
     assert_eq!(read("clip_margin = \"at least 0,5 V, thin within 0,5 V\"").thin, Thin::Distance(0.5));
     assert_eq!(read("dissipation = \"at most 200 mW, thin above 150 mW\"").thin, Thin::Distance(0.2 - 0.15));

@@ -49,6 +49,7 @@ fn blocks_and_quotes_are_found_with_their_places() {
 fn fences_in_lists_quotations_and_tildes() {
     for (text, column, prefix) in [
         (format!("- item\n\n{}", behind("  ", &fenced(&small("A")))), 11, "  "),
+        (format!("-\titem\n\n{}", behind("\t", &fenced(&small("A")))), 10, "\t"),
         (format!("> said\n>\n{}", behind("> ", &fenced(&small("A")))), 11, "> "),
         (format!("1. > x\n\n{}", behind("   > ", &fenced(&small("A")))), 14, "   > "),
         (format!("x\n\n~~~~ stageleaf extra\n{}~~~~\n", small("A")), 9, ""),
