@@ -1,7 +1,7 @@
 //! Names: figures with their arguments, stages in links, fingerprints of texts.
 //!
 //! In a link a figure stands behind the stage's slug and a dot, its argument behind dashes or encoded spaces:
-//! `#hydrophone-line-amplifier.gain_at-20-kHz`, `#…​.gain_at%2020%20kHz`.
+//! `#hydrophone-line-amplifier.gain_at-20-kHz`, `#….gain_at%2020%20kHz`.
 
 use stageleaf_math::{
     dimension::Dimension,
