@@ -7,7 +7,8 @@
 //! # The document
 //! [`render`] gives `<div class="stageleaf-body">` with one element per [`Section`], each with `data-section`. The element around a
 //! section never changes; its content is [`Section::markup`]. So a live sheet sets the `innerHTML` of those sections whose
-//! markup differs, and open panels stay open. Sections that hold panels are `<details>`; their markup starts with `<summary>`.
+//! markup differs, and open panels stay open. The section `problems` is `hidden` while it is empty; its content comes from
+//! [`problems_markup`]. Sections that hold panels are `<details>`; their markup starts with `<summary>`.
 //!
 //! Every value that can be edited is an `<input data-path="components.Rf">`, in the drawing or in the list of conditions; its
 //! `value` is the note's own text. `id`s start with [`Sheet::id`] and a dot. Every figure's row has the id

@@ -97,7 +97,7 @@ pub fn page(title: &str, body: &str, script: Option<&str>) -> String {
                 style { (PreEscaped(STYLE)) }
             }
             body class="stageleaf-page" {
-                main { (PreEscaped(body)) }
+                main { h1 class="unseen" { (title) } (PreEscaped(body)) }
                 @if let Some(script) = script { script { (PreEscaped(script)) } }
             }
         }

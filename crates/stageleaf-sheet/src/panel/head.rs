@@ -39,7 +39,7 @@ pub fn head(sheet: &Sheet) -> Markup {
     let verdicts = summary(sheet.report);
     let loud: Vec<&Caution> = sheet.report.cautions.iter().filter(|c| !matches!(c, Caution::TakenAsIdeal(_))).collect();
     html! {
-        p class="title" role="heading" aria-level="3" { (stage.name) }
+        p class="title" role="heading" aria-level="2" { (stage.name) }
         p class="summary" {
             @if verdicts.is_empty() { "no limits to judge" }
             @for (i, (verdict, text)) in verdicts.iter().enumerate() {

@@ -38,7 +38,7 @@ pub fn limits(sheet: &Sheet) -> Markup {
     let mut rows: Vec<&LimitRow> = sheet.report.limits.iter().collect();
     rows.sort_by(|a, b| a.verdict.cmp(&b.verdict).then(relative(a).total_cmp(&relative(b))));
     html! {
-        p class="caption" role="heading" aria-level="4" { "Limits at the worst case" }
+        p class="caption" role="heading" aria-level="3" { "Limits at the worst case" }
         @if rows.is_empty() { p class="aside" { "The note states no limits." } }
         @else {
             ol class="limits" { @for row in rows { (limit(sheet, row)) } }

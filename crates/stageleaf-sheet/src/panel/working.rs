@@ -18,7 +18,7 @@ pub fn working(sheet: &Sheet) -> Markup {
         @for w in &sheet.report.working {
             @let d = w.query.figure.dimension();
             div class="working" {
-                p class="caption" role="heading" aria-level="4" { (title(w.query)) }
+                p class="caption" role="heading" aria-level="3" { (title(w.query)) }
                 p class="formula" { code { (w.formula) } }
                 @if !w.numbers.is_empty() {
                     p class="formula" { code { (in_place(w)) " = " (value(w.handbook, d)) } }
