@@ -54,7 +54,7 @@ pub fn parameter_dimension(parameter: Parameter, stage: &stageleaf_math::stage::
     }
 }
 
-/// What must be stated and where: "`junction_to_ambient` (K/W) under [thermal] in site/shelf/alder-10.toml, with its
+/// What must be stated and where: "`junction_to_ambient` (K/W) under \[thermal\] in site/shelf/alder-10.toml, with its
 /// source".
 #[must_use]
 pub fn need_text(need: Need, part_file: &str) -> String {
