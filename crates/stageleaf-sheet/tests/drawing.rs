@@ -3,8 +3,14 @@
 #[expect(dead_code, reason = "the samples serve several tests")]
 mod samples;
 
-use stageleaf_math::{kind::Kind, stage::Isolation};
-use stageleaf_sheet::drawing::{canvas, kit::Area};
+use stageleaf_math::{
+    kind::Kind,
+    stage::{Isolation, Source, Span, Supply, Toleranced},
+};
+use stageleaf_sheet::drawing::{
+    canvas,
+    kit::{Area, Canvas},
+};
 
 /// Parts that come and go together.
 const GROUPS: [&[&str]; 9] = [&["Rf"], &["Cf"], &["Rser"], &["Cshunt"], &["Riso"], &["Rsn", "Csn"], &["Rng", "Cng"], &["Rp"], &["Cp"]];
@@ -40,22 +46,32 @@ fn no_label_covers_another_or_a_wire() {
         let combinations = combinations(*kind);
         assert!(combinations.len() > 500, "{kind:?}: only {} combinations", combinations.len());
         for (names, isolation, load, source) in combinations {
-            let block = samples::block(*kind, &names, isolation, load, source);
-            let drawing = canvas(&block);
-            let words: Vec<(Area, &str)> = drawing.words().collect();
-            let case = || format!("{kind:?} with {names:?}, {isolation:?}, load {load:?}, source {source}");
-            for (i, (a, name)) in words.iter().enumerate() {
-                for (b, other) in &words[i + 1..] {
-                    assert!(!a.covers(b), "{}: `{name}` at {a:?} covers `{other}` at {b:?}", case());
+            let mut block = samples::block(*kind, &names, isolation, load, source);
+            // The other symbols that the same places can hold: a capacitive source, a ground in the negative rail's place.
+            for other in [false, true] {
+                if other && source {
+                    block.stage.source = Some(Source::Capacitive { capacitance: Toleranced::exact(1e-9) });
+                    block.stage.supply = Some(Supply { positive: Span::exact(5.0), negative: Span::exact(0.0) });
                 }
-                for ink in drawing.ink() {
-                    assert!(!a.covers(ink), "{}: `{name}` at {a:?} covers ink at {ink:?}", case());
-                }
+                let case = || format!("{kind:?} with {names:?}, {isolation:?}, load {load:?}, source {source}, other symbols {other}");
+                keeps_clear(&canvas(&block), &case());
             }
-            let frame = drawing.frame(0);
-            assert!(frame.x1 - frame.x0 <= 600, "{}: {} wide", case(), frame.x1 - frame.x0);
         }
     }
+}
+
+fn keeps_clear(drawing: &Canvas, case: &str) {
+    let words: Vec<(Area, &str)> = drawing.words().collect();
+    for (i, (a, name)) in words.iter().enumerate() {
+        for (b, other) in &words[i + 1..] {
+            assert!(!a.covers(b), "{case}: `{name}` at {a:?} covers `{other}` at {b:?}");
+        }
+        for ink in drawing.ink() {
+            assert!(!a.covers(ink), "{case}: `{name}` at {a:?} covers ink at {ink:?}");
+        }
+    }
+    let frame = drawing.frame(0);
+    assert!(frame.x1 - frame.x0 <= 600, "{case}: {} wide", frame.x1 - frame.x0);
 }
 
 #[test]

@@ -1,7 +1,7 @@
 //! All figures with their spread and basis, by group.
 
 use maud::{Markup, html};
-use stageleaf_math::figure::Group;
+use stageleaf_math::{figure::Group, report::FigureRow};
 use stageleaf_note::{query_anchor, query_text};
 
 use super::{limits::basis_cell, needs, scroll, title, value};
@@ -19,6 +19,7 @@ const GROUPS: [(Group, &str); 5] = [
 pub fn figures(sheet: &Sheet) -> Markup {
     let all = &sheet.report.figures;
     let judged = |q| sheet.report.limits.iter().any(|l| l.limit.query == q);
+    let first = |row: &FigureRow| all.iter().find(|r| r.query == row.query).is_some_and(|r| std::ptr::eq(r, row));
     html! {
         summary { "All figures" }
         (scroll("All figures", &html! {
@@ -31,7 +32,7 @@ pub fn figures(sheet: &Sheet) -> Markup {
                             @for row in all.iter().filter(|r| r.query.figure.group() == group) {
                                 @let d = row.query.figure.dimension();
                                 // The row of a judged figure, to which prose links, stands among the limits.
-                                tr id=[(!judged(row.query)).then(|| format!("{}.{}", sheet.id, query_anchor(row.query)))] {
+                                tr id=[(first(row) && !judged(row.query)).then(|| format!("{}.{}", sheet.id, query_anchor(row.query)))] {
                                     th scope="row" { (title(row.query)) " " code { (query_text(row.query)) } (needs(sheet, &row.nominal)) }
                                     @if row.nominal.value().is_none() { td class="words" colspan="3" { (super::outcome(&row.nominal, d)) } }
                                     @else {

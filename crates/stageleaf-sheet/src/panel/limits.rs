@@ -41,7 +41,10 @@ pub fn limits(sheet: &Sheet) -> Markup {
         p class="caption" role="heading" aria-level="3" { "Limits at the worst case" }
         @if rows.is_empty() { p class="aside" { "The note states no limits." } }
         @else {
-            ol class="limits" { @for row in rows { (limit(sheet, row)) } }
+            ol class="limits" { @for (i, row) in rows.iter().enumerate() {
+                // The same figure may be limited twice, as `gain_at 1 kHz` and `gain_at 1000 Hz`: links go to the worse.
+                (limit(sheet, row, rows[..i].iter().all(|r| r.limit.query != row.limit.query)))
+            } }
             p class="key aside" aria-hidden="true" { "◆ nominal, ├─┤ spread, hatched: not allowed, shaded: thin" }
         }
     }
@@ -58,11 +61,11 @@ fn relative(row: &LimitRow) -> f64 {
     row.margin.filter(|m| !m.is_nan()).map_or(f64::INFINITY, |m| m / scale)
 }
 
-fn limit(sheet: &Sheet, row: &LimitRow) -> Markup {
+fn limit(sheet: &Sheet, row: &LimitRow, linked: bool) -> Markup {
     let query = row.limit.query;
     let d = query.figure.dimension();
     html! {
-        li class="row" id=(format_args!("{}.{}", sheet.id, query_anchor(query))) {
+        li class="row" id=[linked.then(|| format!("{}.{}", sheet.id, query_anchor(query)))] {
             div class="asked" {
                 span class=(class(row.verdict)) { span class="shape" aria-hidden="true" { (shape(row.verdict)) } " " (row.verdict.word()) }
                 @if let Some(basis) = row.basis { span class="basis" { " (" (basis.word()) ")" } }

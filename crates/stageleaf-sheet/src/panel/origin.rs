@@ -10,7 +10,7 @@ use crate::Sheet;
 pub fn model(sheet: &Sheet) -> Markup {
     let ideal: Vec<&Caution> = sheet.report.cautions.iter().filter(|c| matches!(c, Caution::TakenAsIdeal(_))).collect();
     html! {
-        summary { "Not modelled" }
+        summary { "Not modelled" @if !ideal.is_empty() { ", taken as ideal" } }
         p { @for (i, item) in NOT_MODELLED.iter().enumerate() { @if i > 0 { ", " } (item) } "." }
         @if !ideal.is_empty() { ul { @for c in ideal { li { (words::caution_text(c)) } } } }
     }
