@@ -43,7 +43,7 @@ class StageleafSheet extends HTMLElement {
     const ready = () => {
       for (const name of EVENTS) this.addEventListener(name, this);
       addEventListener("hashchange", () => this.guard(() => this.live.follow(location.hash.slice(1))));
-      const named = location.hash.startsWith("#stageleaf-") && location.hash.includes("/" + encodeURIComponent(this.id) + "/");
+      const named = location.hash.startsWith("#stageleaf-") && location.hash.includes("/" + encodeURIComponent(this.dataset.sheet) + "/");
       if (named) this.scrollIntoView();
       if (seen && !named) seen.observe(this); else this.mount();
     };
@@ -58,8 +58,8 @@ class StageleafSheet extends HTMLElement {
     if (!start()) return this.fail();
     try {
       this.live = new stageleaf_wasm.Live(this, location.hash.slice(1));
-    } catch {
-      this.fail();
+    } catch (reason) {
+      this.fail(reason);
     }
   }
 
@@ -76,11 +76,12 @@ class StageleafSheet extends HTMLElement {
   guard(work) {
     if (!this.live || this.busy) return;
     this.busy = true;
-    try { work(); } catch { this.fail(); } finally { this.busy = false; }
+    try { work(); } catch (reason) { this.fail(reason); } finally { this.busy = false; }
   }
 
-  /** The sheet as the page brought it, and one quiet line. */
-  fail() {
+  /** The sheet as the page brought it, and one quiet line. @param {unknown} reason kept for whoever looks into it */
+  fail(reason) {
+    this.reason = reason;
     this.broken = this.live; // kept: freeing what a panic left half-way would fail again
     this.live = undefined;
     this.removeAttribute("data-live");

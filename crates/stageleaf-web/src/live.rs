@@ -82,7 +82,7 @@ impl Live {
             controls.choose("kind", "Stage kind", &kinds);
             controls.choose("part", "Part", &parts);
         }
-        let shown = rendered(&model, &host.id());
+        let shown = rendered(&model, &name_of(&host));
         let mut live = Self {
             document,
             host,
@@ -122,13 +122,13 @@ impl Live {
             "pointermove" => {
                 if let Some(pointer) = event.dyn_ref::<MouseEvent>() {
                     let Self { readout, body, model, host, .. } = self;
-                    with_sheet(model, &host.id(), |sheet| readout.point(sheet, body, pointer, &target));
+                    with_sheet(model, &name_of(host), |sheet| readout.point(sheet, body, pointer, &target));
                 }
             }
             "pointerleave" => self.readout.hide(&self.body),
             "focusin" => {
                 let Self { readout, model, host, .. } = self;
-                with_sheet(model, &host.id(), |sheet| readout.focus(sheet, &target));
+                with_sheet(model, &name_of(host), |sheet| readout.focus(sheet, &target));
             }
             "click" => {
                 if let Some(action) = Action::of(&target) {
@@ -154,7 +154,7 @@ impl Live {
     /// Follows the page's address when it changes.
     pub fn follow(&mut self, fragment: &str) {
         let before = self.model.verdicts();
-        let found = link::read(fragment, &self.host.id());
+        let found = link::read(fragment, &name_of(&self.host));
         if found != link::Found::Nothing {
             self.notices = self.model.follow(found);
             self.troubles.clear();
@@ -189,7 +189,7 @@ impl Live {
         }
         let Some(input) = value_input(target) else {
             let Self { readout, model, host, .. } = self;
-            if with_sheet(model, &host.id(), |sheet| readout.key(sheet, &key, target)) == Some(true) {
+            if with_sheet(model, &name_of(host), |sheet| readout.key(sheet, &key, target)) == Some(true) {
                 event.prevent_default();
             }
             return;
@@ -300,7 +300,7 @@ impl Live {
         let Some(window) = web_sys::window() else { return };
         let location = window.location();
         let now = location.hash().unwrap_or_default();
-        let fragment = format!("#{}", link::write(now.trim_start_matches('#'), &self.host.id(), &self.model.changes()));
+        let fragment = format!("#{}", link::write(now.trim_start_matches('#'), &name_of(&self.host), &self.model.changes()));
         let replaced = window.history().and_then(|history| history.replace_state_with_url(&JsValue::NULL, "", Some(&fragment)));
         if replaced.is_err() {
             // In a frame whose page is inline only this way is allowed; where neither is, the text is still there to copy.
@@ -316,6 +316,7 @@ impl Live {
         for section in self.fresh() {
             if let (Some(new), Some(old)) = (patch::parse(&self.document, &section.markup), self.section(section.id)) {
                 patch::children(&old, &new);
+                show_unless(&old, section.markup.is_empty());
             }
         }
         if let Some(words) = announcement(before, &self.model.verdicts()) {
@@ -330,7 +331,7 @@ impl Live {
 
     /// Renders anew and returns the sections whose markup differs from what is shown.
     fn fresh(&mut self) -> Vec<Section> {
-        let fresh = rendered(&self.model, &self.host.id());
+        let fresh = rendered(&self.model, &name_of(&self.host));
         let shown = std::mem::replace(&mut self.shown, fresh.clone());
         // What is wrong with typed text is shown there by `settle`; the renderer leaves it empty.
         fresh.into_iter().filter(|section| section.id != PROBLEMS && !shown.contains(section)).collect()
@@ -373,15 +374,11 @@ impl Live {
         if let Some(list) = section.first_element_child() {
             list.set_id(&self.problems_id());
         }
-        if problems.is_empty() {
-            set(&section, "hidden", "");
-        } else {
-            let _ = section.remove_attribute("hidden");
-        }
+        show_unless(&section, problems.is_empty());
     }
 
     fn problems_id(&self) -> String {
-        format!("{}.problems", self.host.id())
+        format!("{}.problems", name_of(&self.host))
     }
 
     /// The page's static sheet is left as it is where it is the document that this crate renders, and mended where not.
@@ -409,14 +406,29 @@ fn with_sheet<T>(model: &Model, id: &str, work: impl FnOnce(&Sheet) -> T) -> Opt
 
 /// The place of a sheet that no note brought.
 fn empty_body(document: &Document, host: &HtmlElement, model: &Model) -> Option<Element> {
-    let whole = with_sheet(model, &host.id(), render)?;
+    let whole = with_sheet(model, &name_of(host), render)?;
     host.set_text_content(None);
     host.append_child(&*patch::parse(document, &whole)?).ok()?;
     find(host, BODY)
 }
 
+/// An open section without content is hidden; a panel says why it is empty.
+fn show_unless(section: &Element, empty: bool) {
+    if empty {
+        set(section, "hidden", "");
+    } else {
+        // Removing what is not there is no failure.
+        let _ = section.remove_attribute("hidden");
+    }
+}
+
 fn refusal(problems: &[Problem]) -> JsError {
     JsError::new(&problems.iter().map(ToString::to_string).collect::<Vec<_>>().join("\n"))
+}
+
+/// The sheet's name, with which every id in it starts. The host itself has none: a note's heading often has that one.
+fn name_of(host: &HtmlElement) -> String {
+    host.get_attribute("data-sheet").unwrap_or_default()
 }
 
 fn value_input(target: &Element) -> Option<HtmlInputElement> {

@@ -5,7 +5,7 @@
 //! rounding creeps in.
 
 use stageleaf_math::{dimension::Dimension, kind::Kind, series::Series};
-use stageleaf_note::{Settings, code, format, parse};
+use stageleaf_note::{Settings, code, full, parse};
 
 /// How far to go.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -43,7 +43,7 @@ pub fn step(path: &str, text: &str, step: Step, kind: Kind, settings: &Settings)
     };
     // Nothing that a board holds lies outside of this.
     let next = next.filter(|next| (1e-18..=1e15).contains(&next.abs()))?;
-    let shown = if series.is_some() && !nominal.contains(char::is_whitespace) { code(next, dimension) } else { format(next, dimension, 3) };
+    let shown = if series.is_some() && !nominal.contains(char::is_whitespace) { code(next, dimension) } else { full(next, dimension) };
     Some(format!("{shown}{rest}"))
 }
 
@@ -67,7 +67,7 @@ fn dimension(path: &str, kind: Kind) -> Option<Dimension> {
 /// The longest beginning of `text` that is one quantity, and the rest.
 fn split(text: &str, dimension: Dimension) -> Option<(&str, &str)> {
     let ends = text.char_indices().filter(|(_, c)| c.is_whitespace()).map(|(at, _)| at).chain([text.len()]);
-    let end = ends.filter(|end| parse(&text[..*end], dimension).is_ok()).last()?;
+    let end = ends.filter(|end| parse(&text[..*end], dimension).is_ok()).max()?;
     Some(text.split_at(end))
 }
 
@@ -97,7 +97,7 @@ fn in_series(series: Series, value: f64, up: bool) -> Option<f64> {
     if value <= 0.0 {
         return None;
     }
-    Some(if up { series.above(value) } else { series.below(value) })
+    Some(if up { series.step_up(value) } else { series.step_down(value) })
 }
 
 #[cfg(test)]

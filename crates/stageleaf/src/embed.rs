@@ -69,7 +69,10 @@ pub fn command(args: &[String], mut input: impl Read, mut output: impl Write, mu
         return Ok(renderer == "html");
     }
     if !args.is_empty() {
-        return Err(format!("embed: {} is not known\n  allowed: nothing (a book on standard input), or `supports RENDERER`", args.join(" ")));
+        return Err(format!(
+            "embed: {} is not known\n  allowed: nothing (a book on standard input), or `supports RENDERER`",
+            args.join(" ")
+        ));
     }
     let mut text = String::new();
     input.read_to_string(&mut text).map_err(|error| format!("embed: standard input: {error}"))?;
@@ -184,7 +187,7 @@ pub fn element(block: &Block, part: &ShelfPart, id: &str, settings: Option<&Sett
         "part": { "file": part.file, "text": part.text },
         "settings": settings.map(|s| json!({ "file": s.file, "text": s.text })),
     });
-    Ok(format!("<stageleaf-sheet id=\"{}\">{body}{}</stageleaf-sheet>", escape(id), data_script(&data)))
+    Ok(format!("<stageleaf-sheet data-sheet=\"{}\">{body}{}</stageleaf-sheet>", escape(id), data_script(&data)))
 }
 
 /// The data of an empty sheet: every part of the shelf, the settings.

@@ -1,0 +1,45 @@
+// One edit as a reader makes it, in the browser: values to figures, markup, and the page patched; beside it the same
+// computation natively. Prints; judges nothing.
+import { execFileSync } from "node:child_process";
+import { existsSync } from "node:fs";
+import { join } from "node:path";
+import { awaken, book, fileUrl, launch, notes, open, root } from "./harness.mjs";
+
+const median = (list) => list.toSorted((a, b) => a - b)[Math.floor(list.length / 2)];
+const context = await launch();
+for (const name of notes()) {
+  const opened = await open(context, fileUrl(join(book, name)));
+  await awaken(opened);
+  const taken = await opened.evaluate(async () => {
+    const sheet = document.querySelector("stageleaf-sheet");
+    sheet.querySelectorAll("details").forEach((panel) => { panel.open = true; });
+    const input = sheet.querySelector('input[data-path^="components.R"]');
+    const first = input.value;
+    const taken = [];
+    for (let turn = 0; turn < 31; turn++) {
+      input.value = turn % 2 ? first : "10k 1%";
+      const event = new Event("change", { bubbles: true });
+      const began = performance.now();
+      input.dispatchEvent(event);
+      sheet.live.draw();
+      taken.push(performance.now() - began);
+      await new Promise((done) => requestAnimationFrame(done));
+    }
+    return taken;
+  });
+  console.log(`browser  ${name.padEnd(36)} ${median(taken).toFixed(1).padStart(7)} ms an edit, worst ${Math.max(...taken).toFixed(1)} ms`);
+  await opened.close();
+}
+await context.close();
+
+// The whole command line on the same notes: reading, figures, verdicts, all corners.
+for (const [label, program] of [["debug", "target/debug/stageleaf"], ["release", "target/release/stageleaf"]]) {
+  if (!existsSync(join(root, program))) continue;
+  const taken = [];
+  for (let turn = 0; turn < 7; turn++) {
+    const began = performance.now();
+    try { execFileSync(join(root, program), ["check", "site/notes"], { cwd: root, stdio: "ignore" }); } catch { /* a broken limit is no matter here */ }
+    taken.push(performance.now() - began);
+  }
+  console.log(`native   check site/notes (${label})`.padEnd(45) + ` ${median(taken).toFixed(1).padStart(7)} ms for ${notes().length} notes`);
+}
