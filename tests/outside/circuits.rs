@@ -106,7 +106,7 @@ impl Role {
     fn origin(self) -> NoiseOrigin {
         match self {
             Self::Component(name) => NoiseOrigin::Component(name),
-            Self::SourceResistance => NoiseOrigin::SourceResistance,
+            Self::SourceResistance => NoiseOrigin::SourceResistance(0),
             Self::LoadResistance => NoiseOrigin::LoadResistance,
             Self::LoadCapacitance | Self::StrayInverting => panic!("a capacitor makes no noise"),
         }
@@ -159,7 +159,7 @@ impl Circuit {
             let value = Toleranced::exact(element.4);
             match self.role(element) {
                 Role::Component(name) => result = result.with(name, element.4),
-                Role::SourceResistance => result.source = Some(Source::Resistive { resistance: value }),
+                Role::SourceResistance => result.sources = vec![Some(Source::Resistive { resistance: value })],
                 Role::LoadResistance => result.load.resistance = Some(value),
                 Role::LoadCapacitance => result.load.capacitance = Some(value),
                 Role::StrayInverting => result.board.inverting_node = Some(value),
@@ -170,9 +170,9 @@ impl Circuit {
 
     fn origin(&self, source: &str) -> NoiseOrigin {
         match source {
-            "A.en" => NoiseOrigin::AmplifierVoltage,
-            "A.in+" => NoiseOrigin::CurrentNonInverting,
-            "A.in-" => NoiseOrigin::CurrentInverting,
+            "A.en" => NoiseOrigin::AmplifierVoltage(0),
+            "A.in+" => NoiseOrigin::CurrentNonInverting(0),
+            "A.in-" => NoiseOrigin::CurrentInverting(0),
             name => {
                 let element = self.netlist.iter().find(|e| e.0 == name);
                 self.role(element.unwrap_or_else(|| panic!("{}: no element is called {name}", self.id))).origin()

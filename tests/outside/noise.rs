@@ -107,9 +107,11 @@ fn by_source(rows: &Rows, ledger: &mut Ledger) {
     for ohms in row.inputs("Rs") {
         let stage = follower(&amplifier).behind_resistance(ohms).at(row.input("T_K"));
         let shares = density_by_source(&stage, 1e3);
-        for (name, origin) in
-            [("en", NoiseOrigin::AmplifierVoltage), ("inR", NoiseOrigin::CurrentNonInverting), ("johnson", NoiseOrigin::SourceResistance)]
-        {
+        for (name, origin) in [
+            ("en", NoiseOrigin::AmplifierVoltage(0)),
+            ("inR", NoiseOrigin::CurrentNonInverting(0)),
+            ("johnson", NoiseOrigin::SourceResistance(0)),
+        ] {
             let got = Outcome::Value(of_source(&shares, origin) * 1e9);
             row.check(ledger, &format!("{name}_{ohms}"), Figure::NoiseDensityAt, &got);
         }

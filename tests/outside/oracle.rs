@@ -142,10 +142,10 @@ impl Circuit {
             result = result.with(name, value);
         }
         result.isolation = if self.isolation == "inside" { Isolation::InsideLoop } else { Isolation::OutsideLoop };
-        result.source = self.source.as_ref().map(|driver| match *driver {
+        result.sources = vec![self.source.as_ref().map(|driver| match *driver {
             Driver::Resistance(ohms) => Source::Resistive { resistance: Toleranced::exact(ohms) },
             Driver::Capacitance(farads) => Source::Capacitive { capacitance: Toleranced::exact(farads) },
-        });
+        })];
         let mut result = result.loaded(self.load.resistance, self.load.capacitance);
         result.board.inverting_node = self.board.inverting_node.map(Toleranced::exact);
         result.board.non_inverting_node = self.board.non_inverting_node.map(Toleranced::exact);
@@ -155,10 +155,10 @@ impl Circuit {
 
     fn origin(&self, stage: &Stage, name: &str) -> NoiseOrigin {
         match name {
-            "voltage" => NoiseOrigin::AmplifierVoltage,
-            "current_non_inverting" => NoiseOrigin::CurrentNonInverting,
-            "current_inverting" => NoiseOrigin::CurrentInverting,
-            "source_resistance" => NoiseOrigin::SourceResistance,
+            "voltage" => NoiseOrigin::AmplifierVoltage(0),
+            "current_non_inverting" => NoiseOrigin::CurrentNonInverting(0),
+            "current_inverting" => NoiseOrigin::CurrentInverting(0),
+            "source_resistance" => NoiseOrigin::SourceResistance(0),
             "load_resistance" => NoiseOrigin::LoadResistance,
             component => {
                 let found = stage.components.iter().find(|c| c.name == component);

@@ -95,8 +95,11 @@ pub fn stage(kind: Kind, part: Part) -> Stage {
         part,
         isolation: Isolation::OutsideLoop,
         supply: None,
-        source: None,
-        signal: None,
+        sources: Vec::new(),
+        signals: Vec::new(),
+        common_mode: None,
+        reference: None,
+        parts: Vec::new(),
         load: Load::default(),
         board: Board::default(),
         ambient: None,
@@ -152,12 +155,12 @@ impl Complete for Stage {
     }
 
     fn behind_resistance(mut self, ohms: f64) -> Self {
-        self.source = Some(Source::Resistive { resistance: Toleranced::exact(ohms) });
+        self.sources = vec![Some(Source::Resistive { resistance: Toleranced::exact(ohms) })];
         self
     }
 
     fn driven(mut self, dc: f64, peak: f64, frequency: Option<f64>, crest_factor: f64) -> Self {
-        self.signal = Some(Signal { peak, frequency, dc, crest_factor });
+        self.signals = vec![Some(Signal { peak, frequency, dc, crest_factor })];
         self
     }
 
