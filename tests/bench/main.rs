@@ -80,7 +80,7 @@ fn sweep_circuit(circuit: &Circuit) -> Native {
     let run = |model: &Model<'_>| {
         let solution = Solution::new(model, model.parameters.nominal(), None);
         let looped = solution.looped();
-        let transfer = &looped.forward[usize::from(model.network.load.0)];
+        let transfer = &looped.forward[0][usize::from(model.network.load.0)];
         let response = sweep::ratio(&solution, transfer, &looped.closed, &frequencies);
         (response, sweep::noise(&solution, &frequencies))
     };
@@ -133,8 +133,11 @@ fn stage(values: &BTreeMap<String, f64>) -> Stage {
         part,
         isolation: Isolation::InsideLoop,
         supply: None,
-        source: Some(Source::Resistive { resistance: Toleranced::exact(value("Rs")) }),
-        signal: None,
+        sources: vec![Some(Source::Resistive { resistance: Toleranced::exact(value("Rs")) })],
+        signals: vec![],
+        common_mode: None,
+        reference: None,
+        parts: vec![],
         load: Load { resistance: exact("RL"), capacitance: exact("CL") },
         board: Board { inverting_node: exact("Cn"), ..Board::default() },
         ambient: Some(Ambient { range: Span::exact(value("T")) }),

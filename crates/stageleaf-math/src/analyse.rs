@@ -46,7 +46,7 @@ const EXTRA_LOW_VOLTAGE: f64 = 60.0;
 ///     ],
 ///     part,
 ///     isolation: Isolation::OutsideLoop,
-///     supply: None, source: None, signal: None, load: Load::default(), board: Board::default(),
+///     supply: None, sources: vec![], signals: vec![], common_mode: None, reference: None, parts: vec![], load: Load::default(), board: Board::default(),
 ///     ambient: None, band: None, limits: vec![],
 /// };
 /// let report = analyse(&stage)?;
@@ -85,7 +85,13 @@ pub fn analyse_in(stage: &Stage, detail: Detail) -> Result<Report, Error> {
             if judged || detail == Detail::Full {
                 figure_row(&mut spread, query)
             } else {
-                FigureRow { query, nominal: outcome(&spread.nominal, query), range: None, basis: None }
+                FigureRow {
+                    query,
+                    dimension: query.figure.dimension_in(stage.kind),
+                    nominal: outcome(&spread.nominal, query),
+                    range: None,
+                    basis: None,
+                }
             }
         })
         .collect();
@@ -129,18 +135,33 @@ pub fn check(stage: &Stage) -> Result<(), Error> {
             }
         }
     }
-    match &stage.source {
-        Some(Source::Resistive { resistance }) => {
-            if resistance.nominal < 0.0 || !resistance.nominal.is_finite() {
-                return Err(Error::Negative { what: "source.resistance", given: resistance.nominal });
+    for source in stage.sources.iter().flatten() {
+        match source {
+            Source::Resistive { resistance } => {
+                if resistance.nominal < 0.0 || !resistance.nominal.is_finite() {
+                    return Err(Error::Negative { what: "source.resistance", given: resistance.nominal });
+                }
+                tolerance("source.resistance", resistance)?;
             }
-            tolerance("source.resistance", resistance)?;
+            Source::Capacitive { capacitance } => {
+                positive("source.capacitance", capacitance.nominal)?;
+                tolerance("source.capacitance", capacitance)?;
+            }
+            Source::Photodiode { capacitance, shunt_resistance, dark_current } => {
+                positive("source.capacitance", capacitance.nominal)?;
+                tolerance("source.capacitance", capacitance)?;
+                if let Some(shunt) = shunt_resistance {
+                    positive("source.shunt_resistance", shunt.nominal)?;
+                    tolerance("source.shunt_resistance", shunt)?;
+                }
+                if let Some(dark) = dark_current {
+                    if dark.nominal < 0.0 || !dark.nominal.is_finite() {
+                        return Err(Error::Negative { what: "source.dark_current", given: dark.nominal });
+                    }
+                    tolerance("source.dark_current", dark)?;
+                }
+            }
         }
-        Some(Source::Capacitive { capacitance }) => {
-            positive("source.capacitance", capacitance.nominal)?;
-            tolerance("source.capacitance", capacitance)?;
-        }
-        None => {}
     }
     for (what, value) in [
         ("load.resistance", &stage.load.resistance),
@@ -170,7 +191,7 @@ pub fn check(stage: &Stage) -> Result<(), Error> {
         positive("band.to", band.to)?;
         span("band", band.from, band.to)?;
     }
-    if let Some(signal) = stage.signal {
+    for signal in stage.signals.iter().flatten() {
         if signal.peak < 0.0 || !signal.peak.is_finite() {
             return Err(Error::Negative { what: "signal.peak", given: signal.peak });
         }
@@ -179,18 +200,24 @@ pub fn check(stage: &Stage) -> Result<(), Error> {
         }
         positive("signal.crest_factor", signal.crest_factor)?;
     }
+    if let Some(common) = stage.common_mode {
+        span("signal.common_mode", common.low, common.high)?;
+    }
     for limit in &stage.limits {
         if matches!(limit.query.figure.argument(), Argument::Frequency) {
             positive(limit.query.figure.id(), limit.query.at.unwrap_or(0.0))?;
         }
     }
-    part(stage)
+    for amplifier in 0..stage.kind.spec().amplifiers {
+        part(stage.part_of(amplifier))?;
+    }
+    Ok(())
 }
 
 /// What no amplifier has: a figure that is zero, negative or not finite where the model divides by it.
-fn part(stage: &Stage) -> Result<(), Error> {
+fn part(part: &crate::part::Part) -> Result<(), Error> {
     for &figure in PartFigure::ALL {
-        let rating = stage.part.rating(figure);
+        let rating = part.rating(figure);
         let may_be_zero = matches!(
             figure,
             PartFigure::OutputResistance
@@ -219,10 +246,10 @@ fn part(stage: &Stage) -> Result<(), Error> {
             }
         }
     }
-    for &pole in stage.part.poles.iter().flatten() {
+    for &pole in part.poles.iter().flatten() {
         positive("gain.poles", pole)?;
     }
-    for zero in &stage.part.zeros {
+    for zero in &part.zeros {
         positive("gain.zeros", zero.frequency)?;
     }
     Ok(())
@@ -275,7 +302,8 @@ fn figure_row(spread: &mut Spread<'_>, query: Query) -> FigureRow {
         let at_low = spread.basis(query, &extremes, &extremes.low, tolerance);
         at_low.max(spread.basis(query, &extremes, &extremes.high, tolerance))
     });
-    FigureRow { query, range: range(&extremes.low, &extremes.high), nominal: extremes.centre, basis }
+    let dimension = query.figure.dimension_in(spread.kind());
+    FigureRow { query, dimension, range: range(&extremes.low, &extremes.high), nominal: extremes.centre, basis }
 }
 
 fn limit_row(spread: &mut Spread<'_>, limit: &Limit) -> LimitRow {
@@ -317,6 +345,7 @@ fn limit_row(spread: &mut Spread<'_>, limit: &Limit) -> LimitRow {
     let corner = if matches!(limit.bound, Bound::Report) { Vec::new() } else { extreme.corner };
     LimitRow {
         limit: limit.clone(),
+        dimension: query.figure.dimension_in(spread.kind()),
         range,
         worst: if matches!(limit.bound, Bound::Report) { nominal.clone() } else { extreme.outcome },
         nominal,
@@ -359,6 +388,7 @@ fn working(solution: &Solution<'_>) -> Vec<crate::report::Working> {
     let mut lines = (stage.kind.spec().working)(stage);
     lines.retain(|l| l.handbook.is_finite());
     for line in &mut lines {
+        line.dimension = line.query.figure.dimension_in(stage.kind);
         line.exact = outcome(solution, line.query);
     }
     lines.extend(full_power(solution));
@@ -367,15 +397,16 @@ fn working(solution: &Solution<'_>) -> Vec<crate::report::Working> {
 
 /// The handbook's full-power bandwidth beside ours.
 fn full_power(solution: &Solution<'_>) -> Option<crate::report::Working> {
-    let signal = solution.model.stage.signal?;
+    let signal = solution.model.stage.signal()?;
     let slew = solution.part(PartFigure::SlewRise)?.min(solution.part(PartFigure::SlewFall)?);
-    let amplitude = solution.dc_gain().abs() * signal.peak;
+    let amplitude = response::reference(solution).gain.abs() * signal.peak;
     if !(amplitude > 0.0 && amplitude.is_finite()) {
         return None;
     }
     let query = Query::of(Figure::FullPowerBandwidth);
     Some(crate::report::Working {
         query,
+        dimension: Dimension::Frequency,
         formula: "f = SR/(2π·Vpk)",
         numbers: alloc::vec![("SR", slew, Dimension::SlewRate), ("Vpk", amplitude, Dimension::Voltage)],
         handbook: slew / (core::f64::consts::TAU * amplitude),
@@ -398,7 +429,7 @@ fn cautions(spread: &mut Spread<'_>) -> Vec<Caution> {
     if let (Some(needed), None) = (solution.part(PartFigure::StableGainMin), analysis::missing_small_signal(solution))
         && let Some(crossover) = margins::margins(solution).crossover
     {
-        let (above, below) = solution.amplifier();
+        let (above, below) = solution.amplifier(margins::margins(solution).amplifier);
         let omega = solution.scaled(crossover);
         // At crossover |A·β| = 1, so the noise gain there is |A|.
         let noise_gain = crate::solution::magnitude(above.at(omega) / below.at(omega));
@@ -456,18 +487,19 @@ fn curves(solution: &Solution<'_>, report: &mut Report) {
     let loop_edge = margins::margins(solution).crossover;
     let (from, to) = window(solution, loop_edge);
     let looped = solution.looped();
-    report.loop_gain = response::curve(solution, &looped.returned, &looped.open, from, to, POINTS);
+    let worst = margins::margins(solution).amplifier;
+    report.loop_gain = response::curve(solution, &looped.returned[worst], &looped.open[worst], from, to, POINTS);
     if solution.oscillates() {
         return;
     }
-    let load = &looped.forward[usize::from(solution.model.network.load.0)];
+    let load = &looped.forward[0][usize::from(solution.model.network.load.0)];
     report.response = response::curve(solution, load, &looped.closed, from, to, POINTS);
     if outcome(solution, Query::at(Figure::NoiseDensityAt, 1e3)).value().is_some() {
         report.noise_shares = noise::shares(solution);
         let (low, high) = solution.model.stage.band.map_or((from, to), |b| (f64::min(b.from, from), f64::max(b.to, to)));
         report.density = noise::curve(solution, low, high, POINTS, &report.noise_shares);
     }
-    if solution.model.stage.signal.is_some() {
+    if solution.model.stage.signal().is_some() {
         report.envelope = swing::envelope(solution, from, to, ENVELOPE_POINTS);
     }
 }
@@ -477,7 +509,7 @@ fn window(solution: &Solution<'_>, crossover: Option<f64>) -> (f64, f64) {
     let bandwidth = response::edges(solution).bandwidth;
     let mut low = crossover.unwrap_or(f64::INFINITY).min(bandwidth);
     let mut high = crossover.unwrap_or(0.0).max(if bandwidth.is_finite() { bandwidth } else { 0.0 });
-    if let Some(frequency) = solution.model.stage.signal.and_then(|s| s.frequency) {
+    if let Some(frequency) = solution.model.stage.signal().and_then(|s| s.frequency) {
         low = low.min(frequency);
         high = high.max(frequency);
     }

@@ -25,6 +25,10 @@ pub enum Dimension {
     Voltage,
     /// A.
     Current,
+    /// C.
+    Charge,
+    /// V/C, the gain of a charge stage.
+    VoltsPerCoulomb,
     /// W.
     Power,
     /// K, an absolute temperature, read in °C.
@@ -61,6 +65,8 @@ impl Dimension {
             Self::Capacitance => "F",
             Self::Voltage => "V",
             Self::Current => "A",
+            Self::Charge => "C",
+            Self::VoltsPerCoulomb => "V/C",
             Self::Power => "W",
             Self::Temperature | Self::TemperatureDifference => "K",
             Self::ThermalResistance => "K/W",

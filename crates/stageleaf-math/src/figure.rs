@@ -1,6 +1,6 @@
 //! The figures that a stage is judged by: stable ids, the same in limits, prose, JSON and code.
 
-use crate::dimension::Dimension;
+use crate::{dimension::Dimension, kind::Kind};
 
 macro_rules! figures {
     ($($name:ident $id:literal $dimension:ident $argument:ident $group:ident $title:literal, $meaning:literal;)*) => {
@@ -99,6 +99,20 @@ figures! {
     Dissipation "dissipation" Power None Power "Dissipation", "Power turned to heat in the amplifier's package, at the worst amplitude up to the stated signal.";
     JunctionTemperature "junction_temperature" Temperature None Power "Junction temperature", "Ambient plus dissipation times the thermal resistance.";
     ResistorDissipation "resistor_dissipation" Power None Power "Resistor dissipation", "Largest power in any one resistor of the stage.";
+}
+
+impl Figure {
+    /// What the number measures on a kind of stage: a transimpedance stage's gain is in Ω, and what is referred to its input in A.
+    #[must_use]
+    pub const fn dimension_in(self, kind: Kind) -> Dimension {
+        let gain = kind.spec().gain;
+        match (self, gain) {
+            (Self::Gain | Self::GainAtSignal | Self::GainAt, _) => gain,
+            (Self::InputOffset | Self::InputNoise, Dimension::Resistance) => Dimension::Current,
+            (Self::InputOffset | Self::InputNoise, Dimension::VoltsPerCoulomb) => Dimension::Charge,
+            _ => self.dimension(),
+        }
+    }
 }
 
 /// A figure with its argument, as a limit or a prose quote names it.

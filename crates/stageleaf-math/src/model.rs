@@ -5,8 +5,9 @@ use core::cell::OnceCell;
 
 use crate::{
     analysis::second_pole,
+    kind::Drives,
     network::{
-        Builder, DRIVEN, Law, Network, Node, Without,
+        Builder, Law, Network, Node, Without,
         expand::{Column, DEGREE, Plan, Shape, Weight},
     },
     parameters::Parameters,
@@ -17,10 +18,19 @@ use crate::{
 /// An expansion with the branches that it runs over.
 #[derive(Clone, Debug)]
 pub struct Expansion {
-    /// Elements of each branch (indices into the network's), in the plan's column order; empty for the amplifier's column.
-    branches: Vec<Vec<usize>>,
+    /// What each column of the plan is.
+    columns: Vec<Members>,
     /// Compiled steps.
     pub plan: Plan,
+}
+
+/// What a column of a plan is made of.
+#[derive(Clone, Debug)]
+enum Members {
+    /// Elements in parallel (indices into the network's).
+    Elements(Vec<usize>),
+    /// An amplifier's output.
+    Amplifier(usize),
 }
 
 /// A compiled stage.
@@ -32,19 +42,23 @@ pub struct Model<'a> {
     pub parameters: Parameters,
     /// The network.
     pub network: Network,
-    /// Voltages at all nodes for the source.
-    pub forward: Expansion,
+    /// For each input, voltages at all nodes.
+    pub forward: Vec<Expansion>,
+    /// The determinant with ideal voltage sources at zero.
+    pub closed: Expansion,
     /// Voltage at the load for a current into any node.
     pub adjoint: Expansion,
-    /// Voltage at the load for a voltage in series with the amplifier's input (to be multiplied by its gain).
-    pub series_input: Expansion,
-    /// Higher poles in Hz, stated or solved from a stated phase margin.
-    pub poles: Option<Vec<f64>>,
-    /// Zeros.
-    pub zeros: Vec<Zero>,
+    /// For each amplifier, voltage at the load for a voltage in series with its input (to be multiplied by its gain).
+    pub series_input: Vec<Expansion>,
+    /// What is judged as signals: each drive's weight on each input.
+    pub drives: Vec<Vec<f64>>,
+    /// By amplifier: higher poles in Hz, stated or solved from a stated phase margin.
+    pub poles: Vec<Option<Vec<f64>>>,
+    /// By amplifier: zeros.
+    pub zeros: Vec<Vec<Zero>>,
     /// Impedance and angular frequency by which the network is scaled.
     pub scale: (f64, f64),
-    /// Whether the part states all that response and loop depend on, so that stability can be judged.
+    /// Whether the parts state all that response and loop depend on, so that stability can be judged.
     pub small_signal: bool,
     input: OnceCell<Probe>,
     output: OnceCell<Probe>,
@@ -76,41 +90,60 @@ impl<'a> Model<'a> {
     pub fn compile(stage: &'a Stage) -> Self {
         let parameters = Parameters::of(stage);
         let network = Builder::lay_out(stage, &parameters, Without::default());
-        let (minus, plus) = (network.amplifier.minus, network.amplifier.plus);
-        debug_assert!(minus != plus, "the inputs are apart");
-        let source = DRIVEN.0;
-        let forward = Expansion::compile(&network, Shape::Forward { source });
-        let adjoint = Expansion::compile(&network, Shape::Adjoint { source, sense: network.load.0 });
-        let series_input =
-            Expansion::compile(&network, Shape::Closed { both: 1 << source, row: network.amplifier.pin.0, column: network.load.0 });
+        debug_assert!(network.amplifiers.iter().all(|a| a.minus != a.plus), "the inputs are apart");
+        debug_assert!(network.amplifiers.len() == stage.kind.spec().amplifiers, "a kind has as many amplifiers as it says");
+        let held = network.held();
+        let forward = (0..network.inputs.len())
+            .map(|input| {
+                let source = network.input_node(input).0;
+                Expansion::compile(&network, Shape::Forward { source, held: held & !(1 << source) })
+            })
+            .collect();
+        let closed = Expansion::compile(&network, Shape::Closed { both: held, row: 0, column: 0 });
+        let adjoint = Expansion::compile(&network, Shape::Adjoint { held, sense: network.load.0 });
+        let series_input = network
+            .amplifiers
+            .iter()
+            .map(|a| Expansion::compile(&network, Shape::Closed { both: held, row: a.pin.0, column: network.load.0 }))
+            .collect();
         let scale = scale(&network, &parameters);
-        let small_signal = SMALL_SIGNAL.iter().all(|&f| parameters.part_slot(f).is_some());
-        let poles = stage.part.poles.clone().or_else(|| second_pole::solve(&stage.part).map(|f| vec![f]));
-        let has_poles = poles.is_some();
+        let parts = || (0..network.amplifiers.len()).map(|a| stage.part_of(a));
+        let poles: Vec<Option<Vec<f64>>> = parts().map(|p| p.poles.clone().or_else(|| second_pole::solve(p).map(|f| vec![f]))).collect();
+        let zeros = parts().map(|p| p.zeros.clone()).collect();
+        let stated = |a: usize| SMALL_SIGNAL.iter().all(|&f| parameters.part_slot(a, f).is_some());
+        let small_signal = poles.iter().all(Option::is_some) && (0..network.amplifiers.len()).all(stated);
+        let inputs = network.inputs.len();
+        let drives = match stage.kind.spec().drives {
+            Drives::Each => (0..inputs).map(|i| (0..inputs).map(|k| if k == i { 1.0 } else { 0.0 }).collect()).collect(),
+            Drives::Differential => vec![vec![-0.5, 0.5], vec![1.0, 1.0]],
+        };
         Self {
             stage,
             parameters,
-            network,
             forward,
+            closed,
             adjoint,
             series_input,
+            drives,
             poles,
-            zeros: stage.part.zeros.clone(),
+            zeros,
             scale,
-            small_signal: small_signal && has_poles,
+            small_signal,
             input: OnceCell::new(),
             output: OnceCell::new(),
+            network,
         }
     }
 
-    /// The impedance at the stage's signal terminal.
+    /// The impedance at the first input's terminal.
     pub fn input_probe(&self) -> &Probe {
-        self.input.get_or_init(|| self.probe(Without { source: true, load: false }, 1 << DRIVEN.0, 0))
+        let node = 1 << self.network.input_node(0).0;
+        self.input.get_or_init(|| self.probe(Without { source: true, load: false }, node, self.network.held() & !node))
     }
 
     /// The impedance at the output terminal.
     pub fn output_probe(&self) -> &Probe {
-        self.output.get_or_init(|| self.probe(Without { source: false, load: true }, 1 << self.network.load.0, 1 << DRIVEN.0))
+        self.output.get_or_init(|| self.probe(Without { source: false, load: true }, 1 << self.network.load.0, self.network.held()))
     }
 
     fn probe(&self, without: Without, terminal: u16, held: u16) -> Probe {
@@ -120,30 +153,17 @@ impl<'a> Model<'a> {
         Probe { network, above, below }
     }
 
-    /// The transfer from the source to the load at DC, without solving the rest.
+    /// A figure of an amplifier's part in a build.
     #[must_use]
-    pub fn dc_gain(&self, values: &[f64]) -> f64 {
-        let resistance = self.part(values, PartFigure::OutputResistance).unwrap_or(0.0);
-        let open_loop = self.part(values, PartFigure::OpenLoop).unwrap_or(1.0);
-        let weights = self.forward.weights(&self.network, values, resistance, self.scale);
-        let mut scratch = Vec::new();
-        self.forward.plan.evaluate_constants(&weights, &mut scratch);
-        let constant = |node: Node| -> f64 {
-            self.forward
-                .plan
-                .outcomes
-                .iter()
-                .filter(|o| o.joined >> node.0 & 1 == 1)
-                .map(|o| self.forward.plan.polynomial(o, &scratch)[0] * if o.amplified { open_loop } else { 1.0 })
-                .sum()
-        };
-        constant(self.network.load) / constant(DRIVEN)
+    pub fn part(&self, values: &[f64], amplifier: usize, figure: PartFigure) -> Option<f64> {
+        self.parameters.part_slot(amplifier, figure).map(|slot| values[slot])
     }
 
-    /// A part figure's value in a build.
+    /// Each amplifier's output resistance; one that is not stated counts as zero (figures that depend on it are undetermined).
     #[must_use]
-    pub fn part(&self, values: &[f64], figure: PartFigure) -> Option<f64> {
-        self.parameters.part_slot(figure).map(|slot| values[slot])
+    pub fn output_resistances(&self, values: &[f64]) -> Vec<f64> {
+        let part = |a| self.part(values, a, PartFigure::OutputResistance).unwrap_or(0.0);
+        (0..self.network.amplifiers.len()).map(part).collect()
     }
 }
 
@@ -164,39 +184,51 @@ impl Expansion {
         }
         // In the order of the signal's path, so that few nodes are open at a time.
         pairs.sort_by_key(|&((a, b), _)| (b, a));
-        let amplifier = network.amplifier;
-        let mut columns = Vec::with_capacity(pairs.len() + 1);
-        let mut branches = Vec::with_capacity(pairs.len() + 1);
-        let mut degrees = Vec::with_capacity(pairs.len() + 1);
-        columns.push(Column::Amplifier { plus: amplifier.plus.0, minus: amplifier.minus.0, pin: amplifier.pin.0 });
-        branches.push(Vec::new());
-        degrees.push(0);
-        for ((a, b), members) in pairs {
-            columns.push(Column::Branch(a.0, b.0));
-            degrees.push(branch_degree(network, &members));
-            branches.push(members);
+        let mut list: Vec<(u8, u8, Column, usize, Members)> = pairs
+            .into_iter()
+            .map(|((a, b), members)| (b.0, a.0, Column::Branch(a.0, b.0), branch_degree(network, &members), Members::Elements(members)))
+            .collect();
+        for (index, amplifier) in network.amplifiers.iter().enumerate() {
+            let column = Column::Amplifier { plus: amplifier.plus.0, minus: amplifier.minus.0, pin: amplifier.pin.0 };
+            list.push((amplifier.pin.0, 0, column, 0, Members::Amplifier(index)));
         }
-        Self { plan: Plan::compile(network.nodes, &columns, &degrees, shape), branches }
+        // In the order of the signal's path, so that few nodes are open at a time. The sort is stable: amplifiers keep their order.
+        list.sort_by_key(|(b, a, ..)| (*b, *a));
+        let order: Vec<usize> = list.iter().filter_map(|l| if let Members::Amplifier(i) = l.4 { Some(i) } else { None }).collect();
+        debug_assert!(order.windows(2).all(|w| w[0] < w[1]), "amplifiers' pins rise with their numbers");
+        let columns: Vec<Column> = list.iter().map(|l| l.2).collect();
+        let degrees: Vec<usize> = list.iter().map(|l| l.3).collect();
+        Self { plan: Plan::compile(network.nodes, &columns, &degrees, shape), columns: list.into_iter().map(|l| l.4).collect() }
     }
 
-    /// The numeric weights for a build, with the output resistance in the amplifier's column.
-    pub fn weights(&self, network: &Network, values: &[f64], output_resistance: f64, scale: (f64, f64)) -> Vec<Weight> {
-        self.branches
+    /// The numeric weights for a build, with output resistances in the amplifiers' columns.
+    #[must_use]
+    pub fn weights(&self, network: &Network, values: &[f64], resistances: &[f64], scale: (f64, f64)) -> Vec<Weight> {
+        self.columns
             .iter()
             .map(|members| {
                 let mut weight = Weight { out: [0.0; DEGREE + 1], taken: [0.0; DEGREE + 1] };
-                if members.is_empty() {
-                    weight.out[0] = output_resistance / scale.0;
-                    weight.taken[0] = 1.0;
-                } else {
-                    weight.out[0] = 1.0;
-                    for &index in members {
-                        weight = beside(&weight, network.elements[index].law, values, scale);
+                match members {
+                    Members::Amplifier(index) => {
+                        weight.out[0] = resistances[*index] / scale.0;
+                        weight.taken[0] = 1.0;
+                    }
+                    Members::Elements(members) => {
+                        weight.out[0] = 1.0;
+                        for &index in members {
+                            weight = beside(&weight, network.elements[index].law, values, scale);
+                        }
                     }
                 }
                 weight
             })
             .collect()
+    }
+
+    /// The column of an amplifier.
+    #[must_use]
+    pub fn amplifier_column(&self, amplifier: usize) -> Option<usize> {
+        self.columns.iter().position(|m| matches!(m, Members::Amplifier(i) if *i == amplifier))
     }
 }
 
@@ -264,7 +296,7 @@ fn scale(network: &Network, parameters: &Parameters) -> (f64, f64) {
     }
     // Powers of two, so that scaling is exact.
     let ohms = if resistors > 0.0 { libm::exp2(libm::round(ohms / resistors)) } else { 1024.0 };
-    let gbw = parameters.part_slot(PartFigure::Gbw).map_or(1e6, |slot| parameters.entries[slot].nominal);
+    let gbw = parameters.part_slot(0, PartFigure::Gbw).map_or(1e6, |slot| parameters.entries[slot].nominal);
     let farads = if capacitors > 0.0 { libm::exp2(libm::round(farads / capacitors)) } else { 1.0 / (gbw * ohms) };
     (ohms, libm::exp2(libm::round(libm::log2(1.0 / (ohms * farads)))))
 }

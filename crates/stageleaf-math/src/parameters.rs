@@ -59,7 +59,8 @@ pub struct Entry {
 pub struct Parameters {
     /// Slots, in a fixed order: components, source, load, strays, supplies, temperature, part figures, headroom.
     pub entries: Vec<Entry>,
-    part: [u8; PartFigure::COUNT],
+    /// By amplifier: slot of each part figure. Amplifiers of one part share its slots.
+    parts: Vec<[u8; PartFigure::COUNT]>,
     supply: Option<(usize, usize)>,
     temperature: Option<usize>,
     headroom: usize,
@@ -88,11 +89,28 @@ impl Parameters {
         for component in &stage.components {
             passive(Parameter::Component(component.name), &component.value);
         }
-        match &stage.source {
-            Some(Source::Resistive { resistance: value } | Source::Capacitive { capacitance: value }) => {
-                passive(Parameter::SourceImpedance, value);
+        for (input, source) in (0u8..).zip(&stage.sources) {
+            match source {
+                Some(Source::Resistive { resistance: value } | Source::Capacitive { capacitance: value }) => {
+                    passive(Parameter::SourceImpedance(input), value);
+                }
+                Some(Source::Photodiode { capacitance, shunt_resistance, dark_current }) => {
+                    passive(Parameter::SourceImpedance(input), capacitance);
+                    if let Some(value) = shunt_resistance {
+                        passive(Parameter::SourceShunt(input), value);
+                    }
+                    if let Some(value) = dark_current {
+                        passive(Parameter::DarkCurrent(input), value);
+                    }
+                }
+                None => {}
             }
-            None => {}
+        }
+        if let Some(reference) = &stage.reference {
+            passive(Parameter::ReferenceVoltage, &reference.voltage);
+            if let Some(value) = &reference.resistance {
+                passive(Parameter::ReferenceResistance, value);
+            }
         }
         for (parameter, value) in [
             (Parameter::LoadResistance, &stage.load.resistance),
@@ -123,32 +141,50 @@ impl Parameters {
         });
         let temperature =
             stage.ambient.map(|a| stated(Parameter::Temperature, a.range, touch::NOISE | touch::DC | touch::SWING | touch::POWER));
-        let mut part = [ABSENT; PartFigure::COUNT];
+        if let Some(span) = stage.common_mode {
+            stated(Parameter::CommonMode, span, touch::DC | touch::SWING);
+        }
+        let mut parts = Vec::new();
+        let mut main = [ABSENT; PartFigure::COUNT];
         for &figure in PartFigure::ALL {
-            if let Some(entry) = part_entry(figure, stage.part.rating(figure)) {
-                part[figure as usize] = u8::try_from(entries.len()).unwrap_or(ABSENT);
+            if let Some(entry) = part_entry(Parameter::Part(figure), figure, stage.part.rating(figure)) {
+                main[figure as usize] = u8::try_from(entries.len()).unwrap_or(ABSENT);
                 entries.push(entry);
             }
         }
+        for amplifier in 0..(stage.kind.spec().amplifiers) {
+            let mut slots = main;
+            if let Some((number, part)) = stage.parts.iter().find(|(a, _)| *a == amplifier + 1) {
+                slots = [ABSENT; PartFigure::COUNT];
+                for &figure in PartFigure::ALL {
+                    let parameter = Parameter::PartOf(u8::try_from(*number).unwrap_or(u8::MAX), figure);
+                    if let Some(entry) = part_entry(parameter, figure, part.rating(figure)) {
+                        slots[figure as usize] = u8::try_from(entries.len()).unwrap_or(ABSENT);
+                        entries.push(entry);
+                    }
+                }
+            }
+            parts.push(slots);
+        }
         let headroom = entries.len();
         entries.push(headroom_entry(stage));
-        Self { entries, part, supply, temperature, headroom }
+        Self { entries, parts, supply, temperature, headroom }
     }
 
     /// The slot of a parameter, if the stage has it.
     #[must_use]
     pub fn slot(&self, parameter: Parameter) -> Option<usize> {
         match parameter {
-            Parameter::Part(figure) => self.part_slot(figure),
+            Parameter::Part(figure) => self.part_slot(0, figure),
             other => self.entries.iter().position(|e| e.parameter == other),
         }
     }
 
-    /// The slot of a part figure, if the part states it.
+    /// The slot of a figure of an amplifier's part, if the part states it.
     #[must_use]
-    pub const fn part_slot(&self, figure: PartFigure) -> Option<usize> {
-        let slot = self.part[figure as usize];
-        if slot == ABSENT { None } else { Some(slot as usize) }
+    pub fn part_slot(&self, amplifier: usize, figure: PartFigure) -> Option<usize> {
+        let slot = self.parts.get(amplifier)?[figure as usize];
+        (slot != ABSENT).then_some(usize::from(slot))
     }
 
     /// Slots of positive and negative supply.
@@ -182,7 +218,7 @@ impl Parameters {
     }
 }
 
-fn part_entry(figure: PartFigure, rating: &Rating) -> Option<Entry> {
+fn part_entry(parameter: Parameter, figure: PartFigure, rating: &Rating) -> Option<Entry> {
     let nominal = rating.nominal(figure.worse())?;
     let nominal_grade = match (rating.typ, figure.worse(), rating.min, rating.max) {
         (Some(_), ..) => Grade::Typical,
@@ -195,15 +231,7 @@ fn part_entry(figure: PartFigure, rating: &Rating) -> Option<Entry> {
     };
     let (low, low_grade) = bound(rating.min, f64::min);
     let (high, high_grade) = bound(rating.max, f64::max);
-    Some(Entry {
-        parameter: Parameter::Part(figure),
-        nominal,
-        low,
-        high,
-        grade: [nominal_grade, low_grade, high_grade],
-        drift: 0.0,
-        touches: part_touches(figure),
-    })
+    Some(Entry { parameter, nominal, low, high, grade: [nominal_grade, low_grade, high_grade], drift: 0.0, touches: part_touches(figure) })
 }
 
 const fn part_touches(figure: PartFigure) -> u8 {

@@ -3,6 +3,7 @@
 use alloc::{string::String, vec::Vec};
 
 use crate::{
+    dimension::Dimension,
     figure::Query,
     limit::{Basis, Limit, Verdict},
     part::PartFigure,
@@ -86,8 +87,18 @@ impl Outcome {
 pub enum Parameter {
     /// A component, by its name.
     Component(&'static str),
-    /// Source resistance or capacitance.
-    SourceImpedance,
+    /// Source resistance or capacitance of an input (from 0).
+    SourceImpedance(u8),
+    /// Shunt resistance of an input's source.
+    SourceShunt(u8),
+    /// Dark current of an input's source.
+    DarkCurrent(u8),
+    /// Common-mode voltage of the inputs.
+    CommonMode,
+    /// Reference voltage.
+    ReferenceVoltage,
+    /// Output resistance of the reference.
+    ReferenceResistance,
     /// Load resistance.
     LoadResistance,
     /// Load capacitance.
@@ -106,6 +117,8 @@ pub enum Parameter {
     Temperature,
     /// A figure of the part.
     Part(PartFigure),
+    /// A figure of another amplifier's part (amplifier from 1).
+    PartOf(u8, PartFigure),
     /// Headroom tables between typical and guaranteed (0: typical, 1: guaranteed).
     Headroom,
 }
@@ -126,6 +139,8 @@ pub struct Coordinate {
 pub struct FigureRow {
     /// The figure.
     pub query: Query,
+    /// What it measures on this kind of stage.
+    pub dimension: Dimension,
     /// At nominal values.
     pub nominal: Outcome,
     /// Least and greatest over the spread, where both are values.
@@ -139,6 +154,8 @@ pub struct FigureRow {
 pub struct LimitRow {
     /// The limit.
     pub limit: Limit,
+    /// What its figure measures on this kind of stage.
+    pub dimension: Dimension,
     /// The figure at nominal values.
     pub nominal: Outcome,
     /// Least and greatest over the spread, where both are values.
@@ -186,16 +203,20 @@ pub struct EnvelopePoint {
 pub enum NoiseOrigin {
     /// Thermal noise of a component.
     Component(&'static str),
-    /// Thermal noise of the source resistance.
-    SourceResistance,
+    /// Thermal noise of an input's source resistance (input from 0).
+    SourceResistance(u8),
+    /// Shot noise of an input's source current (input from 0).
+    SourceShot(u8),
+    /// Thermal noise of the reference's output resistance.
+    ReferenceResistance,
     /// Thermal noise of the load resistance.
     LoadResistance,
-    /// The amplifier's voltage noise.
-    AmplifierVoltage,
+    /// An amplifier's voltage noise (amplifier from 0).
+    AmplifierVoltage(u8),
     /// Current noise at the non-inverting input.
-    CurrentNonInverting,
+    CurrentNonInverting(u8),
     /// Current noise at the inverting input.
-    CurrentInverting,
+    CurrentInverting(u8),
 }
 
 /// A noise source's part in the total.
@@ -231,6 +252,8 @@ pub enum DcCause {
     BiasCurrent,
     /// Difference of the two bias currents.
     OffsetCurrent,
+    /// Dark current of the source.
+    DarkCurrent,
     /// Common-mode voltage over the rejection.
     CommonMode,
     /// Supply deviation over the rejection, positive rail.
@@ -255,10 +278,12 @@ pub struct DcLine {
 pub struct Working {
     /// The figure.
     pub query: Query,
+    /// What it measures on this kind of stage.
+    pub dimension: Dimension,
     /// The handbook's formula in the field's notation.
     pub formula: &'static str,
     /// The symbols of the formula with their values, SI, in the order in which they occur.
-    pub numbers: Vec<(&'static str, f64, crate::dimension::Dimension)>,
+    pub numbers: Vec<(&'static str, f64, Dimension)>,
     /// What the formula gives.
     pub handbook: f64,
     /// What the network gives.

@@ -1,37 +1,37 @@
 //! One build of a stage, solved: transfers as ratios of polynomials, worked out on demand and kept.
 
-use alloc::vec::Vec;
+use alloc::{vec, vec::Vec};
 use core::{cell::OnceCell, f64::consts::TAU};
 
 use num_complex::Complex64;
 
 use crate::{
     model::{Expansion, Model},
-    network::{Network, Node},
+    network::{Drive, Network, Node},
     part::PartFigure,
     polynomial::Polynomial,
 };
 
-/// The loop and the transfers from the source, over a common denominator in scaled frequency.
+/// The loop and the transfers from the inputs, over a common denominator in scaled frequency.
 #[derive(Clone, Debug)]
 pub struct Loop {
-    /// Closed loop: `D = P·X0 + A0·Z·XA`.
+    /// Closed loop: the determinant with every amplifier's gain in it.
     pub closed: Polynomial,
-    /// Open loop: `P·X0`, the denominator of the return ratio.
-    pub open: Polynomial,
-    /// `A0·Z·XA`, the numerator of the return ratio.
-    pub returned: Polynomial,
-    /// Numerator of the voltage at each node for the source, by node number.
-    pub forward: Vec<Polynomial>,
+    /// By amplifier: the return ratio's numerator and denominator, the other amplifiers alive; they add up to `closed`.
+    pub returned: Vec<Polynomial>,
+    /// See `returned`.
+    pub open: Vec<Polynomial>,
+    /// By drive: numerators of the voltage at each node, by node number.
+    pub forward: Vec<Vec<Polynomial>>,
 }
 
-/// Numerators of the load's voltage for currents into nodes and for a voltage at the amplifier's input.
+/// Numerators of the load's voltage for currents into nodes and for voltages at the amplifiers' inputs.
 #[derive(Clone, Debug)]
 pub struct Injection {
     /// For a current into each node, by node number, scaled by the network's impedance.
     pub current: Vec<Polynomial>,
-    /// For a voltage in series with the amplifier's input.
-    pub input: Polynomial,
+    /// By amplifier: for a voltage in series with its input.
+    pub input: Vec<Polynomial>,
 }
 
 /// Where the network's features lie, in scaled angular frequency.
@@ -39,10 +39,10 @@ pub struct Injection {
 pub struct Roots {
     /// Closed-loop poles.
     pub poles: Vec<Complex64>,
-    /// Zeros of the transfer to the load.
+    /// Zeros of the first drive's transfer to the load.
     pub zeros: Vec<Complex64>,
-    /// Zeros of the return ratio.
-    pub loop_zeros: Vec<Complex64>,
+    /// By amplifier: zeros of the return ratio.
+    pub loop_zeros: Vec<Vec<Complex64>>,
 }
 
 /// A build.
@@ -57,12 +57,14 @@ pub struct Solution<'m> {
     injection: OnceCell<Injection>,
     roots: OnceCell<Roots>,
     grid: OnceCell<Vec<f64>>,
+    products: OnceCell<Vec<Polynomial>>,
     pub(crate) power: OnceCell<crate::analysis::thermal::Power>,
     pub(crate) dc: OnceCell<crate::analysis::dc::Budget>,
     pub(crate) noise: OnceCell<Option<f64>>,
     pub(crate) edges: OnceCell<crate::analysis::response::Edges>,
     pub(crate) margins: OnceCell<crate::analysis::margins::Margins>,
     pub(crate) swing: OnceCell<crate::analysis::swing::Swing>,
+    pub(crate) reference: OnceCell<crate::analysis::response::ReferencePoint>,
 }
 
 impl<'m> Solution<'m> {
@@ -77,19 +79,33 @@ impl<'m> Solution<'m> {
             injection: OnceCell::new(),
             roots: OnceCell::new(),
             grid: OnceCell::new(),
+            products: OnceCell::new(),
             power: OnceCell::new(),
             dc: OnceCell::new(),
             noise: OnceCell::new(),
             edges: OnceCell::new(),
             margins: OnceCell::new(),
             swing: OnceCell::new(),
+            reference: OnceCell::new(),
         }
     }
 
-    /// A part figure in this build.
+    /// A figure of the first amplifier's part in this build.
     #[must_use]
     pub fn part(&self, figure: PartFigure) -> Option<f64> {
-        self.model.part(&self.values, figure)
+        self.part_of(0, figure)
+    }
+
+    /// A figure of an amplifier's part in this build.
+    #[must_use]
+    pub fn part_of(&self, amplifier: usize, figure: PartFigure) -> Option<f64> {
+        self.model.part(&self.values, amplifier, figure)
+    }
+
+    /// How many amplifiers there are.
+    #[must_use]
+    pub fn amplifiers(&self) -> usize {
+        self.model.network.amplifiers.len()
     }
 
     /// Scaled angular frequency of `hertz`.
@@ -104,79 +120,157 @@ impl<'m> Solution<'m> {
         omega * self.model.scale.1 / TAU
     }
 
-    /// Output resistance in Ω; one that is not stated counts as zero (figures that depend on it are undetermined).
-    fn output_resistance(&self) -> f64 {
-        self.part(PartFigure::OutputResistance).unwrap_or(0.0)
-    }
-
-    /// The amplifier's gain as numerator `A0·Z` and denominator `P` in scaled frequency.
+    /// An amplifier's gain as numerator `A0·Z` and denominator `P` in scaled frequency.
     #[must_use]
-    pub fn amplifier(&self) -> (Polynomial, Polynomial) {
+    pub fn amplifier(&self, index: usize) -> (Polynomial, Polynomial) {
         let omega = self.model.scale.1;
-        let open_loop = self.part(PartFigure::OpenLoop).unwrap_or(1.0);
-        let dominant = self.part(PartFigure::Gbw).map_or(0.0, |gbw| open_loop * omega / (TAU * gbw));
-        let mut below = Polynomial(alloc::vec![1.0, dominant]);
+        let open_loop = self.part_of(index, PartFigure::OpenLoop).unwrap_or(1.0);
+        let dominant = self.part_of(index, PartFigure::Gbw).map_or(0.0, |gbw| open_loop * omega / (TAU * gbw));
+        let mut below = Polynomial(vec![1.0, dominant]);
         let factor = self.values[self.model.parameters.pole_factor()];
-        for pole in self.model.poles.iter().flatten() {
+        for pole in self.model.poles[index].iter().flatten() {
             below = below.times(&[1.0, omega / (TAU * pole * factor)]);
         }
-        let mut above = Polynomial(alloc::vec![open_loop]);
-        for zero in &self.model.zeros {
+        let mut above = Polynomial(vec![open_loop]);
+        for zero in &self.model.zeros[index] {
             let slope = omega / (TAU * zero.frequency);
             above = above.times(&[1.0, if zero.right_half_plane { -slope } else { slope }]);
         }
         (above, below)
     }
 
+    /// For every set of amplifiers, the product of its members' numerators and the others' denominators.
+    fn products(&self) -> &[Polynomial] {
+        self.products.get_or_init(|| {
+            let mut products = vec![Polynomial(vec![1.0])];
+            for index in 0..self.amplifiers() {
+                let (above, below) = self.amplifier(index);
+                let without: Vec<Polynomial> = products.iter().map(|p| p.times(&below.0)).collect();
+                let with: Vec<Polynomial> = products.iter().map(|p| p.times(&above.0)).collect();
+                products = without;
+                products.extend(with);
+            }
+            products
+        })
+    }
+
+    /// The sum over sets of amplifiers of their products with an expansion's terms, for the sets that `keep` admits.
+    fn combine(&self, terms: &[Polynomial], keep: impl Fn(usize) -> bool) -> Polynomial {
+        let mut sum = Polynomial::default();
+        for (set, (terms, product)) in terms.iter().zip(self.products()).enumerate() {
+            if keep(set) && !terms.0.is_empty() {
+                sum.add_scaled(&product.times(&terms.0).0, 1.0);
+            }
+        }
+        sum
+    }
+
+    fn run(&self, expansion: &Expansion, network: &Network, struck: Option<usize>) -> Vec<f64> {
+        let resistances = self.model.output_resistances(&self.values);
+        let mut weights = expansion.weights(network, &self.values, &resistances, self.model.scale);
+        if let Some(column) = struck.and_then(|a| expansion.amplifier_column(a)) {
+            weights[column].out[0] = 1.0;
+        }
+        let mut scratch = Vec::new();
+        expansion.plan.evaluate(&weights, &mut scratch);
+        scratch
+    }
+
+    /// An expansion's polynomials by node and by set of amplifiers; closed shapes have all in node 0.
+    fn expand(&self, expansion: &Expansion) -> Vec<Vec<Polynomial>> {
+        let nodes = self.model.network.nodes;
+        let sets = 1 << self.amplifiers();
+        let scratch = self.run(expansion, &self.model.network, None);
+        let mut table = vec![vec![Polynomial::default(); sets]; nodes];
+        for outcome in &expansion.plan.outcomes {
+            let terms = expansion.plan.polynomial(outcome, &scratch);
+            for (node, by_set) in table.iter_mut().enumerate() {
+                if outcome.joined >> node & 1 == 1 || outcome.joined == 0 && node == 0 {
+                    by_set[usize::from(outcome.amplified)].add_scaled(terms, 1.0);
+                }
+            }
+        }
+        table
+    }
+
     /// Loop and transfers.
     pub fn looped(&self) -> &Loop {
         self.looped.get_or_init(|| {
             let model = self.model;
-            let (plain, amplified) = self.expand(&model.forward, &model.network);
-            let (above, below) = self.amplifier();
-            let combine = |(a, b): (&Polynomial, &Polynomial)| {
-                let mut sum = a.times(&below.0);
-                sum.add_scaled(&above.times(&b.0).0, 1.0);
-                sum
-            };
-            let driven = usize::from(crate::network::DRIVEN.0);
-            let open = below.times(&plain[driven].0);
-            let returned = above.times(&amplified[driven].0);
-            let mut closed = open.clone();
-            closed.add_scaled(&returned.0, 1.0);
-            let forward = plain.iter().zip(&amplified).map(combine).collect();
-            Loop { closed, open, returned, forward }
+            let whole = self.expand(&model.closed);
+            let returned: Vec<Polynomial> = (0..self.amplifiers()).map(|a| self.combine(&whole[0], |set| set >> a & 1 == 1)).collect();
+            let open: Vec<Polynomial> = (0..self.amplifiers()).map(|a| self.combine(&whole[0], |set| set >> a & 1 == 0)).collect();
+            let mut closed = open[0].clone();
+            closed.add_scaled(&returned[0].0, 1.0);
+            let by_input: Vec<Vec<Polynomial>> = model
+                .forward
+                .iter()
+                .zip(&model.network.inputs)
+                .map(|(expansion, drive)| {
+                    let table = self.expand(expansion);
+                    table
+                        .iter()
+                        .map(|by_set| {
+                            let mut numerator = self.combine(by_set, |_| true);
+                            // A current's transfer is an impedance; a charge's current is its rate of change.
+                            let (ohms, omega) = model.scale;
+                            match drive {
+                                Drive::Voltage => {}
+                                Drive::Current => numerator.0.iter_mut().for_each(|c| *c *= ohms),
+                                Drive::Charge => {
+                                    numerator.0.iter_mut().for_each(|c| *c *= ohms * omega);
+                                    if !numerator.0.is_empty() {
+                                        numerator.0.insert(0, 0.0);
+                                    }
+                                }
+                            }
+                            numerator
+                        })
+                        .collect()
+                })
+                .collect();
+            let forward = model
+                .drives
+                .iter()
+                .map(|weights| {
+                    (0..model.network.nodes)
+                        .map(|node| {
+                            let mut sum = Polynomial::default();
+                            for (weight, numerators) in weights.iter().zip(&by_input) {
+                                if weight.abs() > 0.0 {
+                                    sum.add_scaled(&numerators[node].0, *weight);
+                                }
+                            }
+                            sum
+                        })
+                        .collect()
+                })
+                .collect();
+            Loop { closed, returned, open, forward }
         })
     }
 
-    /// Transfers to the load from currents and from the amplifier's input.
+    /// Transfers to the load from currents and from the amplifiers' inputs.
     pub fn injection(&self) -> &Injection {
         self.injection.get_or_init(|| {
             let model = self.model;
-            let (plain, amplified) = self.expand(&model.adjoint, &model.network);
-            let (above, below) = self.amplifier();
-            let current = plain
+            let current = self.expand(&model.adjoint).iter().map(|by_set| self.combine(by_set, |_| true)).collect();
+            let input = model
+                .series_input
                 .iter()
-                .zip(&amplified)
-                .map(|(a, b)| {
-                    let mut sum = a.times(&below.0);
-                    sum.add_scaled(&above.times(&b.0).0, 1.0);
-                    sum
+                .enumerate()
+                .map(|(amplifier, expansion)| {
+                    // Its own column takes no part: the pin's row is struck out. Its gain multiplies every term.
+                    let scratch = self.run(expansion, &model.network, Some(amplifier));
+                    let mut by_set = vec![Polynomial::default(); 1 << self.amplifiers()];
+                    for outcome in &expansion.plan.outcomes {
+                        let set = usize::from(outcome.amplified) | 1 << amplifier;
+                        by_set[set].add_scaled(expansion.plan.polynomial(outcome, &scratch), 1.0);
+                    }
+                    self.combine(&by_set, |_| true)
                 })
                 .collect();
-            // The amplifier's own column must not take part here: its weight when left out is 1.
-            let mut weights = model.series_input.weights(&model.network, &self.values, self.output_resistance(), model.scale);
-            weights[0].out[0] = 1.0;
-            let mut scratch = Vec::new();
-            let plan = &model.series_input.plan;
-            plan.evaluate(&weights, &mut scratch);
-            let mut input = Polynomial::default();
-            for outcome in &plan.outcomes {
-                if !outcome.amplified {
-                    input.add_scaled(plan.polynomial(outcome, &scratch), 1.0);
-                }
-            }
-            Injection { current, input: above.times(&input.0) }
+            Injection { current, input }
         })
     }
 
@@ -184,12 +278,12 @@ impl<'m> Solution<'m> {
     pub fn roots(&self) -> &Roots {
         self.roots.get_or_init(|| {
             let looped = self.looped();
-            let load = &looped.forward[usize::from(self.model.network.load.0)];
+            let load = &looped.forward[0][usize::from(self.model.network.load.0)];
             let near = self.near;
             Roots {
                 poles: looped.closed.roots(near.map(|r| &r.poles[..])),
                 zeros: load.roots(near.map(|r| &r.zeros[..])),
-                loop_zeros: looped.returned.roots(near.map(|r| &r.loop_zeros[..])),
+                loop_zeros: looped.returned.iter().enumerate().map(|(a, r)| r.roots(near.map(|n| &n.loop_zeros[a][..]))).collect(),
             }
         })
     }
@@ -208,7 +302,8 @@ impl<'m> Solution<'m> {
     pub fn grid(&self) -> &[f64] {
         self.grid.get_or_init(|| {
             let roots = self.roots();
-            let features = || roots.poles.iter().chain(&roots.zeros).chain(&roots.loop_zeros).filter(|r| magnitude(**r) > 0.0);
+            let features =
+                || roots.poles.iter().chain(&roots.zeros).chain(roots.loop_zeros.iter().flatten()).filter(|r| magnitude(**r) > 0.0);
             let low = features().map(|r| magnitude(*r)).fold(f64::INFINITY, f64::min);
             let high = features().map(|r| magnitude(*r)).fold(0.0, f64::max);
             let mut grid = Vec::with_capacity(160);
@@ -234,65 +329,41 @@ impl<'m> Solution<'m> {
         })
     }
 
-    /// Polynomials by node: without and with the amplifier's gain as a factor.
-    fn expand(&self, expansion: &Expansion, network: &Network) -> (Vec<Polynomial>, Vec<Polynomial>) {
-        let weights = expansion.weights(network, &self.values, self.output_resistance(), self.model.scale);
-        let mut scratch = Vec::new();
-        expansion.plan.evaluate(&weights, &mut scratch);
-        let mut plain = alloc::vec![Polynomial::default(); network.nodes];
-        let mut amplified = plain.clone();
-        for outcome in &expansion.plan.outcomes {
-            let terms = expansion.plan.polynomial(outcome, &scratch);
-            let side = if outcome.amplified { &mut amplified } else { &mut plain };
-            for (node, polynomial) in side.iter_mut().enumerate() {
-                if outcome.joined >> node & 1 == 1 {
-                    polynomial.add_scaled(terms, 1.0);
-                }
-            }
-        }
-        (plain, amplified)
-    }
-
-    /// The determinant of a closed expansion over another network of the same build, amplifier included.
+    /// The determinant of a closed expansion over another network of the same build, amplifiers included.
     #[must_use]
     pub fn determinant(&self, expansion: &Expansion, network: &Network) -> Polynomial {
-        let weights = expansion.weights(network, &self.values, self.output_resistance(), self.model.scale);
-        let mut scratch = Vec::new();
-        expansion.plan.evaluate(&weights, &mut scratch);
-        let (above, below) = self.amplifier();
-        let mut sum = Polynomial::default();
+        let scratch = self.run(expansion, network, None);
+        let mut by_set = vec![Polynomial::default(); 1 << self.amplifiers()];
         for outcome in &expansion.plan.outcomes {
-            let terms = expansion.plan.polynomial(outcome, &scratch);
-            let factor = if outcome.amplified { &above } else { &below };
-            sum.add_scaled(&factor.times(terms).0, 1.0);
+            by_set[usize::from(outcome.amplified)].add_scaled(expansion.plan.polynomial(outcome, &scratch), 1.0);
         }
-        sum
+        self.combine(&by_set, |_| true)
     }
 
-    /// Voltage at a node per volt of the source.
-    pub fn voltage(&self, node: Node, omega: f64) -> Complex64 {
+    /// Voltage at a node per unit of a drive.
+    pub fn voltage(&self, drive: usize, node: Node, omega: f64) -> Complex64 {
         if node.0 == 0 {
             return Complex64::new(0.0, 0.0);
         }
         let looped = self.looped();
-        looped.forward[usize::from(node.0)].at(omega) / looped.closed.at(omega)
+        looped.forward[drive][usize::from(node.0)].at(omega) / looped.closed.at(omega)
     }
 
-    /// The transfer from the source to the load at a scaled angular frequency.
-    pub fn transfer(&self, omega: f64) -> Complex64 {
-        self.voltage(self.model.network.load, omega)
+    /// The transfer from a drive to the load at a scaled angular frequency.
+    pub fn transfer(&self, drive: usize, omega: f64) -> Complex64 {
+        self.voltage(drive, self.model.network.load, omega)
     }
 
-    /// The return ratio.
-    pub fn return_ratio(&self, omega: f64) -> Complex64 {
+    /// The return ratio of an amplifier.
+    pub fn return_ratio(&self, amplifier: usize, omega: f64) -> Complex64 {
         let looped = self.looped();
-        looped.returned.at(omega) / looped.open.at(omega)
+        looped.returned[amplifier].at(omega) / looped.open[amplifier].at(omega)
     }
 
-    /// The transfer's value at DC.
-    pub fn dc_gain(&self) -> f64 {
+    /// A transfer's value at DC.
+    pub fn dc_gain(&self, drive: usize) -> f64 {
         let looped = self.looped();
-        looped.forward[usize::from(self.model.network.load.0)].constant() / looped.closed.constant()
+        looped.forward[drive][usize::from(self.model.network.load.0)].constant() / looped.closed.constant()
     }
 }
 

@@ -77,6 +77,15 @@ pub enum Source {
         /// Source capacitance in F.
         capacitance: Toleranced,
     },
+    /// A photodiode: a current with a capacitance across it.
+    Photodiode {
+        /// Junction capacitance in F, at the bias that it has here.
+        capacitance: Toleranced,
+        /// Shunt resistance in Ω, where stated.
+        shunt_resistance: Option<Toleranced>,
+        /// Dark current in A.
+        dark_current: Option<Toleranced>,
+    },
 }
 
 /// The signal at the source.
@@ -90,6 +99,15 @@ pub struct Signal {
     pub dc: f64,
     /// Peak over rms; √2 for a sine.
     pub crest_factor: f64,
+}
+
+/// A reference voltage that shifts the output.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct ReferenceVoltage {
+    /// V.
+    pub voltage: Toleranced,
+    /// Output resistance in Ω, where stated.
+    pub resistance: Option<Toleranced>,
 }
 
 /// What the stage drives; both absent: nothing.
@@ -153,10 +171,16 @@ pub struct Stage {
     pub isolation: Isolation,
     /// Supplies.
     pub supply: Option<Supply>,
-    /// What drives it; `None` is an ideal voltage source.
-    pub source: Option<Source>,
-    /// The signal.
-    pub signal: Option<Signal>,
+    /// What drives each input, in the kind's order; a missing one is an ideal source.
+    pub sources: Vec<Option<Source>>,
+    /// The signal of each drive, in the kind's order; a missing one is none.
+    pub signals: Vec<Option<Signal>>,
+    /// Common-mode voltage of the inputs of a differential kind, V.
+    pub common_mode: Option<Span>,
+    /// The reference of a kind that has one.
+    pub reference: Option<ReferenceVoltage>,
+    /// Parts of further amplifiers where they differ from `part`: amplifier number from 1, part.
+    pub parts: Vec<(usize, Part)>,
     /// The load.
     pub load: Load,
     /// Board strays.
@@ -170,6 +194,30 @@ pub struct Stage {
 }
 
 impl Stage {
+    /// What drives an input.
+    #[must_use]
+    pub fn source(&self, input: usize) -> Option<Source> {
+        self.sources.get(input).copied().flatten()
+    }
+
+    /// The signal of a drive.
+    #[must_use]
+    pub fn signal_of(&self, drive: usize) -> Option<Signal> {
+        self.signals.get(drive).copied().flatten()
+    }
+
+    /// The first drive's signal.
+    #[must_use]
+    pub fn signal(&self) -> Option<Signal> {
+        self.signal_of(0)
+    }
+
+    /// The part of an amplifier, numbered from 0.
+    #[must_use]
+    pub fn part_of(&self, amplifier: usize) -> &Part {
+        self.parts.iter().find(|(a, _)| *a == amplifier + 1).map_or(&self.part, |(_, p)| p)
+    }
+
     /// The component called `name`, if the stage has it.
     #[must_use]
     pub fn component(&self, name: &str) -> Option<&Toleranced> {

@@ -87,8 +87,11 @@ fn random_stage(draw: &mut Draw, kind: Kind, ohms: (f64, f64), farads: (f64, f64
         part,
         isolation: if draw.chance() { Isolation::InsideLoop } else { Isolation::OutsideLoop },
         supply: None,
-        source,
-        signal: None,
+        sources: vec![source],
+        signals: vec![],
+        common_mode: None,
+        reference: None,
+        parts: vec![],
         load,
         board,
         ambient: None,
@@ -116,19 +119,19 @@ fn check(seed: u64, kind: Kind, ohms: (f64, f64), farads: (f64, f64)) {
         let frequency = draw.log(1.0, 1e9);
         let omega = solution.scaled(frequency);
         let s = Complex64::new(0.0, std::f64::consts::TAU * frequency);
-        let (above, below) = solution.amplifier();
+        let (above, below) = solution.amplifier(0);
         let gain = above.at(omega) / below.at(omega);
         let condition = 1e-9 + 1e-9 * gain.norm();
-        let solved = |drive| solve(&model.network, &solution.values, gain, resistance, s, drive);
-        let Some(voltages) = solved(Drive::Source) else { continue };
+        let solved = |drive| solve(&model.network, &solution.values, &[(gain, resistance)], s, drive);
+        let Some(voltages) = solved(Drive::Input(0)) else { continue };
         let largest = voltages.iter().map(|v| v.norm()).fold(0.0, f64::max);
         for (node, &dense) in (0u8..).zip(&voltages).skip(1) {
-            compare(seed, &format!("v({node}) at {frequency:e}"), solution.voltage(Node(node), omega), dense, condition, 1e-6 * largest);
+            compare(seed, &format!("v({node}) at {frequency:e}"), solution.voltage(0, Node(node), omega), dense, condition, 1e-6 * largest);
         }
         let load = usize::from(model.network.load.0);
         let closed = solution.looped().closed.at(omega);
-        let Some(voltages) = solved(Drive::AmplifierInput) else { continue };
-        compare(seed, "series input", solution.injection().input.at(omega) / closed, voltages[load], condition, 0.0);
+        let Some(voltages) = solved(Drive::AmplifierInput(0)) else { continue };
+        compare(seed, "series input", solution.injection().input[0].at(omega) / closed, voltages[load], condition, 0.0);
         for node in 2..model.network.nodes {
             let to = Node(u8::try_from(node).expect("few"));
             let Some(voltages) = solved(Drive::Current { from: GROUND, to }) else { continue };
@@ -137,14 +140,14 @@ fn check(seed: u64, kind: Kind, ohms: (f64, f64), farads: (f64, f64)) {
         }
         // The return ratio: one volt behind the output resistance in the controlled source's place, T = −A·(vp − vn).
         let one = Complex64::new(1.0, 0.0);
-        let amplifier = model.network.amplifier;
+        let amplifier = model.network.amplifiers[0];
         let mut unit = model.network.clone();
-        unit.amplifier.plus = GROUND;
-        unit.amplifier.minus = GROUND;
-        if let Some(voltages) = solve(&unit, &solution.values, one, resistance, s, Drive::AmplifierInput) {
+        unit.amplifiers[0].plus = GROUND;
+        unit.amplifiers[0].minus = GROUND;
+        if let Some(voltages) = solve(&unit, &solution.values, &[(one, resistance)], s, Drive::AmplifierInput(0)) {
             let at = |n: Node| voltages[usize::from(n.0)];
             let ratio = -gain * (at(amplifier.plus) - at(amplifier.minus));
-            compare(seed, "return ratio", solution.return_ratio(omega), ratio, condition, 0.0);
+            compare(seed, "return ratio", solution.return_ratio(0, omega), ratio, condition, 0.0);
         }
     }
     assert!(model.network.nodes > usize::from(DRIVEN.0));
@@ -178,7 +181,7 @@ fn badly_scaled_stages_satisfy_kirchhoff() {
                 let omega = solution.scaled(frequency);
                 let s = Complex64::new(0.0, std::f64::consts::TAU * frequency);
                 let volts: Vec<Complex64> =
-                    (0..network.nodes).map(|n| solution.voltage(Node(u8::try_from(n).expect("few")), omega)).collect();
+                    (0..network.nodes).map(|n| solution.voltage(0, Node(u8::try_from(n).expect("few")), omega)).collect();
                 let at = |n: Node| volts[usize::from(n.0)];
                 let mut sums = vec![(Complex64::new(0.0, 0.0), 0.0f64); network.nodes];
                 for element in &network.elements {
@@ -192,13 +195,13 @@ fn badly_scaled_stages_satisfy_kirchhoff() {
                         sum.1 += size;
                     }
                 }
-                let amplifier = network.amplifier;
+                let amplifier = network.amplifiers[0];
                 for (node, (sum, size)) in sums.iter().enumerate() {
                     if node > usize::from(DRIVEN.0) && node != usize::from(amplifier.pin.0) {
                         assert!(sum.norm() <= 1e-13 * size + 1e-300, "seed {seed} {kind:?}: {sum} of {size:e} left at node {node}");
                     }
                 }
-                let (above, below) = solution.amplifier();
+                let (above, below) = solution.amplifier(0);
                 let gain = above.at(omega) / below.at(omega);
                 let resistance = solution.part(PartFigure::OutputResistance).unwrap_or(0.0);
                 let out = sums[usize::from(amplifier.pin.0)];
@@ -219,10 +222,10 @@ fn a_sweep_has_the_bits_of_single_points() {
         let solution = Solution::new(&model, model.parameters.nominal(), None);
         let frequencies: Vec<f64> = stageleaf_math::analysis::response::frequencies(1.0, 1e8, 37).collect();
         let looped = solution.looped();
-        let load = &looped.forward[usize::from(model.network.load.0)];
+        let load = &looped.forward[0][usize::from(model.network.load.0)];
         let swept = stageleaf_math::analysis::sweep::ratio(&solution, load, &looped.closed, &frequencies);
         for (frequency, value) in frequencies.iter().zip(swept) {
-            let single = solution.transfer(solution.scaled(*frequency));
+            let single = solution.transfer(0, solution.scaled(*frequency));
             assert_eq!((value.re.to_bits(), value.im.to_bits()), (single.re.to_bits(), single.im.to_bits()), "seed {seed}");
         }
     }

@@ -90,10 +90,9 @@ pub fn parse_limit(text: &str, d: Dimension, fraction: f64) -> Result<(Bound, Th
     Ok((Bound::Between { low, high }, thin))
 }
 
-/// The limit as a note states it.
+/// The limit as a note states it, on a figure of dimension `d`.
 #[must_use]
-pub fn limit_text(limit: &Limit) -> String {
-    let d = limit.query.figure.dimension();
+pub fn limit_text(limit: &Limit, d: Dimension) -> String {
     let show = |v: f64| trimmed(v, d, 6);
     let apart =
         |v: f64| if d == Dimension::Level { format!("{} V/V", trimmed(v, Dimension::Number, 6)) } else { trimmed(v, difference(d), 6) };

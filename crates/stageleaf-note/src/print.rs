@@ -33,6 +33,8 @@ const fn style(d: Dimension) -> Style {
         Dimension::Voltage => ("V", ("volt", "volts"), 0, (-18, 6), -400),
         Dimension::Current => ("A", ("ampere", "amperes"), 0, (-18, 3), -400),
         Dimension::Power => ("W", ("watt", "watts"), 0, (-18, 6), -400),
+        Dimension::Charge => ("C", ("coulomb", "coulombs"), 0, (-18, 0), -400),
+        Dimension::VoltsPerCoulomb => ("V/C", ("volt per coulomb", "volts per coulomb"), 0, (-3, 12), -400),
         Dimension::Temperature => ("°C", ("degree Celsius", "degrees Celsius"), 0, (0, 0), -3),
         Dimension::TemperatureDifference => ("K", ("kelvin", "kelvins"), 0, (0, 0), -400),
         Dimension::ThermalResistance => ("K/W", ("kelvin per watt", "kelvins per watt"), 0, (0, 0), -400),

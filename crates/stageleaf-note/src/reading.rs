@@ -74,8 +74,8 @@ pub(crate) fn read_named(text: &str, place: &Place, shelf: &Shelf, settings: &Se
         reader.missing(entry.key_range(), "`isolation` says where `Riso` stands, and there is no `Riso`", "`Riso` under [components]");
     }
     let around = surroundings::read(&mut reader, &find, settings);
-    let limits = limits(&mut reader, find("limits"), settings);
-    let measured = measured(&mut reader, find("measured"));
+    let limits = limits(&mut reader, find("limits"), kind, settings);
+    let measured = measured(&mut reader, find("measured"), kind);
 
     let (Some(kind), Some(stage_name), Some(part), false) = (kind, name.clone(), part, reader.has_problems()) else {
         return (name, Err(reader.into_problems()));
@@ -87,8 +87,11 @@ pub(crate) fn read_named(text: &str, place: &Place, shelf: &Shelf, settings: &Se
         part,
         isolation,
         supply: around.supply,
-        source: around.source,
-        signal: around.signal,
+        sources: vec![around.source],
+        signals: vec![around.signal],
+        common_mode: None,
+        reference: None,
+        parts: Vec::new(),
         load: around.load,
         board: around.board,
         ambient: around.ambient,
@@ -213,7 +216,7 @@ fn components<'a>(
     found
 }
 
-fn limits<'a>(reader: &mut Reader<'a>, entry: Option<Entry<'a>>, settings: &Settings) -> Vec<Limit> {
+fn limits<'a>(reader: &mut Reader<'a>, entry: Option<Entry<'a>>, kind: Option<Kind>, settings: &Settings) -> Vec<Limit> {
     let mut limits: Vec<Limit> = Vec::new();
     let mut named = BTreeSet::new();
     for entry in entry.and_then(|e| reader.table(&e).map(entries)).unwrap_or_default() {
@@ -225,7 +228,7 @@ fn limits<'a>(reader: &mut Reader<'a>, entry: Option<Entry<'a>>, settings: &Sett
         if !named.insert((query.figure, query.at.map(f64::to_bits))) {
             reader.problem(entry.key_range(), format!("`{}` has a limit already", shown(entry.key)), "one limit for each figure", None);
         }
-        let d = query.figure.dimension();
+        let d = kind.map_or(query.figure.dimension(), |k| query.figure.dimension_in(k));
         let is = format!("is {}", unit::noun(d));
         if let Some((bound, thin)) = reader.read(&entry, &path, &is, |t| parse_limit(t, d, settings.thin)) {
             limits.push(Limit { query, bound, thin });
@@ -234,13 +237,13 @@ fn limits<'a>(reader: &mut Reader<'a>, entry: Option<Entry<'a>>, settings: &Sett
     limits
 }
 
-fn measured<'a>(reader: &mut Reader<'a>, entry: Option<Entry<'a>>) -> Vec<Measured> {
+fn measured<'a>(reader: &mut Reader<'a>, entry: Option<Entry<'a>>, kind: Option<Kind>) -> Vec<Measured> {
     const KEYS: &[&str] = &["value", "unit", "at"];
     let mut all = Vec::new();
     for entry in entry.and_then(|e| reader.table(&e).map(entries)).unwrap_or_default() {
         let path = format!("measured.{}", entry.key);
         let Some(query) = query(reader, &entry) else { continue };
-        let d = query.figure.dimension();
+        let d = kind.map_or(query.figure.dimension(), |k| query.figure.dimension_in(k));
         let is = format!("is {}", unit::noun(d));
         let Some(table) = entry.value.get_ref().as_table() else {
             let value = reader.read(&entry, &path, &is, |t| parse_span(t, d));

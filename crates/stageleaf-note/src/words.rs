@@ -16,7 +16,12 @@ use crate::{
 pub fn parameter_text(parameter: Parameter) -> String {
     match parameter {
         Parameter::Component(name) => name.into(),
-        Parameter::SourceImpedance => "source impedance".into(),
+        Parameter::SourceImpedance(input) => numbered("source impedance", input),
+        Parameter::SourceShunt(input) => numbered("source shunt resistance", input),
+        Parameter::DarkCurrent(input) => numbered("dark current", input),
+        Parameter::CommonMode => "common-mode voltage".into(),
+        Parameter::ReferenceVoltage => "reference voltage".into(),
+        Parameter::ReferenceResistance => "output resistance of the reference".into(),
         Parameter::LoadResistance => "load resistance".into(),
         Parameter::LoadCapacitance => "load capacitance".into(),
         Parameter::StrayInverting => "stray capacitance at the inverting input".into(),
@@ -26,8 +31,19 @@ pub fn parameter_text(parameter: Parameter) -> String {
         Parameter::SupplyNegative => "negative supply".into(),
         Parameter::Temperature => "ambient temperature".into(),
         Parameter::Part(figure) => figure.meaning().into(),
+        Parameter::PartOf(amplifier, figure) => format!("{} of A{amplifier}", figure.meaning()),
         Parameter::Headroom => "output headroom".into(),
     }
+}
+
+/// "source impedance", of the second input on "source impedance at in2".
+fn numbered(what: &str, input: u8) -> String {
+    if input == 0 { what.into() } else { format!("{what} at in{}", u32::from(input) + 1) }
+}
+
+/// "Amplifier voltage noise", of the second amplifier on with "of A2".
+fn of_amplifier(what: &str, amplifier: u8) -> String {
+    if amplifier == 0 { what.into() } else { format!("{what}, A{}", u32::from(amplifier) + 1) }
 }
 
 /// What a parameter measures, for its values in a corner.
@@ -39,17 +55,18 @@ pub fn parameter_dimension(parameter: Parameter, stage: &stageleaf_math::stage::
     use stageleaf_math::stage::Source;
     match parameter {
         Parameter::Component(name) => stage.kind.components().iter().find(|s| s.name == name).map_or(Dimension::Number, |s| s.dimension),
-        Parameter::SourceImpedance => match stage.source {
-            Some(Source::Capacitive { .. }) => Dimension::Capacitance,
+        Parameter::SourceImpedance(input) => match stage.source(usize::from(input)) {
+            Some(Source::Capacitive { .. } | Source::Photodiode { .. }) => Dimension::Capacitance,
             _ => Dimension::Resistance,
         },
-        Parameter::LoadResistance => Dimension::Resistance,
+        Parameter::LoadResistance | Parameter::SourceShunt(_) | Parameter::ReferenceResistance => Dimension::Resistance,
+        Parameter::DarkCurrent(_) => Dimension::Current,
         Parameter::LoadCapacitance | Parameter::StrayInverting | Parameter::StrayNonInverting | Parameter::StrayFeedback => {
             Dimension::Capacitance
         }
-        Parameter::SupplyPositive | Parameter::SupplyNegative => Dimension::Voltage,
+        Parameter::SupplyPositive | Parameter::SupplyNegative | Parameter::CommonMode | Parameter::ReferenceVoltage => Dimension::Voltage,
         Parameter::Temperature => Dimension::Temperature,
-        Parameter::Part(figure) => figure.dimension(),
+        Parameter::Part(figure) | Parameter::PartOf(_, figure) => figure.dimension(),
         Parameter::Headroom => Dimension::Number,
     }
 }
@@ -126,6 +143,7 @@ pub fn caution_text(caution: &Caution) -> String {
 #[must_use]
 pub fn cause_text(cause: DcCause) -> String {
     match cause {
+        DcCause::DarkCurrent => "Dark current of the source",
         DcCause::Offset => "Input offset voltage",
         DcCause::OffsetDrift => "Offset drift over temperature",
         DcCause::BiasCurrent => "Bias current",
@@ -142,11 +160,13 @@ pub fn cause_text(cause: DcCause) -> String {
 pub fn origin_text(origin: NoiseOrigin) -> String {
     match origin {
         NoiseOrigin::Component(name) => return format!("{name}, thermal"),
-        NoiseOrigin::SourceResistance => "Source resistance, thermal",
+        NoiseOrigin::SourceResistance(input) => return numbered("Source resistance, thermal", input),
+        NoiseOrigin::SourceShot(input) => return numbered("Shot noise of the source's current", input),
+        NoiseOrigin::ReferenceResistance => "Output resistance of the reference, thermal",
         NoiseOrigin::LoadResistance => "Load resistance, thermal",
-        NoiseOrigin::AmplifierVoltage => "Amplifier voltage noise",
-        NoiseOrigin::CurrentNonInverting => "Current noise, non-inverting input",
-        NoiseOrigin::CurrentInverting => "Current noise, inverting input",
+        NoiseOrigin::AmplifierVoltage(a) => return of_amplifier("Amplifier voltage noise", a),
+        NoiseOrigin::CurrentNonInverting(a) => return of_amplifier("Current noise, non-inverting input", a),
+        NoiseOrigin::CurrentInverting(a) => return of_amplifier("Current noise, inverting input", a),
     }
     .into()
 }

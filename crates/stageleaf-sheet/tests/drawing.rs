@@ -50,7 +50,7 @@ fn no_label_covers_another_or_a_wire() {
             // The other symbols that the same places can hold: a capacitive source, a ground in the negative rail's place.
             for other in [false, true] {
                 if other && source {
-                    block.stage.source = Some(Source::Capacitive { capacitance: Toleranced::exact(1e-9) });
+                    block.stage.sources = vec![Some(Source::Capacitive { capacitance: Toleranced::exact(1e-9) })];
                     block.stage.supply = Some(Supply { positive: Span::exact(5.0), negative: Span::exact(0.0) });
                 }
                 let case = || format!("{kind:?} with {names:?}, {isolation:?}, load {load:?}, source {source}, other symbols {other}");

@@ -257,7 +257,7 @@ fn an_empty_report_renders() {
             cautions: vec![],
         };
         sample.0.stage.supply = None;
-        sample.0.stage.source = None;
+        sample.0.stage.sources = vec![];
         assert!(rendered(&sample).contains("no limits to judge"));
     }
 }

@@ -84,6 +84,8 @@ const fn unit_words(dimension: Dimension) -> &'static str {
         Dimension::Voltage => "V",
         Dimension::Current => "A",
         Dimension::Power => "W",
+        Dimension::Charge => "C",
+        Dimension::VoltsPerCoulomb => "V/C",
         Dimension::Temperature => "°C; K in JSON",
         Dimension::TemperatureDifference => "K",
         Dimension::ThermalResistance => "K/W",

@@ -19,8 +19,9 @@ use alloc::vec::Vec;
 
 use crate::{
     part::PartFigure,
-    report::{DcCause, Need, Outcome},
+    report::{DcCause, Need, Outcome, Parameter},
     solution::Solution,
+    stage::Source,
 };
 
 /// Temperature at which data sheets state the bias current: 25 °C (common practice, no source).
@@ -42,52 +43,75 @@ pub fn budget<'s>(solution: &'s Solution<'_>) -> &'s Budget {
     solution.dc.get_or_init(|| {
         let model = solution.model;
         let parameters = &model.parameters;
-        let looped = solution.looped();
-        let below = looped.closed.constant();
+        let below = solution.looped().closed.constant();
         let injection = solution.injection();
-        let input = (injection.input.constant() / below).abs();
-        let amplifier = model.network.amplifier;
-        let ohms = |node: crate::network::Node| injection.current[usize::from(node.0)].constant() / below * model.scale.0;
-        let (at_plus, at_minus) = (ohms(amplifier.plus), ohms(amplifier.minus));
-        let part = |figure: PartFigure| match solution.part(figure) {
-            Some(v) => Outcome::Value(v),
-            None => Outcome::Undetermined(alloc::vec![Need::Part(figure)]),
-        };
-        let times =
-            |outcome: Outcome, factor: f64| if factor.abs() <= 0.0 { Outcome::Value(0.0) } else { super::scaled(&outcome, factor.abs()) };
-
-        let mut lines = alloc::vec![(DcCause::Offset, times(part(PartFigure::Offset), input))];
         let away = parameters.temperature().map_or(0.0, |slot| solution.values[slot] - parameters.entries[slot].nominal);
-        lines.push((DcCause::OffsetDrift, times(part(PartFigure::OffsetDrift), input * away)));
-        let bias = times(bias_current(solution), at_plus + at_minus);
-        lines.push((DcCause::BiasCurrent, bias));
-        lines.push((DcCause::OffsetCurrent, times(part(PartFigure::OffsetCurrent), (at_plus.abs() + at_minus.abs()) / 2.0)));
-        lines.push((DcCause::CommonMode, common_mode(solution, input)));
-        if let Some((positive, negative)) = parameters.supply() {
-            for (cause, slot, figure) in [
-                (DcCause::SupplyPositive, positive, PartFigure::PsrrPositive),
-                (DcCause::SupplyNegative, negative, PartFigure::PsrrNegative),
-            ] {
-                let deviation = solution.values[slot] - parameters.entries[slot].nominal;
-                lines.push((cause, rejected(solution, figure, deviation * input)));
+        let causes = [DcCause::Offset, DcCause::OffsetDrift, DcCause::BiasCurrent, DcCause::OffsetCurrent, DcCause::CommonMode];
+        let mut by_amplifier: Vec<Vec<(DcCause, Outcome)>> = Vec::new();
+        let mut slopes = Vec::new();
+        for (index, amplifier) in model.network.amplifiers.iter().enumerate() {
+            let input = (injection.input[index].constant() / below).abs();
+            let ohms = |node: crate::network::Node| injection.current[usize::from(node.0)].constant() / below * model.scale.0;
+            let (at_plus, at_minus) = (ohms(amplifier.plus), ohms(amplifier.minus));
+            let part = |figure: PartFigure| match solution.part_of(index, figure) {
+                Some(v) => Outcome::Value(v),
+                None => Outcome::Undetermined(alloc::vec![Need::Part(figure)]),
+            };
+            let bias = times(&bias_current(solution, index), at_plus + at_minus);
+            if let (Outcome::Value(bias), Some(step)) = (&bias, solution.part_of(index, PartFigure::BiasDoubling)) {
+                slopes.push(Outcome::Value(bias * core::f64::consts::LN_2 / step));
+            }
+            slopes.push(times(&part(PartFigure::OffsetDrift), input));
+            let errors = [
+                times(&part(PartFigure::Offset), input),
+                times(&part(PartFigure::OffsetDrift), input * away),
+                bias,
+                times(&part(PartFigure::OffsetCurrent), (at_plus.abs() + at_minus.abs()) / 2.0),
+                common_mode(solution, index, input),
+            ];
+            let mut lines: Vec<(DcCause, Outcome)> = causes.into_iter().zip(errors).collect();
+            if let Some((positive, negative)) = parameters.supply() {
+                for (cause, slot, figure) in [
+                    (DcCause::SupplyPositive, positive, PartFigure::PsrrPositive),
+                    (DcCause::SupplyNegative, negative, PartFigure::PsrrNegative),
+                ] {
+                    let deviation = solution.values[slot] - parameters.entries[slot].nominal;
+                    lines.push((cause, rejected(solution, index, figure, deviation * input)));
+                }
+            }
+            by_amplifier.push(lines);
+        }
+        let mut lines = by_amplifier[0].clone();
+        for more in &by_amplifier[1..] {
+            for (line, other) in lines.iter_mut().zip(more) {
+                line.1 = sum([&line.1, &other.1].into_iter());
+            }
+        }
+        for (input, source) in (0u8..).zip(&model.stage.sources) {
+            if matches!(source, Some(Source::Photodiode { .. })) {
+                let node = model.network.input_node(usize::from(input));
+                let ohms = injection.current[usize::from(node.0)].constant() / below * model.scale.0;
+                let dark = parameters.slot(Parameter::DarkCurrent(input)).map_or(0.0, |slot| solution.values[slot]);
+                lines.push((DcCause::DarkCurrent, Outcome::Value((ohms * dark).abs())));
             }
         }
         let total = sum(lines.iter().map(|(_, o)| o));
-        let mut slopes = alloc::vec![times(part(PartFigure::OffsetDrift), input)];
-        if let (Outcome::Value(bias), Some(step)) = (&lines[2].1, solution.part(PartFigure::BiasDoubling)) {
-            slopes.push(Outcome::Value(bias * core::f64::consts::LN_2 / step));
-        }
         let drift = sum(slopes.iter());
         Budget { lines, total, drift }
     })
 }
 
+/// A magnitude scaled; what is multiplied by nothing is not needed.
+fn times(outcome: &Outcome, factor: f64) -> Outcome {
+    if factor.abs() <= 0.0 { Outcome::Value(0.0) } else { super::scaled(outcome, factor.abs()) }
+}
+
 /// Bias current at the junction temperature, A.
-fn bias_current(solution: &Solution<'_>) -> Outcome {
-    let Some(bias) = solution.part(PartFigure::BiasCurrent) else {
+fn bias_current(solution: &Solution<'_>, amplifier: usize) -> Outcome {
+    let Some(bias) = solution.part_of(amplifier, PartFigure::BiasCurrent) else {
         return Outcome::Undetermined(alloc::vec![Need::Part(PartFigure::BiasCurrent)]);
     };
-    match solution.part(PartFigure::BiasDoubling) {
+    match solution.part_of(amplifier, PartFigure::BiasDoubling) {
         None => Outcome::Value(bias),
         Some(step) => match &super::thermal::power(solution).junction {
             Outcome::Value(junction) => Outcome::Value(bias * libm::exp2((junction - DATA_SHEET_TEMPERATURE) / step)),
@@ -96,24 +120,20 @@ fn bias_current(solution: &Solution<'_>) -> Outcome {
     }
 }
 
-/// Common-mode voltage of the signal's DC part over the rejection.
-fn common_mode(solution: &Solution<'_>, input: f64) -> Outcome {
-    let model = solution.model;
-    let plus = model.network.amplifier.plus;
+/// Common-mode voltage at an amplifier's inputs, from the signals' DC parts and the common mode, over the rejection.
+fn common_mode(solution: &Solution<'_>, amplifier: usize, input: f64) -> Outcome {
+    let plus = solution.model.network.amplifiers[amplifier].plus;
     if plus == crate::network::GROUND {
         return Outcome::Value(0.0);
     }
-    let dc = model.stage.signal.map_or(0.0, |s| s.dc);
-    let looped = solution.looped();
-    let volts = dc * looped.forward[usize::from(plus.0)].constant() / looped.closed.constant();
-    rejected(solution, PartFigure::Cmrr, volts * input)
+    rejected(solution, amplifier, PartFigure::Cmrr, super::swing::steady(solution, plus) * input)
 }
 
-fn rejected(solution: &Solution<'_>, figure: PartFigure, volts: f64) -> Outcome {
+fn rejected(solution: &Solution<'_>, amplifier: usize, figure: PartFigure, volts: f64) -> Outcome {
     if volts.abs() <= 0.0 {
         return Outcome::Value(0.0);
     }
-    match solution.part(figure) {
+    match solution.part_of(amplifier, figure) {
         Some(ratio) => Outcome::Value(volts.abs() / ratio),
         None => Outcome::Undetermined(alloc::vec![Need::Part(figure)]),
     }

@@ -2,7 +2,7 @@
 //!
 //! # Formula
 //! `T = A·XA/X0`, the return ratio of the amplifier's controlled source. Phase margin: the angle of `−T` where `|T| = 1`; of
-//! several crossings the least. Gain margin: `1/|T|` where `T` is negative real, the least above 1 (one below 1, of a
+//! several crossings the one nearest to −1, on whichever side of it a stable loop passes. Gain margin: `1/|T|` where `T` is negative real, the least above 1 (one below 1, of a
 //! conditionally stable loop, only where there is no other). Sensitivity peak: `max |1/(1+T)|`.
 //!
 //! # Source
@@ -10,11 +10,16 @@
 //! `tests/outside/`.
 
 use super::search;
-use crate::solution::{Solution, magnitude};
+use crate::{
+    polynomial::Polynomial,
+    solution::{Solution, magnitude},
+};
 
 /// What the loop shows.
 #[derive(Clone, Copy, Debug)]
 pub struct Margins {
+    /// Whose loop it is (from 0).
+    pub amplifier: usize,
     /// Hz, of the crossing with the least phase margin.
     pub crossover: Option<f64>,
     /// rad, at that crossing.
@@ -25,66 +30,94 @@ pub struct Margins {
     pub sensitivity_peak: f64,
 }
 
-/// Crossings, margins, sensitivity peak.
+/// Crossings, margins, sensitivity peak: of the amplifier with the least phase margin, with the least of the others.
 pub fn margins(solution: &Solution<'_>) -> Margins {
     *solution.margins.get_or_init(|| {
-        let looped = solution.looped();
-        let grid = solution.grid();
-        let at = |w: f64| (looped.returned.at(w), looped.open.at(w));
-        let size = |w: f64| {
-            let (r, o) = at(w);
-            r.norm_sqr() / o.norm_sqr() - 1.0
-        };
-        // Im T has the sign of Im(N·conj D), without the division.
-        let turn = |w: f64| {
-            let (r, o) = at(w);
-            (r * o.conj()).im
-        };
-        let sensitivity = |w: f64| looped.open.at(w).norm_sqr() / looped.closed.at(w).norm_sqr();
-        let mut worst: Option<(f64, f64)> = None;
-        let (mut above, mut below) = (f64::INFINITY, 0.0f64);
-        let (mut top, mut top_at) = (0.0, 0);
-        let mut before: Option<(f64, f64, f64)> = None;
-        for (i, &omega) in grid.iter().enumerate() {
-            let (r, o) = at(omega);
-            let open = o.norm_sqr();
-            let (s, t, e) = (r.norm_sqr() - open, (r * o.conj()).im, open / (r + o).norm_sqr());
-            if e > top {
-                (top, top_at) = (e, i);
+        let mut worst = of(solution, 0);
+        for amplifier in 1..solution.amplifiers() {
+            let here = of(solution, amplifier);
+            if here.phase.is_some_and(|p| worst.phase.is_none_or(|w| p < w)) {
+                (worst.phase, worst.crossover, worst.amplifier) = (here.phase, here.crossover, here.amplifier);
             }
-            if let Some((w, s0, t0)) = before {
-                if (s0 < 0.0) != (s < 0.0) {
-                    let at = search::root(w, omega, size);
-                    let ratio = solution.return_ratio(at);
-                    let margin = libm::atan2(-ratio.im, -ratio.re);
-                    if worst.is_none_or(|(_, m)| margin < m) {
-                        worst = Some((at, margin));
-                    }
-                }
-                if (t0 < 0.0) != (t < 0.0) {
-                    let at = search::root(w, omega, turn);
-                    let ratio = solution.return_ratio(at);
-                    if ratio.re < 0.0 {
-                        let factor = 1.0 / magnitude(ratio);
-                        if factor >= 1.0 { above = above.min(factor) } else { below = below.max(factor) }
-                    }
-                }
-            }
-            before = Some((omega, s, t));
+            worst.gain = worst.gain.min(here.gain);
+            worst.sensitivity_peak = worst.sensitivity_peak.max(here.sensitivity_peak);
         }
-        let mut sensitivity_peak = 1.0;
-        if !grid.is_empty() {
-            let (a, c) = (grid[top_at.saturating_sub(1)], grid[(top_at + 1).min(grid.len() - 1)]);
-            sensitivity_peak = libm::sqrt(search::peak(a, c, sensitivity).1.max(top));
-        }
-        let unstable = solution.oscillates();
-        let gain = if unstable && below > 0.0 {
-            below
-        } else if above.is_finite() || below <= 0.0 {
-            above
-        } else {
-            below
-        };
-        Margins { crossover: worst.map(|(w, _)| solution.hertz(w)), phase: worst.map(|(_, m)| m), gain, sensitivity_peak }
+        worst
     })
+}
+
+/// Crossings, margins, sensitivity peak of one amplifier's loop.
+#[must_use]
+pub fn of(solution: &Solution<'_>, amplifier: usize) -> Margins {
+    let looped = solution.looped();
+    let (returned, open) = (&looped.returned[amplifier], &looped.open[amplifier]);
+    let grid = solution.grid();
+    let at = |w: f64| (returned.at(w), open.at(w));
+    let size = |w: f64| {
+        let (r, o) = at(w);
+        r.norm_sqr() / o.norm_sqr() - 1.0
+    };
+    // Im T has the sign of Im(N·conj D), without the division.
+    let turn = |w: f64| {
+        let (r, o) = at(w);
+        (r * o.conj()).im
+    };
+    let sensitivity = |w: f64| open.at(w).norm_sqr() / looped.closed.at(w).norm_sqr();
+    let stable = !solution.oscillates();
+    // In a stable loop the crossing nearest to −1 in angle, on whichever side; else the one that is furthest past it.
+    let rank = |margin: f64| if stable { margin.abs() } else { margin };
+    let mut worst: Option<(f64, f64)> = None;
+    let (mut above, mut below) = (f64::INFINITY, 0.0f64);
+    let (mut top, mut top_at) = (0.0, 0);
+    let mut before: Option<(f64, f64, f64)> = None;
+    for (i, &omega) in grid.iter().enumerate() {
+        let (r, o) = at(omega);
+        let power = o.norm_sqr();
+        let (s, t, e) = (r.norm_sqr() - power, (r * o.conj()).im, power / (r + o).norm_sqr());
+        if e > top {
+            (top, top_at) = (e, i);
+        }
+        if let Some((w, s0, t0)) = before {
+            if (s0 < 0.0) != (s < 0.0) {
+                let at = search::root(w, omega, size);
+                let ratio = solution.return_ratio(amplifier, at);
+                let margin = rank(libm::atan2(-ratio.im, -ratio.re));
+                if worst.is_none_or(|(_, m)| margin < m) {
+                    worst = Some((at, margin));
+                }
+            }
+            if (t0 < 0.0) != (t < 0.0) {
+                let at = search::root(w, omega, turn);
+                let ratio = solution.return_ratio(amplifier, at);
+                if ratio.re < 0.0 {
+                    let factor = 1.0 / magnitude(ratio);
+                    if factor >= 1.0 { above = above.min(factor) } else { below = below.max(factor) }
+                }
+            }
+        }
+        before = Some((omega, s, t));
+    }
+    // Beyond the grid T tends to the ratio of its leading coefficients: to nothing, as a rule.
+    let ends = sensitivity_limit(returned, open).max(sensitivity(0.0));
+    let mut sensitivity_peak = libm::sqrt(ends);
+    if !grid.is_empty() {
+        let (a, c) = (grid[top_at.saturating_sub(1)], grid[(top_at + 1).min(grid.len() - 1)]);
+        sensitivity_peak = libm::sqrt(search::peak(a, c, sensitivity).1.max(top).max(ends));
+    }
+    // A −180° crossing with |T| > 1 says how far a conditionally stable loop may fall, or how far an oscillating one is off.
+    let gain = if below > 0.0 && (!stable || above.is_infinite()) { below } else { above };
+    Margins { amplifier, crossover: worst.map(|(w, _)| solution.hertz(w)), phase: worst.map(|(_, m)| m), gain, sensitivity_peak }
+}
+
+/// `|1/(1+T)|²` at infinite frequency.
+fn sensitivity_limit(returned: &Polynomial, open: &Polynomial) -> f64 {
+    let degree = |p: &Polynomial| p.0.iter().rposition(|c| c.abs() > 0.0);
+    match (degree(returned), degree(open)) {
+        (Some(r), Some(o)) if r == o => {
+            let ratio = open.0[o] / (open.0[o] + returned.0[r]);
+            ratio * ratio
+        }
+        (Some(r), Some(o)) if r > o => 0.0,
+        _ => 1.0,
+    }
 }

@@ -132,16 +132,16 @@ pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
         return Outcome::Oscillates;
     }
     let value = match query.figure {
-        F::Gain => solution.dc_gain(),
-        F::GainError => solution.dc_gain() / (stage.kind.spec().ideal_gain)(stage) - 1.0,
+        F::Gain => response::reference(solution).gain,
+        F::GainError => response::reference(solution).gain / (stage.kind.spec().ideal_gain)(stage) - 1.0,
         F::GainAtSignal => {
-            let frequency = stage.signal.and_then(|s| s.frequency).unwrap_or(0.0);
-            let sign = if solution.dc_gain() < 0.0 { -1.0 } else { 1.0 };
-            sign * crate::solution::magnitude(solution.transfer(solution.scaled(frequency)))
+            let frequency = stage.signal().and_then(|s| s.frequency).unwrap_or(0.0);
+            let sign = if response::reference(solution).gain < 0.0 { -1.0 } else { 1.0 };
+            sign * crate::solution::magnitude(solution.transfer(0, solution.scaled(frequency)))
         }
-        F::GainAt => crate::solution::magnitude(solution.transfer(solution.scaled(query.at.unwrap_or(0.0)))),
+        F::GainAt => crate::solution::magnitude(solution.transfer(0, solution.scaled(query.at.unwrap_or(0.0)))),
         F::PhaseAt => {
-            let h = solution.transfer(solution.scaled(query.at.unwrap_or(0.0)));
+            let h = solution.transfer(0, solution.scaled(query.at.unwrap_or(0.0)));
             libm::atan2(h.im, h.re)
         }
         F::Bandwidth => response::edges(solution).bandwidth,
@@ -176,12 +176,12 @@ pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
         F::GainDrift => response::gain_drift(solution),
         F::NoiseBandwidth => noise::noise_bandwidth(solution),
         F::OutputOffset => return dc::budget(solution).total.clone(),
-        F::InputOffset => return scaled(&dc::budget(solution).total, 1.0 / solution.dc_gain().abs()),
+        F::InputOffset => return scaled(&dc::budget(solution).total, 1.0 / response::reference(solution).gain.abs()),
         F::OffsetDrift => return dc::budget(solution).drift.clone(),
         F::OutputNoise | F::InputNoise | F::OutputNoisePeakToPeak | F::Snr | F::SnrBits => {
             let Some(rms) = noise::integrated(solution) else { return Outcome::DoesNotApply("the band's edges are the same") };
             match query.figure {
-                F::InputNoise => rms / solution.dc_gain().abs(),
+                F::InputNoise => rms / response::reference(solution).gain.abs(),
                 F::OutputNoisePeakToPeak => noise::PEAK_TO_PEAK * rms,
                 F::Snr => noise::signal_rms(solution) / rms,
                 F::SnrBits => noise::bits(noise::signal_rms(solution) / rms),
@@ -234,9 +234,9 @@ impl Missing {
         }
     }
 
-    /// Needs a figure of the part.
+    /// Needs a figure of every amplifier's part.
     pub fn part(&mut self, solution: &Solution<'_>, figure: PartFigure) {
-        if solution.part(figure).is_none() {
+        if (0..solution.amplifiers()).any(|a| solution.part_of(a, figure).is_none()) {
             self.need(Need::Part(figure));
         }
     }
@@ -246,7 +246,7 @@ impl Missing {
         for figure in crate::model::SMALL_SIGNAL {
             self.part(solution, figure);
         }
-        if solution.model.poles.is_none() {
+        if solution.model.poles.iter().any(Option::is_none) {
             self.need(Need::Poles);
         }
     }
@@ -256,7 +256,7 @@ impl Missing {
         self.small_signal(solution);
         self.part(solution, PartFigure::NoiseVoltage);
         self.part(solution, PartFigure::NoiseVoltageCorner);
-        if noise::current_noise_counts(solution) {
+        if (0..solution.amplifiers()).any(|a| noise::current_noise_counts(solution, a)) {
             self.part(solution, PartFigure::NoiseCurrent);
             self.part(solution, PartFigure::NoiseCurrentCorner);
         }
@@ -287,7 +287,7 @@ impl Missing {
 
     /// Needs the signal's frequency.
     pub fn signal_frequency(&mut self, solution: &Solution<'_>) {
-        match solution.model.stage.signal {
+        match solution.model.stage.signal() {
             None => self.need(Need::Signal),
             Some(signal) if signal.frequency.is_none() => self.need(Need::SignalFrequency),
             Some(_) => {}
@@ -297,7 +297,7 @@ impl Missing {
     /// Needs the signal and all that carries it to the pins.
     pub fn signal_level(&mut self, solution: &Solution<'_>) {
         self.small_signal(solution);
-        match solution.model.stage.signal {
+        match solution.model.stage.signal() {
             None => self.need(Need::Signal),
             Some(signal) if signal.peak > 0.0 && signal.frequency.is_none() => self.need(Need::SignalFrequency),
             Some(_) => {}

@@ -23,12 +23,16 @@ use crate::{
     network::{GROUND, Law},
     part::PartFigure,
     polynomial::Polynomial,
-    report::{DensityPoint, NoiseOrigin, NoiseShare},
+    report::{DensityPoint, NoiseOrigin, NoiseShare, Parameter},
     solution::{Solution, magnitude},
+    stage::Source,
 };
 
 /// Boltzmann's constant, J/K (exact, SI Brochure, 9th edition).
 pub const BOLTZMANN: f64 = 1.380_649e-23;
+
+/// Elementary charge, C (exact, SI Brochure, 9th edition).
+pub const ELEMENTARY_CHARGE: f64 = 1.602_176_634e-19;
 
 /// Peak-to-peak over rms: Gaussian noise exceeds ±3.3 σ for 0.1 % of the time (common practice, no source).
 pub const PEAK_TO_PEAK: f64 = 6.6;
@@ -76,10 +80,10 @@ impl Spectrum {
     }
 }
 
-/// Whether the inputs' current noise reaches the output at all.
+/// Whether an amplifier's current noise reaches the output at all.
 #[must_use]
-pub fn current_noise_counts(solution: &Solution<'_>) -> bool {
-    let amplifier = solution.model.network.amplifier;
+pub fn current_noise_counts(solution: &Solution<'_>, amplifier: usize) -> bool {
+    let amplifier = solution.model.network.amplifiers[amplifier];
     let current = &solution.injection().current;
     [amplifier.plus, amplifier.minus].iter().any(|n| !current[usize::from(n.0)].is_zero())
 }
@@ -105,28 +109,50 @@ pub(super) fn generators(solution: &Solution<'_>) -> Vec<Generator> {
         numerator.add_scaled(&injection.current[usize::from(element.b.0)].0, -1.0);
         list.push(Generator { origin, numerator, spectrum });
     }
-    if let (Some(level), Some(corner)) = (solution.part(PartFigure::NoiseVoltage), solution.part(PartFigure::NoiseVoltageCorner)) {
-        let exponent = solution.part(PartFigure::NoiseExponent).unwrap_or(1.0);
-        list.push(Generator {
-            origin: NoiseOrigin::AmplifierVoltage,
-            numerator: injection.input.clone(),
-            spectrum: Spectrum::Flicker(level * level, corner, exponent),
-        });
-    }
-    if let (Some(level), Some(corner)) = (solution.part(PartFigure::NoiseCurrent), solution.part(PartFigure::NoiseCurrentCorner)) {
-        let amplifier = model.network.amplifier;
-        for (node, origin) in [(amplifier.plus, NoiseOrigin::CurrentNonInverting), (amplifier.minus, NoiseOrigin::CurrentInverting)] {
-            let numerator = &injection.current[usize::from(node.0)];
-            if node != GROUND && !numerator.is_zero() {
-                list.push(Generator {
-                    origin,
-                    numerator: numerator.clone(),
-                    spectrum: Spectrum::Flicker(level * level * scale * scale, corner, 1.0),
-                });
+    shot(solution, &mut list);
+    for (index, amplifier) in (0u8..).zip(&model.network.amplifiers) {
+        let part = |figure| solution.part_of(usize::from(index), figure);
+        if let (Some(level), Some(corner)) = (part(PartFigure::NoiseVoltage), part(PartFigure::NoiseVoltageCorner)) {
+            let exponent = part(PartFigure::NoiseExponent).unwrap_or(1.0);
+            list.push(Generator {
+                origin: NoiseOrigin::AmplifierVoltage(index),
+                numerator: injection.input[usize::from(index)].clone(),
+                spectrum: Spectrum::Flicker(level * level, corner, exponent),
+            });
+        }
+        if let (Some(level), Some(corner)) = (part(PartFigure::NoiseCurrent), part(PartFigure::NoiseCurrentCorner)) {
+            for (node, origin) in
+                [(amplifier.plus, NoiseOrigin::CurrentNonInverting(index)), (amplifier.minus, NoiseOrigin::CurrentInverting(index))]
+            {
+                let numerator = &injection.current[usize::from(node.0)];
+                if node != GROUND && !numerator.is_zero() {
+                    list.push(Generator {
+                        origin,
+                        numerator: numerator.clone(),
+                        spectrum: Spectrum::Flicker(level * level * scale * scale, corner, 1.0),
+                    });
+                }
             }
         }
     }
     list
+}
+
+/// Shot noise `2qI` of photodiodes: dark current and the signal's DC part.
+fn shot(solution: &Solution<'_>, list: &mut Vec<Generator>) {
+    let model = solution.model;
+    let scale = model.scale.0;
+    for (input, source) in (0u8..).zip(&model.stage.sources) {
+        let Some(Source::Photodiode { .. }) = source else { continue };
+        let dark = model.parameters.slot(Parameter::DarkCurrent(input)).map_or(0.0, |slot| solution.values[slot]);
+        let light = model.stage.signal_of(usize::from(input)).map_or(0.0, |s| s.dc.abs());
+        let node = model.network.input_node(usize::from(input));
+        list.push(Generator {
+            origin: NoiseOrigin::SourceShot(input),
+            numerator: solution.injection().current[usize::from(node.0)].clone(),
+            spectrum: Spectrum::White(2.0 * ELEMENTARY_CHARGE * (dark + light) * scale * scale),
+        });
+    }
 }
 
 fn power(solution: &Solution<'_>, generator: &Generator, frequency: f64, below: f64) -> f64 {
@@ -225,10 +251,10 @@ pub fn curve(solution: &Solution<'_>, from: f64, to: f64, points: usize, shares:
         .collect()
 }
 
-/// `∫ |H|² df / |H(0)|²` over all frequencies, Hz; infinite where the response does not fall off.
+/// `∫ |H|² df / |H(ref)|²` over all frequencies, Hz; infinite where the response does not fall off.
 pub fn noise_bandwidth(solution: &Solution<'_>) -> f64 {
     let looped = solution.looped();
-    let numerator = &looped.forward[usize::from(solution.model.network.load.0)];
+    let numerator = &looped.forward[0][usize::from(solution.model.network.load.0)];
     let degree = |p: &Polynomial| p.0.iter().rposition(|c| c.abs() > 0.0).unwrap_or(0);
     let (n, d) = (degree(numerator), degree(&looped.closed));
     if n >= d {
@@ -240,7 +266,8 @@ pub fn noise_bandwidth(solution: &Solution<'_>) -> f64 {
     // Below the grid the response is flat; above it, falls with the difference of the degrees.
     #[expect(clippy::cast_precision_loss, reason = "degrees are small")]
     let tail = 1.0 / (2.0 * (d - n) as f64 - 1.0);
-    let reference = solution.dc_gain() * solution.dc_gain();
+    let gain = super::response::reference(solution).gain;
+    let reference = gain * gain;
     let (f_low, f_high) = (solution.hertz(low), solution.hertz(high));
     let middle = integrate(solution, f_low, f_high, |f| h(solution.scaled(f)));
     (middle + f_low * h(low) + f_high * h(high) * tail) / reference
@@ -248,9 +275,9 @@ pub fn noise_bandwidth(solution: &Solution<'_>) -> f64 {
 
 /// Rms of the signal at the load at its highest frequency, V.
 pub fn signal_rms(solution: &Solution<'_>) -> f64 {
-    let Some(signal) = solution.model.stage.signal else { return 0.0 };
+    let Some(signal) = solution.model.stage.signal() else { return 0.0 };
     let frequency = signal.frequency.unwrap_or(0.0);
-    magnitude(solution.transfer(solution.scaled(frequency))) * signal.peak / signal.crest_factor
+    magnitude(solution.transfer(0, solution.scaled(frequency))) * signal.peak / signal.crest_factor
 }
 
 /// A ratio of rms signal to rms noise in bits of an ideal converter.

@@ -7,6 +7,7 @@ use num_complex::Complex64;
 
 use super::search;
 use crate::{
+    kind::Reference,
     model::Probe,
     parameters::touch,
     polynomial::Polynomial,
@@ -14,52 +15,105 @@ use crate::{
     solution::{Solution, magnitude},
 };
 
-/// Edge and peak.
+/// Where the kind's gain is taken, and the gain there.
+#[derive(Clone, Copy, Debug)]
+pub struct ReferencePoint {
+    /// Scaled angular frequency; 0 at DC.
+    pub omega: f64,
+    /// The gain: magnitude with the sign of the ideal gain.
+    pub gain: f64,
+}
+
+/// The pass-band reference of the first drive's transfer.
+pub fn reference(solution: &Solution<'_>) -> ReferencePoint {
+    *solution.reference.get_or_init(|| match solution.model.stage.kind.spec().reference {
+        Reference::Dc => ReferencePoint { omega: 0.0, gain: solution.dc_gain(0) },
+        Reference::Frequency(frequency) => {
+            let omega = solution.scaled(frequency(solution.model.stage));
+            if omega <= 0.0 {
+                return ReferencePoint { omega: 0.0, gain: solution.dc_gain(0) };
+            }
+            ReferencePoint { omega, gain: signed(solution, solution.transfer(0, omega)) }
+        }
+        Reference::Peak => {
+            let looped = solution.looped();
+            let numerator = &looped.forward[0][usize::from(solution.model.network.load.0)];
+            let power = |omega: f64| numerator.at(omega).norm_sqr() / looped.closed.at(omega).norm_sqr();
+            let grid = solution.grid();
+            let Some(top) = (0..grid.len()).max_by(|&a, &b| power(grid[a]).total_cmp(&power(grid[b]))) else {
+                return ReferencePoint { omega: 0.0, gain: solution.dc_gain(0) };
+            };
+            let (omega, _) = search::peak(grid[top.saturating_sub(1)], grid[(top + 1).min(grid.len() - 1)], power);
+            ReferencePoint { omega, gain: signed(solution, solution.transfer(0, omega)) }
+        }
+    })
+}
+
+/// Magnitude with the sign of the ideal gain.
+fn signed(solution: &Solution<'_>, h: Complex64) -> f64 {
+    let stage = solution.model.stage;
+    if (stage.kind.spec().ideal_gain)(stage) < 0.0 { -magnitude(h) } else { magnitude(h) }
+}
+
+/// Edges and peak.
 #[derive(Clone, Copy, Debug)]
 pub struct Edges {
-    /// Lowest frequency at which `|H|` is `|H(0)|/√2`, Hz; infinite where it never falls so far.
+    /// Lowest frequency above the reference at which `|H|` is 1/√2 of its value there, Hz; infinite where it never falls so far.
     pub bandwidth: f64,
-    /// `max |H| / |H(0)|`, at least 1.
+    /// Highest frequency below the reference at which it is, Hz; zero where it never falls so far.
+    pub low_cutoff: f64,
+    /// `max |H|` over the value at the reference, at least 1.
     pub peaking: f64,
 }
 
-/// Edge and peak of the transfer to the load.
+/// Edges and peak of the first drive's transfer to the load.
 ///
 /// # Formula
-/// Sign changes of `|N|²·|D(0)|² − ½·|N(0)|²·|D|²` between grid points, refined to the last digits; the peak by golden section.
+/// Sign changes of `|H|² − ½·|H(ref)|²` between grid points, refined to the last digits; the peak by golden section.
 pub fn edges(solution: &Solution<'_>) -> Edges {
     *solution.edges.get_or_init(|| {
         let looped = solution.looped();
-        let numerator = &looped.forward[usize::from(solution.model.network.load.0)];
-        let reference = numerator.constant() / looped.closed.constant();
-        let half = 0.5 * reference * reference;
+        let numerator = &looped.forward[0][usize::from(solution.model.network.load.0)];
+        let ReferencePoint { omega: middle, gain } = reference(solution);
+        let half = 0.5 * gain * gain;
         let power = |omega: f64| numerator.at(omega).norm_sqr() / looped.closed.at(omega).norm_sqr();
         let grid = solution.grid();
-        let mut bandwidth = f64::INFINITY;
-        let (mut top, mut top_at) = (reference * reference, None);
-        let mut before: Option<f64> = None;
-        for (i, &omega) in grid.iter().enumerate() {
+        let (mut bandwidth, mut low_cutoff) = (f64::INFINITY, 0.0);
+        let (mut top, mut top_at) = (gain * gain, None);
+        let start = grid.partition_point(|&w| w <= middle);
+        let mut before = if middle > 0.0 { middle } else { grid.first().map_or(0.0, |w| w * 0.5) };
+        for (i, &omega) in grid.iter().enumerate().skip(start) {
             let here = power(omega);
             if here > top {
                 (top, top_at) = (here, Some(i));
             }
             if bandwidth.is_infinite() && here < half {
-                let from = before.unwrap_or(omega * 0.5);
-                bandwidth = solution.hertz(search::root(from, omega, |w| power(w) - half));
+                bandwidth = solution.hertz(search::root(before, omega, |w| power(w) - half));
             }
-            before = Some(omega);
+            before = omega;
+        }
+        let mut after = middle;
+        for (i, &omega) in grid.iter().enumerate().take(start).rev() {
+            let here = power(omega);
+            if here > top {
+                (top, top_at) = (here, Some(i));
+            }
+            if low_cutoff <= 0.0 && here < half {
+                low_cutoff = solution.hertz(search::root(omega, after, |w| power(w) - half));
+            }
+            after = omega;
         }
         let mut peaking = 1.0;
         if let Some(i) = top_at {
             let (a, c) = (grid[i.saturating_sub(1)], grid[(i + 1).min(grid.len() - 1)]);
             let (_, best) = search::peak(a, c, power);
-            peaking = libm::sqrt(best.max(top)) / reference.abs();
+            peaking = libm::sqrt(best.max(top)) / gain.abs();
             // A rise that only rounding makes is none.
             if peaking < 1.0 + 1e-12 {
                 peaking = 1.0;
             }
         }
-        Edges { bandwidth, peaking }
+        Edges { bandwidth, low_cutoff, peaking }
     })
 }
 
@@ -86,30 +140,28 @@ pub fn output_impedance(solution: &Solution<'_>) -> f64 {
 }
 
 fn impedance(solution: &Solution<'_>, probe: &Probe) -> f64 {
-    let omega = solution.scaled(solution.model.stage.signal.and_then(|s| s.frequency).unwrap_or(0.0));
+    let omega = solution.scaled(solution.model.stage.signal().and_then(|s| s.frequency).unwrap_or(0.0));
     let size = |expansion| magnitude(solution.determinant(expansion, &probe.network).at(omega));
     let (above, below) = (size(&probe.above), size(&probe.below));
     if below <= 0.0 { f64::INFINITY } else { above / below * solution.model.scale.0 }
 }
 
-/// Largest relative change of the DC gain per kelvin: the sum of `|∂ln G/∂ln x|·tc` over the components.
+/// Largest relative change of the gain per kelvin: the sum of `|∂ln G/∂ln x|·tc` over the components.
 ///
 /// # Formula
 /// Central differences of 1e-4; the worst combination of signs, since a stated coefficient has none.
 pub fn gain_drift(solution: &Solution<'_>) -> f64 {
     const STEP: f64 = 1e-4;
-    let gain = solution.dc_gain();
-    let mut values = solution.values.clone();
+    let gain = reference(solution).gain;
     let mut sum = 0.0;
     for (slot, entry) in solution.model.parameters.entries.iter().enumerate() {
         if entry.drift > 0.0 && entry.touches & touch::NETWORK != 0 {
-            let nominal = values[slot];
-            values[slot] = nominal * (1.0 + STEP);
-            let more = solution.model.dc_gain(&values);
-            values[slot] = nominal * (1.0 - STEP);
-            let less = solution.model.dc_gain(&values);
-            values[slot] = nominal;
-            sum += ((more - less) / (2.0 * STEP * gain)).abs() * entry.drift;
+            let moved = |factor: f64| {
+                let mut values = solution.values.clone();
+                values[slot] *= factor;
+                reference(&Solution::new(solution.model, values, None)).gain
+            };
+            sum += ((moved(1.0 + STEP) - moved(1.0 - STEP)) / (2.0 * STEP * gain)).abs() * entry.drift;
         }
     }
     sum

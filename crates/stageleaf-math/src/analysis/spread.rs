@@ -155,11 +155,18 @@ impl<'m> Spread<'m> {
         let mut finish = |search: Search, better: fn(f64, f64) -> bool| -> Extreme {
             let mut result = value(&self.corner(&search.ends), query);
             let mut ends = search.ends;
+            // Never narrower than what a single parameter, or none, already showed.
             if let (Some(v), Some((single, at))) = (result.value(), search.best_single)
                 && better(single, v)
             {
                 result = Outcome::Value(single);
                 ends = alloc::vec![at];
+            }
+            if let (Some(v), Some(centre)) = (result.value(), search.centre)
+                && better(centre, v)
+            {
+                result = Outcome::Value(centre);
+                ends.clear();
             }
             if result.value().is_some()
                 && let Some((outcome, at)) = &bad
@@ -173,6 +180,12 @@ impl<'m> Spread<'m> {
         let low = finish(low, |a, b| a < b);
         let high = finish(high, |a, b| a > b);
         Extremes { centre, low, high, seen: all }
+    }
+
+    /// The stage's kind.
+    #[must_use]
+    pub fn kind(&self) -> crate::kind::Kind {
+        self.model.stage.kind
     }
 
     /// What the slot holds.
@@ -211,7 +224,7 @@ impl<'m> Spread<'m> {
         let (mut guaranteed, mut typical) = (false, false);
         for slot in 0..self.model.parameters.entries.len() {
             let entry = self.model.parameters.entries[slot];
-            let of_part = matches!(entry.parameter, Parameter::Part(_) | Parameter::Headroom);
+            let of_part = matches!(entry.parameter, Parameter::Part(_) | Parameter::PartOf(..) | Parameter::Headroom);
             if !of_part || entry.touches & touched == 0 {
                 continue;
             }
@@ -248,7 +261,7 @@ impl<'m> Spread<'m> {
             }
         }
         // Higher poles have no guaranteed value on any data sheet.
-        if self.model.poles.as_ref().is_some_and(|p| !p.is_empty()) && touched & ON_POLES != 0 {
+        if self.model.poles.iter().flatten().any(|p| !p.is_empty()) && touched & ON_POLES != 0 {
             let slot = self.model.parameters.pole_factor();
             let (from, there) = if at_extreme {
                 (&extreme.outcome, value(&self.off_corner(&extreme.ends, slot, 1.2), query))

@@ -13,15 +13,17 @@
 //! # Source
 //! Common practice, no source; derived here.
 
+use alloc::vec::Vec;
 use core::f64::consts::TAU;
 
 use num_complex::Complex64;
 
 use super::{Missing, search};
 use crate::{
+    kind::{Drives, Feed},
     network::{Law, Node, dense::admittance},
     part::{Headroom, PartFigure},
-    report::{EnvelopePoint, Need, Outcome},
+    report::{EnvelopePoint, Need, Outcome, Parameter},
     solution::{Solution, magnitude},
 };
 
@@ -38,7 +40,44 @@ pub struct Swing {
     pub slew: Outcome,
 }
 
-/// The output pin, per volt of the source.
+/// What a drive applies: its steady value, and a sine.
+#[derive(Clone, Copy, Debug)]
+pub struct Level {
+    /// Which drive.
+    pub drive: usize,
+    /// Steady value.
+    pub dc: f64,
+    /// Peak of the alternating part.
+    pub peak: f64,
+    /// Hz.
+    pub frequency: f64,
+}
+
+/// What every drive of the stage applies in this build.
+pub fn levels<'s>(solution: &'s Solution<'_>) -> impl Iterator<Item = Level> + 's {
+    let model = solution.model;
+    let spec = model.stage.kind.spec();
+    let inputs = (spec.inputs)(model.stage);
+    (0..model.drives.len()).filter_map(move |drive| {
+        let signal = model.stage.signal_of(drive);
+        let fed = match (spec.drives, inputs.get(drive).map(|i| i.feed)) {
+            (Drives::Differential, _) => (drive == 1).then(|| model.parameters.slot(Parameter::CommonMode)).flatten(),
+            (_, Some(Feed::Reference)) => model.parameters.slot(Parameter::ReferenceVoltage),
+            (_, Some(Feed::Supply)) => model.parameters.supply().map(|(positive, _)| positive),
+            _ => None,
+        };
+        let dc = signal.map_or(0.0, |s| s.dc) + fed.map_or(0.0, |slot| solution.values[slot]);
+        let (peak, frequency) = signal.map_or((0.0, 0.0), |s| (s.peak, s.frequency.unwrap_or(0.0)));
+        (signal.is_some() || fed.is_some()).then_some(Level { drive, dc, peak, frequency })
+    })
+}
+
+/// The steady voltage at a node from all drives.
+pub fn steady(solution: &Solution<'_>, node: Node) -> f64 {
+    levels(solution).map(|l| if l.dc.abs() > 0.0 { l.dc * solution.voltage(l.drive, node, 0.0).re } else { 0.0 }).sum()
+}
+
+/// An output pin, per unit of a drive.
 #[derive(Clone, Copy, Debug)]
 pub struct Pin {
     /// Voltage.
@@ -49,12 +88,12 @@ pub struct Pin {
     pub behind: Complex64,
 }
 
-/// The output pin at a frequency in Hz; at 0 the DC transfer.
-pub fn pin(solution: &Solution<'_>, frequency: f64) -> Pin {
+/// An amplifier's output pin at a frequency in Hz; at 0 the DC transfer.
+pub fn pin(solution: &Solution<'_>, amplifier: usize, drive: usize, frequency: f64) -> Pin {
     let network = &solution.model.network;
     let omega = solution.scaled(frequency);
-    let at = |node: Node| solution.voltage(node, omega);
-    let node = network.amplifier.pin;
+    let at = |node: Node| solution.voltage(drive, node, omega);
+    let node = network.amplifiers[amplifier].pin;
     let voltage = at(node);
     let s = Complex64::new(0.0, TAU * frequency);
     let mut current = Complex64::new(0.0, 0.0);
@@ -69,7 +108,7 @@ pub fn pin(solution: &Solution<'_>, frequency: f64) -> Pin {
         }
         current += (voltage - at(other)) * admittance(element.law, &solution.values, s);
     }
-    let behind = voltage + current * solution.part(PartFigure::OutputResistance).unwrap_or(0.0);
+    let behind = voltage + current * solution.part_of(amplifier, PartFigure::OutputResistance).unwrap_or(0.0);
     Pin { voltage, current, behind }
 }
 
@@ -88,14 +127,29 @@ pub struct Drive {
     pub phase: (f64, f64),
 }
 
-/// The stage's own signal at the pin.
-pub fn drive(solution: &Solution<'_>) -> Drive {
-    let signal = solution.model.stage.signal;
-    let (dc, peak) = signal.map_or((0.0, 0.0), |s| (s.dc, s.peak));
-    let steady = pin(solution, 0.0);
-    let moving = pin(solution, signal.and_then(|s| s.frequency).unwrap_or(0.0));
-    let mut drive = Drive { v0: steady.voltage.re * dc, vp: 0.0, i0: steady.current.re * dc, ip: 0.0, phase: (1.0, 0.0) };
-    drive.set_alternating(&moving, peak);
+/// The stage's own signals at an amplifier's pin: of several, the steady parts add up, and the alternating ones as if all were at
+/// their peak there at once.
+pub fn drive(solution: &Solution<'_>, amplifier: usize) -> Drive {
+    let mut drive = Drive { v0: 0.0, vp: 0.0, i0: 0.0, ip: 0.0, phase: (1.0, 0.0) };
+    let mut phasor = Complex64::new(0.0, 0.0);
+    for level in levels(solution) {
+        if level.dc.abs() > 0.0 {
+            let steady = pin(solution, amplifier, level.drive, 0.0);
+            drive.v0 += steady.voltage.re * level.dc;
+            drive.i0 += steady.current.re * level.dc;
+        }
+        if level.peak > 0.0 {
+            let moving = pin(solution, amplifier, level.drive, level.frequency);
+            let (v, i) = (magnitude(moving.voltage), magnitude(moving.current));
+            drive.vp += v * level.peak;
+            let turned = if v > 0.0 { moving.current * moving.voltage.conj() / v } else { Complex64::new(i, 0.0) };
+            phasor += turned * level.peak;
+        }
+    }
+    drive.ip = magnitude(phasor);
+    if drive.ip > 0.0 {
+        drive.phase = (phasor.re / drive.ip, phasor.im / drive.ip);
+    }
     drive
 }
 
@@ -191,22 +245,51 @@ impl Rails<'_> {
     }
 }
 
-/// The four margins at the stage's signal.
+/// The four margins at the stage's signal, each of the amplifier with the least.
 pub fn swing<'s>(solution: &'s Solution<'_>) -> &'s Swing {
     solution.swing.get_or_init(|| {
-        let drive = drive(solution);
-        Swing { clip: clip(solution, &drive), range: range(solution), current: current(solution, &drive), slew: slew(solution, &drive) }
+        let mut swing = of(solution, 0);
+        for amplifier in 1..solution.amplifiers() {
+            let here = of(solution, amplifier);
+            for (least, other) in [
+                (&mut swing.clip, here.clip),
+                (&mut swing.range, here.range),
+                (&mut swing.current, here.current),
+                (&mut swing.slew, here.slew),
+            ] {
+                // What is missing for one amplifier is missing for the least of all.
+                if let (Some(a), Some(b)) = (least.value(), other.value()) {
+                    *least = Outcome::Value(a.min(b));
+                } else if least.value().is_some() {
+                    *least = other;
+                }
+            }
+        }
+        swing
     })
 }
 
-fn rails<'a>(solution: &'a Solution<'_>) -> Result<Rails<'a>, Outcome> {
+/// The four margins of one amplifier.
+#[must_use]
+pub fn of(solution: &Solution<'_>, amplifier: usize) -> Swing {
+    let drive = drive(solution, amplifier);
+    Swing {
+        clip: clip(solution, amplifier, &drive),
+        range: range(solution, amplifier),
+        current: current(solution, amplifier, &drive),
+        slew: slew(solution, amplifier, &drive),
+    }
+}
+
+fn rails<'a>(solution: &'a Solution<'_>, amplifier: usize) -> Result<Rails<'a>, Outcome> {
     let model = solution.model;
     let Some((positive, negative)) = model.parameters.supply() else { return Err(Outcome::Undetermined(alloc::vec![Need::Supply])) };
+    let part = model.stage.part_of(amplifier);
     let mut missing = Missing::default();
-    if model.stage.part.headroom_high.is_empty() {
+    if part.headroom_high.is_empty() {
         missing.need(Need::HeadroomHigh);
     }
-    if model.stage.part.headroom_low.is_empty() {
+    if part.headroom_low.is_empty() {
         missing.need(Need::HeadroomLow);
     }
     let offset = match &super::dc::budget(solution).total {
@@ -225,15 +308,15 @@ fn rails<'a>(solution: &'a Solution<'_>) -> Result<Rails<'a>, Outcome> {
     Ok(Rails {
         high: solution.values[positive],
         low: solution.values[negative],
-        above: &model.stage.part.headroom_high,
-        below: &model.stage.part.headroom_low,
+        above: &part.headroom_high,
+        below: &part.headroom_low,
         position: solution.values[model.parameters.headroom()],
         offset,
     })
 }
 
-fn clip(solution: &Solution<'_>, drive: &Drive) -> Outcome {
-    match rails(solution) {
+fn clip(solution: &Solution<'_>, amplifier: usize, drive: &Drive) -> Outcome {
+    match rails(solution, amplifier) {
         Err(outcome) => outcome,
         Ok(rails) => match rails.margin(drive) {
             Ok(margin) => Outcome::Value(margin),
@@ -242,96 +325,116 @@ fn clip(solution: &Solution<'_>, drive: &Drive) -> Outcome {
     }
 }
 
-fn range(solution: &Solution<'_>) -> Outcome {
+fn range(solution: &Solution<'_>, amplifier: usize) -> Outcome {
     let model = solution.model;
-    let mut missing = Missing::default();
-    missing.part(solution, PartFigure::RangeFromNegative);
-    missing.part(solution, PartFigure::RangeFromPositive);
-    missing.supply(solution);
-    if let Some(undetermined) = missing.outcome() {
-        return undetermined;
-    }
+    let part = |figure| solution.part_of(amplifier, figure);
     let (Some((positive, negative)), Some(from_negative), Some(from_positive)) =
-        (model.parameters.supply(), solution.part(PartFigure::RangeFromNegative), solution.part(PartFigure::RangeFromPositive))
+        (model.parameters.supply(), part(PartFigure::RangeFromNegative), part(PartFigure::RangeFromPositive))
     else {
-        return Outcome::Undetermined(alloc::vec![Need::Supply]);
+        let mut missing = Missing::default();
+        for figure in [PartFigure::RangeFromNegative, PartFigure::RangeFromPositive] {
+            if part(figure).is_none() {
+                missing.need(Need::Part(figure));
+            }
+        }
+        missing.supply(solution);
+        return missing.outcome().unwrap_or(Outcome::Undetermined(Vec::new()));
     };
     let (low, high) = (solution.values[negative] + from_negative, solution.values[positive] - from_positive);
-    let (dc, peak, frequency) = model.stage.signal.map_or((0.0, 0.0, 0.0), |s| (s.dc, s.peak, s.frequency.unwrap_or(0.0)));
-    let amplifier = model.network.amplifier;
-    let omega = solution.scaled(frequency);
+    let pins = model.network.amplifiers[amplifier];
     let mut margin = f64::INFINITY;
-    for node in [amplifier.plus, amplifier.minus] {
-        let steady = solution.voltage(node, 0.0).re * dc;
-        let moving = magnitude(solution.voltage(node, omega)) * peak;
-        margin = margin.min(high - steady - moving).min(steady - moving - low);
+    for node in [pins.plus, pins.minus] {
+        let middle = steady(solution, node);
+        let moving: f64 = levels(solution)
+            .filter(|l| l.peak > 0.0)
+            .map(|l| magnitude(solution.voltage(l.drive, node, solution.scaled(l.frequency))) * l.peak)
+            .sum();
+        margin = margin.min(high - middle - moving).min(middle - moving - low);
     }
     Outcome::Value(margin)
 }
 
-fn current(solution: &Solution<'_>, drive: &Drive) -> Outcome {
-    match solution.part(PartFigure::CurrentLimit) {
+fn current(solution: &Solution<'_>, amplifier: usize, drive: &Drive) -> Outcome {
+    match solution.part_of(amplifier, PartFigure::CurrentLimit) {
         Some(limit) => Outcome::Value(limit - drive.i0.abs() - drive.ip),
         None => Outcome::Undetermined(alloc::vec![Need::Part(PartFigure::CurrentLimit)]),
     }
 }
 
-fn slew_rate(solution: &Solution<'_>) -> f64 {
-    f64::min(solution.part(PartFigure::SlewRise).unwrap_or(f64::INFINITY), solution.part(PartFigure::SlewFall).unwrap_or(f64::INFINITY))
+fn slew_rate(solution: &Solution<'_>, amplifier: usize) -> f64 {
+    let part = |figure| solution.part_of(amplifier, figure).unwrap_or(f64::INFINITY);
+    part(PartFigure::SlewRise).min(part(PartFigure::SlewFall))
 }
 
-fn slew(solution: &Solution<'_>, drive: &Drive) -> Outcome {
-    let mut missing = Missing::default();
-    missing.part(solution, PartFigure::SlewRise);
-    missing.part(solution, PartFigure::SlewFall);
+fn slew(solution: &Solution<'_>, amplifier: usize, drive: &Drive) -> Outcome {
     let capacitive = solution.model.stage.load.capacitance.is_some();
-    if capacitive {
-        missing.part(solution, PartFigure::CurrentLimit);
+    let mut missing = Missing::default();
+    for figure in [PartFigure::SlewRise, PartFigure::SlewFall, PartFigure::CurrentLimit] {
+        if solution.part_of(amplifier, figure).is_none() && (capacitive || figure != PartFigure::CurrentLimit) {
+            missing.need(Need::Part(figure));
+        }
     }
     if let Some(undetermined) = missing.outcome() {
         return undetermined;
     }
-    let signal = solution.model.stage.signal;
-    let (peak, frequency) = signal.map_or((0.0, 0.0), |s| (s.peak, s.frequency.unwrap_or(0.0)));
-    let needed = TAU * frequency * magnitude(pin(solution, frequency).behind) * peak;
+    let needed: f64 = levels(solution)
+        .filter(|l| l.peak > 0.0 && l.frequency > 0.0)
+        .map(|l| TAU * l.frequency * magnitude(pin(solution, amplifier, l.drive, l.frequency).behind) * l.peak)
+        .sum();
     if needed <= 0.0 {
         return Outcome::Value(f64::INFINITY);
     }
-    let mut ratio = slew_rate(solution) / needed;
+    let mut ratio = slew_rate(solution, amplifier) / needed;
     let charging = drive.ip * drive.phase.1.abs();
-    if let (true, Some(limit)) = (capacitive && charging > 0.0, solution.part(PartFigure::CurrentLimit)) {
+    if let (true, Some(limit)) = (capacitive && charging > 0.0, solution.part_of(amplifier, PartFigure::CurrentLimit)) {
         ratio = ratio.min((limit - drive.i0.abs()).max(0.0) / charging);
     }
     Outcome::Value(ratio)
 }
 
-/// Highest frequency at which the signal's amplitude at the pin (as at low frequency) stays within slew and current limit.
+/// Highest frequency at which the first signal's amplitude at the pins (as at the pass-band reference) stays within slew and current
+/// limit.
 ///
 /// # Formula
-/// `ω·|E/V|·Vp = SR`, for a pin without output resistance `f = SR/(2π·Vp)`; and `|I/V|·Vp + |I0| = I_limit`. The lower of the two.
+/// `ω·|E/V|·Vp = SR`, for a pin without output resistance `f = SR/(2π·Vp)`; and `|I/V|·Vp + |I0| = I_limit`. The lower of the two;
+/// of several amplifiers the lowest.
 ///
 /// # Does not apply
 /// The rails do not depend on frequency: see `clip_margin`.
 pub fn full_power_bandwidth(solution: &Solution<'_>) -> Outcome {
+    let mut lowest: Option<Outcome> = None;
+    for amplifier in 0..solution.amplifiers() {
+        let here = full_power_bandwidth_of(solution, amplifier);
+        lowest = match (lowest, here) {
+            (Some(Outcome::Value(a)), Outcome::Value(b)) => Some(Outcome::Value(a.min(b))),
+            (None | Some(Outcome::Value(_)), other) => Some(other),
+            (Some(worse), _) => Some(worse),
+        };
+    }
+    lowest.unwrap_or(Outcome::DoesNotApply("the stage has no amplifier"))
+}
+
+fn full_power_bandwidth_of(solution: &Solution<'_>, amplifier: usize) -> Outcome {
     let stage = solution.model.stage;
     let loaded = stage.load.resistance.is_some() || stage.load.capacitance.is_some();
-    let limit = solution.part(PartFigure::CurrentLimit);
+    let limit = solution.part_of(amplifier, PartFigure::CurrentLimit);
     if loaded && limit.is_none() {
         return Outcome::Undetermined(alloc::vec![Need::Part(PartFigure::CurrentLimit)]);
     }
-    let (dc, peak) = stage.signal.map_or((0.0, 0.0), |s| (s.dc, s.peak));
-    let steady = pin(solution, 0.0);
-    let amplitude = magnitude(steady.voltage) * peak;
+    let peak = stage.signal().map_or(0.0, |s| s.peak);
+    let reference = solution.hertz(super::response::reference(solution).omega);
+    let amplitude = magnitude(pin(solution, amplifier, 0, reference).voltage) * peak;
     if amplitude <= 0.0 {
         return Outcome::DoesNotApply("the signal has no alternating part");
     }
-    let rate = slew_rate(solution);
+    let standing: f64 =
+        levels(solution).filter(|l| l.dc.abs() > 0.0).map(|l| pin(solution, amplifier, l.drive, 0.0).current.re * l.dc).sum();
+    let rate = slew_rate(solution, amplifier);
     let excess = |omega: f64| {
-        let here = pin(solution, solution.hertz(omega));
+        let here = pin(solution, amplifier, 0, solution.hertz(omega));
         let volts = magnitude(here.voltage);
         let slope = omega * solution.model.scale.1 * magnitude(here.behind) / volts * amplitude / rate;
-        let amperes =
-            limit.filter(|_| loaded).map_or(0.0, |l| (magnitude(here.current) / volts * amplitude + (steady.current.re * dc).abs()) / l);
+        let amperes = limit.filter(|_| loaded).map_or(0.0, |l| (magnitude(here.current) / volts * amplitude + standing.abs()) / l);
         slope.max(amperes) - 1.0
     };
     // Bracket around the frequency that the slew rate alone gives.
@@ -355,25 +458,33 @@ pub fn full_power_bandwidth(solution: &Solution<'_>) -> Outcome {
     Outcome::Value(solution.hertz(if high > low { search::root(low, high, excess) } else { low }))
 }
 
-/// The output envelope: the largest clean peak at the load against frequency.
-pub fn envelope(solution: &Solution<'_>, from: f64, to: f64, points: usize) -> alloc::vec::Vec<EnvelopePoint> {
-    let model = solution.model;
-    let stage = model.stage;
-    let dc = stage.signal.map_or(0.0, |s| s.dc);
-    let steady = pin(solution, 0.0);
-    let rails = rails(solution).ok();
-    let limit = solution.part(PartFigure::CurrentLimit);
-    let rate = slew_rate(solution);
+/// The output envelope: the largest clean peak at the load against frequency, of all amplifiers the least.
+pub fn envelope(solution: &Solution<'_>, from: f64, to: f64, points: usize) -> Vec<EnvelopePoint> {
+    let bounds: Vec<_> = (0..solution.amplifiers())
+        .map(|a| {
+            let mut standing = drive(solution, a);
+            (standing.vp, standing.ip, standing.phase) = (0.0, 0.0, (1.0, 0.0));
+            (a, standing, rails(solution, a).ok(), solution.part_of(a, PartFigure::CurrentLimit), slew_rate(solution, a))
+        })
+        .collect();
     super::response::frequencies(from, to, points)
         .map(|frequency| {
-            let here = pin(solution, frequency);
-            let gain = magnitude(solution.transfer(solution.scaled(frequency)));
-            let mut drive = Drive { v0: steady.voltage.re * dc, vp: 0.0, i0: steady.current.re * dc, ip: 0.0, phase: (1.0, 0.0) };
-            let bound = rails.as_ref().and_then(|rails| largest(rails, &mut drive, &here)).map(|peak| peak * gain);
-            let current = limit.map(|l| (l - drive.i0.abs()).max(0.0) / magnitude(here.current) * gain);
-            let slew = rate.is_finite().then(|| rate / (TAU * frequency * magnitude(here.behind)) * gain);
-            let finite = |v: Option<f64>| v.filter(|v| v.is_finite());
-            EnvelopePoint { frequency, rails: finite(bound), current: finite(current), slew: finite(slew) }
+            let gain = magnitude(solution.transfer(0, solution.scaled(frequency)));
+            let mut point = EnvelopePoint { frequency, rails: None, current: None, slew: None };
+            let mut lower = |slot: fn(&mut EnvelopePoint) -> &mut Option<f64>, bound: Option<f64>| {
+                if let Some(b) = bound.filter(|b| b.is_finite()) {
+                    let slot = slot(&mut point);
+                    *slot = Some(slot.map_or(b, |s: f64| s.min(b)));
+                }
+            };
+            for (a, standing, rails, limit, rate) in &bounds {
+                let here = pin(solution, *a, 0, frequency);
+                let clean = rails.as_ref().and_then(|r| largest(r, &mut standing.clone(), &here));
+                lower(|p| &mut p.rails, clean.map(|peak| peak * gain));
+                lower(|p| &mut p.current, limit.map(|l| (l - standing.i0.abs()).max(0.0) / magnitude(here.current) * gain));
+                lower(|p| &mut p.slew, rate.is_finite().then(|| rate / (TAU * frequency * magnitude(here.behind)) * gain));
+            }
+            point
         })
         .collect()
 }

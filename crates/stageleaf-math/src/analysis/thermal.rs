@@ -13,9 +13,10 @@
 //! Class-B dissipation: A. Sedra, K. Smith, *Microelectronic Circuits*, output stages, from memory; derived here for any phase
 //! and DC part.
 
+use alloc::vec::Vec;
 use core::f64::consts::PI;
 
-use super::swing::{Drive, drive};
+use super::swing::{Drive, drive, levels};
 use crate::{
     network::{Law, dense::admittance},
     part::PartFigure,
@@ -83,25 +84,34 @@ fn worst_heat(drive: &Drive, high: f64, low: f64) -> f64 {
     ends.max(fx).max(fy)
 }
 
-/// Power figures.
+/// Power figures: of the hottest package, if the stage's amplifiers do not fit into one.
 pub fn power<'s>(solution: &'s Solution<'_>) -> &'s Power {
     solution.power.get_or_init(|| {
         let model = solution.model;
         let lacking = |need: Need| Outcome::Undetermined(alloc::vec![need]);
-        let Some(quiescent) = solution.part(PartFigure::SupplyCurrent) else {
+        let count = solution.amplifiers();
+        let quiescent = |a: usize| solution.part_of(a, PartFigure::SupplyCurrent);
+        if (0..count).any(|a| quiescent(a).is_none()) {
             let outcome = lacking(Need::Part(PartFigure::SupplyCurrent));
             return Power { supply_current: outcome.clone(), dissipation: outcome.clone(), junction: outcome };
-        };
-        let drive = drive(solution);
-        let amplifiers = f64::from(model.stage.part.amplifiers.unwrap_or(1).max(1));
-        let supply_current = Outcome::Value(quiescent * amplifiers + halves(drive.i0, drive.ip).0);
+        }
+        let drives: Vec<Drive> = (0..count).map(|a| drive(solution, a)).collect();
+        // A package's unused amplifiers draw their quiescent current too.
+        let in_package = |a: usize| usize::try_from(model.stage.part_of(a).amplifiers.unwrap_or(1).max(1)).unwrap_or(1);
+        let spare = if model.stage.parts.is_empty() { in_package(0).saturating_sub(count) } else { 0 };
+        #[expect(clippy::cast_precision_loss, reason = "a few amplifiers")]
+        let idle = quiescent(0).unwrap_or(0.0) * spare as f64;
+        let drawn: f64 = (0..count).map(|a| quiescent(a).unwrap_or(0.0) + halves(drives[a].i0, drives[a].ip).0).sum();
+        let supply_current = Outcome::Value(drawn + idle);
         let Some((positive, negative)) = model.parameters.supply() else {
             let outcome = lacking(Need::Supply);
             return Power { supply_current, dissipation: outcome.clone(), junction: outcome };
         };
         let (high, low) = (solution.values[positive], solution.values[negative]);
-        let worst = worst_heat(&drive, high, low);
-        let total = quiescent * amplifiers * (high - low) + worst;
+        let mut heat: Vec<f64> =
+            (0..count).map(|a| quiescent(a).unwrap_or(0.0) * (high - low) + worst_heat(&drives[a], high, low)).collect();
+        heat.sort_by(|a, b| b.total_cmp(a));
+        let total = heat.iter().take(in_package(0)).sum::<f64>() + idle * (high - low);
         let junction = match (solution.part(PartFigure::JunctionToAmbient), model.parameters.temperature()) {
             (None, _) => lacking(Need::Part(PartFigure::JunctionToAmbient)),
             (_, None) => lacking(Need::Ambient),
@@ -114,21 +124,21 @@ pub fn power<'s>(solution: &'s Solution<'_>) -> &'s Power {
 /// Power in every resistor of the stage: whose it is, W.
 pub fn resistors<'s>(solution: &'s Solution<'_>) -> impl Iterator<Item = (NoiseOrigin, f64)> + 's {
     let model = solution.model;
-    let (dc, peak, crest, frequency) =
-        model.stage.signal.map_or((0.0, 0.0, 1.0, 0.0), |s| (s.dc, s.peak, s.crest_factor, s.frequency.unwrap_or(0.0)));
-    let omega = solution.scaled(frequency);
-    let s = num_complex::Complex64::new(0.0, core::f64::consts::TAU * frequency);
+    let crest = model.stage.signal().map_or(1.0, |s| s.crest_factor);
     model.network.elements.iter().filter_map(move |element| {
         let origin = element.noise.filter(|o| matches!(o, NoiseOrigin::Component(_)))?;
-        let across = |w: f64| solution.voltage(element.a, w) - solution.voltage(element.b, w);
-        let rms = magnitude(across(omega)) * peak / crest;
-        let steady = across(0.0).re * dc;
+        let (mut rms, mut steady, mut series) = (0.0, 0.0, 0.0);
+        for level in levels(solution) {
+            let across = |w: f64| solution.voltage(level.drive, element.a, w) - solution.voltage(level.drive, element.b, w);
+            let volts = magnitude(across(solution.scaled(level.frequency))) * level.peak / crest;
+            rms += volts;
+            steady += across(0.0).re * level.dc;
+            let s = num_complex::Complex64::new(0.0, core::f64::consts::TAU * level.frequency);
+            series += volts * magnitude(admittance(element.law, &solution.values, s));
+        }
         match element.law {
             Law::Resistance(r) if solution.values[r] > 0.0 => Some((origin, (rms * rms + steady * steady) / solution.values[r])),
-            Law::SeriesRc(r, _) => {
-                let current = magnitude(admittance(element.law, &solution.values, s)) * rms;
-                Some((origin, current * current * solution.values[r]))
-            }
+            Law::SeriesRc(r, _) => Some((origin, series * series * solution.values[r])),
             _ => None,
         }
     })

@@ -24,9 +24,10 @@
 use alloc::vec;
 
 use super::{
-    ComponentSpec, INPUT_SERIES, INPUT_SHUNT, ISOLATION, NOISE_GAIN_C, NOISE_GAIN_R, SNUBBER_C, SNUBBER_R, Spec, closed_loop_edge,
+    ComponentSpec, Drives, INPUT_SERIES, INPUT_SHUNT, ISOLATION, NOISE_GAIN_C, NOISE_GAIN_R, Reference, SNUBBER_C, SNUBBER_R, Spec,
+    VOLTAGE_INPUT, closed_loop_edge,
 };
-use crate::{dimension::Dimension, network::GROUND, stage::Isolation};
+use crate::{dimension::Dimension, network::GROUND};
 
 /// The follower.
 pub static SPEC: Spec = Spec {
@@ -45,16 +46,18 @@ pub static SPEC: Spec = Spec {
         NOISE_GAIN_R,
         NOISE_GAIN_C,
     ],
+    amplifiers: 1,
+    inputs: |_| VOLTAGE_INPUT,
+    drives: Drives::Each,
+    reference: Reference::Dc,
+    gain: Dimension::Gain,
     build: |stage, network| {
         let signal = network.signal();
         let plus = network.behind("Rser", signal);
         network.component("Cshunt", plus, GROUND);
         let pin = network.node();
         let load = network.output(pin);
-        let sense = match stage.isolation {
-            Isolation::OutsideLoop => pin,
-            Isolation::InsideLoop => load,
-        };
+        let sense = network.sense(stage, pin, load);
         let minus = network.behind("Rf", sense);
         network.component("Cf", pin, minus);
         network.series_rc("Rng", "Cng", plus, minus);

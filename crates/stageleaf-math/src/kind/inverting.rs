@@ -23,14 +23,10 @@
 use alloc::vec;
 
 use super::{
-    ComponentSpec, INPUT_SERIES, INPUT_SHUNT, ISOLATION, NOISE_GAIN_C, NOISE_GAIN_R, SNUBBER_C, SNUBBER_R, Spec, closed_loop_edge, corner,
-    dc_gain, nominal,
+    BALANCE_C, BALANCE_R, ComponentSpec, Drives, INPUT_SERIES, INPUT_SHUNT, ISOLATION, NOISE_GAIN_C, NOISE_GAIN_R, Reference, SNUBBER_C,
+    SNUBBER_R, Spec, VOLTAGE_INPUT, closed_loop_edge, corner, ideal, nominal,
 };
-use crate::{
-    dimension::Dimension,
-    network::GROUND,
-    stage::{Isolation, Stage},
-};
+use crate::{dimension::Dimension, network::GROUND, stage::Stage};
 
 fn ratio(stage: &Stage) -> f64 {
     nominal(stage, "Rf") / nominal(stage, "Rin")
@@ -46,8 +42,8 @@ pub static SPEC: Spec = Spec {
         ComponentSpec::required("Rin", Dimension::Resistance, "input resistor"),
         ComponentSpec::required("Rf", Dimension::Resistance, "feedback resistor"),
         ComponentSpec::optional("Cf", Dimension::Capacitance, "feedback capacitor, across `Rf`"),
-        ComponentSpec::optional("Rp", Dimension::Resistance, "bias-balancing resistor from the + input to ground"),
-        ComponentSpec::optional("Cp", Dimension::Capacitance, "capacitor across `Rp`").beside("Rp"),
+        BALANCE_R,
+        BALANCE_C,
         INPUT_SERIES,
         INPUT_SHUNT,
         ISOLATION,
@@ -56,21 +52,21 @@ pub static SPEC: Spec = Spec {
         NOISE_GAIN_R,
         NOISE_GAIN_C,
     ],
+    amplifiers: 1,
+    inputs: |_| VOLTAGE_INPUT,
+    drives: Drives::Each,
+    reference: Reference::Dc,
+    gain: Dimension::Gain,
     build: |stage, network| {
         let signal = network.signal();
         let filtered = network.behind("Rser", signal);
         network.component("Cshunt", filtered, GROUND);
         let minus = network.node();
         network.component("Rin", filtered, minus);
-        let plus = if stage.component("Rp").is_some() { network.node() } else { GROUND };
-        network.component("Rp", plus, GROUND);
-        network.component("Cp", plus, GROUND);
+        let plus = network.balanced();
         let pin = network.node();
         let load = network.output(pin);
-        let sense = match stage.isolation {
-            Isolation::OutsideLoop => pin,
-            Isolation::InsideLoop => load,
-        };
+        let sense = network.sense(stage, pin, load);
         network.component("Rf", sense, minus);
         network.component("Cf", pin, minus);
         network.series_rc("Rng", "Cng", plus, minus);
@@ -79,7 +75,7 @@ pub static SPEC: Spec = Spec {
     ideal_gain: |stage| -ratio(stage),
     noise_gain: |stage| 1.0 + ratio(stage),
     working: |stage| {
-        let mut lines = vec![dc_gain("G = −Rf/Rin", &["Rf", "Rin"], stage, -ratio(stage)), closed_loop_edge(stage, 1.0 + ratio(stage))];
+        let mut lines = vec![ideal("G = −Rf/Rin", &["Rf", "Rin"], stage), closed_loop_edge(stage, 1.0 + ratio(stage))];
         lines.extend(corner(stage));
         lines
     },

@@ -5,11 +5,12 @@ pub mod inverting;
 pub mod non_inverting;
 
 use alloc::{vec, vec::Vec};
+use core::f64::consts::TAU;
 
 use crate::{
     dimension::Dimension,
     figure::{Figure, Query},
-    network::Builder,
+    network::{Builder, Drive},
     part::PartFigure,
     report::{Outcome, Working},
     stage::Stage,
@@ -51,6 +52,68 @@ impl ComponentSpec {
     }
 }
 
+/// An input of a kind.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct InputSpec {
+    /// As notes name it: `in`, `in1`.
+    pub name: &'static str,
+    /// What is applied to it.
+    pub drive: Drive,
+    /// Where its steady value comes from.
+    pub feed: Feed,
+}
+
+impl InputSpec {
+    /// A signal's input.
+    #[must_use]
+    pub const fn signal(name: &'static str, drive: Drive) -> Self {
+        Self { name, drive, feed: Feed::Signal }
+    }
+}
+
+/// Where an input's steady value comes from.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Feed {
+    /// The note's `[signal]`.
+    Signal,
+    /// The note's `[reference]`.
+    Reference,
+    /// The positive supply.
+    Supply,
+}
+
+/// The one voltage input of most kinds.
+pub const VOLTAGE_INPUT: &[InputSpec] = &[InputSpec::signal("in", Drive::Voltage)];
+
+/// The two inputs of a differential kind: `in1` subtracts.
+pub const DIFFERENTIAL_INPUTS: &[InputSpec] = &[InputSpec::signal("in1", Drive::Voltage), InputSpec::signal("in2", Drive::Voltage)];
+
+/// A current's input.
+pub const CURRENT_INPUT: &[InputSpec] = &[InputSpec::signal("in", Drive::Current)];
+
+/// A charge's input.
+pub const CHARGE_INPUT: &[InputSpec] = &[InputSpec::signal("in", Drive::Charge)];
+
+/// What a stage's signals are.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Drives {
+    /// One at each input.
+    Each,
+    /// The difference of two inputs, `−½` and `+½` of it, and a common mode.
+    Differential,
+}
+
+/// Where a kind's pass-band gain is taken.
+#[derive(Clone, Copy, Debug)]
+pub enum Reference {
+    /// At DC.
+    Dc,
+    /// Where the response is largest.
+    Peak,
+    /// At a frequency in Hz that the components give.
+    Frequency(fn(&Stage) -> f64),
+}
+
 /// What a kind is: its file holds one of these.
 #[derive(Debug)]
 pub struct Spec {
@@ -64,6 +127,16 @@ pub struct Spec {
     pub ideal_formula: &'static str,
     /// Its components, in the order of the `new` block.
     pub components: &'static [ComponentSpec],
+    /// How many amplifiers it has.
+    pub amplifiers: usize,
+    /// Its inputs.
+    pub inputs: fn(&Stage) -> &'static [InputSpec],
+    /// What its signals are.
+    pub drives: Drives,
+    /// Where its gain is taken.
+    pub reference: Reference,
+    /// What its gain measures.
+    pub gain: Dimension,
     /// Lays out the network.
     pub build: fn(&Stage, &mut Builder<'_>),
     /// The ideal gain at the pass-band reference from nominal component values.
@@ -79,24 +152,51 @@ fn nominal(stage: &Stage, name: &str) -> f64 {
     stage.component(name).map_or(0.0, |c| c.nominal)
 }
 
-/// The ideal gain at DC with the resistors in place.
-fn dc_gain(formula: &'static str, names: &[&'static str], stage: &Stage, value: f64) -> Working {
+/// Adds a closed form to the working.
+fn line(
+    query: Figure,
+    formula: &'static str,
+    numbers: Vec<(&'static str, f64, Dimension)>,
+    handbook: f64,
+    difference: &'static str,
+) -> Working {
     Working {
-        query: Query::of(Figure::Gain),
+        query: Query::of(query),
+        dimension: query.dimension(),
         formula,
-        numbers: names.iter().map(|&n| (n, nominal(stage, n), Dimension::Resistance)).collect(),
-        handbook: value,
+        numbers,
+        handbook,
         exact: Outcome::Undetermined(Vec::new()),
-        source: "derived here: the amplifier's inputs are held equal",
-        difference: "finite open-loop gain, source and load resistance",
+        source: "derived here for an ideal amplifier",
+        difference,
     }
+}
+
+/// Components with their nominal values, for a line of the working.
+fn numbers(stage: &Stage, names: &[&'static str]) -> Vec<(&'static str, f64, Dimension)> {
+    let dimension = |n: &str| stage.kind.components().iter().find(|c| c.name == n).map_or(Dimension::Number, |c| c.dimension);
+    names.iter().map(|&n| (n, nominal(stage, n), dimension(n))).collect()
+}
+
+/// What a real amplifier and its surroundings do to an ideal gain.
+const REAL_AMPLIFIER: &str = "finite open-loop gain, source and load resistance";
+
+/// The ideal gain at the reference with the components in place.
+fn ideal(formula: &'static str, names: &[&'static str], stage: &Stage) -> Working {
+    line(Figure::Gain, formula, numbers(stage, names), (stage.kind.spec().ideal_gain)(stage), REAL_AMPLIFIER)
+}
+
+/// The main part's nominal gain-bandwidth product; not a number where it is not stated.
+fn gbw(stage: &Stage) -> f64 {
+    stage.part.rating(PartFigure::Gbw).nominal(PartFigure::Gbw.worse()).unwrap_or(f64::NAN)
 }
 
 /// The handbook's closed-loop edge `GBW/NG`.
 fn closed_loop_edge(stage: &Stage, noise_gain: f64) -> Working {
-    let gbw = stage.part.rating(PartFigure::Gbw).nominal(PartFigure::Gbw.worse()).unwrap_or(f64::NAN);
+    let gbw = gbw(stage);
     Working {
         query: Query::of(Figure::Bandwidth),
+        dimension: Dimension::Frequency,
         formula: "f₋₃dB ≈ GBW/NG",
         numbers: vec![("GBW", gbw, Dimension::Frequency), ("NG", noise_gain, Dimension::Number)],
         handbook: gbw / noise_gain,
@@ -111,9 +211,10 @@ fn corner(stage: &Stage) -> Option<Working> {
     let (rf, cf) = (stage.component("Rf")?.nominal, stage.component("Cf")?.nominal);
     Some(Working {
         query: Query::of(Figure::Bandwidth),
+        dimension: Dimension::Frequency,
         formula: "f = 1/(2π·Rf·Cf)",
         numbers: vec![("Rf", rf, Dimension::Resistance), ("Cf", cf, Dimension::Capacitance)],
-        handbook: 1.0 / (core::f64::consts::TAU * rf * cf),
+        handbook: 1.0 / (TAU * rf * cf),
         exact: Outcome::Undetermined(Vec::new()),
         source: "derived here: the corner of Rf ∥ Cf",
         difference: "the amplifier's own bandwidth; a non-inverting gain falls to 1 and not to 0",
@@ -171,6 +272,11 @@ pub const INPUT_SERIES: ComponentSpec = ComponentSpec::optional("Rser", Dimensio
 /// `Cshunt`: capacitor from the signal input to ground, behind `Rser`.
 pub const INPUT_SHUNT: ComponentSpec =
     ComponentSpec::optional("Cshunt", Dimension::Capacitance, "capacitor from the signal input to ground, behind `Rser`");
+/// `Rp`: bias-balancing resistor.
+pub const BALANCE_R: ComponentSpec =
+    ComponentSpec::optional("Rp", Dimension::Resistance, "bias-balancing resistor from the + input to ground");
+/// `Cp`: capacitor across `Rp`.
+pub const BALANCE_C: ComponentSpec = ComponentSpec::optional("Cp", Dimension::Capacitance, "capacitor across `Rp`").beside("Rp");
 /// `Riso`: isolation resistor between pin and load.
 pub const ISOLATION: ComponentSpec =
     ComponentSpec::optional("Riso", Dimension::Resistance, "isolation resistor between the output pin and the load");

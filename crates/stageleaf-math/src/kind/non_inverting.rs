@@ -24,14 +24,10 @@
 use alloc::vec;
 
 use super::{
-    ComponentSpec, INPUT_SERIES, INPUT_SHUNT, ISOLATION, NOISE_GAIN_C, NOISE_GAIN_R, SNUBBER_C, SNUBBER_R, Spec, closed_loop_edge, corner,
-    dc_gain, nominal,
+    ComponentSpec, Drives, INPUT_SERIES, INPUT_SHUNT, ISOLATION, NOISE_GAIN_C, NOISE_GAIN_R, Reference, SNUBBER_C, SNUBBER_R, Spec,
+    VOLTAGE_INPUT, closed_loop_edge, corner, ideal, nominal,
 };
-use crate::{
-    dimension::Dimension,
-    network::GROUND,
-    stage::{Isolation, Stage},
-};
+use crate::{dimension::Dimension, network::GROUND, stage::Stage};
 
 fn gain(stage: &Stage) -> f64 {
     1.0 + nominal(stage, "Rf") / nominal(stage, "Rg")
@@ -55,6 +51,11 @@ pub static SPEC: Spec = Spec {
         NOISE_GAIN_R,
         NOISE_GAIN_C,
     ],
+    amplifiers: 1,
+    inputs: |_| VOLTAGE_INPUT,
+    drives: Drives::Each,
+    reference: Reference::Dc,
+    gain: Dimension::Gain,
     build: |stage, network| {
         let signal = network.signal();
         let plus = network.behind("Rser", signal);
@@ -63,10 +64,7 @@ pub static SPEC: Spec = Spec {
         network.component("Rg", minus, GROUND);
         let pin = network.node();
         let load = network.output(pin);
-        let sense = match stage.isolation {
-            Isolation::OutsideLoop => pin,
-            Isolation::InsideLoop => load,
-        };
+        let sense = network.sense(stage, pin, load);
         network.component("Rf", sense, minus);
         network.component("Cf", pin, minus);
         network.series_rc("Rng", "Cng", plus, minus);
@@ -75,7 +73,7 @@ pub static SPEC: Spec = Spec {
     ideal_gain: gain,
     noise_gain: gain,
     working: |stage| {
-        let mut lines = vec![dc_gain("G = 1 + Rf/Rg", &["Rf", "Rg"], stage, gain(stage)), closed_loop_edge(stage, gain(stage))];
+        let mut lines = vec![ideal("G = 1 + Rf/Rg", &["Rf", "Rg"], stage), closed_loop_edge(stage, gain(stage))];
         lines.extend(corner(stage));
         lines
     },

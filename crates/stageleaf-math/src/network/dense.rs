@@ -7,35 +7,37 @@ use alloc::{vec, vec::Vec};
 
 use num_complex::Complex64;
 
-use super::{DRIVEN, GROUND, Law, Network, Node};
+use super::{Drive as Input, GROUND, Law, Network, Node};
 
-/// What drives the network.
+/// What drives the network; every ideal voltage source that does not is at zero.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Drive {
-    /// One volt at the driven node.
-    Source,
-    /// One ampere out of `from` and into `to`, the driven node held at zero.
+    /// One volt at, or one ampere into, an input's node.
+    Input(usize),
+    /// One ampere out of `from` and into `to`.
     Current {
         /// Where it leaves.
         from: Node,
         /// Where it enters.
         to: Node,
     },
-    /// One volt in series with the amplifier's non-inverting input, the driven node held at zero.
-    AmplifierInput,
+    /// One volt in series with an amplifier's non-inverting input.
+    AmplifierInput(usize),
 }
 
 /// Node voltages (by node number, ground included), or `None` when the matrix is singular.
 ///
-/// `values` is the parameter table's, `gain` the amplifier's open-loop gain and `resistance` its output resistance at `s`.
+/// `values` is the parameter table's; `amplifiers` gives each one's open-loop gain and output resistance at `s`.
 #[must_use]
-pub fn solve(network: &Network, values: &[f64], gain: Complex64, resistance: f64, s: Complex64, drive: Drive) -> Option<Vec<Complex64>> {
+pub fn solve(network: &Network, values: &[f64], amplifiers: &[(Complex64, f64)], s: Complex64, drive: Drive) -> Option<Vec<Complex64>> {
     let nodes = network.nodes;
-    let n = nodes + 1; // unknowns 1..nodes: voltages; then source current, amplifier current, at index nodes−1, nodes
+    // Unknowns: voltages, one current for each input, one for each amplifier.
+    let inputs = nodes - 1;
+    let sources = inputs + network.inputs.len();
+    let n = sources + network.amplifiers.len();
     let mut matrix = vec![Complex64::new(0.0, 0.0); n * n];
     let mut right = vec![Complex64::new(0.0, 0.0); n];
     let row = |node: Node| usize::from(node.0).checked_sub(1);
-    let (source_row, amplifier_row) = (nodes - 1, nodes);
     let mut add = |r: Option<usize>, c: Option<usize>, y: Complex64| {
         if let (Some(r), Some(c)) = (r, c) {
             matrix[r * n + c] += y;
@@ -50,17 +52,27 @@ pub fn solve(network: &Network, values: &[f64], gain: Complex64, resistance: f64
         add(b, a, -y);
     }
     let one = Complex64::new(1.0, 0.0);
-    let driven = row(DRIVEN);
-    add(driven, Some(source_row), one);
-    add(Some(source_row), driven, one);
-    let amplifier = network.amplifier;
-    add(row(amplifier.pin), Some(amplifier_row), -one);
-    add(Some(amplifier_row), row(amplifier.pin), one);
-    add(Some(amplifier_row), Some(amplifier_row), Complex64::new(resistance, 0.0));
-    add(Some(amplifier_row), row(amplifier.plus), -gain);
-    add(Some(amplifier_row), row(amplifier.minus), gain);
+    for (i, kind) in network.inputs.iter().enumerate() {
+        let unknown = Some(inputs + i);
+        if *kind == Input::Voltage {
+            let node = row(network.input_node(i));
+            add(node, unknown, one);
+            add(unknown, node, one);
+        } else {
+            add(unknown, unknown, one);
+        }
+    }
+    for (i, (amplifier, &(gain, resistance))) in network.amplifiers.iter().zip(amplifiers).enumerate() {
+        let unknown = Some(sources + i);
+        add(row(amplifier.pin), unknown, -one);
+        add(unknown, row(amplifier.pin), one);
+        add(unknown, unknown, Complex64::new(resistance, 0.0));
+        add(unknown, row(amplifier.plus), -gain);
+        add(unknown, row(amplifier.minus), gain);
+    }
     match drive {
-        Drive::Source => right[source_row] = one,
+        Drive::Input(i) if network.inputs[i] == Input::Voltage => right[inputs + i] = one,
+        Drive::Input(i) => right[row(network.input_node(i))?] = one,
         Drive::Current { from, to } => {
             if let Some(r) = row(to) {
                 right[r] += one;
@@ -69,7 +81,7 @@ pub fn solve(network: &Network, values: &[f64], gain: Complex64, resistance: f64
                 right[r] -= one;
             }
         }
-        Drive::AmplifierInput => right[amplifier_row] = gain,
+        Drive::AmplifierInput(i) => right[sources + i] = amplifiers[i].0,
     }
     eliminate(&mut matrix, &mut right, n)?;
     let mut voltages = vec![Complex64::new(0.0, 0.0); nodes];

@@ -48,15 +48,17 @@ pub enum Shape {
         /// Column struck out (node, or 0).
         column: u8,
     },
-    /// Voltages at all nodes for a voltage at `source`: outcomes are split by the nodes that follow the source.
+    /// Voltages at all nodes for a voltage at, or a current into, `source`: outcomes are split by the nodes that follow it.
     Forward {
-        /// The driven node.
+        /// The driven node; every node of a lower number is held.
         source: u8,
+        /// Held at zero by other ideal sources (bit set).
+        held: u16,
     },
     /// The voltage at `sense` for a current into each node: outcomes are split by the nodes that reach it.
     Adjoint {
-        /// Held at zero, since an ideal source drives it.
-        source: u8,
+        /// Held at zero by ideal sources (bit set).
+        held: u16,
         /// Where the voltage is sensed.
         sense: u8,
     },
@@ -80,8 +82,8 @@ pub const DEGREE: usize = 3;
 pub struct Outcome {
     /// Open side's nodes that are not joined to ground (bit set); 0 for closed shapes.
     pub joined: u16,
-    /// Whether the terms carry the amplifier's gain as a factor.
-    pub amplified: bool,
+    /// Which amplifiers' gains the terms carry as factors (bit set, in the order of the amplifiers' columns).
+    pub amplified: u8,
     /// Its polynomial in the result of [`Plan::evaluate`].
     start: usize,
     length: usize,
@@ -117,7 +119,24 @@ pub struct Plan {
 struct State {
     rows: [u8; MAX_NODES],
     columns: [u8; MAX_NODES],
-    amplified: bool,
+    amplified: u8,
+}
+
+impl State {
+    /// Joins nodes (bit set) to ground in both graphs.
+    fn hold(&mut self, nodes: u16) {
+        for node in 1..MAX_NODES {
+            if nodes >> node & 1 == 1 {
+                self.rows[node] = 0;
+                self.columns[node] = 0;
+            }
+        }
+    }
+
+    /// How many rows are left.
+    fn live(&self, nodes: usize) -> usize {
+        (1..nodes).filter(|&n| self.rows[n] != 0).count()
+    }
 }
 
 /// Joins the nodes of a column with +1 at `a` and −1 at `b`; the sign of the pivot, or `None` when they are joined already.
@@ -142,7 +161,7 @@ impl Plan {
     #[must_use]
     pub fn compile(nodes: usize, columns: &[Column], degrees: &[usize], shape: Shape) -> Self {
         assert!(nodes <= MAX_NODES && columns.len() == degrees.len());
-        let mut start = State { rows: [0; MAX_NODES], columns: [0; MAX_NODES], amplified: false };
+        let mut start = State { rows: [0; MAX_NODES], columns: [0; MAX_NODES], amplified: 0 };
         for node in 0..nodes {
             let label = u8::try_from(node).expect("few nodes");
             start.rows[node] = label;
@@ -152,28 +171,22 @@ impl Plan {
         let rank = |partition: &[u8; MAX_NODES], node: u8| (1..node).filter(|&n| partition[usize::from(n)] == n).count();
         match shape {
             Shape::Closed { both, row, column } => {
-                for node in 1..nodes {
-                    if both >> node & 1 == 1 {
-                        start.rows[node] = 0;
-                        start.columns[node] = 0;
-                    }
-                }
+                start.hold(both);
                 if row != 0 || column != 0 {
                     negative = (rank(&start.rows, row) + rank(&start.columns, column)) % 2 == 1;
                     start.rows[usize::from(row)] = 0;
                     start.columns[usize::from(column)] = 0;
                 }
             }
-            Shape::Forward { source } => {
-                assert!(source == 1, "the sign below counts on the driven node's being the first");
+            Shape::Forward { source, held } => {
+                start.hold(held);
+                assert!(rank(&start.rows, source) == 0, "the sign below counts on the driven node's being the first that is not held");
                 start.rows[usize::from(source)] = 0;
-                negative = nodes % 2 == 1; // (−1) to the number of nodes besides ground and source
+                negative = start.live(nodes) % 2 == 1;
             }
-            Shape::Adjoint { source, sense } => {
-                start.rows[usize::from(source)] = 0;
-                start.columns[usize::from(source)] = 0;
-                let live = nodes - 2;
-                negative = (live - 1 + rank(&start.columns, sense)) % 2 == 1;
+            Shape::Adjoint { held, sense } => {
+                start.hold(held);
+                negative = (start.live(nodes) + 1 + rank(&start.columns, sense)) % 2 == 1;
                 start.columns[usize::from(sense)] = 0;
             }
         }
@@ -185,6 +198,7 @@ impl Plan {
 
         let mut layers: Vec<Vec<State>> = vec![vec![start]];
         let mut moves: Vec<Vec<(usize, usize, Which, bool)>> = Vec::new();
+        let mut amplifier = 0;
         for (index, column) in columns.iter().enumerate() {
             let mut next: BTreeMap<State, usize> = BTreeMap::new();
             let mut made = Vec::new();
@@ -201,7 +215,7 @@ impl Plan {
                     }
                 };
                 follow(*state, Which::Out, false);
-                let mut try_join = |(ua, ub): (u8, u8), (va, vb): (u8, u8), which: Which, amplified: bool| {
+                let mut try_join = |(ua, ub): (u8, u8), (va, vb): (u8, u8), which: Which, amplified: u8| {
                     let mut to = *state;
                     if let (Some(u), Some(v)) = (join(&mut to.rows, ua, ub), join(&mut to.columns, va, vb)) {
                         to.amplified |= amplified;
@@ -209,12 +223,15 @@ impl Plan {
                     }
                 };
                 match *column {
-                    Column::Branch(a, b) => try_join((a, b), (a, b), Which::Taken, false),
+                    Column::Branch(a, b) => try_join((a, b), (a, b), Which::Taken, 0),
                     Column::Amplifier { plus, minus, pin } => {
-                        try_join((pin, 0), (pin, 0), Which::Taken, false);
-                        try_join((pin, 0), (minus, plus), Which::Controlled, true);
+                        try_join((pin, 0), (pin, 0), Which::Taken, 0);
+                        try_join((pin, 0), (minus, plus), Which::Controlled, 1 << amplifier);
                     }
                 }
+            }
+            if matches!(column, Column::Amplifier { .. }) {
+                amplifier += 1;
             }
             layers.push(made);
             moves.push(here);

@@ -12,7 +12,7 @@ use crate::{
     parameters::Parameters,
     part::PartFigure,
     report::{NoiseOrigin, Parameter},
-    stage::{Source, Stage},
+    stage::{Isolation, Source, Stage},
 };
 
 /// A node; 0 is ground.
@@ -22,8 +22,19 @@ pub struct Node(pub u8);
 /// The reference node.
 pub const GROUND: Node = Node(0);
 
-/// The node that the ideal signal voltage drives: always the first one.
+/// The node that the first input drives: inputs' nodes come first, in order.
 pub const DRIVEN: Node = Node(1);
+
+/// What an input applies to its node.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Drive {
+    /// An ideal voltage; the node is held.
+    Voltage,
+    /// A current into the node.
+    Current,
+    /// A charge into the node: its rate of change is the current.
+    Charge,
+}
 
 /// The most nodes a network may have, ground included.
 pub const MAX_NODES: usize = 16;
@@ -70,10 +81,26 @@ pub struct Network {
     pub nodes: usize,
     /// Elements.
     pub elements: Vec<Element>,
-    /// The amplifier.
-    pub amplifier: Amplifier,
+    /// Inputs: the first drives node 1, the next node 2, and so on.
+    pub inputs: Vec<Drive>,
+    /// Amplifiers: A1, A2, …
+    pub amplifiers: Vec<Amplifier>,
     /// Where the stage's output is taken.
     pub load: Node,
+}
+
+impl Network {
+    /// The node of an input.
+    #[must_use]
+    pub fn input_node(&self, input: usize) -> Node {
+        Node(u8::try_from(input + 1).unwrap_or(u8::MAX))
+    }
+
+    /// The nodes that ideal voltage sources hold (bit set).
+    #[must_use]
+    pub fn held(&self) -> u16 {
+        self.inputs.iter().enumerate().filter(|(_, d)| **d == Drive::Voltage).fold(0, |bits, (i, _)| bits | 1 << (i + 1))
+    }
 }
 
 /// What to leave out of a network, for the impedances seen from outside.
@@ -92,8 +119,9 @@ pub struct Builder<'a> {
     parameters: &'a Parameters,
     without: Without,
     nodes: u8,
+    inputs: Vec<Drive>,
     elements: Vec<Element>,
-    amplifier: Option<Amplifier>,
+    amplifiers: Vec<Amplifier>,
     load: Node,
 }
 
@@ -101,10 +129,17 @@ impl<'a> Builder<'a> {
     /// Lays out the network of a stage.
     #[must_use]
     pub fn lay_out(stage: &Stage, parameters: &Parameters, without: Without) -> Network {
-        let mut builder = Builder { stage, parameters, without, nodes: 2, elements: Vec::new(), amplifier: None, load: GROUND };
+        let inputs: Vec<Drive> = (stage.kind.spec().inputs)(stage).iter().map(|i| i.drive).collect();
+        let nodes = u8::try_from(inputs.len() + 1).unwrap_or(u8::MAX);
+        let mut builder = Builder { stage, parameters, without, nodes, inputs, elements: Vec::new(), amplifiers: Vec::new(), load: GROUND };
         (stage.kind.spec().build)(stage, &mut builder);
-        let amplifier = builder.amplifier.expect("every kind places an amplifier");
-        Network { nodes: usize::from(builder.nodes), elements: builder.elements, amplifier, load: builder.load }
+        Network {
+            nodes: usize::from(builder.nodes),
+            elements: builder.elements,
+            inputs: builder.inputs,
+            amplifiers: builder.amplifiers,
+            load: builder.load,
+        }
     }
 
     /// A new node.
@@ -115,16 +150,68 @@ impl<'a> Builder<'a> {
         node
     }
 
-    /// The stage's signal terminal: behind the source's impedance where there is one.
+    /// The terminal of the first input: behind the source's impedance where there is one.
     pub fn signal(&mut self) -> Node {
-        let (Some(source), false) = (self.stage.source, self.without.source) else { return DRIVEN };
-        let slot = self.slot(Parameter::SourceImpedance);
+        self.input(0)
+    }
+
+    /// The terminal of an input: behind its source's impedance where there is one. A current or charge input's terminal is its node,
+    /// with what the source puts across it.
+    pub fn input(&mut self, input: usize) -> Node {
+        let node = Node(u8::try_from(input + 1).unwrap_or(u8::MAX));
+        let (Some(source), false) = (self.stage.source(input), self.without.source) else { return node };
+        let slot = |of: fn(u8) -> Parameter, builder: &Self| builder.slot(of(u8::try_from(input).unwrap_or(u8::MAX)));
+        let across =
+            |builder: &mut Self, law: Law, noise: Option<NoiseOrigin>| builder.elements.push(Element { a: node, b: GROUND, law, noise });
+        match (source, self.inputs[input]) {
+            (Source::Resistive { .. }, Drive::Voltage) => {
+                let law = Law::Resistance(slot(Parameter::SourceImpedance, self));
+                self.behind_input(node, law, Some(NoiseOrigin::SourceResistance(u8::try_from(input).unwrap_or(u8::MAX))))
+            }
+            (Source::Capacitive { .. }, Drive::Voltage) => {
+                let law = Law::Capacitance(slot(Parameter::SourceImpedance, self));
+                self.behind_input(node, law, None)
+            }
+            (Source::Resistive { .. }, _) => {
+                let law = Law::Resistance(slot(Parameter::SourceImpedance, self));
+                across(self, law, Some(NoiseOrigin::SourceResistance(u8::try_from(input).unwrap_or(u8::MAX))));
+                node
+            }
+            (Source::Capacitive { .. }, _) => {
+                let law = Law::Capacitance(slot(Parameter::SourceImpedance, self));
+                across(self, law, None);
+                node
+            }
+            (Source::Photodiode { shunt_resistance, .. }, _) => {
+                let law = Law::Capacitance(slot(Parameter::SourceImpedance, self));
+                across(self, law, None);
+                if shunt_resistance.is_some() {
+                    let law = Law::Resistance(slot(Parameter::SourceShunt, self));
+                    across(self, law, Some(NoiseOrigin::SourceResistance(u8::try_from(input).unwrap_or(u8::MAX))));
+                }
+                node
+            }
+        }
+    }
+
+    /// The terminal of the reference's input: behind its output resistance where one is stated.
+    pub fn reference(&mut self, input: usize) -> Node {
+        let node = Node(u8::try_from(input + 1).unwrap_or(u8::MAX));
+        match self.parameters.slot(Parameter::ReferenceResistance) {
+            Some(slot) => self.behind_input(node, Law::Resistance(slot), Some(NoiseOrigin::ReferenceResistance)),
+            None => node,
+        }
+    }
+
+    /// The node that an input drives.
+    #[must_use]
+    pub fn driven(&self, input: usize) -> Node {
+        Node(u8::try_from(input + 1).unwrap_or(u8::MAX))
+    }
+
+    fn behind_input(&mut self, node: Node, law: Law, noise: Option<NoiseOrigin>) -> Node {
         let terminal = self.node();
-        let (law, noise) = match source {
-            Source::Resistive { .. } => (Law::Resistance(slot), Some(NoiseOrigin::SourceResistance)),
-            Source::Capacitive { .. } => (Law::Capacitance(slot), None),
-        };
-        self.elements.push(Element { a: DRIVEN, b: terminal, law, noise });
+        self.elements.push(Element { a: node, b: terminal, law, noise });
         terminal
     }
 
@@ -162,9 +249,10 @@ impl<'a> Builder<'a> {
         }
     }
 
-    /// Places the amplifier with what its data sheet and the board put at its inputs.
+    /// Places the next amplifier with what its data sheet puts at its inputs; with the first one, what the board does.
     pub fn amplifier(&mut self, plus: Node, minus: Node, pin: Node) {
-        self.amplifier = Some(Amplifier { plus, minus, pin });
+        let index = self.amplifiers.len();
+        self.amplifiers.push(Amplifier { plus, minus, pin });
         for (figure, a, b) in [
             (PartFigure::DifferentialResistance, plus, minus),
             (PartFigure::DifferentialCapacitance, plus, minus),
@@ -173,13 +261,16 @@ impl<'a> Builder<'a> {
             (PartFigure::CommonModeResistance, minus, GROUND),
             (PartFigure::CommonModeCapacitance, minus, GROUND),
         ] {
-            if let Some(slot) = self.parameters.slot(Parameter::Part(figure)) {
+            if let Some(slot) = self.parameters.part_slot(index, figure) {
                 let law = match figure {
                     PartFigure::DifferentialResistance | PartFigure::CommonModeResistance => Law::Resistance(slot),
                     _ => Law::Capacitance(slot),
                 };
                 self.elements.push(Element { a, b, law, noise: None });
             }
+        }
+        if index > 0 {
+            return;
         }
         for (stray, a, b) in [
             (Parameter::StrayInverting, minus, GROUND),
@@ -189,6 +280,32 @@ impl<'a> Builder<'a> {
             if let Some(slot) = self.parameters.slot(stray) {
                 self.elements.push(Element { a, b, law: Law::Capacitance(slot), noise: None });
             }
+        }
+    }
+
+    /// How many inputs the stage has.
+    #[must_use]
+    pub fn inputs(&self) -> usize {
+        self.inputs.len()
+    }
+
+    /// The + input of an inverting kind: ground, or a node behind `Rp` and `Cp`.
+    pub fn balanced(&mut self) -> Node {
+        if self.stage.component("Rp").is_none() {
+            return GROUND;
+        }
+        let plus = self.node();
+        self.component("Rp", plus, GROUND);
+        self.component("Cp", plus, GROUND);
+        plus
+    }
+
+    /// Where the feedback senses the output.
+    #[must_use]
+    pub fn sense(&self, stage: &Stage, pin: Node, load: Node) -> Node {
+        match stage.isolation {
+            Isolation::OutsideLoop => pin,
+            Isolation::InsideLoop => load,
         }
     }
 

@@ -22,15 +22,19 @@ fn a_whole_block_is_read() {
     let supply = stage.supply.unwrap();
     assert_eq!((supply.positive.nominal, supply.negative.nominal), (12.0, -12.0));
     assert!((supply.positive.high - 12.6).abs() < 1e-12 && (supply.negative.low + 12.6).abs() < 1e-12);
-    assert!(matches!(stage.source, Some(Source::Resistive { resistance }) if resistance.nominal == 600.0));
-    let signal = stage.signal.unwrap();
+    assert!(matches!(stage.source(0), Some(Source::Resistive { resistance }) if resistance.nominal == 600.0));
+    let signal = stage.signal().unwrap();
     assert_eq!((signal.peak, signal.frequency, signal.dc), (0.4, Some(20e3), 0.0));
     assert_eq!(stage.load.capacitance.unwrap().nominal, 1e-9);
     let ambient = stage.ambient.unwrap().range;
     assert!((ambient.low - 253.15).abs() < 1e-9 && (ambient.nominal - 288.15).abs() < 1e-9);
     assert_eq!(stage.band.unwrap().to, 20e3);
     assert_eq!(stage.board.inverting_node.unwrap().nominal, 2e-12);
-    let texts: Vec<String> = stage.limits.iter().map(|l| format!("{}: {}", query_text(l.query), limit_text(l))).collect();
+    let texts: Vec<String> = stage
+        .limits
+        .iter()
+        .map(|l| format!("{}: {}", query_text(l.query), limit_text(l, l.query.figure.dimension_in(stage.kind))))
+        .collect();
     assert_eq!(
         texts,
         [

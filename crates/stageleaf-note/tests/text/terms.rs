@@ -98,7 +98,7 @@ fn a_limit_reads_back_as_it_was_written() {
         (Figure::Q, "report"),
     ] {
         let (bound, thin) = parse_limit(text, figure.dimension(), 0.1).unwrap_or_else(|t| panic!("{text}: {}", t.message));
-        assert_eq!(limit_text(&Limit { query: Query::of(figure), bound, thin }), text);
+        assert_eq!(limit_text(&Limit { query: Query::of(figure), bound, thin }, figure.dimension()), text);
     }
 }
 

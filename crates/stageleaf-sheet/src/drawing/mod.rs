@@ -53,15 +53,15 @@ impl<'a> Labels<'a> {
     /// The label of the source's impedance; a resistance of zero is drawn as none.
     #[must_use]
     pub fn source_impedance(&self) -> Option<Label> {
-        match self.stage().source.as_ref()? {
+        match self.stage().source(0)? {
             Source::Resistive { resistance } => {
                 if resistance.nominal <= 0.0 {
                     return None;
                 }
-                Some(self.label("Rs", "source.resistance".into(), "source resistance", resistance, Dimension::Resistance))
+                Some(self.label("Rs", "source.resistance".into(), "source resistance", &resistance, Dimension::Resistance))
             }
-            Source::Capacitive { capacitance } => {
-                Some(self.label("Cs", "source.capacitance".into(), "source capacitance", capacitance, Dimension::Capacitance))
+            Source::Capacitive { capacitance } | Source::Photodiode { capacitance, .. } => {
+                Some(self.label("Cs", "source.capacitance".into(), "source capacitance", &capacitance, Dimension::Capacitance))
             }
         }
     }
@@ -135,7 +135,7 @@ pub fn drawing(sheet: &Sheet) -> Markup {
                 @if !cut.is_empty() {
                     "In full: " @for (i, l) in cut.iter().enumerate() { @if i > 0 { ", " } (l.name) " " (l.value) } ". "
                 }
-                @if stage.source.is_none() { "The source is taken as ideal. " }
+                @if stage.source(0).is_none() { "The source is taken as ideal. " }
             }
         }
     }

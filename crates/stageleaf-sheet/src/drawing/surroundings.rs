@@ -117,11 +117,11 @@ pub fn source_and_input(c: &mut Canvas, l: &Labels, y: i32, shunt: i32, to: i32)
     if from < to {
         c.wire(&[(from, y), (to, y)]);
     }
-    match (l.stage().source, l.source_impedance()) {
+    match (l.stage().source(0), l.source_impedance()) {
         (Some(source), Some(label)) => {
             let symbol = match source {
                 Source::Resistive { .. } => Symbol::Resistor,
-                Source::Capacitive { .. } => Symbol::Capacitor,
+                Source::Capacitive { .. } | Source::Photodiode { .. } => Symbol::Capacitor,
             };
             c.upright_right(symbol, SOURCE_X, y, middle + 24, middle, label);
             c.source(SOURCE_X, middle + 24, middle + 42);

@@ -30,7 +30,7 @@ pub fn figures(sheet: &Sheet) -> Markup {
                         tbody {
                             tr { th class="group" scope="rowgroup" colspan="5" { (name) } }
                             @for row in all.iter().filter(|r| r.query.figure.group() == group) {
-                                @let d = row.query.figure.dimension();
+                                @let d = row.dimension;
                                 // The row of a judged figure, to which prose links, stands among the limits.
                                 tr id=[(first(row) && !judged(row.query)).then(|| format!("{}.{}", sheet.id, query_anchor(row.query)))] {
                                     th scope="row" { (title(row.query)) " " code { (query_text(row.query)) } (needs(sheet, &row.nominal)) }

@@ -63,14 +63,14 @@ fn relative(row: &LimitRow) -> f64 {
 
 fn limit(sheet: &Sheet, row: &LimitRow, linked: bool) -> Markup {
     let query = row.limit.query;
-    let d = query.figure.dimension();
+    let d = row.dimension;
     html! {
         li class="row" id=[linked.then(|| format!("{}.{}", sheet.id, query_anchor(query)))] {
             div class="asked" {
                 span class=(class(row.verdict)) { span class="shape" aria-hidden="true" { (shape(row.verdict)) } " " (row.verdict.word()) }
                 @if let Some(basis) = row.basis { span class="basis" { " (" (basis.word()) ")" } }
                 b class="figure" { (title(query)) }
-                span class="asks" { (asks(&row.limit)) }
+                span class="asks" { (asks(&row.limit, d)) }
             }
             (strip(row, |v| round(v, d)))
             div class="found" {
@@ -115,7 +115,7 @@ fn limit(sheet: &Sheet, row: &LimitRow, linked: bool) -> Markup {
 fn digits(row: &LimitRow) -> usize {
     let (Some(worst), Some(margin)) = (row.worst.value(), row.margin) else { return 3 };
     let ratio = (worst / margin).abs();
-    if !ratio.is_finite() || matches!(row.limit.query.figure.dimension(), Dimension::Level | Dimension::Temperature) {
+    if !ratio.is_finite() || matches!(row.dimension, Dimension::Level | Dimension::Temperature) {
         return 3;
     }
     match ratio {
@@ -130,16 +130,16 @@ fn exact(v: f64, d: Dimension, digits: usize) -> String {
     if v.is_nan() { "–".into() } else { format(v, d, digits) }
 }
 
-fn asks(limit: &Limit) -> String {
+fn asks(limit: &Limit, d: Dimension) -> String {
     match limit.bound {
         Bound::Report => "shown, not judged".into(),
-        _ => format!("asks {}", limit_text(limit)),
+        _ => format!("asks {}", limit_text(limit, d)),
     }
 }
 
 /// What is left to the limit, or by how much it is missed.
 fn left(row: &LimitRow) -> Option<String> {
-    let d = row.limit.query.figure.dimension();
+    let d = row.dimension;
     let margin = row.margin.filter(|m| !m.is_nan())?;
     let short = margin < 0.0;
     let amount = match (d, row.limit.bound, row.worst.value()) {

@@ -95,7 +95,7 @@ fn row_of<'a>(sheet: &Sheet<'a>, figure: Figure) -> Option<&'a FigureRow> {
 /// The figure's row in short: "512 kHz (480 kHz to 540 kHz)".
 fn brief(sheet: &Sheet, figure: Figure) -> Option<Markup> {
     let row = row_of(sheet, figure)?;
-    let d = figure.dimension();
+    let d = row.dimension;
     Some(html! {
         span class="brief" {
             (figure.title()) " " b { (outcome(&row.nominal, d)) }

@@ -16,7 +16,7 @@ pub fn working(sheet: &Sheet) -> Markup {
         summary { "Working" }
         @if sheet.report.working.is_empty() { p class="aside" { "No closed form applies to this stage as it stands." } }
         @for w in &sheet.report.working {
-            @let d = w.query.figure.dimension();
+            @let d = w.dimension;
             div class="working" {
                 p class="caption" role="heading" aria-level="3" { (title(w.query)) }
                 p class="formula" { code { (w.formula) } }

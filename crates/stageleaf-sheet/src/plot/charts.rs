@@ -171,13 +171,16 @@ fn noise(sheet: &Sheet) -> Option<Chart> {
 
 /// A source's name beside its curve; the table of shares has the whole one.
 fn short_name(origin: NoiseOrigin) -> String {
+    let of = |what: &str, a: u8| if a == 0 { what.to_owned() } else { format!("{what}, A{}", u32::from(a) + 1) };
     match origin {
+        NoiseOrigin::AmplifierVoltage(a) => return of("voltage noise", a),
+        NoiseOrigin::CurrentNonInverting(a) => return of("current noise +", a),
+        NoiseOrigin::CurrentInverting(a) => return of("current noise −", a),
         NoiseOrigin::Component(name) => name,
-        NoiseOrigin::SourceResistance => "source",
+        NoiseOrigin::SourceResistance(_) => "source",
+        NoiseOrigin::SourceShot(_) => "shot noise",
+        NoiseOrigin::ReferenceResistance => "reference",
         NoiseOrigin::LoadResistance => "load",
-        NoiseOrigin::AmplifierVoltage => "voltage noise",
-        NoiseOrigin::CurrentNonInverting => "current noise +",
-        NoiseOrigin::CurrentInverting => "current noise −",
     }
     .to_owned()
 }
@@ -185,7 +188,7 @@ fn short_name(origin: NoiseOrigin) -> String {
 fn envelope(sheet: &Sheet) -> Option<Chart> {
     let r = sheet.report;
     let mut marks = Vec::new();
-    if let Some(signal) = sheet.block.stage.signal
+    if let Some(signal) = sheet.block.stage.signal()
         && let (Some(x), Some(gain)) = (signal.frequency, nominal(r, Figure::GainAtSignal).or_else(|| nominal(r, Figure::Gain)))
     {
         let y = signal.peak * gain.abs();

@@ -76,8 +76,11 @@ pub fn block(kind: Kind, components: &[&str], isolation: Isolation, load: (bool,
             positive: Span { low: 11.4, nominal: 12.0, high: 12.6 },
             negative: Span { low: -12.6, nominal: -12.0, high: -11.4 },
         }),
-        source: source.then(|| Source::Resistive { resistance: Toleranced::exact(600.0) }),
-        signal: Some(Signal { peak: 0.4, frequency: Some(20e3), dc: 0.0, crest_factor: std::f64::consts::SQRT_2 }),
+        sources: vec![source.then(|| Source::Resistive { resistance: Toleranced::exact(600.0) })],
+        signals: vec![Some(Signal { peak: 0.4, frequency: Some(20e3), dc: 0.0, crest_factor: std::f64::consts::SQRT_2 })],
+        common_mode: None,
+        reference: None,
+        parts: vec![],
         load: Load { resistance: load.0.then(|| value(2e3)), capacitance: load.1.then(|| value(1e-9)) },
         board: Board::default(),
         ambient: Some(Ambient { range: Span { low: 253.15, nominal: 298.15, high: 323.15 } }),
@@ -102,6 +105,7 @@ pub fn part() -> ShelfPart {
 
 fn row(query: Query, bound: Bound, numbers: (f64, f64, f64), worst: f64, margin: f64, verdict: Verdict) -> LimitRow {
     LimitRow {
+        dimension: query.figure.dimension(),
         limit: Limit { query, bound, thin: Thin::Fraction(0.1) },
         nominal: Outcome::Value(numbers.0),
         range: Some((numbers.1, numbers.2)),
@@ -136,6 +140,7 @@ pub fn report(kind: Kind) -> Report {
         row(figure(Figure::FullPowerBandwidth), Bound::AtLeast(20e3), (2.1e6, 0.9e6, 3e6), 0.9e6, 0.88e6, Verdict::Holds),
         row(Query::at(Figure::GainAt, 2e6), Bound::Report, (4.9, 3.1, 5.6), 3.1, 0.0, Verdict::Reported),
         LimitRow {
+            dimension: Dimension::Temperature,
             limit: Limit { query: figure(Figure::JunctionTemperature), bound: Bound::AtMost(358.15), thin: Thin::Distance(10.0) },
             nominal: Outcome::Undetermined(vec![Need::Part(PartFigure::JunctionToAmbient)]),
             range: None,
@@ -152,6 +157,7 @@ pub fn report(kind: Kind) -> Report {
         .filter(|f| f.argument() == Argument::None)
         .map(|f| FigureRow {
             query: Query::of(*f),
+            dimension: f.dimension(),
             nominal: match f {
                 Figure::JunctionTemperature => Outcome::Undetermined(vec![Need::Part(PartFigure::JunctionToAmbient)]),
                 Figure::Crossover => Outcome::Value(480e3),
@@ -188,12 +194,12 @@ pub fn report(kind: Kind) -> Report {
         })
         .collect();
     let shares = [
-        (NoiseOrigin::AmplifierVoltage, 0.52),
+        (NoiseOrigin::AmplifierVoltage(0), 0.52),
         (NoiseOrigin::Component("Rf"), 0.11),
         (NoiseOrigin::Component("Rg"), 0.2),
-        (NoiseOrigin::SourceResistance, 0.09),
-        (NoiseOrigin::CurrentNonInverting, 0.05),
-        (NoiseOrigin::CurrentInverting, 0.03),
+        (NoiseOrigin::SourceResistance(0), 0.09),
+        (NoiseOrigin::CurrentNonInverting(0), 0.05),
+        (NoiseOrigin::CurrentInverting(0), 0.03),
     ];
     let density = sweep(10.0, 6, 20)
         .map(|f| {
@@ -229,6 +235,7 @@ pub fn report(kind: Kind) -> Report {
         zeros: vec![Root { re: -3.3e6, im: 0.0 }],
         working: vec![Working {
             query: Query::of(Figure::Gain),
+            dimension: Dimension::Gain,
             formula: if kind == Kind::Inverting { "G = −Rf/Rin" } else { "G = 1 + Rf/Rg" },
             numbers: vec![("Rf", 91e3, Dimension::Resistance), ("Rg", 4.7e3, Dimension::Resistance)],
             handbook: 20.36,

@@ -192,7 +192,7 @@ fn with_quoted_figures<'a>(stage: &Stage, quotes: impl Iterator<Item = &'a Quote
 }
 
 fn current(quote: &Quote, stage: &ExaminedStage) -> Current {
-    let dimension = quote.query.figure.dimension();
+    let dimension = quote.query.figure.dimension_in(stage.block.stage.kind);
     match stage.outcome(quote.query) {
         Some(&Outcome::Value(value)) if quote_agrees(&quote.shown, value, dimension) => Current::Agrees,
         Some(&Outcome::Value(value)) => Current::Is { text: quote_for(&quote.shown, value, dimension) },

@@ -15,7 +15,7 @@ use stageleaf_note::{query_text, words};
 
 use super::{
     examine::{Current, Examined, ExaminedStage, QuoteState},
-    text::{coordinate_dimension, outcome_words},
+    text::outcome_words,
 };
 use crate::fault::Fault;
 
@@ -113,13 +113,13 @@ impl Figure {
         match &row.nominal {
             Outcome::Value(value) => Self::Value {
                 value: finite(*value),
-                unit: row.query.figure.dimension().si_unit(),
+                unit: row.dimension.si_unit(),
                 low: row.range.and_then(|(low, _)| finite(low)),
                 high: row.range.and_then(|(_, high)| finite(high)),
                 basis: row.basis.map(stageleaf_math::limit::Basis::word),
                 unlimited: value.is_infinite() || row.range.is_some_and(|(low, high)| low.is_infinite() || high.is_infinite()),
             },
-            other => Self::Other(Other::of(other, row.query.figure.dimension(), part)),
+            other => Self::Other(Other::of(other, row.dimension, part)),
         }
     }
 }
@@ -169,7 +169,7 @@ struct Judged {
 
 impl Judged {
     fn of(row: &LimitRow, limit: &str, stage: &ExaminedStage, part: &str) -> Self {
-        let dimension = row.limit.query.figure.dimension();
+        let dimension = row.dimension;
         let worst = match &row.worst {
             Outcome::Value(value) => Worst::Value(finite(*value)),
             other => Worst::Other(Other::of(other, dimension, part)),
@@ -178,7 +178,7 @@ impl Judged {
             parameter: words::parameter_text(c.parameter),
             value: finite(c.value),
             nominal: finite(c.nominal),
-            unit: coordinate_dimension(c.parameter, stage).si_unit(),
+            unit: words::parameter_dimension(c.parameter, &stage.block.stage).si_unit(),
         });
         Self {
             figure: query_text(row.limit.query),

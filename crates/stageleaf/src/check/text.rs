@@ -7,7 +7,6 @@ use stageleaf_math::{
     figure::Query,
     limit::{Bound, Verdict},
     report::{Coordinate, LimitRow, Outcome, Parameter},
-    stage::Source,
 };
 use stageleaf_note::{format as quantity_text, query_text, words};
 
@@ -77,7 +76,7 @@ impl Row {
     const COLUMNS: usize = 6;
 
     fn of(row: &LimitRow, limit: &str, stage: &ExaminedStage) -> Self {
-        let dimension = row.limit.query.figure.dimension();
+        let dimension = row.dimension;
         let ink = match row.verdict {
             Verdict::Holds => Ink::Good,
             Verdict::Thin | Verdict::Undetermined => Ink::Watch,
@@ -128,7 +127,7 @@ impl Row {
 #[must_use]
 pub fn margin_text(row: &LimitRow) -> Option<String> {
     let margin = row.margin?;
-    let dimension = row.limit.query.figure.dimension();
+    let dimension = row.dimension;
     if dimension == Dimension::Level && margin.is_finite() {
         let worst = row.worst.value()?;
         let ratio = match row.limit.bound {
@@ -163,7 +162,7 @@ fn coordinate_text(coordinate: &Coordinate, stage: &ExaminedStage) -> String {
     if coordinate.parameter == Parameter::Headroom {
         return format!("{name} {}", if coordinate.value > 0.5 { "guaranteed" } else { "typical" });
     }
-    let value = quantity_text(coordinate.value, coordinate_dimension(coordinate.parameter, stage), DIGITS);
+    let value = quantity_text(coordinate.value, words::parameter_dimension(coordinate.parameter, &stage.block.stage), DIGITS);
     format!("{} {}", name.trim_end_matches(" (magnitude)"), without_idle_zeros(&value))
 }
 
@@ -187,29 +186,6 @@ fn wrapped(pieces: impl IntoIterator<Item = String>) -> Vec<String> {
         }
     }
     lines
-}
-
-/// What a parameter of `stage` measures.
-#[must_use]
-pub fn coordinate_dimension(parameter: Parameter, stage: &ExaminedStage) -> Dimension {
-    match parameter {
-        Parameter::Component(name) => {
-            let specs = stage.block.stage.kind.components();
-            specs.iter().find(|spec| spec.name == name).map_or(Dimension::Number, |spec| spec.dimension)
-        }
-        Parameter::SourceImpedance => match stage.block.stage.source {
-            Some(Source::Capacitive { .. }) => Dimension::Capacitance,
-            Some(Source::Resistive { .. }) | None => Dimension::Resistance,
-        },
-        Parameter::LoadResistance => Dimension::Resistance,
-        Parameter::LoadCapacitance | Parameter::StrayInverting | Parameter::StrayNonInverting | Parameter::StrayFeedback => {
-            Dimension::Capacitance
-        }
-        Parameter::SupplyPositive | Parameter::SupplyNegative => Dimension::Voltage,
-        Parameter::Temperature => Dimension::Temperature,
-        Parameter::Part(figure) => figure.dimension(),
-        Parameter::Headroom => Dimension::Number,
-    }
 }
 
 fn stale(file: &str, state: &QuoteState, colour: bool) -> String {
