@@ -368,16 +368,23 @@ pub fn thin_below(limit: &Limit) -> f64 {
     }
 }
 
+/// Each cause's magnitude at nominal values and at its own worst: part figures at their worst ends, and whichever ends of temperature
+/// and supply make it greatest. A cause keeps its worst where others lack data.
 fn dc_budget(spread: &mut Spread<'_>) -> Vec<DcLine> {
-    let query = Query::of(Figure::OutputOffset);
     let lines = dc::budget(&spread.nominal).lines.clone();
-    let worst = spread.solution_at_greatest(query);
-    let at_worst = worst.as_ref().map(|s| dc::budget(s).lines.clone());
+    let extremes: Vec<_> = spread.dc_corners().iter().map(|build| dc::budget(build).lines.clone()).collect();
     lines
         .into_iter()
         .enumerate()
         .map(|(i, (cause, nominal))| {
-            let worst = at_worst.as_ref().and_then(|l| l.get(i)).map_or_else(|| nominal.clone(), |(_, o)| o.clone());
+            let mut worst = nominal.clone();
+            for there in &extremes {
+                if let (Some(so_far), Some(here)) = (worst.value(), there[i].1.value())
+                    && here > so_far
+                {
+                    worst = Outcome::Value(here);
+                }
+            }
             DcLine { cause, nominal, worst }
         })
         .collect()

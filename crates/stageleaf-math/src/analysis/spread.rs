@@ -194,11 +194,30 @@ impl<'m> Spread<'m> {
         self.model.parameters.entries[slot].parameter
     }
 
-    /// The build at which the figure is greatest, if it has a value there.
-    pub fn solution_at_greatest(&mut self, query: Query) -> Option<Rc<Solution<'m>>> {
-        let extremes = self.extremes(query);
-        extremes.high.outcome.value()?;
-        Some(self.corner(&extremes.high.ends))
+    /// Builds with the part's DC figures at their worse ends, at all ends of temperature and supplies.
+    pub fn dc_corners(&mut self) -> Vec<Rc<Solution<'m>>> {
+        let parameters = &self.model.parameters;
+        let mut worse: Vec<(usize, bool)> = Vec::new();
+        for (slot, entry) in parameters.entries.iter().enumerate() {
+            let figure = match entry.parameter {
+                Parameter::Part(figure) | Parameter::PartOf(_, figure) => figure,
+                _ => continue,
+            };
+            if entry.touches & touch::DC != 0 && entry.touches & touch::NETWORK == 0 && entry.low < entry.high {
+                worse.push((slot, matches!(figure.worse(), crate::part::Worse::High)));
+            }
+        }
+        let mut free: Vec<usize> = parameters.temperature().into_iter().collect();
+        free.extend(parameters.supply().into_iter().flat_map(|(positive, negative)| [positive, negative]));
+        free.retain(|&slot| parameters.entries[slot].low < parameters.entries[slot].high);
+        (0..1_usize << free.len())
+            .map(|choice| {
+                let mut ends = worse.clone();
+                ends.extend(free.iter().enumerate().map(|(i, &slot)| (slot, choice >> i & 1 == 1)));
+                ends.sort_unstable();
+                self.corner(&ends)
+            })
+            .collect()
     }
 
     /// The coordinates that matter: those that alone do at least a hundredth of what all do together.
