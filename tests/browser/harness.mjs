@@ -74,6 +74,10 @@ export const limits = (page) => page.evaluate(() => Object.fromEntries(
 export const plainDocument = (element) => {
   const copy = element.cloneNode(true);
   copy.querySelectorAll("[data-by-script]").forEach((node) => node.remove());
+  // The book's writer breaks lines between elements; the renderer makes no line breaks.
+  const texts = document.createTreeWalker(copy, NodeFilter.SHOW_TEXT), breaks = [];
+  while (texts.nextNode()) if (/^\s*\n\s*$/.test(texts.currentNode.data)) breaks.push(texts.currentNode);
+  breaks.forEach((node) => node.remove());
   return copy.querySelector(".stageleaf-body").outerHTML;
 };
 
@@ -90,7 +94,8 @@ export async function serve({ policy, files = {} } = {}) {
     response.writeHead(200, headers).end(body);
   });
   await new Promise((done) => server.listen(0, "127.0.0.1", done));
-  return { origin: `http://127.0.0.1:${server.address().port}`, close: () => new Promise((done) => server.close(done)) };
+  server.unref(); // a test that failed before it closed its server must not keep the run alive
+  return { origin: `http://127.0.0.1:${server.address().port}`, close: () => { server.closeAllConnections(); server.close(); } };
 }
 
 /** The part of a book page that holds the note, without the book's own scripts: for pages with strict policies. */

@@ -5,7 +5,7 @@ import { mkdtempSync, readFileSync, writeFileSync } from "node:fs";
 import { tmpdir } from "node:os";
 import { join } from "node:path";
 import { after, before, test } from "node:test";
-import { awaken, bare, book, enter, fileUrl, frame, launch, limits, open, serve, site, strangers } from "./harness.mjs";
+import { awaken, bare, book, enter, fileUrl, frame, launch, limits, open, plainDocument, serve, site, strangers } from "./harness.mjs";
 
 let context;
 before(async () => { context = await launch(); });
@@ -33,7 +33,7 @@ test("over http the book's sheet is live and asks nobody else", async () => {
   assert.deepEqual(strangers(opened, server.origin), []);
   assert.deepEqual(opened.seen.words, []);
   await opened.close();
-  await server.close();
+  server.close();
 });
 
 test("a strict policy with wasm lets the sheet live", async () => {
@@ -43,7 +43,7 @@ test("a strict policy with wasm lets the sheet live", async () => {
   assert.deepEqual(opened.seen.words, []);
   assert.deepEqual(strangers(opened, server.origin), []);
   await opened.close();
-  await server.close();
+  server.close();
 });
 
 test("a policy without wasm leaves the static sheet and one quiet line", async () => {
@@ -54,7 +54,7 @@ test("a policy without wasm leaves the static sheet and one quiet line", async (
   assert.ok(Object.keys(await limits(opened)).length > 3, "the limits stand");
   assert.deepEqual(opened.seen.words.filter((words) => !/Content.Security.Policy/i.test(words)), []);
   await opened.close();
-  await server.close();
+  server.close();
 });
 
 test("a single file lives from file://, and under a policy by hash", async () => {
@@ -71,7 +71,38 @@ test("a single file lives from file://, and under a policy by hash", async () =>
   await works(strict);
   assert.deepEqual(strict.seen.words, []);
   await strict.close();
-  await server.close();
+  server.close();
+});
+
+test("a static sheet that nobody touched is left as it is", async () => {
+  const server = await serve({ files: { "bare.html": bare(note) } });
+  const opened = await open(context, `${server.origin}/bare.html`);
+  await opened.locator("stageleaf-sheet[data-live]").first().waitFor();
+  assert.equal(await opened.locator("stageleaf-sheet").getAttribute("data-mended"), null);
+  await opened.close();
+  server.close();
+});
+
+test("a failure inside brings the static sheet back with one quiet line", async () => {
+  const server = await serve({ files: { "bare.html": bare(note) } });
+  const opened = await open(context, `${server.origin}/bare.html`);
+  await opened.locator("stageleaf-sheet[data-live]").first().waitFor();
+  await enter(opened, "components.Rf", "10k 1%");
+  await opened.evaluate(() => {
+    document.querySelector("stageleaf-sheet").live.draw = () => { throw new WebAssembly.RuntimeError("unreachable"); };
+  });
+  await enter(opened, "components.Rf", "11k 1%");
+  assert.equal(await opened.locator("stageleaf-sheet[data-live]").count(), 0);
+  assert.equal(await opened.locator("stageleaf-sheet .stageleaf-quiet").count(), 1);
+  const same = await opened.evaluate(({ html, plain }) => {
+    const plainDocument = eval(plain);
+    const sheet = (root) => plainDocument(root.querySelector("stageleaf-sheet"));
+    return sheet(document) === sheet(new DOMParser().parseFromString(html, "text/html"));
+  }, { html: bare(note), plain: `(${plainDocument})` });
+  assert.equal(same, true);
+  assert.deepEqual(opened.seen.words, []);
+  await opened.close();
+  server.close();
 });
 
 for (const way of ["src", "srcdoc"]) {
@@ -87,7 +118,7 @@ for (const way of ["src", "srcdoc"]) {
     assert.match(await inner.locator(".stageleaf-out textarea").inputValue(), /#stageleaf-1\//);
     assert.equal(await inner.locator("stageleaf-sheet[data-live]").count(), 1);
     await opened.close();
-    await server.close();
+    server.close();
   });
 }
 
@@ -116,9 +147,9 @@ test("twenty sheets start as they are seen", async () => {
   const early = await opened.locator("stageleaf-sheet[data-live]").count();
   assert.ok(early >= 1 && early < 20, `${early} of 20 are live before scrolling`);
   await opened.locator("stageleaf-sheet").last().scrollIntoViewIfNeeded();
-  await opened.locator(`#${id}-19[data-live]`).waitFor();
+  await opened.locator(`[data-sheet="${id}-19"][data-live]`).waitFor();
   assert.deepEqual(opened.seen.words, []);
   await opened.close();
-  await server.close();
+  server.close();
 });
 

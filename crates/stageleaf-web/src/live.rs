@@ -385,6 +385,10 @@ impl Live {
     fn verify(&self) {
         for section in &self.shown {
             let (Some(new), Some(old)) = (patch::parse(&self.document, &section.markup), self.section(section.id)) else { continue };
+            if patch::same(&old, &new) {
+                continue;
+            }
+            patch::tidy(&old);
             if !patch::same(&old, &new) {
                 set(&self.host, "data-mended", section.id);
                 patch::children(&old, &new);

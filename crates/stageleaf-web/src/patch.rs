@@ -25,6 +25,21 @@ pub fn same(old: &Element, new: &DocumentFragment) -> bool {
     present.len() == wanted.len() && present.iter().zip(&wanted).all(|(there, child)| there.is_equal_node(Some(child)))
 }
 
+/// Drops the line breaks that a page's own writer put between elements; the renderer makes none.
+pub fn tidy(root: &Node) {
+    for node in list(root) {
+        if node.node_type() == Node::TEXT_NODE {
+            let text = node.node_value().unwrap_or_default();
+            if text.contains('\n') && text.trim().is_empty() {
+                // A child of the root can be removed from it.
+                let _ = root.remove_child(&node);
+            }
+        } else {
+            tidy(&node);
+        }
+    }
+}
+
 /// The first element below `root` that `selector` means.
 pub fn find(root: &Element, selector: &str) -> Option<Element> {
     root.query_selector(selector).ok().flatten()

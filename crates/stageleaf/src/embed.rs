@@ -83,13 +83,15 @@ pub fn command(args: &[String], mut input: impl Read, mut output: impl Write, mu
     let (Some(mut changed), Some(context)) = (pair.pop(), pair.pop()) else {
         return Err("embed: standard input is not what mdBook sends: a list of context and book".to_owned());
     };
+    // Files are named as seen from the book's root, not by where it stands on this machine.
     let root = PathBuf::from(context["root"].as_str().unwrap_or("."));
+    std::env::set_current_dir(&root).map_err(|error| format!("embed: {}: {error}", root.display()))?;
     let source = context["config"]["book"]["src"].as_str().unwrap_or("src").to_owned();
     let mut teams = Teams::new(None);
     let problems = book(&mut changed, &mut |chapter| {
-        let note = root.join(&source).join(chapter);
+        let note = Path::new(&source).join(chapter);
         // A chapter that another preprocessor made has no file: its folder still has a team.
-        let near = note.ancestors().find(|path| path.exists()).unwrap_or(&root);
+        let near = note.ancestors().find(|path| path.exists()).unwrap_or(Path::new("."));
         Surroundings { file: format!("{source}/{chapter}"), team: teams.of(near), settings: SettingsText::of(near) }
     });
     for fault in teams.take_faults() {

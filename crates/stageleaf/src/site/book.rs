@@ -34,12 +34,15 @@ pub fn build(root: &Path, site: &Path) -> Result<PathBuf, Failure> {
         write(&book_root.join(name), read(&site.join(name))?)?;
     }
     let teams = &mut Teams::new(None);
-    let team = teams.of(&source.join("notes"));
+    // As seen from the root: sheets and messages name files so, whoever built the book.
+    std::env::set_current_dir(root).map_err(|error| format!("{}: {error}", root.display()))?;
+    let notes = Path::new("site/notes");
+    let team = teams.of(notes);
     let faults = teams.take_faults();
     if !faults.is_empty() {
         return Err(faults.iter().map(ToString::to_string).collect::<Vec<_>>().join("\n"));
     }
-    write(&book_root.join("notes/shelf.md"), shelf_page::chapter(&team.shelf, root))?;
+    write(&book_root.join("notes/shelf.md"), shelf_page::chapter(&team.shelf))?;
 
     let say = |error: Error| format!("book: {error:#}");
     let mut book = MDBook::load(&book_root).map_err(say)?;
@@ -50,7 +53,7 @@ pub fn build(root: &Path, site: &Path) -> Result<PathBuf, Failure> {
     html.hash_files = false;
     book.config.set("output.html", html).map_err(say)?;
     book.config.set("build.build-dir", &output).map_err(say)?;
-    let settings = SettingsText::of(&source.join("notes"));
+    let settings = SettingsText::of(notes);
     book.with_preprocessor(Sheets { team: Arc::clone(&team), settings: settings.clone() });
     book.build().map_err(say)?;
     empty_sheet(&source, &output, &team, settings.as_ref())?;
