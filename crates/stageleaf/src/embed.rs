@@ -118,12 +118,12 @@ fn items(list: &mut Value, surroundings: &mut dyn FnMut(&str) -> Surroundings, i
         let Some(entry) = item.get_mut("Chapter") else { continue };
         let path = entry["source_path"].as_str().or_else(|| entry["path"].as_str()).map(|path| path.replace('\\', "/"));
         // A draft has no path and no text.
-        if let (Some(path), Some(text)) = (path, entry["content"].as_str()) {
-            if text.contains("stageleaf") {
-                let (changed, found) = chapter(text, &surroundings(&path), ids);
-                entry["content"] = Value::String(changed);
-                problems.extend(found);
-            }
+        if let (Some(path), Some(text)) = (path, entry["content"].as_str())
+            && text.contains("stageleaf")
+        {
+            let (changed, found) = chapter(text, &surroundings(&path), ids);
+            entry["content"] = Value::String(changed);
+            problems.extend(found);
         }
         items(&mut entry["sub_items"], surroundings, ids, problems);
     }
@@ -236,4 +236,99 @@ fn lines_of(text: &str, range: &Range<usize>) -> std::ops::RangeInclusive<usize>
 fn continuation(text: &str, at: usize) -> String {
     let line = text[..at].rfind('\n').map_or(0, |newline| newline + 1);
     text[line..at].chars().map(|c| if c == '>' { '>' } else { ' ' }).collect()
+}
+
+#[cfg(test)]
+mod tests {
+    use stageleaf_note::{Shelf, read_part};
+
+    use super::*;
+
+    const PART: &str = "[part]\nname = \"elm-1\"\n\n[gain]\nopen_loop = \"100 dB\"\ngbw = \"10 MHz\"\npoles = []\n";
+    const BLOCK: &str = "stage = \"follower\"\nname = \"Tide buffer\"\npart = \"elm-1\"\n\n[limits]\nbandwidth = \"at least 1 MHz\"\n";
+
+    fn surroundings() -> Surroundings {
+        let part = read_part(PART, "shelf/elm-1.toml").expect("the part can be read");
+        let shelf = Shelf { parts: vec![ShelfPart { part, file: "shelf/elm-1.toml".to_owned(), text: PART.to_owned() }] };
+        Surroundings { file: "notes/tide.md".to_owned(), team: Arc::new(Team { shelf, ..Team::default() }), settings: None }
+    }
+
+    fn embedded(text: &str) -> (String, Vec<Problem>) {
+        chapter(text, &surroundings(), &mut BTreeSet::new())
+    }
+
+    #[test]
+    fn only_the_fence_is_replaced_and_by_one_line() {
+        let (changed, problems) = embedded(&format!("before\n\n```stageleaf\n{BLOCK}```\nafter\n"));
+        assert!(problems.is_empty(), "{problems:?}");
+        let lines: Vec<&str> = changed.lines().collect();
+        assert_eq!((lines[0], lines[1], lines[3], lines[4]), ("before", "", "", "after"));
+        assert!(lines[2].starts_with("<div class=\"stageleaf\"><stageleaf-sheet data-sheet=\"tide-buffer\">"), "{}", lines[2]);
+        assert!(lines[2].ends_with("</script></stageleaf-sheet></div>"));
+    }
+
+    #[test]
+    fn a_quotation_stays_one_around_its_sheet() {
+        let quoted: String = format!("```stageleaf\n{BLOCK}```").lines().map(|line| format!("> {line}\n")).collect();
+        let (changed, _) = embedded(&format!("> words\n{quoted}> more\n"));
+        let lines: Vec<&str> = changed.lines().collect();
+        assert!(lines[1].starts_with("> <div class"), "{}", lines[1]);
+        assert_eq!((lines[2], lines[3]), (">", "> more"));
+    }
+
+    #[test]
+    fn a_block_that_cannot_be_read_becomes_a_box_and_hides_no_other() {
+        let text = format!("```stageleaf\nstage = \"<script>\"\n```\n\n```stageleaf\n{BLOCK}```\n");
+        let (changed, problems) = embedded(&text);
+        assert!(!problems.is_empty());
+        assert!(changed.starts_with("<div class=\"stageleaf-trouble\">"));
+        assert!(changed.contains("&lt;script&gt;") && !changed.contains("<script>"));
+        assert!(changed.contains("<stageleaf-sheet data-sheet=\"tide-buffer\">"));
+        assert_eq!(changed.lines().filter(|line| line.is_empty()).count(), 3, "no empty line inside a box");
+    }
+
+    #[test]
+    fn data_cannot_close_their_script() {
+        let block = BLOCK.replace("Tide buffer", "a</script><!--b");
+        let (changed, _) = embedded(&format!("```stageleaf\n{block}```\n"));
+        let data = changed.split("<script type=\"application/json\">").nth(1).expect("there are data");
+        assert_eq!(data.split("</script>").count(), 2, "the element ends once, by its own end");
+        assert!(data.contains("\\u003c/script>"));
+    }
+
+    #[test]
+    fn a_name_that_occurs_twice_gives_two_names() {
+        let text = format!("```stageleaf\n{BLOCK}```\n");
+        let mut names = BTreeSet::new();
+        let (first, _) = chapter(&text, &surroundings(), &mut names);
+        let (second, _) = chapter(&text, &surroundings(), &mut names);
+        assert!(first.contains("data-sheet=\"tide-buffer\"") && second.contains("data-sheet=\"tide-buffer-2\""));
+    }
+
+    #[test]
+    fn a_book_of_either_age_is_walked_with_its_drafts() {
+        for key in ["items", "sections"] {
+            let chapter = |text: &str, path: Value| json!({ "Chapter": { "content": text, "path": path, "sub_items": [] } });
+            let text = format!("```stageleaf\n{BLOCK}```\n");
+            let mut sent = json!({ key: [chapter(&text, json!("tide.md")), "Separator", { "PartTitle": "stageleaf" }, chapter("stageleaf", Value::Null)] });
+            let problems = book(&mut sent, &mut |_| surroundings());
+            assert!(problems.is_empty(), "{problems:?}");
+            assert!(sent[key][0]["Chapter"]["content"].as_str().expect("text").contains("<stageleaf-sheet"));
+            assert_eq!(sent[key][3]["Chapter"]["content"], "stageleaf");
+        }
+    }
+
+    #[test]
+    fn only_html_is_supported_and_nonsense_is_refused() {
+        let run = |args: &[&str], input: &str| {
+            let args: Vec<String> = args.iter().map(|arg| (*arg).to_owned()).collect();
+            command(&args, input.as_bytes(), Vec::new(), Vec::new())
+        };
+        assert_eq!(run(&["supports", "html"], ""), Ok(true));
+        assert_eq!(run(&["supports", "epub"], ""), Ok(false));
+        for input in ["", "{}", "[]", "[1]", "nonsense"] {
+            assert!(run(&[], input).is_err(), "{input}");
+        }
+        assert!(run(&["sing"], "").is_err());
+    }
 }
