@@ -80,7 +80,7 @@ fn sweep_circuit(circuit: &Circuit) -> Native {
     let run = |model: &Model<'_>| {
         let solution = Solution::new(model, model.parameters.nominal(), None);
         let looped = solution.looped();
-        let transfer = &looped.forward[0][usize::from(model.network.load.0)];
+        let transfer = solution.load_numerator();
         let response = sweep::ratio(&solution, transfer, &looped.closed, &frequencies);
         (response, sweep::noise(&solution, &frequencies))
     };

@@ -303,7 +303,7 @@ fn figure_row(spread: &mut Spread<'_>, query: Query) -> FigureRow {
         at_low.max(spread.basis(query, &extremes, &extremes.high, tolerance))
     });
     let dimension = query.figure.dimension_in(spread.kind());
-    FigureRow { query, dimension, range: range(&extremes.low, &extremes.high), nominal: extremes.centre, basis }
+    FigureRow { query, dimension, range: range(&extremes.low, &extremes.high), nominal: extremes.centre.clone(), basis }
 }
 
 fn limit_row(spread: &mut Spread<'_>, limit: &Limit) -> LimitRow {
@@ -499,7 +499,7 @@ fn curves(solution: &Solution<'_>, report: &mut Report) {
     if solution.oscillates() {
         return;
     }
-    let load = &looped.forward[0][usize::from(solution.model.network.load.0)];
+    let load = solution.load_numerator();
     report.response = response::curve(solution, load, &looped.closed, from, to, POINTS);
     if outcome(solution, Query::at(Figure::NoiseDensityAt, 1e3)).value().is_some() {
         report.noise_shares = noise::shares(solution);

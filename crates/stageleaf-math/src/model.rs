@@ -7,8 +7,8 @@ use crate::{
     analysis::second_pole,
     kind::Drives,
     network::{
-        Builder, Law, Network, Node, Without,
-        expand::{Column, DEGREE, Plan, Shape, Weight},
+        Builder, Drive, Law, Network, Node, Without,
+        expand::{Column, DEGREE, Outcome, Plan, Powers, Shape, Weight},
     },
     parameters::Parameters,
     part::{PartFigure, Zero},
@@ -44,8 +44,8 @@ pub struct Model<'a> {
     pub network: Network,
     /// For each input, voltages at all nodes.
     pub forward: Vec<Expansion>,
-    /// The determinant with ideal voltage sources at zero.
-    pub closed: Expansion,
+    /// The determinant with ideal voltage sources at zero, where no held input's own terms give it.
+    pub closed: Option<Expansion>,
     /// Voltage at the load for a current into any node.
     pub adjoint: Expansion,
     /// For each amplifier, voltage at the load for a voltage in series with its input (to be multiplied by its gain).
@@ -99,7 +99,8 @@ impl<'a> Model<'a> {
                 Expansion::compile(&network, Shape::Forward { source, held: held & !(1 << source) })
             })
             .collect();
-        let closed = Expansion::compile(&network, Shape::Closed { both: held, row: 0, column: 0 });
+        let closed = (network.inputs.first() != Some(&Drive::Voltage))
+            .then(|| Expansion::compile(&network, Shape::Closed { both: held, row: 0, column: 0 }));
         let adjoint = Expansion::compile(&network, Shape::Adjoint { held, sense: network.load.0 });
         let series_input = network
             .amplifiers
@@ -153,6 +154,28 @@ impl<'a> Model<'a> {
         Probe { network, above, below }
     }
 
+    /// The first drive's transfer to the load at DC, without solving the rest.
+    #[must_use]
+    pub fn dc_gain(&self, values: &[f64]) -> f64 {
+        let resistances = self.output_resistances(values);
+        let open_loop: Vec<f64> = (0..resistances.len()).map(|a| self.part(values, a, PartFigure::OpenLoop).unwrap_or(1.0)).collect();
+        let mut scratch = Vec::new();
+        let mut sum = |expansion: &Expansion, node: Option<u8>| -> f64 {
+            let weights = expansion.weights(&self.network, values, &resistances, self.scale);
+            expansion.plan.evaluate_constants(&weights, &mut scratch);
+            let gains = |set: u8| open_loop.iter().enumerate().filter(|(a, _)| set >> a & 1 == 1).map(|(_, g)| g).product::<f64>();
+            let wanted = |o: &&Outcome| node.is_none_or(|n| o.joined >> n & 1 == 1);
+            let outcomes = expansion.plan.outcomes.iter().filter(wanted);
+            outcomes.map(|o| expansion.plan.polynomial(o, &scratch)[0] * gains(o.amplified)).sum()
+        };
+        let below = match &self.closed {
+            Some(closed) => sum(closed, None),
+            None => sum(&self.forward[0], Some(self.network.input_node(0).0)),
+        };
+        let transfers = self.drives[0].iter().zip(&self.forward).filter(|(weight, _)| weight.abs() > 0.0);
+        transfers.map(|(weight, expansion)| weight * sum(expansion, Some(self.network.load.0))).sum::<f64>() / below
+    }
+
     /// A figure of an amplifier's part in a build.
     #[must_use]
     pub fn part(&self, values: &[f64], amplifier: usize, figure: PartFigure) -> Option<f64> {
@@ -184,21 +207,21 @@ impl Expansion {
         }
         // In the order of the signal's path, so that few nodes are open at a time.
         pairs.sort_by_key(|&((a, b), _)| (b, a));
-        let mut list: Vec<(u8, u8, Column, usize, Members)> = pairs
+        let mut list: Vec<(u8, u8, Column, Powers, Members)> = pairs
             .into_iter()
-            .map(|((a, b), members)| (b.0, a.0, Column::Branch(a.0, b.0), branch_degree(network, &members), Members::Elements(members)))
+            .map(|((a, b), members)| (b.0, a.0, Column::Branch(a.0, b.0), branch_powers(network, &members), Members::Elements(members)))
             .collect();
         for (index, amplifier) in network.amplifiers.iter().enumerate() {
             let column = Column::Amplifier { plus: amplifier.plus.0, minus: amplifier.minus.0, pin: amplifier.pin.0 };
-            list.push((amplifier.pin.0, 0, column, 0, Members::Amplifier(index)));
+            list.push((amplifier.pin.0, 0, column, Powers { out: (0, 0), taken: (0, 0) }, Members::Amplifier(index)));
         }
         // In the order of the signal's path, so that few nodes are open at a time. The sort is stable: amplifiers keep their order.
         list.sort_by_key(|(b, a, ..)| (*b, *a));
         let order: Vec<usize> = list.iter().filter_map(|l| if let Members::Amplifier(i) = l.4 { Some(i) } else { None }).collect();
         debug_assert!(order.windows(2).all(|w| w[0] < w[1]), "amplifiers' pins rise with their numbers");
         let columns: Vec<Column> = list.iter().map(|l| l.2).collect();
-        let degrees: Vec<usize> = list.iter().map(|l| l.3).collect();
-        Self { plan: Plan::compile(network.nodes, &columns, &degrees, shape), columns: list.into_iter().map(|l| l.4).collect() }
+        let powers: Vec<Powers> = list.iter().map(|l| l.3).collect();
+        Self { plan: Plan::compile(network.nodes, &columns, &powers, shape), columns: list.into_iter().map(|l| l.4).collect() }
     }
 
     /// The numeric weights for a build, with output resistances in the amplifiers' columns.
@@ -259,18 +282,17 @@ fn beside(weight: &Weight, law: Law, values: &[f64], (ohms, omega): (f64, f64)) 
     Weight { out: product(&weight.out, &out), taken: sum }
 }
 
-fn branch_degree(network: &Network, members: &[usize]) -> usize {
-    let mut series = 0;
-    let mut capacitor = 0;
+fn branch_powers(network: &Network, members: &[usize]) -> Powers {
+    let (mut series, mut capacitor, mut resistor) = (0, 0, false);
     for &index in members {
         match network.elements[index].law {
-            Law::Resistance(_) => {}
+            Law::Resistance(_) => resistor = true,
             Law::Capacitance(_) => capacitor = 1,
             Law::SeriesRc(..) => series += 1,
         }
     }
     assert!(series + capacitor <= DEGREE, "few series pairs share a branch");
-    series + capacitor
+    Powers { out: (0, series), taken: (usize::from(!resistor), series + capacitor) }
 }
 
 /// Geometric means, so that scaled coefficients stay near one.

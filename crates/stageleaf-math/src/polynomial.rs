@@ -3,10 +3,14 @@
 use alloc::{vec, vec::Vec};
 
 use num_complex::Complex64;
+use smallvec::SmallVec;
+
+/// Coefficients: up to sixteen without a trip to the allocator, which would otherwise take a third of the engine's time.
+pub type Coefficients = SmallVec<[f64; 16]>;
 
 /// A real polynomial, lowest power first. Empty is zero.
 #[derive(Clone, Debug, Default, PartialEq)]
-pub struct Polynomial(pub Vec<f64>);
+pub struct Polynomial(pub Coefficients);
 
 impl Polynomial {
     /// Adds `factor · other`.
@@ -25,7 +29,7 @@ impl Polynomial {
         if self.0.is_empty() || other.is_empty() {
             return Self::default();
         }
-        let mut product = vec![0.0; self.0.len() + other.len() - 1];
+        let mut product = Coefficients::from_elem(0.0, self.0.len() + other.len() - 1);
         for (i, a) in self.0.iter().enumerate() {
             for (j, b) in other.iter().enumerate() {
                 product[i + j] += a * b;
@@ -54,18 +58,20 @@ impl Polynomial {
 
     /// `|p(jω)|²` as a polynomial in `x = ω²`.
     #[must_use]
-    pub fn squared_magnitude(&self) -> Vec<f64> {
-        // Even and odd part on the axis: p(jω) = e(−x) + jω·o(−x), so |p|² = e² + x·o².
-        let alternate = |start: usize| -> Vec<f64> {
-            self.0.iter().skip(start).step_by(2).enumerate().map(|(k, c)| if k % 2 == 1 { -c } else { *c }).collect()
-        };
-        let (even, odd) = (Self(alternate(0)), Self(alternate(1)));
-        let mut square = even.times(&even.0);
-        let odd = odd.times(&odd.0);
-        if !odd.0.is_empty() {
-            square.add_scaled(&core::iter::once(0.0).chain(odd.0).collect::<Vec<f64>>(), 1.0);
+    pub fn squared_magnitude(&self) -> Coefficients {
+        // The coefficient of x^k: the sum of a_i·a_j over i + j = 2k, with the sign of j^i·(−j)^j.
+        let a = &self.0;
+        let mut square = Coefficients::from_elem(0.0, a.len());
+        for (k, sum) in square.iter_mut().enumerate() {
+            *sum = a[k] * a[k];
+            let mut minus = true;
+            for d in 1..=k.min(a.len() - 1 - k) {
+                let term = 2.0 * a[k - d] * a[k + d];
+                *sum += if minus { -term } else { term };
+                minus = !minus;
+            }
         }
-        square.0
+        square
     }
 
     /// The value at a real argument.
@@ -244,10 +250,20 @@ fn pair_up(roots: &mut [Complex64]) {
 mod tests {
     use super::*;
 
+    fn polynomial(coefficients: &[f64]) -> Polynomial {
+        Polynomial(Coefficients::from_slice(coefficients))
+    }
+
+    #[test]
+    fn squared_magnitude_by_hand() {
+        // p = 1 + 2s + 3s²: |p(jω)|² = (1 − 3x)² + 4x = 1 − 2x + 9x², x = ω²
+        assert_eq!(polynomial(&[1.0, 2.0, 3.0]).squared_magnitude().as_slice(), [1.0, -2.0, 9.0]);
+    }
+
     #[test]
     fn roots_over_thirteen_decades_are_found() {
         // By hand: (s+1)(s+1e6)(s+1e13)
-        let p = Polynomial(vec![1.0, 1.0]).times(&[1e6, 1.0]).times(&[1e13, 1.0]);
+        let p = polynomial(&[1.0, 1.0]).times(&[1e6, 1.0]).times(&[1e13, 1.0]);
         let roots = p.roots(None);
         for (root, want) in roots.iter().zip([-1.0, -1e6, -1e13]) {
             assert!((root.re / want - 1.0).abs() < 1e-12 && root.im == 0.0, "{root} {want}");
@@ -257,7 +273,7 @@ mod tests {
     #[test]
     fn a_conjugate_pair_is_exact() {
         // s² + 2s + 5: −1 ± 2j
-        let roots = Polynomial(vec![5.0, 2.0, 1.0]).roots(None);
+        let roots = polynomial(&[5.0, 2.0, 1.0]).roots(None);
         assert!((roots[0] - Complex64::new(-1.0, -2.0)).norm() < 1e-14, "{}", roots[0]);
         assert!((roots[1] - Complex64::new(-1.0, 2.0)).norm() < 1e-14, "{}", roots[1]);
     }
@@ -265,7 +281,7 @@ mod tests {
     #[test]
     fn value_on_the_imaginary_axis() {
         // (1 + 2s + 3s² + 4s³) at s = 2j: 1 − 12 + j(4 − 32)
-        let v = Polynomial(vec![1.0, 2.0, 3.0, 4.0]).at(2.0);
+        let v = polynomial(&[1.0, 2.0, 3.0, 4.0]).at(2.0);
         assert!((v.re + 11.0).abs() < 1e-14 && (v.im + 28.0).abs() < 1e-14);
     }
 }

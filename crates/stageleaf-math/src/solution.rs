@@ -9,7 +9,7 @@ use crate::{
     model::{Expansion, Model},
     network::{Drive, Network, Node},
     part::PartFigure,
-    polynomial::Polynomial,
+    polynomial::{Coefficients, Polynomial},
 };
 
 /// The loop and the transfers from the inputs, over a common denominator in scaled frequency.
@@ -21,8 +21,23 @@ pub struct Loop {
     pub returned: Vec<Polynomial>,
     /// See `returned`.
     pub open: Vec<Polynomial>,
-    /// By drive: numerators of the voltage at each node, by node number.
-    pub forward: Vec<Vec<Polynomial>>,
+    /// By input: the terms of the voltage at each node, by node and set of amplifiers.
+    terms: Vec<Table>,
+    /// By drive and node: the numerators that were asked for.
+    numerators: Vec<OnceCell<Polynomial>>,
+}
+
+/// An expansion's polynomials by node and by set of amplifiers.
+#[derive(Clone, Debug)]
+struct Table {
+    sets: usize,
+    terms: Vec<Polynomial>,
+}
+
+impl Table {
+    fn of(&self, node: usize) -> &[Polynomial] {
+        &self.terms[node * self.sets..(node + 1) * self.sets]
+    }
 }
 
 /// Numerators of the load's voltage for currents into nodes and for voltages at the amplifiers' inputs.
@@ -126,12 +141,12 @@ impl<'m> Solution<'m> {
         let omega = self.model.scale.1;
         let open_loop = self.part_of(index, PartFigure::OpenLoop).unwrap_or(1.0);
         let dominant = self.part_of(index, PartFigure::Gbw).map_or(0.0, |gbw| open_loop * omega / (TAU * gbw));
-        let mut below = Polynomial(vec![1.0, dominant]);
+        let mut below = Polynomial(Coefficients::from_slice(&[1.0, dominant]));
         let factor = self.values[self.model.parameters.pole_factor()];
         for pole in self.model.poles[index].iter().flatten() {
             below = below.times(&[1.0, omega / (TAU * pole * factor)]);
         }
-        let mut above = Polynomial(vec![open_loop]);
+        let mut above = Polynomial(Coefficients::from_slice(&[open_loop]));
         for zero in &self.model.zeros[index] {
             let slope = omega / (TAU * zero.frequency);
             above = above.times(&[1.0, if zero.right_half_plane { -slope } else { slope }]);
@@ -142,7 +157,7 @@ impl<'m> Solution<'m> {
     /// For every set of amplifiers, the product of its members' numerators and the others' denominators.
     fn products(&self) -> &[Polynomial] {
         self.products.get_or_init(|| {
-            let mut products = vec![Polynomial(vec![1.0])];
+            let mut products = vec![Polynomial(Coefficients::from_slice(&[1.0]))];
             for index in 0..self.amplifiers() {
                 let (above, below) = self.amplifier(index);
                 let without: Vec<Polynomial> = products.iter().map(|p| p.times(&below.0)).collect();
@@ -176,85 +191,74 @@ impl<'m> Solution<'m> {
         scratch
     }
 
-    /// An expansion's polynomials by node and by set of amplifiers; closed shapes have all in node 0.
-    fn expand(&self, expansion: &Expansion) -> Vec<Vec<Polynomial>> {
+    /// An expansion's polynomials; closed shapes have all in node 0.
+    fn expand(&self, expansion: &Expansion) -> Table {
         let nodes = self.model.network.nodes;
         let sets = 1 << self.amplifiers();
         let scratch = self.run(expansion, &self.model.network, None);
-        let mut table = vec![vec![Polynomial::default(); sets]; nodes];
+        let mut terms = vec![Polynomial::default(); sets * nodes];
         for outcome in &expansion.plan.outcomes {
-            let terms = expansion.plan.polynomial(outcome, &scratch);
-            for (node, by_set) in table.iter_mut().enumerate() {
-                if outcome.joined >> node & 1 == 1 || outcome.joined == 0 && node == 0 {
-                    by_set[usize::from(outcome.amplified)].add_scaled(terms, 1.0);
+            let polynomial = expansion.plan.polynomial(outcome, &scratch);
+            let joined = if outcome.joined == 0 { 1 } else { outcome.joined };
+            for node in 0..nodes {
+                if joined >> node & 1 == 1 {
+                    terms[node * sets + usize::from(outcome.amplified)].add_scaled(polynomial, 1.0);
                 }
             }
         }
-        table
+        Table { sets, terms }
     }
 
     /// Loop and transfers.
     pub fn looped(&self) -> &Loop {
         self.looped.get_or_init(|| {
             let model = self.model;
-            let whole = self.expand(&model.closed);
-            let returned: Vec<Polynomial> = (0..self.amplifiers()).map(|a| self.combine(&whole[0], |set| set >> a & 1 == 1)).collect();
-            let open: Vec<Polynomial> = (0..self.amplifiers()).map(|a| self.combine(&whole[0], |set| set >> a & 1 == 0)).collect();
+            let terms: Vec<Table> = model.forward.iter().map(|expansion| self.expand(expansion)).collect();
+            // A node that an ideal voltage holds follows itself: its terms are the determinant's.
+            let whole = model.closed.as_ref().map(|expansion| self.expand(expansion));
+            let whole = whole.as_ref().map_or_else(|| terms[0].of(usize::from(model.network.input_node(0).0)), |table| table.of(0));
+            let returned: Vec<Polynomial> = (0..self.amplifiers()).map(|a| self.combine(whole, |set| set >> a & 1 == 1)).collect();
+            let open: Vec<Polynomial> = (0..self.amplifiers()).map(|a| self.combine(whole, |set| set >> a & 1 == 0)).collect();
             let mut closed = open[0].clone();
             closed.add_scaled(&returned[0].0, 1.0);
-            let by_input: Vec<Vec<Polynomial>> = model
-                .forward
-                .iter()
-                .zip(&model.network.inputs)
-                .map(|(expansion, drive)| {
-                    let table = self.expand(expansion);
-                    table
-                        .iter()
-                        .map(|by_set| {
-                            let mut numerator = self.combine(by_set, |_| true);
-                            // A current's transfer is an impedance; a charge's current is its rate of change.
-                            let (ohms, omega) = model.scale;
-                            match drive {
-                                Drive::Voltage => {}
-                                Drive::Current => numerator.0.iter_mut().for_each(|c| *c *= ohms),
-                                Drive::Charge => {
-                                    numerator.0.iter_mut().for_each(|c| *c *= ohms * omega);
-                                    if !numerator.0.is_empty() {
-                                        numerator.0.insert(0, 0.0);
-                                    }
-                                }
-                            }
-                            numerator
-                        })
-                        .collect()
-                })
-                .collect();
-            let forward = model
-                .drives
-                .iter()
-                .map(|weights| {
-                    (0..model.network.nodes)
-                        .map(|node| {
-                            let mut sum = Polynomial::default();
-                            for (weight, numerators) in weights.iter().zip(&by_input) {
-                                if weight.abs() > 0.0 {
-                                    sum.add_scaled(&numerators[node].0, *weight);
-                                }
-                            }
-                            sum
-                        })
-                        .collect()
-                })
-                .collect();
-            Loop { closed, returned, open, forward }
+            let numerators = vec![OnceCell::new(); model.drives.len() * model.network.nodes];
+            Loop { closed, returned, open, terms, numerators }
         })
+    }
+
+    /// Numerator, over the closed loop, of the voltage at a node for a drive.
+    pub fn numerator(&self, drive: usize, node: Node) -> &Polynomial {
+        let (model, looped, node) = (self.model, self.looped(), usize::from(node.0));
+        looped.numerators[drive * model.network.nodes + node].get_or_init(|| {
+            let mut sum = Polynomial::default();
+            for ((weight, table), kind) in model.drives[drive].iter().zip(&looped.terms).zip(&model.network.inputs) {
+                if weight.abs() <= 0.0 {
+                    continue;
+                }
+                let numerator = self.combine(table.of(node), |_| true);
+                // A current's transfer is an impedance; a charge's current is its rate of change.
+                let (ohms, omega) = model.scale;
+                match kind {
+                    Drive::Voltage => sum.add_scaled(&numerator.0, *weight),
+                    Drive::Current => sum.add_scaled(&numerator.0, *weight * ohms),
+                    Drive::Charge => sum.add_scaled(&numerator.times(&[0.0, 1.0]).0, *weight * ohms * omega),
+                }
+            }
+            sum
+        })
+    }
+
+    /// Numerator, over the closed loop, of the first drive's transfer to the load.
+    pub fn load_numerator(&self) -> &Polynomial {
+        self.numerator(0, self.model.network.load)
     }
 
     /// Transfers to the load from currents and from the amplifiers' inputs.
     pub fn injection(&self) -> &Injection {
         self.injection.get_or_init(|| {
             let model = self.model;
-            let current = self.expand(&model.adjoint).iter().map(|by_set| self.combine(by_set, |_| true)).collect();
+            let table = self.expand(&model.adjoint);
+            let current = (0..model.network.nodes).map(|node| self.combine(table.of(node), |_| true)).collect();
             let input = model
                 .series_input
                 .iter()
@@ -278,11 +282,10 @@ impl<'m> Solution<'m> {
     pub fn roots(&self) -> &Roots {
         self.roots.get_or_init(|| {
             let looped = self.looped();
-            let load = &looped.forward[0][usize::from(self.model.network.load.0)];
             let near = self.near;
             Roots {
                 poles: looped.closed.roots(near.map(|r| &r.poles[..])),
-                zeros: load.roots(near.map(|r| &r.zeros[..])),
+                zeros: self.load_numerator().roots(near.map(|r| &r.zeros[..])),
                 loop_zeros: looped.returned.iter().enumerate().map(|(a, r)| r.roots(near.map(|n| &n.loop_zeros[a][..]))).collect(),
             }
         })
@@ -346,7 +349,7 @@ impl<'m> Solution<'m> {
             return Complex64::new(0.0, 0.0);
         }
         let looped = self.looped();
-        looped.forward[drive][usize::from(node.0)].at(omega) / looped.closed.at(omega)
+        self.numerator(drive, node).at(omega) / looped.closed.at(omega)
     }
 
     /// The transfer from a drive to the load at a scaled angular frequency.
@@ -363,7 +366,7 @@ impl<'m> Solution<'m> {
     /// A transfer's value at DC.
     pub fn dc_gain(&self, drive: usize) -> f64 {
         let looped = self.looped();
-        looped.forward[drive][usize::from(self.model.network.load.0)].constant() / looped.closed.constant()
+        self.numerator(drive, self.model.network.load).constant() / looped.closed.constant()
     }
 }
 

@@ -222,7 +222,7 @@ fn a_sweep_has_the_bits_of_single_points() {
         let solution = Solution::new(&model, model.parameters.nominal(), None);
         let frequencies: Vec<f64> = stageleaf_math::analysis::response::frequencies(1.0, 1e8, 37).collect();
         let looped = solution.looped();
-        let load = &looped.forward[0][usize::from(model.network.load.0)];
+        let load = solution.load_numerator();
         let swept = stageleaf_math::analysis::sweep::ratio(&solution, load, &looped.closed, &frequencies);
         for (frequency, value) in frequencies.iter().zip(swept) {
             let single = solution.transfer(0, solution.scaled(*frequency));

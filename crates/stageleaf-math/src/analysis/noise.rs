@@ -254,7 +254,7 @@ pub fn curve(solution: &Solution<'_>, from: f64, to: f64, points: usize, shares:
 /// `∫ |H|² df / |H(ref)|²` over all frequencies, Hz; infinite where the response does not fall off.
 pub fn noise_bandwidth(solution: &Solution<'_>) -> f64 {
     let looped = solution.looped();
-    let numerator = &looped.forward[0][usize::from(solution.model.network.load.0)];
+    let numerator = solution.load_numerator();
     let degree = |p: &Polynomial| p.0.iter().rposition(|c| c.abs() > 0.0).unwrap_or(0);
     let (n, d) = (degree(numerator), degree(&looped.closed));
     if n >= d {

@@ -37,7 +37,7 @@ pub fn reference(solution: &Solution<'_>) -> ReferencePoint {
         }
         Reference::Peak => {
             let looped = solution.looped();
-            let numerator = &looped.forward[0][usize::from(solution.model.network.load.0)];
+            let numerator = solution.load_numerator();
             let power = |omega: f64| numerator.at(omega).norm_sqr() / looped.closed.at(omega).norm_sqr();
             let grid = solution.grid();
             let Some(top) = (0..grid.len()).max_by(|&a, &b| power(grid[a]).total_cmp(&power(grid[b]))) else {
@@ -73,7 +73,7 @@ pub struct Edges {
 pub fn edges(solution: &Solution<'_>) -> Edges {
     *solution.edges.get_or_init(|| {
         let looped = solution.looped();
-        let numerator = &looped.forward[0][usize::from(solution.model.network.load.0)];
+        let numerator = solution.load_numerator();
         let ReferencePoint { omega: middle, gain } = reference(solution);
         let half = 0.5 * gain * gain;
         let power = |omega: f64| numerator.at(omega).norm_sqr() / looped.closed.at(omega).norm_sqr();
@@ -153,13 +153,19 @@ fn impedance(solution: &Solution<'_>, probe: &Probe) -> f64 {
 pub fn gain_drift(solution: &Solution<'_>) -> f64 {
     const STEP: f64 = 1e-4;
     let gain = reference(solution).gain;
+    // The cheap DC gain leaves out the scale of a current's transfer.
+    let unit = gain / solution.model.dc_gain(&solution.values);
     let mut sum = 0.0;
     for (slot, entry) in solution.model.parameters.entries.iter().enumerate() {
         if entry.drift > 0.0 && entry.touches & touch::NETWORK != 0 {
             let moved = |factor: f64| {
                 let mut values = solution.values.clone();
                 values[slot] *= factor;
-                reference(&Solution::new(solution.model, values, None)).gain
+                match solution.model.stage.kind.spec().reference {
+                    // A common factor cancels in the quotient below.
+                    Reference::Dc => solution.model.dc_gain(&values) * unit,
+                    _ => reference(&Solution::new(solution.model, values, None)).gain,
+                }
             };
             sum += ((moved(1.0 + STEP) - moved(1.0 - STEP)) / (2.0 * STEP * gain)).abs() * entry.drift;
         }

@@ -43,6 +43,7 @@ pub struct Spread<'m> {
     moved: Vec<[Option<Rc<Solution<'m>>>; 2]>,
     probes: Vec<Option<Rc<Solution<'m>>>>,
     corners: BTreeMap<Vec<(usize, bool)>, Rc<Solution<'m>>>,
+    known: Vec<(Query, Rc<Extremes>)>,
 }
 
 /// A figure at its two worst corners.
@@ -82,6 +83,7 @@ impl<'m> Spread<'m> {
             moved: (0..slots).map(|_| [None, None]).collect(),
             probes: (0..=slots).map(|_| None).collect(),
             corners: BTreeMap::new(),
+            known: Vec::new(),
         }
     }
 
@@ -112,7 +114,16 @@ impl<'m> Spread<'m> {
     }
 
     /// The figure's least and greatest value over the spread.
-    pub fn extremes(&mut self, query: Query) -> Extremes {
+    pub fn extremes(&mut self, query: Query) -> Rc<Extremes> {
+        if let Some((_, known)) = self.known.iter().find(|(q, _)| *q == query) {
+            return known.clone();
+        }
+        let found = Rc::new(self.search(query));
+        self.known.push((query, found.clone()));
+        found
+    }
+
+    fn search(&mut self, query: Query) -> Extremes {
         let centre = lacking(&self.nominal, query).unwrap_or_else(|| value(&self.nominal, query));
         if matches!(centre, Outcome::Undetermined(_) | Outcome::DoesNotApply(_) | Outcome::NoDcPath) {
             let same = Extreme { outcome: centre.clone(), corner: Vec::new(), effects: Vec::new(), ends: Vec::new() };

@@ -196,11 +196,22 @@ struct Rails<'a> {
     offset: f64,
 }
 
+/// How finely a period is looked through: turns, golden-section steps after that.
+#[derive(Clone, Copy)]
+enum Fineness {
+    /// For a figure.
+    Figure,
+    /// For a plot.
+    Plot,
+}
+
 impl Rails<'_> {
-    fn margin(&self, drive: &Drive) -> Result<f64, Need> {
-        const STEPS: usize = 48;
-        /// cos and sin of 2π/48.
-        const TURN: (f64, f64) = (0.991_444_861_373_810_4, 0.130_526_192_220_051_57);
+    fn margin(&self, drive: &Drive, fineness: Fineness) -> Result<f64, Need> {
+        // Steps, cos and sin of 2π over them, golden-section steps.
+        let (steps, turn, golden) = match fineness {
+            Fineness::Figure => (24, (0.965_925_826_289_068_3, 0.258_819_045_102_520_74), 16),
+            Fineness::Plot => (12, (0.866_025_403_784_438_6, 0.5), 8),
+        };
         const RATIO: f64 = 0.618_033_988_749_894_9;
         let room = |cos: f64, sin: f64| -> Result<f64, Need> {
             let (v, i) = drive.at(cos, sin);
@@ -213,22 +224,22 @@ impl Rails<'_> {
         }
         let (mut least, mut least_at) = (f64::INFINITY, (1.0, 0.0));
         let (mut cos, mut sin) = (1.0, 0.0);
-        for _ in 0..STEPS {
+        for _ in 0..steps {
             let here = room(cos, sin)?;
             if here < least {
                 (least, least_at) = (here, (cos, sin));
             }
-            (cos, sin) = (cos * TURN.0 - sin * TURN.1, sin * TURN.0 + cos * TURN.1);
+            (cos, sin) = (cos * turn.0 - sin * turn.1, sin * turn.0 + cos * turn.1);
         }
         // Golden section around the least sample, by small rotations from it.
         let near = |angle: f64| {
             let (c, s) = (libm::cos(angle), libm::sin(angle));
             room(least_at.0 * c - least_at.1 * s, least_at.1 * c + least_at.0 * s)
         };
-        let (mut a, mut b) = (-TURN.1, TURN.1);
+        let (mut a, mut b) = (-turn.1, turn.1);
         let (mut x, mut y) = (b - RATIO * (b - a), a + RATIO * (b - a));
         let (mut fx, mut fy) = (near(x)?, near(y)?);
-        for _ in 0..16 {
+        for _ in 0..golden {
             if fx < fy {
                 b = y;
                 (y, fy) = (x, fx);
@@ -318,7 +329,7 @@ fn rails<'a>(solution: &'a Solution<'_>, amplifier: usize) -> Result<Rails<'a>, 
 fn clip(solution: &Solution<'_>, amplifier: usize, drive: &Drive) -> Outcome {
     match rails(solution, amplifier) {
         Err(outcome) => outcome,
-        Ok(rails) => match rails.margin(drive) {
+        Ok(rails) => match rails.margin(drive, Fineness::Figure) {
             Ok(margin) => Outcome::Value(margin),
             Err(need) => Outcome::Undetermined(alloc::vec![need]),
         },
@@ -494,7 +505,7 @@ fn largest(rails: &Rails<'_>, drive: &mut Drive, here: &Pin) -> Option<f64> {
     let mut margin = |peak: f64| {
         drive.set_alternating(here, peak);
         // Beyond the table's last current the pin is taken to clip.
-        rails.margin(drive).unwrap_or(-peak)
+        rails.margin(drive, Fineness::Plot).unwrap_or(-peak)
     };
     let (mut a, mut fa) = (0.0, margin(0.0));
     if fa <= 0.0 {
@@ -503,7 +514,7 @@ fn largest(rails: &Rails<'_>, drive: &mut Drive, here: &Pin) -> Option<f64> {
     let mut b = fa / magnitude(here.voltage);
     let mut fb = margin(b);
     for _ in 0..12 {
-        if fb.abs() <= 1e-6 * fa.abs() || (fb - fa).abs() <= 0.0 {
+        if fb.abs() <= 1e-4 * fa.abs() || (fb - fa).abs() <= 0.0 {
             break;
         }
         let c = (b - fb * (b - a) / (fb - fa)).max(0.0);

@@ -77,6 +77,15 @@ pub struct Weight {
 /// Greatest degree of a branch's weight.
 pub const DEGREE: usize = 3;
 
+/// Which powers of s a column's weights can have: lowest and highest, left out and taken.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Powers {
+    /// When left out.
+    pub out: (usize, usize),
+    /// When taken.
+    pub taken: (usize, usize),
+}
+
 /// Where an expansion's terms end up.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct Outcome {
@@ -95,6 +104,8 @@ struct Step {
     to: u32,
     length: u16,
     column: u16,
+    /// Powers of s of the factor, lowest and highest.
+    powers: (u8, u8),
     which: Which,
     negative: bool,
 }
@@ -120,6 +131,16 @@ struct State {
     rows: [u8; MAX_NODES],
     columns: [u8; MAX_NODES],
     amplified: u8,
+}
+
+impl Which {
+    const fn powers(self, of: Powers) -> (usize, usize) {
+        match self {
+            Self::Out => of.out,
+            Self::Taken => of.taken,
+            Self::Controlled => (0, 0),
+        }
+    }
 }
 
 impl State {
@@ -156,11 +177,10 @@ fn join(partition: &mut [u8; MAX_NODES], a: u8, b: u8) -> Option<bool> {
 }
 
 impl Plan {
-    /// Compiles the expansion of `shape` for a network of `nodes` nodes (ground included). `degrees` gives each column's
-    /// greatest degree, out and taken.
+    /// Compiles the expansion of `shape` for a network of `nodes` nodes (ground included). `powers` belongs to `columns`.
     #[must_use]
-    pub fn compile(nodes: usize, columns: &[Column], degrees: &[usize], shape: Shape) -> Self {
-        assert!(nodes <= MAX_NODES && columns.len() == degrees.len());
+    pub fn compile(nodes: usize, columns: &[Column], powers: &[Powers], shape: Shape) -> Self {
+        assert!(nodes <= MAX_NODES && columns.len() == powers.len());
         let mut start = State { rows: [0; MAX_NODES], columns: [0; MAX_NODES], amplified: 0 };
         for node in 0..nodes {
             let label = u8::try_from(node).expect("few nodes");
@@ -266,9 +286,9 @@ impl Plan {
         let mut steps = Vec::new();
         for index in 0..last {
             let mut lengths = vec![0usize; layers[index + 1].len()];
-            for &(from, to, _, _) in &moves[index] {
+            for &(from, to, which, _) in &moves[index] {
                 if alive[index][from] && alive[index + 1][to] {
-                    lengths[to] = lengths[to].max(place[index][from].1 + degrees[index]);
+                    lengths[to] = lengths[to].max(place[index][from].1 + which.powers(powers[index]).1);
                 }
             }
             for (to, &length) in lengths.iter().enumerate() {
@@ -280,7 +300,10 @@ impl Plan {
             for &(from, to, which, sign) in &moves[index] {
                 if alive[index][from] && alive[index + 1][to] {
                     let narrow = |n: usize| u32::try_from(n).expect("small plan");
+                    let (low, high) = which.powers(powers[index]);
+                    let small = |n: usize| u8::try_from(n).expect("small degree");
                     steps.push(Step {
+                        powers: (small(low), small(high)),
                         from: narrow(place[index][from].0),
                         to: narrow(place[index + 1][to].0),
                         length: u16::try_from(place[index][from].1).expect("small degree"),
@@ -308,7 +331,7 @@ impl Plan {
     /// Carries out the expansion. `scratch` is reused between calls.
     pub fn evaluate(&self, weights: &[Weight], scratch: &mut Vec<f64>) {
         scratch.clear();
-        scratch.resize(self.size + DEGREE, 0.0);
+        scratch.resize(self.size, 0.0);
         scratch[0] = 1.0;
         for step in &self.steps {
             let weight = &weights[usize::from(step.column)];
@@ -318,11 +341,9 @@ impl Plan {
                 Which::Controlled => &ONE,
             };
             let (from, to, length) = (step.from as usize, step.to as usize, usize::from(step.length));
-            for (power, &factor) in factors.iter().enumerate() {
-                if factor == 0.0 {
-                    continue;
-                }
-                let factor = if step.negative { -factor } else { factor };
+            let (lowest, highest) = (usize::from(step.powers.0), usize::from(step.powers.1));
+            for (power, factor) in (lowest..).zip(&factors[lowest..=highest]) {
+                let factor = if step.negative { -factor } else { *factor };
                 let (low, high) = scratch.split_at_mut(to + power);
                 for (source, sink) in low[from..from + length].iter().zip(&mut high[..length]) {
                     *sink += factor * source;
@@ -343,7 +364,7 @@ impl Plan {
                 Which::Taken => weight.taken[0],
                 Which::Controlled => 1.0,
             };
-            if factor != 0.0 {
+            if step.powers.0 == 0 {
                 let factor = if step.negative { -factor } else { factor };
                 scratch[step.to as usize] += factor * scratch[step.from as usize];
             }
