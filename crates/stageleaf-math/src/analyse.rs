@@ -12,7 +12,7 @@ use crate::{
     dimension::Dimension,
     figure::{Argument, Figure, Query},
     limit::{Bound, Limit, Thin, Verdict},
-    model::Model,
+    model::{Model, Plans},
     part::PartFigure,
     report::{Caution, DcLine, FigureRow, LimitRow, NoiseOrigin, Outcome, Report},
     solution::Solution,
@@ -73,8 +73,16 @@ pub enum Detail {
 /// # Errors
 /// What [`check`] finds.
 pub fn analyse_in(stage: &Stage, detail: Detail) -> Result<Report, Error> {
+    analyse_with(stage, detail, &Plans::default())
+}
+
+/// [`analyse_in`], with what was compiled for earlier stages: an edit that only changes values compiles nothing.
+///
+/// # Errors
+/// What [`check`] finds.
+pub fn analyse_with(stage: &Stage, detail: Detail, plans: &Plans) -> Result<Report, Error> {
     check(stage)?;
-    let model = Model::compile(stage);
+    let model = Model::compile_with(stage, plans);
     let first = Solution::new(&model, model.parameters.nominal(), None);
     let near = first.roots().clone();
     let mut spread = Spread::new(&model, &near);

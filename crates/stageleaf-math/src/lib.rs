@@ -45,4 +45,4 @@ pub const NOT_MODELLED: &[&str] = &[
     "latch-up",
 ];
 
-pub use analyse::{Detail, analyse, analyse_in, check};
+pub use analyse::{Detail, analyse, analyse_in, analyse_with, check};

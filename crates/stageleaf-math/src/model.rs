@@ -1,7 +1,7 @@
 //! A stage compiled: its network, its expansions, its parameter table. One model serves every build of the stage.
 
-use alloc::{vec, vec::Vec};
-use core::cell::OnceCell;
+use alloc::{collections::BTreeMap, rc::Rc, vec, vec::Vec};
+use core::cell::{OnceCell, RefCell};
 
 use crate::{
     analysis::second_pole,
@@ -20,8 +20,33 @@ use crate::{
 pub struct Expansion {
     /// What each column of the plan is.
     columns: Vec<Members>,
-    /// Compiled steps.
-    pub plan: Plan,
+    /// Compiled steps, shared by all networks of this topology.
+    pub plan: Rc<Plan>,
+}
+
+/// Expansions compiled so far, by topology: an edit of a value compiles nothing anew.
+#[derive(Clone, Debug, Default)]
+pub struct Plans(Rc<RefCell<BTreeMap<Topology, Rc<Plan>>>>);
+
+/// All that a plan depends on.
+type Topology = (usize, Vec<(Column, Powers)>, Shape);
+
+/// Topologies kept; a stage needs some ten.
+const PLANS_KEPT: usize = 256;
+
+impl Plans {
+    fn plan(&self, topology: Topology) -> Rc<Plan> {
+        let mut known = self.0.borrow_mut();
+        if let Some(plan) = known.get(&topology) {
+            return plan.clone();
+        }
+        if known.len() >= PLANS_KEPT {
+            known.clear();
+        }
+        let plan = Rc::new(Plan::compile(topology.0, &topology.1, topology.2));
+        known.insert(topology, plan.clone());
+        plan
+    }
 }
 
 /// What a column of a plan is made of.
@@ -60,6 +85,7 @@ pub struct Model<'a> {
     pub scale: (f64, f64),
     /// Whether the parts state all that response and loop depend on, so that stability can be judged.
     pub small_signal: bool,
+    plans: Plans,
     input: OnceCell<Probe>,
     output: OnceCell<Probe>,
 }
@@ -88,6 +114,12 @@ impl<'a> Model<'a> {
     /// Lays out and compiles.
     #[must_use]
     pub fn compile(stage: &'a Stage) -> Self {
+        Self::compile_with(stage, &Plans::default())
+    }
+
+    /// Lays out, and compiles what `plans` does not hold yet.
+    #[must_use]
+    pub fn compile_with(stage: &'a Stage, plans: &Plans) -> Self {
         let parameters = Parameters::of(stage);
         let network = Builder::lay_out(stage, &parameters, Without::default());
         debug_assert!(network.amplifiers.iter().all(|a| a.minus != a.plus), "the inputs are apart");
@@ -96,16 +128,16 @@ impl<'a> Model<'a> {
         let forward = (0..network.inputs.len())
             .map(|input| {
                 let source = network.input_node(input).0;
-                Expansion::compile(&network, Shape::Forward { source, held: held & !(1 << source) })
+                Expansion::compile(&network, Shape::Forward { source, held: held & !(1 << source) }, plans)
             })
             .collect();
         let closed = (network.inputs.first() != Some(&Drive::Voltage))
-            .then(|| Expansion::compile(&network, Shape::Closed { both: held, row: 0, column: 0 }));
-        let adjoint = Expansion::compile(&network, Shape::Adjoint { held, sense: network.load.0 });
+            .then(|| Expansion::compile(&network, Shape::Closed { both: held, row: 0, column: 0 }, plans));
+        let adjoint = Expansion::compile(&network, Shape::Adjoint { held, sense: network.load.0 }, plans);
         let series_input = network
             .amplifiers
             .iter()
-            .map(|a| Expansion::compile(&network, Shape::Closed { both: held, row: a.pin.0, column: network.load.0 }))
+            .map(|a| Expansion::compile(&network, Shape::Closed { both: held, row: a.pin.0, column: network.load.0 }, plans))
             .collect();
         let scale = scale(&network, &parameters);
         let parts = || (0..network.amplifiers.len()).map(|a| stage.part_of(a));
@@ -130,6 +162,7 @@ impl<'a> Model<'a> {
             zeros,
             scale,
             small_signal,
+            plans: plans.clone(),
             input: OnceCell::new(),
             output: OnceCell::new(),
             network,
@@ -149,7 +182,7 @@ impl<'a> Model<'a> {
 
     fn probe(&self, without: Without, terminal: u16, held: u16) -> Probe {
         let network = Builder::lay_out(self.stage, &self.parameters, without);
-        let closed = |both| Expansion::compile(&network, Shape::Closed { both, row: 0, column: 0 });
+        let closed = |both| Expansion::compile(&network, Shape::Closed { both, row: 0, column: 0 }, &self.plans);
         let (above, below) = (closed(terminal | held), closed(held));
         Probe { network, above, below }
     }
@@ -191,9 +224,9 @@ impl<'a> Model<'a> {
 }
 
 impl Expansion {
-    /// Compiles the expansion of `shape` over a network.
+    /// Compiles the expansion of `shape` over a network, unless `plans` holds it.
     #[must_use]
-    pub fn compile(network: &Network, shape: Shape) -> Self {
+    pub fn compile(network: &Network, shape: Shape, plans: &Plans) -> Self {
         let mut pairs: Vec<((Node, Node), Vec<usize>)> = Vec::new();
         for (index, element) in network.elements.iter().enumerate() {
             let key = if element.a < element.b { (element.a, element.b) } else { (element.b, element.a) };
@@ -219,9 +252,8 @@ impl Expansion {
         list.sort_by_key(|(b, a, ..)| (*b, *a));
         let order: Vec<usize> = list.iter().filter_map(|l| if let Members::Amplifier(i) = l.4 { Some(i) } else { None }).collect();
         debug_assert!(order.windows(2).all(|w| w[0] < w[1]), "amplifiers' pins rise with their numbers");
-        let columns: Vec<Column> = list.iter().map(|l| l.2).collect();
-        let powers: Vec<Powers> = list.iter().map(|l| l.3).collect();
-        Self { plan: Plan::compile(network.nodes, &columns, &powers, shape), columns: list.into_iter().map(|l| l.4).collect() }
+        let topology = list.iter().map(|l| (l.2, l.3)).collect();
+        Self { plan: plans.plan((network.nodes, topology, shape)), columns: list.into_iter().map(|l| l.4).collect() }
     }
 
     /// The numeric weights for a build, with output resistances in the amplifiers' columns.

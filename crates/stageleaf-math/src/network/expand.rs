@@ -20,7 +20,7 @@ use alloc::{collections::BTreeMap, vec, vec::Vec};
 use super::MAX_NODES;
 
 /// Something that takes part in the expansion.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
 pub enum Column {
     /// A passive branch between two nodes.
     Branch(u8, u8),
@@ -36,7 +36,7 @@ pub enum Column {
 }
 
 /// Which determinant to expand.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
 pub enum Shape {
     /// `det Y` with the nodes in `both` joined to ground, in the rows of `rows` and the columns of `columns` struck out.
     /// One row and one column at most.
@@ -78,7 +78,7 @@ pub struct Weight {
 pub const DEGREE: usize = 3;
 
 /// Which powers of s a column's weights can have: lowest and highest, left out and taken.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
 pub struct Powers {
     /// When left out.
     pub out: (usize, usize),
@@ -177,10 +177,10 @@ fn join(partition: &mut [u8; MAX_NODES], a: u8, b: u8) -> Option<bool> {
 }
 
 impl Plan {
-    /// Compiles the expansion of `shape` for a network of `nodes` nodes (ground included). `powers` belongs to `columns`.
+    /// Compiles the expansion of `shape` for a network of `nodes` nodes (ground included).
     #[must_use]
-    pub fn compile(nodes: usize, columns: &[Column], powers: &[Powers], shape: Shape) -> Self {
-        assert!(nodes <= MAX_NODES && columns.len() == powers.len());
+    pub fn compile(nodes: usize, columns: &[(Column, Powers)], shape: Shape) -> Self {
+        assert!(nodes <= MAX_NODES);
         let mut start = State { rows: [0; MAX_NODES], columns: [0; MAX_NODES], amplified: 0 };
         for node in 0..nodes {
             let label = u8::try_from(node).expect("few nodes");
@@ -219,7 +219,7 @@ impl Plan {
         let mut layers: Vec<Vec<State>> = vec![vec![start]];
         let mut moves: Vec<Vec<(usize, usize, Which, bool)>> = Vec::new();
         let mut amplifier = 0;
-        for (index, column) in columns.iter().enumerate() {
+        for (index, (column, _)) in columns.iter().enumerate() {
             let mut next: BTreeMap<State, usize> = BTreeMap::new();
             let mut made = Vec::new();
             let mut here = Vec::new();
@@ -288,7 +288,7 @@ impl Plan {
             let mut lengths = vec![0usize; layers[index + 1].len()];
             for &(from, to, which, _) in &moves[index] {
                 if alive[index][from] && alive[index + 1][to] {
-                    lengths[to] = lengths[to].max(place[index][from].1 + which.powers(powers[index]).1);
+                    lengths[to] = lengths[to].max(place[index][from].1 + which.powers(columns[index].1).1);
                 }
             }
             for (to, &length) in lengths.iter().enumerate() {
@@ -300,7 +300,7 @@ impl Plan {
             for &(from, to, which, sign) in &moves[index] {
                 if alive[index][from] && alive[index + 1][to] {
                     let narrow = |n: usize| u32::try_from(n).expect("small plan");
-                    let (low, high) = which.powers(powers[index]);
+                    let (low, high) = which.powers(columns[index].1);
                     let small = |n: usize| u8::try_from(n).expect("small degree");
                     steps.push(Step {
                         powers: (small(low), small(high)),
@@ -387,9 +387,9 @@ impl Plan {
 const ONE: [f64; DEGREE + 1] = [1.0, 0.0, 0.0, 0.0];
 
 /// How many groups of nodes, ground's apart, no remaining column can join to anything.
-fn stranded(partition: &[u8; MAX_NODES], nodes: usize, rest: &[Column], rows: bool) -> u32 {
+fn stranded(partition: &[u8; MAX_NODES], nodes: usize, rest: &[(Column, Powers)], rows: bool) -> u32 {
     let mut reachable = 1u16;
-    for column in rest {
+    for (column, _) in rest {
         let mut mark = |a: u8, b: u8| {
             let (a, b) = (partition[usize::from(a)], partition[usize::from(b)]);
             if a != b {
