@@ -60,9 +60,11 @@ pub fn analyse(stage: &Stage) -> Result<Report, Error> {
 }
 
 /// How much of the spread to work out.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
 pub enum Detail {
-    /// Ranges of the figures that limits judge; the others at nominal values alone. A tenth of the work.
+    /// What limits judge, with its ranges; the other figures at nominal values; no curve, no budget.
+    Limits,
+    /// The same with curves and budgets.
     Judged,
     /// Ranges of every figure.
     Full,
@@ -112,14 +114,16 @@ pub fn analyse_with(stage: &Stage, detail: Detail, plans: &Plans) -> Result<Repo
         loop_gain: Vec::new(),
         density: Vec::new(),
         noise_shares: Vec::new(),
-        dc_budget: dc_budget(&mut spread),
+        dc_budget: if detail > Detail::Limits { dc_budget(&mut spread) } else { Vec::new() },
         envelope: Vec::new(),
         poles: Vec::new(),
         zeros: Vec::new(),
         working: working(&spread.nominal),
         cautions: cautions(&mut spread),
     };
-    curves(&spread.nominal, &mut report);
+    if detail > Detail::Limits {
+        curves(&spread.nominal, &mut report);
+    }
     Ok(report)
 }
 
