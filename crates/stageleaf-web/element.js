@@ -2,7 +2,7 @@
 // Its surroundings (see the site builder) define stageleaf_wasm, STAGELEAF_WASM (hex) and STAGELEAF_STYLE.
 if (!globalThis.customElements || customElements.get("stageleaf-sheet")) return;
 
-const EVENTS = ["keydown", "change", "click", "pointermove", "pointerleave", "focusin"];
+const EVENTS = ["keydown", "change", "click", "pointermove", "pointerleave", "focusin", "toggle"];
 const QUIET = "Values cannot be tried here: the page shows the sheet as the note has it.";
 
 /** Compiles the wasm once. @returns {boolean} whether it is there */
@@ -41,7 +41,8 @@ class StageleafSheet extends HTMLElement {
     this.known = true;
     dress();
     const ready = () => {
-      for (const name of EVENTS) this.addEventListener(name, this);
+      // A panel's own event does not bubble; capturing sees it.
+      for (const name of EVENTS) this.addEventListener(name, this, name === "toggle");
       addEventListener("hashchange", () => this.guard(() => this.live.follow(location.hash.slice(1))));
       const named = location.hash.startsWith("#stageleaf-") && location.hash.includes("/" + encodeURIComponent(this.dataset.sheet) + "/");
       if (named) this.scrollIntoView();
@@ -58,6 +59,7 @@ class StageleafSheet extends HTMLElement {
     if (!start()) return this.fail();
     try {
       this.live = new stageleaf_wasm.Live(this, location.hash.slice(1));
+      this.guard(() => {});
     } catch (reason) {
       this.fail(reason);
     }
@@ -72,11 +74,19 @@ class StageleafSheet extends HTMLElement {
     });
   }
 
+  /** Leaves what a frame left over for when the page has time. */
+  rest() {
+    if (this.resting) return;
+    this.resting = true;
+    const go = () => { this.resting = false; this.guard(() => this.live.complete()); };
+    if (globalThis.requestIdleCallback) requestIdleCallback(go, { timeout: 200 }); else setTimeout(go, 30);
+  }
+
   /** Runs `work` unless it is running already: changes of the page cause events of their own. @param {() => void} work */
   guard(work) {
     if (!this.live || this.busy) return;
     this.busy = true;
-    try { work(); } catch (reason) { this.fail(reason); } finally { this.busy = false; }
+    try { work(); if (this.live.behind()) this.rest(); } catch (reason) { this.fail(reason); } finally { this.busy = false; }
   }
 
   /** The sheet as the page brought it, and one quiet line. @param {unknown} reason kept for whoever looks into it */

@@ -37,4 +37,4 @@ mod sheet;
 pub mod strip;
 
 pub use panel::problems_markup;
-pub use sheet::{STYLE, Section, Sheet, page, render, sections};
+pub use sheet::{STYLE, Section, Sheet, page, render, sections, sections_where};

@@ -64,7 +64,17 @@ const PARTS: &[Part] = &[
 /// The content of every section.
 #[must_use]
 pub fn sections(sheet: &Sheet) -> Vec<Section> {
-    PARTS.iter().map(|(id, _, content)| Section { id, markup: one_line(content(sheet).into_string()) }).collect()
+    sections_where(sheet, |_, _| true)
+}
+
+/// The content of the sections that `wanted` admits by their id and whether they are panels.
+#[must_use]
+pub fn sections_where(sheet: &Sheet, wanted: impl Fn(&str, bool) -> bool) -> Vec<Section> {
+    PARTS
+        .iter()
+        .filter(|(id, frame, _)| wanted(id, *frame == Frame::Panel))
+        .map(|(id, _, content)| Section { id, markup: one_line(content(sheet).into_string()) })
+        .collect()
 }
 
 /// The whole sheet as one line of HTML.

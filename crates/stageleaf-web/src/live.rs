@@ -2,9 +2,9 @@
 
 use std::collections::BTreeMap;
 
-use stageleaf_math::{kind::Kind, limit::Verdict};
+use stageleaf_math::{Detail, kind::Kind, limit::Verdict};
 use stageleaf_note::{Problem, template::template_for};
-use stageleaf_sheet::{Section, Sheet, problems_markup, render, sections};
+use stageleaf_sheet::{Section, Sheet, problems_markup, render, sections, sections_where};
 use wasm_bindgen::{JsCast, JsError, JsValue, prelude::wasm_bindgen};
 use web_sys::{Document, Element, Event, HtmlElement, HtmlInputElement, HtmlSelectElement, KeyboardEvent, MouseEvent};
 
@@ -19,6 +19,8 @@ use crate::{
 };
 
 const PROBLEMS: &str = "problems";
+/// The panel that shows every figure's range.
+const FIGURES: &str = "figures";
 const BODY: &str = ":scope > .stageleaf-body";
 /// What an empty sheet starts with.
 const FIRST_KIND: Kind = Kind::NonInverting;
@@ -130,6 +132,8 @@ impl Live {
                 let Self { readout, model, host, .. } = self;
                 with_sheet(model, &name_of(host), |sheet| readout.focus(sheet, &target));
             }
+            // A panel that opens before its time gets its content at once.
+            "toggle" => self.complete(),
             "click" => {
                 if let Some(action) = Action::of(&target) {
                     self.act(action);
@@ -140,7 +144,7 @@ impl Live {
         self.work.is_some()
     }
 
-    /// Does what events asked for since the last frame.
+    /// Does what events asked for since the last frame: the drawing, the limits and the panels that are open.
     pub fn draw(&mut self) {
         let before = self.model.verdicts();
         match self.work.take() {
@@ -149,6 +153,19 @@ impl Live {
             Some(Work::Edit { path, value }) => self.edit(path, value),
         }
         self.show(&before);
+    }
+
+    /// Whether something is left for [`Live::complete`].
+    pub fn behind(&self) -> bool {
+        self.model.is_behind()
+    }
+
+    /// Does what the last frame left: closed panels, and the ranges of figures that no limit judges.
+    pub fn complete(&mut self) {
+        if self.model.is_behind() {
+            self.model.complete(Detail::Full);
+            self.patch(|_, _| true);
+        }
     }
 
     /// Follows the page's address when it changes.
@@ -311,13 +328,19 @@ impl Live {
         self.controls.offer("Address of the sheet with these values", &format!("{base}{fragment}"));
     }
 
-    /// Renders, patches what differs, tells what changed.
+    /// Renders what can be seen, patches what differs, tells what changed.
     fn show(&mut self, before: &[(String, Verdict)]) {
-        for section in self.fresh() {
-            if let (Some(new), Some(old)) = (patch::parse(&self.document, &section.markup), self.section(section.id)) {
-                patch::children(&old, &new);
-                show_unless(&old, section.markup.is_empty());
+        if self.model.is_behind() {
+            let open = self.open_panels();
+            if !open.is_empty() {
+                self.model.complete(Detail::Judged);
             }
+            if open.iter().any(|id| id == FIGURES) {
+                self.model.complete(Detail::Full);
+            }
+            self.patch(|id, panel| !panel || open.iter().any(|o| o == id));
+        } else {
+            self.patch(|_, _| true);
         }
         if let Some(words) = announcement(before, &self.model.verdicts()) {
             self.controls.say(&words);
@@ -329,12 +352,27 @@ impl Live {
         self.settle();
     }
 
-    /// Renders anew and returns the sections whose markup differs from what is shown.
-    fn fresh(&mut self) -> Vec<Section> {
-        let fresh = rendered(&self.model, &name_of(&self.host));
-        let shown = std::mem::replace(&mut self.shown, fresh.clone());
-        // What is wrong with typed text is shown there by `settle`; the renderer leaves it empty.
-        fresh.into_iter().filter(|section| section.id != PROBLEMS && !shown.contains(section)).collect()
+    /// Renders the sections that `wanted` admits and patches those whose markup differs from what is shown.
+    fn patch(&mut self, wanted: impl Fn(&str, bool) -> bool) {
+        let fresh = with_sheet(&self.model, &name_of(&self.host), |sheet| sections_where(sheet, wanted)).unwrap_or_default();
+        for section in fresh {
+            let Some(shown) = self.shown.iter().position(|shown| shown.id == section.id) else { continue };
+            // What is wrong with typed text is shown there by `settle`; the renderer leaves it empty.
+            if section.id == PROBLEMS || self.shown[shown] == section {
+                continue;
+            }
+            if let (Some(new), Some(old)) = (patch::parse(&self.document, &section.markup), self.section(section.id)) {
+                patch::children(&old, &new);
+                show_unless(&old, section.markup.is_empty());
+            }
+            self.shown[shown] = section;
+        }
+    }
+
+    /// The panels that the reader has opened.
+    fn open_panels(&self) -> Vec<String> {
+        let Ok(open) = self.body.query_selector_all(":scope > details[open]") else { return Vec::new() };
+        (0..open.length()).filter_map(|index| open.item(index)?.dyn_into::<Element>().ok()?.get_attribute("data-section")).collect()
     }
 
     fn section(&self, id: &str) -> Option<Element> {

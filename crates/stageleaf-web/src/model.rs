@@ -1,6 +1,6 @@
 //! The sheet's state without a page: the block's text, its report, and the way back.
 
-use stageleaf_math::{limit::Verdict, report::Report};
+use stageleaf_math::{Detail, limit::Verdict, model::Plans, report::Report};
 use stageleaf_note::{Block, Place, Problem, Settings, Shelf, problem::quoted, read_block};
 
 use crate::{data::Data, link::Found};
@@ -19,6 +19,9 @@ pub struct Model {
     original: Block,
     block: Block,
     report: Report,
+    /// How much of the report is worked out.
+    detail: Detail,
+    plans: Plans,
     undo: Vec<String>,
     redo: Vec<String>,
 }
@@ -32,8 +35,26 @@ impl Model {
         let Data { block, file, line, shelf, settings } = data;
         let place = Place::new(&file, line);
         let text = block.unwrap_or_else(|| start.to_owned());
-        let (block, report) = analyse(&text, &place, &shelf, &settings)?;
-        Ok(Self { shelf, settings, place, original: block.clone(), block, report, undo: Vec::new(), redo: Vec::new() })
+        let plans = Plans::default();
+        let block = read_block(&text, &place, &shelf, &settings)?;
+        let report = analyse(&block, &place, Detail::Full, &plans)?;
+        let detail = Detail::Full;
+        Ok(Self { shelf, settings, place, original: block.clone(), block, report, detail, plans, undo: Vec::new(), redo: Vec::new() })
+    }
+
+    /// Whether the report lacks what was left for later (see [`Model::complete`]).
+    pub fn is_behind(&self) -> bool {
+        self.detail < Detail::Full
+    }
+
+    /// Works out at least `detail` of the present block.
+    pub fn complete(&mut self, detail: Detail) {
+        if self.detail < detail
+            && let Ok(report) = analyse(&self.block, &self.place, detail, &self.plans)
+        {
+            self.report = report;
+            self.detail = detail;
+        }
     }
 
     /// The block now.
@@ -158,9 +179,10 @@ impl Model {
     }
 
     fn take(&mut self, text: &str) -> Result<(), Vec<Problem>> {
-        let (block, report) = analyse(text, &self.place, &self.shelf, &self.settings)?;
+        let block = read_block(text, &self.place, &self.shelf, &self.settings)?;
+        self.report = analyse(&block, &self.place, Detail::Limits, &self.plans)?;
+        self.detail = Detail::Limits;
         self.block = block;
-        self.report = report;
         Ok(())
     }
 }
@@ -184,9 +206,7 @@ fn heading(query: stageleaf_math::figure::Query) -> String {
     }
 }
 
-fn analyse(text: &str, place: &Place, shelf: &Shelf, settings: &Settings) -> Result<(Block, Report), Vec<Problem>> {
-    let block = read_block(text, place, shelf, settings)?;
-    let report = stageleaf_math::analyse(&block.stage)
-        .map_err(|error| vec![Problem::on_line(&place.file, place.first_line, 1, 1, "", error.to_string())])?;
-    Ok((block, report))
+fn analyse(block: &Block, place: &Place, detail: Detail, plans: &Plans) -> Result<Report, Vec<Problem>> {
+    stageleaf_math::analyse_with(&block.stage, detail, plans)
+        .map_err(|error| vec![Problem::on_line(&place.file, place.first_line, 1, 1, "", error.to_string())])
 }
