@@ -1,10 +1,24 @@
 //! The circuit as a drawing whose values are fields: one file per stage kind over the symbols of [`kit`].
 
+pub mod ac_inverting;
+pub mod ac_non_inverting;
+pub mod charge;
+pub mod difference;
+pub mod differentiator;
 pub mod follower;
+pub mod instrumentation;
+pub mod integrator;
 pub mod inverting;
 pub mod kit;
+pub mod multiple_feedback_band_pass;
+pub mod multiple_feedback_low_pass;
 pub mod non_inverting;
+pub mod sallen_key_high_pass;
+pub mod sallen_key_low_pass;
+pub mod scale_and_shift;
+pub mod summing;
 mod surroundings;
+pub mod transimpedance;
 
 use maud::{Markup, html};
 use stageleaf_math::{
@@ -109,6 +123,20 @@ pub fn canvas(block: &Block) -> Canvas {
         Kind::Follower => follower::draw(&mut canvas, &labels),
         Kind::NonInverting => non_inverting::draw(&mut canvas, &labels),
         Kind::Inverting => inverting::draw(&mut canvas, &labels),
+        Kind::Summing => summing::draw(&mut canvas, &labels),
+        Kind::Difference => difference::draw(&mut canvas, &labels),
+        Kind::Instrumentation => instrumentation::draw(&mut canvas, &labels),
+        Kind::Transimpedance => transimpedance::draw(&mut canvas, &labels),
+        Kind::Charge => charge::draw(&mut canvas, &labels),
+        Kind::Integrator => integrator::draw(&mut canvas, &labels),
+        Kind::Differentiator => differentiator::draw(&mut canvas, &labels),
+        Kind::ScaleAndShift => scale_and_shift::draw(&mut canvas, &labels),
+        Kind::AcNonInverting => ac_non_inverting::draw(&mut canvas, &labels),
+        Kind::AcInverting => ac_inverting::draw(&mut canvas, &labels),
+        Kind::SallenKeyLowPass => sallen_key_low_pass::draw(&mut canvas, &labels),
+        Kind::SallenKeyHighPass => sallen_key_high_pass::draw(&mut canvas, &labels),
+        Kind::MultipleFeedbackLowPass => multiple_feedback_low_pass::draw(&mut canvas, &labels),
+        Kind::MultipleFeedbackBandPass => multiple_feedback_band_pass::draw(&mut canvas, &labels),
     }
     canvas
 }

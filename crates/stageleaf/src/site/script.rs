@@ -43,7 +43,11 @@ fn compile(root: &Path) -> Result<PathBuf, Failure> {
     // What the surrounding cargo sets for its own build must not steer this one.
     for (name, _) in std::env::vars_os() {
         let name = name.to_string_lossy().into_owned();
-        if name.starts_with("CARGO_PKG_") || name.starts_with("CARGO_FEATURE_") || name == "CARGO_MANIFEST_DIR" || name == "RUSTUP_TOOLCHAIN" {
+        if name.starts_with("CARGO_PKG_")
+            || name.starts_with("CARGO_FEATURE_")
+            || name == "CARGO_MANIFEST_DIR"
+            || name == "RUSTUP_TOOLCHAIN"
+        {
             command.env_remove(name);
         }
     }

@@ -9,7 +9,9 @@ use crate::embed::escape;
 
 /// The chapter's Markdown; tables are HTML, so that no text of a part file is read as Markdown.
 pub fn chapter(shelf: &Shelf, root: &Path) -> String {
-    let mut text = String::from("# Part shelf\n\nThe amplifiers that the notes may use, as their part files state them. A figure that is not stated is not guessed: what needs it stays undetermined.\n");
+    let mut text = String::from(
+        "# Part shelf\n\nThe amplifiers that the notes may use, as their part files state them. A figure that is not stated is not guessed: what needs it stays undetermined.\n",
+    );
     for entry in &shelf.parts {
         part(&mut text, entry, root);
     }
@@ -23,7 +25,12 @@ fn part(text: &mut String, entry: &ShelfPart, root: &Path) {
     let _ = write!(text, "\n<h2 id=\"part-{id}\">{}</h2>\n\n", escape(&part.name));
     let words: Vec<String> = [part.description.as_deref(), part.source.as_deref()].into_iter().flatten().map(escape).collect();
     let file = Path::new(&entry.file).strip_prefix(root).map_or_else(|_| entry.file.clone(), |p| p.display().to_string());
-    let _ = write!(text, "<p>{} Part file: <code>{}</code>.</p>\n\n", words.join(". ").replace("..", ".") + if words.is_empty() { "" } else { "." }, escape(&file));
+    let _ = write!(
+        text,
+        "<p>{} Part file: <code>{}</code>.</p>\n\n",
+        words.join(". ").replace("..", ".") + if words.is_empty() { "" } else { "." },
+        escape(&file)
+    );
     text.push_str("<table class=\"shelf\"><thead><tr><th scope=\"col\">Figure</th><th scope=\"col\">Least</th><th scope=\"col\">Typical</th><th scope=\"col\">Greatest</th><th scope=\"col\">Source</th></tr></thead><tbody>");
     for figure in PartFigure::ALL {
         let rating = part.rating(*figure);
