@@ -2,7 +2,7 @@
 
 use super::{
     Labels,
-    kit::{Canvas, Symbol},
+    kit::{Canvas, Label, Symbol},
 };
 use stageleaf_math::stage::{Isolation, Source};
 
@@ -19,8 +19,43 @@ const LOAD: i32 = 120;
 /// From the inverting input's height to the other's.
 pub const PITCH: i32 = 44;
 
-/// The amplifier with feedback, snubber, isolation and load. `node` is the inverting node; its wire to the pin is drawn here.
-pub fn amplifier_and_output(c: &mut Canvas, l: &Labels, (x, y): (i32, i32)) {
+/// Where a feedback path ends.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum End {
+    /// At the amplifier's pin.
+    Pin,
+    /// Where the output is sensed: at the load, if the isolation resistor stands inside the loop.
+    Sensed,
+}
+
+/// A feedback path over the amplifier.
+#[derive(Clone, Debug)]
+pub struct Path {
+    /// The node from which it rises.
+    pub from: (i32, i32),
+    /// Where it ends.
+    pub to: End,
+    /// Its part; none for a wire.
+    pub part: Option<(Symbol, Label)>,
+}
+
+/// The amplifier with `Rf ∥ Cf`, snubber, isolation and load. `node` is the inverting node; its wire to the pin is drawn here.
+pub fn amplifier_and_output(c: &mut Canvas, l: &Labels, node: (i32, i32)) {
+    let mut paths = Vec::new();
+    // The capacitor inside, since it senses the pin.
+    if let Some(label) = l.component("Cf") {
+        paths.push(Path { from: node, to: End::Pin, part: Some((Symbol::Capacitor, label)) });
+    }
+    match l.component("Rf") {
+        Some(label) => paths.push(Path { from: node, to: End::Sensed, part: Some((Symbol::Resistor, label)) }),
+        None if paths.is_empty() => paths.push(Path { from: node, to: End::Sensed, part: None }),
+        None => {}
+    }
+    amplifier_with(c, l, node, paths);
+}
+
+/// The amplifier with these feedback paths, the inmost first; with snubber, isolation and load.
+pub fn amplifier_with(c: &mut Canvas, l: &Labels, (x, y): (i32, i32), paths: Vec<Path>) {
     let (positive, negative) = l.rails();
     let (tip, out) = c.amplifier(x + PINS, y, &positive, negative.as_deref());
     c.wire(&[(x, y), (x + PINS, y)]);
@@ -30,7 +65,7 @@ pub fn amplifier_and_output(c: &mut Canvas, l: &Labels, (x, y): (i32, i32)) {
     let inside = isolated && l.stage().isolation == Isolation::InsideLoop;
     let sensed = if inside { load } else { pin };
 
-    feedback(c, l, (x, y), (pin, sensed, out));
+    feedback(c, paths, x + OUTPUT / 2, y - 66, |end| (if end == End::Sensed { sensed } else { pin }, out));
 
     c.wire(&[(tip, out), (pin, out)]);
     c.dot(pin, out);
@@ -72,30 +107,30 @@ pub fn amplifier_and_output(c: &mut Canvas, l: &Labels, (x, y): (i32, i32)) {
     c.terminal(terminal, out);
 }
 
-/// `Rf` and `Cf` over the amplifier: the capacitor inside, since it senses the pin.
-fn feedback(c: &mut Canvas, l: &Labels, (x, y): (i32, i32), (pin, sensed, out): (i32, i32, i32)) {
-    let (rf, cf) = (l.component("Rf"), l.component("Cf"));
-    let middle = x + OUTPUT / 2;
-    let mut level = y - 66;
-    let both = rf.is_some() && cf.is_some();
-    if let Some(label) = cf {
-        c.across(Symbol::Capacitor, x, pin, middle, level, label);
-        c.wire(&[(pin, level), (pin, out)]);
-        c.dot(x, level);
-        if sensed == pin {
-            c.dot(pin, level);
+/// Paths over the amplifier, one above the other, their parts around `middle`; `end` tells column and height of an end.
+fn feedback(c: &mut Canvas, paths: Vec<Path>, middle: i32, mut level: i32, end: impl Fn(End) -> (i32, i32)) {
+    // Columns with the height up to which they are drawn.
+    let mut columns: Vec<(i32, i32)> = Vec::new();
+    for path in paths {
+        let to = end(path.to);
+        for (column, height) in [path.from, to] {
+            match columns.iter_mut().find(|k| k.0 == column) {
+                Some(reached) => {
+                    c.dot(column, reached.1);
+                    c.wire(&[(column, reached.1), (column, level)]);
+                    reached.1 = level;
+                }
+                None => {
+                    c.wire(&[(column, height), (column, level)]);
+                    columns.push((column, level));
+                }
+            }
+        }
+        match path.part {
+            Some((symbol, label)) => c.across(symbol, path.from.0, to.0, middle, level, label),
+            None => c.wire(&[(path.from.0, level), (to.0, level)]),
         }
         level -= 64;
-    }
-    match rf {
-        Some(label) => c.across(Symbol::Resistor, x, sensed, middle, level, label),
-        None => c.wire(&[(x, level), (sensed, level)]),
-    }
-    c.wire(&[(x, y), (x, level)]);
-    if !(both && sensed == pin) {
-        c.wire(&[(sensed, level), (sensed, out)]);
-    } else {
-        c.wire(&[(pin, level), (pin, level + 64)]);
     }
 }
 
