@@ -190,6 +190,31 @@ impl Canvas {
         self.text(x + 17, middle + 5, "start", "Vs", 20);
     }
 
+    /// A current source standing at `x`, its circle's middle at `middle`, grounded below; its current flows upwards.
+    pub fn current_source(&mut self, x: i32, from: i32, middle: i32, name: &str) {
+        self.wire(&[(x, from), (x, middle - 13)]);
+        let _ = write!(self.bodies, "M{} {middle}a13 13 0 1 0 26 0a13 13 0 1 0-26 0zM{x} {}v-15M{} {}l4-6 4 6", x - 13, middle + 8, x - 4, middle - 1);
+        self.ink.push(Area { x0: x - 13, y0: middle - 13, x1: x + 13, y1: middle + 13 });
+        self.wire(&[(x, middle + 13), (x, middle + 22)]);
+        self.ground(x, middle + 22);
+        self.text(x - 16, middle + 5, "end", name, 20);
+    }
+
+    /// A photodiode standing at `x` with its anode up, so that its photocurrent flows upwards; grounded below.
+    pub fn photodiode(&mut self, x: i32, from: i32, middle: i32) {
+        self.wire(&[(x, from), (x, middle - 9)]);
+        let _ = write!(self.bodies, "M{} {}h20l-10 17zM{} {}h20", x - 10, middle - 9, x - 10, middle + 8);
+        // Light from the left.
+        for (dx, dy) in [(0, 0), (-6, 10)] {
+            let (hx, hy) = (x - 14 + dx, middle - 7 + dy);
+            let _ = write!(self.bodies, "M{} {}L{hx} {hy}M{} {}L{hx} {hy}l-2-6", hx - 14, hy - 14, hx - 6, hy - 2);
+        }
+        self.ink.push(Area { x0: x - 34, y0: middle - 21, x1: x + 10, y1: middle + 9 });
+        self.wire(&[(x, middle + 8), (x, middle + 20)]);
+        self.ground(x, middle + 20);
+        self.text(x - 14, middle + 25, "end", "PD", 20);
+    }
+
     /// An amplifier whose pins are at `x`: the inverting one at `y`, the other at `y + 44`; returns its output.
     pub fn amplifier(&mut self, x: i32, y: i32, positive: &str, negative: Option<&str>) -> (i32, i32) {
         let (middle, tip) = (y + 22, x + 72);

@@ -74,10 +74,20 @@ impl<'a> Labels<'a> {
                 }
                 Some(self.label("Rs", "source.resistance".into(), "source resistance", &resistance, Dimension::Resistance))
             }
-            Source::Capacitive { capacitance } | Source::Photodiode { capacitance, .. } => {
+            Source::Capacitive { capacitance } => {
                 Some(self.label("Cs", "source.capacitance".into(), "source capacitance", &capacitance, Dimension::Capacitance))
             }
+            Source::Photodiode { capacitance, .. } => {
+                Some(self.label("Cd", "source.capacitance".into(), "junction capacitance", &capacitance, Dimension::Capacitance))
+            }
         }
+    }
+
+    /// The label of a photodiode's shunt resistance, where it is stated.
+    #[must_use]
+    pub fn shunt_resistance(&self) -> Option<Label> {
+        let Source::Photodiode { shunt_resistance: Some(value), .. } = self.stage().source(0)? else { return None };
+        Some(self.label("Rsh", "source.shunt_resistance".into(), "shunt resistance", &value, Dimension::Resistance))
     }
 
     /// The label of the load resistance, if there is one.

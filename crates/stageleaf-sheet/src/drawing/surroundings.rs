@@ -7,11 +7,15 @@ use super::{
 use stageleaf_math::stage::{Isolation, Source};
 
 /// Where the source's column stands.
-const SOURCE_X: i32 = 20;
+pub const SOURCE_X: i32 = 20;
+/// Middle of the first of two parts in a row, whose label begins left of the source.
+pub const FIRST: i32 = 47;
+/// The node between two parts in a row.
+pub const INNER: i32 = 104;
 /// From the inverting node to the wire that carries the other input down.
 pub const DROP: i32 = 12;
 /// From the inverting node to the amplifier's pins.
-const PINS: i32 = 34;
+pub const PINS: i32 = 34;
 /// From the inverting node to the output node.
 const OUTPUT: i32 = 132;
 /// From the output node to the load.
@@ -152,6 +156,11 @@ pub fn source_and_input(c: &mut Canvas, l: &Labels, y: i32, shunt: i32, to: i32)
     if from < to {
         c.wire(&[(from, y), (to, y)]);
     }
+    voltage_source(c, l, y, middle);
+}
+
+/// The source with its impedance, standing below the line at height `y`; whichever comes first has its middle at `middle`.
+pub fn voltage_source(c: &mut Canvas, l: &Labels, y: i32, middle: i32) {
     match (l.stage().source(0), l.source_impedance()) {
         (Some(source), Some(label)) => {
             let symbol = match source {
@@ -162,6 +171,74 @@ pub fn source_and_input(c: &mut Canvas, l: &Labels, y: i32, shunt: i32, to: i32)
             c.source(SOURCE_X, middle + 24, middle + 42);
         }
         _ => c.source(SOURCE_X, y, middle),
+    }
+}
+
+/// What a source of current or charge, and what stands across it, take of the place at the left.
+#[derive(Clone, Copy, Debug)]
+pub struct Room {
+    /// The column of the last part.
+    pub column: i32,
+    /// Where the inverting node may stand.
+    pub node: i32,
+    /// Below this height, the place left of the node is free.
+    pub below: i32,
+}
+
+/// A source of current or charge with what stands across it, below the line at height `y`.
+pub fn current_source(c: &mut Canvas, l: &Labels, y: i32, name: &str) -> Room {
+    let source = l.stage().source(0);
+    match source {
+        Some(Source::Photodiode { .. }) => c.photodiode(SOURCE_X, y, y + 40),
+        _ => c.current_source(SOURCE_X, y, y + 36, name),
+    }
+    let first = SOURCE_X + 36;
+    let second = first + 28;
+    let mut room = Room { column: SOURCE_X, node: 146, below: y + 86 };
+    let Some(across) = l.source_impedance() else { return room };
+    let shunt = l.shunt_resistance();
+    c.dot(first, y);
+    c.wire(&[(SOURCE_X, y), (first, y)]);
+    if matches!(source, Some(Source::Resistive { .. })) {
+        c.upright_right(Symbol::Resistor, first, y, y + 64, y + 36, across);
+        c.ground(first, y + 64);
+    } else {
+        // Beside a shunt the capacitor is longer, so that its label passes below the shunt's ground.
+        let middle = y + if shunt.is_some() { 98 } else { 36 };
+        c.upright_right(Symbol::Capacitor, first, y, middle + 20, middle, across);
+        c.ground(first, middle + 20);
+    }
+    room.column = first;
+    room.node = 180;
+    if let Some(label) = shunt {
+        c.dot(second, y);
+        c.wire(&[(first, y), (second, y)]);
+        c.upright_right(Symbol::Resistor, second, y, y + 64, y + 36, label);
+        c.ground(second, y + 64);
+        room = Room { column: second, node: 200, below: y + 112 };
+    }
+    room
+}
+
+/// The + input of an inverting stage: at ground, directly or through `Rp ∥ Cp`, which hang lower than `below`.
+pub fn balanced_input(c: &mut Canvas, l: &Labels, (x, y): (i32, i32), below: i32) {
+    let (drop, line) = (x + DROP, y + PITCH);
+    c.wire(&[(x + PINS, line), (drop, line)]);
+    let Some(label) = l.component("Rp") else {
+        c.wire(&[(drop, line), (drop, line + 18)]);
+        c.ground(drop, line + 18);
+        return;
+    };
+    // Below the snubber's labels, too.
+    let top = below.max(if l.has("Rsn") { y + 172 } else { y + 86 });
+    c.wire(&[(drop, line), (drop, top)]);
+    c.upright_left(Symbol::Resistor, drop, top, top + 52, top + 28, label);
+    c.ground(drop, top + 52);
+    if let Some(label) = l.component("Cp") {
+        c.dot(drop, top);
+        c.wire(&[(drop, top), (drop + 26, top)]);
+        c.upright_left(Symbol::Capacitor, drop + 26, top, top + 104, top + 88, label);
+        c.ground(drop + 26, top + 104);
     }
 }
 

@@ -3,7 +3,7 @@
 use stageleaf_math::{
     dimension::Dimension,
     figure::{Argument, Figure, Query},
-    kind::Kind,
+    kind::{ComponentSpec, Kind},
     limit::{Basis, Bound, Limit, Thin, Verdict},
     part::{Part, PartFigure},
     report::{
@@ -14,7 +14,7 @@ use stageleaf_math::{
 };
 use stageleaf_note::{Block, Field, ShelfPart};
 
-/// Values as a note writes them, by component.
+/// Values as a note writes them, by component; those not listed have one value per dimension.
 const WRITTEN: [(&str, &str, f64); 13] = [
     ("Rf", "91k 1% 50ppm", 91e3),
     ("Rg", "4k7 1% 50ppm", 4.7e3),
@@ -41,9 +41,13 @@ fn field(path: &str, text: &str) -> Field {
 
 /// A stage of a kind with these components, load and source as told.
 pub fn block(kind: Kind, components: &[&str], isolation: Isolation, load: (bool, bool), source: bool) -> Block {
-    let of = |name: &str| WRITTEN.iter().find(|w| w.0 == name).copied();
+    let of = |spec: &ComponentSpec| match WRITTEN.iter().find(|w| w.0 == spec.name) {
+        Some(w) => (spec.name, w.1, w.2),
+        None if spec.dimension == Dimension::Capacitance => (spec.name, "2n2 1% 30ppm", 2.2e-9),
+        None => (spec.name, "18k2 1% 50ppm", 18.2e3),
+    };
     let components: Vec<(&'static str, &str, f64)> =
-        kind.components().iter().filter(|s| components.contains(&s.name)).filter_map(|s| of(s.name).map(|w| (s.name, w.1, w.2))).collect();
+        kind.components().iter().filter(|s| components.contains(&s.name)).map(of).collect();
     let mut fields: Vec<Field> = components.iter().map(|c| field(&format!("components.{}", c.0), c.1)).collect();
     for (path, text) in [
         ("part", "alder-10"),
