@@ -29,7 +29,7 @@ use stageleaf_math::{
 use stageleaf_note::{Block, format, print::trimmed, spoken};
 
 use crate::Sheet;
-use kit::{Canvas, Label};
+use kit::{Canvas, Label, Symbol};
 
 /// The labels of one stage's components, from its block.
 #[derive(Debug)]
@@ -88,6 +88,50 @@ impl<'a> Labels<'a> {
     pub fn shunt_resistance(&self) -> Option<Label> {
         let Source::Photodiode { shunt_resistance: Some(value), .. } = self.stage().source(0)? else { return None };
         Some(self.label("Rsh", "source.shunt_resistance".into(), "shunt resistance", &value, Dimension::Resistance))
+    }
+
+    /// Symbol and label of what stands in series with one of several signal inputs; the name alone where another input's label
+    /// shows the value of both.
+    #[must_use]
+    pub fn source_impedance_of(&self, input: usize) -> Option<(Symbol, Result<Label, String>)> {
+        let (symbol, key, letter, role, value, dimension) = match self.stage().source(input)? {
+            Source::Resistive { resistance } if resistance.nominal <= 0.0 => return None,
+            Source::Resistive { resistance } => {
+                (Symbol::Resistor, "resistance", 'R', "source resistance", resistance, Dimension::Resistance)
+            }
+            Source::Capacitive { capacitance } | Source::Photodiode { capacitance, .. } => {
+                (Symbol::Capacitor, "capacitance", 'C', "source capacitance", capacitance, Dimension::Capacitance)
+            }
+        };
+        let (shared, own) =
+            (format!("source.{key}"), format!("source.{}.{key}", (self.stage().kind.spec().inputs)(self.stage()).get(input)?.name));
+        if self.block.field(&own).is_none() && self.block.field(&shared).is_some() {
+            let name = format!("{letter}s");
+            let label =
+                if input == 0 { Ok(self.label(&name, shared, &format!("{role} of each input"), &value, dimension)) } else { Err(name) };
+            return Some((symbol, label));
+        }
+        Some((symbol, Ok(self.label(&format!("{letter}s{}", input + 1), own, role, &value, dimension))))
+    }
+
+    /// Whether any input has a source with an impedance.
+    #[must_use]
+    pub fn has_source_impedance(&self) -> bool {
+        (0..self.stage().sources.len()).any(|input| self.source_impedance_of(input).is_some())
+    }
+
+    /// The label of the reference's voltage, if the block states it.
+    #[must_use]
+    pub fn reference_voltage(&self) -> Option<Label> {
+        let value = self.stage().reference?.voltage;
+        Some(self.label("Vref", "reference.voltage".into(), "reference voltage", &value, Dimension::Voltage))
+    }
+
+    /// The label of the reference's resistance; one of zero is drawn as none.
+    #[must_use]
+    pub fn reference_resistance(&self) -> Option<Label> {
+        let value = self.stage().reference?.resistance.filter(|r| r.nominal > 0.0)?;
+        Some(self.label("Rref", "reference.resistance".into(), "output resistance of the reference", &value, Dimension::Resistance))
     }
 
     /// The label of the load resistance, if there is one.

@@ -2,7 +2,7 @@
 
 use super::{
     Labels,
-    kit::{Canvas, Label, Symbol},
+    kit::{Canvas, Label, Symbol, Upper},
 };
 use stageleaf_math::stage::{Isolation, Source};
 
@@ -61,7 +61,10 @@ pub fn amplifier_and_output(c: &mut Canvas, l: &Labels, node: (i32, i32)) {
 /// The amplifier with these feedback paths, the inmost first; with snubber, isolation and load.
 pub fn amplifier_with(c: &mut Canvas, l: &Labels, (x, y): (i32, i32), paths: Vec<Path>) {
     let (positive, negative) = l.rails();
-    let (tip, out) = c.amplifier(x + PINS, y, &positive, negative.as_deref());
+    // Of several amplifiers, the last one drives the output.
+    let count = l.stage().kind.spec().amplifiers;
+    let name = (count > 1).then(|| format!("A{count}"));
+    let (tip, out) = c.amplifier_named((x + PINS, y), Upper::Inverting, name.as_deref(), (&positive, negative.as_deref()));
     c.wire(&[(x, y), (x + PINS, y)]);
     let pin = x + OUTPUT;
     let load = pin + LOAD;
@@ -140,8 +143,13 @@ fn feedback(c: &mut Canvas, paths: Vec<Path>, middle: i32, mut level: i32, end: 
 
 /// Source, `Rser` and `Cshunt` on a line at height `y`; the line goes on to `to`. `shunt` is where `Cshunt` stands.
 pub fn source_and_input(c: &mut Canvas, l: &Labels, y: i32, shunt: i32, to: i32) {
+    source_through(c, l, "Rser", y, shunt, to);
+}
+
+/// [`source_and_input`] with another resistor in the place of `Rser`.
+pub fn source_through(c: &mut Canvas, l: &Labels, series: &str, y: i32, shunt: i32, to: i32) {
     let mut from = SOURCE_X;
-    if let Some(label) = l.component("Rser") {
+    if let Some(label) = l.component(series) {
         c.across(Symbol::Resistor, SOURCE_X, shunt, SOURCE_X + 60, y, label);
         from = shunt;
     }
@@ -248,4 +256,38 @@ pub fn noise_gain(c: &mut Canvas, l: &Labels, (x, y): (i32, i32), first: i32, to
     c.dot(x, y);
     c.upright_left(Symbol::Resistor, x, y, first + 24, first, r);
     c.upright_left(Symbol::Capacitor, x, first + 24, to, first + 42, k);
+}
+
+/// From an input's part to where its line ends.
+const INPUT: i32 = 116;
+
+/// A signal input with its name, the source's impedance, and the component `series`; the line ends at `to`.
+pub fn input(c: &mut Canvas, l: &Labels, input: usize, series: Option<&str>, (to, y): (i32, i32)) {
+    let mut end = to;
+    if let Some(label) = series.and_then(|name| l.component(name)) {
+        c.across(Symbol::Resistor, to - INPUT, to, to - 58, y, label);
+        end = to - INPUT;
+    }
+    let start = if l.has_source_impedance() { end - 112 } else { end };
+    match l.source_impedance_of(input) {
+        Some((symbol, Ok(label))) => c.across(symbol, start, end, end - 54, y, label),
+        Some((symbol, Err(name))) => c.across_twin(symbol, start, end, end - 54, y, &name),
+        None if start < end => c.wire(&[(start, y), (end, y)]),
+        None => {}
+    }
+    c.input(start, y, (l.stage().kind.spec().inputs)(l.stage()).get(input).map_or("in", |i| i.name));
+}
+
+/// A resistor with a capacitor beside it, both standing from `(x, y)` to ground.
+pub fn to_ground(c: &mut Canvas, (x, y): (i32, i32), resistor: Option<Label>, capacitor: Option<Label>) {
+    if let Some(label) = resistor {
+        c.upright_left(Symbol::Resistor, x, y, y + 52, y + 28, label);
+        c.ground(x, y + 52);
+    }
+    if let Some(label) = capacitor {
+        c.dot(x, y);
+        c.wire(&[(x, y), (x + 32, y)]);
+        c.upright_right(Symbol::Capacitor, x + 32, y, y + 52, y + 28, label);
+        c.ground(x + 32, y + 52);
+    }
 }
