@@ -20,10 +20,11 @@ pub fn draw(c: &mut Canvas, l: &Labels) {
 /// first leads to the − input, the other to the inner node.
 pub fn section(c: &mut Canvas, l: &Labels, (x, y): (i32, i32), paths: [(Symbol, &str, End); 2], second: (Symbol, &str)) {
     let nodes = [(x, y), (s::INNER, y)];
-    let paths = paths.into_iter().zip(nodes).map(|((symbol, name, to), from)| Path { from, to, part: l.component(name).map(|n| (symbol, n)) });
+    let paths =
+        paths.into_iter().zip(nodes).map(|((symbol, name, to), from)| Path { from, to, part: l.component(name).map(|n| (symbol, n)) });
     s::amplifier_with(c, l, (x, y), paths.collect());
     // The source's own impedance stands lower than what hangs from the inner node.
-    s::voltage_source(c, l, y, y + if l.source_impedance().is_some() { 84 } else { 32 });
+    s::voltage_source(c, l, y, y + if l.source_impedance().is_some() { 88 } else { 32 });
     if let Some(label) = l.component("R1") {
         c.across(Symbol::Resistor, s::SOURCE_X, s::INNER, s::FIRST, y, label);
     }

@@ -30,19 +30,20 @@ pub fn section(c: &mut Canvas, l: &Labels, series: [(Symbol, &str); 2], over: (S
         c.ground(end, y + 12);
     }
 
-    s::voltage_source(c, l, line, line + 32);
+    // The source's own impedance stands lower than the label of what hangs from the + input.
+    s::voltage_source(c, l, line, line + if l.source_impedance().is_some() { 80 } else { 32 });
     if let Some((symbol, label)) = part(series[0]) {
         c.across(symbol, s::SOURCE_X, s::INNER, s::FIRST, line, label);
     }
     c.dot(s::INNER, line);
     if let Some((symbol, label)) = part(series[1]) {
-        c.across(symbol, s::INNER, drop, drop - 58, line, label);
+        c.across(symbol, s::INNER, x, x - 48, line, label);
     }
-    c.dot(drop, line);
-    c.wire(&[(drop, line), (drop, y + s::PITCH), (x + s::PINS, y + s::PITCH)]);
+    c.dot(x, line);
+    c.wire(&[(x, line), (drop, line), (drop, y + s::PITCH), (x + s::PINS, y + s::PITCH)]);
     if let Some((symbol, label)) = part(shunt) {
-        let depth = if symbol == Symbol::Resistor { 60 } else { 48 };
-        c.upright_left(symbol, drop, line, line + depth, line + depth - 26, label);
-        c.ground(drop, line + depth);
+        let (middle, depth) = if symbol == Symbol::Resistor { (34, 60) } else { (31, 52) };
+        c.upright_left(symbol, x, line, line + depth, line + middle, label);
+        c.ground(x, line + depth);
     }
 }
