@@ -72,10 +72,13 @@ pub fn amplifier_with(c: &mut Canvas, l: &Labels, (x, y): (i32, i32), paths: Vec
     let inside = isolated && l.stage().isolation == Isolation::InsideLoop;
     let sensed = if inside { load } else { pin };
 
+    let branches = !inside || l.has("Rsn") || paths.iter().any(|p| p.to == End::Pin);
     feedback(c, paths, x + OUTPUT / 2, y - 66, |end| (if end == End::Sensed { sensed } else { pin }, out));
 
     c.wire(&[(tip, out), (pin, out)]);
-    c.dot(pin, out);
+    if branches {
+        c.dot(pin, out);
+    }
     if let Some(label) = l.component("Rsn") {
         c.upright_left(Symbol::Resistor, pin, out, out + 105, out + 84, label);
         if let Some(label) = l.component("Csn") {
@@ -289,5 +292,80 @@ pub fn to_ground(c: &mut Canvas, (x, y): (i32, i32), resistor: Option<Label>, ca
         c.wire(&[(x, y), (x + 32, y)]);
         c.upright_right(Symbol::Capacitor, x + 32, y, y + 52, y + 28, label);
         c.ground(x + 32, y + 52);
+    }
+}
+
+/// [`to_ground`] hanging below `(x, y)`; with a capacitor, far enough down to pass the amplifier at `pin` and its snubber.
+pub fn to_ground_below(c: &mut Canvas, l: &Labels, (x, y): (i32, i32), pin: i32, (resistor, capacitor): (&str, &str)) {
+    let capacitor = l.component(capacitor);
+    let beside = match (&capacitor, l.has("Rsn")) {
+        (None, _) => y,
+        (Some(_), false) => pin + 88,
+        (Some(_), true) => pin + 172,
+    };
+    let top = y.max(beside);
+    if y < top {
+        c.wire(&[(x, y), (x, top)]);
+    }
+    to_ground(c, (x, top), l.component(resistor), capacitor);
+}
+
+/// A resistor from the inverting node towards the left, and to ground.
+pub fn grounded_gain_resistor(c: &mut Canvas, label: Label, (x, y): (i32, i32)) {
+    let end = x - 108;
+    c.dot(x, y);
+    c.across(Symbol::Resistor, end, x, x - 56, y, label);
+    c.wire(&[(end, y), (end, y + 12)]);
+    c.ground(end, y + 12);
+}
+
+/// The source, and `Cin` on a line at height `y` that ends at `to`.
+pub fn coupled_source(c: &mut Canvas, l: &Labels, y: i32, to: i32) {
+    if let Some(label) = l.component("Cin") {
+        c.across(Symbol::Capacitor, SOURCE_X, to, SOURCE_X + 60, y, label);
+    }
+    source_and_input(c, l, y, 0, 0);
+}
+
+/// A divider of the positive supply with its middle at `(x, y)`: `Rb1` from the rail, `Rb2` and `Cb` to ground.
+pub fn supply_divider(c: &mut Canvas, l: &Labels, (x, y): (i32, i32)) {
+    let rail = x - 130;
+    if let Some(label) = l.component("Rb1") {
+        c.across(Symbol::Resistor, rail, x, x - 60, y, label);
+        c.wire(&[(rail, y), (rail, y - 14)]);
+        c.rail(rail, y - 14, &l.rails().0);
+        c.dot(x, y);
+    }
+    to_ground(c, (x, y), l.component("Rb2"), l.component("Cb"));
+}
+
+/// The height of the outmost path of `Rf ∥ Cf` over an inverting node at height `y`.
+pub fn feedback_top(l: &Labels, y: i32) -> i32 {
+    y - if l.has("Rf") && l.has("Cf") { 66 + 64 } else { 66 }
+}
+
+/// The + input of an inverting stage: the noise-gain branch, then `Rp ∥ Cp` or a wire to ground. `(x, y)` is the inverting node.
+pub fn balance(c: &mut Canvas, l: &Labels, (x, y): (i32, i32)) {
+    let drop = x + DROP;
+    let mut line = y + PITCH;
+    c.wire(&[(x + PINS, line), (drop, line)]);
+    if l.has("Rng") {
+        let to = y + 96;
+        noise_gain(c, l, (x, y), y + 30, to);
+        c.wire(&[(x, to), (drop, to), (drop, line)]);
+        line = to;
+    }
+    match l.component("Rp") {
+        Some(_) => to_ground_below(c, l, (drop, line), y, ("Rp", "Cp")),
+        // Below the noise-gain branch rather than below the other wire: the snubber's labels stand there.
+        None if l.has("Rng") => {
+            c.dot(x, line);
+            c.wire(&[(x, line), (x, line + 14)]);
+            c.ground(x, line + 14);
+        }
+        None => {
+            c.wire(&[(drop, line), (drop, line + 18)]);
+            c.ground(drop, line + 18);
+        }
     }
 }
