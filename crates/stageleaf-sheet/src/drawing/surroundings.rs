@@ -14,6 +14,8 @@ pub const FIRST: i32 = 47;
 pub const INNER: i32 = 104;
 /// From the inverting node to the wire that carries the other input down.
 pub const DROP: i32 = 12;
+/// The same where no branch hangs at the node, so that what hangs there keeps clear of the snubber.
+pub const NEAR: i32 = 8;
 /// From the inverting node to the amplifier's pins.
 pub const PINS: i32 = 34;
 /// From the inverting node to the output node.
@@ -329,7 +331,7 @@ pub fn coupled_source(c: &mut Canvas, l: &Labels, y: i32, to: i32) {
 
 /// A divider of the positive supply with its middle at `(x, y)`: `Rb1` from the rail, `Rb2` and `Cb` to ground.
 pub fn supply_divider(c: &mut Canvas, l: &Labels, (x, y): (i32, i32)) {
-    let rail = x - 130;
+    let rail = x - 146;
     if let Some(label) = l.component("Rb1") {
         c.across(Symbol::Resistor, rail, x, x - 60, y, label);
         c.wire(&[(rail, y), (rail, y - 14)]);
@@ -339,33 +341,25 @@ pub fn supply_divider(c: &mut Canvas, l: &Labels, (x, y): (i32, i32)) {
     to_ground(c, (x, y), l.component("Rb2"), l.component("Cb"));
 }
 
-/// The height of the outmost path of `Rf ∥ Cf` over an inverting node at height `y`.
-pub fn feedback_top(l: &Labels, y: i32) -> i32 {
-    y - if l.has("Rf") && l.has("Cf") { 66 + 64 } else { 66 }
-}
-
 /// The + input of an inverting stage: the noise-gain branch, then `Rp ∥ Cp` or a wire to ground. `(x, y)` is the inverting node.
 pub fn balance(c: &mut Canvas, l: &Labels, (x, y): (i32, i32)) {
-    let drop = x + DROP;
     let mut line = y + PITCH;
-    c.wire(&[(x + PINS, line), (drop, line)]);
+    let mut column = x + NEAR;
     if l.has("Rng") {
-        let to = y + 96;
-        noise_gain(c, l, (x, y), y + 30, to);
-        c.wire(&[(x, to), (drop, to), (drop, line)]);
-        line = to;
+        let drop = x + DROP;
+        c.wire(&[(x + PINS, line), (drop, line)]);
+        line = y + 96;
+        noise_gain(c, l, (x, y), y + 30, line);
+        c.wire(&[(x, line), (drop, line), (drop, y + PITCH)]);
+        c.dot(x, line);
+        column = x;
+    } else {
+        c.wire(&[(x + PINS, line), (column, line)]);
     }
-    match l.component("Rp") {
-        Some(_) => to_ground_below(c, l, (drop, line), y, ("Rp", "Cp")),
-        // Below the noise-gain branch rather than below the other wire: the snubber's labels stand there.
-        None if l.has("Rng") => {
-            c.dot(x, line);
-            c.wire(&[(x, line), (x, line + 14)]);
-            c.ground(x, line + 14);
-        }
-        None => {
-            c.wire(&[(drop, line), (drop, line + 18)]);
-            c.ground(drop, line + 18);
-        }
+    if l.has("Rp") {
+        to_ground_below(c, l, (column, line), y, ("Rp", "Cp"));
+    } else {
+        c.wire(&[(column, line), (column, line + 16)]);
+        c.ground(column, line + 16);
     }
 }
