@@ -356,6 +356,12 @@ impl Canvas {
         labels.chain(self.texts.iter().map(|(a, .., t)| (*a, t.as_str())))
     }
 
+    /// Whether a label holds the field of the value at `path`.
+    #[must_use]
+    pub fn has_field(&self, path: &str) -> bool {
+        self.labels.iter().any(|(.., l)| l.path == path)
+    }
+
     /// Labels whose value is longer than its field shows.
     pub fn cut(&self) -> impl Iterator<Item = &Label> {
         self.labels.iter().map(|(.., l)| l).filter(|l| l.value.chars().count() > 12)

@@ -1,23 +1,35 @@
 //! What surrounds the stage, as fields: the values that the drawing does not hold. And what was wrong with an entry.
 
 use maud::{Markup, html};
+use stageleaf_math::{
+    kind::{Drives, Feed},
+    stage::Stage,
+};
 use stageleaf_note::Problem;
 
-use crate::{Sheet, drawing::Labels};
+use crate::{Sheet, drawing};
 
-/// Fields with their labels, in the order in which they stand.
-const FIELDS: &[(&str, &str)] = &[
-    ("part", "Part"),
-    ("supply.positive", "Supply +"),
-    ("supply.negative", "Supply −"),
-    ("source.resistance", "Source resistance"),
-    ("signal.peak", "Signal, peak"),
-    ("signal.peak_to_peak", "Signal, p-p"),
-    ("signal.rms", "Signal, rms"),
-    ("signal.range", "Signal range"),
-    ("signal.dc", "Signal, DC"),
-    ("signal.crest_factor", "Crest factor"),
-    ("signal.frequency", "Signal frequency"),
+/// What a signal can state, in the order in which it stands.
+const SIGNAL: [(&str, &str); 7] = [
+    ("peak", "peak"),
+    ("peak_to_peak", "p-p"),
+    ("rms", "rms"),
+    ("range", "range"),
+    ("dc", "DC"),
+    ("crest_factor", "crest factor"),
+    ("frequency", "frequency"),
+];
+
+/// What a source can state.
+const SOURCE: [(&str, &str); 4] = [
+    ("resistance", "resistance"),
+    ("capacitance", "capacitance"),
+    ("shunt_resistance", "shunt resistance"),
+    ("dark_current", "dark current"),
+];
+
+/// Fields that every kind has, with their labels.
+const AROUND: [(&str, &str); 8] = [
     ("load.resistance", "Load resistance"),
     ("load.capacitance", "Load capacitance"),
     ("ambient.range", "Ambient"),
@@ -40,27 +52,56 @@ const OFFERED: &[&str] = &[
     "band.to",
 ];
 
+/// Paths of the values around the stage, with their labels, in the order in which they stand.
+fn fields(stage: &Stage) -> Vec<(String, String)> {
+    let spec = stage.kind.spec();
+    let inputs: Vec<&str> = (spec.inputs)(stage).iter().filter(|i| i.feed == Feed::Signal).map(|i| i.name).collect();
+    let several = inputs.len() > 1;
+    let mut all = vec![("part".to_owned(), "Part".to_owned())];
+    all.extend((2..=spec.amplifiers).map(|a| (format!("parts.A{a}"), format!("Part A{a}"))));
+    all.extend([("supply.positive", "Supply +"), ("supply.negative", "Supply −")].map(|(p, l)| (p.into(), l.into())));
+    all.extend(SOURCE.map(|(key, label)| (format!("source.{key}"), format!("Source {label}"))));
+    if several {
+        for input in &inputs {
+            all.extend(SOURCE[..2].iter().map(|(key, label)| (format!("source.{input}.{key}"), format!("Source {input}, {label}"))));
+        }
+    }
+    if several && spec.drives == Drives::Each {
+        for input in &inputs {
+            all.extend(SIGNAL.map(|(key, label)| (format!("signal.{input}.{key}"), format!("Signal {input}, {label}"))));
+        }
+    } else {
+        all.extend(SIGNAL.map(|(key, label)| (format!("signal.{key}"), format!("Signal, {label}"))));
+        all.push(("signal.common_mode".into(), "Common mode".into()));
+    }
+    all.extend([("reference.voltage", "Reference"), ("reference.resistance", "Reference's resistance")].map(|(p, l)| (p.into(), l.into())));
+    all.extend(AROUND.map(|(p, l)| (p.into(), l.into())));
+    all
+}
+
 /// The section.
 pub fn conditions(sheet: &Sheet) -> Markup {
-    let labels = Labels::of(sheet.block);
-    let drawn = |path: &str| match path {
-        "source.resistance" => labels.source_impedance().is_some(),
-        "load.resistance" => labels.load_resistance().is_some(),
-        "load.capacitance" => labels.load_capacitance().is_some(),
-        _ => false,
-    };
+    let canvas = drawing::canvas(sheet.block);
+    let stated = |path: &str| sheet.block.field(path).is_some();
     let text = |path: &str| sheet.block.field(path).map_or("", |f| f.text.as_str());
+    let fields = fields(&sheet.block.stage);
+    // A signal's frequency is offered at the inputs of which the note says anything.
+    let beside = |path: &str| {
+        path.strip_suffix("frequency").is_some_and(|p| p != "signal." && fields.iter().any(|f| f.0.starts_with(p) && stated(&f.0)))
+    };
+    let offered = |path: &str| OFFERED.contains(&path) || beside(path);
     html! {
         div class="fields" {
-            @for (path, label) in FIELDS {
-                @let stated = sheet.block.field(path).is_some() || *path == "part";
-                @if !drawn(path) && (stated || OFFERED.contains(path)) {
+            @for (path, label) in &fields {
+                @let part = path == "part" || path.starts_with("parts.");
+                @let shown = path == "part" || stated(path);
+                @if !canvas.has_field(path) && (shown || offered(path)) {
                     @let long = text(path).chars().count() > 15;
-                    div class=(if !stated { "field unstated" } else if long { "field long" } else { "field" }) {
+                    div class=(if !shown { "field unstated" } else if long { "field long" } else { "field" }) {
                         label for=(format_args!("{}.{path}", sheet.id)) { (label) }
-                        input id=(format_args!("{}.{path}", sheet.id)) type="text" inputmode=(if *path == "part" { "text" } else { "decimal" })
+                        input id=(format_args!("{}.{path}", sheet.id)) type="text" inputmode=(if part { "text" } else { "decimal" })
                             autocomplete="off" spellcheck="false" data-path=(path)
-                            value=(if *path == "part" && text(path).is_empty() { &sheet.part.part.id } else { text(path) });
+                            value=(if path == "part" && text(path).is_empty() { &sheet.part.part.id } else { text(path) });
                     }
                 }
             }

@@ -74,9 +74,7 @@ pub fn charts(sheet: &Sheet, start: &str) -> Vec<Chart> {
 pub fn chart(sheet: &Sheet, id: &str) -> Option<Chart> {
     let r = sheet.report;
     match id {
-        "response-magnitude" => {
-            magnitude("response-magnitude", "magnitude, dB", &r.response, edge_mark(r).into_iter().collect(), None, 100.0)
-        }
+        "response-magnitude" => response(sheet),
         "response-phase" => phase("response-phase", &r.response, Vec::new(), None),
         "loop-magnitude" => {
             let marks = nominal(r, Figure::Crossover).map(|x| Mark {
@@ -132,11 +130,31 @@ fn phase(id: &'static str, points: &[ResponsePoint], marks: Vec<Mark>, reference
     Some(Chart { id, title: "phase, °", x, curves, marks, reference, unit: Unit::Degree, x_axis, y_axis })
 }
 
-/// Where the response has fallen by 3 dB from the gain.
-fn edge_mark(r: &Report) -> Option<Mark> {
-    let (x, gain) = (nominal(r, Figure::Bandwidth)?, nominal(r, Figure::Gain)?);
-    let text = format!("−3 dB at {}", stageleaf_note::format(x, Dimension::Frequency, 3));
-    Some(Mark { x, y: decibels(gain.abs() * std::f64::consts::FRAC_1_SQRT_2), to: None, text, below: true })
+/// The transfer's magnitude: in dB where it is a ratio, else in its own unit on an axis of decades.
+fn response(sheet: &Sheet) -> Option<Chart> {
+    let r = sheet.report;
+    let (id, dimension) = ("response-magnitude", sheet.block.stage.kind.spec().gain);
+    let title = match dimension {
+        Dimension::Resistance => "transimpedance, Ω",
+        Dimension::VoltsPerCoulomb => "charge gain, V/C",
+        _ => return magnitude(id, "magnitude, dB", &r.response, edge_marks(r, decibels), None, 100.0),
+    };
+    let x: Vec<f64> = thinned(&r.response).map(|p| p.frequency).collect();
+    let y: Vec<f64> = thinned(&r.response).map(|p| p.magnitude).collect();
+    let x_axis = x_axis(&x)?;
+    let mut y_axis = Axis::decades(y.iter().copied(), true)?;
+    y_axis.low = y_axis.low.max(y_axis.high * 1e-5);
+    let (curves, marks) = (vec![Curve { name: "magnitude".into(), y }], edge_marks(r, |m| m));
+    Some(Chart { id, title, x, curves, marks, reference: None, unit: Unit::Si(dimension), x_axis, y_axis })
+}
+
+/// Where the response has fallen by 3 dB from the gain; `height` takes a magnitude to the chart's unit.
+fn edge_marks(r: &Report, height: impl Fn(f64) -> f64) -> Vec<Mark> {
+    let Some(gain) = nominal(r, Figure::Gain) else { return Vec::new() };
+    let y = height(gain.abs() * std::f64::consts::FRAC_1_SQRT_2);
+    let text = |x| format!("−3 dB at {}", stageleaf_note::format(x, Dimension::Frequency, 3));
+    let edges = [Figure::LowCutoff, Figure::Bandwidth].into_iter().filter_map(|figure| nominal(r, figure));
+    edges.map(|x| Mark { x, y, to: None, text: text(x), below: true }).collect()
 }
 
 fn phase_margin_mark(r: &Report) -> Option<Mark> {
