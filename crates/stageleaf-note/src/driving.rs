@@ -10,14 +10,14 @@ use std::f64::consts::SQRT_2;
 
 use stageleaf_math::{
     dimension::Dimension,
-    kind::{Drives, Feed, InputSpec, Kind},
+    kind::{Drives, Kind},
     network::Drive,
-    part::Part,
-    stage::{Component, Isolation, Load, ReferenceVoltage, Signal, Source, Span, Stage, Toleranced},
+    stage::{ReferenceVoltage, Signal, Source, Span},
 };
 
 use crate::{
     parse,
+    paths::{has_reference, signal_dimension, signal_inputs},
     problem::quoted,
     reading::{above_zero, listed, not_negative, takes},
     surroundings::{Least, Table},
@@ -51,14 +51,12 @@ pub struct Inputs {
     /// The resistors of a summing stage that are missing, by input.
     lost: Vec<Option<String>>,
     drive: Drive,
-    reference: bool,
 }
 
 impl Inputs {
     /// Those of a kind with these components (by name).
     pub fn of(kind: Kind, given: &[&str]) -> Self {
-        let specs = all_inputs(kind);
-        let signals: Vec<&InputSpec> = specs.iter().filter(|i| i.feed == Feed::Signal).collect();
+        let signals = signal_inputs(kind);
         // The first two are required: that one is missing is told elsewhere.
         let lost = |i: usize| (kind == Kind::Summing && i >= 2).then(|| format!("Rin{}", i + 1)).filter(|r| !given.contains(&r.as_str()));
         Self {
@@ -66,17 +64,12 @@ impl Inputs {
             names: signals.iter().map(|i| i.name).collect(),
             lost: (0..signals.len()).map(lost).collect(),
             drive: signals.first().map_or(Drive::Voltage, |i| i.drive),
-            reference: specs.iter().any(|i| i.feed == Feed::Reference),
         }
     }
 
     /// What a signal's amplitude measures.
-    pub const fn dimension(&self) -> Dimension {
-        match self.drive {
-            Drive::Voltage => Dimension::Voltage,
-            Drive::Current => Dimension::Current,
-            Drive::Charge => Dimension::Charge,
-        }
+    const fn dimension(&self) -> Dimension {
+        signal_dimension(self.drive)
     }
 
     const fn is_differential(&self) -> bool {
@@ -96,29 +89,6 @@ impl Inputs {
     fn tables(&self, table: &str) -> String {
         self.present().map(|n| format!("`[{table}.{n}]`")).collect::<Vec<_>>().join(", ")
     }
-}
-
-/// Every input that the kind can have.
-pub fn all_inputs(kind: Kind) -> &'static [InputSpec] {
-    let whole = Stage {
-        name: String::new(),
-        kind,
-        components: kind.components().iter().map(|c| Component { name: c.name, value: Toleranced::exact(1.0) }).collect(),
-        part: Part::default(),
-        isolation: Isolation::default(),
-        supply: None,
-        sources: Vec::new(),
-        signals: Vec::new(),
-        common_mode: None,
-        reference: None,
-        parts: Vec::new(),
-        load: Load::default(),
-        board: stageleaf_math::stage::Board::default(),
-        ambient: None,
-        band: None,
-        limits: Vec::new(),
-    };
-    (kind.spec().inputs)(&whole)
 }
 
 /// Reads them all.
@@ -348,14 +318,13 @@ fn reference<'a>(
     let kind = kind_text(inputs.kind);
     let voltage = "`voltage`, as `2.5 V 0.1%`; and its output `resistance` where it counts";
     let Some(entry) = entry else {
-        if inputs.reference {
+        if has_reference(inputs.kind) {
             reader.missing(start.clone(), format!("[reference] is missing: {kind} takes its offset from it"), voltage);
         }
         return None;
     };
-    if !inputs.reference {
-        let takers: Vec<&str> =
-            Kind::ALL.iter().filter(|k| all_inputs(**k).iter().any(|i| i.feed == Feed::Reference)).map(|k| k.id()).collect();
+    if !has_reference(inputs.kind) {
+        let takers: Vec<&str> = Kind::ALL.iter().filter(|k| has_reference(**k)).map(|k| k.id()).collect();
         reader.problem(
             entry.key_range(),
             format!("{kind} takes no [reference]"),

@@ -25,6 +25,7 @@ mod driving;
 pub mod limit;
 #[cfg(feature = "markdown")]
 pub mod markdown;
+pub mod paths;
 pub mod place;
 pub mod print;
 pub mod problem;
