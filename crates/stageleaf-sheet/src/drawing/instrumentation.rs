@@ -55,8 +55,10 @@ pub fn draw(c: &mut Canvas, l: &Labels) {
             c.across(Symbol::Resistor, output, node, node - 58, middle, label);
         }
     }
+    // R1 meets the column of the feedback, which rises from the pin to where its paths end.
+    let level = pin - 66;
     c.wire(&[(node, first), (node, pin)]);
-    c.dot(node, pin);
+    c.dot(node, if l.has("C2") { first } else { level });
     let drop = node + s::NEAR;
     c.wire(&[(node, second), (drop, second), (drop, pin + s::PITCH), (node + PINS, pin + s::PITCH)]);
     c.dot(drop, second);

@@ -23,7 +23,7 @@ pub mod transimpedance;
 use maud::{Markup, html};
 use stageleaf_math::{
     dimension::Dimension,
-    kind::Kind,
+    kind::{Feed, Kind},
     stage::{Isolation, Source, Stage, Toleranced},
 };
 use stageleaf_note::{Block, format, print::trimmed, spoken};
@@ -195,12 +195,21 @@ pub fn canvas(block: &Block) -> Canvas {
     canvas
 }
 
+/// What leads from the output back to the inverting input: the resistor, and the capacitor across it.
+const fn feedback_names(kind: Kind) -> [&'static str; 2] {
+    match kind {
+        Kind::Difference | Kind::Instrumentation => ["R2", "C2"],
+        _ => ["Rf", "Cf"],
+    }
+}
+
 /// The drawing, with a description in words.
 #[must_use]
 pub fn drawing(sheet: &Sheet) -> Markup {
     let stage = &sheet.block.stage;
     let spec = stage.kind.spec();
     let canvas = canvas(sheet.block);
+    let inputs = (spec.inputs)(stage).iter().filter(|i| i.feed == Feed::Signal).count();
     let cut: Vec<&Label> = canvas.cut().collect();
     html! {
         div class="drawing" {
@@ -209,7 +218,10 @@ pub fn drawing(sheet: &Sheet) -> Markup {
                 (spec.summary) " "
                 @if stage.component("Riso").is_some() {
                     @match stage.isolation {
-                        Isolation::InsideLoop => "Riso stands inside the loop: Rf senses the load, Cf the pin. ",
+                        Isolation::InsideLoop => {
+                            @let [resistor, capacitor] = feedback_names(stage.kind);
+                            "Riso stands inside the loop: " (resistor) " senses the load, " (capacitor) " the pin. "
+                        },
                         Isolation::OutsideLoop => "Riso stands outside the loop: the feedback senses the pin. ",
                     }
                 }
@@ -217,7 +229,12 @@ pub fn drawing(sheet: &Sheet) -> Markup {
                 @if !cut.is_empty() {
                     "In full: " @for (i, l) in cut.iter().enumerate() { @if i > 0 { ", " } (l.name) " " (l.value) } ". "
                 }
-                @if stage.source(0).is_none() { "The source is taken as ideal. " }
+                @match (0..inputs).filter(|i| stage.source(*i).is_none()).count() {
+                    0 => {},
+                    _ if inputs == 1 => "The source is taken as ideal. ",
+                    n if n == inputs => "The sources are taken as ideal. ",
+                    _ => "A source that is not stated is taken as ideal. ",
+                }
             }
         }
     }

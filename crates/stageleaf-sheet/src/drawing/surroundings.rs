@@ -15,7 +15,7 @@ pub const INNER: i32 = 104;
 /// From the inverting node to the wire that carries the other input down.
 pub const DROP: i32 = 12;
 /// The same where no branch hangs at the node, so that what hangs there keeps clear of the snubber.
-pub const NEAR: i32 = 8;
+pub const NEAR: i32 = 4;
 /// From the inverting node to the amplifier's pins.
 pub const PINS: i32 = 34;
 /// From the inverting node to the output node.
@@ -233,25 +233,35 @@ pub fn current_source(c: &mut Canvas, l: &Labels, y: i32, name: &str) -> Room {
     room
 }
 
-/// The + input of an inverting stage: at ground, directly or through `Rp ∥ Cp`, which hang lower than `below`.
-pub fn balanced_input(c: &mut Canvas, l: &Labels, (x, y): (i32, i32), below: i32) {
-    let (drop, line) = (x + DROP, y + PITCH);
-    c.wire(&[(x + PINS, line), (drop, line)]);
-    let Some(label) = l.component("Rp") else {
-        c.wire(&[(drop, line), (drop, line + 18)]);
-        c.ground(drop, line + 18);
-        return;
-    };
-    // Below the snubber's labels, too.
-    let top = below.max(if l.has("Rsn") { y + 172 } else { y + 86 });
-    c.wire(&[(drop, line), (drop, top)]);
-    c.upright_left(Symbol::Resistor, drop, top, top + 52, top + 28, label);
-    c.ground(drop, top + 52);
-    if let Some(label) = l.component("Cp") {
-        c.dot(drop, top);
-        c.wire(&[(drop, top), (drop + 26, top)]);
-        c.upright_left(Symbol::Capacitor, drop + 26, top, top + 104, top + 88, label);
-        c.ground(drop + 26, top + 104);
+/// The + input of an inverting stage: [`balance`] where a source stands at the left, or something else that reaches down to `below`.
+pub fn balanced_input(c: &mut Canvas, l: &Labels, node: (i32, i32), below: i32) {
+    balance(c, l, node, below.max(node.1 + 86));
+}
+
+/// The + input of an inverting stage: the noise-gain branch, then a wire to ground or `Rp ∥ Cp`, which
+/// hang lower than `below`. `(x, y)` is the inverting node.
+pub fn balance(c: &mut Canvas, l: &Labels, (x, y): (i32, i32), below: i32) {
+    let mut line = y + PITCH;
+    let mut column = x + NEAR;
+    if l.has("Rng") {
+        let drop = x + DROP;
+        c.wire(&[(x + PINS, line), (drop, line)]);
+        line = y + 96;
+        noise_gain(c, l, (x, y), y + 30, line);
+        c.wire(&[(x, line), (drop, line), (drop, y + PITCH)]);
+        c.dot(x, line);
+        column = x;
+    } else {
+        c.wire(&[(x + PINS, line), (column, line)]);
+    }
+    if l.has("Rp") {
+        if line < below {
+            c.wire(&[(column, line), (column, below)]);
+        }
+        to_ground_below(c, l, (column, line.max(below)), y, ("Rp", "Cp"));
+    } else {
+        c.wire(&[(column, line), (column, line + 16)]);
+        c.ground(column, line + 16);
     }
 }
 
@@ -339,27 +349,4 @@ pub fn supply_divider(c: &mut Canvas, l: &Labels, (x, y): (i32, i32)) {
         c.dot(x, y);
     }
     to_ground(c, (x, y), l.component("Rb2"), l.component("Cb"));
-}
-
-/// The + input of an inverting stage: the noise-gain branch, then `Rp ∥ Cp` or a wire to ground. `(x, y)` is the inverting node.
-pub fn balance(c: &mut Canvas, l: &Labels, (x, y): (i32, i32)) {
-    let mut line = y + PITCH;
-    let mut column = x + NEAR;
-    if l.has("Rng") {
-        let drop = x + DROP;
-        c.wire(&[(x + PINS, line), (drop, line)]);
-        line = y + 96;
-        noise_gain(c, l, (x, y), y + 30, line);
-        c.wire(&[(x, line), (drop, line), (drop, y + PITCH)]);
-        c.dot(x, line);
-        column = x;
-    } else {
-        c.wire(&[(x + PINS, line), (column, line)]);
-    }
-    if l.has("Rp") {
-        to_ground_below(c, l, (column, line), y, ("Rp", "Cp"));
-    } else {
-        c.wire(&[(column, line), (column, line + 16)]);
-        c.ground(column, line + 16);
-    }
 }
