@@ -4,10 +4,11 @@
 mod samples;
 
 use stageleaf_math::{
-    kind::{ComponentSpec, Kind},
+    kind::{ComponentSpec, Feed, Kind},
     network::Drive,
     stage::{Isolation, Source, Span, Supply, Toleranced},
 };
+use stageleaf_note::Field;
 use stageleaf_sheet::drawing::{
     canvas,
     kit::{Area, Canvas},
@@ -88,6 +89,10 @@ fn no_label_covers_another_or_a_wire() {
                 let grounded = matches!(source, Some(Source::Capacitive { .. }));
                 let negative = Span::exact(if grounded { 0.0 } else { -12.0 });
                 block.stage.supply = Some(Supply { positive: Span::exact(12.0), negative });
+                // A reference of some resistance and an ideal one.
+                if let Some(reference) = &mut block.stage.reference {
+                    reference.resistance = source.is_some().then_some(Toleranced::exact(10.0));
+                }
                 let case = format!("{kind:?} with {names:?}, {isolation:?}, load {load:?}, source {source:?}");
                 keeps_clear(&canvas(&block), &case);
             }
@@ -106,7 +111,9 @@ fn keeps_clear(drawing: &Canvas, case: &str) {
         }
     }
     let frame = drawing.frame(0);
-    assert!(frame.x1 - frame.x0 <= 600, "{case}: {} wide", frame.x1 - frame.x0);
+    // Two amplifiers one behind the other take more; such a drawing scrolls in its own box.
+    let most = if case.starts_with("Instrumentation") { 720 } else { 600 };
+    assert!(frame.x1 - frame.x0 <= most, "{case}: {} wide", frame.x1 - frame.x0);
 }
 
 #[test]
@@ -118,15 +125,88 @@ fn every_component_of_a_kind_is_drawn() {
         for name in all.iter().chain(&["RL", "CL"]) {
             assert!(drawing.words().any(|(_, word)| word == *name), "{kind:?}: `{name}` is not in the drawing");
         }
-        // With several inputs, numbers follow.
-        let source = match inputs(&block).0 {
-            Drive::Voltage => "Vs",
-            Drive::Current => "Is",
-            Drive::Charge => "Qs",
+        // One source is drawn as a source; of several inputs, each is a terminal with its name.
+        let signals: Vec<_> = (kind.spec().inputs)(&block.stage).iter().filter(|i| i.feed == Feed::Signal).collect();
+        let sources: Vec<(String, &str)> = match (&signals[..], signals[0].drive) {
+            ([_], Drive::Voltage) => vec![("Rs".into(), "Vs")],
+            ([_], Drive::Current) => vec![("Rs".into(), "Is")],
+            ([_], Drive::Charge) => vec![("Rs".into(), "Qs")],
+            _ => signals.iter().enumerate().map(|(i, input)| (format!("Rs{}", i + 1), input.name)).collect(),
         };
-        for name in ["Rs", source] {
-            assert!(drawing.words().any(|(_, word)| word.starts_with(name)), "{kind:?}: `{name}` is not in the drawing");
+        for name in sources.iter().flat_map(|(resistance, name)| [resistance.as_str(), name]) {
+            assert!(drawing.words().any(|(_, word)| word == name), "{kind:?}: `{name}` is not in the drawing");
         }
+        let amplifiers = kind.spec().amplifiers;
+        for name in (1..=amplifiers).filter(|_| amplifiers > 1).map(|a| format!("A{a}")) {
+            assert!(drawing.words().any(|(_, word)| word == name), "{kind:?}: `{name}` is not in the drawing");
+        }
+        // Every value is a field, and no field is there twice.
+        let html = drawing.finish("s", "circuit").into_string();
+        let shown = |path: &str| html.matches(&format!("data-path=\"{path}\"")).count();
+        for field in block.fields.iter().filter(|f| ["components.", "source.", "reference.", "load."].iter().any(|t| f.path.starts_with(t)))
+        {
+            assert_eq!(shown(&field.path), 1, "{kind:?}: fields for {}", field.path);
+        }
+    }
+}
+
+#[test]
+fn a_resistance_that_stands_in_both_inputs_has_one_field() {
+    for kind in [Kind::Difference, Kind::Instrumentation] {
+        let all: Vec<&str> = kind.components().iter().map(|s| s.name).collect();
+        let mut block = samples::block(kind, &all, Isolation::OutsideLoop, (true, true), true);
+        block.fields.retain(|f| !f.path.starts_with("source."));
+        block.fields.push(Field { path: "source.resistance".into(), text: "350".into(), span: 0..0, whole: 0..0, line: 1, column: 1 });
+        let drawing = canvas(&block);
+        keeps_clear(&drawing, &format!("{kind:?} at a bridge"));
+        assert_eq!(drawing.words().filter(|(_, word)| *word == "Rs").count(), 2, "{kind:?}: a resistor in each input");
+        let html = drawing.finish("s", "circuit").into_string();
+        assert_eq!(html.matches("data-path=\"source.resistance\"").count(), 1, "{kind:?}");
+    }
+}
+
+#[test]
+fn inputs_without_a_source_stay_terminals_beside_those_with_one() {
+    let names = ["Rin1", "Rin2", "Rin3", "Rf"];
+    for which in 0..3 {
+        let mut block = samples::block(Kind::Summing, &names, Isolation::OutsideLoop, (false, false), true);
+        block.stage.sources = (0..3).map(|i| (i == which).then(|| Source::Resistive { resistance: Toleranced::exact(600.0) })).collect();
+        let drawing = canvas(&block);
+        keeps_clear(&drawing, &format!("Summing with one source, at input {which}"));
+        for (i, name) in ["in1", "in2", "in3"].iter().enumerate() {
+            assert!(drawing.words().any(|(_, word)| word == *name), "`{name}` is not in the drawing");
+            assert_eq!(drawing.words().any(|(_, word)| word == format!("Rs{}", i + 1)), i == which);
+        }
+    }
+}
+
+#[test]
+fn a_reference_is_drawn_with_its_voltage_and_resistance() {
+    let names = ["R1", "R2", "Rf", "Rg"];
+    for (resistance, path, fields) in
+        [(None, "reference.voltage", 1), (Some(10.0), "reference.resistance", 1), (Some(0.0), "reference.resistance", 0)]
+    {
+        let mut block = samples::block(Kind::ScaleAndShift, &names, Isolation::OutsideLoop, (false, false), true);
+        let reference = block.stage.reference.as_mut().unwrap();
+        reference.resistance = resistance.map(Toleranced::exact);
+        let html = canvas(&block).finish("s", "circuit").into_string();
+        assert_eq!(html.matches(&format!("data-path=\"{path}\"")).count(), fields, "{path} with {resistance:?}");
+        block.stage.reference = None;
+        let drawing = canvas(&block);
+        keeps_clear(&drawing, "ScaleAndShift without a reference");
+        assert!(drawing.words().any(|(_, word)| word == "Vref"));
+    }
+}
+
+#[test]
+fn a_divided_supply_is_drawn_at_its_rail() {
+    for kind in [Kind::AcNonInverting, Kind::AcInverting] {
+        let all: Vec<&str> = kind.components().iter().map(|s| s.name).collect();
+        let mut block = samples::block(kind, &all, Isolation::OutsideLoop, (false, false), true);
+        block.stage.supply = Some(Supply { positive: Span::exact(5.0), negative: Span::exact(0.0) });
+        let drawing = canvas(&block);
+        // At the amplifier and at the divider.
+        assert_eq!(drawing.words().filter(|(_, word)| *word == "+5 V").count(), 2, "{kind:?}");
     }
 }
 
