@@ -9,23 +9,23 @@ use stageleaf_note::Problem;
 
 use crate::{Sheet, drawing};
 
-/// What a signal can state, in the order in which it stands.
-const SIGNAL: [(&str, &str); 7] = [
-    ("peak", "peak"),
-    ("peak_to_peak", "p-p"),
-    ("rms", "rms"),
-    ("range", "range"),
-    ("dc", "DC"),
-    ("crest_factor", "crest factor"),
-    ("frequency", "frequency"),
+/// What a signal can state, in the order in which it stands: key, label, label behind an input's name.
+const SIGNAL: [(&str, &str, &str); 7] = [
+    ("peak", "Signal, peak", "peak"),
+    ("peak_to_peak", "Signal, p-p", "p-p"),
+    ("rms", "Signal, rms", "rms"),
+    ("range", "Signal range", "range"),
+    ("dc", "Signal, DC", "DC"),
+    ("crest_factor", "Crest factor", "crest factor"),
+    ("frequency", "Signal frequency", "frequency"),
 ];
 
 /// What a source can state.
-const SOURCE: [(&str, &str); 4] = [
-    ("resistance", "resistance"),
-    ("capacitance", "capacitance"),
-    ("shunt_resistance", "shunt resistance"),
-    ("dark_current", "dark current"),
+const SOURCE: [(&str, &str, &str); 4] = [
+    ("resistance", "Source resistance", "source"),
+    ("capacitance", "Source capacitance", "source"),
+    ("shunt_resistance", "Shunt resistance", ""),
+    ("dark_current", "Dark current", ""),
 ];
 
 /// Fields that every kind has, with their labels.
@@ -60,21 +60,21 @@ fn fields(stage: &Stage) -> Vec<(String, String)> {
     let mut all = vec![("part".to_owned(), "Part".to_owned())];
     all.extend((2..=spec.amplifiers).map(|a| (format!("parts.A{a}"), format!("Part A{a}"))));
     all.extend([("supply.positive", "Supply +"), ("supply.negative", "Supply −")].map(|(p, l)| (p.into(), l.into())));
-    all.extend(SOURCE.map(|(key, label)| (format!("source.{key}"), format!("Source {label}"))));
+    all.extend(SOURCE.map(|(key, label, _)| (format!("source.{key}"), label.into())));
     if several {
         for input in &inputs {
-            all.extend(SOURCE[..2].iter().map(|(key, label)| (format!("source.{input}.{key}"), format!("Source {input}, {label}"))));
+            all.extend(SOURCE[..2].iter().map(|(key, _, label)| (format!("source.{input}.{key}"), format!("{input}, {label}"))));
         }
     }
     if several && spec.drives == Drives::Each {
         for input in &inputs {
-            all.extend(SIGNAL.map(|(key, label)| (format!("signal.{input}.{key}"), format!("Signal {input}, {label}"))));
+            all.extend(SIGNAL.map(|(key, _, label)| (format!("signal.{input}.{key}"), format!("{input}, {label}"))));
         }
     } else {
-        all.extend(SIGNAL.map(|(key, label)| (format!("signal.{key}"), format!("Signal, {label}"))));
+        all.extend(SIGNAL.map(|(key, label, _)| (format!("signal.{key}"), label.into())));
         all.push(("signal.common_mode".into(), "Common mode".into()));
     }
-    all.extend([("reference.voltage", "Reference"), ("reference.resistance", "Reference's resistance")].map(|(p, l)| (p.into(), l.into())));
+    all.extend([("reference.voltage", "Reference"), ("reference.resistance", "Reference resistance")].map(|(p, l)| (p.into(), l.into())));
     all.extend(AROUND.map(|(p, l)| (p.into(), l.into())));
     all
 }

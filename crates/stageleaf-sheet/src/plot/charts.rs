@@ -33,8 +33,21 @@ pub struct Mark {
     pub to: Option<f64>,
     /// Its words.
     pub text: String,
-    /// Whether the words stand below the point, where a bound runs above it.
-    pub below: bool,
+    /// Where the words stand.
+    pub words: Words,
+}
+
+/// Where a mark's words stand, so that no curve runs through them.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Words {
+    /// Above the point, or below it near the right edge.
+    Above,
+    /// Below the point, where a bound runs above it.
+    Below,
+    /// Before a curve that rises through the point.
+    Rising,
+    /// Behind a curve that falls through the point.
+    Falling,
 }
 
 /// A chart against frequency.
@@ -82,7 +95,7 @@ pub fn chart(sheet: &Sheet, id: &str) -> Option<Chart> {
                 y: 0.0,
                 to: None,
                 text: format!("crossover {}", stageleaf_note::format(x, Dimension::Frequency, 3)),
-                below: false,
+                words: Words::Above,
             });
             magnitude("loop-magnitude", "loop gain |T|, dB", &r.loop_gain, marks.into_iter().collect(), Some(0.0), 160.0)
         }
@@ -124,7 +137,7 @@ fn phase(id: &'static str, points: &[ResponsePoint], marks: Vec<Mark>, reference
     let y: Vec<f64> = thinned(points).map(|p| p.phase.to_degrees()).collect();
     let x_axis = x_axis(&x)?;
     let probe = Axis::linear(y.iter().copied().chain(reference), 2000.0, None)?;
-    let step = if probe.high - probe.low > 400.0 { 90.0 } else { 45.0 };
+    let step = if probe.high - probe.low > 300.0 { 90.0 } else { 45.0 };
     let y_axis = Axis::linear(y.iter().copied().chain(reference), 2000.0, Some(step))?;
     let curves = vec![Curve { name: "phase".into(), y }];
     Some(Chart { id, title: "phase, °", x, curves, marks, reference, unit: Unit::Degree, x_axis, y_axis })
@@ -142,7 +155,8 @@ fn response(sheet: &Sheet) -> Option<Chart> {
     let x: Vec<f64> = thinned(&r.response).map(|p| p.frequency).collect();
     let y: Vec<f64> = thinned(&r.response).map(|p| p.magnitude).collect();
     let x_axis = x_axis(&x)?;
-    let mut y_axis = Axis::decades(y.iter().copied(), true)?;
+    // A quarter more, so that a flat curve never runs along the frame.
+    let mut y_axis = Axis::decades(y.iter().flat_map(|v| [*v, 1.25 * v]), true)?;
     y_axis.low = y_axis.low.max(y_axis.high * 1e-5);
     let (curves, marks) = (vec![Curve { name: "magnitude".into(), y }], edge_marks(r, |m| m));
     Some(Chart { id, title, x, curves, marks, reference: None, unit: Unit::Si(dimension), x_axis, y_axis })
@@ -152,15 +166,18 @@ fn response(sheet: &Sheet) -> Option<Chart> {
 fn edge_marks(r: &Report, height: impl Fn(f64) -> f64) -> Vec<Mark> {
     let Some(gain) = nominal(r, Figure::Gain) else { return Vec::new() };
     let y = height(gain.abs() * std::f64::consts::FRAC_1_SQRT_2);
-    let text = |x| format!("−3 dB at {}", stageleaf_note::format(x, Dimension::Frequency, 3));
-    let edges = [Figure::LowCutoff, Figure::Bandwidth].into_iter().filter_map(|figure| nominal(r, figure));
-    edges.map(|x| Mark { x, y, to: None, text: text(x), below: true }).collect()
+    let edges = [(Figure::LowCutoff, Words::Rising), (Figure::Bandwidth, Words::Falling)];
+    let marks = edges.into_iter().filter_map(|(figure, words)| {
+        let x = nominal(r, figure)?;
+        Some(Mark { x, y, to: None, text: format!("−3 dB at {}", stageleaf_note::format(x, Dimension::Frequency, 3)), words })
+    });
+    marks.collect()
 }
 
 fn phase_margin_mark(r: &Report) -> Option<Mark> {
     let (x, margin) = (nominal(r, Figure::Crossover)?, nominal(r, Figure::PhaseMargin)?);
     let text = format!("phase margin {}", stageleaf_note::format(margin, Dimension::Angle, 3));
-    Some(Mark { x, y: margin.to_degrees() - 180.0, to: Some(-180.0), text, below: false })
+    Some(Mark { x, y: margin.to_degrees() - 180.0, to: Some(-180.0), text, words: Words::Above })
 }
 
 fn noise(sheet: &Sheet) -> Option<Chart> {
@@ -211,7 +228,13 @@ fn envelope(sheet: &Sheet) -> Option<Chart> {
     {
         let y = signal.peak * gain.abs();
         if x.is_finite() && y.is_finite() && y > 0.0 {
-            marks.push(Mark { x, y, to: None, text: format!("signal {}", stageleaf_note::format(y, Dimension::Voltage, 3)), below: true });
+            marks.push(Mark {
+                x,
+                y,
+                to: None,
+                text: format!("signal {}", stageleaf_note::format(y, Dimension::Voltage, 3)),
+                words: Words::Below,
+            });
         }
     }
     // The lowest of the bounds decides; how far the others rise above it is of no use, nor is what it falls to far below its best.
