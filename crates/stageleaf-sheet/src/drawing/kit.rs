@@ -388,8 +388,13 @@ impl Canvas {
     #[must_use]
     pub fn finish(&self, id: &str, name: &str) -> Markup {
         let f = self.frame(426);
+        let class = match f.x1 - f.x0 {
+            ..=470 => "circuit",
+            ..=600 => "circuit wide",
+            _ => "circuit wider",
+        };
         html! {
-            svg viewBox=(format_args!("{} {} {} {}", f.x0, f.y0, f.x1 - f.x0, f.y1 - f.y0)) role="group" aria-label=(name) class=(if f.x1 - f.x0 > 470 { "circuit wide" } else { "circuit" }) {
+            svg viewBox=(format_args!("{} {} {} {}", f.x0, f.y0, f.x1 - f.x0, f.y1 - f.y0)) role="group" aria-label=(name) class=(class) {
                 path class="wire" d=(PreEscaped(&self.wires)) {}
                 path class="body" d=(PreEscaped(&self.bodies)) {}
                 path class="dot" d=(PreEscaped(&self.dots)) {}
