@@ -390,7 +390,7 @@ impl Canvas {
         let f = self.frame(426);
         let class = match f.x1 - f.x0 {
             ..=470 => "circuit",
-            ..=600 => "circuit wide",
+            471..=600 => "circuit wide",
             _ => "circuit wider",
         };
         html! {
