@@ -127,17 +127,16 @@ fn by_input<'t, 'a>(reader: &mut Reader<'a>, table: &'t Table<'a>, inputs: &Inpu
     inputs.names.iter().map(|n| table.find(n)).collect()
 }
 
-/// Keys that name an input where the table itself is the one for all: `[signal.in1]` of a kind with one signal.
-fn no_inputs<'a>(reader: &mut Reader<'a>, table: &Table<'a>, why: &str) {
-    for entry in table.entries.iter().filter(|e| is_input(e.key)) {
+/// Tells of keys that name an input where the table itself is the one for all: `[signal.in1]` of a kind with one signal.
+/// Says whether there are any.
+fn names_inputs<'a>(reader: &mut Reader<'a>, table: &Table<'a>, why: &str) -> bool {
+    let stray: Vec<&Entry<'a>> = table.entries.iter().filter(|e| is_input(e.key)).collect();
+    for entry in &stray {
         let name = &table.name;
-        reader.problem(
-            entry.key_range(),
-            format!("there is no [{name}.{}]: {why}", entry.key),
-            format!("the same keys under `[{name}]`"),
-            None,
-        );
+        let message = format!("there is no [{name}.{}]: {why}", entry.key);
+        reader.problem(entry.key_range(), message, format!("the same keys under `[{name}]`"), None);
     }
+    !stray.is_empty()
 }
 
 fn is_input(key: &str) -> bool {
@@ -163,14 +162,18 @@ fn signals<'a>(reader: &mut Reader<'a>, entry: &Entry<'a>, inputs: &Inputs) -> (
     let table = Table::open("signal", reader, entry);
     if inputs.is_differential() {
         let keys: Vec<&str> = SIGNAL.iter().copied().chain(["common_mode"]).collect();
-        no_inputs(reader, &table, &format!("the signal of {kind} is the difference in2 − in1"));
         of_other_kinds(reader, &table, &keys, inputs);
+        if names_inputs(reader, &table, &format!("the signal of {kind} is the difference in2 − in1")) {
+            return (Vec::new(), None);
+        }
         let common_mode = table.read(reader, "common_mode", takes(d), |t| parse_span(t, d));
         return (vec![signal(reader, &table, d)], common_mode);
     }
     if !inputs.has_several() {
-        no_inputs(reader, &table, &format!("{kind} has one signal"));
         of_other_kinds(reader, &table, SIGNAL, inputs);
+        if names_inputs(reader, &table, &format!("{kind} has one signal")) {
+            return (Vec::new(), None);
+        }
         return (vec![signal(reader, &table, d)], None);
     }
     if let Some(stray) = table.entries.iter().find(|e| SIGNAL.contains(&e.key)) {
@@ -202,8 +205,10 @@ fn sources<'a>(reader: &mut Reader<'a>, entry: &Entry<'a>, inputs: &Inputs) -> V
     let table = Table::open("source", reader, entry);
     if !inputs.has_several() {
         let voltage = inputs.drive == Drive::Voltage;
-        no_inputs(reader, &table, &format!("{kind} has one input"));
         of_other_kinds(reader, &table, if voltage { SOURCE } else { CURRENT_SOURCE }, inputs);
+        if names_inputs(reader, &table, &format!("{kind} has one input")) {
+            return Vec::new();
+        }
         let source = if voltage { voltage_source(reader, &table) } else { current_source(reader, &table) };
         return vec![source];
     }
@@ -259,9 +264,9 @@ fn voltage_source<'a>(reader: &mut Reader<'a>, table: &Table<'a>) -> Option<Sour
         None => "resistive",
     };
     if kind == "capacitive" {
-        return capacitive(reader, table);
+        return capacitive(reader, table, SOURCE);
     }
-    foreign(reader, table, kind, &["resistance"]);
+    foreign(reader, table, kind, SOURCE, &["resistance"]);
     table.required(reader, "resistance", "ohms, as `600`, `2k 5%`; `0` for an ideal source");
     let resistance = table.toleranced(reader, "resistance", Dimension::Resistance, Least::Zero)?;
     Some(Source::Resistive { resistance })
@@ -276,15 +281,15 @@ fn current_source<'a>(reader: &mut Reader<'a>, table: &Table<'a>) -> Option<Sour
         None => "resistive",
     };
     match kind {
-        "capacitive" => capacitive(reader, table),
+        "capacitive" => capacitive(reader, table, CURRENT_SOURCE),
         "resistive" => {
-            foreign(reader, table, kind, &["resistance"]);
+            foreign(reader, table, kind, CURRENT_SOURCE, &["resistance"]);
             table.required(reader, "resistance", "ohms, as `10M`: what stands across the source; leave [source] out for an ideal one");
             let resistance = table.toleranced(reader, "resistance", Dimension::Resistance, Least::AboveZero)?;
             Some(Source::Resistive { resistance })
         }
         _ => {
-            foreign(reader, table, kind, &["capacitance", "shunt_resistance", "dark_current"]);
+            foreign(reader, table, kind, CURRENT_SOURCE, &["capacitance", "shunt_resistance", "dark_current"]);
             table.required(reader, "capacitance", "farads, as `70p 10%`: the junction at the bias that it has here");
             let shunt_resistance = table.toleranced(reader, "shunt_resistance", Dimension::Resistance, Least::AboveZero);
             let dark_current = table.toleranced(reader, "dark_current", Dimension::Current, Least::Zero);
@@ -294,17 +299,17 @@ fn current_source<'a>(reader: &mut Reader<'a>, table: &Table<'a>) -> Option<Sour
     }
 }
 
-fn capacitive<'a>(reader: &mut Reader<'a>, table: &Table<'a>) -> Option<Source> {
-    foreign(reader, table, "capacitive", &["capacitance"]);
+fn capacitive<'a>(reader: &mut Reader<'a>, table: &Table<'a>, known: &[&str]) -> Option<Source> {
+    foreign(reader, table, "capacitive", known, &["capacitance"]);
     table.required(reader, "capacitance", "farads, as `3n3`, `10 nF 5%`");
     let capacitance = table.toleranced(reader, "capacitance", Dimension::Capacitance, Least::AboveZero)?;
     Some(Source::Capacitive { capacitance })
 }
 
-/// Keys that sources have, but not one of this kind.
-fn foreign<'a>(reader: &mut Reader<'a>, table: &Table<'a>, kind: &str, keys: &[&str]) {
+/// Keys that sources have here, but not one of this kind.
+fn foreign<'a>(reader: &mut Reader<'a>, table: &Table<'a>, kind: &str, known: &[&str], keys: &[&str]) {
     let source = if kind == "photodiode" { kind.to_owned() } else { format!("{kind} source") };
-    for stray in table.entries.iter().filter(|e| e.key != "kind" && CURRENT_SOURCE.contains(&e.key) && !keys.contains(&e.key)) {
+    for stray in table.entries.iter().filter(|e| e.key != "kind" && known.contains(&e.key) && !keys.contains(&e.key)) {
         reader.problem(stray.key_range(), format!("a {source} has no `{}`", stray.key), listed(keys), None);
     }
 }
@@ -365,6 +370,7 @@ fn signal<'a>(reader: &mut Reader<'a>, table: &Table<'a>, d: Dimension) -> Optio
                 allowed,
                 None,
             ),
+            None if !table.is_table => {}
             None => reader.missing(table.header.clone(), format!("[{}] states no amplitude", table.name), allowed),
         }
         return None;

@@ -245,7 +245,9 @@ fn components<'a>(
     }
     let header = entry.map_or(start.clone(), |e| e.key_range());
     for spec in specs.iter().filter(|s| s.required && !given.iter().any(|(n, _)| *n == s.name)) {
-        let message = format!("`{}` is missing: {kind_name} has its {}", spec.name, spec.role);
+        // "has its feedback resistor", "has it from the + input to ground".
+        let its = if spec.role.starts_with("from ") { "it" } else { "its" };
+        let message = format!("`{}` is missing: {kind_name} has {its} {}", spec.name, spec.role);
         let example =
             if spec.dimension == Dimension::Resistance { "with its value as `91k 1% 50ppm`" } else { "with its value as `100n 5%`" };
         reader.missing(header.clone(), message, format!("`{}` under [components], {example}", spec.name));

@@ -80,6 +80,8 @@ pub struct Table<'a> {
     pub name: String,
     pub entries: Vec<Entry<'a>>,
     pub header: std::ops::Range<usize>,
+    /// False where something else stands in its place, which has been told: nothing is missing from it then.
+    pub is_table: bool,
 }
 
 impl<'a> Table<'a> {
@@ -98,8 +100,13 @@ impl<'a> Table<'a> {
 
     /// A table whose keys the caller looks at.
     pub fn open(name: &str, reader: &mut Reader<'a>, entry: &Entry<'a>) -> Self {
-        let entries = reader.table_called(name, entry).map(entries).unwrap_or_default();
-        Self { name: name.to_owned(), entries, header: entry.key_range() }
+        let table = reader.table_called(name, entry);
+        Self {
+            name: name.to_owned(),
+            entries: table.map(entries).unwrap_or_default(),
+            header: entry.key_range(),
+            is_table: table.is_some(),
+        }
     }
 
     pub fn path(&self, key: &str) -> String {
@@ -134,7 +141,7 @@ impl<'a> Table<'a> {
     }
 
     pub fn required(&self, reader: &mut Reader<'a>, key: &str, allowed: &str) {
-        if self.find(key).is_none() {
+        if self.is_table && self.find(key).is_none() {
             reader.missing(self.header.clone(), format!("[{}] has no `{key}`", self.name), allowed);
         }
     }

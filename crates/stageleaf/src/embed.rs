@@ -116,12 +116,12 @@ fn items(list: &mut Value, surroundings: &mut dyn FnMut(&str) -> Surroundings, i
         let Some(entry) = item.get_mut("Chapter") else { continue };
         let path = entry["source_path"].as_str().or_else(|| entry["path"].as_str()).map(|path| path.replace('\\', "/"));
         // A draft has no path and no text.
-        if let (Some(path), Some(text)) = (path, entry["content"].as_str()) {
-            if text.contains("stageleaf") {
-                let (changed, found) = chapter(text, &surroundings(&path), ids);
-                entry["content"] = Value::String(changed);
-                problems.extend(found);
-            }
+        if let (Some(path), Some(text)) = (path, entry["content"].as_str())
+            && text.contains("stageleaf")
+        {
+            let (changed, found) = chapter(text, &surroundings(&path), ids);
+            entry["content"] = Value::String(changed);
+            problems.extend(found);
         }
         items(&mut entry["sub_items"], surroundings, ids, problems);
     }
