@@ -41,16 +41,8 @@ const AROUND: [(&str, &str); 8] = [
 ];
 
 /// Fields that a live sheet offers even where the note states nothing.
-const OFFERED: &[&str] = &[
-    "supply.positive",
-    "supply.negative",
-    "signal.frequency",
-    "load.resistance",
-    "load.capacitance",
-    "ambient.range",
-    "band.from",
-    "band.to",
-];
+const OFFERED: &[&str] =
+    &["supply.positive", "supply.negative", "load.resistance", "load.capacitance", "ambient.range", "band.from", "band.to"];
 
 /// Paths of the values around the stage, with their labels, in the order in which they stand.
 fn fields(stage: &Stage) -> Vec<(String, String)> {
@@ -58,7 +50,7 @@ fn fields(stage: &Stage) -> Vec<(String, String)> {
     let inputs: Vec<&str> = (spec.inputs)(stage).iter().filter(|i| i.feed == Feed::Signal).map(|i| i.name).collect();
     let several = inputs.len() > 1;
     let mut all = vec![("part".to_owned(), "Part".to_owned())];
-    all.extend((2..=spec.amplifiers).map(|a| (format!("parts.A{a}"), format!("Part A{a}"))));
+    all.extend((1..=spec.amplifiers).map(|a| (format!("parts.A{a}"), format!("Part A{a}"))));
     all.extend([("supply.positive", "Supply +"), ("supply.negative", "Supply −")].map(|(p, l)| (p.into(), l.into())));
     all.extend(SOURCE.map(|(key, label, _)| (format!("source.{key}"), label.into())));
     if several {
@@ -72,6 +64,8 @@ fn fields(stage: &Stage) -> Vec<(String, String)> {
         }
     } else {
         all.extend(SIGNAL.map(|(key, label, _)| (format!("signal.{key}"), label.into())));
+    }
+    if spec.drives == Drives::Differential {
         all.push(("signal.common_mode".into(), "Common mode".into()));
     }
     all.extend([("reference.voltage", "Reference"), ("reference.resistance", "Reference resistance")].map(|(p, l)| (p.into(), l.into())));
@@ -85,11 +79,14 @@ pub fn conditions(sheet: &Sheet) -> Markup {
     let stated = |path: &str| sheet.block.field(path).is_some();
     let text = |path: &str| sheet.block.field(path).map_or("", |f| f.text.as_str());
     let fields = fields(&sheet.block.stage);
-    // A signal's frequency is offered at the inputs of which the note says anything.
-    let beside = |path: &str| {
-        path.strip_suffix("frequency").is_some_and(|p| p != "signal." && fields.iter().any(|f| f.0.starts_with(p) && stated(&f.0)))
+    let amplitude = |signal: &str| ["peak", "peak_to_peak", "rms", "range"].iter().any(|key| stated(&format!("{signal}.{key}")));
+    // A signal begins with its amplitude; what goes with it is offered then.
+    let of_signal = |path: &str| match path.rsplit_once('.') {
+        Some((signal, "peak")) => !amplitude(signal),
+        Some((signal, "frequency" | "common_mode")) => amplitude(signal),
+        _ => false,
     };
-    let offered = |path: &str| OFFERED.contains(&path) || beside(path);
+    let offered = |path: &str| OFFERED.contains(&path) || of_signal(path);
     html! {
         div class="fields" {
             @for (path, label) in &fields {
