@@ -72,7 +72,7 @@ pub static SPEC: Spec = Spec {
         NOISE_GAIN_C,
     ],
     amplifiers: 1,
-    inputs: inputs,
+    inputs,
     drives: Drives::Each,
     reference: Reference::Dc,
     gain: Dimension::Gain,
@@ -93,7 +93,7 @@ pub static SPEC: Spec = Spec {
         network.amplifier(plus, minus, pin);
     },
     ideal_gain: |stage| -nominal(stage, "Rf") / nominal(stage, "Rin1"),
-    noise_gain: noise_gain,
+    noise_gain,
     working: |stage| {
         let mut lines = vec![ideal("G1 = −Rf/Rin1", &["Rf", "Rin1"], stage), closed_loop_edge(stage, noise_gain(stage))];
         lines.extend(corner(stage));
