@@ -39,6 +39,32 @@ fn the_document_has_the_keys_of_version_1() {
 }
 
 #[test]
+fn a_gain_has_the_unit_of_its_kind() {
+    let bench = Bench::new("json-units");
+    let stages = [
+        ("transimpedance", "[components]\nRf = \"1M\"\n[limits]\ngain = \"-1M ± 1 %\"\n", "Ω", "A", -1e6),
+        ("charge", "[components]\nCf = \"100p\"\nRf = \"100M\"\n[limits]\ngain = \"-10 GV/C ± 1 %\"\n", "V/C", "C", -1e10),
+    ];
+    let notes = stages.map(|(kind, body, ..)| fenced(&format!("stage = \"{kind}\"\nname = \"{kind}\"\npart = \"oak-1\"\n{body}"))).concat();
+    bench.write("note.md", notes);
+    let said = bench.run(&["check", "note.md", "--format", "json"]);
+    assert_eq!(said.code, Some(0), "{}", said.out);
+    let document = document(&said);
+    for (i, (_, _, gain, input, value)) in stages.iter().enumerate() {
+        let stage = &document["stages"][i];
+        assert_eq!(stage["figures"]["gain"]["unit"], *gain);
+        assert_eq!(stage["limits"][0]["unit"], *gain);
+        // By hand: −Rf and −1/Cf; an open-loop gain of 100 dB leaves 0.01 per mille.
+        let got = stage["figures"]["gain"]["value"].as_f64().expect("a number");
+        assert!((got / value - 1.0).abs() < 1e-3, "{got}");
+        let offset = &stage["figures"]["input_offset"];
+        assert!(offset.get("undetermined").is_some() || offset["unit"] == *input, "{offset}");
+    }
+    let said = bench.run(&["check", "note.md"]);
+    assert!(said.out.contains("worst −10.00 GV/C") && said.out.contains("worst −1.000 MΩ"), "{}", said.out);
+}
+
+#[test]
 fn a_figure_without_a_bound_is_null_and_unlimited() {
     let bench = Bench::new("json-unlimited");
     // One pole behind a resistor that drives resistors never turns by 180°, whatever the input capacitance does below −90°.

@@ -6,7 +6,9 @@ use crate::{Bench, block, fenced};
 fn an_unknown_kind_gets_the_list_and_the_nearest() {
     let bench = Bench::new("unknown-kind");
     let said = bench.run(&["new", "folower"]);
-    let wanted = "new: no stage kind is called `folower`\nallowed: follower, non-inverting, inverting\ntry: stageleaf new follower\n";
+    let wanted = "new: no stage kind is called `folower`\nallowed: follower, non-inverting, inverting, summing, difference, instrumentation, \
+        transimpedance, charge, integrator, differentiator, scale-and-shift, ac-non-inverting, ac-inverting, sallen-key-low-pass, \
+        sallen-key-high-pass, multiple-feedback-low-pass, multiple-feedback-band-pass\ntry: stageleaf new follower\n";
     assert_eq!((said.code, said.out.as_str(), said.err.as_str()), (Some(2), "", wanted));
 }
 
@@ -16,6 +18,47 @@ fn an_unknown_figure_gets_the_nearest() {
     let said = bench.run(&["explain", "phase_margn"]);
     let wanted = "explain: no figure is called `phase_margn`\nallowed: a figure id; `stageleaf explain` lists them\ntry: stageleaf explain phase_margin\n";
     assert_eq!((said.code, said.out.as_str(), said.err.as_str()), (Some(2), "", wanted));
+}
+
+#[test]
+fn a_figure_is_explained_with_the_units_that_kinds_give_it() {
+    let bench = Bench::new("explain-units");
+    let said = bench.run(&["explain", "gain"]);
+    assert_eq!(said.code, Some(0), "{}", said.err);
+    let wanted = "  unit      V/V, a plain signed number; limits may be in dB too\n            Ω in a stage of kind transimpedance\n            V/C in a stage of kind charge\n";
+    assert!(said.out.contains(wanted), "{}", said.out);
+    assert!(bench.run(&["explain", "input_noise"]).out.contains("            A in a stage of kind transimpedance\n"));
+    assert!(!bench.run(&["explain", "bandwidth"]).out.contains("in a stage of kind"));
+}
+
+#[test]
+fn the_parts_of_further_amplifiers_go_with_the_page() {
+    let bench = Bench::new("further-parts");
+    let oak = String::from_utf8(bench.read("shelf/oak-1.toml")).expect("text");
+    bench.write("shelf/pine-1.toml", oak.replace("oak-1", "pine-1"));
+    let resistors = ["Rg", "Rf1", "Rf2", "R1", "R2", "R3", "R4"].map(|r| format!("{r} = \"1k\"\n")).concat();
+    let block = format!(
+        "stage = \"instrumentation\"\nname = \"A\"\npart = \"oak-1\"\n[parts]\nA1 = \"oak-1\"\nA3 = \"pine-1\"\n[components]\n{resistors}"
+    );
+    bench.write("note.md", fenced(&block));
+    let said = bench.run(&["page", "note.md"]);
+    assert_eq!(said.code, Some(0), "{}", said.err);
+    let page = &said.out;
+    assert_eq!(page.matches("shelf/pine-1.toml\",\"text\"").count(), 1);
+    assert_eq!(page.matches("shelf/oak-1.toml\",\"text\"").count(), 1);
+}
+
+#[test]
+fn a_further_part_that_cannot_be_read_is_named_where_it_stands() {
+    let bench = Bench::new("further-lost");
+    bench.write("shelf/pine-1.toml", "[part]\nname = \"pine-1\"\n[gain]\ngbw = \"1 V\"\n");
+    let resistors = ["Rg", "Rf1", "Rf2", "R1", "R2", "R3", "R4"].map(|r| format!("{r} = \"1k\"\n")).concat();
+    let block = format!("stage = \"instrumentation\"\nname = \"A\"\npart = \"oak-1\"\n[parts]\nA3 = \"pine-1\"\n[components]\n{resistors}");
+    bench.write("note.md", fenced(&block));
+    let said = bench.run(&["check", "note.md"]);
+    let wanted = "note.md:6:7: the stage “A” is not judged: its part could not be read\n  6 | A3 = \"pine-1\"\n    |       ^^^^^^\n\
+                  allowed: a part file without mistakes; those of shelf/pine-1.toml are told once";
+    assert!(said.code == Some(2) && said.err.contains(wanted), "{}", said.err);
 }
 
 #[test]

@@ -33,7 +33,7 @@ pub const fn budget(figure: Figure) -> Exactness {
         // A difference from one: it keeps the digits that the subtraction leaves.
         Figure::GainError => Absolute(1e-12),
         // A root search to the last bits on |H|², whose slope at the edge may be small.
-        Figure::Bandwidth => Relative(1e-10),
+        Figure::Bandwidth | Figure::LowCutoff => Relative(1e-10),
         // A flat maximum: its height is exact to the square of its place, and |H(0)| enters.
         Figure::Peaking | Figure::SensitivityPeak => Relative(1e-9),
         Figure::Crossover => Relative(1e-10),                                // root of |T|² = 1

@@ -2,6 +2,7 @@
 
 use serde::Deserialize;
 use stageleaf_math::{
+    analysis::margins,
     figure::{Figure, Query},
     kind::Kind,
     report::{NoiseOrigin, Outcome},
@@ -11,11 +12,20 @@ use stageleaf_math::{
 use crate::{
     budget::budget,
     ledger::{Ledger, Wanted, half_unit},
-    setup::{Amplifier, Complete, density_by_source, of_source, outcome, report, stage},
+    places::{Role, place},
+    setup::{Amplifier, Complete, density_by_source, of_source, outcome, report, solved, stage},
 };
 
 /// The tables.
-pub const TABLES: [&str; 3] = [include_str!("follower.toml"), include_str!("non_inverting.toml"), include_str!("inverting.toml")];
+pub const TABLES: [&str; 7] = [
+    include_str!("follower.toml"),
+    include_str!("non_inverting.toml"),
+    include_str!("inverting.toml"),
+    include_str!("several_inputs.toml"),
+    include_str!("shaping.toml"),
+    include_str!("transimpedance.toml"),
+    include_str!("filters.toml"),
+];
 
 #[derive(Debug, Deserialize)]
 #[serde(deny_unknown_fields)]
@@ -35,7 +45,11 @@ struct Circuit {
     temperature: f64,
     isolation: String,
     netlist: Vec<(String, String, String, String, f64)>,
-    amplifier_nodes: (String, String, String),
+    /// +, −, output pin of the only amplifier.
+    amplifier_nodes: Option<(String, String, String)>,
+    /// Name, +, −, output pin of each of several.
+    #[serde(default)]
+    amplifiers: Vec<(String, String, String, String)>,
     amplifier: Stated,
     expected: Expected,
 }
@@ -59,18 +73,51 @@ struct Stated {
 #[serde(deny_unknown_fields)]
 struct Expected {
     gain: f64,
+    low_cutoff: Option<f64>,
     bandwidth: f64,
-    peaking: f64,
-    return_ratio_at_dc: f64,
-    crossover: f64,
-    phase_margin: f64,
+    peaking: Option<f64>,
+    /// Every input's gain at DC.
+    #[serde(default)]
+    input_gains: Vec<f64>,
+    common_mode_gain: Option<f64>,
+    /// The only amplifier's loop, …
+    return_ratio_at_dc: Option<f64>,
+    crossover: Option<f64>,
+    phase_margin: Option<f64>,
     gain_margin: Option<f64>,
     phase_crossover: Option<f64>,
+    /// … or each one's.
+    #[serde(default)]
+    loops: Vec<Loop>,
     least_damped_pole: Option<Pole>,
     response: Vec<(f64, f64, f64)>,
     noise_sources: Vec<String>,
     noise_density: Vec<(f64, f64, Vec<f64>)>,
     integrated_noise: Integrated,
+}
+
+#[derive(Clone, Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+struct Loop {
+    return_ratio_at_dc: f64,
+    crossover: f64,
+    phase_margin: f64,
+    gain_margin: Option<f64>,
+    phase_crossover: Option<f64>,
+}
+
+impl Expected {
+    /// Every amplifier's loop.
+    fn loops(&self) -> Vec<Loop> {
+        let only = self.crossover.zip(self.phase_margin).zip(self.return_ratio_at_dc);
+        only.map_or_else(
+            || self.loops.clone(),
+            |((crossover, phase_margin), return_ratio_at_dc)| {
+                let (gain_margin, phase_crossover) = (self.gain_margin, self.phase_crossover);
+                vec![Loop { return_ratio_at_dc, crossover, phase_margin, gain_margin, phase_crossover }]
+            },
+        )
+    }
 }
 
 #[derive(Debug, Deserialize)]
@@ -92,36 +139,35 @@ struct Integrated {
     by_source: Vec<f64>,
 }
 
-/// What an element of a circuit is in a stage of ours.
-#[derive(Clone, Copy, Debug, PartialEq)]
-enum Role {
-    Component(&'static str),
-    SourceResistance,
-    LoadResistance,
-    LoadCapacitance,
-    StrayInverting,
-}
-
-impl Role {
-    fn origin(self) -> NoiseOrigin {
-        match self {
-            Self::Component(name) => NoiseOrigin::Component(name),
-            Self::SourceResistance => NoiseOrigin::SourceResistance(0),
-            Self::LoadResistance => NoiseOrigin::LoadResistance,
-            Self::LoadCapacitance | Self::StrayInverting => panic!("a capacitor makes no noise"),
-        }
-    }
-}
-
 impl Circuit {
     fn kind(&self) -> Kind {
         Kind::from_id(&self.kind).unwrap_or_else(|| panic!("{}: no kind is called {:?}", self.id, self.kind))
     }
 
+    /// What a node is (see [`place`]).
+    fn label(&self, node: &str) -> String {
+        if node == "0" || node == "out" || node.starts_with("in") {
+            return node.into();
+        }
+        let several = self.amplifiers.iter().zip(1..).map(|((_, plus, minus, pin), k)| (plus, minus, pin, k.to_string()));
+        let only = self.amplifier_nodes.iter().map(|(plus, minus, pin)| (plus, minus, pin, String::new()));
+        for (plus, minus, pin, number) in only.chain(several) {
+            for (name, label) in [(plus, "+"), (minus, "-"), (pin, "pin")] {
+                if name == node {
+                    return format!("{label}{number}");
+                }
+            }
+        }
+        "inner".into()
+    }
+
     /// An element's role by the nodes that it joins; its name says nothing.
     fn role(&self, element: &(String, String, String, String, f64)) -> Role {
-        let (plus, minus, pin) = (self.amplifier_nodes.0.as_str(), self.amplifier_nodes.1.as_str(), self.amplifier_nodes.2.as_str());
         let (name, sort, a, b, _) = element;
+        if let Some(role) = place(self.kind(), sort, &self.label(a), &self.label(b)) {
+            return role;
+        }
+        let (plus, minus, pin) = self.amplifier_nodes.as_ref().map_or(("", "", ""), |(plus, minus, pin)| (plus, minus, pin));
         let joins = |x: &str, y: &str| (a == x && b == y) || (a == y && b == x);
         let inside = self.isolation == "inside";
         match (sort.as_str(), self.kind()) {
@@ -160,6 +206,13 @@ impl Circuit {
             match self.role(element) {
                 Role::Component(name) => result = result.with(name, element.4),
                 Role::SourceResistance => result.sources = vec![Some(Source::Resistive { resistance: value })],
+                Role::JunctionCapacitance => {
+                    let shunt = self.netlist.iter().find(|e| self.role(e) == Role::ShuntResistance);
+                    let shunt_resistance = shunt.map(|e| Toleranced::exact(e.4));
+                    result.sources = vec![Some(Source::Photodiode { capacitance: value, shunt_resistance, dark_current: None })];
+                }
+                // Stands beside the junction's capacitance.
+                Role::ShuntResistance => {}
                 Role::LoadResistance => result.load.resistance = Some(value),
                 Role::LoadCapacitance => result.load.capacitance = Some(value),
                 Role::StrayInverting => result.board.inverting_node = Some(value),
@@ -169,14 +222,17 @@ impl Circuit {
     }
 
     fn origin(&self, source: &str) -> NoiseOrigin {
-        match source {
-            "A.en" => NoiseOrigin::AmplifierVoltage(0),
-            "A.in+" => NoiseOrigin::CurrentNonInverting(0),
-            "A.in-" => NoiseOrigin::CurrentInverting(0),
-            name => {
-                let element = self.netlist.iter().find(|e| e.0 == name);
-                self.role(element.unwrap_or_else(|| panic!("{}: no element is called {name}", self.id))).origin()
-            }
+        let Some((amplifier, generator)) = source.split_once('.') else {
+            let element = self.netlist.iter().find(|e| e.0 == source);
+            return self.role(element.unwrap_or_else(|| panic!("{}: no element is called {source}", self.id))).origin();
+        };
+        let index = self.amplifiers.iter().position(|a| a.0 == amplifier).unwrap_or(0);
+        let index = u8::try_from(index).expect("few amplifiers");
+        match generator {
+            "en" => NoiseOrigin::AmplifierVoltage(index),
+            "in+" => NoiseOrigin::CurrentNonInverting(index),
+            "in-" => NoiseOrigin::CurrentInverting(index),
+            _ => panic!("{}: {source} is no noise source", self.id),
         }
     }
 
@@ -186,6 +242,7 @@ impl Circuit {
         let mut queries: Vec<Query> = [
             Figure::Gain,
             Figure::Bandwidth,
+            Figure::LowCutoff,
             Figure::Peaking,
             Figure::Crossover,
             Figure::PhaseMargin,
@@ -210,13 +267,22 @@ impl Circuit {
         let printed = |value: f64| half_unit(value, 10);
         tell("gain", Query::of(Figure::Gain), expected.gain, printed(expected.gain));
         tell("bandwidth", Query::of(Figure::Bandwidth), expected.bandwidth, printed(expected.bandwidth));
-        let (ratio, half) = level(expected.peaking, 6);
-        tell("peaking", Query::of(Figure::Peaking), ratio, half);
-        tell("crossover", Query::of(Figure::Crossover), expected.crossover, printed(expected.crossover));
-        let margin = expected.phase_margin;
+        if let Some(frequency) = expected.low_cutoff {
+            tell("low_cutoff", Query::of(Figure::LowCutoff), frequency, printed(frequency));
+        }
+        if let Some(peaking) = expected.peaking {
+            let (ratio, half) = level(peaking, 6);
+            tell("peaking", Query::of(Figure::Peaking), ratio, half);
+        }
+        // The stage's margins are those of its worst loop.
+        let loops = expected.loops();
+        let worst = loops.iter().min_by(|a, b| a.phase_margin.total_cmp(&b.phase_margin)).expect("a stage has a loop");
+        tell("crossover", Query::of(Figure::Crossover), worst.crossover, printed(worst.crossover));
+        let margin = worst.phase_margin;
         tell("phase_margin", Query::of(Figure::PhaseMargin), margin.to_radians(), printed(margin).to_radians());
         // No −180° crossing: the return ratio may grow without bound.
-        let (ratio, half) = expected.gain_margin.map_or((f64::INFINITY, 0.0), |decibels| level(decibels, 10));
+        let bound = |one: &Loop| one.gain_margin.map_or((f64::INFINITY, 0.0), |decibels| level(decibels, 10));
+        let (ratio, half) = loops.iter().map(bound).min_by(|a, b| a.0.total_cmp(&b.0)).expect("a stage has a loop");
         tell("gain_margin", Query::of(Figure::GainMargin), ratio, half);
         if let Some(pole) = &expected.least_damped_pole {
             let (frequency, q) = (pole.frequency, 0.5 / pole.damping);
@@ -245,13 +311,8 @@ impl Circuit {
             let none = matches!(outcome(&report, Query::of(Figure::Q)), Outcome::DoesNotApply(_));
             ledger.fact(&self.id, "q", none, "the circuit has no complex poles, yet `q` is not \"does not apply\"");
         }
-        if let Some(first) = report.loop_gain.first() {
-            // The curve begins where the return ratio may have left its DC value already: an upper bound.
-            let below = first.magnitude <= expected.return_ratio_at_dc * (1.0 + 1e-9);
-            ledger.fact(&self.id, "return_ratio_at_dc", below, "the return ratio's curve begins above its value at DC");
-        }
-        let crossings = expected.phase_crossover.is_some() == expected.gain_margin.is_some();
-        ledger.fact(&self.id, "phase_crossover", crossings, "the table gives one of gain margin and its frequency alone");
+        self.compare_loops(ledger, source, &loops);
+        self.compare_drives(ledger, source);
 
         let shares: Vec<_> = report.noise_shares.iter().map(|s| (s.origin, s.rms)).collect();
         self.compare_sources(ledger, source, "rms", Figure::OutputNoise, &expected.integrated_noise.by_source, &shares);
@@ -260,6 +321,48 @@ impl Circuit {
             self.compare_sources(ledger, source, &format!("density at {frequency}"), Figure::NoiseDensityAt, by_source, &got);
         }
         ledger.fact(&self.id, "circuit", true, "");
+    }
+
+    /// Each amplifier's loop, the others alive.
+    fn compare_loops(&self, ledger: &mut Ledger, source: &str, loops: &[Loop]) {
+        let stage = self.stage();
+        for (index, one) in loops.iter().enumerate() {
+            let (found, at_dc) = solved(&stage, |s| (margins::of(s, index), s.return_ratio(index, 0.0).re));
+            let (ratio, half) = one.gain_margin.map_or((f64::INFINITY, 0.0), |decibels| level(decibels, 10));
+            let margin = one.phase_margin;
+            let printed = |value: f64| half_unit(value, 10);
+            for (name, figure, value, half, got) in [
+                ("return ratio at DC", Figure::Gain, one.return_ratio_at_dc, printed(one.return_ratio_at_dc), Some(at_dc)),
+                ("crossover", Figure::Crossover, one.crossover, printed(one.crossover), found.crossover),
+                ("phase margin", Figure::PhaseMargin, margin.to_radians(), printed(margin).to_radians(), found.phase),
+                ("gain margin", Figure::GainMargin, ratio, half, Some(found.gain)),
+            ] {
+                let name = format!("{name} of amplifier {}", index + 1);
+                let allowed = budget(figure).around(value) + half;
+                ledger.value(&Wanted { id: &self.id, name: &name, figure, value, allowed, source }, got.unwrap_or(f64::NAN));
+            }
+            let both = one.phase_crossover.is_some() == one.gain_margin.is_some();
+            ledger.fact(&self.id, "phase_crossover", both, "the table gives one of gain margin and its frequency alone");
+        }
+    }
+
+    /// What the first signal's figures do not show: every input's gain, the common mode's.
+    fn compare_drives(&self, ledger: &mut Ledger, source: &str) {
+        let stage = self.stage();
+        let inputs = self
+            .expected
+            .input_gains
+            .iter()
+            .copied()
+            .enumerate()
+            .map(|(drive, gain)| (format!("gain of input {}", drive + 1), drive, gain));
+        let common = self.expected.common_mode_gain.map(|gain| ("common-mode gain".to_owned(), 1, gain));
+        for (name, drive, value) in inputs.chain(common) {
+            // The common mode's gain is what two gains near one leave: rounding of 1e-16 of them stays.
+            let allowed = budget(Figure::Gain).around(value) + half_unit(value, 10) + 1e-13;
+            let got = solved(&stage, |s| s.dc_gain(drive));
+            ledger.value(&Wanted { id: &self.id, name: &name, figure: Figure::Gain, value, allowed, source }, got);
+        }
     }
 
     fn compare_sources(&self, ledger: &mut Ledger, source: &str, what: &str, figure: Figure, wanted: &[f64], got: &[(NoiseOrigin, f64)]) {
@@ -282,6 +385,12 @@ impl Circuit {
 fn level(decibels: f64, digits: i32) -> (f64, f64) {
     let ratio = libm::pow(10.0, decibels / 20.0);
     (ratio, ratio * half_unit(decibels, digits) * core::f64::consts::LN_10 / 20.0)
+}
+
+/// Every circuit's kind, for the count of what is covered.
+pub fn kinds() -> Vec<String> {
+    let tables = TABLES.iter().map(|text| toml::from_str::<Table>(text).unwrap_or_else(|error| panic!("{error}")));
+    tables.flat_map(|table| table.circuit).map(|circuit| circuit.kind).collect()
 }
 
 /// Compares every circuit.

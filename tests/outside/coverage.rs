@@ -3,9 +3,9 @@
 use std::collections::{BTreeMap, BTreeSet};
 
 use serde::Deserialize;
-use stageleaf_math::figure::Figure;
+use stageleaf_math::{figure::Figure, kind::Kind};
 
-use crate::{circuits, dc, gain, ledger::Ledger, loops, noise, oracle, swing};
+use crate::{circuits, dc, gain, kinds, ledger::Ledger, loops, noise, oracle, oracle_kinds, swing};
 
 /// Rows that are not checked here, with the reason.
 #[derive(Debug, Deserialize)]
@@ -33,7 +33,9 @@ fn everything() -> Ledger {
     noise::all(&mut ledger);
     dc::all(&mut ledger);
     swing::all(&mut ledger);
+    kinds::all(&mut ledger);
     oracle::all(&mut ledger);
+    oracle_kinds::all(&mut ledger);
     ledger
 }
 
@@ -76,7 +78,7 @@ fn every_listed_value_is_checked_or_stands_in_later() {
 #[test]
 fn every_row_of_the_tables_is_listed() {
     let listed: BTreeMap<String, Vec<String>> = toml::from_str(include_str!("listed.toml")).unwrap_or_else(|error| panic!("{error}"));
-    for text in [gain::TABLE, loops::TABLE, noise::TABLE, dc::TABLE, swing::TABLE] {
+    for text in [gain::TABLE, loops::TABLE, noise::TABLE, dc::TABLE, swing::TABLE, kinds::TABLE] {
         let rows = crate::table::Rows::read(text);
         for id in rows.ids() {
             assert!(listed.contains_key(id), "{id} is not in listed.toml");
@@ -93,6 +95,16 @@ fn every_figure_is_checked_against_something_outside() {
     let unchecked: Vec<_> = Figure::ALL.iter().filter(|&&figure| !ledger.has_compared(figure)).collect();
     let excused: Vec<_> = UNCHECKED.iter().map(|(figure, _)| figure).collect();
     assert_eq!(unchecked, excused, "left: without an outside check; right: excused");
+}
+
+#[test]
+fn every_kind_has_a_circuit_from_outside() {
+    let present: BTreeSet<&str> = Kind::ALL.iter().map(|kind| kind.id()).collect();
+    let solved: BTreeSet<String> = circuits::kinds().into_iter().chain(oracle::kinds()).chain(oracle_kinds::kinds()).collect();
+    let without: Vec<_> = present.iter().filter(|kind| !solved.contains(**kind)).collect();
+    assert!(without.is_empty(), "kinds without a circuit solved outside: {without:?}");
+    let unknown: Vec<_> = solved.iter().filter(|kind| !present.contains(kind.as_str())).collect();
+    assert!(unknown.is_empty(), "circuits of kinds that do not exist: {unknown:?}");
 }
 
 #[test]

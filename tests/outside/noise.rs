@@ -47,6 +47,9 @@ fn resistor(rows: &Rows, ledger: &mut Ledger) {
     let boltzmann = map(density(300.0), |v| v * v / (4.0 * 300.0 * ohms));
     // The follower's own gain error of 1/A0 = 1e-12 enters twice.
     rows.row("C001").check(ledger, "k", Figure::NoiseDensityAt, &map(boltzmann, |k| k * (1.0 + 2e-12)));
+    // Exact; that shot noise has it shows in C007.
+    let charge = stageleaf_math::analysis::noise::ELEMENTARY_CHARGE;
+    rows.row("C001").check(ledger, "q", Figure::NoiseDensityAt, &Outcome::Value(charge));
 
     let row = rows.row("C006");
     // From so low to so high that less than 1e-7 of the power is missing.

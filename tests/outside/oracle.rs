@@ -10,7 +10,7 @@ use stageleaf_math::{
     figure::{Figure, Query},
     kind::Kind,
     part::Zero,
-    report::{NoiseOrigin, Outcome, Report},
+    report::{NoiseOrigin, Outcome, Report, Root},
     stage::{Isolation, Source, Stage, Toleranced},
 };
 
@@ -51,21 +51,21 @@ struct Circuit {
 
 #[derive(Debug, Deserialize)]
 #[serde(deny_unknown_fields)]
-struct Stated {
-    open_loop: f64,
-    gbw: f64,
-    higher_poles: Vec<f64>,
-    zeros: Vec<(f64, bool)>,
-    output_resistance: f64,
-    differential_resistance: Option<f64>,
-    common_mode_resistance: Option<f64>,
-    differential_capacitance: f64,
-    common_mode_capacitance: f64,
-    voltage_noise: f64,
-    voltage_corner: f64,
-    exponent: f64,
-    current_noise: f64,
-    current_corner: f64,
+pub struct Stated {
+    pub open_loop: f64,
+    pub gbw: f64,
+    pub higher_poles: Vec<f64>,
+    pub zeros: Vec<(f64, bool)>,
+    pub output_resistance: f64,
+    pub differential_resistance: Option<f64>,
+    pub common_mode_resistance: Option<f64>,
+    pub differential_capacitance: f64,
+    pub common_mode_capacitance: f64,
+    pub voltage_noise: f64,
+    pub voltage_corner: f64,
+    pub exponent: f64,
+    pub current_noise: f64,
+    pub current_corner: f64,
 }
 
 #[derive(Debug, Deserialize)]
@@ -77,12 +77,12 @@ enum Driver {
 
 #[derive(Debug, Deserialize)]
 #[serde(deny_unknown_fields)]
-struct Values {
-    resistance: Option<f64>,
-    capacitance: Option<f64>,
-    inverting_node: Option<f64>,
-    non_inverting_node: Option<f64>,
-    across_feedback: Option<f64>,
+pub struct Values {
+    pub resistance: Option<f64>,
+    pub capacitance: Option<f64>,
+    pub inverting_node: Option<f64>,
+    pub non_inverting_node: Option<f64>,
+    pub across_feedback: Option<f64>,
 }
 
 #[derive(Debug, Deserialize)]
@@ -168,6 +168,23 @@ impl Circuit {
     }
 }
 
+/// Compares closed-loop poles, given as real and imaginary part in rad/s, those above the real axis alone.
+pub fn compare_poles(ledger: &mut Ledger, id: &str, wanted: &[(f64, f64)], got: &[Root]) {
+    for &(re, im) in wanted {
+        let size = libm::hypot(re, im);
+        let nearest = got.iter().map(|p| libm::hypot(p.re - re, p.im.abs() - im)).fold(f64::INFINITY, f64::min);
+        // Two or three poles that coincide move as the root of the rounding error.
+        let close = wanted.iter().filter(|p| libm::hypot(p.0 - re, p.1 - im) < 1e-2 * size).count();
+        let allowed = if close > 1 { 1e-4 } else { 1e-8 } * size;
+        let holds = nearest <= allowed;
+        let otherwise = format!("pole {re:e} ± j{im:e} rad/s: the nearest reported lies {:e} of it away", nearest / size);
+        ledger.fact(id, "poles", holds, &otherwise);
+    }
+    let count: usize = wanted.iter().map(|p| if p.1 > 0.0 { 2 } else { 1 }).sum();
+    let listed: usize = got.len();
+    ledger.fact(id, "pole count", count == listed, &format!("{count} poles wanted, {listed} reported: {got:?}"));
+}
+
 /// One circuit's comparisons.
 struct Comparison<'a> {
     ledger: &'a mut Ledger,
@@ -192,23 +209,6 @@ impl Comparison<'_> {
     fn is(&mut self, figure: Figure, wanted: &str, holds: impl Fn(&Outcome) -> bool) {
         let got = outcome(self.report, Query::of(figure));
         self.ledger.fact(&self.circuit.id, figure.id(), holds(&got), &format!("wanted \"{wanted}\", got {got:?}"));
-    }
-
-    fn poles(&mut self) {
-        let got = &self.report.poles;
-        for &(re, im) in &self.expected.poles {
-            let size = libm::hypot(re, im);
-            let nearest = got.iter().map(|p| libm::hypot(p.re - re, p.im.abs() - im)).fold(f64::INFINITY, f64::min);
-            // Two or three poles that coincide move as the root of the rounding error.
-            let close = self.expected.poles.iter().filter(|p| libm::hypot(p.0 - re, p.1 - im) < 1e-2 * size).count();
-            let allowed = if close > 1 { 1e-4 } else { 1e-8 } * size;
-            let holds = nearest <= allowed;
-            let otherwise = format!("pole {re:e} ± j{im:e} rad/s: the nearest reported lies {:e} of it away", nearest / size);
-            self.ledger.fact(&self.circuit.id, "poles", holds, &otherwise);
-        }
-        let count: usize = self.expected.poles.iter().map(|p| if p.1 > 0.0 { 2 } else { 1 }).sum();
-        let listed: usize = got.len();
-        self.ledger.fact(&self.circuit.id, "pole count", count == listed, &format!("{count} poles wanted, {listed} reported: {got:?}"));
     }
 
     fn margins(&mut self) {
@@ -287,7 +287,7 @@ impl Comparison<'_> {
     }
 
     fn all(&mut self) {
-        self.poles();
+        compare_poles(self.ledger, &self.circuit.id, &self.expected.poles, &self.report.poles);
         self.margins();
         if !self.expected.stable {
             for figure in [Figure::Gain, Figure::Bandwidth, Figure::OutputNoise, Figure::Q] {
@@ -329,6 +329,12 @@ impl Comparison<'_> {
         self.ledger
             .outcome(&Wanted { id: &self.circuit.id, name: &name, figure: Figure::PhaseAt, value: wanted, allowed, source: SOURCE }, &got);
     }
+}
+
+/// Every circuit's kind, for the count of what is covered.
+pub fn kinds() -> Vec<String> {
+    let rows: Vec<Row> = serde_json::from_str(TABLE).unwrap_or_else(|error| panic!("oracle.json: {error}"));
+    rows.into_iter().map(|row| row.circuit.kind).collect()
 }
 
 /// Compares every circuit.

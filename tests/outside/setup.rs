@@ -5,8 +5,10 @@ use stageleaf_math::{
     figure::{Figure, Query},
     kind::Kind,
     limit::{Bound, Limit, Thin},
+    model::Model,
     part::{Headroom, Part, PartFigure, Rating, Zero},
     report::{NoiseOrigin, Outcome, Report},
+    solution::Solution,
     stage::{Ambient, Band, Board, Component, Isolation, Load, Signal, Source, Span, Stage, Supply, Toleranced},
 };
 
@@ -217,6 +219,12 @@ pub fn map(outcome: Outcome, convert: impl Fn(f64) -> f64) -> Outcome {
         Outcome::Value(value) => Outcome::Value(convert(value)),
         other => other,
     }
+}
+
+/// The nominal build, for what no figure gives: a further signal's transfer, one of several amplifiers' loops.
+pub fn solved<T>(stage: &Stage, ask: impl FnOnce(&Solution<'_>) -> T) -> T {
+    let model = Model::compile(stage);
+    ask(&Solution::new(&model, model.parameters.nominal(), None))
 }
 
 /// Output noise density at `frequency` by source: the shares of a band so narrow that the density does not change over it.

@@ -61,7 +61,7 @@ fn by_hand(ledger: &mut Ledger) {
 }
 
 /// A stage of `kind` around an ideal amplifier between ± `rail`, with every large-signal figure stated generously.
-fn between_rails(kind: Kind, rail: f64, headroom: f64) -> Stage {
+pub fn between_rails(kind: Kind, rail: f64, headroom: f64) -> Stage {
     stage(kind, Amplifier::ideal().part())
         .at(298.15)
         .between(-rail, rail)

@@ -70,6 +70,7 @@ figures! {
     GainAt "gain_at" Gain Frequency SmallSignal "Gain at", "Magnitude of the transfer at a stated frequency.";
     PhaseAt "phase_at" Angle Frequency SmallSignal "Phase at", "Phase of the output against the source at a stated frequency, between −π and π.";
     Bandwidth "bandwidth" Frequency None SmallSignal "Bandwidth (−3 dB)", "Lowest frequency at which the transfer has fallen to 1/√2 of `gain`.";
+    LowCutoff "low_cutoff" Frequency None SmallSignal "Low cutoff (−3 dB)", "Highest frequency below the pass band at which the transfer has fallen to 1/√2 of `gain`.";
     Peaking "peaking" Level None SmallSignal "Peaking", "Largest magnitude of the transfer over frequency, relative to `gain`.";
     Crossover "crossover" Frequency None SmallSignal "Loop crossover", "Frequency at which the return ratio's magnitude is one; of several, the one with the least phase margin.";
     PhaseMargin "phase_margin" Angle None SmallSignal "Phase margin", "Angle between the return ratio at crossover and −180°; of several crossings the least.";

@@ -1,4 +1,6 @@
 //! Stage blocks: a stage with the place of every value, so that one value can be changed and everything else kept.
+//!
+//! A value's path is its table and key. Which paths a kind has, and what stands there, is listed in [`crate::paths`].
 
 use std::ops::Range;
 
@@ -32,7 +34,7 @@ impl Place {
 /// A value of a block, with its place.
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub struct Field {
-    /// Table and key: `components.Rf`, `supply.positive`, `limits.gain_at 2 MHz`, `part`.
+    /// Table and key: `components.Rf`, `signal.in2.peak`, `limits.gain_at 2 MHz`, `part` (see [`crate::paths`]).
     pub path: String,
     /// The value's text.
     pub text: String,
@@ -85,7 +87,8 @@ impl Block {
 
     /// The block's text with the value at `path` replaced, everything else kept: comments, order, spacing.
     ///
-    /// A key that is not there is added at the end of its table; a table that is not there, at the end of the text.
+    /// A key that is not there is added at the end of its table; a table that is not there, among the others in their usual
+    /// order: parts, supply, components, source, signal, reference, load, board, ambient, band, limits, measured.
     /// The value is written as a TOML string, whatever it holds.
     #[cfg(feature = "toml")]
     #[must_use]

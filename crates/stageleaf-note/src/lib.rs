@@ -5,8 +5,7 @@
 //! what is allowed and what to try; one bad block hides nothing.
 //!
 //! # What is left out
-//! Tables of kinds with several inputs or amplifiers (`[signal.in1]`, `[parts]`, `[reference]`, `[converter]`) are
-//! reported as unknown until such a kind exists. Tolerance letters of IEC 60062 (`4k7J`) are not read: write `1 %`.
+//! `[converter]` is reported as unknown. Tolerance letters of IEC 60062 (`4k7J`) are not read: write `1 %`.
 //!
 //! # Example
 //! ```
@@ -21,9 +20,12 @@
 
 pub mod block;
 pub mod decimal;
+#[cfg(feature = "toml")]
+mod driving;
 pub mod limit;
 #[cfg(feature = "markdown")]
 pub mod markdown;
+pub mod paths;
 pub mod place;
 pub mod print;
 pub mod problem;

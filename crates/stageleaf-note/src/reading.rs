@@ -1,7 +1,8 @@
 //! Reading a stage block: the whole stage, or everything that is wrong with it.
 //!
-//! Keys at the top: `stage`, `name`, `part`, `isolation`. Tables: `[components]`, `[supply]`, `[source]`, `[signal]`,
-//! `[load]`, `[ambient]`, `[band]`, `[board]`, `[limits]`, `[measured]`.
+//! Keys at the top: `stage`, `name`, `part`, `isolation`. Tables: `[parts]`, `[components]`, `[supply]`, `[source]`, `[signal]`,
+//! `[reference]`, `[load]`, `[ambient]`, `[band]`, `[board]`, `[limits]`, `[measured]`. Which of `[parts]`, `[source]`, `[signal]` and
+//! `[reference]` a stage takes, and with which keys, depends on its kind.
 
 use std::{collections::BTreeSet, ops::Range};
 
@@ -16,6 +17,7 @@ use stageleaf_math::{
 
 use crate::{
     block::{Block, Measured, Place},
+    driving::{self, Driving, Inputs},
     limit::parse_limit,
     problem::{Problem, nearest, quoted},
     quantity::Trouble,
@@ -26,6 +28,7 @@ use crate::{
     table::{Entry, Reader, entries, shown, toml_string},
     terms::{parse_span, toleranced},
     unit,
+    words::kind_text,
 };
 
 const KEYS: &[&str] = &[
@@ -33,10 +36,12 @@ const KEYS: &[&str] = &[
     "name",
     "part",
     "isolation",
+    "parts",
     "components",
     "supply",
     "source",
     "signal",
+    "reference",
     "load",
     "ambient",
     "band",
@@ -69,11 +74,13 @@ pub(crate) fn read_named(text: &str, place: &Place, shelf: &Shelf, settings: &Se
     let part = part(&mut reader, find("part"), &start, shelf);
     let isolation = find("isolation").and_then(|e| reader.word(&e, "isolation", &["outside", "inside"]));
     let isolation = if isolation == Some("inside") { Isolation::InsideLoop } else { Isolation::OutsideLoop };
-    let components = components(&mut reader, find("components"), &start, kind, settings);
+    let parts = kind.map_or_else(Vec::new, |kind| parts(&mut reader, find("parts"), kind, shelf));
+    let (components, named) = components(&mut reader, find("components"), &start, kind, settings);
     if let Some(entry) = find("isolation").filter(|_| kind.is_some() && !components.iter().any(|c| c.name == "Riso")) {
         reader.missing(entry.key_range(), "`isolation` says where `Riso` stands, and there is no `Riso`", "`Riso` under [components]");
     }
     let around = surroundings::read(&mut reader, &find, settings);
+    let driving = kind.map_or_else(Driving::default, |kind| driving::read(&mut reader, &find, &start, &Inputs::of(kind, &named)));
     let limits = limits(&mut reader, find("limits"), kind, settings);
     let measured = measured(&mut reader, find("measured"), kind);
 
@@ -87,11 +94,11 @@ pub(crate) fn read_named(text: &str, place: &Place, shelf: &Shelf, settings: &Se
         part,
         isolation,
         supply: around.supply,
-        sources: vec![around.source],
-        signals: vec![around.signal],
-        common_mode: None,
-        reference: None,
-        parts: Vec::new(),
+        sources: driving.sources,
+        signals: driving.signals,
+        common_mode: driving.common_mode,
+        reference: driving.reference,
+        parts,
         load: around.load,
         board: around.board,
         ambient: around.ambient,
@@ -110,7 +117,7 @@ pub(crate) fn read_named(text: &str, place: &Place, shelf: &Shelf, settings: &Se
 
 fn stage_kind(reader: &mut Reader<'_>, entry: Option<Entry<'_>>, start: &Range<usize>) -> Option<Kind> {
     let ids: Vec<&str> = Kind::ALL.iter().map(|k| k.id()).collect();
-    let allowed = listed(&ids);
+    let allowed = ids.iter().map(|id| format!("`{id}`")).collect::<Vec<_>>().join(", ");
     let Some(entry) = entry else {
         reader.missing(start.clone(), "`stage` is missing", allowed);
         return None;
@@ -143,6 +150,43 @@ fn stage_name(reader: &mut Reader<'_>, entry: Option<Entry<'_>>, start: &Range<u
 }
 
 fn part(reader: &mut Reader<'_>, entry: Option<Entry<'_>>, start: &Range<usize>, shelf: &Shelf) -> Option<Part> {
+    match entry {
+        Some(entry) => from_shelf(reader, &entry, "part", shelf),
+        None => {
+            reader.missing(start.clone(), "`part` is missing", on_shelf(shelf).1);
+            None
+        }
+    }
+}
+
+/// `[parts]`: amplifiers whose part is another than `part`.
+fn parts<'a>(reader: &mut Reader<'a>, entry: Option<Entry<'a>>, kind: Kind, shelf: &Shelf) -> Vec<(usize, Part)> {
+    let Some(entry) = entry else { return Vec::new() };
+    let count = kind.spec().amplifiers;
+    if count < 2 {
+        reader.problem(
+            entry.key_range(),
+            format!("{} has one amplifier, whose part is `part`", kind_text(kind)),
+            "`part` above the tables",
+            None,
+        );
+        return Vec::new();
+    }
+    let names: Vec<String> = (1..=count).map(|n| format!("A{n}")).collect();
+    let mut found = Vec::new();
+    for entry in reader.table(&entry).map(entries).unwrap_or_default() {
+        let Some(place) = names.iter().position(|n| n == entry.key) else {
+            let names: Vec<&str> = names.iter().map(String::as_str).collect();
+            reader.unknown(&entry, format!("{} has no amplifier `{}`", kind_text(kind), shown(entry.key)), &names);
+            continue;
+        };
+        found.extend(from_shelf(reader, &entry, &format!("parts.{}", entry.key), shelf).map(|part| (place + 1, part)));
+    }
+    found
+}
+
+/// The ids of the shelf's parts, and what is allowed where one is named.
+fn on_shelf(shelf: &Shelf) -> (Vec<&str>, String) {
     let mut ids: Vec<&str> = shelf.parts.iter().map(|p| p.part.id.as_str()).collect();
     ids.sort_unstable();
     let allowed = if ids.is_empty() {
@@ -150,36 +194,38 @@ fn part(reader: &mut Reader<'_>, entry: Option<Entry<'_>>, start: &Range<usize>,
     } else {
         format!("on the shelf: {}", listed(&ids))
     };
-    let Some(entry) = entry else {
-        reader.missing(start.clone(), "`part` is missing", allowed);
-        return None;
-    };
-    let text = reader.text(&entry, "part")?;
+    (ids, allowed)
+}
+
+fn from_shelf(reader: &mut Reader<'_>, entry: &Entry<'_>, path: &str, shelf: &Shelf) -> Option<Part> {
+    let text = reader.text(entry, path)?;
     if let Some(found) = shelf.find(&text.text) {
         return Some(found.part.clone());
     }
-    let attempt = nearest(&text.text, ids).map(|id| format!("part = {}", toml_string(id)));
+    let (ids, allowed) = on_shelf(shelf);
+    let attempt = nearest(&text.text, ids).map(|id| format!("{} = {}", entry.key, toml_string(id)));
     reader.problem(text.whole, format!("no part on the shelf is called {}", quoted(&text.text)), allowed, attempt);
     None
 }
 
+/// The components, and the names of all that were given, also of those whose value cannot be read.
 fn components<'a>(
     reader: &mut Reader<'a>,
     entry: Option<Entry<'a>>,
     start: &Range<usize>,
     kind: Option<Kind>,
     settings: &Settings,
-) -> Vec<Component> {
-    let Some(kind) = kind else { return Vec::new() };
+) -> (Vec<Component>, Vec<&'static str>) {
+    let Some(kind) = kind else { return (Vec::new(), Vec::new()) };
     let specs = kind.components();
-    let kind_name = kind.spec().title.to_lowercase();
+    let kind_name = kind_text(kind);
     let names: Vec<&str> = specs.iter().map(|s| s.name).collect();
     let mut found = Vec::new();
-    let mut given: Vec<(&str, Range<usize>)> = Vec::new();
+    let mut given: Vec<(&'static str, Range<usize>)> = Vec::new();
     let table = entry.and_then(|e| reader.table(&e).map(entries)).unwrap_or_default();
     for entry in &table {
         let Some(spec) = specs.iter().find(|s| s.name == entry.key) else {
-            reader.unknown(entry, format!("{} has no component `{}`", article(&kind_name), shown(entry.key)), &names);
+            reader.unknown(entry, format!("{kind_name} has no component `{}`", shown(entry.key)), &names);
             continue;
         };
         given.push((spec.name, entry.key_range()));
@@ -199,7 +245,9 @@ fn components<'a>(
     }
     let header = entry.map_or(start.clone(), |e| e.key_range());
     for spec in specs.iter().filter(|s| s.required && !given.iter().any(|(n, _)| *n == s.name)) {
-        let message = format!("`{}` is missing: {} has its {}", spec.name, article(&kind_name), spec.role);
+        // "has its feedback resistor", "has it from the + input to ground".
+        let its = if spec.role.starts_with("from ") { "it" } else { "its" };
+        let message = format!("`{}` is missing: {kind_name} has {its} {}", spec.name, spec.role);
         let example =
             if spec.dimension == Dimension::Resistance { "with its value as `91k 1% 50ppm`" } else { "with its value as `100n 5%`" };
         reader.missing(header.clone(), message, format!("`{}` under [components], {example}", spec.name));
@@ -213,7 +261,21 @@ fn components<'a>(
             reader.missing(range.clone(), message, format!("`{}` ({}) and `{other}` together", spec.name, spec.role));
         }
     }
-    found
+    let given_names: Vec<&'static str> = given.iter().map(|(n, _)| *n).collect();
+    for (name, range) in &given {
+        // The inputs of a summing stage are numbered without a gap; that one of the first two is missing has been told.
+        let before = input_number(kind, name).filter(|n| *n > 3).map(|n| format!("Rin{}", n - 1));
+        if let Some(before) = before.filter(|b| !given_names.contains(&b.as_str())) {
+            let message = format!("`{name}` needs `{before}`, which is not there: inputs are numbered without a gap");
+            reader.missing(range.clone(), message, format!("`Rin1`, `Rin2` and so on up to `{name}`"));
+        }
+    }
+    (found, given_names)
+}
+
+/// The number of the input whose resistor this is.
+fn input_number(kind: Kind, name: &str) -> Option<usize> {
+    if kind == Kind::Summing { name.strip_prefix("Rin")?.parse().ok() } else { None }
 }
 
 fn limits<'a>(reader: &mut Reader<'a>, entry: Option<Entry<'a>>, kind: Option<Kind>, settings: &Settings) -> Vec<Limit> {
@@ -301,7 +363,7 @@ fn query(reader: &mut Reader<'_>, entry: &Entry<'_>) -> Option<stageleaf_math::f
 
 /// Where a value stands that the engine refuses.
 fn place_of(reader: &Reader<'_>, error: &Error) -> Option<Range<usize>> {
-    let what = match error {
+    let what: &str = match error {
         Error::NotPositive { what, .. }
         | Error::Negative { what, .. }
         | Error::MissingComponent { what }
@@ -309,7 +371,11 @@ fn place_of(reader: &Reader<'_>, error: &Error) -> Option<Range<usize>> {
         Error::Unpaired { given, .. } => given,
         Error::SupplyReversed { .. } => "supply.positive",
     };
-    let fits = |path: &str| path == what || path.rsplit_once('.').is_some_and(|(_, key)| key == what);
+    // The engine names `signal.peak`, whichever signal is meant.
+    let fits = |path: &str| {
+        let Some((table, key)) = path.rsplit_once('.') else { return path == what };
+        path == what || key == what || table.split_once('.').is_some_and(|(outer, _)| format!("{outer}.{key}") == what)
+    };
     reader.fields.iter().find(|f| fits(&f.path)).map(|f| f.whole.clone())
 }
 
@@ -333,16 +399,13 @@ pub const fn takes(d: Dimension) -> &'static str {
         Dimension::Resistance => "takes a resistance",
         Dimension::Capacitance => "takes a capacitance",
         Dimension::Voltage => "takes a voltage",
+        Dimension::Current => "takes a current",
+        Dimension::Charge => "takes a charge",
         Dimension::Frequency => "takes a frequency",
         Dimension::Temperature => "takes a temperature",
         Dimension::Fraction => "takes a fraction",
         _ => "takes a quantity",
     }
-}
-
-fn article(noun: &str) -> String {
-    let vowel = noun.starts_with(['a', 'e', 'i', 'o', 'u']);
-    format!("{} {noun}", if vowel { "an" } else { "a" })
 }
 
 /// Names in backticks, at most a dozen of them.

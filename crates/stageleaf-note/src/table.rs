@@ -217,12 +217,16 @@ impl<'a> Reader<'a> {
 
     /// The value as a table.
     pub fn table<'t>(&mut self, entry: &Entry<'t>) -> Option<&'t DeTable<'t>> {
+        self.table_called(entry.key, entry)
+    }
+
+    /// The value as a table whose header is `[name]`.
+    pub fn table_called<'t>(&mut self, name: &str, entry: &Entry<'t>) -> Option<&'t DeTable<'t>> {
         if let DeValue::Table(table) = entry.value.get_ref() {
             return Some(table);
         }
-        let key = shown(entry.key).into_owned();
-        let message = format!("`{key}` is a table; {} was given", kind(entry.value.get_ref()));
-        self.problem(entry.value.span(), message, format!("`[{key}]` on a line of its own, its keys below"), None);
+        let message = format!("`{}` is a table; {} was given", shown(entry.key), kind(entry.value.get_ref()));
+        self.problem(entry.value.span(), message, format!("`[{}]` on a line of its own, its keys below", shown(name)), None);
         None
     }
 

@@ -56,7 +56,7 @@ pub(crate) fn toleranced(text: &str, d: Dimension) -> Result<(Toleranced, bool),
             }
             _ if sign != Sign::None && !suffix.is_empty() => {
                 let absolute = read(body, d).map_err(|t| extended(t.shifted(start), d))?.value;
-                set(sign, absolute / value.nominal, &mut minus, &mut plus)
+                set(sign, absolute / value.nominal.abs(), &mut minus, &mut plus)
             }
             "" => {
                 let group = body.len() == 3 && text[..range.start].trim_end().ends_with(|c: char| c.is_ascii_digit());

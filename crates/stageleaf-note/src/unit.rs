@@ -22,7 +22,7 @@ pub enum Reading {
 }
 
 /// Every dimension, in the order in which a foreign unit is recognised.
-pub const DIMENSIONS: [Dimension; 21] = [
+pub const DIMENSIONS: [Dimension; 23] = [
     Dimension::Voltage,
     Dimension::Current,
     Dimension::Resistance,
@@ -30,6 +30,8 @@ pub const DIMENSIONS: [Dimension; 21] = [
     Dimension::Frequency,
     Dimension::Time,
     Dimension::Power,
+    Dimension::Charge,
+    Dimension::VoltsPerCoulomb,
     Dimension::Fraction,
     Dimension::Level,
     Dimension::Gain,
@@ -131,7 +133,10 @@ pub fn reading(suffix: &str, d: Dimension) -> Option<Reading> {
         Dimension::Current => power(prefixed(s, "A")),
         Dimension::Power => power(prefixed(s, "W")),
         Dimension::Charge => power(prefixed(s, "C")),
-        Dimension::VoltsPerCoulomb => power(s.strip_suffix("/C").and_then(|volts| prefixed(volts, "V"))),
+        Dimension::VoltsPerCoulomb => {
+            let (volts, coulombs) = s.split_once('/')?;
+            power(prefixed(volts, "V").zip(prefixed(coulombs, "C")).map(|(v, q)| v - q))
+        }
         Dimension::ThermalResistance => matches!(s, "K/W" | "°C/W" | "degC/W").then_some(Reading::Power(0)),
         Dimension::SlewRate => {
             let (volts, seconds) = s.split_once('/')?;
@@ -221,7 +226,7 @@ pub const fn allowed(d: Dimension) -> &'static str {
         Dimension::Current => "amperes, as `25 mA`, `3 pA`",
         Dimension::Power => "watts, as `0.25 W`, `125 mW`",
         Dimension::Charge => "coulombs, as `10 pC`",
-        Dimension::VoltsPerCoulomb => "volts per coulomb, as `-10 GV/C`",
+        Dimension::VoltsPerCoulomb => "volts per coulomb, as `-10 GV/C`, `-10 mV/pC`",
         Dimension::Temperature => "degrees Celsius or kelvins, as `25 °C`, `298.15 K`",
         Dimension::TemperatureDifference => "kelvins, as `10 K`, `10 °C`",
         Dimension::ThermalResistance => "kelvins per watt, as `120 K/W`, `120 °C/W`",
@@ -250,7 +255,7 @@ pub fn spellings(d: Dimension) -> &'static [&'static str] {
         Dimension::Current => &["A"],
         Dimension::Power => &["W"],
         Dimension::Charge => &["C"],
-        Dimension::VoltsPerCoulomb => &["V/C"],
+        Dimension::VoltsPerCoulomb => &["V/C", "V/pC", "V/nC"],
         Dimension::Temperature => &["°C", "degC", "K"],
         Dimension::TemperatureDifference => &["K", "°C", "degC"],
         Dimension::ThermalResistance => &["K/W", "°C/W"],
@@ -266,8 +271,7 @@ pub fn spellings(d: Dimension) -> &'static [&'static str] {
 /// One spelling for each symbol: no spaces, one micro, one omega, one degree Celsius, ASCII roots as the sign.
 fn simplified(suffix: &str) -> Cow<'_, str> {
     let plain = |b: u8| b.is_ascii_alphabetic() || b == b'%' || b == b'/';
-    if suffix.bytes().all(plain) && !suffix.contains("/us") && !suffix.contains("/uV") && !suffix.contains("/rt") && !suffix.contains("/sq")
-    {
+    if suffix.bytes().all(plain) && !suffix.contains("/u") && !suffix.contains("/rt") && !suffix.contains("/sq") {
         return Cow::Borrowed(suffix);
     }
     let mut s = String::with_capacity(suffix.len() + 2);
@@ -287,6 +291,7 @@ fn simplified(suffix: &str) -> Cow<'_, str> {
         s.push_str(&match tail.as_str() {
             "/us" => "/µs".into(),
             "/uV" => "/µV".into(),
+            "/uC" => "/µC".into(),
             "/rtHz" | "/sqrt(Hz)" | "/sqrtHz" | "/Hz^0.5" | "/Hz^½" => "/√Hz".into(),
             _ => tail,
         });

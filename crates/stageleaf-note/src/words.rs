@@ -2,6 +2,7 @@
 
 use stageleaf_math::{
     dimension::Dimension,
+    kind::Kind,
     part::{PartFigure, Rating},
     report::{Caution, DcCause, Need, NoiseOrigin, Outcome, Parameter},
 };
@@ -10,6 +11,27 @@ use crate::{
     print::{format, trimmed},
     unit,
 };
+
+/// A kind in a sentence: "a non-inverting stage", "an integrator", "a Sallen–Key low-pass".
+#[must_use]
+pub fn kind_text(kind: Kind) -> String {
+    let noun = kind_noun(kind);
+    let vowel = noun.starts_with(['a', 'e', 'i', 'o', 'u', 'A']);
+    format!("{} {noun}", if vowel { "an" } else { "a" })
+}
+
+/// The same without its article.
+#[must_use]
+pub fn kind_noun(kind: Kind) -> String {
+    let title = kind.spec().title;
+    let mut letters = title.chars();
+    let first = letters.next().unwrap_or_default();
+    // Initials and names stay: "AC-coupled", "Sallen–Key".
+    if letters.clone().next().is_some_and(char::is_uppercase) || title.starts_with("Sallen") {
+        return title.to_owned();
+    }
+    first.to_lowercase().chain(letters).collect()
+}
 
 /// What varies, as a corner or a verdict names it: "Rf", "positive supply", "gain-bandwidth product (gain.gbw)".
 #[must_use]

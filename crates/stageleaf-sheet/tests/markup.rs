@@ -292,3 +292,61 @@ fn readings_walk_along_every_plot() {
     }
     assert_eq!(plot::reading(&sheet, "no such plot", 0), None);
 }
+
+#[test]
+fn a_response_is_plotted_in_the_unit_of_the_kinds_gain() {
+    // 20·log10(20.3) = 26.15, by hand.
+    for (kind, title, head, least, most, text) in [
+        (Kind::Inverting, "magnitude, dB", "\"magnitude (dB)\"", 26.14, 26.16, "26.15 dB"),
+        (Kind::Transimpedance, "transimpedance, Ω", "\"magnitude (Ω)\"", 20.29, 20.31, "20.3 Ω"),
+        (Kind::Charge, "charge gain, V/C", "\"magnitude (V/C)\"", 20.29, 20.31, "20.3 V/C"),
+    ] {
+        let sample = usual(kind);
+        let sheet = Sheet { block: &sample.0, report: &sample.1, part: &sample.2, id: "s" };
+        let chart = plot::chart(&sheet, "response-magnitude").unwrap();
+        assert_eq!(chart.title, title);
+        let csv = plot::csv(&chart);
+        let mut lines = csv.lines();
+        assert_eq!(lines.next(), Some(format!("frequency (Hz),{head}").as_str()));
+        let first: f64 = lines.next().unwrap().split(',').nth(1).unwrap().parse().unwrap();
+        assert!((least..most).contains(&first), "{kind:?}: {first}");
+        assert_eq!(plot::reading(&sheet, "response-magnitude", 0).unwrap().text, format!("1.00 Hz: magnitude {text}"));
+        // The response falls off over decades, and no curve runs along the frame.
+        let places: Vec<f64> = chart.curves[0].y.iter().map(|v| chart.y_axis.place(*v)).collect();
+        assert!(places[0] < 0.98 && places[0] > 0.5, "{kind:?}: {}", places[0]);
+    }
+}
+
+#[test]
+fn both_edges_of_a_pass_band_are_marked_and_their_words_keep_apart() {
+    use stageleaf_math::figure::Figure;
+    // A narrow band in the middle, a wide one, and bands at either end of the axis (1 Hz to 100 MHz).
+    for (low, high) in [(27.9e3, 37.8e3), (99.6, 2.7e6), (2.0, 3.0), (2e7, 6e7), (3.0, 5e7), (1e3, 2e6)] {
+        let mut sample = usual(Kind::MultipleFeedbackBandPass);
+        for row in &mut sample.1.figures {
+            match row.query.figure {
+                Figure::LowCutoff => row.nominal = Outcome::Value(low),
+                Figure::Bandwidth => row.nominal = Outcome::Value(high),
+                _ => {}
+            }
+        }
+        let html = rendered(&sample);
+        let plot = html.split("data-plot=\"response-magnitude\"").nth(1).unwrap().split("</figure>").next().unwrap();
+        let words: Vec<(f64, f64, bool)> = plot
+            .split("<text class=\"mark\" ")
+            .skip(1)
+            .map(|t| {
+                let attribute = |name: &str| t.split(&format!("{name}=\"")).nth(1).unwrap().split('"').next().unwrap();
+                (attribute("x").parse().unwrap(), attribute("y").parse().unwrap(), attribute("text-anchor") == "end")
+            })
+            .collect();
+        let [a, b] = words[..] else { panic!("{low} to {high}: {} marks", words.len()) };
+        // 17 characters of 13 units' height are at most 120 wide.
+        let span = |(x, _, end): (f64, f64, bool)| if end { (x - 120.0, x) } else { (x, x + 120.0) };
+        let apart = span(a).1 <= span(b).0 || span(b).1 <= span(a).0 || (a.1 - b.1).abs() >= 14.0;
+        assert!(apart, "{low} to {high}: {a:?} and {b:?}");
+        for (from, to) in [span(a), span(b)] {
+            assert!(from > 50.0 && to < 420.0, "{low} to {high}: words from {from} to {to}");
+        }
+    }
+}

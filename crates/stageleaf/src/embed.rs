@@ -23,7 +23,7 @@ use std::{
 };
 
 use serde_json::{Value, json};
-use stageleaf_note::{Block, Problem, ShelfPart, read_note, slug};
+use stageleaf_note::{Block, Problem, Shelf, ShelfPart, read_note, slug};
 use stageleaf_sheet::Sheet;
 
 use crate::team::{SETTINGS_FILE, Team, Teams};
@@ -169,26 +169,40 @@ fn sheet(block: &Block, team: &Team, settings: Option<&SettingsText>, ids: &mut 
         count += 1;
         id = format!("{base}-{count}");
     }
-    match element(block, part, &id, settings) {
+    match element(block, part, &team.shelf, &id, settings) {
         Ok(markup) => format!("<div class=\"stageleaf\">{markup}</div>"),
         Err(error) => trouble(&format!("{}:{}: {error}", block.file, block.line)),
     }
 }
 
-/// The element with its static sheet and the data that the script needs: one line of HTML.
+/// The element with its static sheet and the data that the script needs: one line of HTML. The shelf gives the parts of further
+/// amplifiers.
 ///
 /// # Errors
 /// What makes the stage one that cannot be analysed.
-pub fn element(block: &Block, part: &ShelfPart, id: &str, settings: Option<&SettingsText>) -> Result<String, stageleaf_math::Error> {
+pub fn element(
+    block: &Block,
+    part: &ShelfPart,
+    shelf: &Shelf,
+    id: &str,
+    settings: Option<&SettingsText>,
+) -> Result<String, stageleaf_math::Error> {
     let report = stageleaf_math::analyse(&block.stage)?;
     let body = stageleaf_sheet::render(&Sheet { block, report: &report, part, id });
-    let data = json!({
+    let mut data = json!({
         "block": block.text,
         "file": block.file,
         "line": block.line,
         "part": { "file": part.file, "text": part.text },
         "settings": settings.map(|s| json!({ "file": s.file, "text": s.text })),
     });
+    let mut further: Vec<&str> = block.stage.parts.iter().map(|(_, p)| p.id.as_str()).filter(|id| *id != part.part.id).collect();
+    further.sort_unstable();
+    further.dedup();
+    if !further.is_empty() {
+        let parts = further.iter().filter_map(|id| shelf.find(id)).map(|p| json!({ "file": p.file, "text": p.text }));
+        data["shelf"] = Value::Array(parts.collect());
+    }
     Ok(format!("<stageleaf-sheet data-sheet=\"{}\">{body}{}</stageleaf-sheet>", escape(id), data_script(&data)))
 }
 

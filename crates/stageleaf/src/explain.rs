@@ -7,6 +7,7 @@ use stageleaf_math::{
     NOT_MODELLED,
     dimension::Dimension,
     figure::{Argument, Figure, Group},
+    kind::Kind,
 };
 use stageleaf_note::problem::nearest;
 
@@ -32,6 +33,9 @@ pub fn text(options: &Options) -> Result<String, Fault> {
     let mut text = format!("{}: {}\n\n{}\n\n", figure.id(), figure.title(), figure.meaning());
     let write = |text: &mut String, label: &str, value: &str| writeln!(text, "  {label:<10}{value}").expect("a string takes all");
     write(&mut text, "unit", unit_words(figure.dimension()));
+    for (kinds, dimension) in other_dimensions(*figure) {
+        write(&mut text, "", &format!("{} in a stage of kind {kinds}", unit_words(dimension)));
+    }
     write(&mut text, "group", group_words(figure.group()));
     match figure.argument() {
         Argument::None => write(&mut text, "limit", &format!("{} = \"…\"", figure.id())),
@@ -42,6 +46,11 @@ pub fn text(options: &Options) -> Result<String, Fault> {
         writeln!(text, "  {what}").expect("a string takes all");
     }
     Ok(text)
+}
+
+/// Kinds on which the figure measures something else, and what: a gain in Ω.
+fn other_dimensions(figure: Figure) -> Vec<(&'static str, Dimension)> {
+    Kind::ALL.iter().map(|k| (k.id(), figure.dimension_in(*k))).filter(|(_, d)| *d != figure.dimension()).collect()
 }
 
 fn list() -> String {

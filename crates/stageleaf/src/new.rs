@@ -5,6 +5,7 @@ use stageleaf_math::kind::Kind;
 use stageleaf_note::{
     problem::nearest,
     template::{PLACEHOLDER_PART, template_for},
+    words::kind_noun,
 };
 
 use crate::fault::Fault;
@@ -29,7 +30,7 @@ pub struct Options {
 /// When there is no such kind.
 pub fn block(options: &Options) -> Result<String, Fault> {
     let kind = Kind::from_id(&options.kind).ok_or_else(|| unknown(&options.kind))?;
-    let name = options.name.clone().unwrap_or_else(|| format!("New {}", kind.spec().title.to_lowercase()));
+    let name = options.name.clone().unwrap_or_else(|| format!("New {}", kind_noun(kind)));
     let text = template_for(kind, &name, options.part.as_deref().unwrap_or(PLACEHOLDER_PART));
     Ok(format!("```stageleaf\n{text}```\n"))
 }

@@ -110,7 +110,7 @@ fn element(block: &Block, team: &Team, settings: Option<&SettingsText>) -> Resul
     let at = |message: String| Fault::path(format!("{}:{}", block.file, block.line), message);
     let part =
         team.shelf.find(&block.stage.part.id).ok_or_else(|| at(format!("the part `{}` is not on the shelf", block.stage.part.id)))?;
-    let element = embed::element(block, part, &slug(&block.stage.name), settings).map_err(|error| at(error.to_string()))?;
+    let element = embed::element(block, part, &team.shelf, &slug(&block.stage.name), settings).map_err(|error| at(error.to_string()))?;
     Ok(format!("<div class=\"stageleaf\">{element}</div>\n"))
 }
 

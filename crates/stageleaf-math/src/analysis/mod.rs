@@ -32,6 +32,7 @@ pub const fn touched_by(figure: Figure) -> u8 {
         | F::GainAt
         | F::PhaseAt
         | F::Bandwidth
+        | F::LowCutoff
         | F::Peaking
         | F::Crossover
         | F::PhaseMargin
@@ -75,6 +76,7 @@ pub fn lacking(solution: &Solution<'_>, query: Query) -> Option<Outcome> {
         F::GainAt
         | F::PhaseAt
         | F::Bandwidth
+        | F::LowCutoff
         | F::Peaking
         | F::Crossover
         | F::PhaseMargin
@@ -145,6 +147,10 @@ pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
             libm::atan2(h.im, h.re)
         }
         F::Bandwidth => response::edges(solution).bandwidth,
+        F::LowCutoff => match response::edges(solution).low_cutoff {
+            f if f > 0.0 => f,
+            _ => return Outcome::DoesNotApply("the response reaches down to DC"),
+        },
         F::Peaking => response::edges(solution).peaking,
         F::Crossover => match margins::margins(solution).crossover {
             Some(f) => f,

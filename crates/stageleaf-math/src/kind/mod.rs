@@ -1,8 +1,22 @@
 //! The stage kinds. Each has a file of its own: network, ideal closed form with its source, component names and roles.
 
+pub mod ac_inverting;
+pub mod ac_non_inverting;
+pub mod charge;
+pub mod difference;
+pub mod differentiator;
 pub mod follower;
+pub mod instrumentation;
+pub mod integrator;
 pub mod inverting;
+pub mod multiple_feedback_band_pass;
+pub mod multiple_feedback_low_pass;
 pub mod non_inverting;
+pub mod sallen_key_high_pass;
+pub mod sallen_key_low_pass;
+pub mod scale_and_shift;
+pub mod summing;
+pub mod transimpedance;
 
 use alloc::{vec, vec::Vec};
 use core::f64::consts::TAU;
@@ -186,6 +200,17 @@ fn ideal(formula: &'static str, names: &[&'static str], stage: &Stage) -> Workin
     line(Figure::Gain, formula, numbers(stage, names), (stage.kind.spec().ideal_gain)(stage), REAL_AMPLIFIER)
 }
 
+/// What a real amplifier does to a filter's frequency and Q.
+const FINITE_BANDWIDTH: &str = "the amplifier's finite gain-bandwidth product, output resistance and input capacitance";
+
+/// Frequency and Q of a second-order section.
+fn second_order(stage: &Stage, formulas: [&'static str; 2], names: &[&'static str], f0: f64, q: f64) -> [Working; 2] {
+    [
+        line(Figure::NaturalFrequency, formulas[0], numbers(stage, names), f0, FINITE_BANDWIDTH),
+        line(Figure::Q, formulas[1], numbers(stage, names), q, FINITE_BANDWIDTH),
+    ]
+}
+
 /// The main part's nominal gain-bandwidth product; not a number where it is not stated.
 fn gbw(stage: &Stage) -> f64 {
     stage.part.rating(PartFigure::Gbw).nominal(PartFigure::Gbw.worse()).unwrap_or(f64::NAN)
@@ -245,6 +270,34 @@ kinds! {
     NonInverting non_inverting;
     /// Gain `−Rf/Rin`.
     Inverting inverting;
+    /// Gains `−Rf/Rin1`, `−Rf/Rin2`, … added.
+    Summing summing;
+    /// The difference of two inputs.
+    Difference difference;
+    /// The difference of two inputs, both at high impedance, with three amplifiers.
+    Instrumentation instrumentation;
+    /// A current to a voltage.
+    Transimpedance transimpedance;
+    /// A charge to a voltage.
+    Charge charge;
+    /// The integral of the input.
+    Integrator integrator;
+    /// The slope of the input.
+    Differentiator differentiator;
+    /// Gain and an offset from a reference.
+    ScaleAndShift scale_and_shift;
+    /// Non-inverting, coupled by capacitors, biased at a fraction of one supply.
+    AcNonInverting ac_non_inverting;
+    /// Inverting, coupled by capacitors, biased at a fraction of one supply.
+    AcInverting ac_inverting;
+    /// Second-order low-pass around a follower or a gain.
+    SallenKeyLowPass sallen_key_low_pass;
+    /// Second-order high-pass around a follower or a gain.
+    SallenKeyHighPass sallen_key_high_pass;
+    /// Second-order inverting low-pass.
+    MultipleFeedbackLowPass multiple_feedback_low_pass;
+    /// Second-order inverting band-pass.
+    MultipleFeedbackBandPass multiple_feedback_band_pass;
 }
 
 impl Kind {

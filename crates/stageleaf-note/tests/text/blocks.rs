@@ -142,7 +142,7 @@ fn unknown_keys_tables_components_and_kinds() {
         r#"notes/a.md:40:2: a stage block has no key `bnd`
   40 | [bnd]
      |  ^^^
-allowed: `stage`, `name`, `part`, `isolation`, `components`, `supply`, `source`, `signal`, `load`, `ambient`, `band`, `board`, `limits`, `measured`
+allowed: `stage`, `name`, `part`, `isolation`, `parts`, `components`, `supply`, `source`, `signal`, `reference`, `load`, `ambient`, `band`, `board`, `limits`, `measured`
 try: band"#
     );
     assert_eq!(
@@ -170,7 +170,7 @@ try: resistance"#
         r#"notes/a.md:10:9: no stage kind is called "non-invertng"
   10 | stage = "non-invertng"
      |         ^^^^^^^^^^^^^^
-allowed: `follower`, `non-inverting`, `inverting`
+allowed: `follower`, `non-inverting`, `inverting`, `summing`, `difference`, `instrumentation`, `transimpedance`, `charge`, `integrator`, `differentiator`, `scale-and-shift`, `ac-non-inverting`, `ac-inverting`, `sallen-key-low-pass`, `sallen-key-high-pass`, `multiple-feedback-low-pass`, `multiple-feedback-band-pass`
 try: stage = "non-inverting""#
     );
     assert_eq!(
@@ -217,7 +217,7 @@ allowed: `Riso` under [components]"#
         "notes/a.md:10:1: `stage` is missing
   10 | 
      | ^
-allowed: `follower`, `non-inverting`, `inverting`
+allowed: `follower`, `non-inverting`, `inverting`, `summing`, `difference`, `instrumentation`, `transimpedance`, `charge`, `integrator`, `differentiator`, `scale-and-shift`, `ac-non-inverting`, `ac-inverting`, `sallen-key-low-pass`, `sallen-key-high-pass`, `multiple-feedback-low-pass`, `multiple-feedback-band-pass`
 notes/a.md:10:1: `name` is missing
   10 | 
      | ^

@@ -1,6 +1,7 @@
 //! Files damaged at random: nothing panics, every place lies in its file, every problem can be shown.
 
-use stageleaf_note::{Place, Settings, read_block, read_note, read_part, read_settings};
+use stageleaf_math::kind::Kind;
+use stageleaf_note::{Place, Settings, read_block, read_note, read_part, read_settings, template::template_for};
 
 use crate::common::{ALDER, BLOCK, shelf};
 
@@ -41,15 +42,27 @@ fn damaged(text: &str, draw: &mut Draw) -> String {
 fn damaged_blocks_parts_and_settings() {
     let (shelf, settings, mut draw) = (shelf(), Settings::default(), Draw(1));
     let place = Place { prefixes: vec!["> ".into()], ..Place::new("n.md", 7) };
-    for i in 0..3000 {
-        let text = damaged(BLOCK, &mut draw);
+    let templates: Vec<String> = Kind::ALL.iter().map(|k| template_for(*k, "A", "alder-10").replace("\n# [parts]", "\n[parts]")).collect();
+    for i in 0..4000 {
+        // Every second time the block of some kind, with its own names.
+        let text = if i % 2 == 0 { damaged(BLOCK, &mut draw) } else { damaged(&templates[i / 2 % templates.len()], &mut draw) };
         match read_block(&text, &place, &shelf, &settings) {
             Ok(block) => {
                 for field in &block.fields {
                     let again = block.rewrite(&field.path, "x \" \\ \n ] é");
                     assert!(again.starts_with(&text[..field.whole.start]) && again.ends_with(&text[field.whole.end..]), "{i}");
                 }
-                for path in ["components.Rser", "load.resistance", "isolation", "limits.phase_at 1 kHz", "band.from"] {
+                for path in [
+                    "components.Rser",
+                    "load.resistance",
+                    "isolation",
+                    "limits.phase_at 1 kHz",
+                    "band.from",
+                    "signal.in2.dc",
+                    "source.in1.resistance",
+                    "reference.voltage",
+                    "parts.A2",
+                ] {
                     let _ = (block.rewrite(path, "1"), block.without(path));
                 }
             }

@@ -4,6 +4,7 @@
 mod blocks;
 mod common;
 mod hostile;
+mod kinds;
 mod notes;
 mod parts;
 mod quantities;

@@ -118,6 +118,13 @@ fn every_unit_of_the_trade() {
     assert_eq!(value("20 V/us", SlewRate), 20e6);
     assert_eq!(value("500 mV/ms", SlewRate), 500.0);
     assert_eq!(value("3 pA", Current), 3e-12);
+    assert_eq!(value("10 pC", Charge), 10e-12);
+    assert_eq!(value("-2 uC", Charge), -2e-6);
+    assert_eq!(value("−10 GV/C", VoltsPerCoulomb), -10e9);
+    // By definition of the prefixes: 1 mV/pC is 1e-3 V over 1e-12 C.
+    assert_eq!(value("10 mV/pC", VoltsPerCoulomb), 10e9);
+    assert_eq!(value("2 V/uC", VoltsPerCoulomb), 2e6);
+    assert_eq!(value("2 V/nC", VoltsPerCoulomb), 2e9);
     assert_eq!(value("120 K/W", ThermalResistance), 120.0);
     assert_eq!(value("120 °C/W", ThermalResistance), 120.0);
     assert_eq!(value("50 ppm/K", FractionDrift), 50e-6);
@@ -146,6 +153,20 @@ fn a_wrong_unit_is_named() {
     assert_eq!(error("100n", Resistance), format!("\"100n\" is a capacitance | {ohms}"));
     assert_eq!(error("4k7", Capacitance), "\"4k7\" is a resistance | farads, as `3p3`, `100n`, `4.7 µF`");
     assert_eq!(error("20 kHz", Voltage), "\"20 kHz\" is a frequency | volts, as `12 V`, `0.4 V`, `20 mV`");
+    assert_eq!(error("10 pC", Voltage), "\"10 pC\" is a charge | volts, as `12 V`, `0.4 V`, `20 mV`");
+    assert_eq!(error("3 V", Charge), "\"3 V\" is a voltage | coulombs, as `10 pC`");
+    assert_eq!(
+        error("10 mV/pc", VoltsPerCoulomb),
+        "\"10 mV/pc\": \"mV/pc\" could be mV/pC or MV/pC | volts per coulomb, as `-10 GV/C`, `-10 mV/pC`"
+    );
+    assert_eq!(
+        error("10 gV/C", VoltsPerCoulomb),
+        "\"10 gV/C\" ends in \"gV/C\", which is no unit; case matters | volts per coulomb, as `-10 GV/C`, `-10 mV/pC` | 10 GV/C"
+    );
+    assert_eq!(
+        error("3 GV/C", Gain),
+        "\"3 GV/C\" is a gain in volts per coulomb | a plain number or dB, as `20.4`, `-10`, `110 dB`, `200 V/mV`"
+    );
     assert_eq!(error("50 °", Frequency), "\"50 °\" is an angle | hertz, as `20 kHz`, `1.5 MHz`");
     assert_eq!(
         error("4.7 furlongs", Voltage),
@@ -266,6 +287,12 @@ fn values_come_out_with_the_prefix_that_fits() {
         (1e15, Resistance, 3, "1000 TΩ"),
         (1e30, Number, 3, "1.00e30"),
         (1e-9, Number, 2, "1.0e−9"),
+        (100e-12, Charge, 3, "100 pC"),
+        (-2.5e-6, Charge, 2, "−2.5 µC"),
+        (5e-6, Current, 2, "5.0 µA"),
+        (-10e9, VoltsPerCoulomb, 3, "−10.0 GV/C"),
+        (999.96e6, VoltsPerCoulomb, 3, "1.00 GV/C"),
+        (1.5e15, VoltsPerCoulomb, 3, "1500 TV/C"),
         (298.15, Temperature, 3, "25.0 °C"),
         (233.15, Temperature, 3, "−40.0 °C"),
         (273.15, Temperature, 3, "0 °C"),
@@ -300,6 +327,8 @@ fn values_can_be_heard() {
     assert_eq!(spoken(20e6, SlewRate), "20 volts per microsecond");
     assert_eq!(spoken(9e-9, VoltageDensity), "9 nanovolts per root hertz");
     assert_eq!(spoken(298.15, Temperature), "25 degrees Celsius");
+    assert_eq!(spoken(100e-12, Charge), "100 picocoulombs");
+    assert_eq!(spoken(-10e9, VoltsPerCoulomb), "minus 10 gigavolts per coulomb");
     assert_eq!(spoken(20.4, Gain), "20.4");
     assert_eq!(spoken(f64::INFINITY, Level), "unlimited");
 }
@@ -343,7 +372,8 @@ fn a_rounded_value_reads_back_within_half_of_its_last_digit() {
     let mut draw = Draw(0xbeef);
     for i in 0..20_000 {
         let v = draw.value();
-        let d = [Voltage, Frequency, SlewRate, Resistance, VoltageDensity, Gain, ThermalResistance, FractionDrift][i % 8];
+        let d = [Voltage, Frequency, SlewRate, Resistance, VoltageDensity, Gain, ThermalResistance, FractionDrift, Charge, VoltsPerCoulomb]
+            [i % 10];
         let text = format(v, d, 4);
         assert!((value(&text, d) / v - 1.0).abs() <= 0.5e-3, "draw {i}: {v:e} {text}");
     }

@@ -79,6 +79,15 @@ impl Symbol {
     }
 }
 
+/// Which of an amplifier's pins is the upper one.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Upper {
+    /// The inverting one.
+    Inverting,
+    /// The other one.
+    NonInverting,
+}
+
 /// On which side of its part a label stands; its text leans towards the part.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 enum Side {
@@ -106,6 +115,8 @@ pub struct Canvas {
     dots: String,
     labels: Vec<(Area, Side, Label)>,
     texts: Vec<(Area, i32, i32, &'static str, String)>,
+    /// Which of the texts are designators.
+    designators: Vec<usize>,
     /// Where there is ink: wires and bodies.
     ink: Vec<Area>,
 }
@@ -129,6 +140,21 @@ impl Canvas {
 
     /// A part lying in a wire at height `y`, wired from `from` to `to`, its middle at `middle`; the label above.
     pub fn across(&mut self, symbol: Symbol, from: i32, to: i32, middle: i32, y: i32, label: Label) {
+        self.lying(symbol, from, to, middle, y);
+        let left = middle - LABEL_WIDTH / 2;
+        let bottom = y - 9 - if symbol == Symbol::Capacitor { 5 } else { 0 };
+        self.label(left, bottom - LABEL_HEIGHT, Side::Above, label);
+    }
+
+    /// [`Self::across`] for a part whose value is shown at its twin: the designator alone.
+    pub fn across_twin(&mut self, symbol: Symbol, from: i32, to: i32, middle: i32, y: i32, name: &str) {
+        self.lying(symbol, from, to, middle, y);
+        self.designators.push(self.texts.len());
+        self.text(middle, y - 14 - if symbol == Symbol::Capacitor { 5 } else { 0 }, "middle", name, 40);
+    }
+
+    /// A part lying in a wire.
+    fn lying(&mut self, symbol: Symbol, from: i32, to: i32, middle: i32, y: i32) {
         self.wire(&[(from, y), (middle - symbol.half(), y)]);
         self.wire(&[(middle + symbol.half(), y), (to, y)]);
         let (h, t) = (symbol.half(), symbol.thick());
@@ -141,9 +167,6 @@ impl Canvas {
             }
         }
         self.ink.push(Area { x0: middle - h - 1, y0: y - t, x1: middle + h + 1, y1: y + t });
-        let left = middle - LABEL_WIDTH / 2;
-        let bottom = y - 9 - if symbol == Symbol::Capacitor { 5 } else { 0 };
-        self.label(left, bottom - LABEL_HEIGHT, Side::Above, label);
     }
 
     /// A part standing in a wire at `x`, wired from `from` down to `to`, its middle at `middle`.
@@ -190,14 +213,89 @@ impl Canvas {
         self.text(x + 17, middle + 5, "start", "Vs", 20);
     }
 
+    /// A current source standing at `x`, its circle's middle at `middle`, grounded below; its current flows upwards.
+    pub fn current_source(&mut self, x: i32, from: i32, middle: i32, name: &str) {
+        self.wire(&[(x, from), (x, middle - 13)]);
+        let _ = write!(
+            self.bodies,
+            "M{} {middle}a13 13 0 1 0 26 0a13 13 0 1 0-26 0zM{x} {}v-15M{} {}l4-6 4 6",
+            x - 13,
+            middle + 8,
+            x - 4,
+            middle - 1
+        );
+        self.ink.push(Area { x0: x - 13, y0: middle - 13, x1: x + 13, y1: middle + 13 });
+        self.wire(&[(x, middle + 13), (x, middle + 22)]);
+        self.ground(x, middle + 22);
+        self.text(x - 16, middle + 5, "end", name, 20);
+    }
+
+    /// A photodiode standing at `x` with its anode up, so that its photocurrent flows upwards; grounded below.
+    pub fn photodiode(&mut self, x: i32, from: i32, middle: i32) {
+        self.wire(&[(x, from), (x, middle - 9)]);
+        let _ = write!(self.bodies, "M{} {}h20l-10 17zM{} {}h20", x - 10, middle - 9, x - 10, middle + 8);
+        // Light from the left.
+        for (dx, dy) in [(0, 0), (-6, 10)] {
+            let (hx, hy) = (x - 14 + dx, middle - 7 + dy);
+            let _ = write!(self.bodies, "M{} {}L{hx} {hy}M{} {}L{hx} {hy}l-2-6", hx - 14, hy - 14, hx - 6, hy - 2);
+        }
+        self.ink.push(Area { x0: x - 34, y0: middle - 21, x1: x + 10, y1: middle + 9 });
+        self.wire(&[(x, middle + 8), (x, middle + 20)]);
+        self.ground(x, middle + 20);
+        self.text(x - 14, middle + 25, "end", "PD", 20);
+    }
+
+    /// A steady voltage standing at `x`, its circle's middle at `middle`, grounded below; the label at the left, or its name alone.
+    pub fn steady(&mut self, x: i32, from: i32, middle: i32, label: Result<Label, &str>) {
+        self.wire(&[(x, from), (x, middle - 13)]);
+        let _ = write!(
+            self.bodies,
+            "M{} {middle}a13 13 0 1 0 26 0a13 13 0 1 0-26 0zM{} {}h8M{x} {}v8M{} {}h8",
+            x - 13,
+            x - 4,
+            middle - 5,
+            middle - 9,
+            x - 4,
+            middle + 6
+        );
+        self.ink.push(Area { x0: x - 13, y0: middle - 13, x1: x + 13, y1: middle + 13 });
+        self.wire(&[(x, middle + 13), (x, middle + 22)]);
+        self.ground(x, middle + 22);
+        match label {
+            Ok(label) => self.label(x - 17 - LABEL_WIDTH, middle - LABEL_HEIGHT / 2, Side::Left, label),
+            Err(name) => self.text(x - 17, middle + 5, "end", name, 30),
+        }
+    }
+
     /// An amplifier whose pins are at `x`: the inverting one at `y`, the other at `y + 44`; returns its output.
     pub fn amplifier(&mut self, x: i32, y: i32, positive: &str, negative: Option<&str>) -> (i32, i32) {
+        self.amplifier_named((x, y), Upper::Inverting, None, (positive, negative))
+    }
+
+    /// An amplifier whose pins are at `x`, the upper one at `y`, the other at `y + 44`, with its name inside; returns its output.
+    pub fn amplifier_named(
+        &mut self,
+        (x, y): (i32, i32),
+        upper: Upper,
+        name: Option<&str>,
+        (positive, negative): (&str, Option<&str>),
+    ) -> (i32, i32) {
         let (middle, tip) = (y + 22, x + 72);
         let _ = write!(self.bodies, "M{x} {}L{tip} {middle}L{x} {}z", middle - 46, middle + 46);
         // The signs sit inside, beside their pins.
-        let _ = write!(self.bodies, "M{} {y}h9M{} {}h9M{} {}v9", x + 7, x + 7, y + 44, x + 11, y + 40);
-        self.ink.push(Area { x0: x, y0: middle - 46, x1: x + 28, y1: middle + 46 });
-        self.ink.push(Area { x0: x + 28, y0: middle - 28, x1: tip, y1: middle + 28 });
+        let plus = if upper == Upper::Inverting { y + 44 } else { y };
+        let _ = write!(self.bodies, "M{} {y}h9M{} {}h9M{} {}v9", x + 7, x + 7, y + 44, x + 11, plus - 4);
+        if let Some(name) = name {
+            self.text(x + 34, middle + 5, "middle", name, 20);
+        }
+        // The outline, its slopes as steps.
+        self.ink.push(Area { x0: x, y0: middle - 46, x1: x + 1, y1: middle + 46 });
+        for step in 0..8 {
+            let (x0, x1) = (x + 9 * step, x + 9 * step + 9);
+            let (far, near) = (46 * (8 - step) / 8, 46 * (7 - step) / 8);
+            self.ink.push(Area { x0, y0: middle - far, x1, y1: middle - near });
+            self.ink.push(Area { x0, y0: middle + near, x1, y1: middle + far });
+        }
         let rail = x + 28;
         self.wire(&[(rail, middle - 28), (rail, middle - 41)]);
         self.bar(rail, middle - 41);
@@ -213,6 +311,12 @@ impl Canvas {
         (tip, middle)
     }
 
+    /// A supply rail over a wire that begins at `(x, y)` and goes down.
+    pub fn rail(&mut self, x: i32, y: i32, text: &str) {
+        self.bar(x, y);
+        self.text(x, y - 8, "middle", text, 70);
+    }
+
     fn bar(&mut self, x: i32, y: i32) {
         let _ = write!(self.bodies, "M{} {y}h14", x - 7);
         self.ink.push(Area { x0: x - 7, y0: y, x1: x + 7, y1: y + 1 });
@@ -223,6 +327,13 @@ impl Canvas {
         let _ = write!(self.bodies, "M{x} {y}a3 3 0 1 0 6 0a3 3 0 1 0-6 0z");
         self.ink.push(Area { x0: x, y0: y - 3, x1: x + 6, y1: y + 3 });
         self.text(x + 7, y - 8, "end", "out", 22);
+    }
+
+    /// An input terminal that a wire leaves at `(x, y)`, with its name at the left.
+    pub fn input(&mut self, x: i32, y: i32, name: &str) {
+        let _ = write!(self.bodies, "M{} {y}a3 3 0 1 0 6 0a3 3 0 1 0-6 0z", x - 6);
+        self.ink.push(Area { x0: x - 6, y0: y - 3, x1: x, y1: y + 3 });
+        self.text(x - 11, y + 5, "end", name, 22);
     }
 
     /// Text of at most about `width` at a baseline.
@@ -243,6 +354,12 @@ impl Canvas {
     pub fn words(&self) -> impl Iterator<Item = (Area, &str)> {
         let labels = self.labels.iter().map(|(a, _, l)| (*a, l.name.as_str()));
         labels.chain(self.texts.iter().map(|(a, .., t)| (*a, t.as_str())))
+    }
+
+    /// Whether a label holds the field of the value at `path`.
+    #[must_use]
+    pub fn has_field(&self, path: &str) -> bool {
+        self.labels.iter().any(|(.., l)| l.path == path)
     }
 
     /// Labels whose value is longer than its field shows.
@@ -271,12 +388,20 @@ impl Canvas {
     #[must_use]
     pub fn finish(&self, id: &str, name: &str) -> Markup {
         let f = self.frame(426);
+        let class = match f.x1 - f.x0 {
+            ..=470 => "circuit",
+            471..=600 => "circuit wide",
+            _ => "circuit wider",
+        };
         html! {
-            svg viewBox=(format_args!("{} {} {} {}", f.x0, f.y0, f.x1 - f.x0, f.y1 - f.y0)) role="group" aria-label=(name) class=(if f.x1 - f.x0 > 470 { "circuit wide" } else { "circuit" }) {
+            svg viewBox=(format_args!("{} {} {} {}", f.x0, f.y0, f.x1 - f.x0, f.y1 - f.y0)) role="group" aria-label=(name) class=(class) {
                 path class="wire" d=(PreEscaped(&self.wires)) {}
                 path class="body" d=(PreEscaped(&self.bodies)) {}
                 path class="dot" d=(PreEscaped(&self.dots)) {}
-                @for (_, x, y, anchor, text) in &self.texts { text x=(x) y=(y) text-anchor=(anchor) aria-hidden="true" { (text) } }
+                @for (i, (_, x, y, anchor, text)) in self.texts.iter().enumerate() {
+                    @let class = self.designators.contains(&i).then_some("designator");
+                    text class=[class] x=(x) y=(y) text-anchor=(anchor) aria-hidden="true" { (text) }
+                }
                 @for (a, side, l) in &self.labels {
                     @let (class, anchor, x) = side.lean(a.x0);
                     text class="designator" x=(x) y=(a.y0 + 12) text-anchor=(anchor) aria-hidden="true" { (l.name) }

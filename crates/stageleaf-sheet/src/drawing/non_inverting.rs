@@ -2,7 +2,7 @@
 
 use super::{
     Labels,
-    kit::{Canvas, LABEL_HEIGHT, Symbol},
+    kit::{Canvas, LABEL_HEIGHT},
     surroundings as s,
 };
 
@@ -12,11 +12,7 @@ pub fn draw(c: &mut Canvas, l: &Labels) {
     s::amplifier_and_output(c, l, (x, y));
     let mut depth = 0;
     if let Some(label) = l.component("Rg") {
-        let end = x - 108;
-        c.dot(x, y);
-        c.across(Symbol::Resistor, end, x, x - 56, y, label);
-        c.wire(&[(end, y), (end, y + 12)]);
-        c.ground(end, y + 12);
+        s::grounded_gain_resistor(c, label, (x, y));
         depth = 24;
     }
     non_inverting_input(c, l, (x, y), depth);

@@ -18,9 +18,13 @@ fn plots(sheet: &Sheet, start: &str, empty: &str) -> Markup {
 
 /// Transfer from source to load.
 pub fn response(sheet: &Sheet) -> Markup {
+    // Most kinds work down to DC, and have no lower edge to speak of.
+    let low = plot::charts::nominal(sheet.report, Figure::LowCutoff).is_some();
+    let figures = [Figure::Gain, Figure::LowCutoff, Figure::Bandwidth, Figure::Peaking];
+    let shown: Vec<Figure> = figures.into_iter().filter(|f| low || *f != Figure::LowCutoff).collect();
     html! {
         summary { "Response" }
-        (briefs(sheet, &[Figure::Gain, Figure::Bandwidth, Figure::Peaking]))
+        (briefs(sheet, &shown))
         (plots(sheet, "response", "No response could be computed."))
     }
 }

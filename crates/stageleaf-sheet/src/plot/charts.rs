@@ -33,8 +33,21 @@ pub struct Mark {
     pub to: Option<f64>,
     /// Its words.
     pub text: String,
-    /// Whether the words stand below the point, where a bound runs above it.
-    pub below: bool,
+    /// Where the words stand.
+    pub words: Words,
+}
+
+/// Where a mark's words stand, so that no curve runs through them.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Words {
+    /// Above the point, or below it near the right edge.
+    Above,
+    /// Below the point, where a bound runs above it.
+    Below,
+    /// Before a curve that rises through the point.
+    Rising,
+    /// Behind a curve that falls through the point.
+    Falling,
 }
 
 /// A chart against frequency.
@@ -74,9 +87,7 @@ pub fn charts(sheet: &Sheet, start: &str) -> Vec<Chart> {
 pub fn chart(sheet: &Sheet, id: &str) -> Option<Chart> {
     let r = sheet.report;
     match id {
-        "response-magnitude" => {
-            magnitude("response-magnitude", "magnitude, dB", &r.response, edge_mark(r).into_iter().collect(), None, 100.0)
-        }
+        "response-magnitude" => response(sheet),
         "response-phase" => phase("response-phase", &r.response, Vec::new(), None),
         "loop-magnitude" => {
             let marks = nominal(r, Figure::Crossover).map(|x| Mark {
@@ -84,7 +95,7 @@ pub fn chart(sheet: &Sheet, id: &str) -> Option<Chart> {
                 y: 0.0,
                 to: None,
                 text: format!("crossover {}", stageleaf_note::format(x, Dimension::Frequency, 3)),
-                below: false,
+                words: Words::Above,
             });
             magnitude("loop-magnitude", "loop gain |T|, dB", &r.loop_gain, marks.into_iter().collect(), Some(0.0), 160.0)
         }
@@ -126,23 +137,47 @@ fn phase(id: &'static str, points: &[ResponsePoint], marks: Vec<Mark>, reference
     let y: Vec<f64> = thinned(points).map(|p| p.phase.to_degrees()).collect();
     let x_axis = x_axis(&x)?;
     let probe = Axis::linear(y.iter().copied().chain(reference), 2000.0, None)?;
-    let step = if probe.high - probe.low > 400.0 { 90.0 } else { 45.0 };
+    let step = if probe.high - probe.low > 300.0 { 90.0 } else { 45.0 };
     let y_axis = Axis::linear(y.iter().copied().chain(reference), 2000.0, Some(step))?;
     let curves = vec![Curve { name: "phase".into(), y }];
     Some(Chart { id, title: "phase, °", x, curves, marks, reference, unit: Unit::Degree, x_axis, y_axis })
 }
 
-/// Where the response has fallen by 3 dB from the gain.
-fn edge_mark(r: &Report) -> Option<Mark> {
-    let (x, gain) = (nominal(r, Figure::Bandwidth)?, nominal(r, Figure::Gain)?);
-    let text = format!("−3 dB at {}", stageleaf_note::format(x, Dimension::Frequency, 3));
-    Some(Mark { x, y: decibels(gain.abs() * std::f64::consts::FRAC_1_SQRT_2), to: None, text, below: true })
+/// The transfer's magnitude: in dB where it is a ratio, else in its own unit on an axis of decades.
+fn response(sheet: &Sheet) -> Option<Chart> {
+    let r = sheet.report;
+    let (id, dimension) = ("response-magnitude", sheet.block.stage.kind.spec().gain);
+    let title = match dimension {
+        Dimension::Resistance => "transimpedance, Ω",
+        Dimension::VoltsPerCoulomb => "charge gain, V/C",
+        _ => return magnitude(id, "magnitude, dB", &r.response, edge_marks(r, decibels), None, 100.0),
+    };
+    let x: Vec<f64> = thinned(&r.response).map(|p| p.frequency).collect();
+    let y: Vec<f64> = thinned(&r.response).map(|p| p.magnitude).collect();
+    let x_axis = x_axis(&x)?;
+    // A quarter more, so that a flat curve never runs along the frame.
+    let mut y_axis = Axis::decades(y.iter().flat_map(|v| [*v, 1.25 * v]), true)?;
+    y_axis.low = y_axis.low.max(y_axis.high * 1e-5);
+    let (curves, marks) = (vec![Curve { name: "magnitude".into(), y }], edge_marks(r, |m| m));
+    Some(Chart { id, title, x, curves, marks, reference: None, unit: Unit::Si(dimension), x_axis, y_axis })
+}
+
+/// Where the response has fallen by 3 dB from the gain; `height` takes a magnitude to the chart's unit.
+fn edge_marks(r: &Report, height: impl Fn(f64) -> f64) -> Vec<Mark> {
+    let Some(gain) = nominal(r, Figure::Gain) else { return Vec::new() };
+    let y = height(gain.abs() * std::f64::consts::FRAC_1_SQRT_2);
+    let edges = [(Figure::LowCutoff, Words::Rising), (Figure::Bandwidth, Words::Falling)];
+    let marks = edges.into_iter().filter_map(|(figure, words)| {
+        let x = nominal(r, figure)?;
+        Some(Mark { x, y, to: None, text: format!("−3 dB at {}", stageleaf_note::format(x, Dimension::Frequency, 3)), words })
+    });
+    marks.collect()
 }
 
 fn phase_margin_mark(r: &Report) -> Option<Mark> {
     let (x, margin) = (nominal(r, Figure::Crossover)?, nominal(r, Figure::PhaseMargin)?);
     let text = format!("phase margin {}", stageleaf_note::format(margin, Dimension::Angle, 3));
-    Some(Mark { x, y: margin.to_degrees() - 180.0, to: Some(-180.0), text, below: false })
+    Some(Mark { x, y: margin.to_degrees() - 180.0, to: Some(-180.0), text, words: Words::Above })
 }
 
 fn noise(sheet: &Sheet) -> Option<Chart> {
@@ -193,7 +228,13 @@ fn envelope(sheet: &Sheet) -> Option<Chart> {
     {
         let y = signal.peak * gain.abs();
         if x.is_finite() && y.is_finite() && y > 0.0 {
-            marks.push(Mark { x, y, to: None, text: format!("signal {}", stageleaf_note::format(y, Dimension::Voltage, 3)), below: true });
+            marks.push(Mark {
+                x,
+                y,
+                to: None,
+                text: format!("signal {}", stageleaf_note::format(y, Dimension::Voltage, 3)),
+                words: Words::Below,
+            });
         }
     }
     // The lowest of the bounds decides; how far the others rise above it is of no use, nor is what it falls to far below its best.

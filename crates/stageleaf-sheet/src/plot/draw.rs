@@ -8,7 +8,7 @@ use stageleaf_math::dimension::Dimension;
 use super::{
     AREA_LEFT, AREA_WIDTH,
     axis::{Axis, plain, short},
-    charts::{Chart, Curve},
+    charts::{Chart, Curve, Words},
 };
 use crate::sheet::{capital, whole};
 
@@ -18,6 +18,8 @@ const TOP: f64 = 22.0;
 const BELOW: f64 = 38.0;
 /// Room right of the area for curve labels, where there are several curves.
 const LABELS: f64 = 124.0;
+/// Room that a mark's words take, with their distance from the point.
+const WORDS: f64 = 130.0;
 /// Curves are drawn on a grid this many times finer, so that their numbers are whole.
 const FINE: f64 = 10.0;
 
@@ -85,12 +87,19 @@ fn mark(c: &Chart, m: &super::Mark, px: &impl Fn(f64) -> f64, py: &impl Fn(f64) 
     if !inside(m.x, &c.x_axis) || !inside(m.y, &c.y_axis) {
         return html! {};
     }
-    // The words go to the emptier side: curves fall to the right, so right of the point is free, unless the edge is near.
-    let left = x > AREA_LEFT + AREA_WIDTH * 0.62;
-    let baseline = match m.to {
-        Some(to) => f64::midpoint(y, py(to)) + 4.0,
-        None if left || m.below => y + 16.0,
-        None => y - 7.0,
+    let (before, behind) = (x - AREA_LEFT, AREA_LEFT + AREA_WIDTH - x);
+    // Where the words of an edge find no room outside the band, they stand inside, below the curve, those of the lower edge deeper.
+    let (left, baseline) = match (m.to, m.words) {
+        (Some(to), _) => (behind < AREA_WIDTH * 0.38, f64::midpoint(y, py(to)) + 4.0),
+        (None, Words::Rising) if before < WORDS => (false, y + 34.0),
+        (None, Words::Rising) => (true, y + 4.0),
+        (None, Words::Falling) if behind < WORDS => (true, y + 19.0),
+        (None, Words::Falling) => (false, y + 4.0),
+        // Curves fall to the right, so right of the point is free, unless the edge is near.
+        (None, words) => {
+            let left = behind < AREA_WIDTH * 0.38;
+            (left, if left || words == Words::Below { y + 16.0 } else { y - 7.0 })
+        }
     };
     html! {
         @if let Some(to) = m.to { path class="span" d=(format_args!("M{} {}V{}", tenth(x), tenth(y), tenth(py(to)))) {} }

@@ -5,7 +5,7 @@ pub mod charts;
 mod draw;
 mod tables;
 
-pub use charts::{Chart, Curve, Mark, chart, charts};
+pub use charts::{Chart, Curve, Mark, Words, chart, charts};
 pub use draw::svg;
 pub use tables::{csv, table};
 

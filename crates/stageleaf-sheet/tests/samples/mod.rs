@@ -3,18 +3,19 @@
 use stageleaf_math::{
     dimension::Dimension,
     figure::{Argument, Figure, Query},
-    kind::Kind,
+    kind::{ComponentSpec, Drives, Feed, Kind},
     limit::{Basis, Bound, Limit, Thin, Verdict},
+    network::Drive,
     part::{Part, PartFigure},
     report::{
         Caution, Coordinate, DcCause, DcLine, DensityPoint, EnvelopePoint, FigureRow, LimitRow, Need, NoiseOrigin, NoiseShare, Outcome,
         Parameter, Report, ResponsePoint, Root, Working,
     },
-    stage::{Ambient, Band, Board, Component, Isolation, Load, Signal, Source, Span, Stage, Supply, Toleranced},
+    stage::{Ambient, Band, Board, Component, Isolation, Load, ReferenceVoltage, Signal, Source, Span, Stage, Supply, Toleranced},
 };
 use stageleaf_note::{Block, Field, ShelfPart};
 
-/// Values as a note writes them, by component.
+/// Values as a note writes them, by component; those not listed have one value per dimension.
 const WRITTEN: [(&str, &str, f64); 13] = [
     ("Rf", "91k 1% 50ppm", 91e3),
     ("Rg", "4k7 1% 50ppm", 4.7e3),
@@ -41,32 +42,13 @@ fn field(path: &str, text: &str) -> Field {
 
 /// A stage of a kind with these components, load and source as told.
 pub fn block(kind: Kind, components: &[&str], isolation: Isolation, load: (bool, bool), source: bool) -> Block {
-    let of = |name: &str| WRITTEN.iter().find(|w| w.0 == name).copied();
-    let components: Vec<(&'static str, &str, f64)> =
-        kind.components().iter().filter(|s| components.contains(&s.name)).filter_map(|s| of(s.name).map(|w| (s.name, w.1, w.2))).collect();
-    let mut fields: Vec<Field> = components.iter().map(|c| field(&format!("components.{}", c.0), c.1)).collect();
-    for (path, text) in [
-        ("part", "alder-10"),
-        ("supply.positive", "12 V ± 5 %"),
-        ("supply.negative", "-12 V ± 5 %"),
-        ("signal.peak", "0.4 V"),
-        ("signal.frequency", "20 kHz"),
-        ("ambient.range", "-20 °C to 50 °C"),
-        ("band.from", "10 Hz"),
-        ("band.to", "20 kHz"),
-    ] {
-        fields.push(field(path, text));
-    }
-    if source {
-        fields.push(field("source.resistance", "600"));
-    }
-    if load.0 {
-        fields.push(field("load.resistance", "2k"));
-    }
-    if load.1 {
-        fields.push(field("load.capacitance", "1n"));
-    }
-    let stage = Stage {
+    let of = |spec: &ComponentSpec| match WRITTEN.iter().find(|w| w.0 == spec.name) {
+        Some(w) => (spec.name, w.1, w.2),
+        None if spec.dimension == Dimension::Capacitance => (spec.name, "2n2 1% 30ppm", 2.2e-9),
+        None => (spec.name, "18k2 1% 50ppm", 18.2e3),
+    };
+    let components: Vec<(&'static str, &str, f64)> = kind.components().iter().filter(|s| components.contains(&s.name)).map(of).collect();
+    let mut stage = Stage {
         name: "Hydrophone line amplifier".into(),
         kind,
         components: components.iter().map(|c| Component { name: c.0, value: value(c.2) }).collect(),
@@ -76,8 +58,8 @@ pub fn block(kind: Kind, components: &[&str], isolation: Isolation, load: (bool,
             positive: Span { low: 11.4, nominal: 12.0, high: 12.6 },
             negative: Span { low: -12.6, nominal: -12.0, high: -11.4 },
         }),
-        sources: vec![source.then(|| Source::Resistive { resistance: Toleranced::exact(600.0) })],
-        signals: vec![Some(Signal { peak: 0.4, frequency: Some(20e3), dc: 0.0, crest_factor: std::f64::consts::SQRT_2 })],
+        sources: vec![],
+        signals: vec![],
         common_mode: None,
         reference: None,
         parts: vec![],
@@ -87,8 +69,59 @@ pub fn block(kind: Kind, components: &[&str], isolation: Isolation, load: (bool,
         band: Some(Band { from: 10.0, to: 20e3 }),
         limits: Vec::new(),
     };
+    let mut fields: Vec<Field> = components.iter().map(|c| field(&format!("components.{}", c.0), c.1)).collect();
+    for (path, text) in [
+        ("part", "alder-10"),
+        ("supply.positive", "12 V ± 5 %"),
+        ("supply.negative", "-12 V ± 5 %"),
+        ("ambient.range", "-20 °C to 50 °C"),
+        ("band.from", "10 Hz"),
+        ("band.to", "20 kHz"),
+    ] {
+        fields.push(field(path, text));
+    }
+    driven(&mut stage, &mut fields, source);
+    if load.0 {
+        fields.push(field("load.resistance", "2k"));
+    }
+    if load.1 {
+        fields.push(field("load.capacitance", "1n"));
+    }
     let text = format!("stage = \"{}\"\npart = \"alder-10\"\n", kind.id());
     Block { stage, text, file: "notes/hydrophone.md".into(), line: 12, fields, measured: Vec::new() }
+}
+
+/// Signals at the inputs, the source's resistance in each if there is one, and what else comes from outside.
+fn driven(stage: &mut Stage, fields: &mut Vec<Field>, source: bool) {
+    let spec = stage.kind.spec();
+    let inputs: Vec<_> = (spec.inputs)(stage).iter().filter(|i| i.feed == Feed::Signal).collect();
+    let several = inputs.len() > 1;
+    let each = several && spec.drives == Drives::Each;
+    for input in &inputs {
+        let place = |table: &str, by_input: bool| if by_input { format!("{table}.{}", input.name) } else { table.to_owned() };
+        if source {
+            stage.sources.push(Some(Source::Resistive { resistance: Toleranced::exact(600.0) }));
+            fields.push(field(&format!("{}.resistance", place("source", several)), "600"));
+        }
+        if each || stage.signals.is_empty() {
+            let (peak, text) = match input.drive {
+                Drive::Voltage => (0.4, "0.4 V"),
+                Drive::Current => (20e-6, "20 µA"),
+                Drive::Charge => (5e-12, "5 pC"),
+            };
+            stage.signals.push(Some(Signal { peak, frequency: Some(20e3), dc: 0.0, crest_factor: std::f64::consts::SQRT_2 }));
+            fields.push(field(&format!("{}.peak", place("signal", each)), text));
+            fields.push(field(&format!("{}.frequency", place("signal", each)), "20 kHz"));
+        }
+    }
+    if spec.drives == Drives::Differential {
+        stage.common_mode = Some(Span { low: 2.4, nominal: 2.5, high: 2.6 });
+        fields.push(field("signal.common_mode", "2.5 V ± 0.1 V"));
+    }
+    if (spec.inputs)(stage).iter().any(|i| i.feed == Feed::Reference) {
+        stage.reference = Some(ReferenceVoltage { voltage: value(2.5), resistance: None });
+        fields.push(field("reference.voltage", "2.5 V 0.1%"));
+    }
 }
 
 /// A part of the shelf.

@@ -129,8 +129,11 @@ pub fn examine_with(bytes: &[u8], file: &str, team: &Team, analyse: &dyn Fn(&Sta
     let mut faults: Vec<Fault> = note.problems.into_iter().map(|p| Fault::Text(Box::new(p))).collect();
     let mut stages = Vec::new();
     for block in note.blocks {
-        if let Some((_, part_file)) = team.lost_parts.iter().find(|(id, _)| *id == block.stage.part.id) {
-            faults.push(Fault::Text(Box::new(part_lost(bytes, &block, part_file))));
+        let further = block.stage.parts.iter().map(|(amplifier, part)| (format!("parts.A{amplifier}"), part));
+        let named: Vec<(String, &Part)> = [("part".to_owned(), &block.stage.part)].into_iter().chain(further).collect();
+        let lost = named.iter().find_map(|(path, part)| Some((path, &team.lost_parts.iter().find(|(id, _)| *id == part.id)?.1)));
+        if let Some((path, part_file)) = lost {
+            faults.push(Fault::Text(Box::new(part_lost(bytes, &block, path, part_file))));
             continue;
         }
         let name = slug(&block.stage.name);
@@ -175,8 +178,8 @@ fn with_lost_parts(team: &Team) -> Cow<'_, Shelf> {
     Cow::Owned(shelf)
 }
 
-fn part_lost(note: &[u8], block: &Block, part_file: &str) -> Problem {
-    at_field(note, block, "part", format!("the stage “{}” is not judged: its part could not be read", block.stage.name))
+fn part_lost(note: &[u8], block: &Block, path: &str, part_file: &str) -> Problem {
+    at_field(note, block, path, format!("the stage “{}” is not judged: its part could not be read", block.stage.name))
         .allowed(format!("a part file without mistakes; those of {part_file} are told once"))
 }
 

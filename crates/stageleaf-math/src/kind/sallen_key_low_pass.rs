@@ -1,0 +1,81 @@
+//! Sallen–Key low-pass: two resistors to the + input, one capacitor from between them to the output, one to ground.
+//!
+//! # Formula
+//! `f0 = 1/(2π·√(R1·R2·C1·C2))`, `Q = √(R1·R2·C1·C2)/(C2·(R1 + R2) + R1·C1·(1 − K))`, `K = 1 + Rf/Rg`. For the working and as a check; figures come from the network.
+//!
+//! # Units
+//! `R1`, `R2`, `Rf`, `Rg` in Ω; `C1` (to the output), `C2` (to ground) in F. Gain `K` at DC, in V/V.
+//!
+//! # Does not apply
+//! Far above f0 the output resistance lets the signal through `C1`: the stop band rises again.
+//!
+//! # Source
+//! R. P. Sallen, E. L. Key, "A practical method of designing RC active filters", IRE Trans. Circuit Theory 2 (1955), from memory. Checked in `tests/outside/`.
+//!
+//! # Example
+//! ```
+//! use stageleaf_math::kind::Kind;
+//!
+//! assert_eq!(Kind::from_id("sallen-key-low-pass"), Some(Kind::SallenKeyLowPass));
+//! ```
+
+use super::*;
+use crate::network::GROUND;
+
+fn gain(stage: &Stage) -> f64 {
+    if stage.component("Rg").is_some() { 1.0 + nominal(stage, "Rf") / nominal(stage, "Rg") } else { 1.0 }
+}
+
+/// The kind.
+pub static SPEC: Spec = Spec {
+    id: "sallen-key-low-pass",
+    title: "Sallen–Key low-pass",
+    summary: "Second-order low-pass around a follower or a gain.",
+    ideal_formula: "G = K/(1 + s/(Q·ω0) + s²/ω0²)",
+    components: &[
+        ComponentSpec::required("R1", Dimension::Resistance, "from the signal to the inner node"),
+        ComponentSpec::required("R2", Dimension::Resistance, "from the inner node to the + input"),
+        ComponentSpec::required("C1", Dimension::Capacitance, "from the inner node to the output"),
+        ComponentSpec::required("C2", Dimension::Capacitance, "from the + input to ground"),
+        ComponentSpec::optional("Rf", Dimension::Resistance, "resistor that sets the gain, with `Rg`").beside("Rg"),
+        ComponentSpec::optional("Rg", Dimension::Resistance, "resistor from the inverting input to ground, with `Rf`").beside("Rf"),
+        ISOLATION,
+        SNUBBER_R,
+        SNUBBER_C,
+    ],
+    amplifiers: 1,
+    inputs: |_| VOLTAGE_INPUT,
+    drives: Drives::Each,
+    reference: Reference::Dc,
+    gain: Dimension::Gain,
+    build: |stage, network| {
+        let signal = network.signal();
+        let inner = network.node();
+        network.component("R1", signal, inner);
+        let plus = network.node();
+        network.component("R2", inner, plus);
+        network.component("C2", plus, GROUND);
+        let pin = network.node();
+        let load = network.output(pin);
+        let sense = network.sense(stage, pin, load);
+        let minus = network.behind("Rf", sense);
+        network.component("Rg", minus, GROUND);
+        network.component("C1", inner, sense);
+        network.amplifier(plus, minus, pin);
+    },
+    ideal_gain: gain,
+    noise_gain: gain,
+    working: |stage| {
+        let [r1, r2, c1, c2] = ["R1", "R2", "C1", "C2"].map(|n| nominal(stage, n));
+        let root = libm::sqrt(r1 * r2 * c1 * c2);
+        let mut lines = vec![ideal("G = K = 1 + Rf/Rg at DC", &["Rf", "Rg"], stage)];
+        lines.extend(second_order(
+            stage,
+            ["f0 = 1/(2π·√(R1·R2·C1·C2))", "Q = √(R1·R2·C1·C2)/(C2·(R1 + R2) + R1·C1·(1 − K))"],
+            &["R1", "R2", "C1", "C2"],
+            1.0 / (TAU * root),
+            root / (c2 * (r1 + r2) + r1 * c1 * (1.0 - gain(stage))),
+        ));
+        lines
+    },
+};
