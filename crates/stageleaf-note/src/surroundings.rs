@@ -141,7 +141,7 @@ fn supply<'a>(reader: &mut Reader<'a>, entry: &Entry<'a>) -> Option<Supply> {
         reader.problem(place, message, "`positive` above `negative` over their whole ranges", None);
         return None;
     }
-    Some(Supply { positive, negative })
+    Some(Supply { positive, negative, ripple: None })
 }
 
 fn source<'a>(reader: &mut Reader<'a>, entry: &Entry<'a>) -> Option<Source> {

@@ -51,7 +51,7 @@ fn no_label_covers_another_or_a_wire() {
             for other in [false, true] {
                 if other && source {
                     block.stage.sources = vec![Some(Source::Capacitive { capacitance: Toleranced::exact(1e-9) })];
-                    block.stage.supply = Some(Supply { positive: Span::exact(5.0), negative: Span::exact(0.0) });
+                    block.stage.supply = Some(Supply { positive: Span::exact(5.0), negative: Span::exact(0.0), ripple: None });
                 }
                 let case = || format!("{kind:?} with {names:?}, {isolation:?}, load {load:?}, source {source}, other symbols {other}");
                 keeps_clear(&canvas(&block), &case());

@@ -75,6 +75,7 @@ pub fn block(kind: Kind, components: &[&str], isolation: Isolation, load: (bool,
         supply: Some(Supply {
             positive: Span { low: 11.4, nominal: 12.0, high: 12.6 },
             negative: Span { low: -12.6, nominal: -12.0, high: -11.4 },
+            ripple: None,
         }),
         sources: vec![source.then(|| Source::Resistive { resistance: Toleranced::exact(600.0) })],
         signals: vec![Some(Signal { peak: 0.4, frequency: Some(20e3), dc: 0.0, crest_factor: std::f64::consts::SQRT_2 })],
