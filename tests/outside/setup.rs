@@ -167,7 +167,7 @@ impl Complete for Stage {
     }
 
     fn between(mut self, negative: f64, positive: f64) -> Self {
-        self.supply = Some(Supply { positive: Span::exact(positive), negative: Span::exact(negative) });
+        self.supply = Some(Supply { positive: Span::exact(positive), negative: Span::exact(negative), ripple: None });
         self
     }
 

@@ -254,12 +254,10 @@ const fn part_touches(figure: PartFigure) -> u8 {
         | P::SupplySpanMax
         | P::DifferentialMax
         | P::ClampCurrentMax
-        | P::CmrrCorner
-        | P::PsrrPositiveCorner
-        | P::PsrrNegativeCorner
         | P::StableGainMin
         | P::OverloadRecovery
         | P::JunctionMax => 0,
+        P::CmrrCorner | P::PsrrPositiveCorner | P::PsrrNegativeCorner => touch::DC,
     }
 }
 

@@ -22,6 +22,8 @@ pub enum Need {
     HeadroomLow,
     /// The stage's `[supply]`.
     Supply,
+    /// The stage's `[supply] ripple`.
+    Ripple,
     /// The stage's `[signal]`.
     Signal,
     /// The stage's `[signal] frequency`.
@@ -42,6 +44,7 @@ impl Need {
             Self::HeadroomHigh => "output.headroom_high",
             Self::HeadroomLow => "output.headroom_low",
             Self::Supply => "supply",
+            Self::Ripple => "supply.ripple",
             Self::Signal => "signal",
             Self::SignalFrequency => "signal.frequency",
             Self::Ambient => "ambient",

@@ -62,6 +62,17 @@ pub struct Supply {
     pub positive: Span,
     /// Negative rail; 0 V for a single supply.
     pub negative: Span,
+    /// Ripple on either rail, where stated.
+    pub ripple: Option<Ripple>,
+}
+
+/// An alternating voltage on a supply.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Ripple {
+    /// Peak, V.
+    pub peak: f64,
+    /// Its frequency, Hz.
+    pub frequency: f64,
 }
 
 /// What drives the stage.

@@ -161,7 +161,7 @@ fn supply<'a>(reader: &mut Reader<'a>, entry: &Entry<'a>) -> Option<Supply> {
         reader.problem(place, message, "`positive` above `negative` over their whole ranges", None);
         return None;
     }
-    Some(Supply { positive, negative })
+    Some(Supply { positive, negative, ripple: None })
 }
 
 fn band<'a>(reader: &mut Reader<'a>, entry: &Entry<'a>) -> Option<Band> {

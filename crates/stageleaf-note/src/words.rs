@@ -117,6 +117,7 @@ pub fn need_text(need: Need, part_file: &str) -> String {
         ),
         Need::HeadroomHigh => part("output", "headroom_high", "rows of current against V, up to the current asked"),
         Need::HeadroomLow => part("output", "headroom_low", "rows of current against V, up to the current asked"),
+        Need::Ripple => "`ripple` and `ripple_frequency` under [supply] in the stage's block".into(),
         Need::Supply => "[supply] with `positive` and `negative` in the stage's block".into(),
         Need::Signal => "[signal] with its amplitude in the stage's block".into(),
         Need::SignalFrequency => "`frequency` under [signal] in the stage's block".into(),

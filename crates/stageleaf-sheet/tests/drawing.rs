@@ -203,7 +203,7 @@ fn a_divided_supply_is_drawn_at_its_rail() {
     for kind in [Kind::AcNonInverting, Kind::AcInverting] {
         let all: Vec<&str> = kind.components().iter().map(|s| s.name).collect();
         let mut block = samples::block(kind, &all, Isolation::OutsideLoop, (false, false), true);
-        block.stage.supply = Some(Supply { positive: Span::exact(5.0), negative: Span::exact(0.0) });
+        block.stage.supply = Some(Supply { positive: Span::exact(5.0), negative: Span::exact(0.0), ripple: None });
         let drawing = canvas(&block);
         // At the amplifier and at the divider.
         assert_eq!(drawing.words().filter(|(_, word)| *word == "+5 V").count(), 2, "{kind:?}");

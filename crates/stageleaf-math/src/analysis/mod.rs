@@ -3,6 +3,7 @@
 pub mod dc;
 pub mod margins;
 pub mod noise;
+pub mod rejection;
 pub mod response;
 pub mod search;
 pub mod second_pole;
@@ -44,7 +45,7 @@ pub const fn touched_by(figure: Figure) -> u8 {
         | F::OutputImpedance
         | F::GainDrift
         | F::NoiseBandwidth => touch::NETWORK,
-        F::OutputOffset | F::InputOffset | F::OffsetDrift => touch::DC,
+        F::OutputOffset | F::InputOffset | F::OffsetDrift | F::StageCmrr | F::StagePsrr | F::RippleOutput => touch::DC,
         F::OutputNoise | F::InputNoise | F::OutputNoisePeakToPeak | F::NoiseDensityAt | F::Snr | F::SnrBits => touch::NOISE,
         F::ClipMargin | F::InputRangeMargin | F::CurrentMargin | F::SlewMargin | F::FullPowerBandwidth => touch::SWING,
         F::SupplyCurrent | F::Dissipation | F::JunctionTemperature | F::ResistorDissipation => touch::POWER,
@@ -86,7 +87,16 @@ pub fn lacking(solution: &Solution<'_>, query: Query) -> Option<Outcome> {
         | F::Q
         | F::OutputImpedance
         | F::NoiseBandwidth => missing.small_signal(solution),
-        F::OutputOffset | F::InputOffset | F::OffsetDrift => missing.part(solution, PartFigure::OpenLoop),
+        F::OutputOffset | F::InputOffset | F::OffsetDrift | F::StageCmrr | F::StagePsrr => {
+            missing.part(solution, PartFigure::OpenLoop);
+        }
+        F::RippleOutput => {
+            missing.small_signal(solution);
+            missing.supply(solution);
+            if solution.model.stage.supply.is_some_and(|s| s.ripple.is_none()) {
+                missing.need(Need::Ripple);
+            }
+        }
         F::OutputNoise | F::InputNoise | F::OutputNoisePeakToPeak => missing.integrated_noise(solution),
         F::Snr | F::SnrBits => {
             missing.integrated_noise(solution);
@@ -184,6 +194,9 @@ pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
         F::OutputOffset => return dc::budget(solution).total.clone(),
         F::InputOffset => return scaled(&dc::budget(solution).total, 1.0 / response::reference(solution).gain.abs()),
         F::OffsetDrift => return dc::budget(solution).drift.clone(),
+        F::StageCmrr => return rejection::stage_cmrr(solution),
+        F::StagePsrr => return rejection::stage_psrr(solution),
+        F::RippleOutput => return rejection::ripple_output(solution),
         F::OutputNoise | F::InputNoise | F::OutputNoisePeakToPeak | F::Snr | F::SnrBits => {
             let Some(rms) = noise::integrated(solution) else { return Outcome::DoesNotApply("the band's edges are the same") };
             match query.figure {

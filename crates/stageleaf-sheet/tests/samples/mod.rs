@@ -57,6 +57,7 @@ pub fn block(kind: Kind, components: &[&str], isolation: Isolation, load: (bool,
         supply: Some(Supply {
             positive: Span { low: 11.4, nominal: 12.0, high: 12.6 },
             negative: Span { low: -12.6, nominal: -12.0, high: -11.4 },
+            ripple: None,
         }),
         sources: vec![],
         signals: vec![],
