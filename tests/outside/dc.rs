@@ -99,8 +99,11 @@ fn rejection(rows: &Rows, ledger: &mut Ledger) {
     for figure in [PartFigure::Offset, PartFigure::OffsetDrift, PartFigure::BiasCurrent, PartFigure::OffsetCurrent] {
         stage.part.state(figure, Rating::typical(0.0));
     }
-    stage.supply =
-        Some(Supply { positive: Span { low: 15.0 - deviation, nominal: 15.0, high: 15.0 + deviation }, negative: Span::exact(-15.0), ripple: None });
+    stage.supply = Some(Supply {
+        positive: Span { low: 15.0 - deviation, nominal: 15.0, high: 15.0 + deviation },
+        negative: Span::exact(-15.0),
+        ripple: None,
+    });
     let report = report(&stage, &[]);
     row.check(ledger, "e_cm", Figure::OutputOffset, &line(&report, DcCause::CommonMode, false));
     row.check(ledger, "e_ps", Figure::OutputOffset, &line(&report, DcCause::SupplyPositive, true));

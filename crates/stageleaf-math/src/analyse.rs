@@ -137,7 +137,7 @@ pub fn check(stage: &Stage) -> Result<(), Error> {
             None if spec.required => return Err(Error::MissingComponent { what: spec.name }),
             None => {}
             Some(value) => {
-                positive(spec.name, value.nominal)?;
+                component_value(spec.name, spec.dimension, value.nominal)?;
                 tolerance(spec.name, value)?;
                 if let Some(other) = spec.with
                     && stage.component(other).is_none()
@@ -253,6 +253,9 @@ fn part(part: &crate::part::Part) -> Result<(), Error> {
             if !value.is_finite() || !signed && !may_be_zero && value <= 0.0 {
                 return Err(Error::NotPositive { what: figure.id(), given: value });
             }
+            if value.abs() > GREATEST || value != 0.0 && value.abs() < SMALLEST {
+                return Err(Error::BeyondReason { what: figure.id(), given: value });
+            }
             if may_be_zero && value < 0.0 {
                 return Err(Error::Negative { what: figure.id(), given: value });
             }
@@ -267,8 +270,23 @@ fn part(part: &crate::part::Part) -> Result<(), Error> {
     Ok(())
 }
 
+/// What no value of a circuit leaves, in SI units: beyond it sums of products lose their meaning before they lose their digits.
+const SMALLEST: f64 = 1e-30;
+/// See [`SMALLEST`].
+const GREATEST: f64 = 1e30;
+
 fn positive(what: &'static str, given: f64) -> Result<(), Error> {
-    if given > 0.0 && given.is_finite() { Ok(()) } else { Err(Error::NotPositive { what, given }) }
+    if !(given > 0.0 && given.is_finite()) {
+        return Err(Error::NotPositive { what, given });
+    }
+    if (SMALLEST..=GREATEST).contains(&given) { Ok(()) } else { Err(Error::BeyondReason { what, given }) }
+}
+
+/// A component's value: what can be bought or built, with room to spare.
+fn component_value(what: &'static str, dimension: Dimension, given: f64) -> Result<(), Error> {
+    positive(what, given)?;
+    let sane = if matches!(dimension, Dimension::Resistance) { 1e-6..=1e15 } else { 1e-18..=1e3 };
+    if sane.contains(&given) { Ok(()) } else { Err(Error::BeyondReason { what, given }) }
 }
 
 fn tolerance(what: &'static str, value: &crate::stage::Toleranced) -> Result<(), Error> {
@@ -309,11 +327,10 @@ fn range(low: &Extreme, high: &Extreme) -> Option<(f64, f64)> {
 
 fn figure_row(spread: &mut Spread<'_>, query: Query) -> FigureRow {
     let extremes = spread.extremes(query);
-    let basis = extremes.centre.value().map(|v| {
-        let tolerance = 1e-3 * v.abs();
-        let at_low = spread.basis(query, &extremes, &extremes.low, tolerance);
-        at_low.max(spread.basis(query, &extremes, &extremes.high, tolerance))
-    });
+    let basis = extremes
+        .centre
+        .value()
+        .map(|_| spread.basis(query, &extremes, Some(&extremes.low)).max(spread.basis(query, &extremes, Some(&extremes.high))));
     let dimension = query.figure.dimension_in(spread.kind());
     FigureRow { query, dimension, range: range(&extremes.low, &extremes.high), nominal: extremes.centre.clone(), basis }
 }
@@ -325,14 +342,14 @@ fn limit_row(spread: &mut Spread<'_>, limit: &Limit) -> LimitRow {
     let range = range(&extremes.low, &extremes.high);
     let room = |extreme: &Extreme, edge: f64, upper: bool| extreme.outcome.value().map(|v| if upper { edge - v } else { v - edge });
     // The side with less room decides; a side without a value decides at once.
-    let (extreme, margin, edge) = match limit.bound {
-        Bound::Report => (&extremes.low, None, None),
-        Bound::AtLeast(edge) => (&extremes.low, room(&extremes.low, edge, false), Some(edge)),
-        Bound::AtMost(edge) => (&extremes.high, room(&extremes.high, edge, true), Some(edge)),
+    let (extreme, margin) = match limit.bound {
+        Bound::Report => (&extremes.low, None),
+        Bound::AtLeast(edge) => (&extremes.low, room(&extremes.low, edge, false)),
+        Bound::AtMost(edge) => (&extremes.high, room(&extremes.high, edge, true)),
         Bound::Between { low, high } => match (room(&extremes.low, low, false), room(&extremes.high, high, true)) {
-            (Some(a), Some(b)) if b < a => (&extremes.high, Some(b), Some(high)),
-            (Some(a), _) => (&extremes.low, Some(a), Some(low)),
-            (None, _) => (&extremes.low, None, Some(low)),
+            (Some(a), Some(b)) if b < a => (&extremes.high, Some(b)),
+            (Some(a), _) => (&extremes.low, Some(a)),
+            (None, _) => (&extremes.low, None),
         },
     };
     let verdict = match (&extreme.outcome, limit.bound, margin) {
@@ -345,14 +362,17 @@ fn limit_row(spread: &mut Spread<'_>, limit: &Limit) -> LimitRow {
         _ => Verdict::Undetermined,
     };
     let extreme = extreme.clone();
-    let basis = extreme.outcome.value().map(|_| {
-        let distance = match (nominal.value(), edge) {
-            (Some(v), Some(edge)) if v.is_finite() => (v - edge).abs(),
-            (Some(v), _) => 0.1 * v.abs(),
-            _ => 0.0,
-        };
-        spread.basis(query, &extremes, &extreme, 0.01 * distance)
-    });
+    let basis = match limit.bound {
+        Bound::Report => nominal.value().map(|_| spread.basis(query, &extremes, None)),
+        _ => extreme.outcome.value().map(|_| spread.basis(query, &extremes, Some(&extreme))),
+    };
+    // What nominal values already miss, no parameter's spread uses up.
+    let missed = match (nominal.value(), limit.bound) {
+        (Some(v), Bound::AtLeast(edge)) => v < edge,
+        (Some(v), Bound::AtMost(edge)) => v > edge,
+        (Some(v), Bound::Between { low, high }) => v < low || v > high,
+        _ => false,
+    };
     let dominant = extreme.effects.iter().max_by(|a, b| a.1.abs().total_cmp(&b.1.abs())).map(|&(slot, _)| spread.parameter(slot));
     let corner = if matches!(limit.bound, Bound::Report) { Vec::new() } else { extreme.corner };
     LimitRow {
@@ -365,7 +385,7 @@ fn limit_row(spread: &mut Spread<'_>, limit: &Limit) -> LimitRow {
         verdict,
         basis,
         corner,
-        dominant: if matches!(limit.bound, Bound::Report) { None } else { dominant },
+        dominant: if missed || matches!(limit.bound, Bound::Report) { None } else { dominant },
     }
 }
 
@@ -380,16 +400,20 @@ pub fn thin_below(limit: &Limit) -> f64 {
     }
 }
 
-/// Each cause's magnitude at nominal values and at its own worst: part figures at their worst ends, and whichever ends of temperature
-/// and supply make it greatest. A cause keeps its worst where others lack data.
+/// Each cause's magnitude at nominal values and where the whole offset is greatest, so that the lines add up to it. Where the whole
+/// lacks data, each line at its own worst: part figures at their worse ends, at whichever ends of temperature and supply.
 fn dc_budget(spread: &mut Spread<'_>) -> Vec<DcLine> {
     let lines = dc::budget(&spread.nominal).lines.clone();
-    let extremes: Vec<_> = spread.dc_corners().iter().map(|build| dc::budget(build).lines.clone()).collect();
+    let at_greatest = spread.at_greatest(Query::of(Figure::OutputOffset)).map(|build| dc::budget(&build).lines.clone());
+    let extremes: Vec<_> = match at_greatest {
+        Some(_) => Vec::new(),
+        None => spread.dc_corners().iter().map(|build| dc::budget(build).lines.clone()).collect(),
+    };
     lines
         .into_iter()
         .enumerate()
         .map(|(i, (cause, nominal))| {
-            let mut worst = nominal.clone();
+            let mut worst = at_greatest.as_ref().map_or_else(|| nominal.clone(), |there| there[i].1.clone());
             for there in &extremes {
                 if let (Some(so_far), Some(here)) = (worst.value(), there[i].1.value())
                     && here > so_far
@@ -485,6 +509,30 @@ fn cautions(spread: &mut Spread<'_>) -> Vec<Caution> {
                 list.push(Caution::ResistorHot { component, power, rating });
             }
         }
+    }
+    if analysis::missing_small_signal(solution).is_none() && !solution.no_dc_path() {
+        if solution.oscillates() {
+            list.push(Caution::Oscillates);
+        } else {
+            for (figure, edge) in
+                [(Figure::ClipMargin, 0.0), (Figure::InputRangeMargin, 0.0), (Figure::CurrentMargin, 0.0), (Figure::SlewMargin, 1.0)]
+            {
+                if let Some(margin) = outcome(solution, Query::of(figure)).value()
+                    && margin < edge
+                {
+                    list.push(Caution::Exceeded { figure, margin });
+                }
+            }
+            if let (Some(offset), Some(supply)) = (outcome(solution, Query::of(Figure::OutputOffset)).value(), stage.supply)
+                && offset > supply.positive.nominal - supply.negative.nominal
+            {
+                list.push(Caution::OffsetBeyondSupply { offset });
+            }
+        }
+    }
+    let exact: Vec<_> = stage.components.iter().filter(|c| c.value.minus + c.value.plus <= 0.0).map(|c| c.name).collect();
+    if !exact.is_empty() {
+        list.push(Caution::TakenAsExact(exact));
     }
     let junction_max = solution.part(PartFigure::JunctionMax);
     if let Some(allowed) = junction_max

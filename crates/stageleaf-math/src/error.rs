@@ -19,6 +19,13 @@ pub enum Error {
         /// What was given.
         given: f64,
     },
+    /// Finite and above zero, but far outside what circuits are made of.
+    BeyondReason {
+        /// The component or key.
+        what: &'static str,
+        /// What was given.
+        given: f64,
+    },
     /// The kind needs this component.
     MissingComponent {
         /// Its name.
@@ -54,6 +61,7 @@ impl fmt::Display for Error {
         match self {
             Self::NotPositive { what, given } => write!(f, "`{what}` must be above zero; {given} was given"),
             Self::Negative { what, given } => write!(f, "`{what}` must not be below zero; {given} was given"),
+            Self::BeyondReason { what, given } => write!(f, "`{what}` is {given:e} in SI units, far outside what circuits are made of"),
             Self::MissingComponent { what } => write!(f, "`{what}` is missing"),
             Self::Unpaired { given, missing } => write!(f, "`{given}` needs `{missing}`"),
             Self::SupplyReversed { positive, negative } => {

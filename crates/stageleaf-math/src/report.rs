@@ -348,8 +348,22 @@ pub enum Caution {
     PhaseReversal,
     /// A part figure that was not stated and was taken as ideal in the small-signal figures.
     TakenAsIdeal(PartFigure),
-    /// Both supplies the wrong way round or equal.
-    SupplyReversed,
+    /// A closed-loop pole lies in the right half plane.
+    Oscillates,
+    /// At nominal values the stated signal already exceeds what the amplifier can do.
+    Exceeded {
+        /// `clip_margin`, `input_range_margin`, `current_margin` or `slew_margin`.
+        figure: crate::figure::Figure,
+        /// Its value.
+        margin: f64,
+    },
+    /// The DC errors alone are greater than the supply: the output rests at a rail.
+    OffsetBeyondSupply {
+        /// `output_offset`, V.
+        offset: f64,
+    },
+    /// Components without a tolerance: the worst case takes them as exact.
+    TakenAsExact(Vec<&'static str>),
 }
 
 /// Everything about a stage.

@@ -56,6 +56,8 @@ pub struct Roots {
     pub poles: Vec<Complex64>,
     /// Zeros of the first drive's transfer to the load.
     pub zeros: Vec<Complex64>,
+    /// By amplifier, where there are several: poles with its loop opened.
+    pub open: Vec<Vec<Complex64>>,
     /// By amplifier: zeros of the return ratio.
     pub loop_zeros: Vec<Vec<Complex64>>,
 }
@@ -286,6 +288,12 @@ impl<'m> Solution<'m> {
             Roots {
                 poles: looped.closed.roots(near.map(|r| &r.poles[..])),
                 zeros: self.load_numerator().roots(near.map(|r| &r.zeros[..])),
+                // With one amplifier the opened loop is passive: its poles are real, and show nothing that the grid could miss.
+                open: if looped.open.len() > 1 {
+                    looped.open.iter().enumerate().map(|(a, o)| o.roots(near.map(|n| &n.open[a][..]))).collect()
+                } else {
+                    Vec::new()
+                },
                 loop_zeros: looped.returned.iter().enumerate().map(|(a, r)| r.roots(near.map(|n| &n.loop_zeros[a][..]))).collect(),
             }
         })
@@ -305,14 +313,20 @@ impl<'m> Solution<'m> {
     pub fn grid(&self) -> &[f64] {
         self.grid.get_or_init(|| {
             let roots = self.roots();
-            let features =
-                || roots.poles.iter().chain(&roots.zeros).chain(roots.loop_zeros.iter().flatten()).filter(|r| magnitude(**r) > 0.0);
+            let features = || {
+                roots
+                    .poles
+                    .iter()
+                    .chain(&roots.zeros)
+                    .chain(roots.loop_zeros.iter().chain(&roots.open).flatten())
+                    .filter(|r| magnitude(**r) > 0.0)
+            };
             let low = features().map(|r| magnitude(*r)).fold(f64::INFINITY, f64::min);
             let high = features().map(|r| magnitude(*r)).fold(0.0, f64::max);
             let mut grid = Vec::with_capacity(160);
             if high > 0.0 {
                 let (mut at, end) = (low / 1e3, high * 1e3);
-                while at < end {
+                while at < end && grid.len() < 4000 {
                     grid.push(at);
                     at *= STEP;
                 }

@@ -1,15 +1,15 @@
 //! The expansion against the dense nodal solution of the same network: random stages of every kind, well and badly scaled.
 //!
-//! The dense solution cancels where the open-loop gain is high; Kirchhoff's law holds to thirteen.
+//! The dense solution cancels where the open-loop gain is high; Kirchhoff's law holds to thirteen digits.
 //! The two share the network's layout and nothing else. What both could get wrong together (the layout itself) is checked
 //! against an independent program in `tests/outside/`.
 
 use num_complex::Complex64;
 use stageleaf_math::{
-    kind::Kind,
+    kind::{Drives, Kind},
     model::Model,
     network::{
-        DRIVEN, GROUND, Node,
+        DRIVEN, Drive as Input, GROUND, Node,
         dense::{Drive, solve},
     },
     part::{Part, PartFigure, Rating, Zero},
@@ -107,6 +107,16 @@ fn compare(seed: u64, what: &str, ours: Complex64, dense: Complex64, allowed: f6
     assert!(difference <= allowed * size + 1e-290, "seed {seed}: {what}: expansion {ours}, dense {dense}, off by {:e}", difference / size);
 }
 
+/// Each amplifier's gain and output resistance.
+fn amplifiers(solution: &Solution<'_>, omega: f64) -> Vec<(Complex64, f64)> {
+    (0..solution.amplifiers())
+        .map(|index| {
+            let (above, below) = solution.amplifier(index);
+            (above.at(omega) / below.at(omega), solution.part_of(index, PartFigure::OutputResistance).unwrap_or(0.0))
+        })
+        .collect()
+}
+
 /// The dense solution forms the amplifier's input as the difference of two nearly equal voltages, so what it may be off by grows
 /// with the open-loop gain.
 fn check(seed: u64, kind: Kind, ohms: (f64, f64), farads: (f64, f64)) {
@@ -114,40 +124,57 @@ fn check(seed: u64, kind: Kind, ohms: (f64, f64), farads: (f64, f64)) {
     let stage = random_stage(&mut draw, kind, ohms, farads);
     let model = Model::compile(&stage);
     let solution = Solution::new(&model, model.parameters.nominal(), None);
-    let resistance = solution.part(PartFigure::OutputResistance).unwrap_or(0.0);
+    let network = &model.network;
+    let held = network.held();
     for _ in 0..6 {
         let frequency = draw.log(1.0, 1e9);
         let omega = solution.scaled(frequency);
         let s = Complex64::new(0.0, std::f64::consts::TAU * frequency);
-        let (above, below) = solution.amplifier(0);
-        let gain = above.at(omega) / below.at(omega);
-        let condition = 1e-9 + 1e-9 * gain.norm();
-        let solved = |drive| solve(&model.network, &solution.values, &[(gain, resistance)], s, drive);
-        let Some(voltages) = solved(Drive::Input(0)) else { continue };
-        let largest = voltages.iter().map(|v| v.norm()).fold(0.0, f64::max);
-        for (node, &dense) in (0u8..).zip(&voltages).skip(1) {
-            compare(seed, &format!("v({node}) at {frequency:e}"), solution.voltage(0, Node(node), omega), dense, condition, 1e-6 * largest);
+        let amplifiers = amplifiers(&solution, omega);
+        let condition = 1e-9 + 1e-9 * amplifiers.iter().map(|(gain, _)| gain.norm()).fold(0.0, f64::max);
+        let solved = |drive| solve(network, &solution.values, &amplifiers, s, drive);
+        for (drive, weights) in model.drives.iter().enumerate() {
+            let mut dense = vec![Complex64::new(0.0, 0.0); network.nodes];
+            for (input, weight) in weights.iter().enumerate().filter(|(_, w)| w.abs() > 0.0) {
+                let Some(voltages) = solved(Drive::Input(input)) else { return };
+                // A charge's current is its rate of change.
+                let rate = if network.inputs[input] == Input::Charge { s } else { Complex64::new(1.0, 0.0) };
+                for (sum, v) in dense.iter_mut().zip(&voltages) {
+                    *sum += v * rate * *weight;
+                }
+            }
+            let largest = dense.iter().map(|v| v.norm()).fold(0.0, f64::max);
+            for (node, &dense) in (0u8..).zip(&dense).skip(1) {
+                let ours = solution.voltage(drive, Node(node), omega);
+                compare(seed, &format!("{kind:?} v({node}) of drive {drive} at {frequency:e}"), ours, dense, condition, 1e-6 * largest);
+            }
         }
-        let load = usize::from(model.network.load.0);
+        let load = usize::from(network.load.0);
         let closed = solution.looped().closed.at(omega);
-        let Some(voltages) = solved(Drive::AmplifierInput(0)) else { continue };
-        compare(seed, "series input", solution.injection().input[0].at(omega) / closed, voltages[load], condition, 0.0);
-        for node in 2..model.network.nodes {
+        for index in 0..network.amplifiers.len() {
+            let Some(voltages) = solved(Drive::AmplifierInput(index)) else { continue };
+            let ours = solution.injection().input[index].at(omega) / closed;
+            compare(seed, &format!("{kind:?} series input {index}"), ours, voltages[load], condition, 0.0);
+            // The return ratio: one volt behind the output resistance in the controlled source's place, T = −A·(vp − vn).
+            let amplifier = network.amplifiers[index];
+            let mut unit = network.clone();
+            unit.amplifiers[index].plus = GROUND;
+            unit.amplifiers[index].minus = GROUND;
+            let mut others = amplifiers.clone();
+            others[index].0 = Complex64::new(1.0, 0.0);
+            if let Some(voltages) = solve(&unit, &solution.values, &others, s, Drive::AmplifierInput(index)) {
+                let at = |n: Node| voltages[usize::from(n.0)];
+                let ratio = -amplifiers[index].0 * (at(amplifier.plus) - at(amplifier.minus));
+                compare(seed, &format!("{kind:?} return ratio {index}"), solution.return_ratio(index, omega), ratio, condition, 0.0);
+            }
+        }
+        // A pin without output resistance stays where it is, whatever current flows into it.
+        let stiff = |node: usize| network.amplifiers.iter().zip(&amplifiers).any(|(a, (_, r))| usize::from(a.pin.0) == node && *r <= 0.0);
+        for node in (1..network.nodes).filter(|n| held >> n & 1 == 0 && !stiff(*n)) {
             let to = Node(u8::try_from(node).expect("few"));
             let Some(voltages) = solved(Drive::Current { from: GROUND, to }) else { continue };
             let ours = solution.injection().current[node].at(omega) / closed * model.scale.0;
-            compare(seed, &format!("transimpedance from {node} at {frequency:e}"), ours, voltages[load], condition, 0.0);
-        }
-        // The return ratio: one volt behind the output resistance in the controlled source's place, T = −A·(vp − vn).
-        let one = Complex64::new(1.0, 0.0);
-        let amplifier = model.network.amplifiers[0];
-        let mut unit = model.network.clone();
-        unit.amplifiers[0].plus = GROUND;
-        unit.amplifiers[0].minus = GROUND;
-        if let Some(voltages) = solve(&unit, &solution.values, &[(one, resistance)], s, Drive::AmplifierInput(0)) {
-            let at = |n: Node| voltages[usize::from(n.0)];
-            let ratio = -gain * (at(amplifier.plus) - at(amplifier.minus));
-            compare(seed, "return ratio", solution.return_ratio(0, omega), ratio, condition, 0.0);
+            compare(seed, &format!("{kind:?} transimpedance from {node} at {frequency:e}"), ours, voltages[load], condition, 0.0);
         }
     }
     assert!(model.network.nodes > usize::from(DRIVEN.0));
@@ -170,6 +197,8 @@ fn badly_scaled_stages_satisfy_kirchhoff() {
     use stageleaf_math::network::dense::admittance;
 
     for &kind in Kind::ALL {
+        // A difference is put together from the transfers of two inputs, which may nearly cancel at a node.
+        let kept = if kind.spec().drives == Drives::Differential { 1e-9 } else { 1e-13 };
         for seed in 0..2000 {
             let mut draw = Draw(seed);
             let stage = random_stage(&mut draw, kind, (1e-2, 1e12), (1e-15, 1.0));
@@ -195,20 +224,35 @@ fn badly_scaled_stages_satisfy_kirchhoff() {
                         sum.1 += size;
                     }
                 }
-                let amplifier = network.amplifiers[0];
-                for (node, (sum, size)) in sums.iter().enumerate() {
-                    if node > usize::from(DRIVEN.0) && node != usize::from(amplifier.pin.0) {
-                        assert!(sum.norm() <= 1e-13 * size + 1e-300, "seed {seed} {kind:?}: {sum} of {size:e} left at node {node}");
+                let held = network.held();
+                let is_pin = |node: usize| network.amplifiers.iter().any(|a| usize::from(a.pin.0) == node);
+                for (node, (sum, size)) in sums.iter().enumerate().skip(1) {
+                    if held >> node & 1 == 1 || is_pin(node) {
+                        continue;
                     }
+                    // What the first drive puts into the node itself.
+                    let given = match network.inputs.get(node - 1) {
+                        Some(Input::Current) => Complex64::new(1.0, 0.0),
+                        Some(Input::Charge) => s,
+                        _ => Complex64::new(0.0, 0.0),
+                    };
+                    let left = sum - given;
+                    assert!(
+                        left.norm() <= kept * (size + given.norm()) + 1e-300,
+                        "seed {seed} {kind:?}: {left} of {size:e} left at node {node}"
+                    );
                 }
-                let (above, below) = solution.amplifier(0);
-                let gain = above.at(omega) / below.at(omega);
-                let resistance = solution.part(PartFigure::OutputResistance).unwrap_or(0.0);
-                let out = sums[usize::from(amplifier.pin.0)];
-                let left = gain * (at(amplifier.plus) - at(amplifier.minus)) - at(amplifier.pin) - out.0 * resistance;
-                let size =
-                    gain.norm() * (at(amplifier.plus).norm() + at(amplifier.minus).norm()) + at(amplifier.pin).norm() + out.1 * resistance;
-                assert!(left.norm() <= 1e-13 * size + 1e-300, "seed {seed} {kind:?}: the amplifier's equation leaves {left} of {size:e}");
+                for (amplifier, (gain, resistance)) in network.amplifiers.iter().zip(amplifiers(&solution, omega)) {
+                    let out = sums[usize::from(amplifier.pin.0)];
+                    let left = gain * (at(amplifier.plus) - at(amplifier.minus)) - at(amplifier.pin) - out.0 * resistance;
+                    let size = gain.norm() * (at(amplifier.plus).norm() + at(amplifier.minus).norm())
+                        + at(amplifier.pin).norm()
+                        + out.1 * resistance;
+                    assert!(
+                        left.norm() <= kept * size + 1e-300,
+                        "seed {seed} {kind:?}: the amplifier's equation leaves {left} of {size:e}"
+                    );
+                }
             }
         }
     }

@@ -365,6 +365,7 @@ fn query(reader: &mut Reader<'_>, entry: &Entry<'_>) -> Option<stageleaf_math::f
 fn place_of(reader: &Reader<'_>, error: &Error) -> Option<Range<usize>> {
     let what: &str = match error {
         Error::NotPositive { what, .. }
+        | Error::BeyondReason { what, .. }
         | Error::Negative { what, .. }
         | Error::MissingComponent { what }
         | Error::RangeReversed { what, .. } => what,

@@ -2,6 +2,7 @@
 
 use stageleaf_math::{
     dimension::Dimension,
+    figure::Figure,
     kind::Kind,
     part::{PartFigure, Rating},
     report::{Caution, DcCause, Need, NoiseOrigin, Outcome, Parameter},
@@ -158,7 +159,26 @@ pub fn caution_text(caution: &Caution) -> String {
         Caution::TakenAsIdeal(figure) => {
             format!("The part states no {} ({}); the small-signal figures take it as ideal.", figure.meaning(), figure.id())
         }
-        Caution::SupplyReversed => "The positive supply is not above the negative one.".into(),
+        Caution::Oscillates => "The stage oscillates: a closed-loop pole lies in the right half plane.".into(),
+        Caution::Exceeded { figure, margin } => match figure {
+            Figure::ClipMargin => {
+                format!("At nominal values the signal clips: the output lacks {}.", trimmed(-margin, Dimension::Voltage, 3))
+            }
+            Figure::InputRangeMargin => {
+                format!("At nominal values an input leaves its range by {}.", trimmed(-margin, Dimension::Voltage, 3))
+            }
+            Figure::CurrentMargin => {
+                format!("At nominal values the output current exceeds its limit by {}.", trimmed(-margin, Dimension::Current, 3))
+            }
+            _ => format!(
+                "At nominal values the signal is faster than the amplifier slews: {} of what it needs.",
+                format(*margin, Dimension::Fraction, 3)
+            ),
+        },
+        Caution::OffsetBeyondSupply { offset } => {
+            format!("The DC errors alone come to {} at the output: it rests at a rail.", trimmed(*offset, Dimension::Voltage, 3))
+        }
+        Caution::TakenAsExact(names) => format!("Without a tolerance, and exact at the worst case: {}.", names.join(", ")),
     }
 }
 

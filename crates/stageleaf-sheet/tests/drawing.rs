@@ -88,7 +88,7 @@ fn no_label_covers_another_or_a_wire() {
                 // A ground in the negative rail's place, too.
                 let grounded = matches!(source, Some(Source::Capacitive { .. }));
                 let negative = Span::exact(if grounded { 0.0 } else { -12.0 });
-                block.stage.supply = Some(Supply { positive: Span::exact(12.0), negative });
+                block.stage.supply = Some(Supply { positive: Span::exact(12.0), negative, ripple: None });
                 // A reference of some resistance and an ideal one.
                 if let Some(reference) = &mut block.stage.reference {
                     reference.resistance = source.is_some().then_some(Toleranced::exact(10.0));

@@ -9,6 +9,8 @@
 //! H. W. Bode, *Network Analysis and Feedback Amplifier Design*, Van Nostrand 1945 (return ratio), from memory. Checked in
 //! `tests/outside/`.
 
+use alloc::vec::Vec;
+
 use super::search;
 use crate::{
     polynomial::Polynomial,
@@ -68,15 +70,13 @@ pub fn of(solution: &Solution<'_>, amplifier: usize) -> Margins {
     let rank = |margin: f64| if stable { margin.abs() } else { margin };
     let mut worst: Option<(f64, f64)> = None;
     let (mut above, mut below) = (f64::INFINITY, 0.0f64);
-    let (mut top, mut top_at) = (0.0, 0);
     let mut before: Option<(f64, f64, f64)> = None;
-    for (i, &omega) in grid.iter().enumerate() {
+    let mut sensitivities = Vec::with_capacity(grid.len());
+    for &omega in grid {
         let (r, o) = at(omega);
         let power = o.norm_sqr();
         let (s, t, e) = (r.norm_sqr() - power, (r * o.conj()).im, power / (r + o).norm_sqr());
-        if e > top {
-            (top, top_at) = (e, i);
-        }
+        sensitivities.push(e);
         if let Some((w, s0, t0)) = before {
             if (s0 < 0.0) != (s < 0.0) {
                 let at = search::root(w, omega, size);
@@ -99,11 +99,7 @@ pub fn of(solution: &Solution<'_>, amplifier: usize) -> Margins {
     }
     // Beyond the grid T tends to the ratio of its leading coefficients: to nothing, as a rule.
     let ends = sensitivity_limit(returned, open).max(sensitivity(0.0));
-    let mut sensitivity_peak = libm::sqrt(ends);
-    if !grid.is_empty() {
-        let (a, c) = (grid[top_at.saturating_sub(1)], grid[(top_at + 1).min(grid.len() - 1)]);
-        sensitivity_peak = libm::sqrt(search::peak(a, c, sensitivity).1.max(top).max(ends));
-    }
+    let sensitivity_peak = libm::sqrt(search::highest(grid, &sensitivities, sensitivity).max(ends));
     // A −180° crossing with |T| > 1 says how far a conditionally stable loop may fall, or how far an oscillating one is off.
     let gain = if below > 0.0 && (!stable || above.is_infinite()) { below } else { above };
     Margins { amplifier, crossover: worst.map(|(w, _)| solution.hertz(w)), phase: worst.map(|(_, m)| m), gain, sensitivity_peak }

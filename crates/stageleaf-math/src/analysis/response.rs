@@ -26,7 +26,12 @@ pub struct ReferencePoint {
 
 /// The pass-band reference of the first drive's transfer.
 pub fn reference(solution: &Solution<'_>) -> ReferencePoint {
-    *solution.reference.get_or_init(|| match solution.model.stage.kind.spec().reference {
+    // Where a capacitive source blocks DC, the pass band is where the response is largest.
+    let reference = match solution.model.stage.kind.spec().reference {
+        Reference::Dc if solution.load_numerator().constant().abs() <= 0.0 => Reference::Peak,
+        other => other,
+    };
+    *solution.reference.get_or_init(|| match reference {
         Reference::Dc => ReferencePoint { omega: 0.0, gain: solution.dc_gain(0) },
         Reference::Frequency(frequency) => {
             let omega = solution.scaled(frequency(solution.model.stage));
@@ -79,14 +84,12 @@ pub fn edges(solution: &Solution<'_>) -> Edges {
         let power = |omega: f64| numerator.at(omega).norm_sqr() / looped.closed.at(omega).norm_sqr();
         let grid = solution.grid();
         let (mut bandwidth, mut low_cutoff) = (f64::INFINITY, 0.0);
-        let (mut top, mut top_at) = (gain * gain, None);
+        let mut powers = Vec::with_capacity(grid.len());
+        powers.extend(grid.iter().map(|&w| power(w)));
         let start = grid.partition_point(|&w| w <= middle);
         let mut before = if middle > 0.0 { middle } else { grid.first().map_or(0.0, |w| w * 0.5) };
         for (i, &omega) in grid.iter().enumerate().skip(start) {
-            let here = power(omega);
-            if here > top {
-                (top, top_at) = (here, Some(i));
-            }
+            let here = powers[i];
             if bandwidth.is_infinite() && here < half {
                 bandwidth = solution.hertz(search::root(before, omega, |w| power(w) - half));
             }
@@ -94,24 +97,21 @@ pub fn edges(solution: &Solution<'_>) -> Edges {
         }
         let mut after = middle;
         for (i, &omega) in grid.iter().enumerate().take(start).rev() {
-            let here = power(omega);
-            if here > top {
-                (top, top_at) = (here, Some(i));
-            }
+            let here = powers[i];
             if low_cutoff <= 0.0 && here < half {
                 low_cutoff = solution.hertz(search::root(omega, after, |w| power(w) - half));
             }
             after = omega;
         }
-        let mut peaking = 1.0;
-        if let Some(i) = top_at {
-            let (a, c) = (grid[i.saturating_sub(1)], grid[(i + 1).min(grid.len() - 1)]);
-            let (_, best) = search::peak(a, c, power);
-            peaking = libm::sqrt(best.max(top)) / gain.abs();
-            // A rise that only rounding makes is none.
-            if peaking < 1.0 + 1e-12 {
-                peaking = 1.0;
-            }
+        let mut best = search::highest(grid, &powers, power).max(power(0.0));
+        if middle > 0.0 && start > 0 && start < grid.len() {
+            // A flat top may lie beside the reference, between two grid points.
+            best = best.max(search::peak(grid[start - 1], grid[start], power).1);
+        }
+        let mut peaking = libm::sqrt(best) / gain.abs();
+        // A rise that only rounding makes is none.
+        if peaking < 1.0 + 1e-12 {
+            peaking = 1.0;
         }
         Edges { bandwidth, low_cutoff, peaking }
     })

@@ -79,3 +79,20 @@ pub fn peak(a: f64, c: f64, mut f: impl FnMut(f64) -> f64) -> (f64, f64) {
     }
     if f1 > f2 { (libm::exp(x1), f1) } else { (libm::exp(x2), f2) }
 }
+
+/// The largest value of `f` over a grid on which `values` were found: every local peak that comes near the highest is refined, since
+/// the grid may catch one of two better than the other.
+pub fn highest(grid: &[f64], values: &[f64], mut f: impl FnMut(f64) -> f64) -> f64 {
+    /// How near, as a ratio: eight points to a decade and a pole's own places catch any peak better than this.
+    const NEAR: f64 = 0.8;
+    let top = values.iter().copied().fold(0.0, f64::max);
+    let last = values.len().saturating_sub(1);
+    let mut best = top;
+    for (i, &v) in values.iter().enumerate() {
+        let (before, after) = (i.saturating_sub(1), (i + 1).min(last));
+        if v >= NEAR * top && v >= values[before] && v >= values[after] && (v > values[before] || v > values[after]) {
+            best = best.max(peak(grid[before], grid[after], &mut f).1);
+        }
+    }
+    best
+}

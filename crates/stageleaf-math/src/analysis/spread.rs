@@ -1,13 +1,15 @@
 //! The worst case over tolerances, supply, temperature and part figures.
 //!
 //! # Formula
-//! Each parameter is moved alone to both ends of its range; the sign of what that does to a figure picks the corner at which the
-//! figure is least, and the one at which it is greatest. Both corners are solved in full. The range is never narrower than what
-//! any solved build showed.
+//! Each parameter is moved alone to both ends of its range, and through it where the range is wide (a load capacitance from none to
+//! a cable's); what that does to a figure picks the corner at which the figure is least, and the one at which it is greatest. At
+//! either corner, parameters that did nothing alone (a drift at the temperature where the offset holds, a rejection without a
+//! deviation of the supply), the temperature and the supplies are moved once more. The range is never narrower than what any solved
+//! build showed.
 //!
 //! # Does not apply
-//! A figure whose extreme lies inside the range of several parameters at once, or where parameters act together against their
-//! single signs.
+//! A figure whose extreme lies inside the ranges of several parameters at once, or where parameters act together against their
+//! single effects.
 //!
 //! # Source
 //! Vertex analysis by signed sensitivities: R. Spence, R. S. Soin, *Tolerance Design of Electronic Circuits*, Addison-Wesley 1988,
@@ -27,11 +29,47 @@ use crate::{
 
 /// Where a parameter stands in a corner.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
-enum End {
-    Nominal,
+enum Place {
+    /// The lower end of its range.
     Low,
+    /// The upper end.
     High,
+    /// This many quarters of the way from the lower to the upper end, in proportion.
+    Inside(u8),
 }
+
+impl Place {
+    /// The value there.
+    fn of(self, entry: &Entry) -> f64 {
+        match self {
+            Self::Low => entry.low,
+            Self::High => entry.high,
+            Self::Inside(quarters) => entry.low * libm::pow(entry.high / entry.low, f64::from(quarters) / 4.0),
+        }
+    }
+
+    /// The grade of that value: inside, that of the nominal one.
+    const fn grade(self, entry: &Entry) -> Grade {
+        match self {
+            Self::Inside(_) => entry.grade[0],
+            Self::Low => entry.grade[1],
+            Self::High => entry.grade[2],
+        }
+    }
+}
+
+/// A range counts as wide, and is looked through, from this ratio on.
+const WIDE: f64 = 1.5;
+
+/// The places to which a parameter is moved.
+fn places(entry: &Entry) -> impl Iterator<Item = Place> + use<> {
+    let wide = entry.low > 0.0 && entry.high >= WIDE * entry.low;
+    let inside = if wide { 1..4 } else { 0..0 };
+    [Place::Low, Place::High].into_iter().chain(inside.map(Place::Inside))
+}
+
+/// A parameter's slot and where it stands.
+type Move = (usize, Place);
 
 /// A stage's builds: the nominal one, one per moved parameter, and the corners that figures ask for.
 #[derive(Debug)]
@@ -40,9 +78,9 @@ pub struct Spread<'m> {
     /// The nominal build.
     pub nominal: Solution<'m>,
     near: &'m Roots,
-    moved: Vec<[Option<Rc<Solution<'m>>>; 2]>,
+    moved: BTreeMap<Move, Rc<Solution<'m>>>,
     probes: Vec<Option<Rc<Solution<'m>>>>,
-    corners: BTreeMap<Vec<(usize, bool)>, Rc<Solution<'m>>>,
+    corners: BTreeMap<Vec<Move>, Rc<Solution<'m>>>,
     known: Vec<(Query, Rc<Extremes>)>,
 }
 
@@ -55,8 +93,8 @@ pub struct Extremes {
     pub low: Extreme,
     /// Where it is greatest.
     pub high: Extreme,
-    /// With each parameter at its ends, by slot; `None` where it has no value or was not moved.
-    seen: Vec<(usize, [Option<f64>; 2])>,
+    /// With each parameter moved alone, where it has a value there.
+    seen: Vec<(Move, f64)>,
 }
 
 /// One of them.
@@ -68,7 +106,7 @@ pub struct Extreme {
     pub corner: Vec<Coordinate>,
     /// What each parameter alone does to the figure on the way there, by slot.
     pub effects: Vec<(usize, f64)>,
-    ends: Vec<(usize, bool)>,
+    ends: Vec<Move>,
 }
 
 impl<'m> Spread<'m> {
@@ -80,7 +118,7 @@ impl<'m> Spread<'m> {
             model,
             nominal: Solution::new(model, model.parameters.nominal(), Some(near)),
             near,
-            moved: (0..slots).map(|_| [None, None]).collect(),
+            moved: BTreeMap::new(),
             probes: (0..=slots).map(|_| None).collect(),
             corners: BTreeMap::new(),
             known: Vec::new(),
@@ -95,22 +133,30 @@ impl<'m> Spread<'m> {
         Rc::new(Solution::new(self.model, values, Some(self.near)))
     }
 
-    fn moved(&mut self, slot: usize, high: bool) -> Rc<Solution<'m>> {
-        let side = usize::from(high);
-        if self.moved[slot][side].is_none() {
-            self.moved[slot][side] = Some(self.build(&[(slot, self.end(slot, high))]));
+    fn moved(&mut self, at: Move) -> Rc<Solution<'m>> {
+        if let Some(found) = self.moved.get(&at) {
+            return found.clone();
         }
-        self.moved[slot][side].clone().expect("just built")
+        let solution = self.build(&[(at.0, self.place(at))]);
+        self.moved.insert(at, solution.clone());
+        solution
     }
 
-    fn corner(&mut self, ends: &[(usize, bool)]) -> Rc<Solution<'m>> {
+    fn corner(&mut self, ends: &[Move]) -> Rc<Solution<'m>> {
+        if let [at] = *ends {
+            return self.moved(at);
+        }
         if let Some(found) = self.corners.get(ends) {
             return found.clone();
         }
-        let changes: Vec<(usize, f64)> = ends.iter().map(|&(slot, high)| (slot, self.end(slot, high))).collect();
-        let solution = if let [(slot, high)] = *ends { self.moved(slot, high) } else { self.build(&changes) };
+        let changes: Vec<(usize, f64)> = ends.iter().map(|&at| (at.0, self.place(at))).collect();
+        let solution = self.build(&changes);
         self.corners.insert(ends.to_vec(), solution.clone());
         solution
+    }
+
+    fn place(&self, at: Move) -> f64 {
+        at.1.of(&self.model.parameters.entries[at.0])
     }
 
     /// The figure's least and greatest value over the spread.
@@ -133,64 +179,102 @@ impl<'m> Spread<'m> {
         let mut low = Search::new(&centre);
         let mut high = Search::new(&centre);
         let mut all = Vec::new();
-        let mut bad: Option<(Outcome, Vec<(usize, bool)>)> = None;
-        let slots: Vec<usize> = self
-            .model
-            .parameters
-            .entries
-            .iter()
-            .enumerate()
-            .filter(|(_, e)| e.touches & touched != 0 && e.low < e.high)
-            .map(|(slot, _)| slot)
-            .collect();
-        for slot in slots {
-            let Entry { nominal, low: lower, high: upper, .. } = self.model.parameters.entries[slot];
-            let mut seen = [None, None];
-            for side in [false, true] {
-                let end = if side { upper } else { lower };
-                if (end - nominal).abs() <= 0.0 {
+        let mut bad: Option<(Outcome, Vec<Move>)> = None;
+        let movable = |e: &Entry| e.touches & touched != 0 && e.low < e.high;
+        let slots: Vec<usize> =
+            self.model.parameters.entries.iter().enumerate().filter(|(_, e)| movable(e)).map(|(slot, _)| slot).collect();
+        for &slot in &slots {
+            let entry = self.model.parameters.entries[slot];
+            let mut seen = Vec::new();
+            for place in places(&entry) {
+                if (place.of(&entry) - entry.nominal).abs() <= 0.0 {
                     continue;
                 }
-                let there = value(&self.moved(slot, side), query);
+                let there = value(&self.moved((slot, place)), query);
                 match there.value() {
-                    Some(v) => seen[usize::from(side)] = Some(v),
+                    Some(v) => seen.push(((slot, place), v)),
                     // What does not apply there (no complex poles, say) takes nothing away here.
                     None if matches!(there, Outcome::DoesNotApply(_)) => {}
-                    None => bad = bad.or(Some((there, alloc::vec![(slot, side)]))),
+                    None => bad = bad.or(Some((there, alloc::vec![(slot, place)]))),
                 }
             }
-            all.push((slot, seen));
-            low.consider(slot, seen, |candidate, best| candidate < best);
-            high.consider(slot, seen, |candidate, best| candidate > best);
+            low.consider(&seen, |candidate, best| candidate < best);
+            high.consider(&seen, |candidate, best| candidate > best);
+            all.extend(seen);
         }
-        let mut finish = |search: Search, better: fn(f64, f64) -> bool| -> Extreme {
-            let mut result = value(&self.corner(&search.ends), query);
-            let mut ends = search.ends;
-            // Never narrower than what a single parameter, or none, already showed.
-            if let (Some(v), Some((single, at))) = (result.value(), search.best_single)
-                && better(single, v)
-            {
-                result = Outcome::Value(single);
-                ends = alloc::vec![at];
-            }
-            if let (Some(v), Some(centre)) = (result.value(), search.centre)
-                && better(centre, v)
-            {
-                result = Outcome::Value(centre);
-                ends.clear();
-            }
-            if result.value().is_some()
-                && let Some((outcome, at)) = &bad
-            {
-                result = outcome.clone();
-                ends.clone_from(at);
-            }
-            let corner = self.coordinates(&ends, &search.effects);
-            Extreme { outcome: result, corner, effects: search.effects, ends }
-        };
-        let low = finish(low, |a, b| a < b);
-        let high = finish(high, |a, b| a > b);
+        let again: Vec<usize> = slots.into_iter().filter(|&slot| self.deserves_another_look(slot, &centre, &all)).collect();
+        let low = self.finish(query, low, &again, &bad, |a, b| a < b);
+        let high = self.finish(query, high, &again, &bad, |a, b| a > b);
         Extremes { centre, low, high, seen: all }
+    }
+
+    /// Whether a parameter may do at a corner what it does not do alone.
+    fn deserves_another_look(&self, slot: usize, centre: &Outcome, seen: &[(Move, f64)]) -> bool {
+        let entry = &self.model.parameters.entries[slot];
+        if matches!(entry.parameter, Parameter::Temperature | Parameter::SupplyPositive | Parameter::SupplyNegative) {
+            return true;
+        }
+        let centre = centre.value().unwrap_or(f64::NAN);
+        seen.iter().filter(|((s, _), _)| *s == slot).all(|(_, v)| (v - centre).abs() <= 1e-9 * centre.abs())
+    }
+
+    fn finish(
+        &mut self,
+        query: Query,
+        search: Search,
+        again: &[usize],
+        bad: &Option<(Outcome, Vec<Move>)>,
+        better: fn(f64, f64) -> bool,
+    ) -> Extreme {
+        let Search { centre, mut ends, mut effects, best_single } = search;
+        let mut result = value(&self.corner(&ends), query);
+        for &slot in again {
+            let entry = self.model.parameters.entries[slot];
+            let Some(so_far) = result.value() else { break };
+            let mut best = so_far;
+            for place in [Place::Low, Place::High] {
+                let mut moved: Vec<Move> = ends.iter().copied().filter(|(s, _)| *s != slot).collect();
+                if (place.of(&entry) - entry.nominal).abs() > 0.0 {
+                    moved.push((slot, place));
+                    moved.sort_unstable();
+                }
+                if moved == ends {
+                    continue;
+                }
+                if let Some(there) = value(&self.corner(&moved), query).value()
+                    && better(there, best)
+                {
+                    best = there;
+                    ends = moved;
+                }
+            }
+            if better(best, so_far) {
+                effects.retain(|(s, _)| *s != slot);
+                effects.push((slot, best - so_far));
+                result = Outcome::Value(best);
+            }
+        }
+        // Never narrower than what a single parameter, or none, already showed.
+        if let (Some(v), Some((single, at))) = (result.value(), best_single)
+            && better(single, v)
+        {
+            result = Outcome::Value(single);
+            ends = alloc::vec![at];
+        }
+        if let (Some(v), Some(centre)) = (result.value(), centre)
+            && better(centre, v)
+        {
+            result = Outcome::Value(centre);
+            ends.clear();
+        }
+        if result.value().is_some()
+            && let Some((outcome, at)) = bad
+        {
+            result = outcome.clone();
+            ends.clone_from(at);
+        }
+        let corner = self.coordinates(&ends, &effects);
+        Extreme { outcome: result, corner, effects, ends }
     }
 
     /// The stage's kind.
@@ -205,17 +289,25 @@ impl<'m> Spread<'m> {
         self.model.parameters.entries[slot].parameter
     }
 
+    /// The build at which a figure is greatest, if it has a value there.
+    pub fn at_greatest(&mut self, query: Query) -> Option<Rc<Solution<'m>>> {
+        let extremes = self.extremes(query);
+        extremes.high.outcome.value()?;
+        Some(self.corner(&extremes.high.ends))
+    }
+
     /// Builds with the part's DC figures at their worse ends, at all ends of temperature and supplies.
     pub fn dc_corners(&mut self) -> Vec<Rc<Solution<'m>>> {
         let parameters = &self.model.parameters;
-        let mut worse: Vec<(usize, bool)> = Vec::new();
+        let mut worse: Vec<Move> = Vec::new();
         for (slot, entry) in parameters.entries.iter().enumerate() {
             let figure = match entry.parameter {
                 Parameter::Part(figure) | Parameter::PartOf(_, figure) => figure,
                 _ => continue,
             };
             if entry.touches & touch::DC != 0 && entry.touches & touch::NETWORK == 0 && entry.low < entry.high {
-                worse.push((slot, matches!(figure.worse(), crate::part::Worse::High)));
+                let high = matches!(figure.worse(), crate::part::Worse::High);
+                worse.push((slot, if high { Place::High } else { Place::Low }));
             }
         }
         let mut free: Vec<usize> = parameters.temperature().into_iter().collect();
@@ -224,7 +316,8 @@ impl<'m> Spread<'m> {
         (0..1_usize << free.len())
             .map(|choice| {
                 let mut ends = worse.clone();
-                ends.extend(free.iter().enumerate().map(|(i, &slot)| (slot, choice >> i & 1 == 1)));
+                let end = |i: usize| if choice >> i & 1 == 1 { Place::High } else { Place::Low };
+                ends.extend(free.iter().enumerate().map(|(i, &slot)| (slot, end(i))));
                 ends.sort_unstable();
                 self.corner(&ends)
             })
@@ -232,25 +325,30 @@ impl<'m> Spread<'m> {
     }
 
     /// The coordinates that matter: those that alone do at least a hundredth of what all do together.
-    fn coordinates(&self, ends: &[(usize, bool)], effects: &[(usize, f64)]) -> Vec<Coordinate> {
+    fn coordinates(&self, ends: &[Move], effects: &[(usize, f64)]) -> Vec<Coordinate> {
         let total: f64 = effects.iter().map(|(_, e)| e.abs()).filter(|e| e.is_finite()).sum();
         ends.iter()
             .filter(|(slot, _)| effects.iter().find(|(s, _)| s == slot).is_none_or(|(_, e)| e.abs() >= 0.01 * total))
-            .map(|&(slot, high)| {
-                let entry = &self.model.parameters.entries[slot];
-                Coordinate { parameter: entry.parameter, value: self.end(slot, high), nominal: entry.nominal }
+            .map(|&at| {
+                let entry = &self.model.parameters.entries[at.0];
+                Coordinate { parameter: entry.parameter, value: self.place(at), nominal: entry.nominal }
             })
             .collect()
     }
 
-    /// What the figure at one of its extremes rests on. A part figure counts when moving it by its spread, or by a fifth where it
-    /// has none, changes the figure by more than `tolerance`.
+    /// What the figure rests on at one of its extremes, or at nominal values. A part figure counts when moving it by its spread, or by a
+    /// fifth where it has none, changes the figure by more than a two-hundredth.
     ///
-    /// It is moved from the nominal build; where the figure is flat there (no peaking, an unlimited margin) and not at the extreme,
-    /// from the extreme's.
-    pub fn basis(&mut self, query: Query, extremes: &Extremes, extreme: &Extreme, tolerance: f64) -> Basis {
-        let at_extreme = flat(query, &extremes.centre) && !flat(query, &extreme.outcome);
+    /// It is moved from the nominal build; from the extreme's where the figure is flat at nominal values (no peaking, an unlimited
+    /// margin), and for DC errors, which are products.
+    pub fn basis(&mut self, query: Query, extremes: &Extremes, extreme: Option<&Extreme>) -> Basis {
+        const COUNTS: f64 = 0.005;
+        let nominal = Extreme { outcome: extremes.centre.clone(), corner: Vec::new(), effects: Vec::new(), ends: Vec::new() };
+        let extreme = extreme.unwrap_or(&nominal);
         let touched = touched_by(query.figure);
+        let at_extreme = touched == touch::DC || flat(query, &extremes.centre) && !flat(query, &extreme.outcome);
+        let from = if at_extreme { &extreme.outcome } else { &extremes.centre };
+        let tolerance = COUNTS * from.value().filter(|v| v.is_finite()).map_or(0.0, f64::abs);
         let (mut guaranteed, mut typical) = (false, false);
         for slot in 0..self.model.parameters.entries.len() {
             let entry = self.model.parameters.entries[slot];
@@ -258,32 +356,21 @@ impl<'m> Spread<'m> {
             if !of_part || entry.touches & touched == 0 {
                 continue;
             }
-            let end = extreme.ends.iter().find(|(s, _)| *s == slot);
+            let end = extreme.ends.iter().find(|(s, _)| *s == slot).map(|(_, place)| *place);
             let counts = if at_extreme {
                 let moved = if end.is_some() { entry.nominal } else { entry.nominal * 1.2 };
-                let there = value(&self.off_corner(&extreme.ends, slot, moved), query);
-                changes(&extreme.outcome, &there, tolerance)
+                changes(from, &value(&self.off_corner(&extreme.ends, slot, moved), query), tolerance)
             } else if entry.low < entry.high {
-                extremes.seen.iter().find(|(s, _)| *s == slot).is_none_or(|(_, ends)| {
-                    let moved = |end: usize, at: f64| match ends[end] {
-                        Some(v) => changes(&extremes.centre, &Outcome::Value(v), tolerance),
-                        None => (at - entry.nominal).abs() > 0.0,
-                    };
-                    moved(0, entry.low) || moved(1, entry.high)
-                })
+                let mut seen = extremes.seen.iter().filter(|((s, _), _)| *s == slot).peekable();
+                seen.peek().is_none() || seen.any(|(_, v)| changes(from, &Outcome::Value(*v), tolerance))
             } else if matches!(entry.parameter, Parameter::Headroom) {
                 matches!(query.figure, crate::figure::Figure::ClipMargin)
             } else {
                 let probe = self.probe(slot, entry.nominal * 1.2);
-                changes(&extremes.centre, &value(&probe, query), tolerance)
+                changes(from, &value(&probe, query), tolerance)
             };
             if counts {
-                let end = match end {
-                    None => End::Nominal,
-                    Some((_, false)) => End::Low,
-                    Some((_, true)) => End::High,
-                };
-                match entry.grade[end as usize] {
+                match end.map_or(entry.grade[0], |place| place.grade(&entry)) {
                     Grade::Guaranteed => guaranteed = true,
                     Grade::Typical => typical = true,
                     Grade::Stated => {}
@@ -293,12 +380,8 @@ impl<'m> Spread<'m> {
         // Higher poles have no guaranteed value on any data sheet.
         if self.model.poles.iter().flatten().any(|p| !p.is_empty()) && touched & ON_POLES != 0 {
             let slot = self.model.parameters.pole_factor();
-            let (from, there) = if at_extreme {
-                (&extreme.outcome, value(&self.off_corner(&extreme.ends, slot, 1.2), query))
-            } else {
-                (&extremes.centre, value(&self.probe(slot, 1.2), query))
-            };
-            typical |= changes(from, &there, tolerance);
+            let there = if at_extreme { self.off_corner(&extreme.ends, slot, 1.2) } else { self.probe(slot, 1.2) };
+            typical |= changes(from, &value(&there, query), tolerance);
         }
         match (guaranteed, typical) {
             (true, true) => Basis::Mixed,
@@ -308,15 +391,10 @@ impl<'m> Spread<'m> {
     }
 
     /// A corner with one value changed.
-    fn off_corner(&self, ends: &[(usize, bool)], slot: usize, value: f64) -> Rc<Solution<'m>> {
-        let mut changes: Vec<(usize, f64)> = ends.iter().map(|&(s, high)| (s, self.end(s, high))).collect();
+    fn off_corner(&self, ends: &[Move], slot: usize, value: f64) -> Rc<Solution<'m>> {
+        let mut changes: Vec<(usize, f64)> = ends.iter().map(|&at| (at.0, self.place(at))).collect();
         changes.push((slot, value));
         self.build(&changes)
-    }
-
-    fn end(&self, slot: usize, high: bool) -> f64 {
-        let entry = &self.model.parameters.entries[slot];
-        if high { entry.high } else { entry.low }
     }
 
     fn probe(&mut self, slot: usize, value: f64) -> Rc<Solution<'m>> {
@@ -347,9 +425,9 @@ fn changes(centre: &Outcome, there: &Outcome, tolerance: f64) -> bool {
 /// Gathers the corner at which a figure is most extreme in one direction.
 struct Search {
     centre: Option<f64>,
-    ends: Vec<(usize, bool)>,
+    ends: Vec<Move>,
     effects: Vec<(usize, f64)>,
-    best_single: Option<(f64, (usize, bool))>,
+    best_single: Option<(f64, Move)>,
 }
 
 impl Search {
@@ -357,23 +435,20 @@ impl Search {
         Self { centre: centre.value(), ends: Vec::new(), effects: Vec::new(), best_single: None }
     }
 
-    fn consider(&mut self, slot: usize, seen: [Option<f64>; 2], better: impl Fn(f64, f64) -> bool) {
+    /// Takes what one parameter, moved alone, showed.
+    fn consider(&mut self, seen: &[(Move, f64)], better: impl Fn(f64, f64) -> bool) {
         let Some(centre) = self.centre else { return };
-        let mut best = centre;
-        let mut end = None;
-        for (side, value) in [(false, seen[0]), (true, seen[1])] {
-            if let Some(v) = value
-                && better(v, best)
-            {
-                best = v;
-                end = Some(side);
+        let mut best = (centre, None);
+        for &(at, v) in seen {
+            if better(v, best.0) {
+                best = (v, Some(at));
             }
         }
-        if let Some(side) = end {
-            self.ends.push((slot, side));
-            self.effects.push((slot, best - centre));
-            if self.best_single.is_none_or(|(b, _)| better(best, b)) {
-                self.best_single = Some((best, (slot, side)));
+        if let (v, Some(at)) = best {
+            self.ends.push(at);
+            self.effects.push((at.0, v - centre));
+            if self.best_single.is_none_or(|(b, _)| better(v, b)) {
+                self.best_single = Some((v, at));
             }
         }
     }

@@ -500,32 +500,24 @@ pub fn envelope(solution: &Solution<'_>, from: f64, to: f64, points: usize) -> V
         .collect()
 }
 
-/// The source amplitude at which the clip margin is spent: the margin falls almost linearly, so the secant ends soon.
+/// The source amplitude at which the clip margin is spent, or at which the current leaves what the headroom tables state.
 fn largest(rails: &Rails<'_>, drive: &mut Drive, here: &Pin) -> Option<f64> {
-    let mut margin = |peak: f64| {
+    let mut room = |peak: f64| {
         drive.set_alternating(here, peak);
-        // Beyond the table's last current the pin is taken to clip.
-        rails.margin(drive, Fineness::Plot).unwrap_or(-peak)
+        rails.margin(drive, Fineness::Plot).unwrap_or(-1.0)
     };
-    let (mut a, mut fa) = (0.0, margin(0.0));
-    if fa <= 0.0 {
+    let still = room(0.0);
+    if still <= 0.0 {
         return Some(0.0);
     }
-    let mut b = fa / magnitude(here.voltage);
-    let mut fb = margin(b);
-    for _ in 0..12 {
-        if fb.abs() <= 1e-4 * fa.abs() || (fb - fa).abs() <= 0.0 {
-            break;
-        }
-        let c = (b - fb * (b - a) / (fb - fa)).max(0.0);
-        if fb < 0.0 && fa > 0.0 || (fb - fa).abs() > 0.0 {
-            if fb > 0.0 {
-                (a, fa) = (b, fb);
-            }
-            b = c;
-            fb = margin(b);
-        }
+    // No headroom at all would allow this much; less is allowed.
+    let (mut low, mut high) = (0.0, (rails.high - rails.low) / magnitude(here.voltage));
+    if !high.is_finite() {
+        return None;
     }
-    drive.set_alternating(here, 0.0);
-    Some(b)
+    for _ in 0..24 {
+        let middle = f64::midpoint(low, high);
+        if room(middle) > 0.0 { low = middle } else { high = middle }
+    }
+    Some(low)
 }

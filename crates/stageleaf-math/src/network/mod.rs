@@ -106,7 +106,7 @@ impl Network {
 /// What to leave out of a network, for the impedances seen from outside.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
 pub struct Without {
-    /// Drive the stage's terminal itself: no source impedance.
+    /// Drive the first input's terminal itself: no source impedance there.
     pub source: bool,
     /// No load.
     pub load: bool,
@@ -159,7 +159,8 @@ impl<'a> Builder<'a> {
     /// with what the source puts across it.
     pub fn input(&mut self, input: usize) -> Node {
         let node = Node(u8::try_from(input + 1).unwrap_or(u8::MAX));
-        let (Some(source), false) = (self.stage.source(input), self.without.source) else { return node };
+        let left_out = self.without.source && input == 0;
+        let (Some(source), false) = (self.stage.source(input), left_out) else { return node };
         let slot = |of: fn(u8) -> Parameter, builder: &Self| builder.slot(of(u8::try_from(input).unwrap_or(u8::MAX)));
         let across =
             |builder: &mut Self, law: Law, noise: Option<NoiseOrigin>| builder.elements.push(Element { a: node, b: GROUND, law, noise });

@@ -37,7 +37,8 @@ pub fn head(sheet: &Sheet) -> Markup {
     let stage = &sheet.block.stage;
     let part = &sheet.part.part;
     let verdicts = summary(sheet.report);
-    let loud: Vec<&Caution> = sheet.report.cautions.iter().filter(|c| !matches!(c, Caution::TakenAsIdeal(_))).collect();
+    let loud: Vec<&Caution> =
+        sheet.report.cautions.iter().filter(|c| !matches!(c, Caution::TakenAsIdeal(_) | Caution::TakenAsExact(_))).collect();
     html! {
         p class="title" role="heading" aria-level="2" { (stage.name) }
         p class="summary" {

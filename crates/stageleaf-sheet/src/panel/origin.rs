@@ -8,7 +8,8 @@ use crate::Sheet;
 
 /// What is not modelled, and what was taken as ideal because the part does not state it.
 pub fn model(sheet: &Sheet) -> Markup {
-    let ideal: Vec<&Caution> = sheet.report.cautions.iter().filter(|c| matches!(c, Caution::TakenAsIdeal(_))).collect();
+    let ideal: Vec<&Caution> =
+        sheet.report.cautions.iter().filter(|c| matches!(c, Caution::TakenAsIdeal(_) | Caution::TakenAsExact(_))).collect();
     html! {
         summary { "Not modelled" @if !ideal.is_empty() { ", taken as ideal" } }
         p { @for (i, item) in NOT_MODELLED.iter().enumerate() { @if i > 0 { ", " } (item) } "." }

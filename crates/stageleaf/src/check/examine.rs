@@ -208,6 +208,7 @@ fn current(quote: &Quote, stage: &ExaminedStage) -> Current {
 fn place(note: &[u8], block: &Block, error: Error) -> Problem {
     let what = match error {
         Error::NotPositive { what, .. }
+        | Error::BeyondReason { what, .. }
         | Error::Negative { what, .. }
         | Error::MissingComponent { what }
         | Error::RangeReversed { what, .. } => what,
