@@ -68,6 +68,18 @@ def hard():
     yield circuit("multiple-feedback-low-pass-plain", "multiple-feedback-low-pass", {"R1": 3.9e3, "R2": 8.45e3, "R3": 2.7e3, "C1": 1.5e-8, "C2": 2.2e-9, "Rp": 5.4e3}, slow)
     yield circuit("multiple-feedback-band-pass-q-20", "multiple-feedback-band-pass", {"R1": 2e4, "R2": 50.0, "R3": 8e4, "C1": 1e-8, "C2": 1e-8}, good)
     yield circuit("multiple-feedback-band-pass-no-r2", "multiple-feedback-band-pass", {"R1": 1e3, "R3": 1e5, "C1": 1e-8, "C2": 1.1e-8}, good)
+    equal = {"R1": 1e4, "R2": 1e4, "R3": 1e4, "R4": 1e4}
+    yield circuit("summing-eight-sources", "summing", {f"Rin{i}": 1e4 for i in range(1, 9)} | {"Rf": 1e4, "Rp": 1e3, "Riso": 50.0}, good,
+                  sources=[{"resistance": 50.0 + i} for i in range(8)])
+    yield circuit("summing-three-near-cancelling", "summing", {"Rin1": 1e4, "Rin2": 1e4, "Rf": 1e4, "Cf": 1e-9, "Rng": 1e4, "Cng": 1.0000001e-9, "Rsn": 1e4, "Csn": 1e-9}, good)
+    yield circuit("difference-balanced-with-capacitors", "difference", equal | {"C2": 1e-10, "C4": 1e-10}, good, frequencies=[1.0, 1e3, 1e5])
+    yield circuit("instrumentation-one-source-capacitive", "instrumentation", equal | {"Rg": 1e3, "Rf1": 1e4, "Rf2": 1e4},
+                  amplifier(common_mode_resistance=1e9, **real), sources=[{"capacitance": 1e-9}, {"resistance": 1e3}])
+    yield circuit("transimpedance-teraohm", "transimpedance", {"Rf": 1e12, "Cf": 1e-15}, good, sources=[diode(1e-7, 1e6, 1e-6)])
+    yield circuit("charge-femtofarad", "charge", {"Cf": 1e-15, "Rf": 1e12}, good, sources=[{"capacitance": 1e-6}])
+    yield circuit("integrator-hours", "integrator", {"Rin": 1e9, "Cf": 1e-6}, good, band=[1e-9, 1e-7], frequencies=[1e-8, 1.0, 1e6])
+    yield circuit("sallen-key-high-pass-q-200", "sallen-key-high-pass", {"R1": 10.0, "R2": 1.6e6, "C1": 1e-9, "C2": 1e-9}, amplifier(open_loop=1e8, gbw=1e9))
+    yield circuit("multiple-feedback-band-pass-q-140", "multiple-feedback-band-pass", {"R1": 1e5, "R2": 12.5, "R3": 5e5, "C1": 1e-8, "C2": 1e-8}, good)
 
 
 def random_circuit(draw, kind, k):
