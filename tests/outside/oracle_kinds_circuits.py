@@ -80,6 +80,27 @@ def hard():
     yield circuit("integrator-hours", "integrator", {"Rin": 1e9, "Cf": 1e-6}, good, band=[1e-9, 1e-7], frequencies=[1e-8, 1.0, 1e6])
     yield circuit("sallen-key-high-pass-q-200", "sallen-key-high-pass", {"R1": 10.0, "R2": 1.6e6, "C1": 1e-9, "C2": 1e-9}, amplifier(open_loop=1e8, gbw=1e9))
     yield circuit("multiple-feedback-band-pass-q-140", "multiple-feedback-band-pass", {"R1": 1e5, "R2": 12.5, "R3": 5e5, "C1": 1e-8, "C2": 1e-8}, good)
+    # A zero at 1.7e21 Hz, where powers of the frequency overflow.
+    yield circuit("instrumentation-far-zero", "instrumentation", {"R1": 1260.0, "R2": 14190.0, "R3": 1269.0, "R4": 14470.0, "Rf1": 14810.0, "Rf2": 15070.0, "Rg": 601.5},
+                  amplifier(open_loop=4179000.0, gbw=64300000.0, higher_poles=[4608000000.0], output_resistance=19.83, differential_resistance=107600000000.0, common_mode_resistance=1164000000.0, common_mode_capacitance=2.916e-12, voltage_noise=6.22e-08, voltage_corner=9.448, exponent=1.2, current_noise=3.826e-13, current_corner=73.87),
+                  sources=[{'resistance': 30.87}, {'resistance': 165.7}],
+                  load={'resistance': 1047.0},
+                  board={'inverting_node': 8.463e-12, 'non_inverting_node': 1.89e-12},
+                  band=[1.729, 8681.0],
+                  frequencies=[13.82, 97410.0, 30290000.0],
+                  signal_frequency=418.2,
+                  temperature=298.15)
+    # The first amplifier lifts the second's return ratio above one again, between 31.8 and 33.6 MHz.
+    yield circuit("instrumentation-narrow-crossings", "instrumentation", {"R1": 3158.0, "R2": 32180.0, "R3": 3190.0, "R4": 32510.0, "Rf1": 1705.0, "Rf2": 1664.0, "Rg": 14.21, "C2": 4.282e-13, "C4": 4.613e-13},
+                  amplifier(open_loop=97950.0, gbw=172200000.0, higher_poles=[1508000000.0], output_resistance=106.0, differential_resistance=6579000.0, common_mode_resistance=190600000000.0, differential_capacitance=8.483e-12, common_mode_capacitance=3.704e-12, voltage_noise=1.535e-08, voltage_corner=1001.0, current_noise=7.375e-12, current_corner=0.1715),
+                  amplifier(open_loop=45380.0, gbw=61770000.0, higher_poles=[145500000.0], differential_resistance=179900000.0, common_mode_capacitance=3.534e-13, voltage_noise=1.254e-08, voltage_corner=3353.0, exponent=1.2, current_noise=3.193e-16, current_corner=1862.0),
+                  amplifier(open_loop=46070.0, gbw=1579000000.0, higher_poles=[5647000000.0, 111600000000.0], differential_resistance=1765000000.0, differential_capacitance=1.801e-12, voltage_noise=1.199e-08, voltage_corner=0.4992, current_noise=1.094e-14, current_corner=1252.0),
+                  sources=[None, {'resistance': 654.7}],
+                  load={'resistance': 14090.0},
+                  band=[9.925, 647500.0],
+                  frequencies=[96.45, 581300.0, 14260000.0],
+                  signal_frequency=171500.0,
+                  temperature=298.15)
 
 
 def random_circuit(draw, kind, k):
