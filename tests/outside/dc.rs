@@ -5,7 +5,7 @@ use stageleaf_math::{
     kind::Kind,
     part::{PartFigure, Rating},
     report::{DcCause, Outcome, Report},
-    stage::{Ambient, Span, Stage, Supply},
+    stage::{Ambient, Ripple, Span, Stage, Supply},
 };
 
 use crate::{
@@ -45,7 +45,10 @@ fn by_hand(ledger: &mut Ledger) {
         .stating(PartFigure::Offset, 1e-3)
         .stating(PartFigure::BiasCurrent, 1e-7)
         .stating(PartFigure::OffsetCurrent, 2e-8)
-        .stating(PartFigure::OffsetDrift, 0.0);
+        .stating(PartFigure::OffsetDrift, 0.0)
+        // Where data sheets state the offset: at 25 °C, the inputs in the middle between the rails.
+        .at(298.15)
+        .between(-15.0, 15.0);
     // 1 mV × 10, 100 nA × 9 kΩ, half of 20 nA × 9 kΩ: 10 mV + 0.9 mV + 0.09 mV.
     tell("offset and bias, grounded input", Figure::OutputOffset, 10.99e-3, &times_ten);
     tell("offset and bias at the input", Figure::InputOffset, 1.099e-3, &times_ten);
@@ -107,6 +110,17 @@ fn rejection(rows: &Rows, ledger: &mut Ledger) {
     let report = report(&stage, &[]);
     row.check(ledger, "e_cm", Figure::OutputOffset, &line(&report, DcCause::CommonMode, false));
     row.check(ledger, "e_ps", Figure::OutputOffset, &line(&report, DcCause::SupplyPositive, true));
+
+    // The same error as a ratio, and as what a ripple of that size leaves; the negative rail rejects beyond all question.
+    stage.part.state(PartFigure::PsrrNegative, stated(1e18));
+    for corner in [PartFigure::PsrrPositiveCorner, PartFigure::PsrrNegativeCorner] {
+        stage.part.state(corner, stated(1e9));
+    }
+    if let Some(supply) = &mut stage.supply {
+        supply.ripple = Some(Ripple { peak: deviation, frequency: 1.0 });
+    }
+    row.check(ledger, "e_ps", Figure::StagePsrr, &map(figure(&stage, Figure::StagePsrr), |psrr| deviation / psrr));
+    row.check(ledger, "e_ps", Figure::RippleOutput, &figure(&stage, Figure::RippleOutput));
 }
 
 #[test]

@@ -5,6 +5,7 @@ use core::f64::consts::{FRAC_1_SQRT_2, TAU};
 use stageleaf_math::{
     figure::{Figure, Query},
     kind::Kind,
+    part::{PartFigure, Rating},
     report::{NoiseOrigin, Outcome},
     stage::{Source, Span, Stage, Toleranced},
 };
@@ -84,6 +85,18 @@ fn common_mode(rows: &Rows, ledger: &mut Ledger) {
     let (gain, rejection) = worst_corner(values, row.input("tol"));
     row.check(ledger, "Acm_worst_exact", Figure::Gain, &Outcome::Value(gain));
     row.check(ledger, "CMRR_worst_exact", Figure::Gain, &Outcome::Value(rejection));
+    // The engine's own worst case, with an amplifier whose rejection is beyond all question.
+    let mut part = Amplifier::ideal().part();
+    part.state(PartFigure::Cmrr, Rating::typical(1e15));
+    let names = ["R1", "R2", "R3", "R4"];
+    let toleranced = names
+        .iter()
+        .zip(values)
+        .fold(stage(Kind::Difference, part), |stage, (name, value)| stage.with_tolerance(name, value, row.input("tol")));
+    let found = report(&toleranced, &[]);
+    let range = found.figures.iter().find(|f| f.query.figure == Figure::StageCmrr).and_then(|f| f.range);
+    let least = range.map_or(Outcome::DoesNotApply("the rejection has no range"), |(low, _)| Outcome::Value(20.0 * libm::log10(low)));
+    row.check(ledger, "CMRR_worst_exact", Figure::StageCmrr, &least);
 
     let row = rows.row("C078");
     for (tolerance, name) in row.inputs("tol").into_iter().zip(["exact_0.01", "exact_0.001"]) {

@@ -182,6 +182,8 @@ impl Circuit {
     fn stage(&self) -> Stage {
         let kind = Kind::from_id(&self.kind).unwrap_or_else(|| panic!("{}: no kind is called {:?}", self.id, self.kind));
         let mut result = stage(kind, self.part(0))
+            // The middle between the rails is the ground, from which the oracle counts the inputs' common mode.
+            .between(-15.0, 15.0)
             .at(self.temperature)
             .over(self.band[0], self.band[1])
             .driven(self.signal_dc, 0.0, Some(self.signal_frequency), core::f64::consts::SQRT_2)

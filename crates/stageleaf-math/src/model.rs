@@ -180,7 +180,7 @@ impl<'a> Model<'a> {
         self.output.get_or_init(|| self.probe(Without { source: false, load: true }, 1 << self.network.load.0, self.network.held()))
     }
 
-    fn probe(&self, without: Without, terminal: u16, held: u16) -> Probe {
+    fn probe(&self, without: Without, terminal: u32, held: u32) -> Probe {
         let network = Builder::lay_out(self.stage, &self.parameters, without);
         let closed = |both| Expansion::compile(&network, Shape::Closed { both, row: 0, column: 0 }, &self.plans);
         let (above, below) = (closed(terminal | held), closed(held));

@@ -9,7 +9,9 @@
 //! V at the load.
 //!
 //! # Does not apply
-//! Drift is counted only over the distance of the temperature from the ambient's nominal: `offset` is taken to hold there.
+//! Data sheets state offset and bias current at 25 °C and with the inputs in the middle between the rails: drift is counted from
+//! there, and so is the common-mode voltage. The supplies' deviation is counted from the note's nominal values, at which the stated
+//! offset is taken to hold.
 //!
 //! # Source
 //! Common practice, no source; the doubling of FET bias current per step of junction temperature too, with the data sheet's value
@@ -45,7 +47,7 @@ pub fn budget<'s>(solution: &'s Solution<'_>) -> &'s Budget {
         let parameters = &model.parameters;
         let below = solution.looped().closed.constant();
         let injection = solution.injection();
-        let away = parameters.temperature().map_or(0.0, |slot| solution.values[slot] - parameters.entries[slot].nominal);
+        let away = parameters.temperature().map(|slot| solution.values[slot] - DATA_SHEET_TEMPERATURE);
         let causes = [DcCause::Offset, DcCause::OffsetDrift, DcCause::BiasCurrent, DcCause::OffsetCurrent, DcCause::CommonMode];
         let mut by_amplifier: Vec<Vec<(DcCause, Outcome)>> = Vec::new();
         let mut slopes = Vec::new();
@@ -64,7 +66,10 @@ pub fn budget<'s>(solution: &'s Solution<'_>) -> &'s Budget {
             slopes.push(times(&part(PartFigure::OffsetDrift), input));
             let errors = [
                 times(&part(PartFigure::Offset), input),
-                times(&part(PartFigure::OffsetDrift), input * away),
+                match away {
+                    Some(away) => times(&part(PartFigure::OffsetDrift), input * away),
+                    None => Outcome::Undetermined(alloc::vec![Need::Ambient]),
+                },
                 bias,
                 times(&part(PartFigure::OffsetCurrent), (at_plus.abs() + at_minus.abs()) / 2.0),
                 common_mode(solution, index, input),
@@ -120,13 +125,14 @@ fn bias_current(solution: &Solution<'_>, amplifier: usize) -> Outcome {
     }
 }
 
-/// Common-mode voltage at an amplifier's inputs, from the signals' DC parts and the common mode, over the rejection.
+/// Common-mode voltage at an amplifier's inputs, counted from the middle between the rails, over the rejection.
 fn common_mode(solution: &Solution<'_>, amplifier: usize, input: f64) -> Outcome {
     let plus = solution.model.network.amplifiers[amplifier].plus;
-    if plus == crate::network::GROUND {
-        return Outcome::Value(0.0);
-    }
-    rejected(solution, amplifier, PartFigure::Cmrr, super::swing::steady(solution, plus) * input)
+    let Some((positive, negative)) = solution.model.parameters.supply() else {
+        return Outcome::Undetermined(alloc::vec![Need::Supply]);
+    };
+    let middle = f64::midpoint(solution.values[positive], solution.values[negative]);
+    rejected(solution, amplifier, PartFigure::Cmrr, (super::swing::steady(solution, plus) - middle) * input)
 }
 
 fn rejected(solution: &Solution<'_>, amplifier: usize, figure: PartFigure, volts: f64) -> Outcome {

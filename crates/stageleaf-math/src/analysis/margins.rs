@@ -69,6 +69,7 @@ pub fn of(solution: &Solution<'_>, amplifier: usize) -> Margins {
     // In a stable loop the crossing nearest to −1 in angle, on whichever side; else the one that is furthest past it.
     let rank = |margin: f64| if stable { margin.abs() } else { margin };
     let mut worst: Option<(f64, f64)> = None;
+    let mut crossings: Vec<f64> = Vec::new();
     let (mut above, mut below) = (f64::INFINITY, 0.0f64);
     let mut before: Option<(f64, f64, f64)> = None;
     let mut sensitivities = Vec::with_capacity(grid.len());
@@ -79,12 +80,7 @@ pub fn of(solution: &Solution<'_>, amplifier: usize) -> Margins {
         sensitivities.push(e);
         if let Some((w, s0, t0)) = before {
             if (s0 < 0.0) != (s < 0.0) {
-                let at = search::root(w, omega, size);
-                let ratio = solution.return_ratio(amplifier, at);
-                let margin = rank(libm::atan2(-ratio.im, -ratio.re));
-                if worst.is_none_or(|(_, m)| margin < m) {
-                    worst = Some((at, margin));
-                }
+                crossings.push(search::root(w, omega, size));
             }
             if (t0 < 0.0) != (t < 0.0) {
                 let at = search::root(w, omega, turn);
@@ -96,6 +92,27 @@ pub fn of(solution: &Solution<'_>, amplifier: usize) -> Margins {
             }
         }
         before = Some((omega, s, t));
+    }
+    // With several amplifiers, a rise or a dip that another one makes may pass one and return between two grid points.
+    for w in grid.windows(3).filter(|_| solution.amplifiers() > 1) {
+        let [low, here, high] = [size(w[0]), size(w[1]), size(w[2])];
+        let turned = if here < 0.0 && here > -0.7 && here >= low && here >= high {
+            Some(search::peak(w[0], w[2], size)).filter(|(_, top)| *top > 0.0)
+        } else if here > 0.0 && here < 2.0 && here <= low && here <= high {
+            Some(search::peak(w[0], w[2], |w| -size(w))).filter(|(_, top)| *top > 0.0)
+        } else {
+            None
+        };
+        if let Some((between, _)) = turned {
+            crossings.extend([search::root(w[0], between, size), search::root(between, w[2], size)]);
+        }
+    }
+    for at in crossings {
+        let ratio = solution.return_ratio(amplifier, at);
+        let margin = rank(libm::atan2(-ratio.im, -ratio.re));
+        if worst.is_none_or(|(_, m)| margin < m) {
+            worst = Some((at, margin));
+        }
     }
     // Beyond the grid T tends to the ratio of its leading coefficients: to nothing, as a rule.
     let ends = sensitivity_limit(returned, open).max(sensitivity(0.0));

@@ -262,7 +262,11 @@ pub fn noise_bandwidth(solution: &Solution<'_>) -> f64 {
     }
     let grid = solution.grid();
     let (Some(&low), Some(&high)) = (grid.first(), grid.last()) else { return f64::INFINITY };
-    let h = |omega: f64| numerator.at(omega).norm_sqr() / looped.closed.at(omega).norm_sqr();
+    // A zero far out stretches the grid until powers overflow: what the response leaves there is nothing.
+    let h = |omega: f64| {
+        let power = (numerator.at(omega) / looped.closed.at(omega)).norm_sqr();
+        if power.is_finite() { power } else { 0.0 }
+    };
     // Below the grid the response is flat; above it, falls with the difference of the degrees.
     #[expect(clippy::cast_precision_loss, reason = "degrees are small")]
     let tail = 1.0 / (2.0 * (d - n) as f64 - 1.0);

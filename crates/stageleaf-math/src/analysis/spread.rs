@@ -19,7 +19,7 @@ use alloc::{collections::BTreeMap, rc::Rc, vec::Vec};
 
 use super::{lacking, touched_by, value};
 use crate::{
-    figure::Query,
+    figure::{Figure, Query},
     limit::Basis,
     model::Model,
     parameters::{Entry, Grade, touch},
@@ -203,9 +203,53 @@ impl<'m> Spread<'m> {
             all.extend(seen);
         }
         let again: Vec<usize> = slots.into_iter().filter(|&slot| self.deserves_another_look(slot, &centre, &all)).collect();
-        let low = self.finish(query, low, &again, &bad, |a, b| a < b);
+        let mut low = self.finish(query, low, &again, &bad, |a, b| a < b);
+        if query.figure == Figure::StageCmrr && self.model.drives.len() > 1 {
+            self.turn_to_worst_mismatch(query, &mut low);
+        }
         let high = self.finish(query, high, &again, &bad, |a, b| a > b);
         Extremes { centre, low, high, seen: all }
+    }
+
+    /// The rejection is the magnitude of a mismatch that several resistors make with either sign: alone, each makes it worse both ways,
+    /// and only together do they add up. So the corner is sought by the signed common-mode gain, at its least and at its greatest.
+    fn turn_to_worst_mismatch(&mut self, query: Query, low: &mut Extreme) {
+        let signed = |solution: &Solution<'_>| solution.dc_gain(1);
+        let centre = signed(&self.nominal);
+        let slots: Vec<usize> = (0..self.model.parameters.entries.len())
+            .filter(|&slot| {
+                let entry = &self.model.parameters.entries[slot];
+                entry.low < entry.high && entry.touches & touch::DC != 0
+            })
+            .collect();
+        for greatest in [false, true] {
+            let mut ends: Vec<Move> = low.ends.iter().copied().filter(|(s, _)| !slots.contains(s)).collect();
+            let mut effects = Vec::new();
+            for &slot in &slots {
+                let mut best = (0.0, None);
+                for place in [Place::Low, Place::High] {
+                    let effect = signed(&self.moved((slot, place))) - centre;
+                    if if greatest { effect > best.0 } else { effect < best.0 } {
+                        best = (effect, Some(place));
+                    }
+                }
+                match best {
+                    (effect, Some(place)) => {
+                        ends.push((slot, place));
+                        effects.push((slot, effect));
+                    }
+                    // What no resistor's mismatch answers to (the amplifier's own rejection) stays where it was worst.
+                    (_, None) => ends.extend(low.ends.iter().copied().filter(|(s, _)| *s == slot)),
+                }
+            }
+            ends.sort_unstable();
+            let there = value(&self.corner(&ends), query);
+            if let (Some(new), Some(old)) = (there.value(), low.outcome.value())
+                && new < old
+            {
+                *low = Extreme { outcome: there, corner: self.coordinates(&ends, &effects), effects, ends };
+            }
+        }
     }
 
     /// Whether a parameter may do at a corner what it does not do alone.
@@ -364,7 +408,7 @@ impl<'m> Spread<'m> {
                 let mut seen = extremes.seen.iter().filter(|((s, _), _)| *s == slot).peekable();
                 seen.peek().is_none() || seen.any(|(_, v)| changes(from, &Outcome::Value(*v), tolerance))
             } else if matches!(entry.parameter, Parameter::Headroom) {
-                matches!(query.figure, crate::figure::Figure::ClipMargin)
+                matches!(query.figure, Figure::ClipMargin)
             } else {
                 let probe = self.probe(slot, entry.nominal * 1.2);
                 changes(from, &value(&probe, query), tolerance)
@@ -410,7 +454,7 @@ const ON_POLES: u8 = touch::NETWORK | touch::NOISE | touch::SWING;
 
 /// Where a figure does not answer to small changes: a bound that is not reached, a peak that is none.
 fn flat(query: Query, outcome: &Outcome) -> bool {
-    outcome.value().is_some_and(|v| v.is_infinite() || matches!(query.figure, crate::figure::Figure::Peaking) && v <= 1.0)
+    outcome.value().is_some_and(|v| v.is_infinite() || matches!(query.figure, Figure::Peaking) && v <= 1.0)
 }
 
 fn changes(centre: &Outcome, there: &Outcome, tolerance: f64) -> bool {

@@ -42,7 +42,7 @@ pub enum Shape {
     /// One row and one column at most.
     Closed {
         /// Joined to ground in both graphs (bit set).
-        both: u16,
+        both: u32,
         /// Row struck out (node, or 0).
         row: u8,
         /// Column struck out (node, or 0).
@@ -53,12 +53,12 @@ pub enum Shape {
         /// The driven node; every node of a lower number is held.
         source: u8,
         /// Held at zero by other ideal sources (bit set).
-        held: u16,
+        held: u32,
     },
     /// The voltage at `sense` for a current into each node: outcomes are split by the nodes that reach it.
     Adjoint {
         /// Held at zero by ideal sources (bit set).
-        held: u16,
+        held: u32,
         /// Where the voltage is sensed.
         sense: u8,
     },
@@ -90,7 +90,7 @@ pub struct Powers {
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct Outcome {
     /// Open side's nodes that are not joined to ground (bit set); 0 for closed shapes.
-    pub joined: u16,
+    pub joined: u32,
     /// Which amplifiers' gains the terms carry as factors (bit set, in the order of the amplifiers' columns).
     pub amplified: u8,
     /// Its polynomial in the result of [`Plan::evaluate`].
@@ -145,7 +145,7 @@ impl Which {
 
 impl State {
     /// Joins nodes (bit set) to ground in both graphs.
-    fn hold(&mut self, nodes: u16) {
+    fn hold(&mut self, nodes: u32) {
         for node in 1..MAX_NODES {
             if nodes >> node & 1 == 1 {
                 self.rows[node] = 0;
@@ -261,7 +261,7 @@ impl Plan {
         let mut alive: Vec<Vec<bool>> = layers.iter().map(|l| vec![false; l.len()]).collect();
         let last = layers.len() - 1;
         let open = |partition: &[u8; MAX_NODES]| {
-            let mut seen = 0u16;
+            let mut seen = 0u32;
             for &member in &partition[..nodes] {
                 if member != 0 {
                     seen |= 1 << member;
@@ -320,7 +320,7 @@ impl Plan {
             .filter(|&(slot, _)| alive[last][slot])
             .map(|(slot, state)| {
                 let side = if rows_open == 1 { &state.rows } else { &state.columns };
-                let joined = (0..nodes).filter(|&n| side[n] != 0).fold(0u16, |bits, n| bits | 1 << n);
+                let joined = (0..nodes).filter(|&n| side[n] != 0).fold(0u32, |bits, n| bits | 1 << n);
                 let (start, length) = place[last][slot];
                 Outcome { joined, amplified: state.amplified, start, length }
             })
@@ -388,7 +388,7 @@ const ONE: [f64; DEGREE + 1] = [1.0, 0.0, 0.0, 0.0];
 
 /// How many groups of nodes, ground's apart, no remaining column can join to anything.
 fn stranded(partition: &[u8; MAX_NODES], nodes: usize, rest: &[(Column, Powers)], rows: bool) -> u32 {
-    let mut reachable = 1u16;
+    let mut reachable = 1u32;
     for (column, _) in rest {
         let mut mark = |a: u8, b: u8| {
             let (a, b) = (partition[usize::from(a)], partition[usize::from(b)]);
@@ -406,7 +406,7 @@ fn stranded(partition: &[u8; MAX_NODES], nodes: usize, rest: &[(Column, Powers)]
             }
         }
     }
-    let mut groups = 0u16;
+    let mut groups = 0u32;
     for &member in &partition[..nodes] {
         groups |= 1 << member;
     }

@@ -37,7 +37,7 @@ pub enum Drive {
 }
 
 /// The most nodes a network may have, ground included.
-pub const MAX_NODES: usize = 16;
+pub const MAX_NODES: usize = 24;
 
 /// What stands between two nodes. The numbers are slots of the parameter table.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -98,7 +98,7 @@ impl Network {
 
     /// The nodes that ideal voltage sources hold (bit set).
     #[must_use]
-    pub fn held(&self) -> u16 {
+    pub fn held(&self) -> u32 {
         self.inputs.iter().enumerate().filter(|(_, d)| **d == Drive::Voltage).fold(0, |bits, (i, _)| bits | 1 << (i + 1))
     }
 }
