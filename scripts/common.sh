@@ -33,7 +33,7 @@ need() {
         exit 3
     }
 }
-need_cargo() { need cargo "install Rust 1.95 or later with rustup, https://rustup.rs"; }
+need_cargo() { need cargo "install Rust 1.95 or later with rustup"; }
 need_node() { need node "install Node.js 20 or later (Debian: apt-get install nodejs npm)"; }
 
 # Prints a Chromium: $CHROMIUM, one that is installed, or Debian's, installed now.
