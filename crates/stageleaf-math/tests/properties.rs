@@ -1,0 +1,234 @@
+//! What must hold for any stage, whatever its numbers: laws of networks and of judgement.
+
+use stageleaf_math::{
+    analyse,
+    figure::{Figure, Query},
+    kind::Kind,
+    limit::{Bound, Limit, Thin, Verdict},
+    model::Model,
+    part::{Part, PartFigure, Rating},
+    report::Report,
+    solution::Solution,
+    stage::{Ambient, Band, Board, Component, Isolation, Load, Signal, Source, Span, Stage, Supply, Toleranced},
+};
+
+/// A part with typical values and bounds for everything that the figures below need.
+fn part(impedance: f64, time: f64) -> Part {
+    use PartFigure as P;
+    let mut part = Part { poles: Some(vec![2.5e7 / time]), ..Part::default() };
+    let bounded = |typ: f64, low: f64, high: f64| Rating { min: Some(typ * low), typ: Some(typ), max: Some(typ * high), source: None };
+    for (figure, rating) in [
+        (P::OpenLoop, bounded(1e6, 0.3, 2.0)),
+        (P::Gbw, bounded(1e7 / time, 0.7, 1.3)),
+        (P::OutputResistance, Rating::typical(50.0 * impedance)),
+        (P::DifferentialCapacitance, Rating::typical(2e-12 * time / impedance)),
+        (P::CommonModeCapacitance, Rating::typical(4e-12 * time / impedance)),
+        (P::NoiseVoltage, bounded(5e-9, 1.0, 1.5)),
+        (P::NoiseVoltageCorner, Rating::typical(30.0)),
+        (P::NoiseCurrent, Rating::typical(1e-12)),
+        (P::NoiseCurrentCorner, Rating::typical(100.0)),
+        (P::Offset, bounded(1e-4, 0.0, 5.0)),
+        (P::OffsetDrift, bounded(1e-6, 0.0, 5.0)),
+        (P::BiasCurrent, bounded(1e-9, 0.0, 10.0)),
+        (P::OffsetCurrent, bounded(1e-10, 0.0, 10.0)),
+        (P::Cmrr, bounded(1e5, 0.1, 1.0)),
+        (P::PsrrPositive, bounded(1e5, 0.1, 1.0)),
+        (P::PsrrNegative, bounded(1e5, 0.1, 1.0)),
+    ] {
+        part.state(figure, rating);
+    }
+    part
+}
+
+/// A stage of the kind with every component it needs, its impedances and time constants scaled.
+fn stage(kind: Kind, impedance: f64, time: f64) -> Stage {
+    let toleranced = |nominal: f64| Toleranced { nominal, minus: 0.02, plus: 0.02, drift: 50e-6, rating: None };
+    let components = kind
+        .components()
+        .iter()
+        .filter(|c| c.required || kind == Kind::Charge && c.name == "Rf")
+        .enumerate()
+        .map(|(i, c)| {
+            #[expect(clippy::cast_precision_loss, reason = "a few components")]
+            let step = 1.0 + i as f64 * 0.37;
+            let value = if c.name.starts_with('R') { 1e4 * step * impedance } else { 1e-9 / step * time / impedance };
+            Component { name: c.name, value: toleranced(value) }
+        })
+        .collect();
+    Stage {
+        name: "any".into(),
+        kind,
+        components,
+        part: part(impedance, time),
+        isolation: Isolation::OutsideLoop,
+        supply: Some(Supply {
+            positive: Span { low: 11.0, nominal: 12.0, high: 13.0 },
+            negative: Span { low: -13.0, nominal: -12.0, high: -11.0 },
+            ripple: None,
+        }),
+        sources: vec![match (kind.spec().inputs)(&bare(kind))[0].drive {
+            stageleaf_math::network::Drive::Voltage => Some(Source::Resistive { resistance: toleranced(600.0 * impedance) }),
+            _ => Some(Source::Capacitive { capacitance: toleranced(1e-10 * time / impedance) }),
+        }],
+        signals: vec![Some(Signal { peak: 0.1, frequency: Some(1e3 / time), dc: 0.0, crest_factor: std::f64::consts::SQRT_2 })],
+        common_mode: None,
+        reference: None,
+        parts: vec![],
+        load: Load {
+            resistance: Some(toleranced(1e4 * impedance)),
+            capacitance: Some(Toleranced { minus: 0.9, plus: 1.0, ..toleranced(1e-10 * time / impedance) }),
+        },
+        board: Board::default(),
+        ambient: Some(Ambient { range: Span { low: 263.0, nominal: 293.0, high: 323.0 } }),
+        band: Some(Band { from: 10.0, to: 1e5 }),
+        limits: vec![],
+    }
+}
+
+/// Enough of a stage to ask a kind for its inputs.
+fn bare(kind: Kind) -> Stage {
+    let components =
+        kind.components().iter().filter(|c| c.required).map(|c| Component { name: c.name, value: Toleranced::exact(1.0) }).collect();
+    Stage {
+        name: String::new(),
+        kind,
+        components,
+        part: Part::default(),
+        isolation: Isolation::OutsideLoop,
+        supply: None,
+        sources: vec![],
+        signals: vec![],
+        common_mode: None,
+        reference: None,
+        parts: vec![],
+        load: Load::default(),
+        board: Board::default(),
+        ambient: None,
+        band: None,
+        limits: vec![],
+    }
+}
+
+fn nominal(report: &Report, figure: Figure) -> Option<f64> {
+    report.figures.iter().find(|f| f.query.figure == figure).and_then(|f| f.nominal.value())
+}
+
+fn close(kind: Kind, figure: Figure, a: Option<f64>, b: Option<f64>, allowed: f64) {
+    match (a, b) {
+        (Some(a), Some(b)) if a.is_finite() || b.is_finite() => {
+            assert!((a - b).abs() <= allowed * a.abs().max(b.abs()), "{kind:?} {}: {a} and {b}", figure.id());
+        }
+        (a, b) => assert_eq!(a.is_some(), b.is_some(), "{kind:?} {}", figure.id()),
+    }
+}
+
+/// Every impedance a thousand times as large, the amplifier's too: ratios, frequencies and margins stay.
+#[test]
+fn scaling_every_impedance_leaves_ratios_and_frequencies() {
+    for &kind in Kind::ALL {
+        let (one, other) = (analyse(&stage(kind, 1.0, 1.0)).unwrap(), analyse(&stage(kind, 1e3, 1.0)).unwrap());
+        // A current's gain is an impedance, a charge's the reciprocal of a capacitance: both grow with it.
+        let grows = if matches!(kind, Kind::Transimpedance | Kind::Charge) { 1e3 } else { 1.0 };
+        close(kind, Figure::Gain, nominal(&one, Figure::Gain).map(|g| g * grows), nominal(&other, Figure::Gain), 1e-9);
+        for figure in [
+            Figure::Bandwidth,
+            Figure::LowCutoff,
+            Figure::Peaking,
+            Figure::Crossover,
+            Figure::PhaseMargin,
+            Figure::GainMargin,
+            Figure::SensitivityPeak,
+            Figure::NoiseBandwidth,
+        ] {
+            close(kind, figure, nominal(&one, figure), nominal(&other, figure), 1e-8);
+        }
+    }
+}
+
+/// Every time constant ten times as long: frequencies fall to a tenth, margins stay.
+#[test]
+fn scaling_every_time_constant_scales_frequencies_inversely() {
+    for &kind in Kind::ALL {
+        let (one, other) = (analyse(&stage(kind, 1.0, 1.0)).unwrap(), analyse(&stage(kind, 1.0, 10.0)).unwrap());
+        for figure in [Figure::Bandwidth, Figure::LowCutoff, Figure::Crossover, Figure::NaturalFrequency, Figure::NoiseBandwidth] {
+            close(kind, figure, nominal(&one, figure).map(|f| f / 10.0), nominal(&other, figure), 1e-8);
+        }
+        for figure in [Figure::PhaseMargin, Figure::GainMargin, Figure::SensitivityPeak, Figure::Peaking] {
+            close(kind, figure, nominal(&one, figure), nominal(&other, figure), 1e-8);
+        }
+    }
+}
+
+/// The shares of the noise are shares of its power.
+#[test]
+fn noise_shares_add_up_to_the_whole() {
+    for &kind in Kind::ALL {
+        let report = analyse(&stage(kind, 1.0, 1.0)).unwrap();
+        let total = nominal(&report, Figure::OutputNoise).unwrap_or_else(|| panic!("{kind:?} has no noise"));
+        let sum: f64 = report.noise_shares.iter().map(|s| s.share).sum();
+        let power: f64 = report.noise_shares.iter().map(|s| s.rms * s.rms).sum();
+        assert!((sum - 1.0).abs() < 1e-12, "{kind:?}: {sum}");
+        assert!((libm::sqrt(power) / total - 1.0).abs() < 1e-8, "{kind:?}: {} and {total}", libm::sqrt(power));
+    }
+}
+
+/// SplitMix64 as in `dense.rs`, for builds anywhere inside the ranges.
+fn unit(state: &mut u64) -> f64 {
+    *state = state.wrapping_add(0x9E37_79B9_7F4A_7C15);
+    let mut z = *state;
+    z = (z ^ (z >> 30)).wrapping_mul(0xBF58_476D_1CE4_E5B9);
+    z = (z ^ (z >> 27)).wrapping_mul(0x94D0_49BB_1331_11EB);
+    z ^= z >> 31;
+    #[expect(clippy::cast_precision_loss, reason = "53 bits")]
+    let unit = (z >> 11) as f64 / 9_007_199_254_740_992.0;
+    unit
+}
+
+/// No build at a random corner of all ranges lies outside the range that the report gives, but for what parameters do together
+/// against their single effects: a hundredth of the range here (see "Does not apply" of `analysis::spread`).
+#[test]
+fn the_worst_case_encloses_random_corners() {
+    for &kind in Kind::ALL {
+        let stage = stage(kind, 1.0, 1.0);
+        let report = analyse(&stage).unwrap();
+        let model = Model::compile(&stage);
+        let mut state = 7;
+        for _ in 0..200 {
+            let values: Vec<f64> = model
+                .parameters
+                .entries
+                .iter()
+                .map(|e| if unit(&mut state) < 0.5 { e.low } else { e.high })
+                .chain(std::iter::once(1.0))
+                .collect();
+            let build = Solution::new(&model, values, None);
+            for figure in [Figure::Gain, Figure::OutputOffset, Figure::OutputNoise, Figure::Crossover] {
+                let row = report.figures.iter().find(|f| f.query.figure == figure).unwrap();
+                let (Some((low, high)), Some(here)) = (row.range, stageleaf_math::analysis::outcome(&build, Query::of(figure)).value())
+                else {
+                    continue;
+                };
+                let slack = 1e-2 * (high - low) + 1e-9 * here.abs();
+                assert!(here >= low - slack && here <= high + slack, "{kind:?} {}: {here} outside {low} to {high}", figure.id());
+            }
+        }
+    }
+}
+
+/// A tighter limit never gains margin, and never a better verdict.
+#[test]
+fn a_tighter_limit_never_gains_margin() {
+    let order = |v: Verdict| [Verdict::Breaks, Verdict::Undetermined, Verdict::Thin, Verdict::Holds].iter().position(|o| *o == v);
+    for &kind in Kind::ALL {
+        let mut stage = stage(kind, 1.0, 1.0);
+        let limit = |hertz: f64| Limit { query: Query::of(Figure::Crossover), bound: Bound::AtLeast(hertz), thin: Thin::Fraction(0.1) };
+        stage.limits = vec![limit(1e3), limit(1e5), limit(1e6), limit(1e8)];
+        let report = analyse(&stage).unwrap();
+        for pair in report.limits.windows(2) {
+            if let (Some(loose), Some(tight)) = (pair[0].margin, pair[1].margin) {
+                assert!(tight < loose, "{kind:?}: {loose} then {tight}");
+            }
+            assert!(order(pair[1].verdict) <= order(pair[0].verdict), "{kind:?}");
+        }
+    }
+}
