@@ -7,24 +7,25 @@ use crate::{
     analysis::{
         self, dc, margins, noise, outcome, response,
         spread::{Extreme, Spread},
-        swing, thermal,
+        swing,
     },
+    caution, check,
     dimension::Dimension,
     figure::{Argument, Figure, Query},
+    handbook,
     limit::{Bound, Limit, Thin, Verdict},
     model::{Model, Plans},
     part::PartFigure,
-    report::{Caution, DcLine, FigureRow, LimitRow, NoiseOrigin, Outcome, Report},
+    report::{DcLine, FigureRow, LimitRow, Outcome, Report},
     solution::Solution,
-    stage::{Source, Stage},
+    stage::Stage,
+    units::{Volts, VoltsPerSecond},
 };
 
 /// Points of a curve.
 const POINTS: usize = 161;
 /// Points of the output envelope.
 const ENVELOPE_POINTS: usize = 41;
-/// The extra-low-voltage limit for direct current: 60 V in dry locations (IEC 61140, from memory).
-const EXTRA_LOW_VOLTAGE: f64 = 60.0;
 
 /// Everything about a stage: figures, verdicts, curves, budgets, working.
 ///
@@ -119,189 +120,12 @@ pub fn analyse_with(stage: &Stage, detail: Detail, plans: &Plans) -> Result<Repo
         poles: Vec::new(),
         zeros: Vec::new(),
         working: working(&spread.nominal),
-        cautions: cautions(&mut spread),
+        cautions: caution::cautions(&mut spread),
     };
     if detail > Detail::Limits {
         curves(&spread.nominal, &mut report);
     }
     Ok(report)
-}
-
-/// Whether the stage's values can be analysed at all.
-///
-/// # Errors
-/// The first [`Error`] found: a missing component, a value that is zero, negative or not finite, reversed supplies or ranges.
-pub fn check(stage: &Stage) -> Result<(), Error> {
-    for spec in stage.kind.components() {
-        match stage.component(spec.name) {
-            None if spec.required => return Err(Error::MissingComponent { what: spec.name }),
-            None => {}
-            Some(value) => {
-                component_value(spec.name, spec.dimension, value.nominal)?;
-                tolerance(spec.name, value)?;
-                if let Some(other) = spec.with
-                    && stage.component(other).is_none()
-                {
-                    return Err(Error::Unpaired { given: spec.name, missing: other });
-                }
-            }
-        }
-    }
-    for source in stage.sources.iter().flatten() {
-        match source {
-            Source::Resistive { resistance } => {
-                if resistance.nominal < 0.0 || !resistance.nominal.is_finite() {
-                    return Err(Error::Negative { what: "source.resistance", given: resistance.nominal });
-                }
-                tolerance("source.resistance", resistance)?;
-            }
-            Source::Capacitive { capacitance } => {
-                positive("source.capacitance", capacitance.nominal)?;
-                tolerance("source.capacitance", capacitance)?;
-            }
-            Source::Photodiode { capacitance, shunt_resistance, dark_current } => {
-                positive("source.capacitance", capacitance.nominal)?;
-                tolerance("source.capacitance", capacitance)?;
-                if let Some(shunt) = shunt_resistance {
-                    positive("source.shunt_resistance", shunt.nominal)?;
-                    tolerance("source.shunt_resistance", shunt)?;
-                }
-                if let Some(dark) = dark_current {
-                    if dark.nominal < 0.0 || !dark.nominal.is_finite() {
-                        return Err(Error::Negative { what: "source.dark_current", given: dark.nominal });
-                    }
-                    tolerance("source.dark_current", dark)?;
-                }
-            }
-        }
-    }
-    for (what, value) in [
-        ("load.resistance", &stage.load.resistance),
-        ("load.capacitance", &stage.load.capacitance),
-        ("board.inverting_node", &stage.board.inverting_node),
-        ("board.non_inverting_node", &stage.board.non_inverting_node),
-        ("board.across_feedback", &stage.board.across_feedback),
-    ] {
-        if let Some(value) = value {
-            positive(what, value.nominal)?;
-            tolerance(what, value)?;
-        }
-    }
-    if let Some(supply) = stage.supply {
-        span("supply.positive", supply.positive.low, supply.positive.high)?;
-        span("supply.negative", supply.negative.low, supply.negative.high)?;
-        if supply.positive.low <= supply.negative.high {
-            return Err(Error::SupplyReversed { positive: supply.positive.low, negative: supply.negative.high });
-        }
-    }
-    if let Some(ambient) = stage.ambient {
-        span("ambient.range", ambient.range.low, ambient.range.high)?;
-        positive("ambient.range", ambient.range.low)?;
-    }
-    if let Some(band) = stage.band {
-        positive("band.from", band.from)?;
-        positive("band.to", band.to)?;
-        span("band", band.from, band.to)?;
-    }
-    for signal in stage.signals.iter().flatten() {
-        if signal.peak < 0.0 || !signal.peak.is_finite() {
-            return Err(Error::Negative { what: "signal.peak", given: signal.peak });
-        }
-        if let Some(frequency) = signal.frequency {
-            positive("signal.frequency", frequency)?;
-        }
-        positive("signal.crest_factor", signal.crest_factor)?;
-    }
-    if let Some(common) = stage.common_mode {
-        span("signal.common_mode", common.low, common.high)?;
-    }
-    for limit in &stage.limits {
-        if matches!(limit.query.figure.argument(), Argument::Frequency) {
-            positive(limit.query.figure.id(), limit.query.at.unwrap_or(0.0))?;
-        }
-    }
-    for amplifier in 0..stage.kind.spec().amplifiers {
-        part(stage.part_of(amplifier))?;
-    }
-    Ok(())
-}
-
-/// What no amplifier has: a figure that is zero, negative or not finite where the model divides by it.
-fn part(part: &crate::part::Part) -> Result<(), Error> {
-    for &figure in PartFigure::ALL {
-        let rating = part.rating(figure);
-        let may_be_zero = matches!(
-            figure,
-            PartFigure::OutputResistance
-                | PartFigure::DifferentialCapacitance
-                | PartFigure::CommonModeCapacitance
-                | PartFigure::Offset
-                | PartFigure::OffsetDrift
-                | PartFigure::BiasCurrent
-                | PartFigure::OffsetCurrent
-                | PartFigure::SupplyCurrent
-                | PartFigure::SupplySpanMin
-                | PartFigure::NoiseVoltage
-                | PartFigure::NoiseVoltageCorner
-                | PartFigure::NoiseCurrent
-                | PartFigure::NoiseCurrentCorner
-                | PartFigure::JunctionToAmbient
-                | PartFigure::OverloadRecovery
-        );
-        let signed = matches!(figure, PartFigure::RangeFromNegative | PartFigure::RangeFromPositive);
-        for value in [rating.min, rating.typ, rating.max].into_iter().flatten() {
-            if !value.is_finite() || !signed && !may_be_zero && value <= 0.0 {
-                return Err(Error::NotPositive { what: figure.id(), given: value });
-            }
-            if value.abs() > GREATEST || value != 0.0 && value.abs() < SMALLEST {
-                return Err(Error::BeyondReason { what: figure.id(), given: value });
-            }
-            if may_be_zero && value < 0.0 {
-                return Err(Error::Negative { what: figure.id(), given: value });
-            }
-        }
-    }
-    for &pole in part.poles.iter().flatten() {
-        positive("gain.poles", pole)?;
-    }
-    for zero in &part.zeros {
-        positive("gain.zeros", zero.frequency)?;
-    }
-    Ok(())
-}
-
-/// What no value of a circuit leaves, in SI units: beyond it sums of products lose their meaning before they lose their digits.
-const SMALLEST: f64 = 1e-30;
-/// See [`SMALLEST`].
-const GREATEST: f64 = 1e30;
-
-fn positive(what: &'static str, given: f64) -> Result<(), Error> {
-    if !(given > 0.0 && given.is_finite()) {
-        return Err(Error::NotPositive { what, given });
-    }
-    if (SMALLEST..=GREATEST).contains(&given) { Ok(()) } else { Err(Error::BeyondReason { what, given }) }
-}
-
-/// A component's value: what can be bought or built, with room to spare.
-fn component_value(what: &'static str, dimension: Dimension, given: f64) -> Result<(), Error> {
-    positive(what, given)?;
-    let sane = if matches!(dimension, Dimension::Resistance) { 1e-6..=1e15 } else { 1e-18..=1e3 };
-    if sane.contains(&given) { Ok(()) } else { Err(Error::BeyondReason { what, given }) }
-}
-
-fn tolerance(what: &'static str, value: &crate::stage::Toleranced) -> Result<(), Error> {
-    let sane = |v: f64| v >= 0.0 && v.is_finite();
-    if !sane(value.plus) || !sane(value.drift) || !sane(value.minus) {
-        return Err(Error::Negative { what, given: value.minus.min(value.plus).min(value.drift) });
-    }
-    if value.minus >= 1.0 && value.nominal > 0.0 {
-        return Err(Error::NotPositive { what, given: value.nominal * (1.0 - value.minus) });
-    }
-    Ok(())
-}
-
-fn span(what: &'static str, low: f64, high: f64) -> Result<(), Error> {
-    if low <= high && low.is_finite() && high.is_finite() { Ok(()) } else { Err(Error::RangeReversed { what, low, high }) }
 }
 
 /// Figures without an argument, and those with one that limits name.
@@ -452,96 +276,11 @@ fn full_power(solution: &Solution<'_>) -> Option<crate::report::Working> {
         dimension: Dimension::Frequency,
         formula: "f = SR/(2π·Vpk)",
         numbers: alloc::vec![("SR", slew, Dimension::SlewRate), ("Vpk", amplitude, Dimension::Voltage)],
-        handbook: slew / (core::f64::consts::TAU * amplitude),
+        handbook: handbook::full_power_bandwidth(VoltsPerSecond(slew), Volts(amplitude)).ok()?.0,
         exact: outcome(solution, query),
         source: "common practice, no source; the steepest slope of a sine is 2πf·Vpk",
         difference: "the drop in the output resistance, and the output current where it ends first",
     })
-}
-
-fn cautions(spread: &mut Spread<'_>) -> Vec<Caution> {
-    let solution = &spread.nominal;
-    let model = solution.model;
-    let stage = model.stage;
-    let mut list = Vec::new();
-    for figure in [PartFigure::DifferentialResistance, PartFigure::CommonModeResistance] {
-        if solution.part(figure).is_none() {
-            list.push(Caution::TakenAsIdeal(figure));
-        }
-    }
-    if let (Some(needed), None) = (solution.part(PartFigure::StableGainMin), analysis::missing_small_signal(solution))
-        && let Some(crossover) = margins::margins(solution).crossover
-    {
-        let (above, below) = solution.amplifier(margins::margins(solution).amplifier);
-        let omega = solution.scaled(crossover);
-        // At crossover |A·β| = 1, so the noise gain there is |A|.
-        let noise_gain = crate::solution::magnitude(above.at(omega) / below.at(omega));
-        if noise_gain < needed {
-            list.push(Caution::BelowStableGain { noise_gain, needed });
-        }
-    }
-    if stage.part.phase_reversal == Some(true) {
-        list.push(Caution::PhaseReversal);
-    }
-    if let Some(supply) = stage.supply {
-        let (least, greatest) = (supply.positive.low - supply.negative.high, supply.positive.high - supply.negative.low);
-        let allowed = |figure: PartFigure| solution.part(figure);
-        if let Some(allowed) = allowed(PartFigure::SupplySpanMax)
-            && greatest > allowed
-        {
-            list.push(Caution::SupplySpan { span: greatest, allowed });
-        }
-        if let Some(allowed) = allowed(PartFigure::SupplySpanMin)
-            && least < allowed
-        {
-            list.push(Caution::SupplySpan { span: least, allowed });
-        }
-        if greatest > EXTRA_LOW_VOLTAGE {
-            list.push(Caution::HighVoltage { span: greatest });
-        }
-    }
-    if analysis::missing_small_signal(solution).is_none() && !solution.no_dc_path() && !solution.oscillates() {
-        for (origin, power) in thermal::resistors(solution) {
-            if let NoiseOrigin::Component(component) = origin
-                && let Some(rating) = stage.component(component).and_then(|c| c.rating)
-                && power > rating
-            {
-                list.push(Caution::ResistorHot { component, power, rating });
-            }
-        }
-    }
-    if analysis::missing_small_signal(solution).is_none() && !solution.no_dc_path() {
-        if solution.oscillates() {
-            list.push(Caution::Oscillates);
-        } else {
-            for (figure, edge) in
-                [(Figure::ClipMargin, 0.0), (Figure::InputRangeMargin, 0.0), (Figure::CurrentMargin, 0.0), (Figure::SlewMargin, 1.0)]
-            {
-                if let Some(margin) = outcome(solution, Query::of(figure)).value()
-                    && margin < edge
-                {
-                    list.push(Caution::Exceeded { figure, margin });
-                }
-            }
-            if let (Some(offset), Some(supply)) = (outcome(solution, Query::of(Figure::OutputOffset)).value(), stage.supply)
-                && offset > supply.positive.nominal - supply.negative.nominal
-            {
-                list.push(Caution::OffsetBeyondSupply { offset });
-            }
-        }
-    }
-    let exact: Vec<_> = stage.components.iter().filter(|c| c.value.minus + c.value.plus <= 0.0).map(|c| c.name).collect();
-    if !exact.is_empty() {
-        list.push(Caution::TakenAsExact(exact));
-    }
-    let junction_max = solution.part(PartFigure::JunctionMax);
-    if let Some(allowed) = junction_max
-        && let Some(junction) = spread.extremes(Query::of(Figure::JunctionTemperature)).high.outcome.value()
-        && junction > allowed
-    {
-        list.push(Caution::JunctionHot { junction, allowed });
-    }
-    list
 }
 
 fn curves(solution: &Solution<'_>, report: &mut Report) {

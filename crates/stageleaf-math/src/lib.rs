@@ -3,16 +3,28 @@
 //! The model: `A(s) = A0 · ∏(1 ± s/ωz) / ((1 + s/ωd) · ∏(1 + s/ωk))` with `ωd = 2π·GBW/A0`, behind an output resistance,
 //! with input resistances and capacitances, in one nodal network per stage. Every figure comes from that network.
 //!
+//! [`analyse`] takes a [`stage::Stage`] and gives a [`report::Report`]. In between, [`model::Model`] lays out and compiles the network
+//! once, [`solution::Solution`] is one build of it, [`analysis`] turns a build into figures and moves builds to the worst case.
+//! [`handbook`] holds the closed forms that engineers know, for the working and as checks.
+//!
+//! # Units
+//! SI throughout: K, rad, fractions for tolerances, V/V for what is read in dB. Text, prefixes and files are other crates' business.
+//!
 //! # What is not modelled
-//! See [`NOT_MODELLED`].
+//! See [`NOT_MODELLED`]; time-domain responses, comparators and sampled yields are not there yet.
+//!
+//! # Example
+//! A divider of 9 kΩ and 1 kΩ around an amplifier with an open-loop gain of a million: see [`analyse`].
 #![no_std]
 extern crate alloc;
 
 pub mod analyse;
 pub mod analysis;
+mod caution;
 pub mod dimension;
 pub mod error;
 pub mod figure;
+pub mod handbook;
 pub mod kind;
 pub mod limit;
 pub mod model;
@@ -25,8 +37,11 @@ pub mod series;
 pub mod solution;
 pub mod stage;
 pub mod units;
+mod validate;
 
+pub use analyse::{Detail, analyse, analyse_in, analyse_with};
 pub use error::Error;
+pub use validate::check;
 
 /// What the model leaves out; the README, the sheet and `explain` show this list.
 pub const NOT_MODELLED: &[&str] = &[
@@ -44,5 +59,3 @@ pub const NOT_MODELLED: &[&str] = &[
     "radiation",
     "latch-up",
 ];
-
-pub use analyse::{Detail, analyse, analyse_in, analyse_with, check};

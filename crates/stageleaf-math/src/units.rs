@@ -26,6 +26,4 @@ unit! {
     VoltsPerSecond
     /// One-sided noise density in V/√Hz.
     VoltsPerRootHertz
-    /// Power in watts.
-    Watts
 }

@@ -24,10 +24,12 @@ use core::f64::consts::TAU;
 use crate::{
     dimension::Dimension,
     figure::{Figure, Query},
+    handbook,
     network::{Builder, Drive},
     part::PartFigure,
     report::{Outcome, Working},
     stage::Stage,
+    units::{Farads, Hertz, Ohms},
 };
 
 /// A component that a kind can have.
@@ -224,7 +226,7 @@ fn closed_loop_edge(stage: &Stage, noise_gain: f64) -> Working {
         dimension: Dimension::Frequency,
         formula: "f₋₃dB ≈ GBW/NG",
         numbers: vec![("GBW", gbw, Dimension::Frequency), ("NG", noise_gain, Dimension::Number)],
-        handbook: gbw / noise_gain,
+        handbook: handbook::closed_loop_edge(Hertz(gbw), noise_gain).map_or(f64::NAN, |f| f.0),
         exact: Outcome::Undetermined(Vec::new()),
         source: "common practice, no source",
         difference: "higher poles, capacitances and load; the rule leaves out all but the dominant pole",
@@ -239,7 +241,7 @@ fn corner(stage: &Stage) -> Option<Working> {
         dimension: Dimension::Frequency,
         formula: "f = 1/(2π·Rf·Cf)",
         numbers: vec![("Rf", rf, Dimension::Resistance), ("Cf", cf, Dimension::Capacitance)],
-        handbook: 1.0 / (TAU * rf * cf),
+        handbook: handbook::corner(Ohms(rf), Farads(cf)).map_or(f64::NAN, |f| f.0),
         exact: Outcome::Undetermined(Vec::new()),
         source: "derived here: the corner of Rf ∥ Cf",
         difference: "the amplifier's own bandwidth; a non-inverting gain falls to 1 and not to 0",

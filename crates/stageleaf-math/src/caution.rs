@@ -1,0 +1,99 @@
+//! What a reader of the report should be careful about.
+
+use alloc::vec::Vec;
+
+use crate::{
+    analysis::{self, margins, outcome, spread::Spread, thermal},
+    figure::{Figure, Query},
+    part::PartFigure,
+    report::{Caution, NoiseOrigin},
+};
+
+/// The extra-low-voltage limit for direct current: 60 V in dry locations (IEC 61140, from memory).
+const EXTRA_LOW_VOLTAGE: f64 = 60.0;
+
+/// The cautions of a stage.
+pub(crate) fn cautions(spread: &mut Spread<'_>) -> Vec<Caution> {
+    let solution = &spread.nominal;
+    let model = solution.model;
+    let stage = model.stage;
+    let mut list = Vec::new();
+    for figure in [PartFigure::DifferentialResistance, PartFigure::CommonModeResistance] {
+        if solution.part(figure).is_none() {
+            list.push(Caution::TakenAsIdeal(figure));
+        }
+    }
+    if let (Some(needed), None) = (solution.part(PartFigure::StableGainMin), analysis::missing_small_signal(solution))
+        && let Some(crossover) = margins::margins(solution).crossover
+    {
+        let (above, below) = solution.amplifier(margins::margins(solution).amplifier);
+        let omega = solution.scaled(crossover);
+        // At crossover |A·β| = 1, so the noise gain there is |A|.
+        let noise_gain = crate::solution::magnitude(above.at(omega) / below.at(omega));
+        if noise_gain < needed {
+            list.push(Caution::BelowStableGain { noise_gain, needed });
+        }
+    }
+    if stage.part.phase_reversal == Some(true) {
+        list.push(Caution::PhaseReversal);
+    }
+    if let Some(supply) = stage.supply {
+        let (least, greatest) = (supply.positive.low - supply.negative.high, supply.positive.high - supply.negative.low);
+        let allowed = |figure: PartFigure| solution.part(figure);
+        if let Some(allowed) = allowed(PartFigure::SupplySpanMax)
+            && greatest > allowed
+        {
+            list.push(Caution::SupplySpan { span: greatest, allowed });
+        }
+        if let Some(allowed) = allowed(PartFigure::SupplySpanMin)
+            && least < allowed
+        {
+            list.push(Caution::SupplySpan { span: least, allowed });
+        }
+        if greatest > EXTRA_LOW_VOLTAGE {
+            list.push(Caution::HighVoltage { span: greatest });
+        }
+    }
+    if analysis::missing_small_signal(solution).is_none() && !solution.no_dc_path() && !solution.oscillates() {
+        for (origin, power) in thermal::resistors(solution) {
+            if let NoiseOrigin::Component(component) = origin
+                && let Some(rating) = stage.component(component).and_then(|c| c.rating)
+                && power > rating
+            {
+                list.push(Caution::ResistorHot { component, power, rating });
+            }
+        }
+    }
+    if analysis::missing_small_signal(solution).is_none() && !solution.no_dc_path() {
+        if solution.oscillates() {
+            list.push(Caution::Oscillates);
+        } else {
+            for (figure, edge) in
+                [(Figure::ClipMargin, 0.0), (Figure::InputRangeMargin, 0.0), (Figure::CurrentMargin, 0.0), (Figure::SlewMargin, 1.0)]
+            {
+                if let Some(margin) = outcome(solution, Query::of(figure)).value()
+                    && margin < edge
+                {
+                    list.push(Caution::Exceeded { figure, margin });
+                }
+            }
+            if let (Some(offset), Some(supply)) = (outcome(solution, Query::of(Figure::OutputOffset)).value(), stage.supply)
+                && offset > supply.positive.nominal - supply.negative.nominal
+            {
+                list.push(Caution::OffsetBeyondSupply { offset });
+            }
+        }
+    }
+    let exact: Vec<_> = stage.components.iter().filter(|c| c.value.minus + c.value.plus <= 0.0).map(|c| c.name).collect();
+    if !exact.is_empty() {
+        list.push(Caution::TakenAsExact(exact));
+    }
+    let junction_max = solution.part(PartFigure::JunctionMax);
+    if let Some(allowed) = junction_max
+        && let Some(junction) = spread.extremes(Query::of(Figure::JunctionTemperature)).high.outcome.value()
+        && junction > allowed
+    {
+        list.push(Caution::JunctionHot { junction, allowed });
+    }
+    list
+}
