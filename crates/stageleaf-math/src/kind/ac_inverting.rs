@@ -58,7 +58,7 @@ pub static SPEC: Spec = Spec {
     drives: Drives::Each,
     reference: Reference::Frequency(middle),
     gain: Dimension::Gain,
-    build: |stage, network| {
+    build: |_, network| {
         let signal = network.input(0);
         let supply = network.driven(1);
         let plus = network.node();
@@ -67,12 +67,7 @@ pub static SPEC: Spec = Spec {
         network.component("Cb", plus, GROUND);
         let minus = network.node();
         network.series_rc("Rin", "Cin", signal, minus);
-        let pin = network.node();
-        let load = network.output(pin);
-        let sense = network.sense(stage, pin, load);
-        network.component("Rf", sense, minus);
-        network.component("Cf", pin, minus);
-        network.amplifier(plus, minus, pin);
+        network.feedback(plus, minus, "Rf", "Cf");
     },
     ideal_gain: |stage| -ratio(stage),
     noise_gain: |stage| 1.0 + ratio(stage),

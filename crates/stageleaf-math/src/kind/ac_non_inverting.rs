@@ -60,7 +60,7 @@ pub static SPEC: Spec = Spec {
     drives: Drives::Each,
     reference: Reference::Frequency(|stage| middle(stage, gain(stage))),
     gain: Dimension::Gain,
-    build: |stage, network| {
+    build: |_, network| {
         let signal = network.input(0);
         let supply = network.driven(1);
         let divider = network.node();
@@ -72,12 +72,7 @@ pub static SPEC: Spec = Spec {
         network.component("Cin", signal, plus);
         let minus = network.node();
         network.series_rc("Rg", "Cg", minus, GROUND);
-        let pin = network.node();
-        let load = network.output(pin);
-        let sense = network.sense(stage, pin, load);
-        network.component("Rf", sense, minus);
-        network.component("Cf", pin, minus);
-        network.amplifier(plus, minus, pin);
+        network.feedback(plus, minus, "Rf", "Cf");
     },
     ideal_gain: gain,
     noise_gain: gain,

@@ -56,16 +56,11 @@ pub static SPEC: Spec = Spec {
     drives: Drives::Each,
     reference: Reference::Frequency(middle),
     gain: Dimension::VoltsPerCoulomb,
-    build: |stage, network| {
+    build: |_, network| {
         let terminal = network.input(0);
         let minus = network.behind("Rser", terminal);
         let plus = network.balanced();
-        let pin = network.node();
-        let load = network.output(pin);
-        let sense = network.sense(stage, pin, load);
-        network.component("Rf", sense, minus);
-        network.component("Cf", pin, minus);
-        network.amplifier(plus, minus, pin);
+        network.feedback(plus, minus, "Rf", "Cf");
     },
     ideal_gain: |stage| -1.0 / nominal(stage, "Cf"),
     noise_gain: |_| 1.0,

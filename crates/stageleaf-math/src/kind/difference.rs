@@ -51,7 +51,7 @@ pub static SPEC: Spec = Spec {
     drives: Drives::Differential,
     reference: Reference::Dc,
     gain: Dimension::Gain,
-    build: |stage, network| {
+    build: |_, network| {
         let (first, second) = (network.input(0), network.input(1));
         let minus = network.node();
         network.component("R1", first, minus);
@@ -59,13 +59,7 @@ pub static SPEC: Spec = Spec {
         network.component("R3", second, plus);
         network.component("R4", plus, GROUND);
         network.component("C4", plus, GROUND);
-        let pin = network.node();
-        let load = network.output(pin);
-        let sense = network.sense(stage, pin, load);
-        network.component("R2", sense, minus);
-        network.component("C2", pin, minus);
-        network.series_rc("Rng", "Cng", plus, minus);
-        network.amplifier(plus, minus, pin);
+        network.feedback(plus, minus, "R2", "C2");
     },
     ideal_gain: gain,
     noise_gain: |stage| 1.0 + nominal(stage, "R2") / nominal(stage, "R1"),

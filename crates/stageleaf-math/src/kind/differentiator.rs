@@ -48,18 +48,13 @@ pub static SPEC: Spec = Spec {
     drives: Drives::Each,
     reference: Reference::Peak,
     gain: Dimension::Gain,
-    build: |stage, network| {
+    build: |_, network| {
         let signal = network.signal();
         let between = network.behind("Rin", signal);
         let minus = network.node();
         network.component("Cin", between, minus);
         let plus = network.balanced();
-        let pin = network.node();
-        let load = network.output(pin);
-        let sense = network.sense(stage, pin, load);
-        network.component("Rf", sense, minus);
-        network.component("Cf", pin, minus);
-        network.amplifier(plus, minus, pin);
+        network.feedback(plus, minus, "Rf", "Cf");
     },
     ideal_gain: largest,
     noise_gain: |_| 1.0,

@@ -51,13 +51,11 @@ pub static SPEC: Spec = Spec {
     drives: Drives::Each,
     reference: Reference::Dc,
     gain: Dimension::Gain,
-    build: |stage, network| {
+    build: |_, network| {
         let signal = network.signal();
         let plus = network.behind("Rser", signal);
         network.component("Cshunt", plus, GROUND);
-        let pin = network.node();
-        let load = network.output(pin);
-        let sense = network.sense(stage, pin, load);
+        let (pin, sense) = network.pin();
         let minus = network.behind("Rf", sense);
         network.component("Cf", pin, minus);
         network.series_rc("Rng", "Cng", plus, minus);

@@ -54,7 +54,7 @@ pub static SPEC: Spec = Spec {
     drives: Drives::Differential,
     reference: Reference::Dc,
     gain: Dimension::Gain,
-    build: |stage, network| {
+    build: |_, network| {
         let (first, second) = (network.input(0), network.input(1));
         let (minus1, minus2) = (network.node(), network.node());
         network.component("Rg", minus1, minus2);
@@ -68,12 +68,7 @@ pub static SPEC: Spec = Spec {
         network.component("R3", pin2, plus3);
         network.component("R4", plus3, GROUND);
         network.component("C4", plus3, GROUND);
-        let pin = network.node();
-        let load = network.output(pin);
-        let sense = network.sense(stage, pin, load);
-        network.component("R2", sense, minus3);
-        network.component("C2", pin, minus3);
-        network.amplifier(plus3, minus3, pin);
+        network.feedback(plus3, minus3, "R2", "C2");
     },
     ideal_gain: gain,
     noise_gain: |stage| 1.0 + (nominal(stage, "Rf1") + nominal(stage, "Rf2")) / nominal(stage, "Rg"),

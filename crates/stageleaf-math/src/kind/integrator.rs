@@ -46,17 +46,12 @@ pub static SPEC: Spec = Spec {
     drives: Drives::Each,
     reference: Reference::Frequency(at),
     gain: Dimension::Gain,
-    build: |stage, network| {
+    build: |_, network| {
         let signal = network.signal();
         let minus = network.node();
         network.component("Rin", signal, minus);
         let plus = network.balanced();
-        let pin = network.node();
-        let load = network.output(pin);
-        let sense = network.sense(stage, pin, load);
-        network.component("Rf", sense, minus);
-        network.component("Cf", pin, minus);
-        network.amplifier(plus, minus, pin);
+        network.feedback(plus, minus, "Rf", "Cf");
     },
     ideal_gain: |stage| if stage.component("Rf").is_some() { -nominal(stage, "Rf") / nominal(stage, "Rin") } else { -1.0 },
     noise_gain: |_| 1.0,

@@ -57,20 +57,14 @@ pub static SPEC: Spec = Spec {
     drives: Drives::Each,
     reference: Reference::Dc,
     gain: Dimension::Gain,
-    build: |stage, network| {
+    build: |_, network| {
         let signal = network.signal();
         let filtered = network.behind("Rser", signal);
         network.component("Cshunt", filtered, GROUND);
         let minus = network.node();
         network.component("Rin", filtered, minus);
         let plus = network.balanced();
-        let pin = network.node();
-        let load = network.output(pin);
-        let sense = network.sense(stage, pin, load);
-        network.component("Rf", sense, minus);
-        network.component("Cf", pin, minus);
-        network.series_rc("Rng", "Cng", plus, minus);
-        network.amplifier(plus, minus, pin);
+        network.feedback(plus, minus, "Rf", "Cf");
     },
     ideal_gain: |stage| -ratio(stage),
     noise_gain: |stage| 1.0 + ratio(stage),

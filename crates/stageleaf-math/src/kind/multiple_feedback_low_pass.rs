@@ -45,7 +45,7 @@ pub static SPEC: Spec = Spec {
     drives: Drives::Each,
     reference: Reference::Dc,
     gain: Dimension::Gain,
-    build: |stage, network| {
+    build: |_, network| {
         let signal = network.signal();
         let inner = network.node();
         network.component("R1", signal, inner);
@@ -53,9 +53,7 @@ pub static SPEC: Spec = Spec {
         let minus = network.node();
         network.component("R3", inner, minus);
         let plus = network.balanced();
-        let pin = network.node();
-        let load = network.output(pin);
-        let sense = network.sense(stage, pin, load);
+        let (pin, sense) = network.pin();
         network.component("R2", inner, sense);
         network.component("C2", pin, minus);
         network.amplifier(plus, minus, pin);

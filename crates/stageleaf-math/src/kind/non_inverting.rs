@@ -56,19 +56,13 @@ pub static SPEC: Spec = Spec {
     drives: Drives::Each,
     reference: Reference::Dc,
     gain: Dimension::Gain,
-    build: |stage, network| {
+    build: |_, network| {
         let signal = network.signal();
         let plus = network.behind("Rser", signal);
         network.component("Cshunt", plus, GROUND);
         let minus = network.node();
         network.component("Rg", minus, GROUND);
-        let pin = network.node();
-        let load = network.output(pin);
-        let sense = network.sense(stage, pin, load);
-        network.component("Rf", sense, minus);
-        network.component("Cf", pin, minus);
-        network.series_rc("Rng", "Cng", plus, minus);
-        network.amplifier(plus, minus, pin);
+        network.feedback(plus, minus, "Rf", "Cf");
     },
     ideal_gain: gain,
     noise_gain: gain,

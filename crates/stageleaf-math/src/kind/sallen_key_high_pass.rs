@@ -54,16 +54,14 @@ pub static SPEC: Spec = Spec {
     drives: Drives::Each,
     reference: Reference::Frequency(middle),
     gain: Dimension::Gain,
-    build: |stage, network| {
+    build: |_, network| {
         let signal = network.signal();
         let inner = network.node();
         network.component("C1", signal, inner);
         let plus = network.node();
         network.component("C2", inner, plus);
         network.component("R2", plus, GROUND);
-        let pin = network.node();
-        let load = network.output(pin);
-        let sense = network.sense(stage, pin, load);
+        let (pin, sense) = network.pin();
         let minus = network.behind("Rf", sense);
         network.component("Rg", minus, GROUND);
         network.component("R1", inner, sense);

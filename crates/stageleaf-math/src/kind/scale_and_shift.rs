@@ -49,7 +49,7 @@ pub static SPEC: Spec = Spec {
     drives: Drives::Each,
     reference: Reference::Dc,
     gain: Dimension::Gain,
-    build: |stage, network| {
+    build: |_, network| {
         let signal = network.input(0);
         let reference = network.reference(1);
         let plus = network.node();
@@ -58,13 +58,7 @@ pub static SPEC: Spec = Spec {
         network.component("Cshunt", plus, GROUND);
         let minus = network.node();
         network.component("Rg", minus, GROUND);
-        let pin = network.node();
-        let load = network.output(pin);
-        let sense = network.sense(stage, pin, load);
-        network.component("Rf", sense, minus);
-        network.component("Cf", pin, minus);
-        network.series_rc("Rng", "Cng", plus, minus);
-        network.amplifier(plus, minus, pin);
+        network.feedback(plus, minus, "Rf", "Cf");
     },
     ideal_gain: |stage| {
         (1.0 + nominal(stage, "Rf") / nominal(stage, "Rg")) * nominal(stage, "R2") / (nominal(stage, "R1") + nominal(stage, "R2"))

@@ -84,13 +84,7 @@ pub static SPEC: Spec = Spec {
             network.component(name, signal, minus);
         }
         let plus = network.balanced();
-        let pin = network.node();
-        let load = network.output(pin);
-        let sense = network.sense(stage, pin, load);
-        network.component("Rf", sense, minus);
-        network.component("Cf", pin, minus);
-        network.series_rc("Rng", "Cng", plus, minus);
-        network.amplifier(plus, minus, pin);
+        network.feedback(plus, minus, "Rf", "Cf");
     },
     ideal_gain: |stage| -nominal(stage, "Rf") / nominal(stage, "Rin1"),
     noise_gain,

@@ -301,13 +301,25 @@ impl<'a> Builder<'a> {
         plus
     }
 
-    /// Where the feedback senses the output.
-    #[must_use]
-    pub fn sense(&self, stage: &Stage, pin: Node, load: Node) -> Node {
-        match stage.isolation {
+    /// The usual end of a layout: the output pin and what hangs on it, the feedback to the inverting input (the resistor senses the pin,
+    /// or the load where `Riso` stands inside the loop; the capacitor always the pin), the noise-gain pair, the amplifier.
+    pub fn feedback(&mut self, plus: Node, minus: Node, resistor: &'static str, capacitor: &'static str) {
+        let (pin, sense) = self.pin();
+        self.component(resistor, sense, minus);
+        self.component(capacitor, pin, minus);
+        self.series_rc("Rng", "Cng", plus, minus);
+        self.amplifier(plus, minus, pin);
+    }
+
+    /// The output pin with what hangs on it, and where a feedback resistor senses the output.
+    pub fn pin(&mut self) -> (Node, Node) {
+        let pin = self.node();
+        let load = self.output(pin);
+        let sense = match self.stage.isolation {
             Isolation::OutsideLoop => pin,
             Isolation::InsideLoop => load,
-        }
+        };
+        (pin, sense)
     }
 
     /// The output side shared by all kinds: `Riso`, snubber, load. Returns the load node.
