@@ -1,6 +1,6 @@
 //! One build of a stage, solved: transfers as ratios of polynomials, worked out on demand and kept.
 
-use alloc::{vec, vec::Vec};
+use alloc::{rc::Rc, vec, vec::Vec};
 use core::{cell::OnceCell, f64::consts::TAU};
 
 use num_complex::Complex64;
@@ -70,6 +70,8 @@ pub struct Solution<'m> {
     /// Values by parameter slot.
     pub values: Vec<f64>,
     near: Option<&'m Roots>,
+    /// A build with the same network, whose transfers serve this one too.
+    twin: Option<Rc<Solution<'m>>>,
     looped: OnceCell<Loop>,
     injection: OnceCell<Injection>,
     roots: OnceCell<Roots>,
@@ -80,7 +82,8 @@ pub struct Solution<'m> {
     pub(crate) noise: OnceCell<Option<f64>>,
     pub(crate) edges: OnceCell<crate::analysis::response::Edges>,
     pub(crate) margins: OnceCell<crate::analysis::margins::Margins>,
-    pub(crate) swing: OnceCell<crate::analysis::swing::Swing>,
+    pub(crate) drives: OnceCell<Vec<crate::analysis::swing::Drive>>,
+    pub(crate) clip: OnceCell<crate::report::Outcome>,
     pub(crate) reference: OnceCell<crate::analysis::response::ReferencePoint>,
 }
 
@@ -92,6 +95,7 @@ impl<'m> Solution<'m> {
             model,
             values,
             near,
+            twin: None,
             looped: OnceCell::new(),
             injection: OnceCell::new(),
             roots: OnceCell::new(),
@@ -102,9 +106,26 @@ impl<'m> Solution<'m> {
             noise: OnceCell::new(),
             edges: OnceCell::new(),
             margins: OnceCell::new(),
-            swing: OnceCell::new(),
+            drives: OnceCell::new(),
+            clip: OnceCell::new(),
             reference: OnceCell::new(),
         }
+    }
+
+    /// The same, where only values differ from `twin` that the network does not depend on.
+    #[must_use]
+    pub fn beside(twin: Rc<Self>, values: Vec<f64>) -> Self {
+        Self { twin: Some(twin.clone()), ..Self::new(twin.model, values, twin.near) }
+    }
+
+    /// The build whose transfers this one shares, if it does.
+    pub(crate) fn twin(&self) -> Option<&Self> {
+        self.twin.as_deref()
+    }
+
+    /// The build whose network this one has: itself, or its twin.
+    pub(crate) fn network(&self) -> &Self {
+        self.twin.as_ref().map_or(self, |twin| twin.network())
     }
 
     /// A figure of the first amplifier's part in this build.
@@ -213,6 +234,9 @@ impl<'m> Solution<'m> {
 
     /// Loop and transfers.
     pub fn looped(&self) -> &Loop {
+        if let Some(twin) = &self.twin {
+            return twin.looped();
+        }
         self.looped.get_or_init(|| {
             let model = self.model;
             let terms: Vec<Table> = model.forward.iter().map(|expansion| self.expand(expansion)).collect();
@@ -230,6 +254,9 @@ impl<'m> Solution<'m> {
 
     /// Numerator, over the closed loop, of the voltage at a node for a drive.
     pub fn numerator(&self, drive: usize, node: Node) -> &Polynomial {
+        if let Some(twin) = &self.twin {
+            return twin.numerator(drive, node);
+        }
         let (model, looped, node) = (self.model, self.looped(), usize::from(node.0));
         looped.numerators[drive * model.network.nodes + node].get_or_init(|| {
             let mut sum = Polynomial::default();
@@ -257,6 +284,9 @@ impl<'m> Solution<'m> {
 
     /// Transfers to the load from currents and from the amplifiers' inputs.
     pub fn injection(&self) -> &Injection {
+        if let Some(twin) = &self.twin {
+            return twin.injection();
+        }
         self.injection.get_or_init(|| {
             let model = self.model;
             let table = self.expand(&model.adjoint);
@@ -282,6 +312,9 @@ impl<'m> Solution<'m> {
 
     /// Poles and zeros.
     pub fn roots(&self) -> &Roots {
+        if let Some(twin) = &self.twin {
+            return twin.roots();
+        }
         self.roots.get_or_init(|| {
             let looped = self.looped();
             let near = self.near;
@@ -311,6 +344,9 @@ impl<'m> Solution<'m> {
 
     /// Scaled angular frequencies, rising, close enough together that nothing the network does falls between two.
     pub fn grid(&self) -> &[f64] {
+        if let Some(twin) = &self.twin {
+            return twin.grid();
+        }
         self.grid.get_or_init(|| {
             let roots = self.roots();
             let features = || {

@@ -34,6 +34,7 @@ pub struct Margins {
 
 /// Crossings, margins, sensitivity peak: of the amplifier with the least phase margin, with the least of the others.
 pub fn margins(solution: &Solution<'_>) -> Margins {
+    let solution = solution.network();
     *solution.margins.get_or_init(|| {
         let mut worst = of(solution, 0);
         for amplifier in 1..solution.amplifiers() {

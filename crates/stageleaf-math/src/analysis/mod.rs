@@ -208,10 +208,10 @@ pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
             }
         }
         F::NoiseDensityAt => noise::density(solution, query.at.unwrap_or(0.0)),
-        F::ClipMargin => return swing::swing(solution).clip.clone(),
-        F::InputRangeMargin => return swing::swing(solution).range.clone(),
-        F::CurrentMargin => return swing::swing(solution).current.clone(),
-        F::SlewMargin => return swing::swing(solution).slew.clone(),
+        F::ClipMargin => return swing::clip_margin(solution),
+        F::InputRangeMargin => return swing::input_range_margin(solution),
+        F::CurrentMargin => return swing::current_margin(solution),
+        F::SlewMargin => return swing::slew_margin(solution),
         F::FullPowerBandwidth => return swing::full_power_bandwidth(solution),
         F::SupplyCurrent => return thermal::power(solution).supply_current.clone(),
         F::Dissipation => return thermal::power(solution).dissipation.clone(),

@@ -31,6 +31,7 @@ pub fn reference(solution: &Solution<'_>) -> ReferencePoint {
         Reference::Dc if solution.load_numerator().constant().abs() <= 0.0 => Reference::Peak,
         other => other,
     };
+    let solution = solution.network();
     *solution.reference.get_or_init(|| match reference {
         Reference::Dc => ReferencePoint { omega: 0.0, gain: solution.dc_gain(0) },
         Reference::Frequency(frequency) => {
@@ -76,6 +77,7 @@ pub struct Edges {
 /// # Formula
 /// Sign changes of `|H|² − ½·|H(ref)|²` between grid points, refined to the last digits; the peak by golden section.
 pub fn edges(solution: &Solution<'_>) -> Edges {
+    let solution = solution.network();
     *solution.edges.get_or_init(|| {
         let looped = solution.looped();
         let numerator = solution.load_numerator();

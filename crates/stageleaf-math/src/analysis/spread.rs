@@ -63,7 +63,9 @@ const WIDE: f64 = 1.5;
 
 /// The places to which a parameter is moved.
 fn places(entry: &Entry) -> impl Iterator<Item = Place> + use<> {
-    let wide = entry.low > 0.0 && entry.high >= WIDE * entry.low;
+    // A part's figures act in one direction; what stands around it (a cable's capacitance, say) may not.
+    let of_part = matches!(entry.parameter, Parameter::Part(_) | Parameter::PartOf(..) | Parameter::Headroom);
+    let wide = !of_part && entry.low > 0.0 && entry.high >= WIDE * entry.low;
     let inside = if wide { 1..4 } else { 0..0 };
     [Place::Low, Place::High].into_iter().chain(inside.map(Place::Inside))
 }
@@ -76,7 +78,9 @@ type Move = (usize, Place);
 pub struct Spread<'m> {
     model: &'m Model<'m>,
     /// The nominal build.
-    pub nominal: Solution<'m>,
+    pub nominal: Rc<Solution<'m>>,
+    /// Builds by what the network depends on.
+    networks: BTreeMap<Vec<(usize, u64)>, Rc<Solution<'m>>>,
     near: &'m Roots,
     moved: BTreeMap<Move, Rc<Solution<'m>>>,
     probes: Vec<Option<Rc<Solution<'m>>>>,
@@ -116,7 +120,8 @@ impl<'m> Spread<'m> {
         let slots = model.parameters.entries.len();
         Self {
             model,
-            nominal: Solution::new(model, model.parameters.nominal(), Some(near)),
+            nominal: Rc::new(Solution::new(model, model.parameters.nominal(), Some(near))),
+            networks: BTreeMap::new(),
             near,
             moved: BTreeMap::new(),
             probes: (0..=slots).map(|_| None).collect(),
@@ -125,12 +130,28 @@ impl<'m> Spread<'m> {
         }
     }
 
-    fn build(&self, changes: &[(usize, f64)]) -> Rc<Solution<'m>> {
+    /// A build with these values; builds that differ in nothing that the network depends on share its transfers.
+    fn build(&mut self, changes: &[(usize, f64)]) -> Rc<Solution<'m>> {
         let mut values = self.nominal.values.clone();
         for &(slot, value) in changes {
             values[slot] = value;
         }
-        Rc::new(Solution::new(self.model, values, Some(self.near)))
+        let entries = &self.model.parameters.entries;
+        // The factor on the poles stands behind the table.
+        let of_network = |slot: usize| entries.get(slot).is_none_or(|e| e.touches & touch::NETWORK != 0);
+        let network: Vec<(usize, u64)> =
+            changes.iter().filter(|(slot, _)| of_network(*slot)).map(|&(slot, value)| (slot, value.to_bits())).collect();
+        if network.len() == changes.len() {
+            let solution = Rc::new(Solution::new(self.model, values, Some(self.near)));
+            self.networks.insert(network, solution.clone());
+            return solution;
+        }
+        if let Some(twin) = self.networks.get(&network) {
+            return Rc::new(Solution::beside(twin.clone(), values));
+        }
+        let alone: Vec<(usize, f64)> = network.iter().map(|&(slot, bits)| (slot, f64::from_bits(bits))).collect();
+        let twin = if alone.is_empty() { self.nominal.clone() } else { self.build(&alone) };
+        Rc::new(Solution::beside(twin, values))
     }
 
     fn moved(&mut self, at: Move) -> Rc<Solution<'m>> {
@@ -437,7 +458,7 @@ impl<'m> Spread<'m> {
     }
 
     /// A corner with one value changed.
-    fn off_corner(&self, ends: &[Move], slot: usize, value: f64) -> Rc<Solution<'m>> {
+    fn off_corner(&mut self, ends: &[Move], slot: usize, value: f64) -> Rc<Solution<'m>> {
         let mut changes: Vec<(usize, f64)> = ends.iter().map(|&at| (at.0, self.place(at))).collect();
         changes.push((slot, value));
         self.build(&changes)

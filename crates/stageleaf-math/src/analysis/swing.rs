@@ -27,19 +27,6 @@ use crate::{
     solution::{Solution, magnitude},
 };
 
-/// The four margins.
-#[derive(Clone, Debug)]
-pub struct Swing {
-    /// Clip margin, V.
-    pub clip: Outcome,
-    /// Input range margin, V.
-    pub range: Outcome,
-    /// Output current margin, A.
-    pub current: Outcome,
-    /// Slew available over slew needed.
-    pub slew: Outcome,
-}
-
 /// What a drive applies: its steady value, and a sine.
 #[derive(Clone, Copy, Debug)]
 pub struct Level {
@@ -129,7 +116,7 @@ pub struct Drive {
 
 /// The stage's own signals at an amplifier's pin: of several, the steady parts add up, and the alternating ones as if all were at
 /// their peak there at once.
-pub fn drive(solution: &Solution<'_>, amplifier: usize) -> Drive {
+fn drive(solution: &Solution<'_>, amplifier: usize) -> Drive {
     let mut drive = Drive { v0: 0.0, vp: 0.0, i0: 0.0, ip: 0.0, phase: (1.0, 0.0) };
     let mut phasor = Complex64::new(0.0, 0.0);
     for level in levels(solution) {
@@ -169,21 +156,25 @@ impl Drive {
     }
 }
 
-/// Headroom at a current, between typical (0) and guaranteed (1); `None` beyond what the table states.
-fn headroom(table: &[Headroom], position: f64, current: f64) -> Option<f64> {
+/// Headroom at a current, between typical (0) and guaranteed (1), and whether the table states it: beyond its last row the headroom is at
+/// least that row's.
+fn headroom(table: &[Headroom], position: f64, current: f64) -> (f64, bool) {
     let volts = |row: &Headroom| {
         let typ = row.volts.typ.or(row.volts.max).unwrap_or(0.0);
         let max = row.volts.max.or(row.volts.typ).unwrap_or(0.0);
         typ + position * (max - typ)
     };
-    let first = table.first()?;
+    let Some(first) = table.first() else { return (0.0, false) };
     if current <= first.current {
-        return Some(volts(first));
+        return (volts(first), true);
     }
-    table.windows(2).find(|pair| current <= pair[1].current).map(|pair| {
+    for pair in table.windows(2) {
         let (a, b) = (&pair[0], &pair[1]);
-        volts(a) + (volts(b) - volts(a)) * (current - a.current) / (b.current - a.current)
-    })
+        if current <= b.current {
+            return (volts(a) + (volts(b) - volts(a)) * (current - a.current) / (b.current - a.current), true);
+        }
+    }
+    (table.last().map_or(0.0, volts), false)
 }
 
 /// The rails' distance for a drive: least margin over a period, or which table ends too early.
@@ -213,83 +204,103 @@ impl Rails<'_> {
             Fineness::Plot => (12, (0.866_025_403_784_438_6, 0.5), 8),
         };
         const RATIO: f64 = 0.618_033_988_749_894_9;
-        let room = |cos: f64, sin: f64| -> Result<f64, Need> {
+        let mut beyond = None;
+        let mut room = |cos: f64, sin: f64| {
             let (v, i) = drive.at(cos, sin);
-            let up = headroom(self.above, self.position, i).ok_or(Need::HeadroomHigh)?;
-            let down = headroom(self.below, self.position, -i).ok_or(Need::HeadroomLow)?;
-            Ok((self.high - up - v - self.offset).min(v - self.offset - self.low - down))
-        };
-        if drive.vp <= 0.0 && drive.ip <= 0.0 {
-            return room(1.0, 0.0);
-        }
-        let (mut least, mut least_at) = (f64::INFINITY, (1.0, 0.0));
-        let (mut cos, mut sin) = (1.0, 0.0);
-        for _ in 0..steps {
-            let here = room(cos, sin)?;
-            if here < least {
-                (least, least_at) = (here, (cos, sin));
+            let (up, up_stated) = headroom(self.above, self.position, i);
+            let (down, down_stated) = headroom(self.below, self.position, -i);
+            if !up_stated {
+                beyond = Some(Need::HeadroomHigh);
+            } else if !down_stated {
+                beyond = Some(Need::HeadroomLow);
             }
-            (cos, sin) = (cos * turn.0 - sin * turn.1, sin * turn.0 + cos * turn.1);
-        }
-        // Golden section around the least sample, by small rotations from it.
-        let near = |angle: f64| {
-            let (c, s) = (libm::cos(angle), libm::sin(angle));
-            room(least_at.0 * c - least_at.1 * s, least_at.1 * c + least_at.0 * s)
+            (self.high - up - v - self.offset).min(v - self.offset - self.low - down)
         };
-        let (mut a, mut b) = (-turn.1, turn.1);
-        let (mut x, mut y) = (b - RATIO * (b - a), a + RATIO * (b - a));
-        let (mut fx, mut fy) = (near(x)?, near(y)?);
-        for _ in 0..golden {
-            if fx < fy {
-                b = y;
-                (y, fy) = (x, fx);
-                x = b - RATIO * (b - a);
-                fx = near(x)?;
-            } else {
-                a = x;
-                (x, fx) = (y, fy);
-                y = a + RATIO * (b - a);
-                fy = near(y)?;
+        let mut least = room(1.0, 0.0);
+        if drive.vp > 0.0 || drive.ip > 0.0 {
+            let mut least_at = (1.0, 0.0);
+            let (mut cos, mut sin) = (1.0, 0.0);
+            for _ in 0..steps {
+                let here = room(cos, sin);
+                if here < least {
+                    (least, least_at) = (here, (cos, sin));
+                }
+                (cos, sin) = (cos * turn.0 - sin * turn.1, sin * turn.0 + cos * turn.1);
             }
-        }
-        Ok(least.min(fx).min(fy))
-    }
-}
-
-/// The four margins at the stage's signal, each of the amplifier with the least.
-pub fn swing<'s>(solution: &'s Solution<'_>) -> &'s Swing {
-    solution.swing.get_or_init(|| {
-        let mut swing = of(solution, 0);
-        for amplifier in 1..solution.amplifiers() {
-            let here = of(solution, amplifier);
-            for (least, other) in [
-                (&mut swing.clip, here.clip),
-                (&mut swing.range, here.range),
-                (&mut swing.current, here.current),
-                (&mut swing.slew, here.slew),
-            ] {
-                // What is missing for one amplifier is missing for the least of all.
-                if let (Some(a), Some(b)) = (least.value(), other.value()) {
-                    *least = Outcome::Value(a.min(b));
-                } else if least.value().is_some() {
-                    *least = other;
+            // Golden section around the least sample, by small rotations from it.
+            let mut near = |angle: f64| {
+                let (c, s) = (libm::cos(angle), libm::sin(angle));
+                room(least_at.0 * c - least_at.1 * s, least_at.1 * c + least_at.0 * s)
+            };
+            let (mut a, mut b) = (-turn.1, turn.1);
+            let (mut x, mut y) = (b - RATIO * (b - a), a + RATIO * (b - a));
+            let (mut fx, mut fy) = (near(x), near(y));
+            for _ in 0..golden {
+                if fx < fy {
+                    b = y;
+                    (y, fy) = (x, fx);
+                    x = b - RATIO * (b - a);
+                    fx = near(x);
+                } else {
+                    a = x;
+                    (x, fx) = (y, fy);
+                    y = a + RATIO * (b - a);
+                    fy = near(y);
                 }
             }
+            least = least.min(fx).min(fy);
         }
-        swing
-    })
+        // Beyond the tables' last rows the room is less than this: enough to break, not to hold.
+        match beyond {
+            Some(need) if least >= 0.0 => Err(need),
+            _ => Ok(least),
+        }
+    }
 }
 
-/// The four margins of one amplifier.
-#[must_use]
-pub fn of(solution: &Solution<'_>, amplifier: usize) -> Swing {
-    let drive = drive(solution, amplifier);
-    Swing {
-        clip: clip(solution, amplifier, &drive),
-        range: range(solution, amplifier),
-        current: current(solution, amplifier, &drive),
-        slew: slew(solution, amplifier, &drive),
+/// The least of a margin over the amplifiers; what is missing for one is missing for the least of all.
+fn least(solution: &Solution<'_>, of: impl Fn(usize) -> Outcome) -> Outcome {
+    let mut least = of(0);
+    for amplifier in 1..solution.amplifiers() {
+        let here = of(amplifier);
+        if let (Some(a), Some(b)) = (least.value(), here.value()) {
+            least = Outcome::Value(a.min(b));
+        } else if least.value().is_some() {
+            least = here;
+        }
     }
+    least
+}
+
+/// Clip margin, V.
+pub fn clip_margin(solution: &Solution<'_>) -> Outcome {
+    solution.clip.get_or_init(|| least(solution, |a| clip(solution, a, &drives(solution)[a]))).clone()
+}
+
+/// Input range margin, V.
+pub fn input_range_margin(solution: &Solution<'_>) -> Outcome {
+    least(solution, |a| range(solution, a))
+}
+
+/// Output current margin, A.
+pub fn current_margin(solution: &Solution<'_>) -> Outcome {
+    least(solution, |a| current(solution, a, &drives(solution)[a]))
+}
+
+/// Slew available over slew needed.
+pub fn slew_margin(solution: &Solution<'_>) -> Outcome {
+    least(solution, |a| slew(solution, a, &drives(solution)[a]))
+}
+
+/// The signals at every amplifier's pin.
+pub fn drives<'s>(solution: &'s Solution<'_>) -> &'s [Drive] {
+    // A twin has the same transfers; where what is applied is the same too, so are the drives.
+    if let Some(twin) = solution.twin()
+        && levels(twin).map(|l| l.dc.to_bits()).eq(levels(solution).map(|l| l.dc.to_bits()))
+    {
+        return drives(twin);
+    }
+    solution.drives.get_or_init(|| (0..solution.amplifiers()).map(|a| drive(solution, a)).collect())
 }
 
 fn rails<'a>(solution: &'a Solution<'_>, amplifier: usize) -> Result<Rails<'a>, Outcome> {
@@ -473,7 +484,7 @@ fn full_power_bandwidth_of(solution: &Solution<'_>, amplifier: usize) -> Outcome
 pub fn envelope(solution: &Solution<'_>, from: f64, to: f64, points: usize) -> Vec<EnvelopePoint> {
     let bounds: Vec<_> = (0..solution.amplifiers())
         .map(|a| {
-            let mut standing = drive(solution, a);
+            let mut standing = drives(solution)[a];
             (standing.vp, standing.ip, standing.phase) = (0.0, 0.0, (1.0, 0.0));
             (a, standing, rails(solution, a).ok(), solution.part_of(a, PartFigure::CurrentLimit), slew_rate(solution, a))
         })

@@ -16,7 +16,7 @@
 use alloc::vec::Vec;
 use core::f64::consts::PI;
 
-use super::swing::{Drive, drive, levels};
+use super::swing::{Drive, drives, levels};
 use crate::{
     network::{Law, dense::admittance},
     part::PartFigure,
@@ -95,7 +95,7 @@ pub fn power<'s>(solution: &'s Solution<'_>) -> &'s Power {
             let outcome = lacking(Need::Part(PartFigure::SupplyCurrent));
             return Power { supply_current: outcome.clone(), dissipation: outcome.clone(), junction: outcome };
         }
-        let drives: Vec<Drive> = (0..count).map(|a| drive(solution, a)).collect();
+        let drives = drives(solution);
         // A package's unused amplifiers draw their quiescent current too.
         let in_package = |a: usize| usize::try_from(model.stage.part_of(a).amplifiers.unwrap_or(1).max(1)).unwrap_or(1);
         let spare = if model.stage.parts.is_empty() { in_package(0).saturating_sub(count) } else { 0 };
