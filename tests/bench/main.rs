@@ -101,9 +101,14 @@ fn sweep_circuit(circuit: &Circuit) -> Native {
     }
 }
 
+/// The peer's name for a source: this stage has one input and one amplifier.
 fn name(origin: NoiseOrigin) -> String {
     match origin {
         NoiseOrigin::Component(name) => name.to_owned(),
+        NoiseOrigin::SourceResistance(_) => "SourceResistance".into(),
+        NoiseOrigin::AmplifierVoltage(_) => "AmplifierVoltage".into(),
+        NoiseOrigin::CurrentNonInverting(_) => "CurrentNonInverting".into(),
+        NoiseOrigin::CurrentInverting(_) => "CurrentInverting".into(),
         other => format!("{other:?}"),
     }
 }
