@@ -68,9 +68,9 @@ fn hostile_text_never_becomes_markup() {
         (part.description, part.source) = (Some(HOSTILE.into()), Some(HOSTILE.into()));
         let (a, b) = (rendered(&plain), rendered(&hostile));
         assert!(b.contains("&lt;script&gt;"), "the hostile text is shown");
-        // A back-tick marks code in the words of `needs`, so a file's name may start one: the only tag that text can ask for.
-        let without_code = |html: &str| tags(html).into_iter().filter(|t| t != "code" && t != "/code").collect::<Vec<_>>();
-        assert_eq!(without_code(&a), without_code(&b), "{kind:?}");
+        // A back-tick marks a key in the words of `needs`, so a file's name may start one: the only tag that text can ask for.
+        let without_keys = |html: &str| tags(html).into_iter().filter(|t| t != "samp" && t != "/samp").collect::<Vec<_>>();
+        assert_eq!(without_keys(&a), without_keys(&b), "{kind:?}");
         assert!(!b.contains(['\n', '\r']), "{kind:?}: a line break");
     }
 }
@@ -349,4 +349,53 @@ fn both_edges_of_a_pass_band_are_marked_and_their_words_keep_apart() {
             assert!(from > 50.0 && to < 420.0, "{low} to {high}: words from {from} to {to}");
         }
     }
+}
+
+#[test]
+fn the_envelope_is_the_lowest_of_the_bounds_that_there_are() {
+    use stageleaf_math::report::EnvelopePoint;
+    let mut sample = usual(Kind::NonInverting);
+    let point = |frequency, rails, current, slew| EnvelopePoint { frequency, rails, current, slew };
+    sample.1.envelope = vec![
+        point(1e3, Some(10.0), Some(20.0), None),
+        point(1e4, Some(10.0), None, Some(9.0)),
+        point(1e5, None, Some(3.0), Some(4.0)),
+        // No bound is known: nothing can be drawn.
+        point(1e6, None, None, None),
+    ];
+    let sheet = Sheet { block: &sample.0, report: &sample.1, part: &sample.2, id: "s" };
+    let chart = plot::chart(&sheet, "envelope").unwrap();
+    assert_eq!(chart.x, [1e3, 1e4, 1e5]);
+    assert_eq!(chart.curves[0].y, [10.0, 9.0, 3.0]);
+    let names: Vec<&str> = chart.curves.iter().map(|c| c.name.as_str()).collect();
+    assert_eq!(names, ["clean output", "rails", "current", "slew rate"]);
+    assert_eq!(plot::reading(&sheet, "envelope", 2).unwrap().text.split("; rails").next(), Some("100 kHz: clean output 3.00 V"));
+}
+
+#[test]
+fn an_oscillating_stage_says_so_before_its_limits() {
+    use stageleaf_math::report::Caution;
+    let mut sample = usual(Kind::NonInverting);
+    sample.1.cautions = vec![Caution::Oscillates, Caution::TakenAsExact(vec!["Rf", "Rg"])];
+    let html = rendered(&sample);
+    let (alarm, summary) = (html.find("class=\"alarm\"").unwrap(), html.find("class=\"summary\"").unwrap());
+    assert!(alarm < summary && html[alarm..summary].contains("oscillates"));
+    // What is taken as exact bears on the limits, and is told there.
+    let limits = html.split("data-section=\"limits\"").nth(1).unwrap().split("</section>").next().unwrap();
+    assert!(limits.contains("Rf, Rg"));
+    sample.1.cautions.clear();
+    assert!(!rendered(&sample).contains("class=\"alarm\""));
+}
+
+#[test]
+fn an_impedance_says_at_which_frequency() {
+    let mut sample = usual(Kind::NonInverting);
+    for signal in &mut sample.0.stage.signals {
+        if let Some(signal) = signal {
+            signal.frequency = Some(20e3);
+        }
+    }
+    assert!(rendered(&sample).contains("Input impedance at 20 kHz"));
+    sample.0.stage.signals.clear();
+    assert!(rendered(&sample).contains("Output impedance at DC"));
 }

@@ -41,6 +41,9 @@ impl Action {
     }
 }
 
+/// Characters that surely stand beside each other in the box of text to copy, on a phone too.
+const COLUMNS: usize = 34;
+
 /// The bar above the sheet.
 #[derive(Clone, Debug)]
 pub struct Controls {
@@ -80,6 +83,15 @@ impl Controls {
     /// Says `words` once, to eyes and to a screen reader.
     pub fn say(&self, words: &str) {
         self.said.set_text_content(Some(words));
+    }
+
+    /// Says what the sheet starts with, as long as it is that.
+    pub fn introduce(&self, words: &str) {
+        if let Some(line) = add(&self.document, &self.bar, "p", "stageleaf-start") {
+            line.set_text_content(Some(words));
+            // First in the bar, which takes elements.
+            let _ = self.bar.insert_before(&line, self.bar.first_child().as_ref());
+        }
     }
 
     /// Adds a choice, for a sheet that is not a note's.
@@ -130,7 +142,9 @@ impl Controls {
         heading.prepend_with_str_1(label).unwrap_or_default();
         area.set_read_only(true);
         area.set_value(text);
-        area.set_rows(u32::try_from(text.lines().count()).unwrap_or(1).clamp(1, 20));
+        // A long line wraps; on a narrow page it takes more rows than these, and the box can be drawn larger.
+        let rows: usize = text.lines().map(|line| line.chars().count().div_ceil(COLUMNS).max(1)).sum();
+        area.set_rows(u32::try_from(rows).unwrap_or(1).clamp(1, 20));
         area.select();
         // The clipboard's own interface is refused in sandboxed frames; this older one works there.
         let copied = self.document.dyn_ref::<HtmlDocument>().and_then(|document| document.exec_command("copy").ok()).unwrap_or(false);

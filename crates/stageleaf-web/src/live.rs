@@ -25,7 +25,8 @@ const BODY: &str = ":scope > .stageleaf-body";
 /// What an empty sheet starts with.
 const FIRST_KIND: Kind = Kind::NonInverting;
 const NEW_NAME: &str = "New stage";
-const HINT: &str = "Change a value in the sheet: Enter takes it, Escape restores it, ↑ and ↓ step it, Page keys by a decade.";
+const HINT: &str =
+    "Change a value in the sheet: Enter takes it, Escape restores what stood before, ↑ and ↓ step it, Page keys by a decade.";
 
 /// A typed value that could not be taken.
 #[derive(Clone, Debug)]
@@ -39,6 +40,8 @@ struct Trouble {
 enum Work {
     /// A value typed or stepped.
     Edit { path: String, value: String },
+    /// The block as it stood when a field took the focus.
+    Restore(String),
     /// The whole sheet again.
     Show,
 }
@@ -57,6 +60,19 @@ pub struct Live {
     notices: Vec<Problem>,
     work: Option<Work>,
     readout: Readout,
+    entered: Option<Entered>,
+    /// Whether the sheet is no note's.
+    empty: bool,
+}
+
+/// A field as it stood when it took the focus, or when its value was last taken by Enter.
+#[derive(Clone, Debug)]
+struct Entered {
+    path: String,
+    /// The field's text.
+    text: String,
+    /// The block's.
+    block: String,
 }
 
 #[wasm_bindgen]
@@ -81,6 +97,7 @@ impl Live {
             let kinds: Vec<(&str, &str)> = Kind::ALL.iter().map(|kind| (kind.id(), kind.spec().title)).collect();
             let parts: Vec<(&str, &str)> =
                 model.shelf().parts.iter().map(|entry| (entry.part.id.as_str(), entry.part.name.as_str())).collect();
+            controls.introduce("A made-up stage to start from: put your own values in place of these.");
             controls.choose("kind", "Stage kind", &kinds);
             controls.choose("part", "Part", &parts);
         }
@@ -96,6 +113,8 @@ impl Live {
             notices: Vec::new(),
             work: None,
             readout: Readout::default(),
+            entered: None,
+            empty,
         };
         live.verify();
         live.host.prepend_with_node_1(live.controls.element()).map_err(|_| refused())?;
@@ -131,6 +150,7 @@ impl Live {
             "focusin" => {
                 let Self { readout, model, host, .. } = self;
                 with_sheet(model, &name_of(host), |sheet| readout.focus(sheet, &target));
+                self.entered = value_input(&target).map(|input| self.entered(&input));
             }
             // A panel that opens before its time gets its content at once.
             "toggle" => self.complete(),
@@ -149,8 +169,7 @@ impl Live {
         let before = self.model.verdicts();
         match self.work.take() {
             None => return,
-            Some(Work::Show) => {}
-            Some(Work::Edit { path, value }) => self.edit(path, value),
+            Some(work) => self.work(work),
         }
         self.show(&before);
     }
@@ -175,6 +194,7 @@ impl Live {
         if found != link::Found::Nothing {
             self.notices = self.model.follow(found);
             self.troubles.clear();
+            self.entered = None;
             self.show(&before);
         }
     }
@@ -214,7 +234,10 @@ impl Live {
         let way = match key.as_str() {
             "Enter" => {
                 event.prevent_default();
-                return self.typed(&input);
+                self.typed(&input);
+                // What Enter took stands; a later Escape goes back to it.
+                self.entered = None;
+                return;
             }
             "Escape" => return self.restore(&input, event),
             "ArrowUp" => Step::Up,
@@ -227,6 +250,9 @@ impl Live {
         let next = step(&path, &input.value(), way, self.model.block().stage.kind, self.model.settings());
         if let Some(next) = next {
             event.prevent_default();
+            if self.entered.as_ref().is_none_or(|entered| entered.path != path) {
+                self.entered = Some(self.entered(&input));
+            }
             input.set_value(&next);
             self.ask(path, next);
         }
@@ -243,6 +269,7 @@ impl Live {
             _ => return,
         };
         self.troubles.clear();
+        self.entered = None;
         self.notices = result.err().unwrap_or_default();
         self.show(&before);
     }
@@ -252,15 +279,21 @@ impl Live {
         input.get_attribute("value").or_else(|| self.model.block().field(&path_of(input)).map(|field| field.text.clone()))
     }
 
+    /// What Escape in `input` goes back to from now on.
+    fn entered(&self, input: &HtmlInputElement) -> Entered {
+        Entered { path: path_of(input), text: self.accepted(input).unwrap_or_default(), block: self.model.block().text.clone() }
+    }
+
     fn restore(&mut self, input: &HtmlInputElement, event: &KeyboardEvent) {
-        let Some(text) = self.accepted(input) else { return };
         let path = path_of(input);
+        let Entered { text, block, .. } = self.entered.take().filter(|entered| entered.path == path).unwrap_or_else(|| self.entered(input));
         let pending = matches!(&self.work, Some(Work::Edit { path: other, .. }) if *other == path);
-        if text != input.value() || self.troubles.contains_key(&path) || pending {
+        let stepped = block != self.model.block().text;
+        if text != input.value() || self.troubles.contains_key(&path) || pending || stepped {
             event.stop_propagation();
             input.set_value(&text);
             self.troubles.remove(&path);
-            self.work = Some(Work::Show);
+            self.work = Some(Work::Restore(block));
         }
     }
 
@@ -274,12 +307,21 @@ impl Live {
 
     /// Leaves an edit for the next frame; one of another value that still waits is done first.
     fn ask(&mut self, path: String, value: String) {
-        if let Some(Work::Edit { path: other, value: waiting }) = self.work.take()
-            && other != path
-        {
-            self.edit(other, waiting);
+        match self.work.take() {
+            Some(Work::Edit { path: other, .. }) if other == path => {}
+            Some(work) => self.work(work),
+            None => {}
         }
         self.work = Some(Work::Edit { path, value });
+    }
+
+    fn work(&mut self, work: Work) {
+        match work {
+            Work::Show => {}
+            Work::Edit { path, value } => self.edit(path, value),
+            // The text was in use before, so it can be read.
+            Work::Restore(text) => self.notices = self.model.replace(&text).err().unwrap_or_default(),
+        }
     }
 
     fn edit(&mut self, path: String, value: String) {
@@ -308,6 +350,7 @@ impl Live {
             Action::Link => return self.link(),
         };
         self.troubles.clear();
+        self.entered = None;
         self.notices = way.err().unwrap_or_default();
         self.work = Some(Work::Show);
     }
@@ -401,6 +444,12 @@ impl Live {
         self.explain();
         self.controls.allow(self.model.ways());
         let stage = &self.model.block().stage;
+        // The verdicts of values that nobody chose are no news.
+        if self.empty && self.model.block().text == template_for(stage.kind, NEW_NAME, &stage.part.id) {
+            set(&self.host, "data-start", "");
+        } else {
+            let _ = self.host.remove_attribute("data-start");
+        }
         self.controls.chosen(&[("kind", stage.kind.id()), ("part", &stage.part.id)]);
     }
 

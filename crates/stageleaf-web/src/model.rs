@@ -1,7 +1,7 @@
 //! The sheet's state without a page: the block's text, its report, and the way back.
 
-use stageleaf_math::{Detail, limit::Verdict, model::Plans, report::Report};
-use stageleaf_note::{Block, Place, Problem, Settings, Shelf, problem::quoted, read_block};
+use stageleaf_math::{Detail, kind::Kind, limit::Verdict, model::Plans, report::Report};
+use stageleaf_note::{Block, Place, Problem, Settings, Shelf, parse_query, paths, problem::quoted, read_block};
 
 use crate::{data::Data, link::Found};
 
@@ -155,11 +155,7 @@ impl Model {
         };
         let mut problems = Vec::new();
         for (path, value) in changes {
-            let known = self.block.field(&path).is_some()
-                || path
-                    .strip_prefix("components.")
-                    .is_some_and(|name| self.block.stage.kind.components().iter().any(|spec| spec.name == name));
-            if known {
+            if self.block.field(&path).is_some() || is_path(&path, self.block.stage.kind) {
                 problems.extend(self.edit(&path, &value).err().unwrap_or_default());
             } else {
                 problems.push(self.problem(format!("the link names {}, which this stage has not: it was left out", quoted(&path))));
@@ -187,6 +183,21 @@ impl Model {
     }
 }
 
+/// Whether a stage of this kind can have a value at `path` (see [`paths`] for the list).
+fn is_path(path: &str, kind: Kind) -> bool {
+    let word = match path.split_once('.') {
+        None => ["name", "part", "isolation"].contains(&path),
+        Some(("parts", a)) => (1..=kind.spec().amplifiers).any(|n| a == format!("A{n}")),
+        Some(("source" | "signal", key)) => match key.rsplit_once('.') {
+            None => ["kind", "waveform"].contains(&key),
+            Some((input, key)) => ["kind", "waveform"].contains(&key) && paths::signal_inputs(kind).iter().any(|i| i.name == input),
+        },
+        Some(("limits", query)) => parse_query(query).is_ok(),
+        _ => false,
+    };
+    word || paths::dimension(path, kind).is_some()
+}
+
 /// What changed between two lists of verdicts, in words; nothing where nothing did.
 pub fn announcement(before: &[(String, Verdict)], after: &[(String, Verdict)]) -> Option<String> {
     let changed: Vec<String> = after
@@ -209,4 +220,35 @@ fn heading(query: stageleaf_math::figure::Query) -> String {
 fn analyse(block: &Block, place: &Place, detail: Detail, plans: &Plans) -> Result<Report, Vec<Problem>> {
     stageleaf_math::analyse_with(&block.stage, detail, plans)
         .map_err(|error| vec![Problem::on_line(&place.file, place.first_line, 1, 1, "", error.to_string())])
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn a_link_may_name_every_value_that_a_kind_has() {
+        for path in [
+            "part",
+            "isolation",
+            "components.Cf",
+            "supply.negative",
+            "signal.peak",
+            "signal.waveform",
+            "source.kind",
+            "source.resistance",
+            "load.capacitance",
+            "board.inverting_node",
+            "ambient.temperature",
+            "band.to",
+            "limits.gain_at 2 MHz",
+        ] {
+            assert!(is_path(path, Kind::NonInverting), "{path}");
+        }
+        assert!(is_path("signal.in2.waveform", Kind::Summing) && is_path("source.in1.kind", Kind::Difference));
+        assert!(is_path("parts.A2", Kind::Instrumentation) && is_path("reference.resistance", Kind::ScaleAndShift));
+        for path in ["", "nothing", "components.R99", "reference.voltage", "parts.A9", "limits.beauty", "signal.in2.peak", "../part"] {
+            assert!(!is_path(path, Kind::NonInverting), "{path}");
+        }
+    }
 }

@@ -1,11 +1,11 @@
 //! Arrow keys on a value: the next text up or down.
 //!
-//! Resistances and capacitances go through the team's series; other quantities change in their second digit. Only the
-//! nominal value moves: tolerance, drift and rating stay as typed. All steps are made on decimal digits, so that no
+//! Resistances and capacitances go through the team's series, temperatures by a degree; other quantities change in
+//! their second digit. Only the nominal value moves: tolerance, drift and rating stay as typed. All steps are made on decimal digits, so that no
 //! rounding creeps in.
 
 use stageleaf_math::{dimension::Dimension, kind::Kind, series::Series};
-use stageleaf_note::{Settings, code, full, parse};
+use stageleaf_note::{Settings, code, full, parse, paths, print::trimmed};
 
 /// How far to go.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -22,10 +22,13 @@ pub enum Step {
 
 /// The text after a step from `text` at `path`, where that value has steps.
 pub fn step(path: &str, text: &str, step: Step, kind: Kind, settings: &Settings) -> Option<String> {
-    let dimension = dimension(path, kind)?;
+    let dimension = paths::dimension(path, kind)?;
     let (nominal, rest) = split(text, dimension)?;
     if rest.contains(" to ") {
         return None;
+    }
+    if dimension == Dimension::Temperature {
+        return Some(format!("{}{rest}", by_degree(parse(nominal, dimension).ok()?, step)?));
     }
     let value = parse(nominal, dimension).ok().filter(|value| value.is_finite() && *value != 0.0)?;
     let series = match dimension {
@@ -45,23 +48,6 @@ pub fn step(path: &str, text: &str, step: Step, kind: Kind, settings: &Settings)
     let next = next.filter(|next| (1e-18..=1e15).contains(&next.abs()))?;
     let shown = if series.is_some() && !nominal.contains(char::is_whitespace) { code(next, dimension) } else { full(next, dimension) };
     Some(format!("{shown}{rest}"))
-}
-
-fn dimension(path: &str, kind: Kind) -> Option<Dimension> {
-    if let Some(name) = path.strip_prefix("components.") {
-        return kind.components().iter().find(|spec| spec.name == name).map(|spec| spec.dimension);
-    }
-    match path {
-        "supply.positive" | "supply.negative" | "signal.peak" | "signal.peak_to_peak" | "signal.rms" | "signal.dc" => {
-            Some(Dimension::Voltage)
-        }
-        "signal.frequency" | "band.from" | "band.to" => Some(Dimension::Frequency),
-        "source.resistance" | "load.resistance" => Some(Dimension::Resistance),
-        "source.capacitance" | "load.capacitance" | "board.inverting_node" | "board.non_inverting_node" | "board.across_feedback" => {
-            Some(Dimension::Capacitance)
-        }
-        _ => None,
-    }
 }
 
 /// The longest beginning of `text` that is one quantity, and the rest.
@@ -91,6 +77,18 @@ fn by_digit(value: f64, up: bool) -> Option<f64> {
     };
     let size: f64 = format!("{next}e{exponent}").parse().ok()?;
     Some(if value > 0.0 { size } else { -size })
+}
+
+/// Temperatures have no decades: an arrow goes by one degree Celsius, a Page key by ten.
+fn by_degree(kelvins: f64, step: Step) -> Option<String> {
+    let by = match step {
+        Step::Up => 1.0,
+        Step::Down => -1.0,
+        Step::DecadeUp => 10.0,
+        Step::DecadeDown => -10.0,
+    };
+    let next = Some(kelvins + by).filter(|next| (0.0..=1e3).contains(next))?;
+    Some(trimmed(next, Dimension::Temperature, 6))
 }
 
 fn in_series(series: Series, value: f64, up: bool) -> Option<f64> {
@@ -123,6 +121,22 @@ mod tests {
         assert_eq!(after("signal.peak", "1 V", Step::Down).as_deref(), Some("990 mV"));
         assert_eq!(after("supply.positive", "12 V ± 5 %", Step::Up).as_deref(), Some("13 V ± 5 %"));
         assert_eq!(after("supply.negative", "-12 V", Step::Up).as_deref(), Some("−11 V"));
+    }
+
+    #[test]
+    fn every_value_of_a_stage_has_steps() {
+        let of = |kind, path, text| step(path, text, Step::Up, kind, &Settings::default());
+        assert_eq!(of(Kind::Summing, "signal.in2.peak", "1 V").as_deref(), Some("1.1 V"));
+        assert_eq!(of(Kind::Summing, "source.in1.resistance", "50 Ω").as_deref(), Some("51 Ω"));
+        assert_eq!(of(Kind::Transimpedance, "signal.peak", "1 µA").as_deref(), Some("1.1 µA"));
+        assert_eq!(of(Kind::Transimpedance, "source.dark_current", "20 pA").as_deref(), Some("21 pA"));
+        assert_eq!(of(Kind::Charge, "signal.peak", "10 pC").as_deref(), Some("11 pC"));
+        assert_eq!(of(Kind::Difference, "signal.common_mode", "5 V").as_deref(), Some("5.1 V"));
+        assert_eq!(of(Kind::ScaleAndShift, "reference.voltage", "2.5 V 0.1%").as_deref(), Some("2.6 V 0.1%"));
+        assert_eq!(of(Kind::NonInverting, "signal.crest_factor", "3").as_deref(), Some("3.1"));
+        assert_eq!(of(Kind::NonInverting, "ambient.range", "25 °C").as_deref(), Some("26 °C"));
+        assert_eq!(of(Kind::NonInverting, "ambient.range", "−1 °C").as_deref(), Some("0 °C"));
+        assert_eq!(step("ambient.temperature", "25 °C", Step::DecadeDown, Kind::Inverting, &Settings::default()).as_deref(), Some("15 °C"));
     }
 
     #[test]

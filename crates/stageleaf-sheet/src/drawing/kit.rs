@@ -362,9 +362,9 @@ impl Canvas {
         self.labels.iter().any(|(.., l)| l.path == path)
     }
 
-    /// Labels whose value is longer than its field shows.
+    /// Labels whose value is longer than its field shows at a size that a phone's reader makes out.
     pub fn cut(&self) -> impl Iterator<Item = &Label> {
-        self.labels.iter().map(|(.., l)| l).filter(|l| l.value.chars().count() > 12)
+        self.labels.iter().map(|(.., l)| l).filter(|l| size(&l.value) == Some("least"))
     }
 
     /// Wires and bodies, as boxes.
@@ -403,7 +403,8 @@ impl Canvas {
                     text class=[class] x=(x) y=(y) text-anchor=(anchor) aria-hidden="true" { (text) }
                 }
                 @for (a, side, l) in &self.labels {
-                    @let (class, anchor, x) = side.lean(a.x0);
+                    @let (lean, anchor, x) = side.lean(a.x0);
+                    @let class = size(&l.value).map_or_else(|| lean.to_owned(), |size| format!("{lean} {size}"));
                     text class="designator" x=(x) y=(a.y0 + 12) text-anchor=(anchor) aria-hidden="true" { (l.name) }
                     foreignObject x=(a.x0) y=(a.y0 + 15) width=(LABEL_WIDTH) height=(LABEL_HEIGHT - 15) {
                         input class=(class) id=(format_args!("{id}.{}", l.path)) type="text" inputmode="decimal" autocomplete="off" spellcheck="false" data-path=(l.path) value=(l.value) aria-label=(l.spoken);
@@ -411,5 +412,15 @@ impl Canvas {
                 }
             }
         }
+    }
+}
+
+/// The class of a value's size: the longer it is, the smaller, so that a value with tolerance and drift stands whole in its field.
+fn size(value: &str) -> Option<&'static str> {
+    match value.chars().count() {
+        ..=10 => None,
+        11..=12 => Some("snug"),
+        13..=15 => Some("small"),
+        _ => Some("least"),
     }
 }

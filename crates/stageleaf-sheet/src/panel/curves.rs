@@ -75,6 +75,9 @@ pub fn envelope(sheet: &Sheet) -> Markup {
 /// A share as a percentage with one decimal.
 pub fn percent(share: f64) -> String {
     let percent = share * 100.0;
+    if percent > 0.0 && percent < 0.05 {
+        return "< 0.1 %".into();
+    }
     if percent.abs() < 1e6 { format!("{percent:.1} %") } else { "–".into() }
 }
 

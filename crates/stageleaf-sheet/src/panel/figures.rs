@@ -22,6 +22,7 @@ pub fn figures(sheet: &Sheet) -> Markup {
     let first = |row: &FigureRow| all.iter().find(|r| r.query == row.query).is_some_and(|r| std::ptr::eq(r, row));
     html! {
         summary { "All figures" }
+        p class="aside sideways" { "The table goes on to the right: scroll it sideways." }
         (scroll("All figures", &html! {
             table class="figures" {
                 thead { tr { th scope="col" { "figure" } th scope="col" { "nominal" } th scope="col" { "least" } th scope="col" { "greatest" } th scope="col" { "basis" } } }
@@ -33,7 +34,7 @@ pub fn figures(sheet: &Sheet) -> Markup {
                                 @let d = row.dimension;
                                 // The row of a judged figure, to which prose links, stands among the limits.
                                 tr id=[(first(row) && !judged(row.query)).then(|| format!("{}.{}", sheet.id, query_anchor(row.query)))] {
-                                    th scope="row" { (title(row.query)) " " code { (query_text(row.query)) } (needs(sheet, &row.nominal)) }
+                                    th scope="row" { (title(sheet, row.query)) " " samp { (query_text(row.query)) } (needs(sheet, &row.nominal)) }
                                     @if row.nominal.value().is_none() { td class="words" colspan="3" { (super::outcome(&row.nominal, d)) } }
                                     @else {
                                         td { (super::outcome(&row.nominal, d)) }

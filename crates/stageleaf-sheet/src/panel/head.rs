@@ -37,10 +37,17 @@ pub fn head(sheet: &Sheet) -> Markup {
     let stage = &sheet.block.stage;
     let part = &sheet.part.part;
     let verdicts = summary(sheet.report);
-    let loud: Vec<&Caution> =
-        sheet.report.cautions.iter().filter(|c| !matches!(c, Caution::TakenAsIdeal(_) | Caution::TakenAsExact(_))).collect();
+    let loud: Vec<&Caution> = sheet
+        .report
+        .cautions
+        .iter()
+        .filter(|c| !matches!(c, Caution::TakenAsIdeal(_) | Caution::TakenAsExact(_) | Caution::Oscillates))
+        .collect();
     html! {
         p class="title" role="heading" aria-level="2" { (stage.name) }
+        @for caution in sheet.report.cautions.iter().filter(|c| matches!(c, Caution::Oscillates)) {
+            p class="alarm" { span aria-hidden="true" { "✕ " } (words::caution_text(caution)) }
+        }
         p class="summary" {
             @if verdicts.is_empty() { "no limits to judge" }
             @for (i, (verdict, text)) in verdicts.iter().enumerate() {

@@ -4,7 +4,7 @@ use maud::{Markup, html};
 use stageleaf_math::{
     dimension::Dimension,
     limit::{Bound, Limit, Verdict},
-    report::{Coordinate, LimitRow, Outcome, Parameter},
+    report::{Caution, Coordinate, LimitRow, Outcome, Parameter},
 };
 use stageleaf_note::{format, limit_text, print::trimmed, query_anchor, words};
 
@@ -45,6 +45,9 @@ pub fn limits(sheet: &Sheet) -> Markup {
                 // The same figure may be limited twice, as `gain_at 1 kHz` and `gain_at 1000 Hz`: links go to the worse.
                 (limit(sheet, row, rows[..i].iter().all(|r| r.limit.query != row.limit.query)))
             } }
+            @for caution in sheet.report.cautions.iter().filter(|c| matches!(c, Caution::TakenAsExact(_))) {
+                p class="aside" { (words::caution_text(caution)) }
+            }
             p class="key aside" aria-hidden="true" { "◆ nominal, ├─┤ spread, hatched: not allowed, shaded: thin" }
         }
     }
@@ -69,7 +72,7 @@ fn limit(sheet: &Sheet, row: &LimitRow, linked: bool) -> Markup {
             div class="asked" {
                 span class=(class(row.verdict)) { span class="shape" aria-hidden="true" { (shape(row.verdict)) } " " (row.verdict.word()) }
                 @if let Some(basis) = row.basis { span class="basis" { " (" (basis.word()) ")" } }
-                b class="figure" { (title(query)) }
+                b class="figure" { (title(sheet, query)) }
                 span class="asks" { (asks(&row.limit, d)) }
             }
             (strip(row, |v| round(v, d)))

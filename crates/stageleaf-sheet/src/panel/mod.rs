@@ -32,16 +32,23 @@ use crate::Sheet;
 /// Digits of a figure.
 const DIGITS: usize = 3;
 
-/// A table that may be wider than a phone: it scrolls by itself, by keyboard too.
+/// A table that may be wider than a phone: it scrolls by itself, by keyboard too, and says so where it is narrow.
 fn scroll(name: &str, table: &Markup) -> Markup {
     html! { div class="scroll" tabindex="0" role="group" aria-label=(name) { (table) } }
 }
 
-/// A figure's title with its argument: "Gain at 2 MHz".
-fn title(query: Query) -> String {
-    match query.at {
-        Some(f) => format!("{} {}", query.figure.title(), trimmed(f, Dimension::Frequency, 6)),
-        None => query.figure.title().to_owned(),
+/// A figure's title with its argument, or with the frequency that it is at: "Gain at 2 MHz", "Input impedance at 20 kHz".
+fn title(sheet: &Sheet, query: Query) -> String {
+    let title = query.figure.title();
+    let hertz = |f: f64| trimmed(f, Dimension::Frequency, 6);
+    let signal = sheet.block.stage.signal().and_then(|s| s.frequency);
+    match (query.at, query.figure) {
+        (Some(f), _) => format!("{title} {}", hertz(f)),
+        (None, Figure::InputImpedance | Figure::OutputImpedance) => {
+            let what = title.trim_end_matches(" at the signal");
+            signal.map_or_else(|| format!("{what} at DC"), |f| format!("{what} at {}", hertz(f)))
+        }
+        _ => title.to_owned(),
     }
 }
 
@@ -57,7 +64,7 @@ fn round(v: f64, dimension: Dimension) -> String {
 
 /// Words with their `` `code` `` marked as such.
 fn coded(text: &str) -> Markup {
-    html! { @for (i, piece) in text.split('`').enumerate() { @if i % 2 == 1 { code { (piece) } } @else { (piece) } } }
+    html! { @for (i, piece) in text.split('`').enumerate() { @if i % 2 == 1 { samp { (piece) } } @else { (piece) } } }
 }
 
 /// An outcome as a table's cell.
@@ -98,7 +105,7 @@ fn brief(sheet: &Sheet, figure: Figure) -> Option<Markup> {
     let d = row.dimension;
     Some(html! {
         span class="brief" {
-            (figure.title()) " " b { (outcome(&row.nominal, d)) }
+            (title(sheet, row.query)) " " b { (outcome(&row.nominal, d)) }
             @if let Some((low, high)) = row.range { " (" (value(low, d)) " to " (value(high, d)) ")" }
         }
     })

@@ -11,7 +11,8 @@ pub fn model(sheet: &Sheet) -> Markup {
     let ideal: Vec<&Caution> =
         sheet.report.cautions.iter().filter(|c| matches!(c, Caution::TakenAsIdeal(_) | Caution::TakenAsExact(_))).collect();
     html! {
-        summary { "Not modelled" @if !ideal.is_empty() { ", taken as ideal" } }
+        summary { "Not modelled" @if ideal.iter().any(|c| matches!(c, Caution::TakenAsIdeal(_))) { ", taken as ideal" }
+            @if ideal.iter().any(|c| matches!(c, Caution::TakenAsExact(_))) { ", taken as exact" } }
         p { @for (i, item) in NOT_MODELLED.iter().enumerate() { @if i > 0 { ", " } (item) } "." }
         @if !ideal.is_empty() { ul { @for c in ideal { li { (words::caution_text(c)) } } } }
     }
@@ -21,8 +22,8 @@ pub fn model(sheet: &Sheet) -> Markup {
 pub fn provenance(sheet: &Sheet) -> Markup {
     html! {
         p {
-            "stageleaf " (env!("CARGO_PKG_VERSION")) "; " (sheet.block.file) " line " (sheet.block.line) ", block " code { (fingerprint(&sheet.block.text)) }
-            "; " (sheet.part.file) ", part " code { (fingerprint(&sheet.part.text)) }
+            "stageleaf " (env!("CARGO_PKG_VERSION")) "; " (sheet.block.file) " line " (sheet.block.line) ", block " samp { (fingerprint(&sheet.block.text)) }
+            "; " (sheet.part.file) ", part " samp { (fingerprint(&sheet.part.text)) }
             @if let Some(source) = &sheet.part.part.source { "; data: " (source) }
         }
         p { "Model estimate; measure the built circuit; local codes and licensed practice govern where people, mains, vehicles or explosive atmospheres are concerned." }

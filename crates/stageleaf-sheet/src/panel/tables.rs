@@ -25,7 +25,7 @@ pub fn dc(sheet: &Sheet) -> Markup {
         @else {
             (scroll("DC error budget", &html! { table class="shares" {
                 caption { "Magnitudes at the output" }
-                thead { tr { th scope="col" { "cause" } th scope="col" { "nominal" } th scope="col" { "worst case" } th scope="col" { "share" } td {} } }
+                thead { tr { th scope="col" { "cause" } th scope="col" { "nominal" } th scope="col" { "in the worst case of the sum" } th scope="col" { "share" } td {} } }
                 tbody { @for line in lines { tr {
                     @let share = line.worst.value().map_or(f64::NAN, |v| v.abs() / total);
                     th scope="row" { (words::cause_text(line.cause)) (needs(sheet, if line.nominal.value().is_some() { &line.worst } else { &line.nominal })) }

@@ -18,10 +18,10 @@ pub fn working(sheet: &Sheet) -> Markup {
         @for w in &sheet.report.working {
             @let d = w.dimension;
             div class="working" {
-                p class="caption" role="heading" aria-level="3" { (title(w.query)) }
-                p class="formula" { code { (w.formula) } }
+                p class="caption" role="heading" aria-level="3" { (title(sheet, w.query)) }
+                p class="formula" { samp { (w.formula) } }
                 @if !w.numbers.is_empty() {
-                    p class="formula" { code { (in_place(w)) " = " (value(w.handbook, d)) } }
+                    p class="formula" { samp { (in_place(w)) " = " (value(w.handbook, d)) } }
                 }
                 dl {
                     div { dt { "handbook" } dd { (value(w.handbook, d)) } }

@@ -237,15 +237,17 @@ fn envelope(sheet: &Sheet) -> Option<Chart> {
             });
         }
     }
-    // The lowest of the bounds decides; how far the others rise above it is of no use, nor is what it falls to far below its best.
+    // The lowest of the bounds that there are decides; how far the others rise above it is of no use, nor is what it falls to
+    // far below its best, nor where no bound is known.
     let lowest =
         |p: &EnvelopePoint| [p.rails, p.current, p.slew].into_iter().flatten().filter(|v| v.is_finite()).fold(f64::INFINITY, f64::min);
     let best = thinned(&r.envelope).map(lowest).filter(|v| v.is_finite()).fold(0.0, f64::max);
     let floor = marks.iter().fold(best * 1e-3, |floor, m| floor.min(m.y / 2.0));
     let last = marks.iter().fold(0.0, |last: f64, m| last.max(10.0 * m.x));
-    let points: Vec<&EnvelopePoint> = thinned(&r.envelope).filter(|p| lowest(p) >= floor || p.frequency <= last).collect();
+    let wanted = |p: &&EnvelopePoint| lowest(p).is_finite() && (lowest(p) >= floor || p.frequency <= last);
+    let points: Vec<&EnvelopePoint> = thinned(&r.envelope).filter(wanted).collect();
     let x: Vec<f64> = points.iter().map(|p| p.frequency).collect();
-    let mut curves = Vec::new();
+    let mut curves = vec![Curve { name: "clean output".into(), y: points.iter().map(|p| lowest(p)).collect() }];
     for (name, pick) in
         [("rails", (|p| p.rails) as fn(&EnvelopePoint) -> Option<f64>), ("current", |p| p.current), ("slew rate", |p| p.slew)]
     {

@@ -56,7 +56,8 @@ pub fn svg(c: &Chart) -> Markup {
                 path class="minor" d=(PreEscaped(minor)) {}
                 @if let Some(level) = c.reference { path class="reference" d=(format_args!("M{} {}H{}", whole(AREA_LEFT), tenth(py(level)), whole(right))) {} }
                 svg x=(whole(AREA_LEFT)) y=(whole(TOP)) width=(whole(AREA_WIDTH)) height=(whole(height)) viewBox=(format_args!("0 0 {} {}", whole(AREA_WIDTH * FINE), whole(height * FINE))) {
-                    @for (k, curve) in c.curves.iter().enumerate() {
+                    // The first curve is the one that counts, and lies above the others.
+                    @for (k, curve) in c.curves.iter().enumerate().rev() {
                         path class=(format_args!("curve c{k}")) d=(PreEscaped(path(&xs, &c.y_axis, curve, height))) {}
                     }
                 }
