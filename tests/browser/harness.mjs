@@ -1,10 +1,10 @@
 // What the browser tests share: a Chromium, pages that record every request and every console message, a small server.
-import { spawnSync } from "node:child_process";
-import { existsSync, mkdtempSync, mkdirSync, readFileSync, readdirSync, statSync } from "node:fs";
+import { execFileSync, spawnSync } from "node:child_process";
+import { cpSync, existsSync, mkdtempSync, mkdirSync, readFileSync, readdirSync, statSync, writeFileSync } from "node:fs";
 import { createServer } from "node:http";
 import { createRequire } from "node:module";
 import { tmpdir } from "node:os";
-import { extname, join, normalize, resolve } from "node:path";
+import { dirname, extname, join, normalize, resolve } from "node:path";
 import { fileURLToPath } from "node:url";
 
 export const root = resolve(fileURLToPath(import.meta.url), "../../..");
@@ -80,6 +80,21 @@ export const plainDocument = (element) => {
   breaks.forEach((node) => node.remove());
   return copy.querySelector(".stageleaf-body").outerHTML;
 };
+
+/** The page that the command line makes of a sheet's own data where the component `key` has `value` for `old`. */
+export function editedNatively(data, key, old, value) {
+  const { block, file, line, part, shelf = [] } = JSON.parse(data);
+  const folder = mkdtempSync(join(tmpdir(), "stageleaf-edited-"));
+  cpSync(join(root, "site/stageleaf.toml"), join(folder, "site/stageleaf.toml"));
+  const changed = block.replace(new RegExp(`^(${key}\\s*=\\s*)"${old.replace(/[^\w ]/g, "\\$&")}"`, "m"), `$1"${value}"`);
+  if (changed === block) throw new Error(`${file} has no ${key} = "${old}"`);
+  const files = [...shelf, part, { file, text: "\n".repeat(line - 2) + "```stageleaf\n" + changed.replace(/\n?$/, "\n```\n") }];
+  for (const one of files) {
+    mkdirSync(dirname(join(folder, one.file)), { recursive: true });
+    writeFileSync(join(folder, one.file), one.text);
+  }
+  return execFileSync(join(root, "target/debug/stageleaf"), ["page", file], { cwd: folder, maxBuffer: 1e8, stdio: ["ignore", "pipe", "inherit"] }).toString();
+}
 
 /** Serves `files` (path → text) over the book, with a policy. */
 export async function serve({ policy, files = {} } = {}) {

@@ -3,7 +3,7 @@ import assert from "node:assert/strict";
 import { readFileSync } from "node:fs";
 import { join } from "node:path";
 import { after, before, test } from "node:test";
-import { awaken, axeSource, book, enter, fileUrl, frame, launch, limits, notes, open, plainDocument, screens, strangers } from "./harness.mjs";
+import { awaken, axeSource, book, enter, editedNatively, fileUrl, frame, launch, limits, notes, open, plainDocument, screens, strangers } from "./harness.mjs";
 
 let context;
 before(async () => { context = await launch(); await context.setOffline(true); });
@@ -22,6 +22,8 @@ test("every note's sheet becomes live, and nothing is requested or said", async 
     const opened = await page(name);
     const sheets = await opened.locator("stageleaf-sheet").count();
     assert.equal(await opened.locator("stageleaf-sheet[data-live]").count(), sheets, name);
+    // Nothing that the book's own scripts do to a page touches a sheet.
+    assert.equal(await opened.locator("stageleaf-sheet[data-mended]").count(), 0, name);
     assert.deepEqual(strangers(opened), [], name);
     assert.deepEqual(opened.seen.words, [], name);
     await opened.close();
@@ -108,6 +110,142 @@ test("arrow keys step through the series and keep the focus", async () => {
   await opened.close();
 });
 
+test("Escape restores what stood before the arrows, or before typing", async () => {
+  const opened = await page();
+  const before = await limits(opened);
+  const input = opened.locator('input[data-path="components.Rf"]').first();
+  const value = () => input.inputValue();
+  await input.focus();
+  for (const key of ["PageUp", "ArrowUp", "ArrowUp"]) {
+    await opened.keyboard.press(key);
+    await frame(opened);
+  }
+  assert.match(await value(), /^110k/); // IEC 60063, E24: 91, 100, 110
+  assert.notDeepEqual(await limits(opened), before);
+  await opened.keyboard.press("Escape");
+  await frame(opened);
+  assert.equal(await value(), "9k1 1% 50ppm 0.25W");
+  assert.deepEqual(await limits(opened), before);
+  // A step that no frame has drawn yet is taken back as well.
+  await opened.evaluate(() => {
+    const input = document.querySelector('input[data-path="components.Rf"]');
+    for (const key of ["ArrowUp", "Escape"]) input.dispatchEvent(new KeyboardEvent("keydown", { key, bubbles: true, cancelable: true }));
+  });
+  await frame(opened);
+  assert.equal(await value(), "9k1 1% 50ppm 0.25W");
+  assert.deepEqual(await limits(opened), before);
+  await input.fill("12k");
+  await opened.keyboard.press("Escape");
+  await frame(opened);
+  assert.equal(await value(), "9k1 1% 50ppm 0.25W");
+  // What Enter took stands: from there the arrows go, and Escape comes back to it.
+  await enter(opened, "components.Rf", "10k 1%");
+  await opened.keyboard.press("ArrowUp");
+  await frame(opened);
+  assert.equal(await value(), "11k 1%");
+  await opened.keyboard.press("Escape");
+  await frame(opened);
+  assert.equal(await value(), "10k 1%");
+  assert.deepEqual(opened.seen.words, []);
+  await opened.close();
+  // A field that the note leaves empty is empty again.
+  const other = await page("bridge-excitation-inverter.html");
+  const unstated = other.locator(".unstated input").first();
+  await unstated.fill("30 Hz");
+  await unstated.press("ArrowUp");
+  await frame(other);
+  await unstated.press("Escape");
+  await frame(other);
+  assert.equal(await unstated.inputValue(), "");
+  assert.equal(await other.locator("[data-section=problems]").first().isHidden(), true);
+  await other.close();
+});
+
+test("arrow keys step every single value of every note", async () => {
+  for (const name of notes()) {
+    const opened = await page(name);
+    const paths = await opened.evaluate(() => [...document.querySelectorAll("stageleaf-sheet input[data-path]")]
+      .filter((input) => /^[−-]?[\d.]*[1-9]/.test(input.value) && !input.value.includes(" to ")).map((input) => input.dataset.path));
+    assert.ok(paths.length > 8, `${name}: ${paths}`);
+    for (const path of paths) {
+      const input = opened.locator(`input[data-path="${path}"]`).first();
+      const old = await input.inputValue();
+      await input.focus();
+      await opened.keyboard.press("ArrowUp");
+      await frame(opened);
+      assert.notEqual(await input.inputValue(), old, `${path} of ${name}`);
+      await opened.keyboard.press("Escape");
+      await frame(opened);
+      assert.equal(await input.inputValue(), old, `${path} of ${name}`);
+    }
+    await opened.close();
+  }
+});
+
+/** The note's first resistor with another value, in the sheet and natively. */
+async function edited(opened) {
+  const { path, old, data } = await opened.evaluate(() => {
+    const sheet = document.querySelector("stageleaf-sheet");
+    const input = sheet.querySelector('input[data-path^="components.R"]');
+    return { path: input.dataset.path, old: input.value, data: sheet.querySelector("script").textContent };
+  });
+  await enter(opened, path, "8k2 2%");
+  return editedNatively(data, path.split(".")[1], old, "8k2 2%");
+}
+
+/** Whether the sheet, or one section of it, is the one of a page that was made natively. */
+const equals = (opened, native, selector = ".stageleaf-body") => opened.evaluate(({ native, plain, selector }) => {
+  const plainDocument = eval(plain);
+  const [live, made] = [document, new DOMParser().parseFromString(native, "text/html")].map((page) => {
+    const body = new DOMParser().parseFromString(plainDocument(page.querySelector("stageleaf-sheet")), "text/html");
+    return body.querySelector(selector);
+  });
+  live.querySelectorAll("details[open]").forEach((panel) => panel.removeAttribute("open"));
+  live.removeAttribute("open");
+  if (live.isEqualNode(made)) return "the same";
+  return [...made.querySelectorAll(":scope > [data-section]")].filter((part) => !live.querySelector(`:scope > [data-section=${part.dataset.section}]`)?.isEqualNode(part))
+    .map((part) => part.dataset.section).join(", ") || "another";
+}, { native, plain: `(${plainDocument})`, selector });
+
+for (const panels of ["closed", "open"]) {
+  test(`after an edit the sheet is the one that the edited note gives, panels ${panels}`, async () => {
+    for (const name of notes()) {
+      const opened = await page(name);
+      await opened.evaluate((open) => document.querySelectorAll("stageleaf-sheet details").forEach((panel) => { panel.open = open; }), panels === "open");
+      await frame(opened);
+      const native = await edited(opened);
+      await opened.waitForFunction(() => !document.querySelector("stageleaf-sheet").live.behind());
+      assert.equal(await equals(opened, native), "the same", name);
+      await opened.close();
+    }
+  });
+}
+
+test("a panel that is opened before the page had time for it is fresh", async () => {
+  for (const section of ["noise", "dc", "figures", "working"]) {
+    const opened = await open(context, fileUrl(join(book, first)), { before: (fresh) => fresh.addInitScript(() => { window.requestIdleCallback = () => 0; }) });
+    await awaken(opened);
+    const native = await edited(opened);
+    const panel = `details[data-section=${section}]`;
+    assert.notEqual(await equals(opened, native, panel), "the same", `${section} waits while it is closed`);
+    await opened.locator(`${panel} > summary`).click();
+    await frame(opened);
+    assert.equal(await equals(opened, native, panel), "the same", section);
+    await opened.close();
+  }
+});
+
+test("long values of the drawing are seen whole", async () => {
+  const opened = await page();
+  for (const value of ["91k 1% 50ppm", "9k1 0.1% 25ppm", "100n"]) {
+    const path = value === "100n" ? "load.capacitance" : "components.Rf";
+    const input = await enter(opened, path, value);
+    const [needed, there] = await input.evaluate((node) => [node.scrollWidth, node.clientWidth]);
+    assert.ok(needed <= there, `${value} needs ${needed} of ${there}`);
+  }
+  await opened.close();
+});
+
 test("wrong text is kept and explained, and the last good sheet stays", async () => {
   const opened = await page();
   const before = await limits(opened);
@@ -153,6 +291,8 @@ test("values travel in the address; hostile addresses change nothing", async () 
   await enter(opened, "components.Rf", "10k 1%");
   await opened.getByRole("button", { name: "Link to these values" }).click();
   const link = await opened.locator(".stageleaf-out textarea").inputValue();
+  const [needed, there] = await opened.locator(".stageleaf-out textarea").evaluate((box) => [box.scrollHeight, box.clientHeight]);
+  assert.ok(needed <= there + 1, "the whole address is seen");
   assert.match(link, /#stageleaf-1\/hydrophone-line-amplifier\/components\.Rf=10k%201%25$/);
   assert.equal(opened.url(), link);
   await opened.close();
@@ -238,10 +378,15 @@ test("with scripts off the sheet is complete", async () => {
 test("the empty sheet makes a block", async () => {
   const opened = await page("sheet.html");
   await opened.locator("stageleaf-sheet[data-live]").waitFor();
+  // Verdicts of values that nobody chose are not shown in the head.
+  assert.equal(await opened.locator("stageleaf-sheet .summary").isHidden(), true);
+  assert.match(await opened.locator(".stageleaf-start").innerText(), /made-up/);
   await opened.locator("select[name=kind]").selectOption("inverting");
   await frame(opened);
   await opened.locator("select[name=part]").selectOption("cedar-45");
   await enter(opened, "components.Rf", "22k 1%");
+  assert.equal(await opened.locator("stageleaf-sheet .summary").isHidden(), false);
+  assert.equal(await opened.locator(".stageleaf-start").isHidden(), true);
   await opened.getByRole("button", { name: "Copy as note block" }).click();
   const text = await opened.locator(".stageleaf-out textarea").inputValue();
   assert.match(text, /stage = "inverting"/);

@@ -390,10 +390,8 @@ fn an_oscillating_stage_says_so_before_its_limits() {
 #[test]
 fn an_impedance_says_at_which_frequency() {
     let mut sample = usual(Kind::NonInverting);
-    for signal in &mut sample.0.stage.signals {
-        if let Some(signal) = signal {
-            signal.frequency = Some(20e3);
-        }
+    for signal in sample.0.stage.signals.iter_mut().flatten() {
+        signal.frequency = Some(20e3);
     }
     assert!(rendered(&sample).contains("Input impedance at 20 kHz"));
     sample.0.stage.signals.clear();
