@@ -13,7 +13,7 @@ use crate::{
     budget::budget,
     ledger::{Ledger, Wanted, half_unit},
     places::{Role, place},
-    setup::{Amplifier, Complete, density_by_source, of_source, outcome, report, solved, stage},
+    setup::{Amplifier, Complete, density_by_source, of_source, outcome, report, solved, stage, with_least_damped},
 };
 
 /// The tables.
@@ -257,7 +257,7 @@ impl Circuit {
             queries.extend([Query::at(Figure::GainAt, point.0), Query::at(Figure::PhaseAt, point.0)]);
         }
         queries.extend(expected.noise_density.iter().map(|row| Query::at(Figure::NoiseDensityAt, row.0)));
-        let report = report(&stage, &queries);
+        let report = with_least_damped(&stage, report(&stage, &queries));
 
         let mut tell = |name: &str, query: Query, value: f64, half_digit: f64| {
             let allowed = budget(query.figure).around(value) + half_digit;

@@ -2,6 +2,7 @@
 
 use stageleaf_math::{
     analyse,
+    analysis::response::least_damped,
     figure::{Figure, Query},
     kind::Kind,
     limit::{Bound, Limit, Thin},
@@ -195,6 +196,26 @@ pub fn report(stage: &Stage, queries: &[Query]) -> Report {
     let mut stage = stage.clone();
     stage.limits = queries.iter().map(|&query| Limit { query, bound: Bound::Report, thin: Thin::Fraction(0.1) }).collect();
     analyse(&stage).unwrap_or_else(|error| panic!("the engine refuses the stage: {error}\n{stage:#?}"))
+}
+
+/// The report with the least damped pair under `natural_frequency` and `q`. A filter's report gives its own pair there; the tables
+/// outside give the least damped of all, which the engine finds for every kind.
+pub fn with_least_damped(stage: &Stage, mut report: Report) -> Report {
+    let is_filter = (stage.kind.spec().working)(stage).iter().any(|w| w.query.figure == Figure::NaturalFrequency);
+    if is_filter {
+        let pair = solved(stage, |solution| least_damped(solution));
+        for row in &mut report.limits {
+            let of_pair = match row.limit.query.figure {
+                Figure::NaturalFrequency => pair.map(|p| p.0),
+                Figure::Q => pair.map(|p| p.1),
+                _ => continue,
+            };
+            if matches!(row.nominal, Outcome::Value(_) | Outcome::DoesNotApply(_)) {
+                row.nominal = of_pair.map_or(Outcome::DoesNotApply("all poles are real"), Outcome::Value);
+            }
+        }
+    }
+    report
 }
 
 /// The outcome of one query; a report without it fails.

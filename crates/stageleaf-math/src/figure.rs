@@ -76,8 +76,8 @@ figures! {
     PhaseMargin "phase_margin" Angle None SmallSignal "Phase margin", "Angle between the return ratio at crossover and −180°; of several crossings the one nearest to −180° in angle.";
     GainMargin "gain_margin" Level None SmallSignal "Gain margin", "Factor by which the return ratio may grow before it reaches −1; least over all −180° crossings.";
     SensitivityPeak "sensitivity_peak" Number None SmallSignal "Sensitivity peak", "Largest |1/(1+T)| over frequency: the reciprocal of the return ratio's distance from −1.";
-    NaturalFrequency "natural_frequency" Frequency None SmallSignal "Natural frequency", "Magnitude of the least damped complex pole pair.";
-    Q "q" Number None SmallSignal "Q", "Quality factor of the least damped complex pole pair.";
+    NaturalFrequency "natural_frequency" Frequency None SmallSignal "Natural frequency", "Magnitude of the least damped complex pole pair; of a filter, of its own pair.";
+    Q "q" Number None SmallSignal "Q", "Quality factor of the least damped complex pole pair; of a filter, of its own pair.";
     InputImpedance "input_impedance" Resistance None SmallSignal "Input impedance at the signal", "Magnitude of the impedance that the source sees behind its own impedance, at the signal frequency or at DC where none is stated.";
     OutputImpedance "output_impedance" Resistance None SmallSignal "Output impedance at the signal", "Magnitude of the impedance at the output terminal with the load removed, at the signal frequency or at DC where none is stated.";
     OutputOffset "output_offset" Voltage None Dc "Output offset", "Worst-case sum of the DC errors at the output with the signal at its DC value.";

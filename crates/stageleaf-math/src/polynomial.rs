@@ -109,10 +109,13 @@ impl Polynomial {
         let coefficients = &self.0[first..=last];
         let degree = coefficients.len() - 1;
         let mut roots = match guesses {
-            Some(g) if g.len() == first + degree => g[first..].to_vec(),
+            Some(g) if g.len() == first + degree => unsettled(&g[first..]),
             _ => starting_points(coefficients),
         };
-        aberth(coefficients, &mut roots);
+        if !aberth(coefficients, &mut roots) && guesses.is_some() {
+            roots = starting_points(coefficients);
+            aberth(coefficients, &mut roots);
+        }
         pair_up(&mut roots);
         let mut all = vec![Complex64::new(0.0, 0.0); first];
         all.append(&mut roots);
@@ -156,6 +159,21 @@ fn span(a: usize, b: usize) -> f64 {
     (b - a) as f64
 }
 
+/// A neighbour's roots as guesses, each turned a little its own way: from exactly real or exactly conjugate points the iteration cannot
+/// leave the axis, and a pair that has become complex would never be found.
+fn unsettled(roots: &[Complex64]) -> Vec<Complex64> {
+    // By the golden angle, so that no two are turned alike.
+    let mut turn = Complex64::new(0.764_842_187_284_488_5, 0.644_217_687_237_691);
+    let step = Complex64::new(-0.737_368_878_078_32, 0.675_490_294_261_524);
+    roots
+        .iter()
+        .map(|root| {
+            turn *= step;
+            root * (turn * 1e-4 + 1.0)
+        })
+        .collect()
+}
+
 /// Newton's correction `p/p'` at `z`, without overflow.
 fn newton(coefficients: &[f64], z: Complex64) -> Complex64 {
     let zero = Complex64::new(0.0, 0.0);
@@ -181,7 +199,11 @@ fn newton(coefficients: &[f64], z: Complex64) -> Complex64 {
     }
 }
 
-fn aberth(coefficients: &[f64], roots: &mut [Complex64]) {
+/// Moves all roots to their places; whether each came to rest.
+fn aberth(coefficients: &[f64], roots: &mut [Complex64]) -> bool {
+    /// A step that is this small against its root no longer matters to any figure: a cluster of roots gets no further.
+    const AT_REST: f64 = 1e-7;
+    let mut last = vec![f64::INFINITY; roots.len()];
     let n = roots.len();
     let mut done = vec![false; n];
     for _ in 0..200 {
@@ -207,6 +229,7 @@ fn aberth(coefficients: &[f64], roots: &mut [Complex64]) {
                 continue;
             }
             roots[i] -= correction;
+            last[i] = correction.norm_sqr() / roots[i].norm_sqr();
             if correction.norm_sqr() <= 1e-30 * roots[i].norm_sqr() {
                 done[i] = true;
             } else {
@@ -217,6 +240,7 @@ fn aberth(coefficients: &[f64], roots: &mut [Complex64]) {
             break;
         }
     }
+    last.iter().all(|step| *step <= AT_REST * AT_REST)
 }
 
 /// Real coefficients: roots are real or come in conjugate pairs. Orders them by magnitude.
@@ -276,6 +300,36 @@ mod tests {
         let roots = polynomial(&[5.0, 2.0, 1.0]).roots(None);
         assert!((roots[0] - Complex64::new(-1.0, -2.0)).norm() < 1e-14, "{}", roots[0]);
         assert!((roots[1] - Complex64::new(-1.0, 2.0)).norm() < 1e-14, "{}", roots[1]);
+    }
+
+    /// x² + 2x + 1.1 has the roots −1 ± j·√0.1; its neighbour x² + 2x + 0.99 has −0.9 and −1.1.
+    #[test]
+    fn a_pair_that_became_complex_is_found_from_real_guesses() {
+        let guesses = [Complex64::new(-0.9, 0.0), Complex64::new(-1.1, 0.0)];
+        let roots = polynomial(&[1.1, 2.0, 1.0]).roots(Some(&guesses));
+        assert!((roots[1] - Complex64::new(-1.0, libm::sqrt(0.1))).norm() < 1e-14, "{roots:?}");
+        let back = [Complex64::new(-1.0, -0.3), Complex64::new(-1.0, 0.3)];
+        let roots = polynomial(&[0.99, 2.0, 1.0]).roots(Some(&back));
+        assert!((roots[0].re + 0.9).abs() < 1e-13 && roots[0].im == 0.0, "{roots:?}");
+    }
+
+    /// Perturbed cubics: warm starts must find what cold ones find, and never a root on the wrong side.
+    #[test]
+    fn warm_starts_find_what_cold_starts_find() {
+        let mut seed = 1u64;
+        let mut unit = || {
+            seed = seed.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
+            f64::from(u32::try_from(seed >> 33).unwrap_or(0)) / f64::from(1u32 << 31)
+        };
+        for _ in 0..2000 {
+            let near = [1.0, 3.0 * (0.5 + unit()), 3.0 * (0.5 + unit()), 1.0];
+            let here = near.map(|c| c * (0.6 + 0.8 * unit()));
+            let guesses = polynomial(&near).roots(None);
+            let (warm, cold) = (polynomial(&here).roots(Some(&guesses)), polynomial(&here).roots(None));
+            for (a, b) in warm.iter().zip(&cold) {
+                assert!((a - b).norm() <= 1e-6 * b.norm(), "{here:?}: {warm:?} and {cold:?}");
+            }
+        }
     }
 
     #[test]

@@ -179,11 +179,11 @@ pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
             margin
         }
         F::SensitivityPeak => margins::margins(solution).sensitivity_peak,
-        F::NaturalFrequency => match response::least_damped(solution) {
+        F::NaturalFrequency => match response::own_pair(solution) {
             Some((frequency, _)) => frequency,
             None => return Outcome::DoesNotApply("all poles are real"),
         },
-        F::Q => match response::least_damped(solution) {
+        F::Q => match response::own_pair(solution) {
             Some((_, q)) => q,
             None => return Outcome::DoesNotApply("all poles are real"),
         },

@@ -7,6 +7,7 @@ use num_complex::Complex64;
 
 use super::search;
 use crate::{
+    figure::Figure,
     kind::Reference,
     model::Probe,
     parameters::touch,
@@ -117,6 +118,26 @@ pub fn edges(solution: &Solution<'_>) -> Edges {
         }
         Edges { bandwidth, low_cutoff, peaking }
     })
+}
+
+/// Natural frequency in Hz and Q: of a filter's own pair of poles, which is the one nearest to what its closed form says (two real poles
+/// count as a pair with a Q below ½); of any other kind, of the least damped complex pair.
+pub fn own_pair(solution: &Solution<'_>) -> Option<(f64, f64)> {
+    let stage = solution.model.stage;
+    let ideal = (stage.kind.spec().working)(stage).into_iter().find(|w| w.query.figure == Figure::NaturalFrequency);
+    let Some(wanted) = ideal.map(|w| w.handbook).filter(|f| *f > 0.0 && f.is_finite()) else { return least_damped(solution) };
+    let wanted = solution.scaled(wanted);
+    let poles = &solution.roots().poles;
+    let far = |size: f64| libm::log(size / wanted).abs();
+    let complex = poles.iter().filter(|p| p.im > 0.0).map(|p| (magnitude(*p), magnitude(*p) / (2.0 * p.re.abs())));
+    let mut real: Vec<f64> = poles.iter().filter(|p| p.im.abs() <= 0.0 && p.re < 0.0).map(|p| -p.re).collect();
+    real.sort_by(|a, b| far(*a).total_cmp(&far(*b)));
+    let two_real = match real[..] {
+        [a, b, ..] => Some((libm::sqrt(a * b), libm::sqrt(a * b) / (a + b))),
+        _ => None,
+    };
+    let (size, q) = complex.chain(two_real).min_by(|a, b| far(a.0).total_cmp(&far(b.0)))?;
+    Some((solution.hertz(size), q))
 }
 
 /// Natural frequency in Hz and Q of the least damped complex pair of closed-loop poles.

@@ -23,6 +23,7 @@ use crate::{
     limit::Basis,
     model::Model,
     parameters::{Entry, Grade, touch},
+    part::PartFigure,
     report::{Coordinate, Outcome, Parameter},
     solution::{Roots, Solution},
 };
@@ -249,6 +250,12 @@ impl<'m> Spread<'m> {
             let mut ends: Vec<Move> = low.ends.iter().copied().filter(|(s, _)| !slots.contains(s)).collect();
             let mut effects = Vec::new();
             for &slot in &slots {
+                // Less rejection of the amplifier's own makes the whole worse, whatever the resistors do.
+                let parameter = self.model.parameters.entries[slot].parameter;
+                if matches!(parameter, Parameter::Part(PartFigure::Cmrr) | Parameter::PartOf(_, PartFigure::Cmrr)) {
+                    ends.push((slot, Place::Low));
+                    continue;
+                }
                 let mut best = (0.0, None);
                 for place in [Place::Low, Place::High] {
                     let effect = signed(&self.moved((slot, place))) - centre;
