@@ -203,7 +203,7 @@ pub fn report(stage: &Stage, queries: &[Query]) -> Report {
 pub fn with_least_damped(stage: &Stage, mut report: Report) -> Report {
     let is_filter = (stage.kind.spec().working)(stage).iter().any(|w| w.query.figure == Figure::NaturalFrequency);
     if is_filter {
-        let pair = solved(stage, |solution| least_damped(solution));
+        let pair = solved(stage, least_damped);
         for row in &mut report.limits {
             let of_pair = match row.limit.query.figure {
                 Figure::NaturalFrequency => pair.map(|p| p.0),
