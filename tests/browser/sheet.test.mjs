@@ -419,6 +419,23 @@ for (const scheme of ["light", "dark"]) {
   });
 }
 
+test("on a phone the table of all figures says that it scrolls, and does", async () => {
+  for (const name of [first, "sheet.html"]) {
+    const opened = await page(name);
+    await opened.locator("details[data-section=figures] > summary").click();
+    const hint = opened.locator("details[data-section=figures] .sideways");
+    assert.equal(await hint.isHidden(), true, `${name} is wide enough`);
+    await opened.setViewportSize({ width: 360, height: 740 });
+    await frame(opened);
+    assert.equal(await hint.isHidden(), false, name);
+    const [wide, seen, nominal] = await opened.locator("details[data-section=figures] .scroll").evaluate((box) =>
+      [box.scrollWidth, box.clientWidth, box.querySelector("tbody td").getBoundingClientRect().right - box.getBoundingClientRect().left]);
+    assert.ok(wide > seen, `${name}: ${wide} of ${seen}`);
+    assert.ok(nominal <= seen, `${name}: nominal values are seen without scrolling: ${nominal} of ${seen}`);
+    await opened.close();
+  }
+});
+
 test("phone width and print are looked at", async () => {
   const opened = await page();
   await opened.setViewportSize({ width: 360, height: 740 });

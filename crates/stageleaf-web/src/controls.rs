@@ -92,6 +92,10 @@ impl Controls {
             // First in the bar, which takes elements.
             let _ = self.bar.insert_before(&line, self.bar.first_child().as_ref());
         }
+        // No note is there to go back to.
+        if let Ok(Some(button)) = self.bar.query_selector("[data-act=reset]") {
+            button.set_text_content(Some("Back to the start"));
+        }
     }
 
     /// Adds a choice, for a sheet that is not a note's.
