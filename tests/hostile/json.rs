@@ -112,3 +112,23 @@ fn errors_and_stale_quotes_have_their_place() {
     ];
     assert_eq!(places, wanted);
 }
+
+#[test]
+fn a_stage_that_cannot_work_as_stated_is_no_success_whatever_its_limits_say() {
+    let bench = Bench::new("json-cautions");
+    // By hand: a peak of 0.1 V leaves 0.9 V at Rf, (0.9 V)²/(2·9 kΩ) = 45 µW, beyond a rating of 1 µW.
+    bench.write("note.md", fenced(&block("Hot \u{202E}tub", &[("Rf = \"9k\"", "Rf = \"9k 0.000001W\"")])));
+    let said = bench.run(&["check", "note.md", "--format", "json"]);
+    assert_eq!(said.code, Some(1), "{}", said.out);
+    let document = document(&said);
+    let stage = &document["stages"][0];
+    assert_eq!(stage["limits"][0]["verdict"], "holds");
+    let cautions = stage["cautions"].as_array().expect("a list");
+    let hot = cautions.iter().find(|c| c["kind"] == "resistor_hot").unwrap_or_else(|| panic!("{cautions:?}"));
+    let words = hot["text"].as_str().expect("words");
+    assert!(words.starts_with("Rf "), "{words}");
+    let said = bench.run(&["check", "note.md"]);
+    assert_eq!(said.code, Some(1), "{}", said.out);
+    assert!(said.out.contains(words) && said.out.contains("; 1 stage cannot work as stated"), "{}", said.out);
+    assert!(said.out.contains("Hot \u{FFFD}tub") && !said.out.contains('\u{202E}'), "{}", said.out);
+}

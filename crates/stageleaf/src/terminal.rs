@@ -112,8 +112,13 @@ pub fn paint(text: &str, ink: Ink, colour: bool) -> String {
     format!("\u{1b}[{code}m{text}\u{1b}[0m")
 }
 
-/// `text` without control characters, which would move a terminal's cursor or change its colours.
+/// `text` without control characters, which would move a terminal's cursor or change its colours, and without those that
+/// reorder or hide what stands beside them (Unicode's bidirectional and invisible format characters, UAX #9).
 #[must_use]
 pub fn plain(text: &str) -> String {
-    text.chars().map(|c| if c.is_control() && c != '\n' { '\u{FFFD}' } else { c }).collect()
+    let masked = |c: char| {
+        (c.is_control() && c != '\n')
+            || matches!(c, '\u{061C}' | '\u{200B}'..='\u{200F}' | '\u{2028}'..='\u{202E}' | '\u{2060}'..='\u{206F}' | '\u{FEFF}')
+    };
+    text.chars().map(|c| if masked(c) { '\u{FFFD}' } else { c }).collect()
 }

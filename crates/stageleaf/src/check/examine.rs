@@ -14,7 +14,7 @@ use stageleaf_math::{
     figure::Query,
     limit::{Bound, Limit, Thin},
     part::Part,
-    report::{FigureRow, LimitRow, Outcome, Report},
+    report::{Caution, FigureRow, LimitRow, Outcome, Report},
     stage::Stage,
 };
 use stageleaf_note::{Block, Problem, Quote, Shelf, ShelfPart, quote_agrees, quote_for, read_note, slug};
@@ -72,10 +72,27 @@ impl ExaminedStage {
         &self.report.figures
     }
 
+    /// Whether a caution says that the stage, as stated, cannot work or would be damaged, whatever its limits ask.
+    #[must_use]
+    pub fn cannot_work(&self) -> bool {
+        self.report.cautions.iter().any(forbids)
+    }
+
     fn outcome(&self, query: Query) -> Option<&Outcome> {
         let row = self.report.figures.iter().find(|row| row.query == query).map(|row| &row.nominal);
         row.or_else(|| self.report.limits.iter().find(|row| row.limit.query == query).map(|row| &row.nominal))
     }
+}
+
+const fn forbids(caution: &Caution) -> bool {
+    matches!(
+        caution,
+        Caution::Oscillates
+            | Caution::SupplySpan { .. }
+            | Caution::JunctionHot { .. }
+            | Caution::ResistorHot { .. }
+            | Caution::OffsetBeyondSupply { .. }
+    )
 }
 
 /// A quote and what its figure is now.

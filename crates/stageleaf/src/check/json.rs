@@ -1,15 +1,16 @@
 //! `check --format json`, version 1.
 //!
-//! `{"version":1,"stages":[{"file","line","name","kind","figures":{id:…},"limits":[…]}],"errors":[{"file","line","column","message"}]}`.
+//! `{"version":1,"stages":[{"file","line","name","kind","figures":{id:…},"limits":[…],"cautions":[…]}],"errors":[{"file","line","column","message"}]}`.
 //! SI units and full precision: a number read back has the same bits. JSON has no infinity: there a number is `null` with
 //! `"unlimited": true` beside it. A figure that is not a number is `{"undetermined": "why"}`, `{"does_not_apply": "why"}`,
 //! `{"oscillates": true}` or `{"no_dc_path": true}`.
+//! A caution is `{"kind","text"}`: its kind is for programs, its text is what the text form prints.
 //! An error's `sort` says what it is: `input`, `stale` (the prose quotes a number that is no longer the figure's) or `bug`.
 
 use serde::{Serialize, Serializer, ser::SerializeMap};
 use stageleaf_math::{
     dimension::Dimension,
-    report::{FigureRow, LimitRow, Outcome},
+    report::{Caution, FigureRow, LimitRow, Outcome},
 };
 use stageleaf_note::{query_text, words};
 
@@ -63,6 +64,7 @@ struct Stage {
     kind: &'static str,
     figures: Figures,
     limits: Vec<Judged>,
+    cautions: Vec<Warned>,
 }
 
 impl Stage {
@@ -75,7 +77,34 @@ impl Stage {
             kind: stage.block.stage.kind.id(),
             figures: Figures(stage.figures().iter().map(|row| (query_text(row.query), Figure::of(row, part))).collect()),
             limits: stage.limits_in_words().map(|(row, words)| Judged::of(row, words, stage, part)).collect(),
+            cautions: stage.report.cautions.iter().map(Warned::of).collect(),
         }
+    }
+}
+
+/// A caution.
+#[derive(Debug, Serialize)]
+struct Warned {
+    kind: &'static str,
+    text: String,
+}
+
+impl Warned {
+    fn of(caution: &Caution) -> Self {
+        let kind = match caution {
+            Caution::BelowStableGain { .. } => "below_stable_gain",
+            Caution::SupplySpan { .. } => "supply_span",
+            Caution::JunctionHot { .. } => "junction_hot",
+            Caution::ResistorHot { .. } => "resistor_hot",
+            Caution::HighVoltage { .. } => "high_voltage",
+            Caution::PhaseReversal => "phase_reversal",
+            Caution::TakenAsIdeal(_) => "taken_as_ideal",
+            Caution::Oscillates => "oscillates",
+            Caution::Exceeded { .. } => "exceeded",
+            Caution::OffsetBeyondSupply { .. } => "offset_beyond_supply",
+            Caution::TakenAsExact(_) => "taken_as_exact",
+        };
+        Self { kind, text: words::caution_text(caution) }
     }
 }
 

@@ -50,7 +50,7 @@ pub struct Options {
 pub enum Ending {
     /// Every limit holds (or is thin) and every quote agrees.
     Good = 0,
-    /// A limit breaks or is undetermined, or the prose quotes a stale number.
+    /// A limit breaks or is undetermined, a stage cannot work as stated, or the prose quotes a stale number.
     Broken = 1,
     /// Something could not be read.
     BadInput = 2,
@@ -63,6 +63,8 @@ pub struct Counts {
     pub notes: usize,
     /// Stages judged.
     pub stages: usize,
+    /// Stages that cannot work as stated, whatever their limits ask.
+    pub unworkable: usize,
     /// Limits that hold.
     pub holds: usize,
     /// Limits that hold, barely.
@@ -89,6 +91,7 @@ impl Counts {
     fn add(&mut self, note: &Examined) {
         self.notes += 1;
         self.stages += note.stages.len();
+        self.unworkable += note.stages.iter().filter(|stage| stage.cannot_work()).count();
         for row in note.stages.iter().flat_map(ExaminedStage::limits) {
             *match row.verdict {
                 Verdict::Holds => &mut self.holds,
@@ -108,7 +111,7 @@ impl Counts {
     pub const fn ending(&self) -> Ending {
         if self.faults > 0 {
             Ending::BadInput
-        } else if self.breaks + self.undetermined + self.stale > 0 {
+        } else if self.breaks + self.undetermined + self.stale + self.unworkable > 0 {
             Ending::Broken
         } else {
             Ending::Good

@@ -219,6 +219,10 @@ pub fn closing(counts: &Counts, colour: bool) -> String {
     if !parts.is_empty() {
         write!(text, ": {}", parts.join(", ")).expect("a string takes all");
     }
+    if counts.unworkable > 0 {
+        let words = format!("{} cannot work as stated", many(counts.unworkable, "stage"));
+        write!(text, "; {}", paint(&words, Ink::Bad, colour)).expect("a string takes all");
+    }
     if counts.quotes > 0 {
         write!(text, "; {}", many(counts.quotes, "quote")).expect("a string takes all");
         if counts.rewritten > 0 {
