@@ -132,3 +132,16 @@ fn a_stage_that_cannot_work_as_stated_is_no_success_whatever_its_limits_say() {
     assert!(said.out.contains(words) && said.out.contains("; 1 stage cannot work as stated"), "{}", said.out);
     assert!(said.out.contains("Hot \u{FFFD}tub") && !said.out.contains('\u{202E}'), "{}", said.out);
 }
+
+#[test]
+fn a_name_in_two_notes_is_told_with_both_places_and_a_reported_figure_has_no_worst() {
+    let bench = Bench::new("json-names");
+    let text = fenced(&block("Same", &[("\"at least 100 kHz\"", "\"report\""), ("\"9k\"", "\"9k 1%\"")]));
+    bench.write("a.md", text.clone());
+    bench.write("b.md", text);
+    let said = bench.run(&["check", "a.md", "b.md"]);
+    assert_eq!(said.code, Some(2), "{}", said.out);
+    assert!(said.err.starts_with("b.md:3:9: a stage called “Same” stands in a.md:2 already\n"), "{}", said.err);
+    let row = said.out.lines().find(|l| l.contains("bandwidth")).expect("a row");
+    assert!(row.contains("now ") && row.contains(" to ") && !row.contains("worst"), "{row}");
+}

@@ -181,6 +181,12 @@ pub fn examine_with(bytes: &[u8], file: &str, team: &Team, analyse: &dyn Fn(&Sta
     Examined { file: file.to_owned(), stages, quotes, faults }
 }
 
+/// The stage's name is another note's already.
+pub(super) fn name_taken(note: &[u8], block: &Block, file: &str, line: usize) -> Fault {
+    let message = format!("a stage called “{}” stands in {file}:{line} already", block.stage.name);
+    Fault::Text(Box::new(at_field(note, block, "name", message).allowed("each name once in all notes of a run")))
+}
+
 /// The shelf with an empty part for each file that could not be read: a block that names one has the rest of its mistakes told,
 /// instead of hearing that there is no such part.
 fn with_lost_parts(team: &Team) -> Cow<'_, Shelf> {

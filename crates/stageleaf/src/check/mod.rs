@@ -5,7 +5,7 @@ mod json;
 mod rewrite;
 mod text;
 
-use std::{fs, path::PathBuf};
+use std::{collections::BTreeMap, fs, path::PathBuf};
 
 use clap::{Args, ValueEnum};
 
@@ -132,6 +132,7 @@ pub fn run(options: &Options, terminal: &mut Terminal) -> Ending {
         }
     };
 
+    let mut names: BTreeMap<String, (String, usize)> = BTreeMap::new();
     let found = walk::notes(&options.paths);
     tell(&found.faults, &mut counts, terminal, &mut report);
     for (index, path) in found.notes.iter().enumerate() {
@@ -151,6 +152,13 @@ pub fn run(options: &Options, terminal: &mut Terminal) -> Ending {
             }
         };
         let mut note = examine(&bytes, &file, &team);
+        for stage in &note.stages {
+            let (earlier, line) =
+                names.entry(stageleaf_note::slug(&stage.block.stage.name)).or_insert_with(|| (file.clone(), stage.block.line));
+            if *earlier != file {
+                note.faults.push(examine::name_taken(&bytes, &stage.block, earlier, *line));
+            }
+        }
         if options.rewrite {
             match rewrite::rewrite(path, &bytes, &mut note) {
                 Ok(count) => counts.rewritten += count,

@@ -84,14 +84,15 @@ impl Row {
             Verdict::Reported => Ink::Quiet,
         };
         let mut below = Vec::new();
-        let worst = match &row.worst {
+        let shown = if row.verdict == Verdict::Reported { &row.nominal } else { &row.worst };
+        let worst = match shown {
             Outcome::Undetermined(_) | Outcome::DoesNotApply(_) => {
-                below.extend(outcome_words(&row.worst, dimension, &stage.part_file).split("; ").map(plain));
+                below.extend(outcome_words(shown, dimension, &stage.part_file).split("; ").map(plain));
                 "–".to_owned()
             }
             outcome => outcome_words(outcome, dimension, &stage.part_file),
         };
-        if !row.corner.is_empty() {
+        if row.verdict != Verdict::Reported && !row.corner.is_empty() {
             let last = row.corner.len() - 1;
             let mut pieces: Vec<String> = row
                 .corner
@@ -107,19 +108,31 @@ impl Row {
             }
             below.extend(wrapped(pieces));
         }
-        let basis = row.basis.map_or("", stageleaf_math::limit::Basis::word);
+        let basis = if row.verdict == Verdict::Undetermined { None } else { row.basis };
+        let basis = basis.map_or("", stageleaf_math::limit::Basis::word);
         Self {
             ink,
             cells: [
                 row.verdict.word().to_owned(),
                 query_text(row.limit.query),
                 plain(limit),
-                if row.verdict == Verdict::Reported { worst } else { format!("worst {worst}") },
+                if row.verdict == Verdict::Reported { now_text(&worst, row) } else { format!("worst {worst}") },
                 margin_text(row).map(|m| format!("margin {m}")).unwrap_or_default(),
                 basis.to_owned(),
             ],
             below,
         }
+    }
+}
+
+/// "now 19.30, 17.90 to 20.70": a reported figure has no worst side.
+fn now_text(now: &str, row: &LimitRow) -> String {
+    match row.range {
+        Some((low, high)) if low < high => {
+            let text = |value| quantity_text(value, row.dimension, DIGITS);
+            format!("now {now}, {} to {}", text(low), text(high))
+        }
+        _ => format!("now {now}"),
     }
 }
 
