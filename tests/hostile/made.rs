@@ -54,6 +54,15 @@ fn a_part_file_that_is_no_text_is_told_and_the_other_parts_stay() {
 }
 
 #[test]
+fn a_file_that_is_no_note_is_told() {
+    let bench = Bench::new("no-note");
+    bench.write("table.json", "{}");
+    let said = bench.run(&["check", "table.json"]);
+    assert_eq!(said.code, Some(2));
+    assert!(said.err.starts_with("table.json: this file is not a note\n") && said.err.contains("ends in `.md`"), "{}", said.err);
+}
+
+#[test]
 fn an_empty_folder_is_told() {
     let bench = Bench::new("empty");
     fs::create_dir_all(bench.0.join("notes/target")).expect("a folder");

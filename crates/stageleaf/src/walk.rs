@@ -16,7 +16,7 @@ const LEFT_OUT: [&str; 2] = ["target", "node_modules"];
 pub struct Found {
     /// Notes, each once, however many of the paths lead to it.
     pub notes: Vec<PathBuf>,
-    /// Paths that are missing or unreadable, and folders without a note.
+    /// Paths that are missing or unreadable, files that are no notes, and folders without a note.
     pub faults: Vec<Fault>,
 }
 
@@ -38,6 +38,12 @@ pub fn notes(paths: &[PathBuf]) -> Found {
                     });
                 }
             }
+            Ok(meta) if meta.is_file() && !is_note(path) => search.found.faults.push(Fault::Path {
+                path: show(path),
+                message: "this file is not a note".to_owned(),
+                allowed: Some("a note is a file whose name ends in `.md`".to_owned()),
+                attempt: None,
+            }),
             Ok(_) => search.note(path),
             Err(error) => search.found.faults.push(unreadable(path, &error)),
         }
