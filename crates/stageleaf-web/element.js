@@ -1,5 +1,5 @@
 // The custom element: it carries events into the wasm and brings the static sheet back when anything fails.
-// Its surroundings (see the site builder) define stageleaf_wasm, STAGELEAF_WASM (hex) and STAGELEAF_STYLE.
+// Its surroundings (see the site builder) define stageleaf_wasm, STAGELEAF_WASM (a character for each byte) and STAGELEAF_STYLE.
 if (!globalThis.customElements || customElements.get("stageleaf-sheet")) return;
 
 const EVENTS = ["keydown", "change", "click", "pointermove", "pointerleave", "focusin", "toggle"];
@@ -10,8 +10,8 @@ let started;
 function start() {
   if (started === undefined) {
     try {
-      const bytes = new Uint8Array(STAGELEAF_WASM.length / 2);
-      for (let i = 0; i < bytes.length; i++) bytes[i] = parseInt(STAGELEAF_WASM.substr(2 * i, 2), 16);
+      const bytes = new Uint8Array(STAGELEAF_WASM.length); // each takes the low eight bits
+      for (let i = 0; i < bytes.length; i++) bytes[i] = STAGELEAF_WASM.charCodeAt(i) ^ 127;
       stageleaf_wasm.initSync({ module: bytes });
       started = true;
     } catch {
