@@ -25,6 +25,7 @@ pub mod dimension;
 pub mod error;
 pub mod figure;
 pub mod handbook;
+mod kept;
 pub mod kind;
 pub mod limit;
 pub mod model;

@@ -1,10 +1,11 @@
 //! A stage compiled: its network, its expansions, its parameter table. One model serves every build of the stage.
 
-use alloc::{collections::BTreeMap, rc::Rc, vec, vec::Vec};
+use alloc::{rc::Rc, vec, vec::Vec};
 use core::cell::{OnceCell, RefCell};
 
 use crate::{
     analysis::second_pole,
+    kept::Kept,
     kind::Drives,
     network::{
         Builder, Drive, Law, Network, Node, Without,
@@ -26,7 +27,7 @@ pub struct Expansion {
 
 /// Expansions compiled so far, by topology: an edit of a value compiles nothing anew.
 #[derive(Clone, Debug, Default)]
-pub struct Plans(Rc<RefCell<BTreeMap<Topology, Rc<Plan>>>>);
+pub struct Plans(Rc<RefCell<Kept<Topology, Rc<Plan>>>>);
 
 /// All that a plan depends on.
 type Topology = (usize, Vec<(Column, Powers)>, Shape);

@@ -1,6 +1,6 @@
 //! TOML with the place of every key and value, and the problems found on the way.
 
-use std::{borrow::Cow, collections::BTreeSet, ops::Range};
+use std::{borrow::Cow, ops::Range};
 
 use toml::{
     Spanned,
@@ -49,8 +49,8 @@ pub struct Reader<'a> {
     pub fields: Vec<Field>,
     problems: Vec<Problem>,
     unlisted: usize,
-    /// Lines (of the text) that TOML could not read: what is missing may stand there.
-    broken: BTreeSet<usize>,
+    /// Lines (of the text, in order) that TOML could not read: what is missing may stand there.
+    broken: Vec<usize>,
 }
 
 /// A table's keys in the order of the text.
@@ -63,7 +63,7 @@ pub fn entries<'t>(table: &'t DeTable<'_>) -> Vec<Entry<'t>> {
 
 impl<'a> Reader<'a> {
     pub fn new(text: &'a str, place: &'a Place) -> Self {
-        Self { text, place, lines: Lines::of(text), fields: Vec::new(), problems: Vec::new(), unlisted: 0, broken: BTreeSet::new() }
+        Self { text, place, lines: Lines::of(text), fields: Vec::new(), problems: Vec::new(), unlisted: 0, broken: Vec::new() }
     }
 
     /// The table of the whole text, as far as it can be read.
@@ -75,7 +75,9 @@ impl<'a> Reader<'a> {
             let line = self.lines.position(span.start).0;
             // What follows on the same line is mostly an echo of the first.
             if line != last_line {
-                self.broken.insert(line);
+                if let Err(at) = self.broken.binary_search(&line) {
+                    self.broken.insert(at, line);
+                }
                 self.syntax(error.message(), span);
             }
             last_line = line;
@@ -112,7 +114,7 @@ impl<'a> Reader<'a> {
 
     pub fn problem(&mut self, range: Range<usize>, message: impl Into<String>, allowed: impl Into<String>, attempt: Option<String>) {
         // A line that TOML could not read has its problem already.
-        if !self.broken.contains(&self.lines.position(range.start).0) {
+        if self.broken.binary_search(&self.lines.position(range.start).0).is_err() {
             self.tell(range, message.into(), allowed.into(), attempt);
         }
     }

@@ -15,11 +15,12 @@
 //! Vertex analysis by signed sensitivities: R. Spence, R. S. Soin, *Tolerance Design of Electronic Circuits*, Addison-Wesley 1988,
 //! from memory.
 
-use alloc::{collections::BTreeMap, rc::Rc, vec::Vec};
+use alloc::{rc::Rc, vec::Vec};
 
 use super::{lacking, touched_by, value};
 use crate::{
     figure::{Figure, Query},
+    kept::Kept,
     limit::Basis,
     model::Model,
     parameters::{Entry, Grade, touch},
@@ -81,11 +82,11 @@ pub struct Spread<'m> {
     /// The nominal build.
     pub nominal: Rc<Solution<'m>>,
     /// Builds by what the network depends on.
-    networks: BTreeMap<Vec<(usize, u64)>, Rc<Solution<'m>>>,
+    networks: Kept<Vec<(usize, u64)>, Rc<Solution<'m>>>,
     near: &'m Roots,
-    moved: BTreeMap<Move, Rc<Solution<'m>>>,
+    moved: Kept<Move, Rc<Solution<'m>>>,
     probes: Vec<Option<Rc<Solution<'m>>>>,
-    corners: BTreeMap<Vec<Move>, Rc<Solution<'m>>>,
+    corners: Kept<Vec<Move>, Rc<Solution<'m>>>,
     known: Vec<(Query, Rc<Extremes>)>,
 }
 
@@ -122,11 +123,11 @@ impl<'m> Spread<'m> {
         Self {
             model,
             nominal: Rc::new(Solution::new(model, model.parameters.nominal(), Some(near))),
-            networks: BTreeMap::new(),
+            networks: Kept::default(),
             near,
-            moved: BTreeMap::new(),
+            moved: Kept::default(),
             probes: (0..=slots).map(|_| None).collect(),
-            corners: BTreeMap::new(),
+            corners: Kept::default(),
             known: Vec::new(),
         }
     }

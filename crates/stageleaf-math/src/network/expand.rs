@@ -15,7 +15,7 @@
 //! Feussner's expansion and the two-graph method: W.-K. Chen, *Applied Graph Theory*, North-Holland, chapters 2 and 4, from
 //! memory. Checked against a dense nodal solution in `tests/outside/`.
 
-use alloc::{collections::BTreeMap, vec, vec::Vec};
+use alloc::{vec, vec::Vec};
 
 use super::MAX_NODES;
 
@@ -220,17 +220,22 @@ impl Plan {
         let mut moves: Vec<Vec<(usize, usize, Which, bool)>> = Vec::new();
         let mut amplifier = 0;
         for (index, (column, _)) in columns.iter().enumerate() {
-            let mut next: BTreeMap<State, usize> = BTreeMap::new();
-            let mut made = Vec::new();
+            let mut made: Vec<State> = Vec::new();
+            // Slots of `made` in the order of what they hold.
+            let mut order: Vec<usize> = Vec::new();
             let mut here = Vec::new();
             let rest = &columns[index + 1..];
             for (from, state) in layers[index].iter().enumerate() {
                 let mut follow = |to: State, which: Which, sign: bool| {
                     if stranded(&to.rows, nodes, rest, true) <= rows_open && stranded(&to.columns, nodes, rest, false) <= columns_open {
-                        let slot = *next.entry(to).or_insert_with(|| {
-                            made.push(to);
-                            made.len() - 1
-                        });
+                        let slot = match order.binary_search_by(|&slot: &usize| made[slot].cmp(&to)) {
+                            Ok(at) => order[at],
+                            Err(at) => {
+                                order.insert(at, made.len());
+                                made.push(to);
+                                made.len() - 1
+                            }
+                        };
                         here.push((from, slot, which, sign));
                     }
                 };
