@@ -1,7 +1,5 @@
 //! A sheet that follows its values: the page's side of it.
 
-use std::collections::BTreeMap;
-
 use stageleaf_math::{Detail, kind::Kind, limit::Verdict};
 use stageleaf_note::{Problem, template::template_for};
 use stageleaf_sheet::{Section, Sheet, problems_markup, render, sections, sections_where};
@@ -31,6 +29,7 @@ const HINT: &str =
 /// A typed value that could not be taken.
 #[derive(Clone, Debug)]
 struct Trouble {
+    path: String,
     typed: String,
     problems: Vec<Problem>,
 }
@@ -56,7 +55,8 @@ pub struct Live {
     controls: Controls,
     model: Model,
     shown: Vec<Section>,
-    troubles: BTreeMap<String, Trouble>,
+    /// In the order of their paths.
+    troubles: Vec<Trouble>,
     notices: Vec<Problem>,
     work: Option<Work>,
     readout: Readout,
@@ -109,7 +109,7 @@ impl Live {
             controls,
             model,
             shown,
-            troubles: BTreeMap::new(),
+            troubles: Vec::new(),
             notices: Vec::new(),
             work: None,
             readout: Readout::default(),
@@ -289,17 +289,17 @@ impl Live {
         let Entered { text, block, .. } = self.entered.take().filter(|entered| entered.path == path).unwrap_or_else(|| self.entered(input));
         let pending = matches!(&self.work, Some(Work::Edit { path: other, .. }) if *other == path);
         let stepped = block != self.model.block().text;
-        if text != input.value() || self.troubles.contains_key(&path) || pending || stepped {
+        if text != input.value() || self.trouble(&path).is_some() || pending || stepped {
             event.stop_propagation();
             input.set_value(&text);
-            self.troubles.remove(&path);
+            self.forget(&path);
             self.work = Some(Work::Restore(block));
         }
     }
 
     fn typed(&mut self, input: &HtmlInputElement) {
         let (path, value) = (path_of(input), input.value());
-        if self.accepted(input).as_deref() == Some(value.as_str()) && !self.troubles.contains_key(&path) {
+        if self.accepted(input).as_deref() == Some(value.as_str()) && self.trouble(&path).is_none() {
             return;
         }
         self.ask(path, value);
@@ -326,13 +326,21 @@ impl Live {
 
     fn edit(&mut self, path: String, value: String) {
         match self.model.edit(&path, value.trim()) {
-            Ok(()) => {
-                self.troubles.remove(&path);
-            }
+            Ok(()) => self.forget(&path),
             Err(problems) => {
-                self.troubles.insert(path, Trouble { typed: value, problems });
+                self.forget(&path);
+                let at = self.troubles.partition_point(|trouble| trouble.path < path);
+                self.troubles.insert(at, Trouble { path, typed: value, problems });
             }
         }
+    }
+
+    fn trouble(&self, path: &str) -> Option<&Trouble> {
+        self.troubles.iter().find(|trouble| trouble.path == path)
+    }
+
+    fn forget(&mut self, path: &str) {
+        self.troubles.retain(|trouble| trouble.path != path);
     }
 
     fn act(&mut self, action: Action) {
@@ -426,7 +434,7 @@ impl Live {
     fn settle(&self) {
         let Ok(inputs) = self.body.query_selector_all("input[data-path]") else { return };
         for input in (0..inputs.length()).filter_map(|index| inputs.item(index)?.dyn_into::<HtmlInputElement>().ok()) {
-            if let Some(trouble) = self.troubles.get(&path_of(&input)) {
+            if let Some(trouble) = self.trouble(&path_of(&input)) {
                 set(&input, "aria-invalid", "true");
                 set(&input, "aria-errormessage", &self.problems_id());
                 if input.value() != trouble.typed {
@@ -456,7 +464,7 @@ impl Live {
     /// The section of problems: what typed values and links were refused, and why.
     fn explain(&self) {
         let Some(section) = self.section(PROBLEMS) else { return };
-        let problems: Vec<Problem> = self.troubles.values().flat_map(|trouble| &trouble.problems).chain(&self.notices).cloned().collect();
+        let problems: Vec<Problem> = self.troubles.iter().flat_map(|trouble| &trouble.problems).chain(&self.notices).cloned().collect();
         section.set_inner_html(&problems_markup(&problems));
         if let Some(list) = section.first_element_child() {
             list.set_id(&self.problems_id());
