@@ -58,6 +58,13 @@ export async function awaken(page) {
 /** Two frames: what an event asked for is done by then. */
 export const frame = (page) => page.evaluate(() => new Promise((done) => requestAnimationFrame(() => requestAnimationFrame(done))));
 
+/** Until nothing moves: the book's side bar slides away for a third of a second after the window has become narrow. */
+export async function still(page) {
+  await frame(page);
+  await page.evaluate(() => Promise.allSettled(document.getAnimations().map((motion) => motion.finished)));
+  await frame(page);
+}
+
 /** Puts a value into a field as a reader does. */
 export async function enter(page, path, value) {
   const input = page.locator(`input[data-path="${path}"]`).first();

@@ -3,7 +3,7 @@ import assert from "node:assert/strict";
 import { readFileSync } from "node:fs";
 import { join } from "node:path";
 import { after, before, test } from "node:test";
-import { awaken, axeSource, book, enter, editedNatively, fileUrl, frame, launch, limits, notes, open, plainDocument, screens, strangers } from "./harness.mjs";
+import { awaken, axeSource, book, enter, editedNatively, fileUrl, frame, launch, limits, notes, open, plainDocument, screens, still, strangers } from "./harness.mjs";
 
 let context;
 before(async () => { context = await launch(); await context.setOffline(true); });
@@ -426,7 +426,7 @@ test("on a phone the table of all figures says that it scrolls, and does", async
     const hint = opened.locator("details[data-section=figures] .sideways");
     assert.equal(await hint.isHidden(), true, `${name} is wide enough`);
     await opened.setViewportSize({ width: 360, height: 740 });
-    await frame(opened);
+    await still(opened);
     assert.equal(await hint.isHidden(), false, name);
     const [wide, seen, nominal] = await opened.locator("details[data-section=figures] .scroll").evaluate((box) =>
       [box.scrollWidth, box.clientWidth, box.querySelector("tbody td").getBoundingClientRect().right - box.getBoundingClientRect().left]);
@@ -439,7 +439,7 @@ test("on a phone the table of all figures says that it scrolls, and does", async
 test("phone width and print are looked at", async () => {
   const opened = await page();
   await opened.setViewportSize({ width: 360, height: 740 });
-  await frame(opened);
+  await still(opened);
   const overflow = await opened.evaluate(() => document.documentElement.scrollWidth - document.documentElement.clientWidth);
   await opened.screenshot({ path: join(screens, "phone.png"), fullPage: true });
   assert.ok(overflow <= 0, `the page is ${overflow} px wider than a phone`);
