@@ -18,3 +18,4 @@ mod places;
 mod setup;
 mod swing;
 mod table;
+mod thermal;

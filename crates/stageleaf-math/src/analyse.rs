@@ -182,7 +182,7 @@ fn limit_row(spread: &mut Spread<'_>, limit: &Limit) -> LimitRow {
         (_, _, Some(margin)) if margin < 0.0 => Verdict::Breaks,
         (_, _, Some(margin)) if margin < thin_below(limit) => Verdict::Thin,
         (_, _, Some(_)) => Verdict::Holds,
-        (Outcome::Oscillates | Outcome::NoDcPath, ..) => Verdict::Breaks,
+        (Outcome::Oscillates | Outcome::NoDcPath | Outcome::NoSteadyTemperature, ..) => Verdict::Breaks,
         _ => Verdict::Undetermined,
     };
     let extreme = extreme.clone();

@@ -6,7 +6,7 @@ use crate::{
     analysis::{self, margins, outcome, spread::Spread, thermal},
     figure::{Figure, Query},
     part::PartFigure,
-    report::{Caution, NoiseOrigin},
+    report::{Caution, NoiseOrigin, Outcome},
 };
 
 /// The extra-low-voltage limit for direct current: 60 V in dry locations (IEC 61140, from memory).
@@ -89,11 +89,12 @@ pub(crate) fn cautions(spread: &mut Spread<'_>) -> Vec<Caution> {
         list.push(Caution::TakenAsExact(exact));
     }
     let junction_max = solution.part(PartFigure::JunctionMax);
-    if let Some(allowed) = junction_max
-        && let Some(junction) = spread.extremes(Query::of(Figure::JunctionTemperature)).high.outcome.value()
-        && junction > allowed
-    {
-        list.push(Caution::JunctionHot { junction, allowed });
+    match (junction_max, &spread.extremes(Query::of(Figure::JunctionTemperature)).high.outcome) {
+        (_, Outcome::NoSteadyTemperature) => list.push(Caution::ThermalRunaway),
+        (Some(allowed), Outcome::Value(junction)) if *junction > allowed => {
+            list.push(Caution::JunctionHot { junction: *junction, allowed });
+        }
+        _ => {}
     }
     list
 }

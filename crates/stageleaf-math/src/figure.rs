@@ -100,8 +100,8 @@ figures! {
     SlewMargin "slew_margin" Number None LargeSignal "Slew margin", "Slew available over slew needed.";
     FullPowerBandwidth "full_power_bandwidth" Frequency None LargeSignal "Full-power bandwidth", "Highest frequency at which the stated output amplitude stays within slew, current and rails.";
     SupplyCurrent "supply_current" Current None Power "Supply current", "Quiescent current plus the mean of what the load draws from the positive supply.";
-    Dissipation "dissipation" Power None Power "Dissipation", "Power turned to heat in the amplifier's package, at the worst amplitude up to the stated signal.";
-    JunctionTemperature "junction_temperature" Temperature None Power "Junction temperature", "Ambient plus dissipation times the thermal resistance.";
+    Dissipation "dissipation" Power None Power "Dissipation", "Power turned to heat in the amplifier's package, at the worst amplitude up to the stated signal and within the output current limit; of several packages the hottest.";
+    JunctionTemperature "junction_temperature" Temperature None Power "Junction temperature", "Ambient plus heat times the thermal resistance, the heat of bias currents that double with temperature included; of several packages the hottest.";
     ResistorDissipation "resistor_dissipation" Power None Power "Resistor dissipation", "Largest power in any one resistor of the stage.";
 }
 

@@ -245,11 +245,11 @@ const fn part_touches(figure: PartFigure) -> u8 {
         | P::CommonModeResistance
         | P::CommonModeCapacitance => touch::ALL,
         P::NoiseVoltage | P::NoiseVoltageCorner | P::NoiseExponent | P::NoiseCurrent | P::NoiseCurrentCorner => touch::NOISE,
-        P::Offset | P::OffsetDrift | P::BiasCurrent | P::BiasDoubling | P::OffsetCurrent | P::Cmrr | P::PsrrPositive | P::PsrrNegative => {
-            touch::DC | touch::SWING
+        P::Offset | P::OffsetDrift | P::OffsetCurrent | P::Cmrr | P::PsrrPositive | P::PsrrNegative => touch::DC | touch::SWING,
+        P::RangeFromNegative | P::RangeFromPositive | P::SlewRise | P::SlewFall => touch::SWING,
+        P::BiasCurrent | P::BiasDoubling | P::CurrentLimit | P::SupplyCurrent | P::JunctionToAmbient => {
+            touch::DC | touch::SWING | touch::POWER
         }
-        P::RangeFromNegative | P::RangeFromPositive | P::SlewRise | P::SlewFall | P::CurrentLimit => touch::SWING,
-        P::SupplyCurrent | P::JunctionToAmbient => touch::DC | touch::SWING | touch::POWER,
         P::SupplySpanMin
         | P::SupplySpanMax
         | P::DifferentialMax

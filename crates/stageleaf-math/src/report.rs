@@ -72,6 +72,8 @@ pub enum Outcome {
     Oscillates,
     /// No DC path: the operating point does not exist.
     NoDcPath,
+    /// No junction temperature up to [`HOTTEST`](crate::analysis::thermal::HOTTEST) is steady: the stage runs away thermally.
+    NoSteadyTemperature,
 }
 
 impl Outcome {
@@ -330,6 +332,8 @@ pub enum Caution {
         /// Allowed, K.
         allowed: f64,
     },
+    /// No junction temperature is steady at the worst case: bias currents that double with temperature, or sheer heat.
+    ThermalRunaway,
     /// A resistor beyond its stated rating.
     ResistorHot {
         /// Which.

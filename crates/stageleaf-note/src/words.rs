@@ -142,10 +142,13 @@ pub fn caution_text(caution: &Caution) -> String {
             trimmed(*allowed, Dimension::Voltage, 3)
         ),
         Caution::JunctionHot { junction, allowed } => format!(
-            "The junction reaches {} at the worst case; the part allows {}.",
+            "The junction reaches {} at the worst case; the part allows {}, and nothing on its data sheet holds above that.",
             format(*junction, Dimension::Temperature, 3),
             trimmed(*allowed, Dimension::Temperature, 3)
         ),
+        Caution::ThermalRunaway => {
+            "No junction temperature below 300 °C is steady at the worst case: what depends on it has no value (thermal runaway).".into()
+        }
         Caution::ResistorHot { component, power, rating } => format!(
             "{component} turns {} to heat at the worst case; its rating is {}.",
             format(*power, Dimension::Power, 3),
@@ -226,6 +229,7 @@ pub fn outcome_text(outcome: &Outcome, d: Dimension, digits: usize) -> String {
         Outcome::DoesNotApply(why) => format!("does not apply: {why}"),
         Outcome::Oscillates => "oscillates".into(),
         Outcome::NoDcPath => "no DC path".into(),
+        Outcome::NoSteadyTemperature => "no steady temperature below 300 °C (thermal runaway)".into(),
     }
 }
 

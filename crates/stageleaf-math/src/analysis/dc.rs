@@ -118,7 +118,7 @@ fn bias_current(solution: &Solution<'_>, amplifier: usize) -> Outcome {
     };
     match solution.part_of(amplifier, PartFigure::BiasDoubling) {
         None => Outcome::Value(bias),
-        Some(step) => match &super::thermal::power(solution).junction {
+        Some(step) => match &super::thermal::power(solution).packages[amplifier].junction {
             Outcome::Value(junction) => Outcome::Value(bias * libm::exp2((junction - DATA_SHEET_TEMPERATURE) / step)),
             other => other.clone(),
         },

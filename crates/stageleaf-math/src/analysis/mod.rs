@@ -214,8 +214,8 @@ pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
         F::SlewMargin => return swing::slew_margin(solution),
         F::FullPowerBandwidth => return swing::full_power_bandwidth(solution),
         F::SupplyCurrent => return thermal::power(solution).supply_current.clone(),
-        F::Dissipation => return thermal::power(solution).dissipation.clone(),
-        F::JunctionTemperature => return thermal::power(solution).junction.clone(),
+        F::Dissipation => return thermal::hottest(solution, |p| &p.dissipation),
+        F::JunctionTemperature => return thermal::hottest(solution, |p| &p.junction),
         F::ResistorDissipation => match thermal::hottest_resistor(solution) {
             Some((_, power)) => power,
             None => return Outcome::DoesNotApply("the stage has no resistor"),

@@ -123,7 +123,7 @@ fn the_engine_in_words() {
     );
     assert_eq!(
         words::caution_text(&Caution::JunctionHot { junction: 433.15, allowed: 423.15 }),
-        "The junction reaches 160 °C at the worst case; the part allows 150 °C."
+        "The junction reaches 160 °C at the worst case; the part allows 150 °C, and nothing on its data sheet holds above that."
     );
     assert_eq!(
         words::caution_text(&Caution::HighVoltage { span: 150.0 }),

@@ -41,11 +41,11 @@ pub fn head(sheet: &Sheet) -> Markup {
         .report
         .cautions
         .iter()
-        .filter(|c| !matches!(c, Caution::TakenAsIdeal(_) | Caution::TakenAsExact(_) | Caution::Oscillates))
+        .filter(|c| !matches!(c, Caution::TakenAsIdeal(_) | Caution::TakenAsExact(_) | Caution::Oscillates | Caution::ThermalRunaway))
         .collect();
     html! {
         p class="title" role="heading" aria-level="2" { (stage.name) }
-        @for caution in sheet.report.cautions.iter().filter(|c| matches!(c, Caution::Oscillates)) {
+        @for caution in sheet.report.cautions.iter().filter(|c| matches!(c, Caution::Oscillates | Caution::ThermalRunaway)) {
             p class="alarm" { span aria-hidden="true" { "✕ " } (words::caution_text(caution)) }
         }
         p class="summary" {

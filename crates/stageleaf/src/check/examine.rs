@@ -88,6 +88,7 @@ const fn forbids(caution: &Caution) -> bool {
     matches!(
         caution,
         Caution::Oscillates
+            | Caution::ThermalRunaway
             | Caution::SupplySpan { .. }
             | Caution::JunctionHot { .. }
             | Caution::ResistorHot { .. }

@@ -95,6 +95,7 @@ impl Warned {
             Caution::BelowStableGain { .. } => "below_stable_gain",
             Caution::SupplySpan { .. } => "supply_span",
             Caution::JunctionHot { .. } => "junction_hot",
+            Caution::ThermalRunaway => "thermal_runaway",
             Caution::ResistorHot { .. } => "resistor_hot",
             Caution::HighVoltage { .. } => "high_voltage",
             Caution::PhaseReversal => "phase_reversal",
@@ -161,6 +162,7 @@ enum Other {
     DoesNotApply(String),
     Oscillates(bool),
     NoDcPath(bool),
+    NoSteadyTemperature(bool),
 }
 
 impl Other {
@@ -169,6 +171,7 @@ impl Other {
             Outcome::DoesNotApply(why) => Self::DoesNotApply((*why).to_owned()),
             Outcome::Oscillates => Self::Oscillates(true),
             Outcome::NoDcPath => Self::NoDcPath(true),
+            Outcome::NoSteadyTemperature => Self::NoSteadyTemperature(true),
             Outcome::Undetermined(_) | Outcome::Value(_) => Self::Undetermined(outcome_words(outcome, dimension, part)),
         }
     }
