@@ -13,6 +13,7 @@ mod ledger;
 mod loops;
 mod noise;
 mod oracle;
+mod oracle_around;
 mod oracle_kinds;
 mod places;
 mod setup;

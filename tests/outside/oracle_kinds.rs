@@ -20,6 +20,7 @@ use crate::{
     budget::budget,
     ledger::{Ledger, Wanted},
     oracle::{Stated, Values, compare_poles},
+    oracle_around::Around,
     setup::{Amplifier, Complete, of_source, outcome, report, solved, stage, with_least_damped},
 };
 
@@ -37,12 +38,12 @@ struct Row {
 
 #[derive(Debug, Deserialize)]
 #[serde(deny_unknown_fields)]
-struct Circuit {
-    id: String,
+pub struct Circuit {
+    pub id: String,
     kind: String,
     components: BTreeMap<String, f64>,
     /// One for all, or one for each.
-    amplifiers: Vec<Stated>,
+    pub amplifiers: Vec<Stated>,
     isolation: String,
     sources: Vec<Option<Driver>>,
     /// Output resistance of the reference.
@@ -51,11 +52,13 @@ struct Circuit {
     board: Values,
     temperature: f64,
     band: [f64; 2],
-    frequencies: Vec<f64>,
+    pub frequencies: Vec<f64>,
     signal_frequency: f64,
     signal_dc: f64,
     /// Offset voltage, bias current, offset current of every amplifier.
     offset: [f64; 3],
+    /// What stands around it, in `oracle_around.json`.
+    pub around: Option<Around>,
 }
 
 #[derive(Debug, Deserialize)]
@@ -179,7 +182,7 @@ impl Circuit {
         part
     }
 
-    fn stage(&self) -> Stage {
+    pub fn stage(&self) -> Stage {
         let kind = Kind::from_id(&self.kind).unwrap_or_else(|| panic!("{}: no kind is called {:?}", self.id, self.kind));
         let mut result = stage(kind, self.part(0))
             // The middle between the rails is the ground, from which the oracle counts the inputs' common mode.

@@ -36,7 +36,7 @@ class Network:
         place("Riso", "pin", "out") or self.wire("pin", "out")
         series("Rsn", "Csn", "pin", "0")
         getattr(self, "lay_" + kind.replace("-", "_"))(place, series, tap)
-        if kind in ("summing", "transimpedance", "charge", "integrator", "differentiator", "multiple-feedback-low-pass", "multiple-feedback-band-pass"):
+        if kind in ("inverting", "summing", "transimpedance", "charge", "integrator", "differentiator", "multiple-feedback-low-pass", "multiple-feedback-band-pass"):
             place("Rp", "p", "0") or self.wire("p", "0")
             if "Rp" in comp:
                 place("Cp", "p", "0")
@@ -95,6 +95,30 @@ class Network:
                 self.res(f"source_resistance_{i}", t, "0", source[name])
 
     # Each kind by its documentation: which component joins what.
+    def input_filter(self, place, to="p"):
+        place("Rser", "t0", to) or self.wire("t0", to)
+        place("Cshunt", to, "0")
+
+    def lay_follower(self, place, series, tap):
+        self.input_filter(place)
+        place("Rf", tap, "n") or self.wire(tap, "n")
+        place("Cf", "pin", "n")
+        series("Rng", "Cng", "p", "n")
+
+    def lay_non_inverting(self, place, series, tap):
+        self.input_filter(place)
+        place("Rg", "n", "0")
+        place("Rf", tap, "n")
+        place("Cf", "pin", "n")
+        series("Rng", "Cng", "p", "n")
+
+    def lay_inverting(self, place, series, tap):
+        self.input_filter(place, "b")
+        place("Rin", "b", "n")
+        place("Rf", tap, "n")
+        place("Cf", "pin", "n")
+        series("Rng", "Cng", "p", "n")
+
     def lay_summing(self, place, series, tap):
         for i in range(self.inputs):
             place(f"Rin{i + 1}", f"t{i}", "n")

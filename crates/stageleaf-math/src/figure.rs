@@ -86,7 +86,7 @@ figures! {
     GainDrift "gain_drift" FractionDrift None Dc "Gain drift", "Largest relative change of gain per kelvin from the components' temperature coefficients.";
     StageCmrr "stage_cmrr" Level None Dc "Common-mode rejection of the stage", "Gain of the difference over gain of the common mode at DC, the amplifiers' own rejection added to the resistors' mismatch.";
     StagePsrr "stage_psrr" Level None Dc "Supply rejection of the stage", "Change of a supply over the change that it makes at the output referred to the input, at DC; the worse of the two rails.";
-    RippleOutput "ripple_output" Voltage None Dc "Supply ripple at the output", "Peak of what the stated ripple of the supplies leaves at the output, both rails added.";
+    RippleOutput "ripple_output" Voltage None Dc "Supply ripple at the output", "Peak of what the stated ripple of the supplies leaves at the output, both rails added; none on a rail that is the stage's ground.";
     OutputNoise "output_noise" Voltage None Noise "Output noise, rms", "Rms noise at the output integrated over the stated band.";
     InputNoise "input_noise" Voltage None Noise "Noise referred to the input, rms", "`output_noise` divided by |gain|.";
     OutputNoisePeakToPeak "output_noise_peak_to_peak" Voltage None Noise "Output noise, peak to peak (6.6 × rms)", "6.6 × `output_noise`: exceeded 0.1 % of the time by Gaussian noise.";

@@ -62,7 +62,7 @@ pub struct Supply {
     pub positive: Span,
     /// Negative rail; 0 V for a single supply.
     pub negative: Span,
-    /// Ripple on either rail, where stated.
+    /// Ripple on each rail but one that is the stage's ground, where stated.
     pub ripple: Option<Ripple>,
 }
 

@@ -77,6 +77,12 @@ pub fn check(stage: &Stage) -> Result<(), Error> {
             return Err(Error::SupplyReversed { positive: supply.positive.low, negative: supply.negative.high });
         }
     }
+    if let Some(ripple) = stage.supply.and_then(|s| s.ripple) {
+        if ripple.peak < 0.0 || !ripple.peak.is_finite() {
+            return Err(Error::Negative { what: "supply.ripple", given: ripple.peak });
+        }
+        positive("supply.ripple_frequency", ripple.frequency)?;
+    }
     if let Some(ambient) = stage.ambient {
         span("ambient.range", ambient.range.low, ambient.range.high)?;
         positive("ambient.range", ambient.range.low)?;

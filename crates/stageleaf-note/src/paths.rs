@@ -6,6 +6,7 @@
 //! | `parts.A2` | kinds with several amplifiers | a part of the shelf |
 //! | `components.Rf` | the kind's components | resistance or capacitance, toleranced |
 //! | `supply.positive`, `supply.negative` | every kind | voltage, a span |
+//! | `supply.ripple`, `supply.ripple_frequency` | every kind | voltage that says `peak` or `peak to peak`; frequency |
 //! | `signal.peak` (or `peak_to_peak`, `rms`, `range`), `signal.dc` | kinds with one signal | V, at a current's or charge's input A or C |
 //! | `signal.frequency`, `signal.waveform`, `signal.crest_factor` | kinds with one signal | frequency, word, number |
 //! | `signal.common_mode` | differential kinds, whose `signal.peak` is that of the difference | voltage, a span |
@@ -60,7 +61,8 @@ pub fn dimension(path: &str, kind: Kind) -> Option<Dimension> {
         ("source", "dark_current") if drive != Drive::Voltage => Some(Dimension::Current),
         ("reference", "voltage") if has_reference(kind) => Some(Dimension::Voltage),
         ("reference", "resistance") if has_reference(kind) => Some(Dimension::Resistance),
-        ("supply", "positive" | "negative") => Some(Dimension::Voltage),
+        ("supply", "positive" | "negative" | "ripple") => Some(Dimension::Voltage),
+        ("supply", "ripple_frequency") => Some(Dimension::Frequency),
         ("load", "resistance") => Some(Dimension::Resistance),
         ("load", "capacitance") | ("board", "inverting_node" | "non_inverting_node" | "across_feedback") => Some(Dimension::Capacitance),
         ("ambient", "range" | "temperature") => Some(Dimension::Temperature),

@@ -2,11 +2,12 @@
 
 use stageleaf_math::{
     dimension::Dimension,
-    stage::{Ambient, Band, Board, Load, Supply, Toleranced},
+    stage::{Ambient, Band, Board, Load, Ripple, Supply, Toleranced},
 };
 
 use crate::{
     parse,
+    problem::quoted,
     reading::{above_zero, not_negative, takes},
     settings::Settings,
     table::{Entry, Reader, entries, shown},
@@ -148,11 +149,13 @@ impl<'a> Table<'a> {
 }
 
 fn supply<'a>(reader: &mut Reader<'a>, entry: &Entry<'a>) -> Option<Supply> {
-    let table = Table::of(reader, entry, &["positive", "negative"]);
+    let table = Table::of(reader, entry, &["positive", "negative", "ripple", "ripple_frequency"]);
     table.required(reader, "positive", "volts against the stage's ground, as `12 V ± 5 %` or `3.0 V to 4.2 V, 3.7 V nominal`");
     table.required(reader, "negative", "volts against the stage's ground, as `-12 V ± 5 %`; `0 V` for a single supply");
     let mut rail = |key| table.read(reader, key, takes(Dimension::Voltage), |t| parse_span(t, Dimension::Voltage));
-    let (positive, negative) = (rail("positive")?, rail("negative")?);
+    let (positive, negative) = (rail("positive"), rail("negative"));
+    let ripple = ripple(reader, &table);
+    let (positive, negative) = (positive?, negative?);
     if positive.low <= negative.high {
         let place = table.find("positive").map_or(table.header.clone(), |e| e.value.span());
         let show = |v| crate::print::trimmed(v, Dimension::Voltage, 4);
@@ -161,8 +164,51 @@ fn supply<'a>(reader: &mut Reader<'a>, entry: &Entry<'a>) -> Option<Supply> {
         reader.problem(place, message, "`positive` above `negative` over their whole ranges", None);
         return None;
     }
-    Some(Supply { positive, negative, ripple: None })
+    Some(Supply { positive, negative, ripple })
 }
+
+/// `ripple` says itself whether it is a peak or peak to peak, since both are in use; it comes with its frequency.
+fn ripple<'a>(reader: &mut Reader<'a>, table: &Table<'a>) -> Option<Ripple> {
+    let peak = table.read(reader, "ripple", takes(Dimension::Voltage), parse_peak);
+    let frequency = table.read(reader, "ripple_frequency", takes(Dimension::Frequency), |t| {
+        let value = parse(t, Dimension::Frequency)?;
+        above_zero(t, value, Dimension::Frequency).map(|()| value)
+    });
+    for (given, missing, allowed) in [
+        ("ripple", "ripple_frequency", "`ripple_frequency`, as `100 Hz`, `300 kHz`"),
+        ("ripple_frequency", "ripple", "`ripple`, as `20 mV peak to peak`"),
+    ] {
+        if let (Some(entry), None) = (table.find(given), table.find(missing)) {
+            reader.missing(entry.key_range(), format!("`{given}` needs `{missing}`, which is not there"), allowed);
+        }
+    }
+    Some(Ripple { peak: peak?, frequency: frequency? })
+}
+
+/// Reads an amplitude that says what it is: `20 mV peak to peak`, `10 mV p-p`, `10 mV peak`. Gives the peak.
+fn parse_peak(text: &str) -> Result<f64, crate::Trouble> {
+    let body = text.trim_end();
+    let words = [("peak to peak", 2.0), ("peak-to-peak", 2.0), ("p-p", 2.0), ("peak", 1.0)];
+    let stated = words.into_iter().find_map(|(word, over)| body.strip_suffix(word).map(|volts| (volts, over)));
+    let volts = stated.map_or(body, |(volts, _)| volts).trim_end();
+    let d = Dimension::Voltage;
+    let value = parse(volts, d).and_then(|value| not_negative(volts, value, d).map(|()| value));
+    let value = value.map_err(|mut trouble| {
+        trouble.allowed = AMPLITUDE.into();
+        trouble
+    })?;
+    match stated {
+        Some((_, over)) => Ok(value / over),
+        None => Err(crate::Trouble {
+            range: 0..text.len(),
+            message: format!("{} does not say whether it is a peak or peak to peak", quoted(text)),
+            allowed: AMPLITUDE.into(),
+            attempt: Some(format!("{volts} peak to peak")),
+        }),
+    }
+}
+
+const AMPLITUDE: &str = "volts with what they count, as `20 mV peak to peak`, `10 mV peak`";
 
 fn band<'a>(reader: &mut Reader<'a>, entry: &Entry<'a>) -> Option<Band> {
     let table = Table::of(reader, entry, &["from", "to"]);

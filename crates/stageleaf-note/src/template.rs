@@ -65,6 +65,8 @@ const TWO_SUPPLIES: Lines = &[
     ("[supply]", ""),
     ("positive = \"12 V ± 5 %\"", "or \"3.0 V to 4.2 V, 3.7 V nominal\""),
     ("negative = \"-12 V ± 5 %\"", "\"0 V\" for a single supply"),
+    ("# ripple = \"20 mV peak to peak\"", "or \"10 mV peak\"; on each rail"),
+    ("# ripple_frequency = \"100 kHz\"", ""),
 ];
 
 const ONE_SUPPLY: Lines = &[
@@ -72,6 +74,8 @@ const ONE_SUPPLY: Lines = &[
     ("[supply]", ""),
     ("positive = \"5 V ± 4 %\"", "or \"3.0 V to 4.2 V, 3.7 V nominal\""),
     ("negative = \"0 V\"", "the stage's ground"),
+    ("# ripple = \"20 mV peak to peak\"", "or \"10 mV peak\"; on each rail"),
+    ("# ripple_frequency = \"100 kHz\"", ""),
 ];
 
 /// Kinds that exist because there is no second supply.

@@ -4,7 +4,8 @@
 //! A common-mode voltage `vcm` at an amplifier's inputs acts as `vcm/CMRR(f)` in series with them, a supply's change as
 //! `v/PSRR(f)`; both rejections fall with one corner, `1/CMRR(f) = (1 + jf/fc)/CMRR(0)`. What they make at the output follows the
 //! transfer from the amplifier's input. Their signs are unknown, so contributions are added as magnitudes: the worst case.
-//! A stage whose bias comes from the supply passes it on through the network too.
+//! A stage whose bias comes from the supply passes it on through the network too. The stated ripple stands on each rail but one that
+//! is the stage's ground.
 //!
 //! # Units
 //! Rejections in V/V; ripple in V, peak.
@@ -64,11 +65,12 @@ pub fn stage_psrr(solution: &Solution<'_>) -> Outcome {
 /// Peak of what the stated ripple leaves at the output.
 #[must_use]
 pub fn ripple_output(solution: &Solution<'_>) -> Outcome {
-    let Some(ripple) = solution.model.stage.supply.and_then(|s| s.ripple) else {
-        return Outcome::Undetermined(vec![Need::Ripple]);
-    };
+    let stated = solution.model.stage.supply.and_then(|s| Some((s, s.ripple?)));
+    let Some((supply, ripple)) = stated else { return Outcome::Undetermined(vec![Need::Ripple]) };
+    let grounded = |rail: crate::stage::Span| rail.low >= 0.0 && rail.high <= 0.0;
+    let rails = [(Rail::Positive, supply.positive), (Rail::Negative, supply.negative)];
     let mut sum = 0.0;
-    for rail in [Rail::Positive, Rail::Negative] {
+    for (rail, _) in rails.into_iter().filter(|(_, volts)| !grounded(*volts)) {
         match passed(solution, rail, ripple.frequency) {
             Ok(passed) => sum += passed * ripple.peak,
             Err(outcome) => return outcome,

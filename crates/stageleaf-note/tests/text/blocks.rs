@@ -105,6 +105,39 @@ fn with(old: &str, new: &str) -> String {
 }
 
 #[test]
+fn ripple_says_what_it_counts() {
+    let ripple = |text: &str| {
+        let block = BLOCK.replace("[components]", &format!("ripple = \"{text}\"\nripple_frequency = \"100 kHz\"\n\n[components]"));
+        read(&block).map(|block| block.stage.supply.unwrap().ripple.unwrap())
+    };
+    for (text, peak) in [("20 mV peak to peak", 0.01), ("20mV p-p", 0.01), ("10 mV peak", 0.01), ("0 V peak-to-peak", 0.0)] {
+        let read = ripple(text).unwrap_or_else(|p| panic!("{}", common::written(&p)));
+        assert_eq!((read.peak, read.frequency), (peak, 1e5), "{text}");
+    }
+    let refused =
+        |text: &str| common::written(&ripple(text).expect_err(text)).lines().next().unwrap().split_once(": ").unwrap().1.to_owned();
+    assert_eq!(refused("20 mV"), "`ripple` takes a voltage; \"20 mV\" does not say whether it is a peak or peak to peak");
+    assert_eq!(refused("20 mΩ peak"), "`ripple` takes a voltage; \"20 mΩ\" is a resistance");
+    assert_eq!(refused("-20 mV peak"), "`ripple` takes a voltage; \"-20 mV\" is below zero");
+    assert_eq!(refused("peak"), "`ripple` takes a voltage; nothing was given");
+}
+
+#[test]
+fn ripple_and_its_frequency_stand_together() {
+    let with = |line: &str| problems(&BLOCK.replace("[components]", &format!("{line}\n\n[components]")));
+    assert_eq!(
+        with("ripple = \"20 mV p-p\""),
+        "notes/a.md:19:1: `ripple` needs `ripple_frequency`, which is not there\n  19 | ripple = \"20 mV p-p\"\n     | ^^^^^^\nallowed: `ripple_frequency`, as `100 Hz`, `300 kHz`"
+    );
+    assert_eq!(
+        with("ripple_frequency = \"100 Hz\""),
+        "notes/a.md:19:1: `ripple_frequency` needs `ripple`, which is not there\n  19 | ripple_frequency = \"100 Hz\"\n     | ^^^^^^^^^^^^^^^^\nallowed: `ripple`, as `20 mV peak to peak`"
+    );
+    let block = read(&BLOCK.replace("[components]", "ripple = \"20 mV p-p\"\nripple_frequency = \"1 kHz\"\n\n[components]")).unwrap();
+    assert_eq!(block.rewrite("supply.ripple", "5 mV peak"), block.text.replace("20 mV p-p", "5 mV peak"));
+}
+
+#[test]
 fn a_component_with_a_wrong_unit() {
     assert_eq!(
         with("Rf = \"91k 1% 50ppm\"", "Rf = \"91k V\""),

@@ -51,7 +51,15 @@ fn fields(stage: &Stage) -> Vec<(String, String)> {
     let several = inputs.len() > 1;
     let mut all = vec![("part".to_owned(), "Part".to_owned())];
     all.extend((1..=spec.amplifiers).map(|a| (format!("parts.A{a}"), format!("Part A{a}"))));
-    all.extend([("supply.positive", "Supply +"), ("supply.negative", "Supply −")].map(|(p, l)| (p.into(), l.into())));
+    all.extend(
+        [
+            ("supply.positive", "Supply +"),
+            ("supply.negative", "Supply −"),
+            ("supply.ripple", "Supply ripple"),
+            ("supply.ripple_frequency", "Ripple frequency"),
+        ]
+        .map(|(p, l)| (p.into(), l.into())),
+    );
     all.extend(SOURCE.map(|(key, label, _)| (format!("source.{key}"), label.into())));
     if several {
         for input in &inputs {
