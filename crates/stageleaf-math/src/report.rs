@@ -26,6 +26,8 @@ pub enum Need {
     Ripple,
     /// The stage's `[signal]`.
     Signal,
+    /// An amplitude under the stage's `[signal]`.
+    SignalAmplitude,
     /// The stage's `[signal] frequency`.
     SignalFrequency,
     /// The stage's `[ambient]`.
@@ -46,6 +48,7 @@ impl Need {
             Self::Supply => "supply",
             Self::Ripple => "supply.ripple",
             Self::Signal => "signal",
+            Self::SignalAmplitude => "signal.peak",
             Self::SignalFrequency => "signal.frequency",
             Self::Ambient => "ambient",
             Self::Band => "band",

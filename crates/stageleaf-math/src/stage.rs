@@ -102,7 +102,7 @@ pub enum Source {
 /// The signal at the source.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Signal {
-    /// Peak amplitude of the alternating part, V.
+    /// Peak amplitude of the alternating part, V; zero where the signal stands still.
     pub peak: f64,
     /// Highest frequency at full amplitude, Hz.
     pub frequency: Option<f64>,

@@ -6,8 +6,8 @@ use stageleaf_math::{
     kind::Kind,
     limit::{Bound, Limit, Thin, Verdict},
     model::Model,
-    part::{Part, PartFigure, Rating},
-    report::Report,
+    part::{Headroom, Part, PartFigure, Rating},
+    report::{Need, Outcome, Report},
     solution::Solution,
     stage::{Ambient, Band, Board, Component, Isolation, Load, Signal, Source, Span, Stage, Supply, Toleranced},
 };
@@ -231,4 +231,69 @@ fn a_tighter_limit_never_gains_margin() {
             assert!(order(pair[1].verdict) <= order(pair[0].verdict), "{kind:?}");
         }
     }
+}
+
+/// A signal that stands still has swing, range and current, and nothing that an amplitude or a frequency would give.
+#[test]
+fn a_signal_that_stands_still_leaves_only_what_moves_undetermined() {
+    for kind in Kind::ALL {
+        let mut stage = stage(*kind, 1.0, 1.0);
+        for (figure, value) in [
+            (PartFigure::SlewRise, 1e6),
+            (PartFigure::SlewFall, 1e6),
+            (PartFigure::CurrentLimit, 0.02),
+            (PartFigure::RangeFromNegative, 1.0),
+            (PartFigure::RangeFromPositive, 1.0),
+        ] {
+            stage.part.state(figure, Rating::typical(value));
+        }
+        stage.signals = vec![Some(Signal { peak: 0.0, frequency: None, dc: 1e-3, crest_factor: std::f64::consts::SQRT_2 })];
+        let report = analyse(&stage).unwrap();
+        let outcome = |figure: Figure| report.figures.iter().find(|row| row.query.figure == figure).unwrap().nominal.clone();
+        for (figure, need) in [
+            (Figure::SlewMargin, Need::SignalAmplitude),
+            (Figure::FullPowerBandwidth, Need::SignalAmplitude),
+            (Figure::Snr, Need::SignalAmplitude),
+            (Figure::SnrBits, Need::SignalAmplitude),
+            (Figure::Snr, Need::SignalFrequency),
+            (Figure::GainAtSignal, Need::SignalFrequency),
+        ] {
+            let told = matches!(outcome(figure), Outcome::Undetermined(needs) if needs.contains(&need));
+            // What has no DC path has no other figure either.
+            assert!(told, "{kind:?}: {figure:?} is {:?}", outcome(figure));
+        }
+        for figure in [Figure::InputRangeMargin, Figure::CurrentMargin] {
+            let outcome = outcome(figure);
+            assert!(matches!(outcome, Outcome::Value(_) | Outcome::NoDcPath | Outcome::Oscillates), "{kind:?}: {figure:?} is {outcome:?}");
+        }
+    }
+}
+
+/// By hand: a follower of an amplifier with an endless gain holds its output at the signal's 2 V, 12 V − 1 V − 2 V from the limit.
+#[test]
+fn a_follower_at_a_steady_voltage_clips_by_hand() {
+    let mut stage = stage(Kind::Follower, 1.0, 1.0);
+    stage.part = Part { poles: Some(vec![]), ..Part::default() };
+    for (figure, value) in [
+        (PartFigure::OpenLoop, 1e15),
+        (PartFigure::Gbw, 1e15),
+        (PartFigure::OutputResistance, 0.0),
+        (PartFigure::DifferentialCapacitance, 0.0),
+        (PartFigure::CommonModeCapacitance, 0.0),
+        (PartFigure::Offset, 0.0),
+        (PartFigure::OffsetDrift, 0.0),
+        (PartFigure::BiasCurrent, 0.0),
+        (PartFigure::OffsetCurrent, 0.0),
+        (PartFigure::Cmrr, 1e15),
+        (PartFigure::PsrrPositive, 1e15),
+        (PartFigure::PsrrNegative, 1e15),
+    ] {
+        stage.part.state(figure, Rating::typical(value));
+    }
+    stage.part.headroom_high = vec![Headroom { current: 1.0, volts: Rating::typical(1.0) }];
+    stage.part.headroom_low = stage.part.headroom_high.clone();
+    stage.signals = vec![Some(Signal { peak: 0.0, frequency: None, dc: 2.0, crest_factor: std::f64::consts::SQRT_2 })];
+    let report = analyse(&stage).unwrap();
+    let margin = report.figures.iter().find(|row| row.query.figure == Figure::ClipMargin).unwrap().nominal.value().unwrap();
+    assert!((margin - 9.0).abs() < 1e-9, "{margin}");
 }

@@ -345,7 +345,7 @@ fn reference<'a>(
     Some(ReferenceVoltage { voltage, resistance })
 }
 
-/// Amplitude, steady part, frequency and shape. Without a stated shape the signal is a sine; an rms amplitude needs the
+/// Amplitude, steady part, frequency and shape; or the steady part alone. Without a stated shape the signal is a sine; an rms amplitude needs the
 /// shape stated, since the peak follows from it.
 fn signal<'a>(reader: &mut Reader<'a>, table: &Table<'a>, d: Dimension) -> Option<Signal> {
     let size = |reader: &mut Reader<'a>, key| {
@@ -363,6 +363,7 @@ fn signal<'a>(reader: &mut Reader<'a>, table: &Table<'a>, d: Dimension) -> Optio
     let given: Vec<&Entry<'_>> = AMPLITUDES.iter().filter_map(|k| table.find(k)).collect();
     let [amplitude] = given.as_slice() else {
         let allowed = "exactly one of `peak`, `peak_to_peak`, `rms`, `range`";
+        let of_shape = || ["waveform", "crest_factor"].into_iter().find_map(|key| table.find(key));
         match given.get(1) {
             Some(second) => reader.problem(
                 second.key_range(),
@@ -371,7 +372,15 @@ fn signal<'a>(reader: &mut Reader<'a>, table: &Table<'a>, d: Dimension) -> Optio
                 None,
             ),
             None if !table.is_table => {}
-            None => reader.missing(table.header.clone(), format!("[{}] states no amplitude", table.name), allowed),
+            // A signal that stands still.
+            None if table.find("dc").is_some() => {
+                let Some(shape) = of_shape() else { return Some(Signal { peak: 0.0, frequency, dc: dc?, crest_factor: SQRT_2 }) };
+                let message = format!("`{}` says nothing of a signal without an amplitude", shape.key);
+                reader.problem(shape.key_range(), message, "`peak`, `peak_to_peak`, `rms` or `range` beside it", None);
+            }
+            None => {
+                reader.missing(table.header.clone(), format!("[{}] states no amplitude", table.name), format!("{allowed}; or `dc` alone"))
+            }
         }
         return None;
     };

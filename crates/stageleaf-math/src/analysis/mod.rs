@@ -20,6 +20,7 @@ use crate::{
     part::PartFigure,
     report::{Need, Outcome},
     solution::Solution,
+    stage::Signal,
 };
 
 /// Which results a figure belongs to (see [`touch`]).
@@ -101,6 +102,7 @@ pub fn lacking(solution: &Solution<'_>, query: Query) -> Option<Outcome> {
         F::Snr | F::SnrBits => {
             missing.integrated_noise(solution);
             missing.signal_frequency(solution);
+            missing.amplitude(solution.model.stage.signal().into_iter());
         }
         F::NoiseDensityAt => missing.noise(solution),
         F::ClipMargin | F::InputRangeMargin => {
@@ -112,6 +114,9 @@ pub fn lacking(solution: &Solution<'_>, query: Query) -> Option<Outcome> {
             missing.part(solution, PartFigure::CurrentLimit);
         }
         F::SlewMargin | F::FullPowerBandwidth => {
+            let stage = solution.model.stage;
+            let signals = if query.figure == F::SlewMargin { &stage.signals } else { stage.signals.get(..1).unwrap_or_default() };
+            missing.amplitude(signals.iter().flatten().copied());
             missing.signal_level(solution);
             missing.part(solution, PartFigure::SlewRise);
             missing.part(solution, PartFigure::SlewFall);
@@ -320,6 +325,16 @@ impl Missing {
             None => self.need(Need::Signal),
             Some(signal) if signal.peak > 0.0 && signal.frequency.is_none() => self.need(Need::SignalFrequency),
             Some(_) => {}
+        }
+    }
+
+    /// Needs an amplitude of one of the signals: what is stated at DC alone has none.
+    pub fn amplitude(&mut self, mut signals: impl Iterator<Item = Signal>) {
+        if let Some(first) = signals.next()
+            && first.peak <= 0.0
+            && signals.all(|s| s.peak <= 0.0)
+        {
+            self.need(Need::SignalAmplitude);
         }
     }
 

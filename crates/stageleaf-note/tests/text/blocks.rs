@@ -105,6 +105,20 @@ fn with(old: &str, new: &str) -> String {
 }
 
 #[test]
+fn a_signal_may_stand_still() {
+    let still = BLOCK.replace("peak = \"0.4 V\"", "dc = \"-0.2 V\"").replace("frequency = \"20 kHz\"\n", "");
+    let signal = read(&still).unwrap_or_else(|p| panic!("{}", common::written(&p))).stage.signal().unwrap();
+    assert_eq!((signal.peak, signal.dc, signal.frequency), (0.0, -0.2, None));
+    assert_eq!(
+        problems(&still.replace("dc = \"-0.2 V\"", "dc = \"-0.2 V\"\nwaveform = \"sine\"")),
+        r#"notes/a.md:31:1: `waveform` says nothing of a signal without an amplitude
+  31 | waveform = "sine"
+     | ^^^^^^^^
+allowed: `peak`, `peak_to_peak`, `rms` or `range` beside it"#
+    );
+}
+
+#[test]
 fn ripple_says_what_it_counts() {
     let ripple = |text: &str| {
         let block = BLOCK.replace("[components]", &format!("ripple = \"{text}\"\nripple_frequency = \"100 kHz\"\n\n[components]"));
@@ -348,7 +362,7 @@ allowed: `waveform`, as `sine`, or `crest_factor`, peak over rms"#
         r#"notes/a.md:29:2: [signal] states no amplitude
   29 | [signal]
      |  ^^^^^^
-allowed: exactly one of `peak`, `peak_to_peak`, `rms`, `range`"#
+allowed: exactly one of `peak`, `peak_to_peak`, `rms`, `range`; or `dc` alone"#
     );
     assert_eq!(
         with("from = \"10 Hz\"", "from = \"30 kHz\""),
