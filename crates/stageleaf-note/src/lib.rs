@@ -22,6 +22,7 @@ pub mod block;
 pub mod decimal;
 #[cfg(feature = "toml")]
 mod driving;
+pub mod letters;
 pub mod limit;
 #[cfg(feature = "markdown")]
 pub mod markdown;

@@ -2,7 +2,7 @@
 
 use std::fmt;
 
-use crate::place::Lines;
+use crate::{letters::lower, place::Lines};
 
 /// Characters of a line that a problem carries; a longer line is cut around the place.
 const SHOWN: usize = 160;
@@ -134,10 +134,10 @@ pub fn nearest<'a>(given: &str, names: impl IntoIterator<Item = &'a str>) -> Opt
     if given.is_empty() || given.len() > 80 {
         return None;
     }
-    let given: Vec<char> = given.to_lowercase().chars().collect();
+    let given: Vec<char> = given.chars().map(lower).collect();
     names
         .into_iter()
-        .map(|name| (distance(&given, &name.to_lowercase().chars().collect::<Vec<_>>()), name))
+        .map(|name| (distance(&given, &name.chars().map(lower).collect::<Vec<_>>()), name))
         .filter(|(d, name)| *d <= 1.max(given.len().max(name.len()) / 3))
         .min_by_key(|(d, _)| *d)
         .map(|(_, name)| name)

@@ -12,6 +12,7 @@ use std::{f64::consts::PI, ops::Range};
 use stageleaf_math::dimension::Dimension;
 
 use crate::{
+    decimal,
     problem::quoted,
     unit::{self, Reading},
 };
@@ -135,8 +136,8 @@ fn quantity(text: &str, d: Dimension) -> Result<Quantity, Trouble> {
         None => return Err(wrong_unit(text, &number, suffix, d)),
     };
     let power = number.power + if let Reading::Power(p) = reading { i64::from(p) } else { 0 };
-    let sign = if number.negative { "-" } else { "" };
-    let raw: f64 = format!("{sign}{}e{power}", number.mantissa).parse().unwrap_or(f64::NAN);
+    let size = decimal::number(&number.mantissa, power);
+    let raw = if number.negative { -size } else { size };
     let value = match reading {
         Reading::Power(_) => raw,
         Reading::Decibel => libm::pow(10.0, raw / 20.0),

@@ -9,6 +9,7 @@ use stageleaf_math::{
 };
 
 use crate::{
+    letters::{is_letter_or_digit, lower},
     print::full,
     problem::{nearest, quoted},
     quantity::{Trouble, parse},
@@ -25,9 +26,9 @@ const ALLOWED: &str = "a figure id, with its frequency where it takes one (`gain
 #[must_use]
 pub fn slug(name: &str) -> String {
     let mut slug = String::with_capacity(name.len());
-    for c in name.chars().flat_map(char::to_lowercase) {
-        if c.is_alphanumeric() {
-            slug.push(c);
+    for c in name.chars() {
+        if is_letter_or_digit(c) {
+            slug.push(lower(c));
         } else if !slug.is_empty() && !slug.ends_with('-') {
             slug.push('-');
         }

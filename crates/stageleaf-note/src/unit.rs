@@ -8,6 +8,8 @@ use std::borrow::Cow;
 
 use stageleaf_math::dimension::Dimension;
 
+use crate::letters::lowered;
+
 /// How the number before a unit becomes SI.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Reading {
@@ -166,12 +168,12 @@ pub fn identify(suffix: &str) -> Option<Dimension> {
 /// Unit and prefix as they should have been written, where only upper and lower case are wrong: all that it could be.
 #[must_use]
 pub fn by_other_case(suffix: &str, d: Dimension) -> Vec<String> {
-    let wanted = simplified(suffix).to_lowercase();
+    let wanted = lowered(&simplified(suffix));
     let mut found = Vec::new();
     for power in [-18, -15, -12, -9, -6, -3, 0, 3, 6, 9, 12] {
         for symbol in spellings(d) {
             let candidate = format!("{}{symbol}", prefix_symbol(power));
-            if candidate.to_lowercase() == wanted && reading(&candidate, d).is_some() && !found.contains(&candidate) {
+            if lowered(&candidate) == wanted && reading(&candidate, d).is_some() && !found.contains(&candidate) {
                 found.push(candidate);
             }
         }

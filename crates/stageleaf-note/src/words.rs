@@ -28,10 +28,10 @@ pub fn kind_noun(kind: Kind) -> String {
     let mut letters = title.chars();
     let first = letters.next().unwrap_or_default();
     // Initials and names stay: "AC-coupled", "Sallen–Key".
-    if letters.clone().next().is_some_and(char::is_uppercase) || title.starts_with("Sallen") {
+    if letters.clone().next().is_some_and(|c| c.is_ascii_uppercase()) || title.starts_with("Sallen") {
         return title.to_owned();
     }
-    first.to_lowercase().chain(letters).collect()
+    [first.to_ascii_lowercase()].into_iter().chain(letters).collect()
 }
 
 /// What varies, as a corner or a verdict names it: "Rf", "positive supply", "gain-bandwidth product (gain.gbw)".

@@ -129,8 +129,11 @@ pub(crate) fn whole(value: f64) -> i32 {
     libm::round(value.clamp(-1e6, 1e6)) as i32
 }
 
-/// Text with a capital at its start.
+/// Words of ours with a capital at their start.
 pub(crate) fn capital(text: &str) -> String {
-    let mut chars = text.chars();
-    chars.next().map_or_else(String::new, |c| c.to_uppercase().chain(chars).collect())
+    let mut text = text.to_owned();
+    if let Some(first) = text.get_mut(..1) {
+        first.make_ascii_uppercase();
+    }
+    text
 }

@@ -25,8 +25,8 @@ impl Readout {
         let Some((figure, plot)) = figure_of(target) else { return self.hide(body) };
         let Some(svg) = find(&figure, "svg") else { return };
         let bounds = svg.get_bounding_client_rect();
-        let width = svg.get_attribute("viewBox").and_then(|view| view.split_whitespace().nth(2)?.parse::<f64>().ok());
-        let Some(width) = width.filter(|_| bounds.width() > 0.0) else { return };
+        let width = svg.get_attribute("viewBox").and_then(|view| view.split_whitespace().nth(2)?.parse::<u32>().ok());
+        let Some(width) = width.map(f64::from).filter(|_| bounds.width() > 0.0) else { return };
         let x = (f64::from(event.client_x()) - bounds.left()) / bounds.width() * width;
         let found = reading_near(sheet, &plot, x);
         self.show(&figure, plot, found);

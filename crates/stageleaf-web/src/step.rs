@@ -5,7 +5,7 @@
 //! rounding creeps in.
 
 use stageleaf_math::{dimension::Dimension, kind::Kind, series::Series};
-use stageleaf_note::{Settings, code, full, parse, paths, print::trimmed};
+use stageleaf_note::{Settings, code, decimal::number, full, parse, paths, print::trimmed};
 
 /// How far to go.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -60,7 +60,9 @@ fn split(text: &str, dimension: Dimension) -> Option<(&str, &str)> {
 fn shifted(value: f64, decades: i32) -> Option<f64> {
     let text = format!("{value:e}");
     let (digits, exponent) = text.split_once('e')?;
-    format!("{digits}e{}", exponent.parse::<i32>().ok()? + decades).parse().ok()
+    let (digits, negative) = digits.strip_prefix('-').map_or((digits, false), |digits| (digits, true));
+    let size = number(digits, i64::from(exponent.parse::<i32>().ok()? + decades));
+    Some(if negative { -size } else { size })
 }
 
 fn by_digit(value: f64, up: bool) -> Option<f64> {
@@ -75,7 +77,7 @@ fn by_digit(value: f64, up: bool) -> Option<f64> {
         (10, false) => (99, exponent - 2),
         (_, false) => (digits - 1, exponent - 1),
     };
-    let size: f64 = format!("{next}e{exponent}").parse().ok()?;
+    let size = number(&next.to_string(), i64::from(exponent));
     Some(if value > 0.0 { size } else { -size })
 }
 

@@ -213,7 +213,7 @@ pub fn drawing(sheet: &Sheet) -> Markup {
     let cut: Vec<&Label> = canvas.cut().collect();
     html! {
         div class="drawing" {
-            (canvas.finish(sheet.id, &format!("Circuit: {}, {}", spec.title.to_lowercase(), spec.ideal_formula)))
+            (canvas.finish(sheet.id, &format!("Circuit: {}, {}", spec.title.to_ascii_lowercase(), spec.ideal_formula)))
             p class="aside" {
                 (spec.summary) " "
                 @if stage.component("Riso").is_some() {

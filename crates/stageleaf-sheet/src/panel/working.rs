@@ -5,7 +5,7 @@ use stageleaf_math::{
     dimension::Dimension,
     report::{Outcome, Working},
 };
-use stageleaf_note::{format, print::trimmed};
+use stageleaf_note::{format, letters::is_letter_or_digit, print::trimmed};
 
 use super::{outcome, title, value};
 use crate::Sheet;
@@ -69,7 +69,7 @@ fn in_place(w: &Working) -> String {
 
 /// Letters, digits, underscore, and the subscripts that the field writes.
 fn is_symbol(c: char) -> bool {
-    c.is_alphanumeric() || c == '_' || ('₀'..='₉').contains(&c)
+    is_letter_or_digit(c) || c == '_'
 }
 
 /// How far the network's value lies from the handbook's.
