@@ -226,6 +226,7 @@ fn a_note_is_told_as_an_aligned_table() {
 note.md:2  A stage  (non-inverting, oak-1)
   holds   gain        10 ± 1 %         worst 9.999       margin 0.0990     guaranteed
   breaks  gain_error  at least -1 ppm  worst −0.01005 %  margin −99.5 ppm  typical
+  caution: The part states no common-mode rejection at DC (input.cmrr); the small-signal figures take it as ideal.
   caution: Without a tolerance, and exact at the worst case: Rf, Rg.
 
 1 note, 1 stage, 2 limits: 1 holds, 1 breaks

@@ -42,7 +42,7 @@ pub const fn budget(figure: Figure) -> Exactness {
         Figure::NaturalFrequency | Figure::Q => Relative(1e-9),              // polished roots; Q amplifies the real part's error
         Figure::InputImpedance | Figure::OutputImpedance => Relative(1e-10), // one evaluation of the network
         // Sums of products of stated values with gains from the network.
-        Figure::StageCmrr | Figure::StagePsrr | Figure::RippleOutput => Relative(1e-9),
+        Figure::StageCmrr | Figure::StageCmrrAt | Figure::StagePsrr | Figure::StagePsrrAt | Figure::RippleOutput => Relative(1e-9),
         Figure::OutputOffset | Figure::InputOffset | Figure::OffsetDrift => Relative(1e-9),
         // A central difference: exact to the square of its step of 1e-4.
         Figure::GainDrift => Relative(1e-7),

@@ -5,7 +5,7 @@ use std::collections::{BTreeMap, BTreeSet};
 use serde::Deserialize;
 use stageleaf_math::{figure::Figure, kind::Kind};
 
-use crate::{circuits, dc, gain, kinds, ledger::Ledger, loops, noise, oracle, oracle_around, oracle_kinds, swing, thermal};
+use crate::{circuits, dc, gain, kinds, ledger::Ledger, loops, noise, oracle, oracle_around, oracle_kinds, rejection, swing, thermal};
 
 /// Rows that are not checked here, with the reason.
 #[derive(Debug, Deserialize)]
@@ -34,6 +34,7 @@ fn everything() -> Ledger {
     dc::all(&mut ledger);
     swing::all(&mut ledger);
     thermal::all(&mut ledger);
+    rejection::all(&mut ledger);
     kinds::all(&mut ledger);
     oracle::all(&mut ledger);
     oracle_kinds::all(&mut ledger);

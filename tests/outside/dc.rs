@@ -111,6 +111,8 @@ fn rejection(rows: &Rows, ledger: &mut Ledger) {
     row.check(ledger, "e_cm", Figure::OutputOffset, &line(&report, DcCause::CommonMode, false));
     row.check(ledger, "e_ps", Figure::OutputOffset, &line(&report, DcCause::SupplyPositive, true));
 
+    // The row takes each rejection for itself: no common-mode error on what the supply makes.
+    stage.part.state(PartFigure::Cmrr, stated(1e15));
     // The same error as a ratio, and as what a ripple of that size leaves; the negative rail rejects beyond all question.
     stage.part.state(PartFigure::PsrrNegative, stated(1e18));
     for corner in [PartFigure::PsrrPositiveCorner, PartFigure::PsrrNegativeCorner] {

@@ -16,6 +16,7 @@ mod oracle;
 mod oracle_around;
 mod oracle_kinds;
 mod places;
+mod rejection;
 mod setup;
 mod swing;
 mod table;

@@ -182,6 +182,12 @@ impl Circuit {
         part
     }
 
+    /// Its kind's id.
+    pub fn kind(&self) -> &str {
+        &self.kind
+    }
+
+    /// The stage.
     pub fn stage(&self) -> Stage {
         let kind = Kind::from_id(&self.kind).unwrap_or_else(|| panic!("{}: no kind is called {:?}", self.id, self.kind));
         let mut result = stage(kind, self.part(0))

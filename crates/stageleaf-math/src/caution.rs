@@ -5,6 +5,7 @@ use alloc::vec::Vec;
 use crate::{
     analysis::{self, margins, outcome, spread::Spread, thermal},
     figure::{Figure, Query},
+    network::GROUND,
     part::PartFigure,
     report::{Caution, NoiseOrigin, Outcome},
 };
@@ -22,6 +23,12 @@ pub(crate) fn cautions(spread: &mut Spread<'_>) -> Vec<Caution> {
         if solution.part(figure).is_none() {
             list.push(Caution::TakenAsIdeal(figure));
         }
+    }
+    // An input that stands at ground takes no common mode to speak of.
+    if model.network.amplifiers.iter().any(|a| a.plus != GROUND)
+        && let Some(figure) = [PartFigure::Cmrr, PartFigure::CmrrCorner].into_iter().find(|&f| solution.part(f).is_none())
+    {
+        list.push(Caution::TakenAsIdeal(figure));
     }
     if let (Some(needed), None) = (solution.part(PartFigure::StableGainMin), analysis::missing_small_signal(solution))
         && let Some(crossover) = margins::margins(solution).crossover

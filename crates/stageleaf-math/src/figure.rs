@@ -85,7 +85,9 @@ figures! {
     OffsetDrift "offset_drift" VoltageDrift None Dc "Output offset drift", "Drift of the output offset with temperature.";
     GainDrift "gain_drift" FractionDrift None Dc "Gain drift", "Largest relative change of gain per kelvin from the components' temperature coefficients.";
     StageCmrr "stage_cmrr" Level None Dc "Common-mode rejection of the stage", "Gain of the difference over gain of the common mode at DC, the amplifiers' own rejection added to the resistors' mismatch.";
+    StageCmrrAt "stage_cmrr_at" Level Frequency Dc "Common-mode rejection of the stage at", "The same as `stage_cmrr` at a stated frequency.";
     StagePsrr "stage_psrr" Level None Dc "Supply rejection of the stage", "Change of a supply over the change that it makes at the output referred to the input, at DC; the worse of the two rails.";
+    StagePsrrAt "stage_psrr_at" Level Frequency Dc "Supply rejection of the stage at", "The same as `stage_psrr` at a stated frequency, referred to the input by the gain of the pass band.";
     RippleOutput "ripple_output" Voltage None Dc "Supply ripple at the output", "Peak of what the stated ripple of the supplies leaves at the output, both rails added; none on a rail that is the stage's ground.";
     OutputNoise "output_noise" Voltage None Noise "Output noise, rms", "Rms noise at the output integrated over the stated band.";
     InputNoise "input_noise" Voltage None Noise "Noise referred to the input, rms", "`output_noise` divided by |gain|.";

@@ -87,6 +87,7 @@ pub struct Model<'a> {
     /// Whether the parts state all that response and loop depend on, so that stability can be judged.
     pub small_signal: bool,
     plans: Plans,
+    inside: OnceCell<Vec<Expansion>>,
     input: OnceCell<Probe>,
     output: OnceCell<Probe>,
 }
@@ -164,10 +165,20 @@ impl<'a> Model<'a> {
             scale,
             small_signal,
             plans: plans.clone(),
+            inside: OnceCell::new(),
             input: OnceCell::new(),
             output: OnceCell::new(),
             network,
         }
+    }
+
+    /// For each amplifier, voltages at all nodes for a voltage in series with its input (to be multiplied by its gain).
+    pub(crate) fn inside(&self) -> &[Expansion] {
+        self.inside.get_or_init(|| {
+            let held = self.network.held();
+            let shape = |pin: Node| Shape::Forward { source: pin.0, held };
+            self.network.amplifiers.iter().map(|a| Expansion::compile(&self.network, shape(a.pin), &self.plans)).collect()
+        })
     }
 
     /// The impedance at the first input's terminal.

@@ -31,8 +31,10 @@ pub mod touch {
     pub const SWING: u8 = 8;
     /// Dissipation and temperature.
     pub const POWER: u8 = 16;
+    /// What an amplifier's common-mode rejection leaves of a gain.
+    pub const REJECTION: u8 = 32;
     /// All of them.
-    pub const ALL: u8 = 31;
+    pub const ALL: u8 = 63;
 }
 
 /// One slot.
@@ -166,6 +168,20 @@ impl Parameters {
             }
             parts.push(slots);
         }
+        // A data sheet states no sign: nothing at nominal values, either in the spread.
+        for (amplifier, slots) in (0u8..).zip(&parts) {
+            if slots[PartFigure::Cmrr as usize] != ABSENT {
+                entries.push(Entry {
+                    parameter: Parameter::RejectionSign(amplifier),
+                    nominal: 0.0,
+                    low: -1.0,
+                    high: 1.0,
+                    grade: [Grade::Stated; 3],
+                    drift: 0.0,
+                    touches: touch::REJECTION,
+                });
+            }
+        }
         let headroom = entries.len();
         entries.push(headroom_entry(stage));
         Self { entries, parts, supply, temperature, headroom }
@@ -245,7 +261,7 @@ const fn part_touches(figure: PartFigure) -> u8 {
         | P::CommonModeResistance
         | P::CommonModeCapacitance => touch::ALL,
         P::NoiseVoltage | P::NoiseVoltageCorner | P::NoiseExponent | P::NoiseCurrent | P::NoiseCurrentCorner => touch::NOISE,
-        P::Offset | P::OffsetDrift | P::OffsetCurrent | P::Cmrr | P::PsrrPositive | P::PsrrNegative => touch::DC | touch::SWING,
+        P::Offset | P::OffsetDrift | P::OffsetCurrent | P::PsrrPositive | P::PsrrNegative => touch::DC | touch::SWING,
         P::RangeFromNegative | P::RangeFromPositive | P::SlewRise | P::SlewFall => touch::SWING,
         P::BiasCurrent | P::BiasDoubling | P::CurrentLimit | P::SupplyCurrent | P::JunctionToAmbient => {
             touch::DC | touch::SWING | touch::POWER
@@ -257,7 +273,9 @@ const fn part_touches(figure: PartFigure) -> u8 {
         | P::StableGainMin
         | P::OverloadRecovery
         | P::JunctionMax => 0,
-        P::CmrrCorner | P::PsrrPositiveCorner | P::PsrrNegativeCorner => touch::DC,
+        P::Cmrr => touch::DC | touch::SWING | touch::REJECTION,
+        P::CmrrCorner => touch::DC | touch::REJECTION,
+        P::PsrrPositiveCorner | P::PsrrNegativeCorner => touch::DC,
     }
 }
 

@@ -127,6 +127,8 @@ pub enum Parameter {
     Part(PartFigure),
     /// A figure of another amplifier's part (amplifier from 1).
     PartOf(u8, PartFigure),
+    /// Sign with which an amplifier (from 0) answers to the common mode: data sheets state the magnitude alone.
+    RejectionSign(u8),
     /// Headroom tables between typical and guaranteed (0: typical, 1: guaranteed).
     Headroom,
 }

@@ -74,6 +74,8 @@ pub struct Solution<'m> {
     twin: Option<Rc<Solution<'m>>>,
     looped: OnceCell<Loop>,
     injection: OnceCell<Injection>,
+    inside: OnceCell<Vec<Table>>,
+    inside_at_dc: OnceCell<Vec<Vec<f64>>>,
     roots: OnceCell<Roots>,
     grid: OnceCell<Vec<f64>>,
     products: OnceCell<Vec<Polynomial>>,
@@ -98,6 +100,8 @@ impl<'m> Solution<'m> {
             twin: None,
             looped: OnceCell::new(),
             injection: OnceCell::new(),
+            inside: OnceCell::new(),
+            inside_at_dc: OnceCell::new(),
             roots: OnceCell::new(),
             grid: OnceCell::new(),
             products: OnceCell::new(),
@@ -215,10 +219,10 @@ impl<'m> Solution<'m> {
     }
 
     /// An expansion's polynomials; closed shapes have all in node 0.
-    fn expand(&self, expansion: &Expansion) -> Table {
+    fn expand(&self, expansion: &Expansion, struck: Option<usize>) -> Table {
         let nodes = self.model.network.nodes;
         let sets = 1 << self.amplifiers();
-        let scratch = self.run(expansion, &self.model.network, None);
+        let scratch = self.run(expansion, &self.model.network, struck);
         let mut terms = vec![Polynomial::default(); sets * nodes];
         for outcome in &expansion.plan.outcomes {
             let polynomial = expansion.plan.polynomial(outcome, &scratch);
@@ -239,9 +243,9 @@ impl<'m> Solution<'m> {
         }
         self.looped.get_or_init(|| {
             let model = self.model;
-            let terms: Vec<Table> = model.forward.iter().map(|expansion| self.expand(expansion)).collect();
+            let terms: Vec<Table> = model.forward.iter().map(|expansion| self.expand(expansion, None)).collect();
             // A node that an ideal voltage holds follows itself: its terms are the determinant's.
-            let whole = model.closed.as_ref().map(|expansion| self.expand(expansion));
+            let whole = model.closed.as_ref().map(|expansion| self.expand(expansion, None));
             let whole = whole.as_ref().map_or_else(|| terms[0].of(usize::from(model.network.input_node(0).0)), |table| table.of(0));
             let returned: Vec<Polynomial> = (0..self.amplifiers()).map(|a| self.combine(whole, |set| set >> a & 1 == 1)).collect();
             let open: Vec<Polynomial> = (0..self.amplifiers()).map(|a| self.combine(whole, |set| set >> a & 1 == 0)).collect();
@@ -289,7 +293,7 @@ impl<'m> Solution<'m> {
         }
         self.injection.get_or_init(|| {
             let model = self.model;
-            let table = self.expand(&model.adjoint);
+            let table = self.expand(&model.adjoint, None);
             let current = (0..model.network.nodes).map(|node| self.combine(table.of(node), |_| true)).collect();
             let input = model
                 .series_input
@@ -307,6 +311,58 @@ impl<'m> Solution<'m> {
                 })
                 .collect();
             Injection { current, input }
+        })
+    }
+
+    /// Voltage at a node for a voltage in series with an amplifier's input.
+    pub(crate) fn inside_to(&self, amplifier: usize, node: Node, omega: f64) -> Complex64 {
+        if let Some(twin) = &self.twin {
+            return twin.inside_to(amplifier, node, omega);
+        }
+        if node.0 == 0 {
+            return Complex64::new(0.0, 0.0);
+        }
+        let node = usize::from(node.0);
+        if omega <= 0.0 {
+            return Complex64::new(self.inside_at_dc()[amplifier][node] / self.looped().closed.constant(), 0.0);
+        }
+        let tables = self.inside.get_or_init(|| {
+            let expansions = self.model.inside().iter().enumerate();
+            expansions.map(|(a, expansion)| self.expand(expansion, Some(a))).collect()
+        });
+        let terms = tables[amplifier].of(node).iter().enumerate();
+        let sum: Complex64 = terms
+            .filter(|(_, term)| !term.0.is_empty())
+            .map(|(set, term)| self.products()[set | 1 << amplifier].at(omega) * term.at(omega))
+            .sum();
+        sum / self.looped().closed.at(omega)
+    }
+
+    /// The same at DC for every node, over the closed loop's constant, from the constant terms alone.
+    fn inside_at_dc(&self) -> &[Vec<f64>] {
+        self.inside_at_dc.get_or_init(|| {
+            let model = self.model;
+            let resistances = model.output_resistances(&self.values);
+            let mut scratch = Vec::new();
+            let mut of = |(amplifier, expansion): (usize, &Expansion)| {
+                let mut weights = expansion.weights(&model.network, &self.values, &resistances, model.scale);
+                if let Some(column) = expansion.amplifier_column(amplifier) {
+                    weights[column].out[0] = 1.0;
+                }
+                expansion.plan.evaluate_constants(&weights, &mut scratch);
+                let mut volts = vec![0.0; model.network.nodes];
+                for outcome in &expansion.plan.outcomes {
+                    let set = usize::from(outcome.amplified) | 1 << amplifier;
+                    let term = expansion.plan.polynomial(outcome, &scratch)[0] * self.products()[set].constant();
+                    for (node, volts) in volts.iter_mut().enumerate() {
+                        if outcome.joined >> node & 1 == 1 {
+                            *volts += term;
+                        }
+                    }
+                }
+                volts
+            };
+            model.inside().iter().enumerate().map(&mut of).collect()
         })
     }
 

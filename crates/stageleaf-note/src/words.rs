@@ -55,6 +55,7 @@ pub fn parameter_text(parameter: Parameter) -> String {
         Parameter::Temperature => "ambient temperature".into(),
         Parameter::Part(figure) => figure.meaning().into(),
         Parameter::PartOf(amplifier, figure) => format!("{} of A{amplifier}", figure.meaning()),
+        Parameter::RejectionSign(amplifier) => of_amplifier("sign of the common-mode error", amplifier),
         Parameter::Headroom => "output headroom".into(),
     }
 }
@@ -90,7 +91,7 @@ pub fn parameter_dimension(parameter: Parameter, stage: &stageleaf_math::stage::
         Parameter::SupplyPositive | Parameter::SupplyNegative | Parameter::CommonMode | Parameter::ReferenceVoltage => Dimension::Voltage,
         Parameter::Temperature => Dimension::Temperature,
         Parameter::Part(figure) | Parameter::PartOf(_, figure) => figure.dimension(),
-        Parameter::Headroom => Dimension::Number,
+        Parameter::RejectionSign(_) | Parameter::Headroom => Dimension::Number,
     }
 }
 

@@ -28,12 +28,8 @@ use crate::{
 pub const fn touched_by(figure: Figure) -> u8 {
     use Figure as F;
     match figure {
-        F::Gain
-        | F::GainError
-        | F::GainAtSignal
-        | F::GainAt
-        | F::PhaseAt
-        | F::Bandwidth
+        F::Gain | F::GainError | F::GainAtSignal | F::GainAt | F::PhaseAt => touch::NETWORK | touch::REJECTION,
+        F::Bandwidth
         | F::LowCutoff
         | F::Peaking
         | F::Crossover
@@ -46,7 +42,14 @@ pub const fn touched_by(figure: Figure) -> u8 {
         | F::OutputImpedance
         | F::GainDrift
         | F::NoiseBandwidth => touch::NETWORK,
-        F::OutputOffset | F::InputOffset | F::OffsetDrift | F::StageCmrr | F::StagePsrr | F::RippleOutput => touch::DC,
+        F::OutputOffset
+        | F::InputOffset
+        | F::OffsetDrift
+        | F::StageCmrr
+        | F::StageCmrrAt
+        | F::StagePsrr
+        | F::StagePsrrAt
+        | F::RippleOutput => touch::DC,
         F::OutputNoise | F::InputNoise | F::OutputNoisePeakToPeak | F::NoiseDensityAt | F::Snr | F::SnrBits => touch::NOISE,
         F::ClipMargin | F::InputRangeMargin | F::CurrentMargin | F::SlewMargin | F::FullPowerBandwidth => touch::SWING,
         F::SupplyCurrent | F::Dissipation | F::JunctionTemperature | F::ResistorDissipation => touch::POWER,
@@ -87,7 +90,9 @@ pub fn lacking(solution: &Solution<'_>, query: Query) -> Option<Outcome> {
         | F::NaturalFrequency
         | F::Q
         | F::OutputImpedance
-        | F::NoiseBandwidth => missing.small_signal(solution),
+        | F::NoiseBandwidth
+        | F::StageCmrrAt
+        | F::StagePsrrAt => missing.small_signal(solution),
         F::OutputOffset | F::InputOffset | F::OffsetDrift | F::StageCmrr | F::StagePsrr => {
             missing.part(solution, PartFigure::OpenLoop);
         }
@@ -149,16 +154,16 @@ pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
         return Outcome::Oscillates;
     }
     let value = match query.figure {
-        F::Gain => response::reference(solution).gain,
-        F::GainError => response::reference(solution).gain / (stage.kind.spec().ideal_gain)(stage) - 1.0,
+        F::Gain => rejection::gain(solution),
+        F::GainError => rejection::gain(solution) / (stage.kind.spec().ideal_gain)(stage) - 1.0,
         F::GainAtSignal => {
             let frequency = stage.signal().and_then(|s| s.frequency).unwrap_or(0.0);
             let sign = if response::reference(solution).gain < 0.0 { -1.0 } else { 1.0 };
-            sign * crate::solution::magnitude(solution.transfer(0, solution.scaled(frequency)))
+            sign * crate::solution::magnitude(rejection::transfer(solution, solution.scaled(frequency)))
         }
-        F::GainAt => crate::solution::magnitude(solution.transfer(0, solution.scaled(query.at.unwrap_or(0.0)))),
+        F::GainAt => crate::solution::magnitude(rejection::transfer(solution, solution.scaled(query.at.unwrap_or(0.0)))),
         F::PhaseAt => {
-            let h = solution.transfer(0, solution.scaled(query.at.unwrap_or(0.0)));
+            let h = rejection::transfer(solution, solution.scaled(query.at.unwrap_or(0.0)));
             libm::atan2(h.im, h.re)
         }
         F::Bandwidth => response::edges(solution).bandwidth,
@@ -199,8 +204,8 @@ pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
         F::OutputOffset => return dc::budget(solution).total.clone(),
         F::InputOffset => return scaled(&dc::budget(solution).total, 1.0 / response::reference(solution).gain.abs()),
         F::OffsetDrift => return dc::budget(solution).drift.clone(),
-        F::StageCmrr => return rejection::stage_cmrr(solution),
-        F::StagePsrr => return rejection::stage_psrr(solution),
+        F::StageCmrr | F::StageCmrrAt => return rejection::stage_cmrr(solution, query.at.unwrap_or(0.0)),
+        F::StagePsrr | F::StagePsrrAt => return rejection::stage_psrr(solution, query.at.unwrap_or(0.0)),
         F::RippleOutput => return rejection::ripple_output(solution),
         F::OutputNoise | F::InputNoise | F::OutputNoisePeakToPeak | F::Snr | F::SnrBits => {
             let Some(rms) = noise::integrated(solution) else { return Outcome::DoesNotApply("the band's edges are the same") };

@@ -227,9 +227,12 @@ impl<'m> Spread<'m> {
         }
         // DC errors are sums of products; swing and heat have them in them. What touches the network or the noise acts alone already.
         let products = touched & (touch::DC | touch::SWING | touch::POWER) != 0;
-        let again: Vec<usize> = slots.into_iter().filter(|&slot| products && self.deserves_another_look(slot, &centre, &all)).collect();
+        // So does a gain, by the common-mode error: its sign times the rejection, on whatever network the corner has.
+        let product = |slot: usize| products || self.model.parameters.entries[slot].touches & touch::NETWORK == 0;
+        let again: Vec<usize> =
+            slots.into_iter().filter(|&slot| product(slot) && self.deserves_another_look(slot, &centre, &all)).collect();
         let mut low = self.finish(query, low, &again, &bad, |a, b| a < b);
-        if query.figure == Figure::StageCmrr && self.model.drives.len() > 1 {
+        if matches!(query.figure, Figure::StageCmrr | Figure::StageCmrrAt) && self.model.drives.len() > 1 {
             self.turn_to_worst_mismatch(query, &mut low);
         }
         let high = self.finish(query, high, &again, &bad, |a, b| a > b);
@@ -237,9 +240,18 @@ impl<'m> Spread<'m> {
     }
 
     /// The rejection is the magnitude of a mismatch that several resistors make with either sign: alone, each makes it worse both ways,
-    /// and only together do they add up. So the corner is sought by the signed common-mode gain, at its least and at its greatest.
+    /// and only together do they add up. So the corner is sought by the signed common-mode gain, at its least and at its greatest; away
+    /// from DC by its two parts.
     fn turn_to_worst_mismatch(&mut self, query: Query, low: &mut Extreme) {
-        let signed = |solution: &Solution<'_>| solution.dc_gain(1);
+        self.turn_to_mismatch(query, low, |solution, omega| solution.transfer(1, omega).re);
+        if query.at.is_some() {
+            self.turn_to_mismatch(query, low, |solution, omega| solution.transfer(1, omega).im);
+        }
+    }
+
+    fn turn_to_mismatch(&mut self, query: Query, low: &mut Extreme, part: fn(&Solution<'_>, f64) -> f64) {
+        let omega = self.nominal.scaled(query.at.unwrap_or(0.0));
+        let signed = |solution: &Solution<'_>| part(solution, omega);
         let centre = signed(&self.nominal);
         let slots: Vec<usize> = (0..self.model.parameters.entries.len())
             .filter(|&slot| {
@@ -421,9 +433,11 @@ impl<'m> Spread<'m> {
         let nominal = Extreme { outcome: extremes.centre.clone(), corner: Vec::new(), effects: Vec::new(), ends: Vec::new() };
         let extreme = extreme.unwrap_or(&nominal);
         let touched = touched_by(query.figure);
-        let at_extreme = touched == touch::DC || flat(query, &extremes.centre) && !flat(query, &extreme.outcome);
-        let from = if at_extreme { &extreme.outcome } else { &extremes.centre };
-        let tolerance = COUNTS * from.value().filter(|v| v.is_finite()).map_or(0.0, f64::abs);
+        let turned = touched == touch::DC || flat(query, &extremes.centre) && !flat(query, &extreme.outcome);
+        let measure = |at_extreme: bool| {
+            let from = if at_extreme { &extreme.outcome } else { &extremes.centre };
+            (from, COUNTS * from.value().filter(|v| v.is_finite()).map_or(0.0, f64::abs))
+        };
         let (mut guaranteed, mut typical) = (false, false);
         for slot in 0..self.model.parameters.entries.len() {
             let entry = self.model.parameters.entries[slot];
@@ -432,6 +446,9 @@ impl<'m> Spread<'m> {
                 continue;
             }
             let end = extreme.ends.iter().find(|(s, _)| *s == slot).map(|(_, place)| *place);
+            // A rejection acts on a gain by its sign, which nominal values leave out.
+            let at_extreme = turned || entry.touches & touch::NETWORK == 0 && touched & touch::REJECTION != 0;
+            let (from, tolerance) = measure(at_extreme);
             let counts = if at_extreme {
                 let moved = if end.is_some() { entry.nominal } else { entry.nominal * 1.2 };
                 changes(from, &value(&self.off_corner(&extreme.ends, slot, moved), query), tolerance)
@@ -455,7 +472,8 @@ impl<'m> Spread<'m> {
         // Higher poles have no guaranteed value on any data sheet.
         if self.model.poles.iter().flatten().any(|p| !p.is_empty()) && touched & ON_POLES != 0 {
             let slot = self.model.parameters.pole_factor();
-            let there = if at_extreme { self.off_corner(&extreme.ends, slot, 1.2) } else { self.probe(slot, 1.2) };
+            let there = if turned { self.off_corner(&extreme.ends, slot, 1.2) } else { self.probe(slot, 1.2) };
+            let (from, tolerance) = measure(turned);
             typical |= changes(from, &value(&there, query), tolerance);
         }
         match (guaranteed, typical) {

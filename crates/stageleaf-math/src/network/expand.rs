@@ -50,7 +50,7 @@ pub enum Shape {
     },
     /// Voltages at all nodes for a voltage at, or a current into, `source`: outcomes are split by the nodes that follow it.
     Forward {
-        /// The driven node; every node of a lower number is held.
+        /// The driven node.
         source: u8,
         /// Held at zero by other ideal sources (bit set).
         held: u32,
@@ -200,9 +200,8 @@ impl Plan {
             }
             Shape::Forward { source, held } => {
                 start.hold(held);
-                assert!(rank(&start.rows, source) == 0, "the sign below counts on the driven node's being the first that is not held");
+                negative = (start.live(nodes) + 1 + rank(&start.rows, source)) % 2 == 1;
                 start.rows[usize::from(source)] = 0;
-                negative = start.live(nodes) % 2 == 1;
             }
             Shape::Adjoint { held, sense } => {
                 start.hold(held);
