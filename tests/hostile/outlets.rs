@@ -25,10 +25,34 @@ fn a_figure_is_explained_with_the_units_that_kinds_give_it() {
     let bench = Bench::new("explain-units");
     let said = bench.run(&["explain", "gain"]);
     assert_eq!(said.code, Some(0), "{}", said.err);
-    let wanted = "  unit      V/V, a plain signed number; limits may be in dB too\n            Ω in a stage of kind transimpedance\n            V/C in a stage of kind charge\n";
+    let wanted = "  unit        V/V, a plain signed number; limits may be in dB too\n              Ω in a stage of kind transimpedance\n              V/C in a stage of kind charge\n";
     assert!(said.out.contains(wanted), "{}", said.out);
-    assert!(bench.run(&["explain", "input_noise"]).out.contains("            A in a stage of kind transimpedance\n"));
+    assert!(bench.run(&["explain", "input_noise"]).out.contains("              A in a stage of kind transimpedance\n"));
     assert!(!bench.run(&["explain", "bandwidth"]).out.contains("in a stage of kind"));
+}
+
+#[test]
+fn a_figure_of_a_stage_is_explained_with_its_numbers() {
+    let bench = Bench::new("explain-numbers");
+    let resistors = "Rf = \"9k\"\nRg = \"1k\"\n";
+    bench.write("note.md", fenced(&format!("stage = \"non-inverting\"\nname = \"A\"\npart = \"oak-1\"\n[components]\n{resistors}")));
+    let said = bench.run(&["explain", "gain", "note.md"]);
+    assert_eq!((said.code, said.err.as_str()), (Some(0), ""));
+    assert!(said.out.contains("G = 1 + Rf/Rg\n              G = 1 + 9 kΩ/1 kΩ = 10.00\n"), "{}", said.out);
+    // What the note does not state is asked for; a frequency may be named, and has to be one.
+    assert!(bench.run(&["explain", "output_noise", "note.md"]).out.contains("network     needs "));
+    assert!(bench.run(&["explain", "gain_at 20 kHz", "note.md"]).out.contains("figure      gain_at 20 kHz\n"));
+    let said = bench.run(&["explain", "gain_at", "note.md"]);
+    assert!(said.code == Some(2) && said.err.contains("try: stageleaf explain \"gain_at 20 kHz\" note.md"), "{}", said.err);
+    let said = bench.run(&["explain", "gain_at 20 V", "note.md"]);
+    assert!(said.code == Some(2) && said.err.starts_with("explain: `gain_at` takes a frequency"), "{}", said.err);
+    // No such stage, no such note, nothing that could be read.
+    let said = bench.run(&["explain", "gain", "note.md", "--stage", "B"]);
+    assert!(said.code == Some(2) && said.err.contains("no stage of this note is called “B”"), "{}", said.err);
+    assert_eq!(bench.run(&["explain", "gain", "none.md"]).code, Some(2));
+    bench.write("bad.md", fenced("stage = \"non-inverting\"\nname = \"A\"\npart = \"oak-1\"\n[components]\nRf = \"1 V\"\n"));
+    let said = bench.run(&["explain", "gain", "bad.md"]);
+    assert!(said.code == Some(2) && said.err.contains("bad.md:6:6: "), "{}", said.err);
 }
 
 #[test]

@@ -10,16 +10,13 @@ use crate::{
         swing,
     },
     caution, check,
-    dimension::Dimension,
     figure::{Argument, Figure, Query},
-    handbook,
     limit::{Bound, Limit, Thin, Verdict},
     model::{Model, Plans},
-    part::PartFigure,
     report::{DcLine, FigureRow, LimitRow, Outcome, Report},
+    rules,
     solution::Solution,
     stage::Stage,
-    units::{Volts, VoltsPerSecond},
 };
 
 /// Points of a curve.
@@ -119,11 +116,12 @@ pub fn analyse_with(stage: &Stage, detail: Detail, plans: &Plans) -> Result<Repo
         envelope: Vec::new(),
         poles: Vec::new(),
         zeros: Vec::new(),
-        working: working(&spread.nominal),
+        working: Vec::new(),
         cautions: caution::cautions(&mut spread),
     };
     if detail > Detail::Limits {
         curves(&spread.nominal, &mut report);
+        report.working = rules::working(&spread.nominal, &report.figures);
     }
     Ok(report)
 }
@@ -248,39 +246,6 @@ fn dc_budget(spread: &mut Spread<'_>) -> Vec<DcLine> {
             DcLine { cause, nominal, worst }
         })
         .collect()
-}
-
-fn working(solution: &Solution<'_>) -> Vec<crate::report::Working> {
-    let stage = solution.model.stage;
-    let mut lines = (stage.kind.spec().working)(stage);
-    lines.retain(|l| l.handbook.is_finite());
-    for line in &mut lines {
-        line.dimension = line.query.figure.dimension_in(stage.kind);
-        line.exact = outcome(solution, line.query);
-    }
-    lines.extend(full_power(solution));
-    lines
-}
-
-/// The handbook's full-power bandwidth beside ours.
-fn full_power(solution: &Solution<'_>) -> Option<crate::report::Working> {
-    let signal = solution.model.stage.signal()?;
-    let slew = solution.part(PartFigure::SlewRise)?.min(solution.part(PartFigure::SlewFall)?);
-    let amplitude = response::reference(solution).gain.abs() * signal.peak;
-    if !(amplitude > 0.0 && amplitude.is_finite()) {
-        return None;
-    }
-    let query = Query::of(Figure::FullPowerBandwidth);
-    Some(crate::report::Working {
-        query,
-        dimension: Dimension::Frequency,
-        formula: "f = SR/(2π·Vpk)",
-        numbers: alloc::vec![("SR", slew, Dimension::SlewRate), ("Vpk", amplitude, Dimension::Voltage)],
-        handbook: handbook::full_power_bandwidth(VoltsPerSecond(slew), Volts(amplitude)).ok()?.0,
-        exact: outcome(solution, query),
-        source: "common practice, no source; the steepest slope of a sine is 2πf·Vpk",
-        difference: "the drop in the output resistance, and the output current where it ends first",
-    })
 }
 
 fn curves(solution: &Solution<'_>, report: &mut Report) {

@@ -21,6 +21,7 @@ extern crate alloc;
 pub mod analyse;
 pub mod analysis;
 mod caution;
+pub mod definition;
 pub mod dimension;
 pub mod error;
 pub mod figure;
@@ -34,6 +35,7 @@ pub mod parameters;
 pub mod part;
 pub mod polynomial;
 pub mod report;
+mod rules;
 pub mod series;
 pub mod solution;
 pub mod stage;
@@ -41,22 +43,6 @@ pub mod units;
 mod validate;
 
 pub use analyse::{Detail, analyse, analyse_in, analyse_with};
+pub use definition::NOT_MODELLED;
 pub use error::Error;
 pub use validate::check;
-
-/// What the model leaves out; the README, the sheet and `explain` show this list.
-pub const NOT_MODELLED: &[&str] = &[
-    "RF rectification",
-    "layout coupling",
-    "thermal gradients",
-    "long lines",
-    "output-stage crossover distortion",
-    "boosted slew",
-    "capacitor voltage coefficient",
-    "dielectric absorption",
-    "crosstalk within a package",
-    "phase reversal (a caution only)",
-    "ageing",
-    "radiation",
-    "latch-up",
-];

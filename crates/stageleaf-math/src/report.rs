@@ -283,6 +283,16 @@ pub struct DcLine {
     pub worst: Outcome,
 }
 
+/// Which of a figure's values a closed form is held against.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub enum Against {
+    /// The one at nominal values.
+    #[default]
+    Nominal,
+    /// The least of the worst case: the form is for tolerances.
+    Least,
+}
+
 /// A closed form beside the exact value.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Working {
@@ -298,6 +308,8 @@ pub struct Working {
     pub handbook: f64,
     /// What the network gives.
     pub exact: Outcome,
+    /// Which of the network's values that is.
+    pub against: Against,
     /// Where the formula comes from.
     pub source: &'static str,
     /// Why the two differ.

@@ -49,6 +49,7 @@ pub mod template;
 pub mod terms;
 pub mod unit;
 pub mod words;
+pub mod worked;
 
 #[cfg(feature = "toml")]
 pub use block::read_block;

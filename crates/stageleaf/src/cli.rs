@@ -31,7 +31,7 @@ enum Command {
     New(new::Options),
     /// Write a note's sheets as one self-contained HTML file
     Page(page::Options),
-    /// Say what a figure means, its unit, and what is not modelled
+    /// Say how a figure is computed, with a stage's numbers in place, and what is not modelled
     Explain(explain::Options),
     /// Put sheets into a book: mdBook's preprocessor
     Embed {
@@ -71,7 +71,7 @@ fn perform(command: &Command, terminal: &mut Terminal) -> Ending {
     match command {
         Command::Check(options) => check::run(options, terminal),
         Command::New(options) => print(new::block(options), terminal),
-        Command::Explain(options) => print(explain::text(options), terminal),
+        Command::Explain(options) => explain::run(options, terminal),
         Command::Page(options) => write_page(options, terminal),
         Command::Embed { arguments } => match embed::command(arguments, io::stdin().lock(), io::stdout().lock(), io::stderr().lock()) {
             Ok(true) => Ending::Good,

@@ -1,51 +1,228 @@
-//! `explain`: what a figure means and in which unit it is told, and what no figure knows about.
+//! `explain`: what a figure means, how it is computed, with a stage's numbers in place where a note is named, and what is not modelled.
 
-use std::fmt::Write as _;
+use std::{collections::BTreeSet, fmt::Write as _, fs, path::PathBuf};
 
 use clap::Args;
 use stageleaf_math::{
     NOT_MODELLED,
+    definition::not_modelled_for,
     dimension::Dimension,
-    figure::{Argument, Figure, Group},
+    figure::{Argument, Figure, Group, Query},
     kind::Kind,
+    limit::{Bound, Limit, Thin},
+    report::{Against, FigureRow, Report, Working},
 };
-use stageleaf_note::problem::nearest;
+use stageleaf_note::{
+    Block, format as quantity_text, parse_query,
+    problem::nearest,
+    query_text,
+    worked::{SAME, difference, in_place},
+};
 
-use crate::fault::Fault;
+use crate::{
+    check::{Ending, examine, outcome_words},
+    fault::Fault,
+    page::chosen,
+    team::{Team, Teams},
+    terminal::{Terminal, plain},
+    walk::{show, unreadable},
+};
+
+/// Digits of a figure.
+const DIGITS: usize = 4;
 
 /// What `explain` is asked.
 #[derive(Args, Clone, Debug)]
 pub struct Options {
-    /// Figure, as `phase_margin`; without one, all are listed
+    /// Figure, as `phase_margin` or "gain_at 2 MHz"; without one, all are listed
     #[arg(value_name = "FIGURE")]
     pub figure: Option<String>,
+    /// The note whose numbers are put in place
+    #[arg(value_name = "NOTE")]
+    pub note: Option<PathBuf>,
+    /// The stage, by its name or as links write it; without one, every stage of the note
+    #[arg(long, value_name = "NAME", requires = "note")]
+    pub stage: Option<String>,
+    /// Folder of part files, instead of the one that stageleaf.toml names
+    #[arg(long, value_name = "DIR", requires = "note")]
+    pub shelf: Option<PathBuf>,
 }
 
-/// The explanation.
-///
-/// # Errors
-/// When there is no such figure.
-pub fn text(options: &Options) -> Result<String, Fault> {
-    let Some(given) = &options.figure else { return Ok(list()) };
-    // `gain_at 20 kHz`, as limits write it, is asked about as well.
+/// Explains.
+pub fn run(options: &Options, terminal: &mut Terminal) -> Ending {
+    let (text, faults) = text(options);
+    terminal.out(&text);
+    for fault in &faults {
+        terminal.complain(&fault.to_string());
+    }
+    if faults.is_empty() { Ending::Good } else { Ending::BadInput }
+}
+
+/// The explanation, and what could not be explained.
+#[must_use]
+pub fn text(options: &Options) -> (String, Vec<Fault>) {
+    let Some(given) = &options.figure else { return (list(), Vec::new()) };
+    let given = given.trim();
+    // Without a note a figure may be named without the frequency that it takes.
     let id = given.split_whitespace().next().unwrap_or_default();
-    let figure = Figure::ALL.iter().find(|f| f.id() == id).ok_or_else(|| unknown(id))?;
+    let Some(figure) = Figure::ALL.iter().copied().find(|f| f.id() == id) else { return (String::new(), vec![unknown(id)]) };
+    let query = if given == id {
+        None
+    } else {
+        match parse_query(given) {
+            Ok(query) => Some(query),
+            Err(trouble) => return (String::new(), vec![refused(&trouble)]),
+        }
+    };
+    let mut text = general(figure);
+    let mut faults = Vec::new();
+    match &options.note {
+        Some(note) => stages(options, note, figure, query, &mut text, &mut faults),
+        None => omissions(figure, &mut text),
+    }
+    (text, faults)
+}
+
+fn refused(trouble: &stageleaf_note::Trouble) -> Fault {
+    Fault::Path {
+        path: "explain".to_owned(),
+        message: trouble.message.clone(),
+        allowed: Some(trouble.allowed.clone()),
+        attempt: trouble.attempt.as_ref().map(|a| format!("stageleaf explain \"{a}\"")),
+    }
+}
+
+/// What holds for every stage.
+fn general(figure: Figure) -> String {
     let mut text = format!("{}: {}\n\n{}\n\n", figure.id(), figure.title(), figure.meaning());
-    let write = |text: &mut String, label: &str, value: &str| writeln!(text, "  {label:<10}{value}").expect("a string takes all");
-    write(&mut text, "unit", unit_words(figure.dimension()));
-    for (kinds, dimension) in other_dimensions(*figure) {
-        write(&mut text, "", &format!("{} in a stage of kind {kinds}", unit_words(dimension)));
+    let definition = figure.definition();
+    labelled(&mut text, "formula", definition.formula);
+    labelled(&mut text, "source", definition.source);
+    labelled(&mut text, "unit", unit_words(figure.dimension()));
+    for (kinds, dimension) in other_dimensions(figure) {
+        labelled(&mut text, "", &format!("{} in a stage of kind {kinds}", unit_words(dimension)));
     }
-    write(&mut text, "group", group_words(figure.group()));
+    labelled(&mut text, "group", group_words(figure.group()));
     match figure.argument() {
-        Argument::None => write(&mut text, "limit", &format!("{} = \"…\"", figure.id())),
-        Argument::Frequency => write(&mut text, "limit", &format!("\"{} 20 kHz\" = \"…\": it takes a frequency", figure.id())),
+        Argument::None => labelled(&mut text, "limit", &format!("{} = \"…\"", figure.id())),
+        Argument::Frequency => labelled(&mut text, "limit", &format!("\"{} 20 kHz\" = \"…\": it takes a frequency", figure.id())),
     }
-    write!(text, "\nNot modelled, for this and every other figure:\n").expect("a string takes all");
-    for what in NOT_MODELLED {
-        writeln!(text, "  {what}").expect("a string takes all");
+    text
+}
+
+fn omissions(figure: Figure, text: &mut String) {
+    let moving: BTreeSet<&str> = not_modelled_for(figure.group()).collect();
+    text.push_str("\nNot modelled, and able to move this figure:\n");
+    for what in NOT_MODELLED.iter().map(|o| o.what).filter(|w| moving.contains(w)) {
+        line(text, format_args!("  {what}"));
     }
-    Ok(text)
+    let others: Vec<&str> = NOT_MODELLED.iter().map(|o| o.what).filter(|w| !moving.contains(w)).collect();
+    line(text, format_args!("Not modelled, for other figures: {}", others.join(", ")));
+}
+
+fn stages(options: &Options, note: &std::path::Path, figure: Figure, query: Option<Query>, text: &mut String, faults: &mut Vec<Fault>) {
+    let bytes = match fs::read(note) {
+        Ok(bytes) => bytes,
+        Err(error) => return faults.push(unreadable(note, &error)),
+    };
+    let mut teams = Teams::new(options.shelf.clone());
+    let team = teams.of(note);
+    faults.extend(teams.take_faults());
+    if team.settings_lost {
+        return;
+    }
+    let file = show(note);
+    let examined = examine(&bytes, &file, &team);
+    faults.extend(examined.faults);
+    let blocks: Vec<&Block> = examined.stages.iter().map(|s| &s.block).collect();
+    let blocks = match chosen(&blocks, options.stage.as_deref(), &file) {
+        Ok(blocks) => blocks,
+        // What is wrong with its blocks has been told.
+        Err(_) if blocks.is_empty() && !faults.is_empty() => return,
+        Err(fault) => return faults.push(fault),
+    };
+    for block in blocks {
+        if let Err(fault) = stage(block, &team, figure, query, text) {
+            faults.push(fault);
+        }
+    }
+    omissions(figure, text);
+}
+
+/// The figure of one stage: every one that the note asks for, where it takes a frequency and none was named.
+fn stage(block: &Block, team: &Team, figure: Figure, query: Option<Query>, text: &mut String) -> Result<(), Fault> {
+    let mut stage = block.stage.clone();
+    let at = format!("{}:{}", block.file, block.line);
+    let queries: Vec<Query> = match (query, figure.argument()) {
+        (Some(query), _) => vec![query],
+        (None, Argument::None) => vec![Query::of(figure)],
+        (None, Argument::Frequency) => stage.limits.iter().map(|l| l.query).filter(|q| q.figure == figure).collect(),
+    };
+    if queries.is_empty() {
+        let message = format!("`{}` needs a frequency, and no limit of the stage “{}” states one", figure.id(), plain(&stage.name));
+        return Err(Fault::Path {
+            path: at,
+            message,
+            allowed: Some("a figure with its frequency".to_owned()),
+            attempt: Some(format!("stageleaf explain \"{} 20 kHz\" {}", figure.id(), block.file)),
+        });
+    }
+    for &query in &queries {
+        if !stage.limits.iter().any(|l| l.query == query) {
+            stage.limits.push(Limit { query, bound: Bound::Report, thin: Thin::Fraction(0.0) });
+        }
+    }
+    let report = stageleaf_math::analyse(&stage).map_err(|error| Fault::path(at.clone(), error.to_string()))?;
+    let part_file = team.shelf.find(&block.stage.part.id).map_or("", |p| p.file.as_str());
+    line(text, format_args!("\n{at}  {}  ({}, {})", plain(&stage.name), stage.kind.id(), plain(&stage.part.id)));
+    for query in queries {
+        if let Some(row) = report.figures.iter().find(|r| r.query == query) {
+            worked(row, &report, part_file, text);
+        }
+    }
+    Ok(())
+}
+
+fn worked(row: &FigureRow, report: &Report, part_file: &str, text: &mut String) {
+    let d = row.dimension;
+    labelled(text, "figure", &query_text(row.query));
+    labelled(text, "network", &outcome_words(&row.nominal, d, part_file));
+    if let Some((low, high)) = row.range {
+        let basis = row.basis.map_or(String::new(), |b| format!(" ({})", b.word()));
+        labelled(text, "worst case", &format!("{} to {}{basis}", quantity_text(low, d, DIGITS), quantity_text(high, d, DIGITS)));
+    }
+    let forms: Vec<&Working> = report.working.iter().filter(|w| w.query == row.query).collect();
+    if forms.is_empty() && row.nominal.value().is_some() {
+        labelled(text, "handbook", "no closed form for this stage: the network decides alone");
+    }
+    for w in forms {
+        labelled(text, "handbook", w.formula);
+        if !w.numbers.is_empty() {
+            labelled(text, "", &format!("{} = {}", in_place(w), quantity_text(w.handbook, d, DIGITS)));
+        }
+        let of = match w.against {
+            Against::Nominal => "the network's value",
+            Against::Least => "the network's least value",
+        };
+        match difference(w).as_deref() {
+            None => {}
+            Some(SAME) => labelled(text, "", &format!("{of} is the same")),
+            Some(off) => labelled(text, "", &format!("{of} differs by {off}{}", why(w))),
+        }
+        labelled(text, "", &format!("from: {}", w.source));
+    }
+}
+
+fn why(w: &Working) -> String {
+    if w.difference.is_empty() { String::new() } else { format!(": {}", w.difference) }
+}
+
+fn labelled(text: &mut String, label: &str, value: &str) {
+    line(text, format_args!("  {label:<12}{value}"));
+}
+
+fn line(text: &mut String, words: std::fmt::Arguments<'_>) {
+    writeln!(text, "{words}").expect("a string takes all");
 }
 
 /// Kinds on which the figure measures something else, and what: a gain in Ω.

@@ -114,9 +114,10 @@ fn element(block: &Block, team: &Team, settings: Option<&SettingsText>) -> Resul
     Ok(format!("<div class=\"stageleaf\">{element}</div>\n"))
 }
 
-fn chosen<'a>(blocks: &[&'a Block], wanted: Option<&str>, file: &str) -> Result<Vec<&'a Block>, Fault> {
+/// The stages of a note that were asked for: all, or the one of that name.
+pub(crate) fn chosen<'a>(blocks: &[&'a Block], wanted: Option<&str>, file: &str) -> Result<Vec<&'a Block>, Fault> {
     if blocks.is_empty() {
-        return Err(Fault::path(file, "there is no stage in this note that a page could show"));
+        return Err(Fault::path(file, "there is no stage in this note that could be shown"));
     }
     let Some(wanted) = wanted else { return Ok(blocks.to_vec()) };
     let found: Vec<&Block> = blocks.iter().filter(|b| b.stage.name == wanted || slug(&b.stage.name) == slug(wanted)).copied().collect();

@@ -337,6 +337,39 @@ fn rails<'a>(solution: &'a Solution<'_>, amplifier: usize) -> Result<Rails<'a>, 
     })
 }
 
+/// One side of the room at a pin, as one works it out by hand.
+#[derive(Clone, Copy, Debug)]
+pub struct Side {
+    /// The rail, V.
+    pub rail: f64,
+    /// Headroom at the peak current, V.
+    pub headroom: f64,
+    /// Steady part at the pin, V.
+    pub dc: f64,
+    /// Peak at the pin, V.
+    pub peak: f64,
+    /// What is left, V.
+    pub room: f64,
+}
+
+/// Room above and below by hand, without DC errors: for the working of a stage of one amplifier.
+pub fn simple_room(solution: &Solution<'_>) -> Option<(Side, Side)> {
+    let [drive] = drives(solution) else { return None };
+    let rails = rails(solution, 0).ok()?;
+    let (up, up_stated) = headroom(rails.above, rails.position, drive.i0 + drive.ip);
+    let (down, down_stated) = headroom(rails.below, rails.position, drive.ip - drive.i0);
+    let side = |rail, headroom, room| Side { rail, headroom, dc: drive.v0, peak: drive.vp, room };
+    (up_stated && down_stated).then(|| {
+        let above = side(rails.high, up, rails.high - up - drive.v0 - drive.vp);
+        (above, side(rails.low, down, drive.v0 - drive.vp - down - rails.low))
+    })
+}
+
+/// The rails in this build, V.
+pub fn supplies(solution: &Solution<'_>) -> Option<(f64, f64)> {
+    solution.model.parameters.supply().map(|(high, low)| (solution.values[high], solution.values[low]))
+}
+
 fn clip(solution: &Solution<'_>, amplifier: usize, drive: &Drive) -> Outcome {
     match rails(solution, amplifier) {
         Err(outcome) => outcome,

@@ -60,7 +60,7 @@ pub static SPEC: Spec = Spec {
     noise_gain: |_| 1.0,
     working: |stage| {
         if largest(stage).is_finite() {
-            vec![ideal("|G| = Rf·Cin/(Rin·Cin + Rf·Cf)", &["Rf", "Cin", "Rin", "Cf"], stage)]
+            vec![ideal("G = −Rf·Cin/(Rin·Cin + Rf·Cf)", &["Rf", "Cin", "Rin", "Cf"], stage)]
         } else {
             Vec::new()
         }

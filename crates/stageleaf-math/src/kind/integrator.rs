@@ -57,11 +57,11 @@ pub static SPEC: Spec = Spec {
     noise_gain: |_| 1.0,
     working: |stage| {
         if stage.component("Rf").is_some() {
-            let mut lines = vec![ideal("G = −Rf/Rin at DC", &["Rf", "Rin"], stage)];
+            let mut lines = vec![ideal("G = −Rf/Rin, at DC", &["Rf", "Rin"], stage)];
             lines.extend(corner(stage));
             lines
         } else {
-            vec![ideal("|G| = 1 at f = 1/(2π·Rin·Cf)", &["Rin", "Cf"], stage)]
+            vec![ideal("G = −1, |G| = 1 at f = 1/(2π·Rin·Cf)", &["Rin", "Cf"], stage)]
         }
     },
 };

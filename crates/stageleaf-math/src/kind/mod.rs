@@ -27,7 +27,7 @@ use crate::{
     handbook,
     network::{Builder, Drive},
     part::PartFigure,
-    report::{Outcome, Working},
+    report::{Against, Outcome, Working},
     stage::Stage,
     units::{Farads, Hertz, Ohms},
 };
@@ -183,15 +183,26 @@ fn line(
         numbers,
         handbook,
         exact: Outcome::Undetermined(Vec::new()),
+        against: Against::Nominal,
         source: "derived here for an ideal amplifier",
         difference,
     }
 }
 
-/// Components with their nominal values, for a line of the working.
+/// Components that the stage has, with their nominal values, for a line of the working; `K` is the ideal gain.
 fn numbers(stage: &Stage, names: &[&'static str]) -> Vec<(&'static str, f64, Dimension)> {
     let dimension = |n: &str| stage.kind.components().iter().find(|c| c.name == n).map_or(Dimension::Number, |c| c.dimension);
-    names.iter().map(|&n| (n, nominal(stage, n), dimension(n))).collect()
+    let number = |&n: &&'static str| match n {
+        "K" => Some((n, (stage.kind.spec().ideal_gain)(stage), Dimension::Number)),
+        _ => stage.component(n).map(|c| (n, c.nominal, dimension(n))),
+    };
+    names.iter().filter_map(number).collect()
+}
+
+/// The gain of a Sallen–Key section's amplifier: a follower's without the divider.
+fn amplification(stage: &Stage) -> Working {
+    let formula = if stage.component("Rf").is_some() { "K = 1 + Rf/Rg" } else { "K = 1, the amplifier is a follower" };
+    ideal(formula, &["Rf", "Rg"], stage)
 }
 
 /// What a real amplifier and its surroundings do to an ideal gain.
@@ -207,9 +218,10 @@ const FINITE_BANDWIDTH: &str = "the amplifier's finite gain-bandwidth product, o
 
 /// Frequency and Q of a second-order section.
 fn second_order(stage: &Stage, formulas: [&'static str; 2], names: &[&'static str], f0: f64, q: f64) -> [Working; 2] {
+    let within = |formula: &str| numbers(stage, names).into_iter().filter(|n| formula.contains(n.0)).collect();
     [
-        line(Figure::NaturalFrequency, formulas[0], numbers(stage, names), f0, FINITE_BANDWIDTH),
-        line(Figure::Q, formulas[1], numbers(stage, names), q, FINITE_BANDWIDTH),
+        line(Figure::NaturalFrequency, formulas[0], within(formulas[0]), f0, FINITE_BANDWIDTH),
+        line(Figure::Q, formulas[1], within(formulas[1]), q, FINITE_BANDWIDTH),
     ]
 }
 
@@ -228,6 +240,7 @@ fn closed_loop_edge(stage: &Stage, noise_gain: f64) -> Working {
         numbers: vec![("GBW", gbw, Dimension::Frequency), ("NG", noise_gain, Dimension::Number)],
         handbook: handbook::closed_loop_edge(Hertz(gbw), noise_gain).map_or(f64::NAN, |f| f.0),
         exact: Outcome::Undetermined(Vec::new()),
+        against: Against::Nominal,
         source: "common practice, no source",
         difference: "higher poles, capacitances and load; the rule leaves out all but the dominant pole",
     }
@@ -243,6 +256,7 @@ fn corner(stage: &Stage) -> Option<Working> {
         numbers: vec![("Rf", rf, Dimension::Resistance), ("Cf", cf, Dimension::Capacitance)],
         handbook: handbook::corner(Ohms(rf), Farads(cf)).map_or(f64::NAN, |f| f.0),
         exact: Outcome::Undetermined(Vec::new()),
+        against: Against::Nominal,
         source: "derived here: the corner of Rf ∥ Cf",
         difference: "the amplifier's own bandwidth; a non-inverting gain falls to 1 and not to 0",
     })

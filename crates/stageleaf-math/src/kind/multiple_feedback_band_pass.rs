@@ -67,7 +67,11 @@ pub static SPEC: Spec = Spec {
         let mut lines = vec![ideal("G = −(R3/R1)·C2/(C1 + C2)", &["R3", "R1", "C1", "C2"], stage)];
         lines.extend(second_order(
             stage,
-            ["f0 = 1/(2π·√(R3·(R1 ∥ R2)·C1·C2))", "Q = ω0·R3·C1·C2/(C1 + C2)"],
+            if stage.component("R2").is_some() {
+                ["f0 = 1/(2π·√(R3·(R1 ∥ R2)·C1·C2))", "Q = √(R3·C1·C2/(R1 ∥ R2))/(C1 + C2)"]
+            } else {
+                ["f0 = 1/(2π·√(R3·R1·C1·C2))", "Q = √(R3·C1·C2/R1)/(C1 + C2)"]
+            },
             &["R1", "R2", "R3", "C1", "C2"],
             omega / TAU,
             omega * r3 * c1 * c2 / (c1 + c2),

@@ -66,7 +66,7 @@ pub static SPEC: Spec = Spec {
         let mut lines = vec![ideal("G = −R2/R1", &["R2", "R1"], stage)];
         lines.extend(second_order(
             stage,
-            ["f0 = 1/(2π·√(R2·R3·C1·C2))", "1/Q = ω0·C2·(R2 + R3 + R2·R3/R1)"],
+            ["f0 = 1/(2π·√(R2·R3·C1·C2))", "Q = √(R2·R3·C1/C2)/(R2 + R3 + R2·R3/R1)"],
             &["R1", "R2", "R3", "C1", "C2"],
             omega / TAU,
             1.0 / (omega * c2 * (r2 + r3 + r2 * r3 / r1)),

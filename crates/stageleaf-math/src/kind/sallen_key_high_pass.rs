@@ -72,11 +72,11 @@ pub static SPEC: Spec = Spec {
     working: |stage| {
         let [r1, r2, c1, c2] = ["R1", "R2", "C1", "C2"].map(|n| nominal(stage, n));
         let root = libm::sqrt(r1 * r2 * c1 * c2);
-        let mut lines = vec![ideal("G = K = 1 + Rf/Rg in the pass band", &["Rf", "Rg"], stage)];
+        let mut lines = vec![amplification(stage)];
         lines.extend(second_order(
             stage,
             ["f0 = 1/(2π·√(R1·R2·C1·C2))", "Q = √(R1·R2·C1·C2)/(R1·(C1 + C2) + R2·C2·(1 − K))"],
-            &["R1", "R2", "C1", "C2"],
+            &["R1", "R2", "C1", "C2", "K"],
             1.0 / (TAU * root),
             root / (r1 * (c1 + c2) + r2 * c2 * (1.0 - gain(stage))),
         ));

@@ -7,7 +7,8 @@ use stageleaf_note::{query_anchor, query_text};
 use super::{limits::basis_cell, needs, scroll, title, value};
 use crate::Sheet;
 
-const GROUPS: [(Group, &str); 5] = [
+/// The groups with their headings.
+pub const GROUPS: [(Group, &str); 5] = [
     (Group::SmallSignal, "Small signal"),
     (Group::Dc, "DC"),
     (Group::Noise, "Noise"),

@@ -13,7 +13,7 @@ pub fn model(sheet: &Sheet) -> Markup {
     html! {
         summary { "Not modelled" @if ideal.iter().any(|c| matches!(c, Caution::TakenAsIdeal(_))) { ", taken as ideal" }
             @if ideal.iter().any(|c| matches!(c, Caution::TakenAsExact(_))) { ", taken as exact" } }
-        p { @for (i, item) in NOT_MODELLED.iter().enumerate() { @if i > 0 { ", " } (item) } "." }
+        p { @for (i, item) in NOT_MODELLED.iter().enumerate() { @if i > 0 { ", " } (item.what) } "." }
         @if !ideal.is_empty() { ul { @for c in ideal { li { (words::caution_text(c)) } } } }
     }
 }

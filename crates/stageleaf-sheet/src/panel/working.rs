@@ -1,89 +1,69 @@
-//! The working: the handbook's formula, numbers in place, beside what the network gives.
+//! The working: how each figure is computed, the handbook's formula with numbers in place beside what the network gives, and what
+//! is left out.
 
 use maud::{Markup, html};
 use stageleaf_math::{
-    dimension::Dimension,
-    report::{Outcome, Working},
+    definition::not_modelled_for,
+    report::{Against, FigureRow, Working},
 };
-use stageleaf_note::{format, letters::is_letter_or_digit, print::trimmed};
+use stageleaf_note::worked::{SAME, difference, in_place};
 
-use super::{outcome, title, value};
+use super::{figures::GROUPS, outcome, title, value};
 use crate::Sheet;
 
 /// The section.
 pub fn working(sheet: &Sheet) -> Markup {
+    // A figure that does not apply has no working.
+    let shown: Vec<&FigureRow> = sheet.report.figures.iter().filter(|row| row.nominal.value().is_some()).collect();
+    let mut sources: Vec<&str> = Vec::new();
+    for row in &shown {
+        let source = row.query.figure.definition().source;
+        if !sources.contains(&source) {
+            sources.push(source);
+        }
+    }
+    let mark = |source: &str| sources.iter().position(|s| *s == source).map_or(0, |i| i + 1);
     html! {
         summary { "Working" }
-        @if sheet.report.working.is_empty() { p class="aside" { "No closed form applies to this stage as it stands." } }
-        @for w in &sheet.report.working {
-            @let d = w.dimension;
-            div class="working" {
-                p class="caption" role="heading" aria-level="3" { (title(sheet, w.query)) }
-                p class="formula" { samp { (w.formula) } }
-                @if !w.numbers.is_empty() {
-                    p class="formula" { samp { (in_place(w)) " = " (value(w.handbook, d)) } }
+        p class="aside" { "Each figure comes from the stage's network; handbook forms stand beside it and decide nothing." }
+        @for (group, name) in GROUPS {
+            @if shown.iter().any(|row| row.query.figure.group() == group) {
+                p class="caption group" role="heading" aria-level="3" { (name) }
+                p class="aside" { "Not modelled, and able to move these figures: " (not_modelled_for(group).collect::<Vec<_>>().join(", ")) "." }
+                @for row in shown.iter().filter(|row| row.query.figure.group() == group) {
+                    @let definition = row.query.figure.definition();
+                    div class="working" {
+                        p class="caption" role="heading" aria-level="4" { (title(sheet, row.query)) ": " (outcome(&row.nominal, row.dimension)) }
+                        p class="formula" { samp { (definition.formula) } " (source " (mark(definition.source)) ")" }
+                        @for w in sheet.report.working.iter().filter(|w| w.query == row.query) { (beside(w)) }
+                    }
                 }
-                dl {
-                    div { dt { "handbook" } dd { (value(w.handbook, d)) } }
-                    div { dt { "network" } dd { (outcome(&w.exact, d)) } }
-                    @if let Some(text) = difference(w, d) { div { dt { "difference" } dd { (text) } } }
-                }
-                @if !w.difference.is_empty() { p { "Why they differ: " (w.difference) } }
-                p class="aside" { "Source: " (w.source) }
             }
         }
+        p class="caption" role="heading" aria-level="3" { "Sources" }
+        ol class="aside" { @for source in &sources { li { (source) } } }
     }
 }
 
-fn number(v: f64, d: Dimension) -> String {
-    if v.is_nan() { "–".into() } else { trimmed(v, d, 4) }
-}
-
-/// What the formula says of the figure, its symbols replaced by their values.
-fn in_place(w: &Working) -> String {
-    // The left side names the figure; only what follows the last equals sign is computed.
-    let (head, body) = w.formula.rsplit_once('=').unwrap_or(("", w.formula));
-    let mut text = String::new();
-    if let Some(name) = head.split('=').next().map(str::trim).filter(|n| !n.is_empty()) {
-        text.push_str(name);
-        text.push_str(" = ");
-    }
-    let mut rest = body.trim();
-    while !rest.is_empty() {
-        let end = rest.find(|c: char| !is_symbol(c)).unwrap_or(rest.len());
-        if end == 0 {
-            let next = rest.find(is_symbol).unwrap_or(rest.len());
-            text.push_str(&rest[..next]);
-            rest = &rest[next..];
-            continue;
+/// A closed form beside the network's value.
+fn beside(w: &Working) -> Markup {
+    let d = w.dimension;
+    html! {
+        p class="formula" { samp { (w.formula) } }
+        @if !w.numbers.is_empty() { p class="formula" { samp { (in_place(w)) " = " (value(w.handbook, d)) } } }
+        dl {
+            div { dt { "handbook" } dd { (value(w.handbook, d)) } }
+            div { dt { (whose(w)) } dd { (outcome(&w.exact, d)) } }
+            @if let Some(text) = difference(w) { div { dt { "difference" } dd { (text) } } }
         }
-        let (token, after) = rest.split_at(end);
-        match w.numbers.iter().find(|(s, ..)| *s == token) {
-            Some((_, v, d)) => text.push_str(&number(*v, *d)),
-            None => text.push_str(token),
-        }
-        rest = after;
+        @if !w.difference.is_empty() && difference(w).is_some_and(|d| d != SAME) { p { "Why they differ: " (w.difference) "." } }
+        p class="aside" { "Handbook form: " (w.source) "." }
     }
-    text
 }
 
-/// Letters, digits, underscore, and the subscripts that the field writes.
-fn is_symbol(c: char) -> bool {
-    is_letter_or_digit(c) || c == '_'
-}
-
-/// How far the network's value lies from the handbook's.
-fn difference(w: &Working, d: Dimension) -> Option<String> {
-    let Outcome::Value(exact) = w.exact else { return None };
-    let off = exact - w.handbook;
-    if !off.is_finite() {
-        return None;
-    }
-    match d {
-        Dimension::Angle => Some(format(off, d, 2)),
-        Dimension::Level if w.handbook > 0.0 && exact > 0.0 => Some(format(exact / w.handbook, d, 2)),
-        Dimension::Temperature => Some(format(off, Dimension::TemperatureDifference, 2)),
-        _ if w.handbook.abs() > 0.0 => Some(format(off / w.handbook.abs(), Dimension::Fraction, 2)),
-        _ => None,
+const fn whose(w: &Working) -> &'static str {
+    match w.against {
+        Against::Nominal => "network",
+        Against::Least => "network, least",
     }
 }

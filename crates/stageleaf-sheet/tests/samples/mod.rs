@@ -274,6 +274,7 @@ pub fn report(kind: Kind) -> Report {
             numbers: vec![("Rf", 91e3, Dimension::Resistance), ("Rg", 4.7e3, Dimension::Resistance)],
             handbook: 20.36,
             exact: Outcome::Value(20.31),
+            against: stageleaf_math::report::Against::Nominal,
             source: "derived here: the two resistors are a divider",
             difference: "the amplifier's gain is finite, and the source's resistance counts",
         }],
