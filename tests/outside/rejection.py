@@ -4,7 +4,7 @@
     rejection.py write|check [FILE]
 
 In the row of each amplifier's controlled source stands A*(v+ - v- + k*(v+ + v-)/2 + w), with k = +-(1 + jf/fc)/CMRR and w what the
-rejection of a supply, (1 + jf/fc)/PSRR, lets in; neither lets in more than all of it. All signs are tried. Networks are those of
+rejection of a supply, (1 + jf/fc)/PSRR, lets in; |k| ends at 1. All signs are tried. Networks are those of
 oracle_kinds_network.py, and a follower and a non-inverting stage by their documentation.
 """
 import itertools
@@ -58,7 +58,7 @@ class Solved:
     def let_in(self, k, name):
         ratio, corner = (mp.mpf(x) for x in self.rejections[k][name])
         x = mp.mpc(1, self.f / corner) / ratio
-        return x / max(abs(x), 1)
+        return x / max(abs(x), 1) if name == "cmrr" else x
 
     def out(self, rows):
         rhs = mp.matrix(self.net.size, 1)

@@ -2,7 +2,7 @@
 //!
 //! # Formula
 //! In series with each amplifier's input acts `ε = κ·(v₊ + v₋)/2 + Σ v_rail/PSRR`, with `κ = ±1/CMRR`; all rejections fall with one
-//! corner, `1/CMRR(f) = (1 + jf/fc)/CMRR(0)`, down to 1 and no further. The voltages at the inputs follow the drives and every `ε`
+//! corner, `1/CMRR(f) = (1 + jf/fc)/CMRR(0)`, that of the common mode down to 1 and no further. The voltages at the inputs follow the drives and every `ε`
 //! in turn, so the errors of all amplifiers are solved together, with transfers from the nodal network.
 //!
 //! Signs are unknown. Gains take them as parameters of the spread, 0 at nominal values. The stage's rejections are the worst over
@@ -136,12 +136,11 @@ fn worst(solution: &Solution<'_>, omega: f64, of: impl Fn(&Errors<'_, '_>) -> f6
     (0..1_usize << count).map(|choice| of(&Errors::new(solution, &signs(choice), omega))).fold(f64::INFINITY, f64::min)
 }
 
-/// What an amplifier's rejection leaves of a volt at a frequency: never more than all of it.
+/// What an amplifier's rejection leaves of a volt at a frequency.
 fn left(solution: &Solution<'_>, amplifier: usize, ratio: PartFigure, corner: PartFigure, frequency: f64) -> Result<Complex64, Outcome> {
     let part = |figure| solution.part_of(amplifier, figure).ok_or_else(|| Outcome::Undetermined(vec![Need::Part(figure)]));
     let ratio = part(ratio)?;
-    let left = if frequency > 0.0 { Complex64::new(1.0, frequency / part(corner)?) / ratio } else { Complex64::new(1.0 / ratio, 0.0) };
-    Ok(left / magnitude(left).max(1.0))
+    Ok(if frequency > 0.0 { Complex64::new(1.0, frequency / part(corner)?) / ratio } else { Complex64::new(1.0 / ratio, 0.0) })
 }
 
 /// The common-mode errors of all amplifiers at a frequency, solved together.
@@ -157,7 +156,11 @@ struct Errors<'s, 'm> {
 impl<'s, 'm> Errors<'s, 'm> {
     fn new(solution: &'s Solution<'m>, signs: &[f64], omega: f64) -> Self {
         let frequency = solution.hertz(omega);
-        let left = |a| left(solution, a, PartFigure::Cmrr, PartFigure::CmrrCorner, frequency).unwrap_or(Complex64::new(0.0, 0.0));
+        // An input that answered to the common mode more than to the difference would be no input.
+        let left = |a| match left(solution, a, PartFigure::Cmrr, PartFigure::CmrrCorner, frequency) {
+            Ok(left) => left / magnitude(left).max(1.0),
+            Err(_) => Complex64::new(0.0, 0.0),
+        };
         let kappa: Vec<Complex64> = signs.iter().enumerate().map(|(a, sign)| left(a) * sign).collect();
         let one = |a: usize, b: usize| Complex64::new(if a == b { 1.0 } else { 0.0 }, 0.0);
         let element = |a: usize, b: usize| {
