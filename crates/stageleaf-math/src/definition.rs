@@ -44,6 +44,8 @@ impl Figure {
             Self::OffsetDrift => ("dV/dT = Σ |∂V_out/∂e|·|de/dT| over all DC errors e", NODAL),
             Self::GainDrift => ("TC = Σ |∂ln G/∂ln x|·|TC_x| over all components x", NODAL),
             Self::StageCmrr => ("CMRR = |G|/|G_cm| at DC", NODAL),
+            Self::StageCmrrAt => ("CMRR = |H(j2πf)|/|H_cm(j2πf)|", NODAL),
+            Self::StagePsrrAt => ("PSRR = |H(j2πf)|/|H_s(j2πf)|, the worse rail s", NODAL),
             Self::StagePsrr => ("PSRR = |ΔV_s·G/ΔV_out| at DC, the worse rail", NODAL),
             Self::RippleOutput => ("V = Σ |H_s(j2πf)|·V_ripple over both rails s", NODAL),
             Self::OutputNoise => ("v = √∫S(f)df over the band", NOISE),

@@ -136,7 +136,15 @@ impl<'s> Facts<'s> {
         // What a definition says, with its numbers in place.
         let defined = |formula, numbers, value| line(formula, numbers, value, "definition", "");
         match query.figure {
-            F::Gain | F::Bandwidth | F::LowCutoff | F::InputRangeMargin | F::ResistorDissipation | F::GainMargin | F::RippleOutput => None,
+            F::StageCmrrAt
+            | F::StagePsrrAt
+            | F::Gain
+            | F::Bandwidth
+            | F::LowCutoff
+            | F::InputRangeMargin
+            | F::ResistorDissipation
+            | F::GainMargin
+            | F::RippleOutput => None,
             F::GainError => {
                 let (ng, open) = (self.flat?, self.part(P::OpenLoop));
                 line(
