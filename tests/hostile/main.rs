@@ -4,6 +4,7 @@
 //! `expected`, whole, as a person wrote them. What a repository cannot hold well (odd bytes, large files, links, empty folders)
 //! is made here.
 
+mod formats;
 mod json;
 mod made;
 mod outlets;

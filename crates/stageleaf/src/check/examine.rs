@@ -17,7 +17,7 @@ use stageleaf_math::{
     report::{Caution, FigureRow, LimitRow, Outcome, Report},
     stage::Stage,
 };
-use stageleaf_note::{Block, Problem, Quote, Shelf, ShelfPart, quote_agrees, quote_for, read_note, slug};
+use stageleaf_note::{Block, Field, Problem, Quote, Shelf, ShelfPart, quote_agrees, quote_for, read_note, slug};
 
 use crate::{fault::Fault, team::Team};
 
@@ -60,10 +60,14 @@ impl ExaminedStage {
         &self.report.limits[..own]
     }
 
+    /// Where the note states its limits, in their order.
+    pub fn limits_fields(&self) -> impl Iterator<Item = &Field> {
+        self.block.fields.iter().filter(|f| f.path.starts_with("limits."))
+    }
+
     /// The note's own limits, judged, with the words in which the note states them.
     pub fn limits_in_words(&self) -> impl Iterator<Item = (&LimitRow, &str)> {
-        let words = self.block.fields.iter().filter(|f| f.path.starts_with("limits.")).map(|f| f.text.as_str());
-        self.limits().iter().zip(words)
+        self.limits().iter().zip(self.limits_fields().map(|f| f.text.as_str()))
     }
 
     /// The figures.
@@ -84,7 +88,9 @@ impl ExaminedStage {
     }
 }
 
-const fn forbids(caution: &Caution) -> bool {
+/// Whether a caution says that the stage cannot work as stated.
+#[must_use]
+pub const fn forbids(caution: &Caution) -> bool {
     matches!(
         caution,
         Caution::Oscillates
@@ -97,7 +103,7 @@ const fn forbids(caution: &Caution) -> bool {
 }
 
 /// A quote and what its figure is now.
-#[derive(Debug)]
+#[derive(Clone, Debug)]
 pub struct QuoteState {
     /// The quote.
     pub quote: Quote,

@@ -1,7 +1,11 @@
 //! `check`: every stage of every note against its limits, and every number that the prose quotes against its figure.
 
 mod examine;
+mod findings;
+mod github;
 mod json;
+mod junit;
+mod markdown;
 mod rewrite;
 mod text;
 
@@ -27,6 +31,12 @@ pub enum Format {
     Text,
     /// For programs: version 1 of the JSON form, on standard output.
     Json,
+    /// For test reports: a case for each limit and each quote.
+    Junit,
+    /// Annotations in a workflow's log, at the lines of the notes, the worst first.
+    Github,
+    /// A summary for a review, the worst first.
+    Markdown,
 }
 
 /// What `check` is asked.
@@ -124,12 +134,11 @@ impl Counts {
 pub fn run(options: &Options, terminal: &mut Terminal) -> Ending {
     let mut teams = Teams::new(options.shelf.clone());
     let mut counts = Counts::default();
-    let mut report = json::Document::default();
-    let as_json = options.format == Format::Json;
-    let tell = |faults: &[Fault], counts: &mut Counts, terminal: &mut Terminal, report: &mut json::Document| {
+    let mut report = Collected::of(options.format);
+    let tell = |faults: &[Fault], counts: &mut Counts, terminal: &mut Terminal, report: &mut Collected| {
         counts.faults += faults.len();
         for fault in faults {
-            if as_json { report.fault(fault) } else { terminal.complain(&format!("{fault}\n")) }
+            report.fault(fault, terminal);
         }
     };
 
@@ -167,20 +176,67 @@ pub fn run(options: &Options, terminal: &mut Terminal) -> Ending {
             }
         }
         counts.add(&note);
-        if as_json {
-            report.note(&note);
-        } else {
-            terminal.out(&text::note(&note, terminal.colour()));
-            for fault in &note.faults {
-                terminal.complain(&format!("{fault}\n"));
+        report.note(&note, terminal);
+    }
+    terminal.clear();
+    report.close(&counts, terminal);
+    counts.ending()
+}
+
+/// What a run tells, in the form that was asked for: at once, or at its end.
+enum Collected {
+    Text,
+    Json(json::Document),
+    Junit(junit::Document),
+    Findings(Vec<findings::Finding>, fn(&[findings::Finding], &Counts) -> String),
+}
+
+impl Collected {
+    fn of(format: Format) -> Self {
+        match format {
+            Format::Text => Self::Text,
+            Format::Json => Self::Json(json::Document::default()),
+            Format::Junit => Self::Junit(junit::Document::default()),
+            Format::Github => Self::Findings(Vec::new(), github::text),
+            Format::Markdown => Self::Findings(Vec::new(), markdown::text),
+        }
+    }
+
+    fn fault(&mut self, fault: &Fault, terminal: &mut Terminal) {
+        match self {
+            Self::Text => terminal.complain(&format!("{fault}\n")),
+            Self::Json(document) => document.fault(fault),
+            Self::Junit(document) => document.fault(fault),
+            Self::Findings(found, _) => found.push(findings::of_fault(fault)),
+        }
+    }
+
+    fn note(&mut self, note: &Examined, terminal: &mut Terminal) {
+        match self {
+            Self::Text => {
+                terminal.out(&text::note(note, terminal.colour()));
+                for fault in &note.faults {
+                    terminal.complain(&format!("{fault}\n"));
+                }
+            }
+            Self::Json(document) => document.note(note),
+            Self::Junit(document) => document.note(note),
+            Self::Findings(found, _) => found.extend(findings::of_note(note)),
+        }
+    }
+
+    fn close(mut self, counts: &Counts, terminal: &mut Terminal) {
+        match &mut self {
+            Self::Text => terminal.out(&text::closing(counts, terminal.colour())),
+            Self::Json(document) => terminal.out(&document.text()),
+            Self::Junit(document) => match document.text() {
+                Ok(text) => terminal.out(&text),
+                Err(error) => terminal.complain(&format!("the report cannot be written as XML: {error}")),
+            },
+            Self::Findings(found, form) => {
+                findings::sort(found);
+                terminal.out(&form(found, counts));
             }
         }
     }
-    terminal.clear();
-    if as_json {
-        terminal.out(&report.text());
-    } else {
-        terminal.out(&text::closing(&counts, terminal.colour()));
-    }
-    counts.ending()
 }
