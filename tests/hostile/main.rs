@@ -4,6 +4,7 @@
 //! `expected`, whole, as a person wrote them. What a repository cannot hold well (odd bytes, large files, links, empty folders)
 //! is made here.
 
+mod diff;
 mod formats;
 mod json;
 mod made;
@@ -61,7 +62,9 @@ impl Bench {
     }
 
     fn write(&self, name: &str, content: impl AsRef<[u8]>) {
-        fs::write(self.0.join(name), content).expect("a file");
+        let path = self.0.join(name);
+        fs::create_dir_all(path.parent().expect("a folder")).expect("a folder");
+        fs::write(path, content).expect("a file");
     }
 
     fn read(&self, name: &str) -> Vec<u8> {

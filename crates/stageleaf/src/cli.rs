@@ -6,7 +6,7 @@ use clap::{Parser, Subcommand};
 
 use crate::{
     check::{self, Ending},
-    embed, explain,
+    diff, embed, explain,
     fault::Fault,
     new, page,
     terminal::Terminal,
@@ -33,6 +33,10 @@ enum Command {
     Page(page::Options),
     /// Say how a figure is computed, with a stage's numbers in place, and what is not modelled
     Explain(explain::Options),
+    /// Say what a revision did to every figure and every verdict
+    ///
+    /// Exit code: 0 no verdict got worse and no limit was loosened or dropped; 1 one was; 2 something could not be read.
+    Diff(diff::Options),
     /// Put sheets into a book: mdBook's preprocessor
     Embed {
         /// Nothing, or `supports RENDERER`
@@ -72,6 +76,7 @@ fn perform(command: &Command, terminal: &mut Terminal) -> Ending {
         Command::Check(options) => check::run(options, terminal),
         Command::New(options) => print(new::block(options), terminal),
         Command::Explain(options) => explain::run(options, terminal),
+        Command::Diff(options) => diff::run(options, terminal),
         Command::Page(options) => write_page(options, terminal),
         Command::Embed { arguments } => match embed::command(arguments, io::stdin().lock(), io::stdout().lock(), io::stderr().lock()) {
             Ok(true) => Ending::Good,

@@ -9,6 +9,7 @@
 
 pub mod check;
 pub mod cli;
+pub mod diff;
 pub mod embed;
 pub mod explain;
 pub mod fault;
