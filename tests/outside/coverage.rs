@@ -5,7 +5,9 @@ use std::collections::{BTreeMap, BTreeSet};
 use serde::Deserialize;
 use stageleaf_math::{figure::Figure, kind::Kind};
 
-use crate::{circuits, dc, gain, kinds, ledger::Ledger, loops, noise, oracle, oracle_around, oracle_kinds, rejection, swing, thermal};
+use crate::{
+    circuits, dc, floating, gain, kinds, ledger::Ledger, loops, noise, oracle, oracle_around, oracle_kinds, rejection, swing, thermal,
+};
 
 /// Rows that are not checked here, with the reason.
 #[derive(Debug, Deserialize)]
@@ -28,6 +30,7 @@ struct Reason {
 fn everything() -> Ledger {
     let mut ledger = Ledger::default();
     circuits::all(&mut ledger);
+    floating::all(&mut ledger);
     gain::all(&mut ledger);
     loops::all(&mut ledger);
     noise::all(&mut ledger);

@@ -7,6 +7,7 @@ mod budget;
 mod circuits;
 mod coverage;
 mod dc;
+mod floating;
 mod gain;
 mod kinds;
 mod ledger;

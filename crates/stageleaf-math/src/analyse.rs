@@ -180,7 +180,7 @@ fn limit_row(spread: &mut Spread<'_>, limit: &Limit) -> LimitRow {
         (_, _, Some(margin)) if margin < 0.0 => Verdict::Breaks,
         (_, _, Some(margin)) if margin < thin_below(limit) => Verdict::Thin,
         (_, _, Some(_)) => Verdict::Holds,
-        (Outcome::Oscillates | Outcome::NoDcPath | Outcome::NoSteadyTemperature, ..) => Verdict::Breaks,
+        (Outcome::Oscillates | Outcome::NoDcPath(_) | Outcome::NoSteadyTemperature, ..) => Verdict::Breaks,
         _ => Verdict::Undetermined,
     };
     let extreme = extreme.clone();
@@ -249,7 +249,7 @@ fn dc_budget(spread: &mut Spread<'_>) -> Vec<DcLine> {
 }
 
 fn curves(solution: &Solution<'_>, report: &mut Report) {
-    if analysis::missing_small_signal(solution).is_some() || solution.no_dc_path() {
+    if analysis::missing_small_signal(solution).is_some() || solution.no_dc_path().is_some() {
         return;
     }
     let roots = solution.roots();

@@ -61,7 +61,7 @@ pub(crate) fn cautions(spread: &mut Spread<'_>) -> Vec<Caution> {
             list.push(Caution::HighVoltage { span: greatest });
         }
     }
-    if analysis::missing_small_signal(solution).is_none() && !solution.no_dc_path() && !solution.oscillates() {
+    if analysis::missing_small_signal(solution).is_none() && solution.no_dc_path().is_none() && !solution.oscillates() {
         for (origin, power) in thermal::resistors(solution) {
             if let NoiseOrigin::Component(component) = origin
                 && let Some(rating) = stage.component(component).and_then(|c| c.rating)
@@ -71,7 +71,7 @@ pub(crate) fn cautions(spread: &mut Spread<'_>) -> Vec<Caution> {
             }
         }
     }
-    if analysis::missing_small_signal(solution).is_none() && !solution.no_dc_path() {
+    if analysis::missing_small_signal(solution).is_none() && solution.no_dc_path().is_none() {
         if solution.oscillates() {
             list.push(Caution::Oscillates);
         } else {

@@ -8,7 +8,7 @@ use crate::{
     kept::Kept,
     kind::Drives,
     network::{
-        Builder, Drive, Law, Network, Node, Without,
+        Builder, Drive, Floating, Law, Network, Node, Without,
         expand::{Column, DEGREE, Outcome, Plan, Powers, Shape, Weight},
     },
     parameters::Parameters,
@@ -86,6 +86,8 @@ pub struct Model<'a> {
     pub scale: (f64, f64),
     /// Whether the parts state all that response and loop depend on, so that stability can be judged.
     pub small_signal: bool,
+    /// What no steady current reaches.
+    pub floating: Floating,
     plans: Plans,
     inside: OnceCell<Vec<Expansion>>,
     input: OnceCell<Probe>,
@@ -164,6 +166,7 @@ impl<'a> Model<'a> {
             zeros,
             scale,
             small_signal,
+            floating: network.floating(),
             plans: plans.clone(),
             inside: OnceCell::new(),
             input: OnceCell::new(),

@@ -62,6 +62,15 @@ impl Need {
     }
 }
 
+/// An input of an amplifier.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Terminal {
+    /// From 0.
+    pub amplifier: u8,
+    /// Whether it is the inverting one.
+    pub inverting: bool,
+}
+
 /// A figure's value, or why there is none.
 #[derive(Clone, Debug, PartialEq)]
 pub enum Outcome {
@@ -73,8 +82,8 @@ pub enum Outcome {
     DoesNotApply(&'static str),
     /// A pole lies in the right half plane: the stage oscillates, and the figure has no meaning.
     Oscillates,
-    /// No DC path: the operating point does not exist.
-    NoDcPath,
+    /// No DC path for the bias current at an amplifier's input: the operating point does not exist.
+    NoDcPath(Terminal),
     /// No junction temperature up to [`HOTTEST`](crate::analysis::thermal::HOTTEST) is steady: the stage runs away thermally.
     NoSteadyTemperature,
 }

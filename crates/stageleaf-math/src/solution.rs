@@ -10,6 +10,7 @@ use crate::{
     network::{Drive, Network, Node},
     part::PartFigure,
     polynomial::{Coefficients, Polynomial},
+    report::Terminal,
 };
 
 /// The loop and the transfers from the inputs, over a common denominator in scaled frequency.
@@ -204,7 +205,17 @@ impl<'m> Solution<'m> {
                 sum.add_scaled(&product.times(&terms.0).0, 1.0);
             }
         }
-        sum
+        self.without_islands(sum)
+    }
+
+    /// Without the factors of s that groups of nodes without a DC path make. Of a current into such a group the lowest terms go too: they
+    /// cancel against those of the current's return.
+    fn without_islands(&self, mut polynomial: Polynomial) -> Polynomial {
+        let common = if self.model.floating.input.is_some() { 0 } else { self.model.floating.islands };
+        if common > 0 {
+            polynomial.0.drain(..common.min(polynomial.0.len()));
+        }
+        polynomial
     }
 
     fn run(&self, expansion: &Expansion, network: &Network, struck: Option<usize>) -> Vec<f64> {
@@ -323,13 +334,21 @@ impl<'m> Solution<'m> {
             return Complex64::new(0.0, 0.0);
         }
         let node = usize::from(node.0);
-        if omega <= 0.0 {
+        let whole = self.model.floating.islands == 0;
+        if omega <= 0.0 && whole {
             return Complex64::new(self.inside_at_dc()[amplifier][node] / self.looped().closed.constant(), 0.0);
         }
         let tables = self.inside.get_or_init(|| {
             let expansions = self.model.inside().iter().enumerate();
             expansions.map(|(a, expansion)| self.expand(expansion, Some(a))).collect()
         });
+        if !whole {
+            let mut by_set = vec![Polynomial::default(); 1 << self.amplifiers()];
+            for (set, term) in tables[amplifier].of(node).iter().enumerate() {
+                by_set[set | 1 << amplifier].add_scaled(&term.0, 1.0);
+            }
+            return self.combine(&by_set, |_| true).at(omega) / self.looped().closed.at(omega);
+        }
         let terms = tables[amplifier].of(node).iter().enumerate();
         let sum: Complex64 = terms
             .filter(|(_, term)| !term.0.is_empty())
@@ -393,9 +412,9 @@ impl<'m> Solution<'m> {
         self.roots().poles.iter().any(|p| p.re > 1e-13 * magnitude(*p))
     }
 
-    /// Whether the DC operating point does not exist.
-    pub fn no_dc_path(&self) -> bool {
-        self.looped().closed.constant().abs() <= 0.0
+    /// The amplifier input at which the DC operating point does not exist, if there is one.
+    pub fn no_dc_path(&self) -> Option<Terminal> {
+        self.model.floating.input
     }
 
     /// Scaled angular frequencies, rising, close enough together that nothing the network does falls between two.

@@ -230,7 +230,10 @@ pub fn outcome_text(outcome: &Outcome, d: Dimension, digits: usize) -> String {
         }
         Outcome::DoesNotApply(why) => format!("does not apply: {why}"),
         Outcome::Oscillates => "oscillates".into(),
-        Outcome::NoDcPath => "no DC path".into(),
+        Outcome::NoDcPath(at) => {
+            let input = if at.inverting { "inverting" } else { "+" };
+            of_amplifier(&format!("no DC path for the bias current at the {input} input"), at.amplifier)
+        }
         Outcome::NoSteadyTemperature => "no steady temperature below 300 °C (thermal runaway)".into(),
     }
 }

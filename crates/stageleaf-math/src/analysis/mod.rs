@@ -146,8 +146,8 @@ pub fn lacking(solution: &Solution<'_>, query: Query) -> Option<Outcome> {
 pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
     use Figure as F;
     let stage = solution.model.stage;
-    if solution.no_dc_path() {
-        return Outcome::NoDcPath;
+    if let Some(terminal) = solution.no_dc_path() {
+        return Outcome::NoDcPath(terminal);
     }
     let judged_by_roots = !matches!(query.figure, F::Crossover | F::PhaseMargin | F::GainMargin);
     if judged_by_roots && solution.model.small_signal && solution.oscillates() {

@@ -186,7 +186,7 @@ pub fn gain_drift(solution: &Solution<'_>) -> f64 {
                 values[slot] *= factor;
                 match solution.model.stage.kind.spec().reference {
                     // A common factor cancels in the quotient below.
-                    Reference::Dc => solution.model.dc_gain(&values) * unit,
+                    Reference::Dc if unit.is_finite() => solution.model.dc_gain(&values) * unit,
                     _ => reference(&Solution::new(solution.model, values, None)).gain,
                 }
             };

@@ -11,7 +11,7 @@ use alloc::vec::Vec;
 use crate::{
     parameters::Parameters,
     part::PartFigure,
-    report::{NoiseOrigin, Parameter},
+    report::{NoiseOrigin, Parameter, Terminal},
     stage::{Isolation, Source, Stage},
 };
 
@@ -96,11 +96,52 @@ impl Network {
         Node(u8::try_from(input + 1).unwrap_or(u8::MAX))
     }
 
+    /// What no steady current reaches: neither through resistances from ground, a voltage source or an output pin, nor otherwise.
+    #[must_use]
+    pub fn floating(&self) -> Floating {
+        let bit = |node: Node| 1_u32 << node.0;
+        let spread = |mut reached: u32| loop {
+            let before = reached;
+            for element in self.elements.iter().filter(|e| matches!(e.law, Law::Resistance(_))) {
+                let ends = bit(element.a) | bit(element.b);
+                if reached & ends != 0 {
+                    reached |= ends;
+                }
+            }
+            if reached == before {
+                return reached;
+            }
+        };
+        let mut reached = spread(self.amplifiers.iter().fold(1 | self.held(), |bits, a| bits | bit(a.pin)));
+        let terminals = (0u8..).zip(&self.amplifiers).flat_map(|(amplifier, a)| {
+            [(a.plus, Terminal { amplifier, inverting: false }), (a.minus, Terminal { amplifier, inverting: true })]
+        });
+        let input = terminals.into_iter().find(|(node, _)| reached & bit(*node) == 0).map(|(_, terminal)| terminal);
+        let mut islands = 0;
+        for node in (1..self.nodes).map(|n| 1_u32 << n) {
+            if reached & node == 0 {
+                reached |= spread(node);
+                islands += 1;
+            }
+        }
+        Floating { input, islands }
+    }
+
     /// The nodes that ideal voltage sources hold (bit set).
     #[must_use]
     pub fn held(&self) -> u32 {
         self.inputs.iter().enumerate().filter(|(_, d)| **d == Drive::Voltage).fold(0, |bits, (i, _)| bits | 1 << (i + 1))
     }
+}
+
+/// What no steady current reaches.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub struct Floating {
+    /// The first amplifier input without a DC path: the operating point does not exist.
+    pub input: Option<Terminal>,
+    /// How many groups of nodes hang on capacitors alone without an amplifier's input in them. Each puts a factor of s into every
+    /// determinant, and means nothing: no bias current asks for a way out.
+    pub islands: usize,
 }
 
 /// What to leave out of a network, for the impedances seen from outside.

@@ -170,7 +170,7 @@ impl Other {
         match outcome {
             Outcome::DoesNotApply(why) => Self::DoesNotApply((*why).to_owned()),
             Outcome::Oscillates => Self::Oscillates(true),
-            Outcome::NoDcPath => Self::NoDcPath(true),
+            Outcome::NoDcPath(_) => Self::NoDcPath(true),
             Outcome::NoSteadyTemperature => Self::NoSteadyTemperature(true),
             Outcome::Undetermined(_) | Outcome::Value(_) => Self::Undetermined(outcome_words(outcome, dimension, part)),
         }
