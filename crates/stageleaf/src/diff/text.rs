@@ -130,7 +130,7 @@ const fn short(outcome: &Outcome) -> &'static str {
         Outcome::Undetermined(_) => "undetermined",
         Outcome::DoesNotApply(_) => "does not apply",
         Outcome::Oscillates => "oscillates",
-        Outcome::NoDcPath => "no DC path",
+        Outcome::NoDcPath(_) => "no DC path",
         Outcome::NoSteadyTemperature => "no steady temperature",
     }
 }
