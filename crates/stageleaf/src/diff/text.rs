@@ -56,7 +56,7 @@ fn stage(text: &mut String, of: &StageChange<'_>, all: bool, colour: bool) {
             }
             let shown: Vec<(&FigureChange<'_>, String)> = figures
                 .iter()
-                .filter(|f| all || f.size().is_infinite() || judged(f, *limited))
+                .filter(|f| all || f.size().is_infinite() || judged(f, limited))
                 .filter_map(|f| Some((f, figure_text(f, all)?)))
                 .collect();
             let width = shown.iter().map(|(f, _)| query_text(f.new.query).chars().count()).max().unwrap_or(0);
