@@ -10,6 +10,7 @@ mod json;
 mod made;
 mod outlets;
 mod rewriting;
+mod searching;
 
 use std::{
     fs,

@@ -48,7 +48,7 @@ fn a_figure_of_a_stage_is_explained_with_its_numbers() {
     assert!(said.code == Some(2) && said.err.starts_with("explain: `gain_at` takes a frequency"), "{}", said.err);
     // No such stage, no such note, nothing that could be read.
     let said = bench.run(&["explain", "gain", "note.md", "--stage", "B"]);
-    assert!(said.code == Some(2) && said.err.contains("no stage of this note is called “B”"), "{}", said.err);
+    assert!(said.code == Some(2) && said.err.contains("no stage here is called “B”"), "{}", said.err);
     assert_eq!(bench.run(&["explain", "gain", "none.md"]).code, Some(2));
     bench.write("bad.md", fenced("stage = \"non-inverting\"\nname = \"A\"\npart = \"oak-1\"\n[components]\nRf = \"1 V\"\n"));
     let said = bench.run(&["explain", "gain", "bad.md"]);

@@ -36,6 +36,7 @@ pub mod part;
 pub mod polynomial;
 pub mod report;
 mod rules;
+pub mod search;
 pub mod series;
 pub mod solution;
 pub mod stage;

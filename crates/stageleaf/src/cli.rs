@@ -5,10 +5,11 @@ use std::{ffi::OsString, fs, io, process::ExitCode};
 use clap::{Parser, Subcommand};
 
 use crate::{
+    alternates,
     check::{self, Ending},
     diff, embed, explain,
     fault::Fault,
-    new, page,
+    needs, new, page,
     terminal::Terminal,
     walk::show,
 };
@@ -37,6 +38,14 @@ enum Command {
     ///
     /// Exit code: 0 no verdict got worse and no limit was loosened or dropped; 1 one was; 2 something could not be read.
     Diff(diff::Options),
+    /// Say what a stage needs of its amplifier, and how loose its components may be
+    ///
+    /// For each amplifier figure the value at which the first limit breaks, all else as it stands, at the worst case.
+    Needs(needs::Options),
+    /// Judge every part of the shelf in the place of a stage's own
+    ///
+    /// Exit code: 0 every stage has another part that keeps its limits; 1 one has none; 2 something could not be read.
+    Alternates(alternates::Options),
     /// Put sheets into a book: mdBook's preprocessor
     Embed {
         /// Nothing, or `supports RENDERER`
@@ -77,6 +86,8 @@ fn perform(command: &Command, terminal: &mut Terminal) -> Ending {
         Command::New(options) => print(new::block(options), terminal),
         Command::Explain(options) => explain::run(options, terminal),
         Command::Diff(options) => diff::run(options, terminal),
+        Command::Needs(options) => needs::run(options, terminal),
+        Command::Alternates(options) => alternates::run(options, terminal),
         Command::Page(options) => write_page(options, terminal),
         Command::Embed { arguments } => match embed::command(arguments, io::stdin().lock(), io::stdout().lock(), io::stderr().lock()) {
             Ok(true) => Ending::Good,

@@ -1,6 +1,10 @@
 //! `explain`: what a figure means, how it is computed, with a stage's numbers in place where a note is named, and what is not modelled.
 
-use std::{collections::BTreeSet, fmt::Write as _, fs, path::PathBuf};
+use std::{
+    collections::BTreeSet,
+    fmt::Write as _,
+    path::{Path, PathBuf},
+};
 
 use clap::Args;
 use stageleaf_math::{
@@ -20,12 +24,11 @@ use stageleaf_note::{
 };
 
 use crate::{
-    check::{Ending, examine, outcome_words},
+    asked,
+    check::{Ending, outcome_words},
     fault::Fault,
-    page::chosen,
-    team::{Team, Teams},
+    team::Team,
     terminal::{Terminal, plain},
-    walk::{show, unreadable},
 };
 
 /// Digits of a figure.
@@ -120,29 +123,11 @@ fn omissions(figure: Figure, text: &mut String) {
     line(text, format_args!("Not modelled, for other figures: {}", others.join(", ")));
 }
 
-fn stages(options: &Options, note: &std::path::Path, figure: Figure, query: Option<Query>, text: &mut String, faults: &mut Vec<Fault>) {
-    let bytes = match fs::read(note) {
-        Ok(bytes) => bytes,
-        Err(error) => return faults.push(unreadable(note, &error)),
-    };
-    let mut teams = Teams::new(options.shelf.clone());
-    let team = teams.of(note);
-    faults.extend(teams.take_faults());
-    if team.settings_lost {
-        return;
-    }
-    let file = show(note);
-    let examined = examine(&bytes, &file, &team);
-    faults.extend(examined.faults);
-    let blocks: Vec<&Block> = examined.stages.iter().map(|s| &s.block).collect();
-    let blocks = match chosen(&blocks, options.stage.as_deref(), &file) {
-        Ok(blocks) => blocks,
-        // What is wrong with its blocks has been told.
-        Err(_) if blocks.is_empty() && !faults.is_empty() => return,
-        Err(fault) => return faults.push(fault),
-    };
-    for block in blocks {
-        if let Err(fault) = stage(block, &team, figure, query, text) {
+fn stages(options: &Options, note: &Path, figure: Figure, query: Option<Query>, text: &mut String, faults: &mut Vec<Fault>) {
+    let asked = asked::stages(&[note.to_owned()], options.stage.as_deref(), options.shelf.as_deref());
+    faults.extend(asked.faults);
+    for of in &asked.stages {
+        if let Err(fault) = stage(&of.stage.block, &of.team, figure, query, text) {
             faults.push(fault);
         }
     }

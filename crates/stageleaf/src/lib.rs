@@ -7,12 +7,15 @@
 //! Nothing here reaches the network, and nothing is written but what a command was asked to write: `check --rewrite`
 //! replaces numbers that the prose quotes, `page --out` writes a page.
 
+pub mod alternates;
+pub mod asked;
 pub mod check;
 pub mod cli;
 pub mod diff;
 pub mod embed;
 pub mod explain;
 pub mod fault;
+pub mod needs;
 pub mod new;
 pub mod page;
 #[cfg(feature = "site")]

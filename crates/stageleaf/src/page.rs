@@ -115,7 +115,7 @@ fn element(block: &Block, team: &Team, settings: Option<&SettingsText>) -> Resul
 }
 
 /// The stages of a note that were asked for: all, or the one of that name.
-pub(crate) fn chosen<'a>(blocks: &[&'a Block], wanted: Option<&str>, file: &str) -> Result<Vec<&'a Block>, Fault> {
+fn chosen<'a>(blocks: &[&'a Block], wanted: Option<&str>, file: &str) -> Result<Vec<&'a Block>, Fault> {
     if blocks.is_empty() {
         return Err(Fault::path(file, "there is no stage in this note that could be shown"));
     }

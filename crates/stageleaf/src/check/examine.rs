@@ -14,7 +14,7 @@ use stageleaf_math::{
     figure::Query,
     limit::{Bound, Limit, Thin},
     part::Part,
-    report::{Caution, FigureRow, LimitRow, Outcome, Report},
+    report::{FigureRow, LimitRow, Outcome, Report},
     stage::Stage,
 };
 use stageleaf_note::{Block, Field, Problem, Quote, Shelf, ShelfPart, quote_agrees, quote_for, read_note, slug};
@@ -79,27 +79,13 @@ impl ExaminedStage {
     /// Whether a caution says that the stage, as stated, cannot work or would be damaged, whatever its limits ask.
     #[must_use]
     pub fn cannot_work(&self) -> bool {
-        self.report.cautions.iter().any(forbids)
+        self.report.cautions.iter().any(stageleaf_math::search::alternates::forbids)
     }
 
     fn outcome(&self, query: Query) -> Option<&Outcome> {
         let row = self.report.figures.iter().find(|row| row.query == query).map(|row| &row.nominal);
         row.or_else(|| self.report.limits.iter().find(|row| row.limit.query == query).map(|row| &row.nominal))
     }
-}
-
-/// Whether a caution says that the stage cannot work as stated.
-#[must_use]
-pub const fn forbids(caution: &Caution) -> bool {
-    matches!(
-        caution,
-        Caution::Oscillates
-            | Caution::ThermalRunaway
-            | Caution::SupplySpan { .. }
-            | Caution::JunctionHot { .. }
-            | Caution::ResistorHot { .. }
-            | Caution::OffsetBeyondSupply { .. }
-    )
 }
 
 /// A quote and what its figure is now.

@@ -3,11 +3,12 @@
 use stageleaf_math::{
     limit::Verdict,
     report::{LimitRow, Outcome},
+    search::alternates::forbids,
 };
 use stageleaf_note::{query_text, words};
 
 use super::{
-    examine::{Current, Examined, ExaminedStage, forbids},
+    examine::{Current, Examined, ExaminedStage},
     text::{margin_text, outcome_words},
 };
 use crate::{fault::Fault, terminal::plain};

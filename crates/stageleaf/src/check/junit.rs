@@ -1,11 +1,11 @@
 //! `check --format junit`: a test suite for each note, a case for each limit, quote and error.
 
 use quick_junit::{NonSuccessKind, Report, TestCase, TestCaseStatus, TestSuite, XmlString};
-use stageleaf_math::limit::Verdict;
+use stageleaf_math::{limit::Verdict, search::alternates::forbids};
 use stageleaf_note::{query_text, words};
 
 use super::{
-    examine::{Current, Examined, ExaminedStage, forbids},
+    examine::{Current, Examined, ExaminedStage},
     findings::{Finding, of_fault, of_note, place_of, sentence},
 };
 use crate::fault::Fault;
