@@ -144,6 +144,7 @@ fn stage(values: &BTreeMap<String, f64>) -> Stage {
         reference: None,
         parts: vec![],
         load: Load { resistance: exact("RL"), capacitance: exact("CL") },
+        converter: Default::default(),
         board: Board { inverting_node: exact("Cn"), ..Board::default() },
         ambient: Some(Ambient { range: Span::exact(value("T")) }),
         band: None,

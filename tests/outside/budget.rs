@@ -48,12 +48,15 @@ pub const fn budget(figure: Figure) -> Exactness {
         Figure::GainDrift => Relative(1e-7),
         // The quadrature's own target, with a margin for sources of little weight; the ratios follow it.
         Figure::OutputNoise | Figure::InputNoise | Figure::OutputNoisePeakToPeak | Figure::Snr => Relative(1e-8),
-        Figure::NoiseBandwidth => Relative(1e-8),  // the same, over all frequencies
-        Figure::SnrBits => Absolute(1e-8),         // bit: the logarithm of the same ratio
+        Figure::NoiseBandwidth => Relative(1e-8), // the same, over all frequencies
+        Figure::SnrBits => Absolute(1e-8),        // bit: the logarithm of the same ratio
+        Figure::Enob => Absolute(1e-8),           // bit, the same
+        // A sum of exponentials over the acquisition time's many time constants: the poles' error times their number.
+        Figure::AcquisitionError => Relative(1e-8),
         Figure::NoiseDensityAt => Relative(1e-10), // one evaluation of the network
         // Differences and ratios of stated values and gains.
-        Figure::ClipMargin | Figure::InputRangeMargin => Absolute(1e-9), // V, of rails of some volts
-        Figure::CurrentMargin => Absolute(1e-12),                        // A, of milliamperes
+        Figure::ClipMargin | Figure::FullScaleMargin | Figure::InputRangeMargin => Absolute(1e-9), // V, of rails of some volts
+        Figure::CurrentMargin => Absolute(1e-12),                                                  // A, of milliamperes
         Figure::SlewMargin => Relative(1e-9),
         Figure::FullPowerBandwidth => Relative(1e-9), // a closed form, or a root search
         Figure::SupplyCurrent | Figure::Dissipation | Figure::ResistorDissipation => Relative(1e-9), // closed forms

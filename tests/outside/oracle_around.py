@@ -4,6 +4,11 @@
     oracle_around.py write [FILE [SEED [COUNT]]]    solve COUNT random circuits of each kind and write the table
     oracle_around.py check [FILE]                   solve all circuits again and compare with the table
 
+Transients are sums over the eigenvectors of the matrix pencil, in mpmath with 110 digits; their extremes are sought on a dense grid.
+
+- converter: its sampling capacitor, charged to a voltage the whole input range away, is connected to the network at t = 0. The error
+  is the largest one at that capacitor from the acquisition time on; how steeply each amplifier's controlled source moves and what
+  current leaves its pin tell whether the settling is linear. Effective bits from the noise over the band, its own, and LSB/sqrt(12).
 - ripple: a sine of the stated peak on each rail that is not the ground. Each amplifier lets a part of it in, as a voltage in
   series with its input of |1 + jf/fc|/PSRR of the ripple; a divider of the positive supply lets it in through the network. Signs
   are unknown, so the magnitudes at the output are added.
@@ -15,10 +20,11 @@ import random
 import sys
 
 import mpmath as mp
+import numpy as np
 
-from oracle import differences, open_loop
+from oracle import differences, integral, open_loop
 from oracle_circuits import amplifier
-from oracle_kinds import Exact, show
+from oracle_kinds import Exact, Scan, show
 from oracle_kinds_circuits import KINDS, circuit, random_circuit
 
 PLAIN = ["follower", "non-inverting", "inverting"]
@@ -52,7 +58,21 @@ def around(draw, c):
         "supply": [5.0, 0.0] if single else [12.0, -12.0],
         "psrr": [log(draw, 1e3, 1e6), log(draw, 1, 1e4), log(draw, 1e3, 1e6), log(draw, 1, 1e4)],
         "ripple": [log(draw, 1e-3, 0.1), log(draw, 10, 1e6)],
+        "signal": [short(draw.uniform(-1, 1)), log(draw, 1e-3, 1.0), c["signal_frequency"]],
+        "range": draw.choice([[0.0, 4.096], [-2.5, 2.5], [0.5, 3.0]]),
     }
+    if c["kind"] in ("transimpedance", "charge"):
+        c["around"]["signal"][:2] = [c["signal_dc"], short(c["around"]["signal"][1] * 1e-9)]
+    # Slowest of what the kick meets: the time that the shunt capacitor takes, or a time constant in the band's upper half.
+    fast = 1 / (2 * math.pi * c["amplifiers"][0]["gbw"])
+    ohms, farads = log(draw, 10, 1e3), log(draw, 1e-10, 1e-8)
+    converter = {"bits": float(draw.randint(8, 20)), "sample_capacitance": log(draw, 2e-12, 1e-10), "noise": draw.choice([None, log(draw, 1e-6, 1e-3)])}
+    for name, chance, value in (("series_resistance", 0.8, ohms), ("shunt_capacitance", 0.8, farads), ("switch_resistance", 0.5, log(draw, 20, 2e3))):
+        if draw.random() < chance:
+            converter[name] = value
+    tau = max(ohms * farads if "series_resistance" in converter and "shunt_capacitance" in converter else 0.0, 3 * fast)
+    converter["acquisition_time"] = short(tau * draw.uniform(0.3, 12))
+    c["around"]["converter"] = converter
     return c
 
 
@@ -73,8 +93,118 @@ def ripple_output(c):
     return total
 
 
-def solve(c):
-    return {"ripple_output": show(ripple_output(c))}
+class Transient:
+    """x(t) of (G + sC)x = b for t > 0: a sum of exponentials, one for each finite eigenvalue of the pencil."""
+
+    def __init__(self, exact, b):
+        with mp.workdps(110):
+            G, C = exact.pencil()
+            inverse = mp.inverse(G)
+            right = mp.matrix(G.rows, 1)
+            for i, y in b:
+                right[i] += y
+            self.net, start = exact.net, inverse * right
+            mu, L, R = mp.eig(inverse * C, left=True, right=True)
+            self.p, self.x = [], []
+            for i, m in enumerate(mu):
+                if abs(m) > mp.mpf(10) ** -26:
+                    weight = sum(L[i, j] * start[j] for j in range(G.rows)) / sum(L[i, j] * R[j, i] for j in range(G.rows))
+                    self.p.append(-1 / m)
+                    self.x.append([R[j, i] * weight / m for j in range(self.net.size)])
+
+    def modes(self, what):
+        """Poles and factors of a voltage, or of what `what(pole, voltage by node name)` makes of them."""
+        volt = lambda x: lambda node: mp.mpf(0) if self.net.at(node) is None else x[self.net.at(node)]
+        return [(p, what(p, volt(x))) for p, x in zip(self.p, self.x)]
+
+
+def value(modes, t):
+    return mp.re(sum(a * mp.exp(p * t) for p, a in modes))
+
+
+def largest(modes, start):
+    """The largest magnitude from a time on: dense looks in double precision, then 50 digits around the greatest."""
+    p = np.array([complex(p) for p, _ in modes])
+    a = np.array([complex(a) for _, a in modes])
+    size = lambda t: np.abs((a[:, None] * np.exp(p[:, None] * t)).sum(0).real)
+    best, at, now = float(abs(value(modes, start))), start, start
+    for _ in range(4000):
+        left = np.abs(a) * np.exp(p.real * now)
+        if left.sum() <= best:
+            break
+        live = left > 1e-5 * best
+        step = 0.02 / np.abs(p[live]).max()
+        t = now + step * np.arange(1, 513)
+        v = size(t)
+        if v.max() > best:
+            best, at = float(v.max()), float(t[v.argmax()])
+        now = float(t[-1])
+    else:
+        return None
+    if at == start:
+        return abs(value(modes, start))
+    low, high = mp.mpf(max(start, at - step * 2)), mp.mpf(at + step * 2)
+    for _ in range(120):
+        x, y = low + (high - low) * mp.mpf("0.382"), low + (high - low) * mp.mpf("0.618")
+        if abs(value(modes, x)) < abs(value(modes, y)):
+            low = x
+        else:
+            high = y
+    return abs(value(modes, low))
+
+
+def acquisition(c):
+    """Error at the sampling capacitor; by amplifier the steepest slope and the largest current, all for the whole input range."""
+    exact = Exact(c, acquiring=True)
+    converter, (low, high) = c["around"]["converter"], c["around"]["range"]
+    transient = Transient(exact, [(exact.net.at("hold"), mp.mpf(converter["sample_capacitance"]) * (mp.mpf(high) - mp.mpf(low)))])
+    if any(mp.re(p) > 0 for p in transient.p):
+        return None
+    error = largest(transient.modes(lambda p, v: v("hold")), converter["acquisition_time"])
+    rows = []
+    for k, (_, _, pin) in enumerate(exact.net.amps):
+        slope = largest(transient.modes(lambda p, v: p * v(f"e{k}")), 0.0)
+        branch = exact.net.branch["e", k]
+        # The controlled source's branch current is what leaves the pin: its row in the solution.
+        current = largest([(p, x[branch]) for p, x in zip(transient.p, transient.x)], 0.0)
+        rows.append([slope, current])
+    return error, rows
+
+
+def converter_figures(c, poles):
+    converter, (low, high) = c["around"]["converter"], c["around"]["range"]
+    exact, scan, out = Exact(c), Scan(c), {}
+    found = acquisition(c)
+    if found and found[0] and all(x is not None for row in found[1] for x in row):
+        out["acquisition_error"] = show(found[0])
+        out["kick"] = [[show(x) for x in row] for row in found[1]]
+    breaks = {float(abs(s)) / (2 * math.pi) for s in poles}
+    for amp in exact.amps:
+        breaks |= {*amp["higher_poles"], *(z[0] for z in amp["zeros"]), amp["gbw"], amp["gbw"] / amp["open_loop"]}
+    noise = mp.mpf(integral(scan.noise, *c["band"], sorted(breaks)).sum())
+    step = mp.mpf(high - low) / mp.mpf(2) ** int(converter["bits"])
+    power = noise + mp.mpf(converter["noise"] or 0) ** 2 + step**2 / 12
+    out["enob"] = show(mp.log((high - low) / mp.sqrt(12 * power), 2))
+    dc, peak, f = c["around"]["signal"]
+    middle = sum(mp.re(exact.transfer(0, drive)) * volts for drive, volts in steady(c, exact) if volts)
+    room = min(high - middle, middle - low) - abs(exact.transfer(f)) * peak - exact.offset()[0]
+    out["full_scale_margin"] = show(room)
+    return out
+
+
+def steady(c, exact):
+    """What each drive stands at."""
+    dc, _, _ = c["around"]["signal"]
+    rows = [(0, dc)]
+    if c["kind"] in BIASED:
+        rows.append((1, c["around"]["supply"][0]))
+    if c["reference"]:
+        rows.append((1, 2.5))
+    return rows
+
+
+def solve(c, poles):
+    return {"ripple_output": show(ripple_output(c)), **converter_figures(c, poles)}
 
 
 # ------------------------------------------------------------------ the table
@@ -90,7 +220,7 @@ def table(seed=SEED, count=3):
             if poles is None or max(float(mp.re(s) / abs(s)) for s in poles) > -1e-3:
                 continue
             kept += 1
-            yield {"circuit": c, "expected": solve(c)}
+            yield {"circuit": c, "expected": solve(c, poles)}
 
 
 def main():

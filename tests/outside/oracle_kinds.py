@@ -107,8 +107,8 @@ class Exact:
         i = self.net.at(node)
         return abs(self.solve(s, [(i, mp.mpf(1))])[i])
 
-    def poles(self):
-        """Finite eigenvalues of the pencil, the amplifiers' poles as unknowns of their own; None where DC has no solution."""
+    def pencil(self):
+        """G and C of (G + sC)x = b, the amplifiers' poles as unknowns of their own."""
         with mp.workdps(110):
             g, cap = self.net.stamp(mp.mpf)
             tau, size = 2 * mp.pi, self.net.size
@@ -133,6 +133,12 @@ class Exact:
                             C[row, i] -= y * (-1 if right else 1) / (tau * mp.mpf(f))
                     before, row = [(row, mp.mpf(1))], row + 1
                 G[self.net.branch["e", k], row - 1] -= 1
+            return G, C
+
+    def poles(self):
+        """Finite eigenvalues of the pencil; None where DC has no solution."""
+        with mp.workdps(110):
+            G, C = self.pencil()
             try:
                 mu = mp.eig(mp.inverse(G) * C, left=False, right=False)
             except ZeroDivisionError:

@@ -6,7 +6,7 @@ DIFFERENTIAL = ("difference", "instrumentation")
 class Network:
     """Nodes and elements of a stage. Wires merge nodes; node "0" is ground."""
 
-    def __init__(self, c, load=True, open_input=False):
+    def __init__(self, c, load=True, open_input=False, acquiring=False):
         self.c, self.parent, self.r, self.cap, self.amps = c, {}, [], [], []
         kind, comp = c["kind"], c["components"]
         self.inputs = {"summing": sum(f"Rin{i}" in comp for i in range(1, 9)), "difference": 2, "instrumentation": 2, "scale-and-shift": 2,
@@ -20,7 +20,10 @@ class Network:
             self.res("reference_resistance", "s1", "ref", c["reference"])
         else:
             self.wire("s1", "ref")
-        tap = "out" if c["isolation"] == "inside" else "pin"
+        # Behind the stage's output a converter may stand; what the stage is judged by is then its input.
+        converter = c.get("around", {}).get("converter")
+        end = "end" if load and converter and "series_resistance" in converter else "out"
+        tap = end if c["isolation"] == "inside" else "pin"
 
         def place(name, a, b):
             """A component where the stage has it; says whether it does."""
@@ -33,7 +36,17 @@ class Network:
                 self.res(resistor, a, resistor + "-" + capacitor, comp[resistor])
                 self.capacitor(resistor + "-" + capacitor, b, comp[capacitor])
 
-        place("Riso", "pin", "out") or self.wire("pin", "out")
+        place("Riso", "pin", end) or self.wire("pin", end)
+        if load and converter:
+            if end != "out":
+                self.res("converter_series", end, "out", converter["series_resistance"])
+            self.capacitor("out", "0", converter.get("shunt_capacitance", 0.0))
+            if acquiring:
+                if "switch_resistance" in converter:
+                    self.res(None, "out", "hold", converter["switch_resistance"])
+                else:
+                    self.wire("out", "hold")
+                self.capacitor("hold", "0", converter["sample_capacitance"])
         series("Rsn", "Csn", "pin", "0")
         getattr(self, "lay_" + kind.replace("-", "_"))(place, series, tap)
         if kind in ("inverting", "summing", "transimpedance", "charge", "integrator", "differentiator", "multiple-feedback-low-pass", "multiple-feedback-band-pass"):
@@ -61,8 +74,8 @@ class Network:
             self.capacitor(a, b, c["board"].get(name, 0.0))
         if load:
             if c["load"].get("resistance"):
-                self.res("load_resistance", "out", "0", c["load"]["resistance"])
-            self.capacitor("out", "0", c["load"].get("capacitance", 0.0))
+                self.res("load_resistance", end, "0", c["load"]["resistance"])
+            self.capacitor(end, "0", c["load"].get("capacitance", 0.0))
 
         # Voltages hold their nodes by a branch current each; the first input's is left out to look into it.
         self.held = [i for i in range(self.inputs) if self.drive == "voltage" and not (open_input and i == 0)]

@@ -104,6 +104,7 @@ pub fn stage(kind: Kind, part: Part) -> Stage {
         reference: None,
         parts: Vec::new(),
         load: Load::default(),
+        converter: Default::default(),
         board: Board::default(),
         ambient: None,
         band: None,

@@ -16,7 +16,7 @@ use crate::{
     report::{DcLine, FigureRow, LimitRow, Outcome, Report},
     rules,
     solution::Solution,
-    stage::Stage,
+    stage::{Converter, Stage},
 };
 
 /// Points of a curve.
@@ -44,7 +44,7 @@ const ENVELOPE_POINTS: usize = 41;
 ///     ],
 ///     part,
 ///     isolation: Isolation::OutsideLoop,
-///     supply: None, sources: vec![], signals: vec![], common_mode: None, reference: None, parts: vec![], load: Load::default(), board: Board::default(),
+///     supply: None, sources: vec![], signals: vec![], common_mode: None, reference: None, parts: vec![], load: Load::default(), converter: Converter::default(), board: Board::default(),
 ///     ambient: None, band: None, limits: vec![],
 /// };
 /// let report = analyse(&stage)?;
@@ -130,7 +130,8 @@ pub fn analyse_with(stage: &Stage, detail: Detail, plans: &Plans) -> Result<Repo
 fn queries(stage: &Stage) -> Vec<Query> {
     let mut list = Vec::new();
     for &figure in Figure::ALL {
-        if matches!(figure.argument(), Argument::None) {
+        let silent = figure.is_of_converter() && stage.converter == Converter::default();
+        if matches!(figure.argument(), Argument::None) && !silent {
             list.push(Query::of(figure));
         } else {
             for limit in &stage.limits {

@@ -96,7 +96,10 @@ figures! {
     NoiseBandwidth "noise_bandwidth" Frequency None Noise "Noise bandwidth", "Width of the rectangle of height |gain|² with the transfer's area over all frequencies.";
     Snr "snr" Level None Noise "Signal to noise", "Rms of the signal at the output over `output_noise`.";
     SnrBits "snr_bits" Bits None Noise "Signal to noise in bits", "(SNR in dB − 1.76)/6.02, with exact constants.";
+    Enob "enob" Bits None Noise "Effective bits", "Bits of an ideal converter with the same error at full scale: noise over the stated band, the converter's own where it is stated, and quantisation.";
+    AcquisitionError "acquisition_error" Voltage None Noise "Acquisition error", "Largest error at the converter's sampling capacitor from the end of the acquisition time on, after a kick of the whole input range.";
     ClipMargin "clip_margin" Voltage None LargeSignal "Clip margin", "Room between the output pin's extreme and the limit set by rail and headroom at that output current.";
+    FullScaleMargin "full_scale_margin" Voltage None LargeSignal "Full-scale margin", "Room between the extremes of the voltage at the converter's input, output offset included, and the ends of its input range.";
     InputRangeMargin "input_range_margin" Voltage None LargeSignal "Input range margin", "Room between both inputs' extremes and the input range.";
     CurrentMargin "current_margin" Current None LargeSignal "Output current margin", "Current limit less the peak output current.";
     SlewMargin "slew_margin" Number None LargeSignal "Slew margin", "Slew available over slew needed.";
@@ -118,6 +121,12 @@ impl Figure {
             (Self::InputOffset | Self::InputNoise, Dimension::VoltsPerCoulomb) => Dimension::Charge,
             _ => self.dimension(),
         }
+    }
+
+    /// Whether it is of a converter behind the stage: listed where there is one, or where a limit asks.
+    #[must_use]
+    pub const fn is_of_converter(self) -> bool {
+        matches!(self, Self::Enob | Self::AcquisitionError | Self::FullScaleMargin)
     }
 }
 

@@ -92,6 +92,7 @@ pub struct Model<'a> {
     inside: OnceCell<Vec<Expansion>>,
     input: OnceCell<Probe>,
     output: OnceCell<Probe>,
+    sampling: OnceCell<Injected>,
 }
 
 /// An impedance seen from outside: a network and the determinants whose ratio it is.
@@ -103,6 +104,17 @@ pub struct Probe {
     pub above: Expansion,
     /// With it open.
     pub below: Expansion,
+}
+
+/// A network driven by a current at one of its nodes.
+#[derive(Clone, Debug)]
+pub struct Injected {
+    /// The network.
+    pub network: Network,
+    /// Voltages at all nodes.
+    pub driven: Expansion,
+    /// The determinant.
+    pub closed: Expansion,
 }
 
 /// What response and loop depend on, besides the higher poles.
@@ -125,7 +137,7 @@ impl<'a> Model<'a> {
     #[must_use]
     pub fn compile_with(stage: &'a Stage, plans: &Plans) -> Self {
         let parameters = Parameters::of(stage);
-        let network = Builder::lay_out(stage, &parameters, Without::default());
+        let network = Builder::lay_out(stage, &parameters, Without::WORKING);
         debug_assert!(network.amplifiers.iter().all(|a| a.minus != a.plus), "the inputs are apart");
         debug_assert!(network.amplifiers.len() == stage.kind.spec().amplifiers, "a kind has as many amplifiers as it says");
         let held = network.held();
@@ -171,6 +183,7 @@ impl<'a> Model<'a> {
             inside: OnceCell::new(),
             input: OnceCell::new(),
             output: OnceCell::new(),
+            sampling: OnceCell::new(),
             network,
         }
     }
@@ -187,19 +200,31 @@ impl<'a> Model<'a> {
     /// The impedance at the first input's terminal.
     pub fn input_probe(&self) -> &Probe {
         let node = 1 << self.network.input_node(0).0;
-        self.input.get_or_init(|| self.probe(Without { source: true, load: false }, node, self.network.held() & !node))
+        self.input.get_or_init(|| self.probe(Without { source: true, ..Without::WORKING }, |_| node, self.network.held() & !node))
     }
 
     /// The impedance at the output terminal.
     pub fn output_probe(&self) -> &Probe {
-        self.output.get_or_init(|| self.probe(Without { source: false, load: true }, 1 << self.network.load.0, self.network.held()))
+        let without = Without { load: true, ..Without::WORKING };
+        self.output.get_or_init(|| self.probe(without, |network| 1 << network.load.0, self.network.held()))
     }
 
-    fn probe(&self, without: Without, terminal: u32, held: u32) -> Probe {
+    fn probe(&self, without: Without, terminal: impl Fn(&Network) -> u32, held: u32) -> Probe {
         let network = Builder::lay_out(self.stage, &self.parameters, without);
         let closed = |both| Expansion::compile(&network, Shape::Closed { both, row: 0, column: 0 }, &self.plans);
-        let (above, below) = (closed(terminal | held), closed(held));
+        let (above, below) = (closed(terminal(&network) | held), closed(held));
         Probe { network, above, below }
+    }
+
+    /// The network while the converter's sampling capacitor is connected, driven there by a current.
+    pub fn sampling(&self) -> &Injected {
+        self.sampling.get_or_init(|| {
+            let network = Builder::lay_out(self.stage, &self.parameters, Without { sample: false, ..Without::WORKING });
+            let held = network.held();
+            let driven = Expansion::compile(&network, Shape::Forward { source: network.hold.0, held }, &self.plans);
+            let closed = Expansion::compile(&network, Shape::Closed { both: held, row: 0, column: 0 }, &self.plans);
+            Injected { network, driven, closed }
+        })
     }
 
     /// The first drive's transfer to the load at DC, without solving the rest.

@@ -117,6 +117,10 @@ impl Parameters {
         for (parameter, value) in [
             (Parameter::LoadResistance, &stage.load.resistance),
             (Parameter::LoadCapacitance, &stage.load.capacitance),
+            (Parameter::ConverterSeries, &stage.converter.series_resistance),
+            (Parameter::ConverterShunt, &stage.converter.shunt_capacitance),
+            (Parameter::SampleCapacitance, &stage.converter.sample_capacitance),
+            (Parameter::SwitchResistance, &stage.converter.switch_resistance),
             (Parameter::StrayInverting, &stage.board.inverting_node),
             (Parameter::StrayNonInverting, &stage.board.non_inverting_node),
             (Parameter::StrayFeedback, &stage.board.across_feedback),

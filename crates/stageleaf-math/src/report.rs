@@ -34,6 +34,14 @@ pub enum Need {
     Ambient,
     /// The stage's `[band]`.
     Band,
+    /// The converter's input range.
+    FullScale,
+    /// The converter's number of bits.
+    Bits,
+    /// The converter's sampling capacitor.
+    SampleCapacitance,
+    /// The converter's acquisition time.
+    AcquisitionTime,
 }
 
 impl Need {
@@ -52,6 +60,10 @@ impl Need {
             Self::SignalFrequency => "signal.frequency",
             Self::Ambient => "ambient",
             Self::Band => "band",
+            Self::FullScale => "converter.full_scale",
+            Self::Bits => "converter.bits",
+            Self::SampleCapacitance => "converter.sample_capacitance",
+            Self::AcquisitionTime => "converter.acquisition_time",
         }
     }
 
@@ -82,6 +94,8 @@ pub enum Outcome {
     DoesNotApply(&'static str),
     /// A pole lies in the right half plane: the stage oscillates, and the figure has no meaning.
     Oscillates,
+    /// The figure is linear, and here the stage is not; why.
+    NotLinear(&'static str),
     /// No DC path for the bias current at an amplifier's input: the operating point does not exist.
     NoDcPath(Terminal),
     /// No junction temperature up to [`HOTTEST`](crate::analysis::thermal::HOTTEST) is steady: the stage runs away thermally.
@@ -120,6 +134,14 @@ pub enum Parameter {
     LoadResistance,
     /// Load capacitance.
     LoadCapacitance,
+    /// Series resistor in front of the converter.
+    ConverterSeries,
+    /// Capacitor at the converter's input.
+    ConverterShunt,
+    /// The converter's sampling capacitor.
+    SampleCapacitance,
+    /// Resistance of the converter's sampling switch.
+    SwitchResistance,
     /// Stray at the inverting input.
     StrayInverting,
     /// Stray at the non-inverting input.
@@ -230,6 +252,8 @@ pub enum NoiseOrigin {
     ReferenceResistance,
     /// Thermal noise of the load resistance.
     LoadResistance,
+    /// Thermal noise of the series resistor in front of the converter.
+    ConverterSeries,
     /// An amplifier's voltage noise (amplifier from 0).
     AmplifierVoltage(u8),
     /// Current noise at the non-inverting input.

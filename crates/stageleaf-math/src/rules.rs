@@ -144,7 +144,38 @@ impl<'s> Facts<'s> {
             | F::InputRangeMargin
             | F::ResistorDissipation
             | F::GainMargin
+            | F::FullScaleMargin
             | F::RippleOutput => None,
+            F::AcquisitionError => {
+                let c = &self.solution.model.stage.converter;
+                let (range, sample, t) = (c.full_scale?, c.sample_capacitance?.nominal, c.acquisition_time?);
+                let shunt = c.shunt_capacitance.map_or(0.0, |v| v.nominal);
+                let ohms = c.series_resistance?.nominal + self.component("Riso").unwrap_or(0.0);
+                let full_scale = range[1] - range[0];
+                line(
+                    "E ≈ FS·Cs/(Cs + Csh)·exp(−t/(R·(Cs + Csh)))",
+                    vec![
+                        ("FS", full_scale, D::Voltage),
+                        ("Cs", sample, D::Capacitance),
+                        ("Csh", shunt, D::Capacitance),
+                        ("t", t, D::Time),
+                        ("R", ohms, D::Resistance),
+                    ],
+                    full_scale * sample / (sample + shunt) * libm::exp(-t / (ohms * (sample + shunt))),
+                    "derived here: the charge is shared, and an ideal amplifier settles it through R",
+                    "the amplifier answers the kick too; the resistance of the sampling switch, the load",
+                )
+            }
+            F::Enob => {
+                let c = &self.solution.model.stage.converter;
+                let (range, bits) = (c.full_scale?, c.bits?);
+                let full_scale = range[1] - range[0];
+                let (noise, own, step) = (self.value(F::OutputNoise), c.noise.unwrap_or(0.0), full_scale / libm::exp2(bits));
+                let numbers =
+                    vec![("FS", full_scale, D::Voltage), ("v", noise, D::Voltage), ("v_c", own, D::Voltage), ("LSB", step, D::Voltage)];
+                let power = noise * noise + own * own + step * step / 12.0;
+                defined("N = log2(FS/√(12·(v² + v_c² + LSB²/12)))", numbers, libm::log2(full_scale / libm::sqrt(12.0 * power)))
+            }
             F::GainError => {
                 let (ng, open) = (self.flat?, self.part(P::OpenLoop));
                 line(

@@ -6,7 +6,7 @@ use core::{cell::OnceCell, f64::consts::TAU};
 use num_complex::Complex64;
 
 use crate::{
-    model::{Expansion, Model},
+    model::{Expansion, Injected, Model},
     network::{Drive, Network, Node},
     part::PartFigure,
     polynomial::{Coefficients, Polynomial},
@@ -87,6 +87,7 @@ pub struct Solution<'m> {
     pub(crate) margins: OnceCell<crate::analysis::margins::Margins>,
     pub(crate) drives: OnceCell<Vec<crate::analysis::swing::Drive>>,
     pub(crate) clip: OnceCell<crate::report::Outcome>,
+    pub(crate) kick: OnceCell<crate::analysis::converter::Kick>,
     pub(crate) reference: OnceCell<crate::analysis::response::ReferencePoint>,
 }
 
@@ -113,6 +114,7 @@ impl<'m> Solution<'m> {
             margins: OnceCell::new(),
             drives: OnceCell::new(),
             clip: OnceCell::new(),
+            kick: OnceCell::new(),
             reference: OnceCell::new(),
         }
     }
@@ -229,11 +231,15 @@ impl<'m> Solution<'m> {
         scratch
     }
 
-    /// An expansion's polynomials; closed shapes have all in node 0.
     fn expand(&self, expansion: &Expansion, struck: Option<usize>) -> Table {
-        let nodes = self.model.network.nodes;
+        self.expand_over(expansion, &self.model.network, struck)
+    }
+
+    /// An expansion's polynomials; closed shapes have all in node 0.
+    fn expand_over(&self, expansion: &Expansion, network: &Network, struck: Option<usize>) -> Table {
+        let nodes = network.nodes;
         let sets = 1 << self.amplifiers();
-        let scratch = self.run(expansion, &self.model.network, struck);
+        let scratch = self.run(expansion, network, struck);
         let mut terms = vec![Polynomial::default(); sets * nodes];
         for outcome in &expansion.plan.outcomes {
             let polynomial = expansion.plan.polynomial(outcome, &scratch);
@@ -383,6 +389,16 @@ impl<'m> Solution<'m> {
             };
             model.inside().iter().enumerate().map(&mut of).collect()
         })
+    }
+
+    /// Of a network of this build driven by a current: the numerator of the voltage at each node, scaled by the network's impedance, and
+    /// the denominator of all.
+    #[must_use]
+    pub fn driven(&self, injected: &Injected) -> (Vec<Polynomial>, Polynomial) {
+        let table = self.expand_over(&injected.driven, &injected.network, None);
+        let voltage = |node| if node == 0 { Polynomial::default() } else { self.combine(table.of(node), |_| true) };
+        let closed = self.expand_over(&injected.closed, &injected.network, None);
+        ((0..injected.network.nodes).map(voltage).collect(), self.combine(closed.of(0), |_| true))
     }
 
     /// Poles and zeros.

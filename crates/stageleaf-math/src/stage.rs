@@ -130,6 +130,28 @@ pub struct Load {
     pub capacitance: Option<Toleranced>,
 }
 
+/// A sampling converter at the output, with what stands between: `series_resistance` from the output to its input, `shunt_capacitance`
+/// from there to ground. The sampling capacitor is connected only while it acquires.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub struct Converter {
+    /// Ends of the input range, V.
+    pub full_scale: Option<[f64; 2]>,
+    /// Number of bits.
+    pub bits: Option<f64>,
+    /// Its own noise at its input, V rms, where stated.
+    pub noise: Option<f64>,
+    /// Sampling capacitor, F.
+    pub sample_capacitance: Option<Toleranced>,
+    /// Resistance of the sampling switch, Ω; none where it is not stated.
+    pub switch_resistance: Option<Toleranced>,
+    /// For how long the sampling capacitor is connected before a sample, s.
+    pub acquisition_time: Option<f64>,
+    /// Series resistor in front of the input, Ω.
+    pub series_resistance: Option<Toleranced>,
+    /// Capacitor from the input to ground, F.
+    pub shunt_capacitance: Option<Toleranced>,
+}
+
 /// Stray capacitances of the board to ground, in F.
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
 pub struct Board {
@@ -194,6 +216,8 @@ pub struct Stage {
     pub parts: Vec<(usize, Part)>,
     /// The load.
     pub load: Load,
+    /// The converter behind the load.
+    pub converter: Converter,
     /// Board strays.
     pub board: Board,
     /// Ambient temperature.
@@ -227,6 +251,13 @@ impl Stage {
     #[must_use]
     pub fn part_of(&self, amplifier: usize) -> &Part {
         self.parts.iter().find(|(a, _)| *a == amplifier + 1).map_or(&self.part, |(_, p)| p)
+    }
+
+    /// Whether anything stands at the output that draws current; whether a capacitance does.
+    #[must_use]
+    pub const fn is_loaded(&self) -> (bool, bool) {
+        let capacitance = self.load.capacitance.is_some() || self.converter.shunt_capacitance.is_some();
+        (self.load.resistance.is_some() || capacitance, capacitance)
     }
 
     /// The component called `name`, if the stage has it.

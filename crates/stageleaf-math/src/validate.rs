@@ -61,6 +61,10 @@ pub fn check(stage: &Stage) -> Result<(), Error> {
     for (what, value) in [
         ("load.resistance", &stage.load.resistance),
         ("load.capacitance", &stage.load.capacitance),
+        ("converter.sample_capacitance", &stage.converter.sample_capacitance),
+        ("converter.switch_resistance", &stage.converter.switch_resistance),
+        ("converter.series_resistance", &stage.converter.series_resistance),
+        ("converter.shunt_capacitance", &stage.converter.shunt_capacitance),
         ("board.inverting_node", &stage.board.inverting_node),
         ("board.non_inverting_node", &stage.board.non_inverting_node),
         ("board.across_feedback", &stage.board.across_feedback),
@@ -76,6 +80,16 @@ pub fn check(stage: &Stage) -> Result<(), Error> {
         if supply.positive.low <= supply.negative.high {
             return Err(Error::SupplyReversed { positive: supply.positive.low, negative: supply.negative.high });
         }
+    }
+    if let Some([low, high]) = stage.converter.full_scale {
+        span("converter.full_scale", low, high)?;
+        positive("converter.full_scale", high - low)?;
+    }
+    for (what, value) in [("converter.bits", stage.converter.bits), ("converter.acquisition_time", stage.converter.acquisition_time)] {
+        value.map_or(Ok(()), |value| positive(what, value))?;
+    }
+    if let Some(noise) = stage.converter.noise.filter(|noise| !noise.is_finite() || *noise < 0.0) {
+        return Err(Error::Negative { what: "converter.noise", given: noise });
     }
     if let Some(ripple) = stage.supply.and_then(|s| s.ripple) {
         if ripple.peak < 0.0 || !ripple.peak.is_finite() {

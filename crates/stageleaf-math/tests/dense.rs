@@ -14,7 +14,7 @@ use stageleaf_math::{
     },
     part::{Part, PartFigure, Rating, Zero},
     solution::Solution,
-    stage::{Board, Component, Isolation, Load, Source, Stage, Toleranced},
+    stage::{Board, Component, Converter, Isolation, Load, Source, Stage, Toleranced},
 };
 
 /// SplitMix64, so that a failure's seed reproduces it.
@@ -93,6 +93,7 @@ fn random_stage(draw: &mut Draw, kind: Kind, ohms: (f64, f64), farads: (f64, f64
         reference: None,
         parts: vec![],
         load,
+        converter: Converter { series_resistance: exact(draw, ohms), shunt_capacitance: exact(draw, farads), ..Converter::default() },
         board,
         ambient: None,
         band: None,

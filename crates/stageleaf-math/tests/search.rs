@@ -52,6 +52,7 @@ fn stage(limits: Vec<Limit>) -> Stage {
         reference: None,
         parts: vec![],
         load: Load::default(),
+        converter: Default::default(),
         board: Board::default(),
         ambient: Some(Ambient { range: Span::exact(298.15) }),
         band: None,

@@ -17,6 +17,8 @@
 //! | `source.in1.resistance`, `source.in1.capacitance`, `source.in1.kind` | differential kinds and those with several signals | toleranced |
 //! | `reference.voltage`, `reference.resistance` | kinds with a reference | toleranced |
 //! | `load.resistance`, `load.capacitance` | every kind | toleranced |
+//! | `converter.series_resistance`, `converter.shunt_capacitance`, `converter.sample_capacitance`, `converter.switch_resistance` | every kind | toleranced |
+//! | `converter.full_scale`, `converter.bits`, `converter.acquisition_time`, `converter.noise` | every kind | a range in V, a whole number, a time, V rms |
 //! | `board.inverting_node`, `board.non_inverting_node`, `board.across_feedback` | every kind | capacitance, toleranced |
 //! | `ambient.range` or `ambient.temperature` | every kind | temperature, a span |
 //! | `band.from`, `band.to` | every kind | frequency |
@@ -28,7 +30,7 @@ use stageleaf_math::{
     kind::{Drives, Feed, InputSpec, Kind},
     network::Drive,
     part::Part,
-    stage::{Board, Component, Isolation, Load, Stage, Toleranced},
+    stage::{Board, Component, Converter, Isolation, Load, Stage, Toleranced},
 };
 
 /// What the value at `path` measures in a stage of this kind; `None` where it is a word, a limit, or nothing of this kind's.
@@ -63,7 +65,11 @@ pub fn dimension(path: &str, kind: Kind) -> Option<Dimension> {
         ("reference", "resistance") if has_reference(kind) => Some(Dimension::Resistance),
         ("supply", "positive" | "negative" | "ripple") => Some(Dimension::Voltage),
         ("supply", "ripple_frequency") => Some(Dimension::Frequency),
-        ("load", "resistance") => Some(Dimension::Resistance),
+        ("load", "resistance") | ("converter", "series_resistance" | "switch_resistance") => Some(Dimension::Resistance),
+        ("converter", "sample_capacitance" | "shunt_capacitance") => Some(Dimension::Capacitance),
+        ("converter", "full_scale" | "noise") => Some(Dimension::Voltage),
+        ("converter", "bits") => Some(Dimension::Number),
+        ("converter", "acquisition_time") => Some(Dimension::Time),
         ("load", "capacitance") | ("board", "inverting_node" | "non_inverting_node" | "across_feedback") => Some(Dimension::Capacitance),
         ("ambient", "range" | "temperature") => Some(Dimension::Temperature),
         ("band", "from" | "to") => Some(Dimension::Frequency),
@@ -108,6 +114,7 @@ fn all_inputs(kind: Kind) -> &'static [InputSpec] {
         reference: None,
         parts: Vec::new(),
         load: Load::default(),
+        converter: Converter::default(),
         board: Board::default(),
         ambient: None,
         band: None,

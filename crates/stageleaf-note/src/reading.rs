@@ -1,7 +1,7 @@
 //! Reading a stage block: the whole stage, or everything that is wrong with it.
 //!
 //! Keys at the top: `stage`, `name`, `part`, `isolation`. Tables: `[parts]`, `[components]`, `[supply]`, `[source]`, `[signal]`,
-//! `[reference]`, `[load]`, `[ambient]`, `[band]`, `[board]`, `[limits]`, `[measured]`. Which of `[parts]`, `[source]`, `[signal]` and
+//! `[reference]`, `[load]`, `[converter]`, `[ambient]`, `[band]`, `[board]`, `[limits]`, `[measured]`. Which of `[parts]`, `[source]`, `[signal]` and
 //! `[reference]` a stage takes, and with which keys, depends on its kind.
 
 use std::{collections::BTreeSet, ops::Range};
@@ -43,6 +43,7 @@ const KEYS: &[&str] = &[
     "signal",
     "reference",
     "load",
+    "converter",
     "ambient",
     "band",
     "board",
@@ -100,6 +101,7 @@ pub(crate) fn read_named(text: &str, place: &Place, shelf: &Shelf, settings: &Se
         reference: driving.reference,
         parts,
         load: around.load,
+        converter: around.converter,
         board: around.board,
         ambient: around.ambient,
         band: around.band,
@@ -404,6 +406,8 @@ pub const fn takes(d: Dimension) -> &'static str {
         Dimension::Charge => "takes a charge",
         Dimension::Frequency => "takes a frequency",
         Dimension::Temperature => "takes a temperature",
+        Dimension::Time => "takes a time",
+        Dimension::Number => "takes a number",
         Dimension::Fraction => "takes a fraction",
         _ => "takes a quantity",
     }

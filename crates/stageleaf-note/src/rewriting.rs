@@ -7,8 +7,21 @@ use toml::de::{DeTable, DeValue};
 use crate::table::{toml_key, toml_string};
 
 /// The tables of a block in the order in which a new one stands among them.
-const ORDER: &[&str] =
-    &["parts", "supply", "components", "source", "signal", "reference", "load", "board", "ambient", "band", "limits", "measured"];
+const ORDER: &[&str] = &[
+    "parts",
+    "supply",
+    "components",
+    "source",
+    "signal",
+    "reference",
+    "load",
+    "converter",
+    "board",
+    "ambient",
+    "band",
+    "limits",
+    "measured",
+];
 
 /// Tables that may hold one table for each input.
 const BY_INPUT: &[&str] = &["source", "signal"];

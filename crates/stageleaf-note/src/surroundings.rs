@@ -2,7 +2,7 @@
 
 use stageleaf_math::{
     dimension::Dimension,
-    stage::{Ambient, Band, Board, Load, Ripple, Supply, Toleranced},
+    stage::{Ambient, Band, Board, Converter, Load, Ripple, Supply, Toleranced},
 };
 
 use crate::{
@@ -19,6 +19,7 @@ use crate::{
 pub struct Surroundings {
     pub supply: Option<Supply>,
     pub load: Load,
+    pub converter: Converter,
     pub board: Board,
     pub ambient: Option<Ambient>,
     pub band: Option<Band>,
@@ -33,6 +34,9 @@ pub fn read<'a>(reader: &mut Reader<'a>, find: &dyn Fn(&str) -> Option<Entry<'a>
         let table = Table::of(reader, &entry, &["resistance", "capacitance"]);
         around.load.resistance = table.toleranced(reader, "resistance", Dimension::Resistance, Least::AboveZero);
         around.load.capacitance = table.toleranced(reader, "capacitance", Dimension::Capacitance, Least::Zero);
+    }
+    if let Some(entry) = find("converter") {
+        around.converter = converter(reader, &entry);
     }
     if let Some(entry) = find("board") {
         let table = Table::of(reader, &entry, &["inverting_node", "non_inverting_node", "across_feedback"]);
@@ -209,6 +213,57 @@ fn parse_peak(text: &str) -> Result<f64, crate::Trouble> {
 }
 
 const AMPLITUDE: &str = "volts with what they count, as `20 mV peak to peak`, `10 mV peak`";
+
+fn converter<'a>(reader: &mut Reader<'a>, entry: &Entry<'a>) -> Converter {
+    const KEYS: &[&str] = &[
+        "full_scale",
+        "bits",
+        "noise",
+        "sample_capacitance",
+        "switch_resistance",
+        "acquisition_time",
+        "series_resistance",
+        "shunt_capacitance",
+    ];
+    let table = Table::of(reader, entry, KEYS);
+    let full_scale = table.read(reader, "full_scale", takes(Dimension::Voltage), |t| {
+        let allowed = "both ends of the input range, as `0 V to 4.096 V`, `-2.5 V to 2.5 V`";
+        let trouble = |message, attempt| crate::Trouble { range: 0..t.len(), message, allowed: allowed.into(), attempt };
+        let span = parse_span(t, Dimension::Voltage)?;
+        if !t.contains(" to ") {
+            return Err(trouble(format!("{} does not say where the input range begins and ends", quoted(t)), Some(format!("0 V to {t}"))));
+        }
+        if span.low < span.high { Ok([span.low, span.high]) } else { Err(trouble(format!("{} is no range", quoted(t)), None)) }
+    });
+    let bits = table.read(reader, "bits", takes(Dimension::Number), |t| {
+        let value = parse(t, Dimension::Number)?;
+        let whole = (1.0..=32.0).contains(&value) && libm::floor(value) >= value;
+        let trouble = || {
+            let message = format!("{} is no number of bits", quoted(t));
+            crate::Trouble { range: 0..t.len(), message, allowed: "a whole number from 1 to 32".into(), attempt: None }
+        };
+        if whole { Ok(value) } else { Err(trouble()) }
+    });
+    let noise = table.read(reader, "noise", takes(Dimension::Voltage), |t| {
+        let value = parse(t, Dimension::Voltage)?;
+        not_negative(t, value, Dimension::Voltage).map(|()| value)
+    });
+    let acquisition_time = table.read(reader, "acquisition_time", takes(Dimension::Time), |t| {
+        let value = parse(t, Dimension::Time)?;
+        above_zero(t, value, Dimension::Time).map(|()| value)
+    });
+    let mut part = |key, d| table.toleranced(reader, key, d, Least::AboveZero);
+    Converter {
+        full_scale,
+        bits,
+        noise,
+        acquisition_time,
+        sample_capacitance: part("sample_capacitance", Dimension::Capacitance),
+        switch_resistance: part("switch_resistance", Dimension::Resistance),
+        series_resistance: part("series_resistance", Dimension::Resistance),
+        shunt_capacitance: part("shunt_capacitance", Dimension::Capacitance),
+    }
+}
 
 fn band<'a>(reader: &mut Reader<'a>, entry: &Entry<'a>) -> Option<Band> {
     let table = Table::of(reader, entry, &["from", "to"]);

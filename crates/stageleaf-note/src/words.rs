@@ -47,6 +47,10 @@ pub fn parameter_text(parameter: Parameter) -> String {
         Parameter::ReferenceResistance => "output resistance of the reference".into(),
         Parameter::LoadResistance => "load resistance".into(),
         Parameter::LoadCapacitance => "load capacitance".into(),
+        Parameter::ConverterSeries => "converter's series resistance".into(),
+        Parameter::ConverterShunt => "converter's shunt capacitance".into(),
+        Parameter::SampleCapacitance => "sampling capacitor".into(),
+        Parameter::SwitchResistance => "resistance of the sampling switch".into(),
         Parameter::StrayInverting => "stray capacitance at the inverting input".into(),
         Parameter::StrayNonInverting => "stray capacitance at the non-inverting input".into(),
         Parameter::StrayFeedback => "stray capacitance across the feedback".into(),
@@ -83,11 +87,18 @@ pub fn parameter_dimension(parameter: Parameter, stage: &stageleaf_math::stage::
             Some(Source::Capacitive { .. } | Source::Photodiode { .. }) => Dimension::Capacitance,
             _ => Dimension::Resistance,
         },
-        Parameter::LoadResistance | Parameter::SourceShunt(_) | Parameter::ReferenceResistance => Dimension::Resistance,
+        Parameter::LoadResistance
+        | Parameter::SourceShunt(_)
+        | Parameter::ReferenceResistance
+        | Parameter::ConverterSeries
+        | Parameter::SwitchResistance => Dimension::Resistance,
         Parameter::DarkCurrent(_) => Dimension::Current,
-        Parameter::LoadCapacitance | Parameter::StrayInverting | Parameter::StrayNonInverting | Parameter::StrayFeedback => {
-            Dimension::Capacitance
-        }
+        Parameter::LoadCapacitance
+        | Parameter::ConverterShunt
+        | Parameter::SampleCapacitance
+        | Parameter::StrayInverting
+        | Parameter::StrayNonInverting
+        | Parameter::StrayFeedback => Dimension::Capacitance,
         Parameter::SupplyPositive | Parameter::SupplyNegative | Parameter::CommonMode | Parameter::ReferenceVoltage => Dimension::Voltage,
         Parameter::Temperature => Dimension::Temperature,
         Parameter::Part(figure) | Parameter::PartOf(_, figure) => figure.dimension(),
@@ -126,6 +137,10 @@ pub fn need_text(need: Need, part_file: &str) -> String {
         Need::SignalFrequency => "`frequency` under [signal] in the stage's block".into(),
         Need::Ambient => "[ambient] with `range` in the stage's block".into(),
         Need::Band => "[band] with `from` and `to` in the stage's block".into(),
+        Need::FullScale | Need::Bits | Need::SampleCapacitance | Need::AcquisitionTime => {
+            let key = need.key();
+            format!("`{}` under [converter] in the stage's block", key.split_once('.').map_or(key, |(_, key)| key))
+        }
     }
 }
 
@@ -212,6 +227,7 @@ pub fn origin_text(origin: NoiseOrigin) -> String {
         NoiseOrigin::SourceShot(input) => return numbered("Shot noise of the source's current", input),
         NoiseOrigin::ReferenceResistance => "Output resistance of the reference, thermal",
         NoiseOrigin::LoadResistance => "Load resistance, thermal",
+        NoiseOrigin::ConverterSeries => "Series resistor of the converter, thermal",
         NoiseOrigin::AmplifierVoltage(a) => return of_amplifier("Amplifier voltage noise", a),
         NoiseOrigin::CurrentNonInverting(a) => return of_amplifier("Current noise, non-inverting input", a),
         NoiseOrigin::CurrentInverting(a) => return of_amplifier("Current noise, inverting input", a),
@@ -230,6 +246,7 @@ pub fn outcome_text(outcome: &Outcome, d: Dimension, digits: usize) -> String {
         }
         Outcome::DoesNotApply(why) => format!("does not apply: {why}"),
         Outcome::Oscillates => "oscillates".into(),
+        Outcome::NotLinear(why) => format!("undetermined: {why}"),
         Outcome::NoDcPath(at) => {
             let input = if at.inverting { "inverting" } else { "+" };
             of_amplifier(&format!("no DC path for the bias current at the {input} input"), at.amplifier)

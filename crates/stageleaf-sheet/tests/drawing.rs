@@ -6,7 +6,7 @@ mod samples;
 use stageleaf_math::{
     kind::{ComponentSpec, Feed, Kind},
     network::Drive,
-    stage::{Isolation, Source, Span, Supply, Toleranced},
+    stage::{Converter, Isolation, Source, Span, Supply, Toleranced},
 };
 use stageleaf_note::Field;
 use stageleaf_sheet::drawing::{
@@ -82,6 +82,7 @@ fn no_label_covers_another_or_a_wire() {
         assert!(combinations.len() >= 64, "{kind:?}: only {} combinations", combinations.len());
         for (names, isolation, load) in combinations {
             let mut block = samples::block(*kind, &names, isolation, load, false);
+            let some = |on: bool, value: f64| on.then(|| Toleranced::exact(value));
             let (drive, count) = inputs(&block);
             for source in sources(drive) {
                 block.stage.sources = vec![source; count];
@@ -93,8 +94,18 @@ fn no_label_covers_another_or_a_wire() {
                 if let Some(reference) = &mut block.stage.reference {
                     reference.resistance = source.is_some().then_some(Toleranced::exact(10.0));
                 }
-                let case = format!("{kind:?} with {names:?}, {isolation:?}, load {load:?}, source {source:?}");
-                keeps_clear(&canvas(&block), &case);
+                for converter in 0..5 {
+                    let (bits, series, shunt) = (converter > 0, converter & 1 == 0, converter > 2);
+                    block.stage.converter = Converter {
+                        bits: bits.then_some(16.0),
+                        series_resistance: some(bits && series, 100.0),
+                        shunt_capacitance: some(shunt, 1e-9),
+                        ..Converter::default()
+                    };
+                    let converter = block.stage.converter;
+                    let case = format!("{kind:?} with {names:?}, {isolation:?}, load {load:?}, source {source:?}, {converter:?}");
+                    keeps_clear(&canvas(&block), &case);
+                }
             }
         }
     }
@@ -112,7 +123,7 @@ fn keeps_clear(drawing: &Canvas, case: &str) {
     }
     let frame = drawing.frame(0);
     // Two amplifiers one behind the other take more; such a drawing scrolls in its own box.
-    let most = if case.starts_with("Instrumentation") { 720 } else { 600 };
+    let most = if case.starts_with("Instrumentation") { 720 } else { 600 } + if case.contains("Some(16.0)") { 190 } else { 0 };
     assert!(frame.x1 - frame.x0 <= most, "{case}: {} wide", frame.x1 - frame.x0);
 }
 

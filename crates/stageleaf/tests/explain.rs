@@ -126,6 +126,8 @@ impl Reader<'_> {
         match name {
             "arctan" => Ok(self.factor()?.atan()),
             "sin" => Ok(self.factor()?.sin()),
+            "exp" => Ok(self.factor()?.exp()),
+            "log2" => Ok(self.factor()?.log2()),
             "π" => Ok(PI),
             "2π" => Ok(2.0 * PI),
             number => number.parse().map_err(|_| format!("`{number}` has no value")),

@@ -1,7 +1,9 @@
 //! The analyses: one file each. A figure's value in one build comes from [`outcome`].
 
+pub mod converter;
 pub mod dc;
 pub mod margins;
+pub mod modes;
 pub mod noise;
 pub mod rejection;
 pub mod response;
@@ -50,8 +52,14 @@ pub const fn touched_by(figure: Figure) -> u8 {
         | F::StagePsrr
         | F::StagePsrrAt
         | F::RippleOutput => touch::DC,
-        F::OutputNoise | F::InputNoise | F::OutputNoisePeakToPeak | F::NoiseDensityAt | F::Snr | F::SnrBits => touch::NOISE,
-        F::ClipMargin | F::InputRangeMargin | F::CurrentMargin | F::SlewMargin | F::FullPowerBandwidth => touch::SWING,
+        F::OutputNoise | F::InputNoise | F::OutputNoisePeakToPeak | F::NoiseDensityAt | F::Snr | F::SnrBits | F::Enob => touch::NOISE,
+        F::ClipMargin
+        | F::FullScaleMargin
+        | F::InputRangeMargin
+        | F::CurrentMargin
+        | F::SlewMargin
+        | F::FullPowerBandwidth
+        | F::AcquisitionError => touch::SWING,
         F::SupplyCurrent | F::Dissipation | F::JunctionTemperature | F::ResistorDissipation => touch::POWER,
     }
 }
@@ -108,6 +116,21 @@ pub fn lacking(solution: &Solution<'_>, query: Query) -> Option<Outcome> {
             missing.integrated_noise(solution);
             missing.signal_frequency(solution);
             missing.amplitude(solution.model.stage.signal().into_iter());
+        }
+        F::Enob => {
+            missing.integrated_noise(solution);
+            missing.converter(solution, &[Need::FullScale, Need::Bits]);
+        }
+        F::AcquisitionError => {
+            missing.small_signal(solution);
+            missing.converter(solution, &[Need::FullScale, Need::SampleCapacitance, Need::AcquisitionTime]);
+            for figure in [PartFigure::SlewRise, PartFigure::SlewFall, PartFigure::CurrentLimit] {
+                missing.part(solution, figure);
+            }
+        }
+        F::FullScaleMargin => {
+            missing.signal_level(solution);
+            missing.converter(solution, &[Need::FullScale]);
         }
         F::NoiseDensityAt => missing.noise(solution),
         F::ClipMargin | F::InputRangeMargin => {
@@ -218,6 +241,9 @@ pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
             }
         }
         F::NoiseDensityAt => noise::density(solution, query.at.unwrap_or(0.0)),
+        F::Enob => return converter::enob(solution),
+        F::AcquisitionError => return converter::acquisition_error(solution),
+        F::FullScaleMargin => return converter::full_scale_margin(solution),
         F::ClipMargin => return swing::clip_margin(solution),
         F::InputRangeMargin => return swing::input_range_margin(solution),
         F::CurrentMargin => return swing::current_margin(solution),
@@ -330,6 +356,23 @@ impl Missing {
             None => self.need(Need::Signal),
             Some(signal) if signal.peak > 0.0 && signal.frequency.is_none() => self.need(Need::SignalFrequency),
             Some(_) => {}
+        }
+    }
+
+    /// Needs what the converter's table may leave out.
+    pub fn converter(&mut self, solution: &Solution<'_>, needs: &[Need]) {
+        let converter = &solution.model.stage.converter;
+        for &need in needs {
+            let stated = match need {
+                Need::FullScale => converter.full_scale.is_some(),
+                Need::Bits => converter.bits.is_some(),
+                Need::SampleCapacitance => converter.sample_capacitance.is_some(),
+                Need::AcquisitionTime => converter.acquisition_time.is_some(),
+                _ => true,
+            };
+            if !stated {
+                self.need(need);
+            }
         }
     }
 

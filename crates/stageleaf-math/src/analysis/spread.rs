@@ -194,7 +194,14 @@ impl<'m> Spread<'m> {
 
     fn search(&mut self, query: Query) -> Extremes {
         let centre = lacking(&self.nominal, query).unwrap_or_else(|| value(&self.nominal, query));
-        if matches!(centre, Outcome::Undetermined(_) | Outcome::DoesNotApply(_) | Outcome::NoDcPath(_) | Outcome::NoSteadyTemperature) {
+        if matches!(
+            centre,
+            Outcome::Undetermined(_)
+                | Outcome::DoesNotApply(_)
+                | Outcome::NotLinear(_)
+                | Outcome::NoDcPath(_)
+                | Outcome::NoSteadyTemperature
+        ) {
             let same = Extreme { outcome: centre.clone(), corner: Vec::new(), effects: Vec::new(), ends: Vec::new() };
             return Extremes { centre, low: same.clone(), high: same, seen: Vec::new() };
         }

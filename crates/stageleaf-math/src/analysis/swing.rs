@@ -416,13 +416,19 @@ fn current(solution: &Solution<'_>, amplifier: usize, drive: &Drive) -> Outcome 
     }
 }
 
-fn slew_rate(solution: &Solution<'_>, amplifier: usize) -> f64 {
+/// The steepest slope that the signals ask of an amplifier, V/s.
+pub(super) fn slope(solution: &Solution<'_>, amplifier: usize) -> f64 {
+    let moving = levels(solution).filter(|l| l.peak > 0.0 && l.frequency > 0.0);
+    moving.map(|l| TAU * l.frequency * magnitude(pin(solution, amplifier, l.drive, l.frequency).behind) * l.peak).sum()
+}
+
+pub(super) fn slew_rate(solution: &Solution<'_>, amplifier: usize) -> f64 {
     let part = |figure| solution.part_of(amplifier, figure).unwrap_or(f64::INFINITY);
     part(PartFigure::SlewRise).min(part(PartFigure::SlewFall))
 }
 
 fn slew(solution: &Solution<'_>, amplifier: usize, drive: &Drive) -> Outcome {
-    let capacitive = solution.model.stage.load.capacitance.is_some();
+    let (_, capacitive) = solution.model.stage.is_loaded();
     let mut missing = Missing::default();
     for figure in [PartFigure::SlewRise, PartFigure::SlewFall, PartFigure::CurrentLimit] {
         if solution.part_of(amplifier, figure).is_none() && (capacitive || figure != PartFigure::CurrentLimit) {
@@ -432,10 +438,7 @@ fn slew(solution: &Solution<'_>, amplifier: usize, drive: &Drive) -> Outcome {
     if let Some(undetermined) = missing.outcome() {
         return undetermined;
     }
-    let needed: f64 = levels(solution)
-        .filter(|l| l.peak > 0.0 && l.frequency > 0.0)
-        .map(|l| TAU * l.frequency * magnitude(pin(solution, amplifier, l.drive, l.frequency).behind) * l.peak)
-        .sum();
+    let needed = slope(solution, amplifier);
     if needed <= 0.0 {
         return Outcome::Value(f64::INFINITY);
     }
@@ -471,7 +474,7 @@ pub fn full_power_bandwidth(solution: &Solution<'_>) -> Outcome {
 
 fn full_power_bandwidth_of(solution: &Solution<'_>, amplifier: usize) -> Outcome {
     let stage = solution.model.stage;
-    let loaded = stage.load.resistance.is_some() || stage.load.capacitance.is_some();
+    let (loaded, _) = stage.is_loaded();
     let limit = solution.part_of(amplifier, PartFigure::CurrentLimit);
     if loaded && limit.is_none() {
         return Outcome::Undetermined(alloc::vec![Need::Part(PartFigure::CurrentLimit)]);

@@ -85,8 +85,10 @@ pub struct Network {
     pub inputs: Vec<Drive>,
     /// Amplifiers: A1, A2, …
     pub amplifiers: Vec<Amplifier>,
-    /// Where the stage's output is taken.
+    /// Where the stage's output is taken: at the converter's input, where there is one.
     pub load: Node,
+    /// The converter's sampling capacitor while it is connected; ground where it is not.
+    pub hold: Node,
 }
 
 impl Network {
@@ -145,12 +147,19 @@ pub struct Floating {
 }
 
 /// What to leave out of a network, for the impedances seen from outside.
-#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct Without {
     /// Drive the first input's terminal itself: no source impedance there.
     pub source: bool,
-    /// No load.
+    /// No load, and no converter.
     pub load: bool,
+    /// The converter's sampling capacitor, which is connected only while it acquires.
+    pub sample: bool,
+}
+
+impl Without {
+    /// The stage as it works.
+    pub const WORKING: Self = Self { source: false, load: false, sample: true };
 }
 
 /// Collects nodes and elements while a kind lays out its network.
@@ -164,6 +173,7 @@ pub struct Builder<'a> {
     elements: Vec<Element>,
     amplifiers: Vec<Amplifier>,
     load: Node,
+    hold: Node,
 }
 
 impl<'a> Builder<'a> {
@@ -172,7 +182,8 @@ impl<'a> Builder<'a> {
     pub fn lay_out(stage: &Stage, parameters: &Parameters, without: Without) -> Network {
         let inputs: Vec<Drive> = (stage.kind.spec().inputs)(stage).iter().map(|i| i.drive).collect();
         let nodes = u8::try_from(inputs.len() + 1).unwrap_or(u8::MAX);
-        let mut builder = Builder { stage, parameters, without, nodes, inputs, elements: Vec::new(), amplifiers: Vec::new(), load: GROUND };
+        let mut builder =
+            Builder { stage, parameters, without, nodes, inputs, elements: Vec::new(), amplifiers: Vec::new(), load: GROUND, hold: GROUND };
         (stage.kind.spec().build)(stage, &mut builder);
         Network {
             nodes: usize::from(builder.nodes),
@@ -180,6 +191,7 @@ impl<'a> Builder<'a> {
             inputs: builder.inputs,
             amplifiers: builder.amplifiers,
             load: builder.load,
+            hold: builder.hold,
         }
     }
 
@@ -363,7 +375,7 @@ impl<'a> Builder<'a> {
         (pin, sense)
     }
 
-    /// The output side shared by all kinds: `Riso`, snubber, load. Returns the load node.
+    /// The output side shared by all kinds: `Riso`, snubber, load, converter. Returns the node that an inside loop senses.
     pub fn output(&mut self, pin: Node) -> Node {
         self.series_rc("Rsn", "Csn", pin, GROUND);
         let load = self.behind("Riso", pin);
@@ -375,8 +387,39 @@ impl<'a> Builder<'a> {
             if let Some(slot) = self.parameters.slot(Parameter::LoadCapacitance) {
                 self.elements.push(Element { a: load, b: GROUND, law: Law::Capacitance(slot), noise: None });
             }
+            self.converter(load);
         }
         load
+    }
+
+    /// The converter behind the output, and its sampling capacitor while that is connected.
+    fn converter(&mut self, output: Node) {
+        let between = self.parameters.slot(Parameter::ConverterSeries);
+        let input = self.behind_resistance(between, output, Some(NoiseOrigin::ConverterSeries));
+        self.load = input;
+        let capacitor = |builder: &mut Self, parameter: Parameter, node: Node| {
+            let slot = builder.parameters.slot(parameter);
+            if let Some(slot) = slot {
+                builder.elements.push(Element { a: node, b: GROUND, law: Law::Capacitance(slot), noise: None });
+            }
+            slot.is_some()
+        };
+        capacitor(self, Parameter::ConverterShunt, input);
+        if !self.without.sample {
+            let switch = self.parameters.slot(Parameter::SwitchResistance);
+            let hold = self.behind_resistance(switch, input, None);
+            if capacitor(self, Parameter::SampleCapacitance, hold) {
+                self.hold = hold;
+            }
+        }
+    }
+
+    /// The node behind a resistance; `from` itself where there is none.
+    fn behind_resistance(&mut self, slot: Option<usize>, from: Node, noise: Option<NoiseOrigin>) -> Node {
+        let Some(slot) = slot else { return from };
+        let to = self.node();
+        self.elements.push(Element { a: from, b: to, law: Law::Resistance(slot), noise });
+        to
     }
 
     fn slot(&self, parameter: Parameter) -> usize {

@@ -104,6 +104,65 @@ fn with(old: &str, new: &str) -> String {
     problems(&BLOCK.replace(old, new))
 }
 
+/// The block with a converter of these lines.
+fn converter(lines: &str) -> String {
+    BLOCK.replace("[ambient]", &format!("[converter]\n{lines}\n\n[ambient]"))
+}
+
+#[test]
+fn a_converter_is_read() {
+    let block = read(&converter(
+        "full_scale = \"-2.5 V to 2.5 V\"\nbits = 16\nnoise = \"40 µV\"\nsample_capacitance = \"30p 20%\"\nswitch_resistance = \"150\"\n\
+         acquisition_time = \"1.5 µs\"\nseries_resistance = \"100 1%\"\nshunt_capacitance = \"1n 5%\"",
+    ));
+    let block = block.unwrap_or_else(|p| panic!("{}", common::written(&p)));
+    let c = block.stage.converter;
+    assert_eq!((c.full_scale, c.bits, c.noise, c.acquisition_time), (Some([-2.5, 2.5]), Some(16.0), Some(40e-6), Some(1.5e-6)));
+    let part = |value: Option<stageleaf_math::stage::Toleranced>| value.map(|v| (v.nominal, v.plus)).unwrap();
+    assert_eq!((part(c.sample_capacitance), part(c.shunt_capacitance)), ((30e-12, 0.2), (1e-9, 0.05)));
+    assert_eq!((part(c.switch_resistance), part(c.series_resistance)), ((150.0, 0.0), (100.0, 0.01)));
+    let changed = block.rewrite("converter.shunt_capacitance", "2n2 5%");
+    assert_eq!(changed, block.text.replace("shunt_capacitance = \"1n 5%\"", "shunt_capacitance = \"2n2 5%\""));
+    assert_eq!(block.without("converter.noise"), block.text.replace("noise = \"40 µV\"\n", ""));
+    // Every key may be left out.
+    assert_eq!(read(&converter("")).unwrap().stage.converter, stageleaf_math::stage::Converter::default());
+}
+
+#[test]
+fn a_converter_that_cannot_be() {
+    let first = |lines: &str| {
+        let text = problems(&converter(lines));
+        let lines: Vec<&str> = text.lines().collect();
+        format!("{}\n{}", lines[0].split_once(": ").unwrap().1, lines[3..].join("\n"))
+    };
+    assert_eq!(
+        first("full_scale = \"4.096 V\""),
+        "`full_scale` takes a voltage; \"4.096 V\" does not say where the input range begins and ends\n\
+         allowed: both ends of the input range, as `0 V to 4.096 V`, `-2.5 V to 2.5 V`\n\
+         try: full_scale = \"0 V to 4.096 V\""
+    );
+    assert_eq!(
+        first("full_scale = \"1 V to 1 V\""),
+        "`full_scale` takes a voltage; \"1 V to 1 V\" is no range\nallowed: both ends of the input range, as `0 V to 4.096 V`, `-2.5 V to 2.5 V`"
+    );
+    for bits in ["\"12.5\"", "0", "64", "-8"] {
+        let shown = bits.trim_matches('"');
+        assert_eq!(
+            first(&format!("bits = {bits}")),
+            format!("`bits` takes a number; \"{shown}\" is no number of bits\nallowed: a whole number from 1 to 32")
+        );
+    }
+    assert_eq!(
+        first("sample_capacitance = \"0 F\""),
+        "`sample_capacitance` takes a capacitance; \"0 F\" is not above zero\nallowed: farads, as `3p3`, `100n`, `4.7 µF`"
+    );
+    assert_eq!(
+        first("acquisition_time = \"2 V\""),
+        "`acquisition_time` takes a time; \"2 V\" is a voltage\nallowed: seconds, as `2 µs`, `15 ms`"
+    );
+    assert!(first("series_resistence = \"100\"").starts_with("[converter] has no key `series_resistence`\n"));
+}
+
 #[test]
 fn a_signal_may_stand_still() {
     let still = BLOCK.replace("peak = \"0.4 V\"", "dc = \"-0.2 V\"").replace("frequency = \"20 kHz\"\n", "");
@@ -189,7 +248,7 @@ fn unknown_keys_tables_components_and_kinds() {
         r#"notes/a.md:40:2: a stage block has no key `bnd`
   40 | [bnd]
      |  ^^^
-allowed: `stage`, `name`, `part`, `isolation`, `parts`, `components`, `supply`, `source`, `signal`, `reference`, `load`, `ambient`, `band`, `board`, `limits`, `measured`
+allowed: `stage`, `name`, `part`, `isolation`, `parts`, `components`, `supply`, `source`, `signal`, `reference`, `load`, `converter`, `ambient`, `band`, `board`, `limits`, `measured`
 try: band"#
     );
     assert_eq!(

@@ -329,6 +329,16 @@ impl Canvas {
         self.text(x + 7, y - 8, "end", "out", 22);
     }
 
+    /// A converter whose input is at `(x, y)`.
+    pub fn converter(&mut self, x: i32, y: i32) {
+        let _ = write!(self.bodies, "M{x} {y}l14-16h40v32h-40z");
+        self.ink.push(Area { x0: x, y0: y - 16, x1: x + 14, y1: y + 16 });
+        for (y0, y1) in [(y - 16, y - 15), (y + 15, y + 16)] {
+            self.ink.push(Area { x0: x, y0, x1: x + 54, y1 });
+        }
+        self.text(x + 32, y + 5, "middle", "ADC", 34);
+    }
+
     /// An input terminal that a wire leaves at `(x, y)`, with its name at the left.
     pub fn input(&mut self, x: i32, y: i32, name: &str) {
         let _ = write!(self.bodies, "M{} {y}a3 3 0 1 0 6 0a3 3 0 1 0-6 0z", x - 6);

@@ -148,6 +148,20 @@ impl<'a> Labels<'a> {
         Some(self.label("CL", "load.capacitance".into(), "load capacitance", value, Dimension::Capacitance))
     }
 
+    /// The label of the resistor in front of the converter, if there is one.
+    #[must_use]
+    pub fn converter_resistance(&self) -> Option<Label> {
+        let value = self.stage().converter.series_resistance.as_ref()?;
+        Some(self.label("Radc", "converter.series_resistance".into(), "series resistor of the converter", value, Dimension::Resistance))
+    }
+
+    /// The label of the capacitor at the converter's input, if there is one.
+    #[must_use]
+    pub fn converter_capacitance(&self) -> Option<Label> {
+        let value = self.stage().converter.shunt_capacitance.as_ref()?;
+        Some(self.label("Cadc", "converter.shunt_capacitance".into(), "capacitor at the converter's input", value, Dimension::Capacitance))
+    }
+
     /// The rails' texts; no negative one where that rail is the ground.
     #[must_use]
     pub fn rails(&self) -> (String, Option<String>) {

@@ -4,7 +4,7 @@ use super::{
     Labels,
     kit::{Canvas, Label, Symbol, Upper},
 };
-use stageleaf_math::stage::{Isolation, Source};
+use stageleaf_math::stage::{Converter, Isolation, Source};
 
 /// Where the source's column stands.
 pub const SOURCE_X: i32 = 20;
@@ -22,6 +22,8 @@ pub const PINS: i32 = 34;
 const OUTPUT: i32 = 132;
 /// From the output node to the load.
 const LOAD: i32 = 120;
+/// From the output's last column to the converter's input, so that the label of what stands there keeps clear of that column.
+const CONVERTER: i32 = 130;
 /// From the inverting input's height to the other's.
 pub const PITCH: i32 = 44;
 
@@ -114,9 +116,31 @@ pub fn amplifier_with(c: &mut Canvas, l: &Labels, (x, y): (i32, i32), paths: Vec
         c.ground(at, middle + 20);
         end = at;
     }
+    if l.stage().converter != Converter::default() {
+        return converter(c, l, end, out);
+    }
     let terminal = end + if end == pin { 46 } else { 24 };
     c.wire(&[(end, out), (terminal, out)]);
     c.terminal(terminal, out);
+}
+
+/// A converter behind the output's last column `end`: its series resistor, the capacitor at its input, and its symbol.
+fn converter(c: &mut Canvas, l: &Labels, mut end: i32, out: i32) {
+    let shunt = l.converter_capacitance();
+    if let Some(label) = l.converter_resistance() {
+        c.across(Symbol::Resistor, end, end + CONVERTER, end + 62, out, label);
+        end += CONVERTER;
+    } else if shunt.is_some() {
+        c.wire(&[(end, out), (end + CONVERTER, out)]);
+        end += CONVERTER;
+    }
+    if let Some(label) = shunt {
+        c.dot(end, out);
+        c.upright_left(Symbol::Capacitor, end, out, out + 56, out + 36, label);
+        c.ground(end, out + 56);
+    }
+    c.wire(&[(end, out), (end + 24, out)]);
+    c.converter(end + 24, out);
 }
 
 /// Paths over the amplifier, one above the other, their parts around `middle`; `end` tells column and height of an end.

@@ -29,9 +29,17 @@ const SOURCE: [(&str, &str, &str); 4] = [
 ];
 
 /// Fields that every kind has, with their labels.
-const AROUND: [(&str, &str); 8] = [
+const AROUND: [(&str, &str); 16] = [
     ("load.resistance", "Load resistance"),
     ("load.capacitance", "Load capacitance"),
+    ("converter.full_scale", "Converter range"),
+    ("converter.bits", "Converter bits"),
+    ("converter.noise", "Converter noise, rms"),
+    ("converter.sample_capacitance", "Sampling capacitor"),
+    ("converter.switch_resistance", "Sampling switch"),
+    ("converter.acquisition_time", "Acquisition time"),
+    ("converter.series_resistance", "Converter series R"),
+    ("converter.shunt_capacitance", "Converter shunt C"),
     ("ambient.range", "Ambient"),
     ("band.from", "Noise band from"),
     ("band.to", "Noise band to"),

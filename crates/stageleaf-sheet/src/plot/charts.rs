@@ -216,6 +216,7 @@ fn short_name(origin: NoiseOrigin) -> String {
         NoiseOrigin::SourceShot(_) => "shot noise",
         NoiseOrigin::ReferenceResistance => "reference",
         NoiseOrigin::LoadResistance => "load",
+        NoiseOrigin::ConverterSeries => "Radc",
     }
     .to_owned()
 }

@@ -172,7 +172,9 @@ impl Other {
             Outcome::Oscillates => Self::Oscillates(true),
             Outcome::NoDcPath(_) => Self::NoDcPath(true),
             Outcome::NoSteadyTemperature => Self::NoSteadyTemperature(true),
-            Outcome::Undetermined(_) | Outcome::Value(_) => Self::Undetermined(outcome_words(outcome, dimension, part)),
+            Outcome::Undetermined(_) | Outcome::NotLinear(_) | Outcome::Value(_) => {
+                Self::Undetermined(outcome_words(outcome, dimension, part))
+            }
         }
     }
 }
