@@ -7,7 +7,7 @@ use clap::{Parser, Subcommand};
 use crate::{
     alternates,
     check::{self, Ending},
-    diff, embed, explain,
+    choose, diff, embed, explain,
     fault::Fault,
     needs, new, page,
     terminal::Terminal,
@@ -46,6 +46,10 @@ enum Command {
     ///
     /// Exit code: 0 every stage has another part that keeps its limits; 1 one has none; 2 something could not be read.
     Alternates(alternates::Options),
+    /// Choose component values for what is wanted, from a series or a stock list
+    ///
+    /// Every choice is judged in full, with the stage's own limits. Exit code: 0 one keeps them all; 1 none does; 2 bad input.
+    Choose(choose::Options),
     /// Put sheets into a book: mdBook's preprocessor
     Embed {
         /// Nothing, or `supports RENDERER`
@@ -88,6 +92,7 @@ fn perform(command: &Command, terminal: &mut Terminal) -> Ending {
         Command::Diff(options) => diff::run(options, terminal),
         Command::Needs(options) => needs::run(options, terminal),
         Command::Alternates(options) => alternates::run(options, terminal),
+        Command::Choose(options) => choose::run(options, terminal),
         Command::Page(options) => write_page(options, terminal),
         Command::Embed { arguments } => match embed::command(arguments, io::stdin().lock(), io::stdout().lock(), io::stderr().lock()) {
             Ok(true) => Ending::Good,

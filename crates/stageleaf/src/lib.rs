@@ -10,6 +10,7 @@
 pub mod alternates;
 pub mod asked;
 pub mod check;
+pub mod choose;
 pub mod cli;
 pub mod diff;
 pub mod embed;

@@ -3,6 +3,7 @@
 //! Every answer is a stage that was judged in full at its worst case; no closed form decides anything.
 
 pub mod alternates;
+pub mod choose;
 pub mod needs;
 
 use alloc::vec::Vec;
