@@ -33,7 +33,7 @@ fn stage(kind: Kind, components: &[(&'static str, f64)]) -> Stage {
         supply: None,
         sources: vec![Some(Source::Resistive { resistance: Toleranced::exact(0.0) })],
         signals: vec![],
-        converter: None,
+        converter: stageleaf_math::stage::Converter::default(),
         common_mode: None,
         reference: None,
         parts: vec![],
