@@ -84,13 +84,15 @@ pub fn analyse_with(stage: &Stage, detail: Detail, plans: &Plans) -> Result<Repo
     check(stage)?;
     let model = Model::compile_with(stage, plans);
     let first = Solution::new(&model, model.parameters.nominal(), None);
-    let near = first.roots().clone();
+    let near = first.roots();
     let mut spread = Spread::new(&model, &near);
-    let figures = queries(stage)
+    let queries = queries(stage);
+    let judged = |query: &Query| detail == Detail::Full || stage.limits.iter().any(|l| l.query == *query);
+    spread.prepare(queries.iter().copied().filter(judged));
+    let figures = queries
         .into_iter()
         .map(|query| {
-            let judged = stage.limits.iter().any(|l| l.query == query);
-            if judged || detail == Detail::Full {
+            if judged(&query) {
                 figure_row(&mut spread, query)
             } else {
                 FigureRow {
@@ -253,9 +255,8 @@ fn curves(solution: &Solution<'_>, report: &mut Report) {
     if analysis::missing_small_signal(solution).is_some() || solution.no_dc_path().is_some() {
         return;
     }
-    let roots = solution.roots();
-    report.poles = response::unscaled(solution, &roots.poles);
-    report.zeros = response::unscaled(solution, &roots.zeros);
+    report.poles = response::unscaled(solution, solution.poles());
+    report.zeros = response::unscaled(solution, &solution.features().zeros);
     let loop_edge = margins::margins(solution).crossover;
     let (from, to) = window(solution, loop_edge);
     let looped = solution.looped();

@@ -40,6 +40,7 @@ pub mod search;
 pub mod series;
 pub mod solution;
 pub mod stage;
+mod together;
 pub mod units;
 mod validate;
 

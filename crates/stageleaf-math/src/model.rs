@@ -4,12 +4,12 @@ use alloc::{rc::Rc, vec, vec::Vec};
 use core::cell::{OnceCell, RefCell};
 
 use crate::{
-    analysis::second_pole,
+    analysis::{second_pole, sweep::Lane},
     kept::Kept,
     kind::Drives,
     network::{
         Builder, Drive, Floating, Law, Network, Node, Without,
-        expand::{Column, DEGREE, Outcome, Plan, Powers, Shape, Weight},
+        expand::{Column, DEGREE, Plan, Powers, Shape, Weight},
     },
     parameters::Parameters,
     part::{PartFigure, Zero},
@@ -88,6 +88,10 @@ pub struct Model<'a> {
     pub small_signal: bool,
     /// What no steady current reaches.
     pub floating: Floating,
+    /// Room for expansions.
+    pub(crate) scratch: RefCell<Vec<[f64; 1]>>,
+    /// Room for expansions of several builds at once.
+    pub(crate) lanes: RefCell<Vec<Lane>>,
     plans: Plans,
     inside: OnceCell<Vec<Expansion>>,
     input: OnceCell<Probe>,
@@ -179,6 +183,8 @@ impl<'a> Model<'a> {
             scale,
             small_signal,
             floating: network.floating(),
+            scratch: RefCell::default(),
+            lanes: RefCell::default(),
             plans: plans.clone(),
             inside: OnceCell::new(),
             input: OnceCell::new(),
@@ -227,26 +233,57 @@ impl<'a> Model<'a> {
         })
     }
 
-    /// The first drive's transfer to the load at DC, without solving the rest.
+    /// The first drive's transfer to the load at DC, up to its scale, for builds that have the same open-loop gains.
+    pub(crate) fn dc_gains<const N: usize>(&self, weights: &[Weight<N>], open_loop: &[f64], scratch: &mut Vec<[f64; N]>) -> [f64; N] {
+        let gains = |set: u8| open_loop.iter().enumerate().filter(|(a, _)| set >> a & 1 == 1).map(|(_, g)| g).product::<f64>();
+        let add = |sums: &mut [f64; N], plan: &Plan, terms: &[[f64; N]], node: Option<u8>, factor: f64| {
+            for outcome in plan.outcomes.iter().filter(|o| node.is_none_or(|n| o.joined >> n & 1 == 1)) {
+                let factor = factor * gains(outcome.amplified);
+                for (sum, term) in sums.iter_mut().zip(&plan.polynomial(outcome, terms)[0]) {
+                    *sum += factor * term;
+                }
+            }
+        };
+        let (mut above, mut below) = ([0.0; N], [0.0; N]);
+        for (index, (weight, Expansion { plan, .. })) in self.drives[0].iter().zip(&self.forward).enumerate() {
+            let whole = index == 0 && self.closed.is_none();
+            if weight.abs() > 0.0 || whole {
+                plan.evaluate_constants(weights, scratch);
+                add(&mut above, plan, plan.ends(scratch), Some(self.network.load.0), *weight);
+                if whole {
+                    add(&mut below, plan, plan.ends(scratch), Some(self.network.input_node(0).0), 1.0);
+                }
+            }
+        }
+        if let Some(Expansion { plan, .. }) = &self.closed {
+            plan.evaluate_constants(weights, scratch);
+            add(&mut below, plan, plan.ends(scratch), None, 1.0);
+        }
+        for (above, below) in above.iter_mut().zip(&below) {
+            *above /= below;
+        }
+        above
+    }
+
+    /// Whether a slot acts on alternating signals alone: a capacitance, or a gain-bandwidth product.
     #[must_use]
-    pub fn dc_gain(&self, values: &[f64]) -> f64 {
-        let resistances = self.output_resistances(values);
-        let open_loop: Vec<f64> = (0..resistances.len()).map(|a| self.part(values, a, PartFigure::OpenLoop).unwrap_or(1.0)).collect();
-        let mut scratch = Vec::new();
-        let mut sum = |expansion: &Expansion, node: Option<u8>| -> f64 {
-            let weights = expansion.weights(&self.network, values, &resistances, self.scale);
-            expansion.plan.evaluate_constants(&weights, &mut scratch);
-            let gains = |set: u8| open_loop.iter().enumerate().filter(|(a, _)| set >> a & 1 == 1).map(|(_, g)| g).product::<f64>();
-            let wanted = |o: &&Outcome| node.is_none_or(|n| o.joined >> n & 1 == 1);
-            let outcomes = expansion.plan.outcomes.iter().filter(wanted);
-            outcomes.map(|o| expansion.plan.polynomial(o, &scratch)[0] * gains(o.amplified)).sum()
+    pub fn reactive(&self, slot: usize) -> bool {
+        let gbw = |a| self.parameters.part_slot(a, PartFigure::Gbw) == Some(slot);
+        let capacitance = |law: Law| match law {
+            Law::Capacitance(c) | Law::SeriesRc(_, c) => c == slot,
+            Law::Resistance(_) => false,
         };
-        let below = match &self.closed {
-            Some(closed) => sum(closed, None),
-            None => sum(&self.forward[0], Some(self.network.input_node(0).0)),
-        };
-        let transfers = self.drives[0].iter().zip(&self.forward).filter(|(weight, _)| weight.abs() > 0.0);
-        transfers.map(|(weight, expansion)| weight * sum(expansion, Some(self.network.load.0))).sum::<f64>() / below
+        (0..self.network.amplifiers.len()).any(gbw) || self.network.elements.iter().any(|e| capacitance(e.law))
+    }
+
+    /// The expansions behind loop and transfers, in the order in which their terms are kept.
+    pub(crate) fn forward_expansions(&self) -> impl Iterator<Item = &Expansion> + Clone {
+        self.forward.iter().chain(&self.closed)
+    }
+
+    /// Those behind the transfers to the load; the second of each pair is the amplifier whose column is struck out.
+    pub(crate) fn backward_expansions(&self) -> impl Iterator<Item = (&Expansion, Option<usize>)> + Clone {
+        core::iter::once((&self.adjoint, None)).chain(self.series_input.iter().enumerate().map(|(a, e)| (e, Some(a))))
     }
 
     /// A figure of an amplifier's part in a build.
@@ -299,25 +336,44 @@ impl Expansion {
     /// The numeric weights for a build, with output resistances in the amplifiers' columns.
     #[must_use]
     pub fn weights(&self, network: &Network, values: &[f64], resistances: &[f64], scale: (f64, f64)) -> Vec<Weight> {
-        self.columns
-            .iter()
-            .map(|members| {
-                let mut weight = Weight { out: [0.0; DEGREE + 1], taken: [0.0; DEGREE + 1] };
-                match members {
-                    Members::Amplifier(index) => {
-                        weight.out[0] = resistances[*index] / scale.0;
-                        weight.taken[0] = 1.0;
-                    }
-                    Members::Elements(members) => {
-                        weight.out[0] = 1.0;
-                        for &index in members {
-                            weight = beside(&weight, network.elements[index].law, values, scale);
-                        }
-                    }
+        (0..self.columns.len()).map(|column| self.weight(column, network, values, resistances, scale)).collect()
+    }
+
+    /// The numeric weight of one column.
+    #[must_use]
+    pub fn weight(&self, column: usize, network: &Network, values: &[f64], resistances: &[f64], scale: (f64, f64)) -> Weight {
+        let mut weight = Weight { out: [[0.0]; DEGREE + 1], taken: [[0.0]; DEGREE + 1] };
+        match &self.columns[column] {
+            Members::Amplifier(index) => {
+                weight.out[0] = [resistances[*index] / scale.0];
+                weight.taken[0] = [1.0];
+            }
+            Members::Elements(members) => {
+                weight.out[0] = [1.0];
+                for &index in members {
+                    weight = beside(&weight, network.elements[index].law, values, scale);
                 }
-                weight
-            })
-            .collect()
+            }
+        }
+        weight
+    }
+
+    /// The columns whose weight depends on a slot of the parameter table; those of amplifiers when it is an output resistance.
+    pub fn columns_of<'s>(&'s self, slot: usize, network: &'s Network, parameters: &'s Parameters) -> impl Iterator<Item = usize> + 's {
+        let within = move |members: &Members| match members {
+            Members::Amplifier(index) => parameters.part_slot(*index, PartFigure::OutputResistance) == Some(slot),
+            Members::Elements(members) => members.iter().any(|&index| network.elements[index].law.depends_on(slot)),
+        };
+        self.columns.iter().enumerate().filter(move |(_, members)| within(members)).map(|(column, _)| column)
+    }
+
+    /// The weights with an amplifier's column left out: its pin's row is struck out.
+    pub(crate) fn struck<const N: usize>(&self, weights: &[Weight<N>], amplifier: usize) -> Vec<Weight<N>> {
+        let mut weights = weights.to_vec();
+        if let Some(column) = self.amplifier_column(amplifier) {
+            weights[column].out[0] = [1.0; N];
+        }
+        weights
     }
 
     /// The column of an amplifier.
@@ -335,12 +391,12 @@ fn beside(weight: &Weight, law: Law, values: &[f64], (ohms, omega): (f64, f64)) 
         Law::Capacitance(c) => ([1.0, 0.0], [0.0, farads(c)]),
         Law::SeriesRc(r, c) => ([1.0, values[r] / ohms * farads(c)], [0.0, farads(c)]),
     };
-    let product = |a: &[f64; DEGREE + 1], b: &[f64; 2]| {
-        let mut p = [0.0; DEGREE + 1];
-        for (i, x) in a.iter().enumerate() {
+    let product = |a: &[[f64; 1]; DEGREE + 1], b: &[f64; 2]| {
+        let mut p = [[0.0]; DEGREE + 1];
+        for (i, [x]) in a.iter().enumerate() {
             for (j, y) in b.iter().enumerate() {
                 if i + j <= DEGREE {
-                    p[i + j] += x * y;
+                    p[i + j][0] += x * y;
                 }
             }
         }
@@ -349,7 +405,7 @@ fn beside(weight: &Weight, law: Law, values: &[f64], (ohms, omega): (f64, f64)) 
     let (a, b) = (product(&weight.taken, &out), product(&weight.out, &taken));
     let mut sum = a;
     for (s, y) in sum.iter_mut().zip(&b) {
-        *s += y;
+        s[0] += y[0];
     }
     Weight { out: product(&weight.out, &out), taken: sum }
 }

@@ -108,14 +108,18 @@ impl Polynomial {
         let (Some(first), Some(last)) = (first, last) else { return Vec::new() };
         let coefficients = &self.0[first..=last];
         let degree = coefficients.len() - 1;
-        let mut roots = match guesses {
-            Some(g) if g.len() == first + degree => unsettled(&g[first..]),
-            _ => starting_points(coefficients),
+        let guesses = guesses.filter(|g| g.len() == first + degree).map(|g| &g[first..]);
+        let mut roots = match guesses.and_then(|g| followed(coefficients, g)) {
+            Some(roots) => roots,
+            None => {
+                let mut roots = guesses.map_or_else(|| starting_points(coefficients), unsettled);
+                if !aberth(coefficients, &mut roots) && guesses.is_some() {
+                    roots = starting_points(coefficients);
+                    aberth(coefficients, &mut roots);
+                }
+                roots
+            }
         };
-        if !aberth(coefficients, &mut roots) && guesses.is_some() {
-            roots = starting_points(coefficients);
-            aberth(coefficients, &mut roots);
-        }
         pair_up(&mut roots);
         let mut all = vec![Complex64::new(0.0, 0.0); first];
         all.append(&mut roots);
@@ -174,6 +178,72 @@ fn unsettled(roots: &[Complex64]) -> Vec<Complex64> {
         .collect()
 }
 
+/// Each of a neighbour's roots followed by Newton's iteration alone; `None` unless that has provably found them all.
+///
+/// # Formula
+/// A disk of radius `n·|p/p'|` around a point holds a root of a polynomial of degree `n`. Where the disks around all `n` points are
+/// apart, each holds exactly one. Complex roots come in pairs, of which one is followed.
+///
+/// # Source
+/// P. Henrici, *Applied and Computational Complex Analysis* 1, Wiley 1974, section 6.4, from memory.
+fn followed(coefficients: &[f64], guesses: &[Complex64]) -> Option<Vec<Complex64>> {
+    const STEPS: usize = 8;
+    /// Squared, relative: what is left after a step of this size is below rounding.
+    const SETTLED: f64 = 1e-18;
+    let n = guesses.len();
+    let mut disks: SmallVec<[(Complex64, f64); 16]> = SmallVec::new();
+    for &guess in guesses {
+        if guess.im < 0.0 {
+            continue;
+        }
+        let mut z = guess;
+        let mut left = STEPS;
+        let step = loop {
+            let step = if z.im == 0.0 { Complex64::new(newton_real(coefficients, z.re), 0.0) } else { newton(coefficients, z) };
+            z -= step;
+            let (size, moved) = (z.norm_sqr(), step.norm_sqr());
+            if moved <= SETTLED * size {
+                break libm::sqrt(moved);
+            }
+            left -= 1;
+            // A point that is far off, or that moves for ever, is no neighbour's root.
+            let near = moved <= 0.25 * size;
+            if left == 0 || !near {
+                return None;
+            }
+        };
+        let radius = span(0, n + 1) * step;
+        disks.push((z, radius));
+        if z.im != 0.0 {
+            disks.push((z.conj(), radius));
+        }
+    }
+    let apart = |i: usize| {
+        let (a, r) = disks[i];
+        disks[..i].iter().all(|&(b, s)| (a - b).norm_sqr() > (r + s) * (r + s))
+    };
+    (disks.len() == n && (1..n).all(apart)).then(|| disks.iter().map(|(z, _)| *z).collect())
+}
+
+/// Newton's correction at a real point.
+fn newton_real(coefficients: &[f64], x: f64) -> f64 {
+    let (mut p, mut d) = (0.0, 0.0);
+    if x.abs() <= 1.0 {
+        for &c in coefficients.iter().rev() {
+            d = d * x + p;
+            p = p * x + c;
+        }
+        if p.abs() <= 0.0 { 0.0 } else { p / d }
+    } else {
+        let w = 1.0 / x;
+        for &c in coefficients {
+            d = d * w + p;
+            p = p * w + c;
+        }
+        if p.abs() <= 0.0 { 0.0 } else { x / (span(0, coefficients.len() - 1) - w * d / p) }
+    }
+}
+
 /// Newton's correction `p/p'` at `z`, without overflow.
 fn newton(coefficients: &[f64], z: Complex64) -> Complex64 {
     let zero = Complex64::new(0.0, 0.0);
@@ -229,8 +299,11 @@ fn aberth(coefficients: &[f64], roots: &mut [Complex64]) -> bool {
                 continue;
             }
             roots[i] -= correction;
-            last[i] = correction.norm_sqr() / roots[i].norm_sqr();
-            if correction.norm_sqr() <= 1e-30 * roots[i].norm_sqr() {
+            let moved = correction.norm_sqr() / roots[i].norm_sqr();
+            // Near a double root the corrections stop shrinking far above the last digit: rounding moves the point about.
+            let stalled = moved <= AT_REST * AT_REST && moved > 0.1 * last[i];
+            last[i] = moved;
+            if moved <= 1e-30 || stalled {
                 done[i] = true;
             } else {
                 moving = true;

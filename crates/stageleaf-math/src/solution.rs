@@ -4,10 +4,11 @@ use alloc::{rc::Rc, vec, vec::Vec};
 use core::{cell::OnceCell, f64::consts::TAU};
 
 use num_complex::Complex64;
+use smallvec::SmallVec;
 
 use crate::{
     model::{Expansion, Injected, Model},
-    network::{Drive, Network, Node},
+    network::{Drive, GROUND, Network, Node, expand::Weight},
     part::PartFigure,
     polynomial::{Coefficients, Polynomial},
     report::Terminal,
@@ -22,32 +23,26 @@ pub struct Loop {
     pub returned: Vec<Polynomial>,
     /// See `returned`.
     pub open: Vec<Polynomial>,
-    /// By input: the terms of the voltage at each node, by node and set of amplifiers.
-    terms: Vec<Table>,
     /// By drive and node: the numerators that were asked for.
     numerators: Vec<OnceCell<Polynomial>>,
 }
 
-/// An expansion's polynomials by node and by set of amplifiers.
-#[derive(Clone, Debug)]
-struct Table {
-    sets: usize,
-    terms: Vec<Polynomial>,
+/// Numerators of the load's voltage for currents into nodes and for voltages at the amplifiers' inputs, those that were asked for.
+#[derive(Debug)]
+struct Injection {
+    /// By node number.
+    current: Vec<OnceCell<Polynomial>>,
+    /// By amplifier.
+    input: Vec<OnceCell<Polynomial>>,
 }
 
-impl Table {
-    fn of(&self, node: usize) -> &[Polynomial] {
-        &self.terms[node * self.sets..(node + 1) * self.sets]
-    }
-}
-
-/// Numerators of the load's voltage for currents into nodes and for voltages at the amplifiers' inputs.
-#[derive(Clone, Debug)]
-pub struct Injection {
-    /// For a current into each node, by node number, scaled by the network's impedance.
-    pub current: Vec<Polynomial>,
-    /// By amplifier: for a voltage in series with its input.
-    pub input: Vec<Polynomial>,
+/// Numerators of voltages for voltages in series with the amplifiers' inputs, those that were asked for.
+#[derive(Debug)]
+struct Inside {
+    /// What the expansions came to, one after the other.
+    terms: Vec<f64>,
+    /// By amplifier and node.
+    numerators: Vec<OnceCell<Polynomial>>,
 }
 
 /// Where the network's features lie, in scaled angular frequency.
@@ -55,6 +50,13 @@ pub struct Injection {
 pub struct Roots {
     /// Closed-loop poles.
     pub poles: Vec<Complex64>,
+    /// The rest.
+    pub features: Features,
+}
+
+/// Roots that are no closed-loop poles.
+#[derive(Clone, Debug)]
+pub struct Features {
     /// Zeros of the first drive's transfer to the load.
     pub zeros: Vec<Complex64>,
     /// By amplifier, where there are several: poles with its loop opened.
@@ -73,11 +75,17 @@ pub struct Solution<'m> {
     near: Option<&'m Roots>,
     /// A build with the same network, whose transfers serve this one too.
     twin: Option<Rc<Solution<'m>>>,
+    pub(crate) weights: OnceCell<Vec<Weight>>,
+    /// What the expansions of loop and transfers came to, one after the other.
+    pub(crate) forward: OnceCell<Vec<f64>>,
+    /// What those of the transfers to the load came to.
+    pub(crate) backward: OnceCell<Vec<f64>>,
     looped: OnceCell<Loop>,
     injection: OnceCell<Injection>,
-    inside: OnceCell<Vec<Table>>,
+    poles: OnceCell<Vec<Complex64>>,
+    features: OnceCell<Features>,
+    inside: OnceCell<Inside>,
     inside_at_dc: OnceCell<Vec<Vec<f64>>>,
-    roots: OnceCell<Roots>,
     grid: OnceCell<Vec<f64>>,
     products: OnceCell<Vec<Polynomial>>,
     pub(crate) power: OnceCell<crate::analysis::thermal::Power>,
@@ -100,11 +108,15 @@ impl<'m> Solution<'m> {
             values,
             near,
             twin: None,
+            weights: OnceCell::new(),
+            forward: OnceCell::new(),
+            backward: OnceCell::new(),
             looped: OnceCell::new(),
             injection: OnceCell::new(),
+            poles: OnceCell::new(),
+            features: OnceCell::new(),
             inside: OnceCell::new(),
             inside_at_dc: OnceCell::new(),
-            roots: OnceCell::new(),
             grid: OnceCell::new(),
             products: OnceCell::new(),
             power: OnceCell::new(),
@@ -117,6 +129,24 @@ impl<'m> Solution<'m> {
             kick: OnceCell::new(),
             reference: OnceCell::new(),
         }
+    }
+
+    /// The build that differs from this one in these slots; its weights are this one's but for the columns that they are in.
+    #[must_use]
+    pub fn moved(&self, near: Option<&'m Roots>, changes: &[(usize, f64)]) -> Self {
+        let model = self.model;
+        let mut values = self.values.clone();
+        for &(slot, value) in changes {
+            values[slot] = value;
+        }
+        let mut weights = self.weights().to_vec();
+        let resistances = model.output_resistances(&values);
+        for &(slot, _) in changes {
+            for column in model.adjoint.columns_of(slot, &model.network, &model.parameters) {
+                weights[column] = model.adjoint.weight(column, &model.network, &values, &resistances, model.scale);
+            }
+        }
+        Self { weights: OnceCell::from(weights), ..Self::new(model, values, near) }
     }
 
     /// The same, where only values differ from `twin` that the network does not depend on.
@@ -220,37 +250,45 @@ impl<'m> Solution<'m> {
         polynomial
     }
 
-    fn run(&self, expansion: &Expansion, network: &Network, struck: Option<usize>) -> Vec<f64> {
-        let resistances = self.model.output_resistances(&self.values);
-        let mut weights = expansion.weights(network, &self.values, &resistances, self.model.scale);
-        if let Some(column) = struck.and_then(|a| expansion.amplifier_column(a)) {
-            weights[column].out[0] = 1.0;
-        }
-        let mut scratch = Vec::new();
-        expansion.plan.evaluate(&weights, &mut scratch);
-        scratch
+    /// The weights of the stage's own network.
+    pub(crate) fn weights(&self) -> &[Weight] {
+        self.weights.get_or_init(|| self.weights_of(&self.model.adjoint, &self.model.network))
     }
 
-    fn expand(&self, expansion: &Expansion, struck: Option<usize>) -> Table {
-        self.expand_over(expansion, &self.model.network, struck)
+    fn weights_of(&self, expansion: &Expansion, network: &Network) -> Vec<Weight> {
+        expansion.weights(network, &self.values, &self.model.output_resistances(&self.values), self.model.scale)
     }
 
-    /// An expansion's polynomials; closed shapes have all in node 0.
-    fn expand_over(&self, expansion: &Expansion, network: &Network, struck: Option<usize>) -> Table {
-        let nodes = network.nodes;
-        let sets = 1 << self.amplifiers();
-        let scratch = self.run(expansion, network, struck);
-        let mut terms = vec![Polynomial::default(); sets * nodes];
-        for outcome in &expansion.plan.outcomes {
-            let polynomial = expansion.plan.polynomial(outcome, &scratch);
-            let joined = if outcome.joined == 0 { 1 } else { outcome.joined };
-            for node in 0..nodes {
-                if joined >> node & 1 == 1 {
-                    terms[node * sets + usize::from(outcome.amplified)].add_scaled(polynomial, 1.0);
-                }
+    /// Carries out expansions of the stage's own network.
+    fn run<'e>(&self, expansions: impl Iterator<Item = (&'e Expansion, Option<usize>)> + Clone) -> Vec<f64> {
+        let scratch = &mut *self.model.scratch.borrow_mut();
+        let mut terms = Vec::with_capacity(expansions.clone().map(|(e, _)| e.plan.terms()).sum());
+        for (expansion, struck) in expansions {
+            match struck {
+                None => expansion.plan.evaluate(self.weights(), scratch),
+                Some(amplifier) => expansion.plan.evaluate(&expansion.struck(self.weights(), amplifier), scratch),
             }
+            terms.extend(expansion.plan.ends(scratch).iter().map(|[term]| term));
         }
-        Table { sets, terms }
+        terms
+    }
+
+    fn forward(&self) -> &[f64] {
+        self.forward.get_or_init(|| self.run(self.model.forward_expansions().map(|e| (e, None))))
+    }
+
+    fn backward(&self) -> &[f64] {
+        self.backward.get_or_init(|| self.run(self.model.backward_expansions()))
+    }
+
+    /// An expansion's polynomials by set of amplifiers, for a node; closed shapes have them for any.
+    fn by_set(&self, expansion: &Expansion, terms: &[f64], node: Node) -> SmallVec<[Polynomial; 2]> {
+        let mut by_set: SmallVec<[Polynomial; 2]> = SmallVec::new();
+        by_set.resize(1 << self.amplifiers(), Polynomial::default());
+        for outcome in expansion.plan.outcomes.iter().filter(|o| o.joined == 0 || o.joined >> node.0 & 1 == 1) {
+            by_set[usize::from(outcome.amplified)].add_scaled(expansion.plan.polynomial(outcome, terms), 1.0);
+        }
+        by_set
     }
 
     /// Loop and transfers.
@@ -260,16 +298,19 @@ impl<'m> Solution<'m> {
         }
         self.looped.get_or_init(|| {
             let model = self.model;
-            let terms: Vec<Table> = model.forward.iter().map(|expansion| self.expand(expansion, None)).collect();
+            let terms = self.forward();
             // A node that an ideal voltage holds follows itself: its terms are the determinant's.
-            let whole = model.closed.as_ref().map(|expansion| self.expand(expansion, None));
-            let whole = whole.as_ref().map_or_else(|| terms[0].of(usize::from(model.network.input_node(0).0)), |table| table.of(0));
+            let whole = match &model.closed {
+                Some(expansion) => self.by_set(expansion, &terms[terms.len() - expansion.plan.terms()..], GROUND),
+                None => self.by_set(&model.forward[0], terms, model.network.input_node(0)),
+            };
+            let whole = &whole[..];
             let returned: Vec<Polynomial> = (0..self.amplifiers()).map(|a| self.combine(whole, |set| set >> a & 1 == 1)).collect();
             let open: Vec<Polynomial> = (0..self.amplifiers()).map(|a| self.combine(whole, |set| set >> a & 1 == 0)).collect();
             let mut closed = open[0].clone();
             closed.add_scaled(&returned[0].0, 1.0);
             let numerators = vec![OnceCell::new(); model.drives.len() * model.network.nodes];
-            Loop { closed, returned, open, terms, numerators }
+            Loop { closed, returned, open, numerators }
         })
     }
 
@@ -278,14 +319,17 @@ impl<'m> Solution<'m> {
         if let Some(twin) = &self.twin {
             return twin.numerator(drive, node);
         }
-        let (model, looped, node) = (self.model, self.looped(), usize::from(node.0));
-        looped.numerators[drive * model.network.nodes + node].get_or_init(|| {
+        let (model, looped) = (self.model, self.looped());
+        looped.numerators[drive * model.network.nodes + usize::from(node.0)].get_or_init(|| {
             let mut sum = Polynomial::default();
-            for ((weight, table), kind) in model.drives[drive].iter().zip(&looped.terms).zip(&model.network.inputs) {
+            let mut rest = self.forward();
+            for ((weight, expansion), kind) in model.drives[drive].iter().zip(&model.forward).zip(&model.network.inputs) {
+                let terms = rest;
+                rest = &rest[expansion.plan.terms()..];
                 if weight.abs() <= 0.0 {
                     continue;
                 }
-                let numerator = self.combine(table.of(node), |_| true);
+                let numerator = self.combine(&self.by_set(expansion, terms, node), |_| true);
                 // A current's transfer is an impedance; a charge's current is its rate of change.
                 let (ohms, omega) = model.scale;
                 match kind {
@@ -303,31 +347,39 @@ impl<'m> Solution<'m> {
         self.numerator(0, self.model.network.load)
     }
 
-    /// Transfers to the load from currents and from the amplifiers' inputs.
-    pub fn injection(&self) -> &Injection {
+    fn injection(&self) -> &Injection {
+        self.injection.get_or_init(|| Injection {
+            current: vec![OnceCell::new(); self.model.network.nodes],
+            input: vec![OnceCell::new(); self.amplifiers()],
+        })
+    }
+
+    /// Numerator, over the closed loop, of the load's voltage for a current into a node, scaled by the network's impedance.
+    pub fn from_current(&self, node: Node) -> &Polynomial {
         if let Some(twin) = &self.twin {
-            return twin.injection();
+            return twin.from_current(node);
         }
-        self.injection.get_or_init(|| {
-            let model = self.model;
-            let table = self.expand(&model.adjoint, None);
-            let current = (0..model.network.nodes).map(|node| self.combine(table.of(node), |_| true)).collect();
-            let input = model
-                .series_input
-                .iter()
-                .enumerate()
-                .map(|(amplifier, expansion)| {
-                    // Its own column takes no part: the pin's row is struck out. Its gain multiplies every term.
-                    let scratch = self.run(expansion, &model.network, Some(amplifier));
-                    let mut by_set = vec![Polynomial::default(); 1 << self.amplifiers()];
-                    for outcome in &expansion.plan.outcomes {
-                        let set = usize::from(outcome.amplified) | 1 << amplifier;
-                        by_set[set].add_scaled(expansion.plan.polynomial(outcome, &scratch), 1.0);
-                    }
-                    self.combine(&by_set, |_| true)
-                })
-                .collect();
-            Injection { current, input }
+        let injection = self.injection();
+        injection.current[usize::from(node.0)]
+            .get_or_init(|| self.combine(&self.by_set(&self.model.adjoint, self.backward(), node), |_| true))
+    }
+
+    /// Numerator, over the closed loop, of the load's voltage for a voltage in series with an amplifier's input.
+    pub fn from_input(&self, amplifier: usize) -> &Polynomial {
+        if let Some(twin) = &self.twin {
+            return twin.from_input(amplifier);
+        }
+        self.injection().input[amplifier].get_or_init(|| {
+            let expansion = &self.model.series_input[amplifier];
+            let before = self.model.backward_expansions().take(amplifier + 1).map(|(e, _)| e.plan.terms()).sum();
+            let terms = &self.backward()[before..];
+            // Its gain multiplies every term.
+            let mut by_set = vec![Polynomial::default(); 1 << self.amplifiers()];
+            for outcome in &expansion.plan.outcomes {
+                let set = usize::from(outcome.amplified) | 1 << amplifier;
+                by_set[set].add_scaled(expansion.plan.polynomial(outcome, terms), 1.0);
+            }
+            self.combine(&by_set, |_| true)
         })
     }
 
@@ -339,46 +391,46 @@ impl<'m> Solution<'m> {
         if node.0 == 0 {
             return Complex64::new(0.0, 0.0);
         }
-        let node = usize::from(node.0);
-        let whole = self.model.floating.islands == 0;
-        if omega <= 0.0 && whole {
-            return Complex64::new(self.inside_at_dc()[amplifier][node] / self.looped().closed.constant(), 0.0);
+        let nodes = self.model.network.nodes;
+        let closed = &self.looped().closed;
+        if omega <= 0.0 && self.model.floating.islands == 0 {
+            return Complex64::new(self.inside_at_dc()[amplifier][usize::from(node.0)] / closed.constant(), 0.0);
         }
-        let tables = self.inside.get_or_init(|| {
-            let expansions = self.model.inside().iter().enumerate();
-            expansions.map(|(a, expansion)| self.expand(expansion, Some(a))).collect()
-        });
-        if !whole {
-            let mut by_set = vec![Polynomial::default(); 1 << self.amplifiers()];
-            for (set, term) in tables[amplifier].of(node).iter().enumerate() {
-                by_set[set | 1 << amplifier].add_scaled(&term.0, 1.0);
+        let expansions = || self.model.inside().iter().enumerate().map(|(a, e)| (e, Some(a)));
+        let inside = self
+            .inside
+            .get_or_init(|| Inside { terms: self.run(expansions()), numerators: vec![OnceCell::new(); self.amplifiers() * nodes] });
+        let numerator = inside.numerators[amplifier * nodes + usize::from(node.0)].get_or_init(|| {
+            let before = expansions().take(amplifier).map(|(e, _)| e.plan.terms()).sum();
+            let mut terms = self.by_set(&self.model.inside()[amplifier], &inside.terms[before..], node);
+            // Its gain multiplies every term.
+            for set in 0..terms.len() {
+                if set >> amplifier & 1 == 0 {
+                    let mut term = core::mem::take(&mut terms[set]);
+                    if term.0.is_empty() {
+                        continue;
+                    }
+                    term.add_scaled(&terms[set | 1 << amplifier].0, 1.0);
+                    terms[set | 1 << amplifier] = term;
+                }
             }
-            return self.combine(&by_set, |_| true).at(omega) / self.looped().closed.at(omega);
-        }
-        let terms = tables[amplifier].of(node).iter().enumerate();
-        let sum: Complex64 = terms
-            .filter(|(_, term)| !term.0.is_empty())
-            .map(|(set, term)| self.products()[set | 1 << amplifier].at(omega) * term.at(omega))
-            .sum();
-        sum / self.looped().closed.at(omega)
+            self.combine(&terms, |_| true)
+        });
+        numerator.at(omega) / closed.at(omega)
     }
 
     /// The same at DC for every node, over the closed loop's constant, from the constant terms alone.
     fn inside_at_dc(&self) -> &[Vec<f64>] {
         self.inside_at_dc.get_or_init(|| {
             let model = self.model;
-            let resistances = model.output_resistances(&self.values);
-            let mut scratch = Vec::new();
+            let scratch = &mut *model.scratch.borrow_mut();
             let mut of = |(amplifier, expansion): (usize, &Expansion)| {
-                let mut weights = expansion.weights(&model.network, &self.values, &resistances, model.scale);
-                if let Some(column) = expansion.amplifier_column(amplifier) {
-                    weights[column].out[0] = 1.0;
-                }
-                expansion.plan.evaluate_constants(&weights, &mut scratch);
+                expansion.plan.evaluate_constants(&expansion.struck(self.weights(), amplifier), scratch);
+                let terms = expansion.plan.ends(scratch);
                 let mut volts = vec![0.0; model.network.nodes];
                 for outcome in &expansion.plan.outcomes {
                     let set = usize::from(outcome.amplified) | 1 << amplifier;
-                    let term = expansion.plan.polynomial(outcome, &scratch)[0] * self.products()[set].constant();
+                    let term = expansion.plan.polynomial(outcome, terms)[0][0] * self.products()[set].constant();
                     for (node, volts) in volts.iter_mut().enumerate() {
                         if outcome.joined >> node & 1 == 1 {
                             *volts += term;
@@ -395,22 +447,35 @@ impl<'m> Solution<'m> {
     /// the denominator of all.
     #[must_use]
     pub fn driven(&self, injected: &Injected) -> (Vec<Polynomial>, Polynomial) {
-        let table = self.expand_over(&injected.driven, &injected.network, None);
-        let voltage = |node| if node == 0 { Polynomial::default() } else { self.combine(table.of(node), |_| true) };
-        let closed = self.expand_over(&injected.closed, &injected.network, None);
-        ((0..injected.network.nodes).map(voltage).collect(), self.combine(closed.of(0), |_| true))
+        let run = |expansion: &Expansion| -> Vec<f64> {
+            let scratch = &mut *self.model.scratch.borrow_mut();
+            expansion.plan.evaluate(&self.weights_of(expansion, &injected.network), scratch);
+            expansion.plan.ends(scratch).iter().map(|[term]| *term).collect()
+        };
+        let sum = |expansion: &Expansion, terms: &[f64], node| self.combine(&self.by_set(expansion, terms, node), |_| true);
+        let voltages = run(&injected.driven);
+        let nodes = (1..u8::try_from(injected.network.nodes).unwrap_or(u8::MAX)).map(Node);
+        let numerators = nodes.map(|node| sum(&injected.driven, &voltages, node));
+        let numerators = core::iter::once(Polynomial::default()).chain(numerators).collect();
+        (numerators, sum(&injected.closed, &run(&injected.closed), GROUND))
     }
 
-    /// Poles and zeros.
-    pub fn roots(&self) -> &Roots {
+    /// Closed-loop poles.
+    pub fn poles(&self) -> &[Complex64] {
         if let Some(twin) = &self.twin {
-            return twin.roots();
+            return twin.poles();
         }
-        self.roots.get_or_init(|| {
-            let looped = self.looped();
-            let near = self.near;
-            Roots {
-                poles: looped.closed.roots(near.map(|r| &r.poles[..])),
+        self.poles.get_or_init(|| self.looped().closed.roots(self.near.map(|r| &r.poles[..])))
+    }
+
+    /// What else bends a curve.
+    pub fn features(&self) -> &Features {
+        if let Some(twin) = &self.twin {
+            return twin.features();
+        }
+        self.features.get_or_init(|| {
+            let (looped, near) = (self.looped(), self.near.map(|r| &r.features));
+            Features {
                 zeros: self.load_numerator().roots(near.map(|r| &r.zeros[..])),
                 // With one amplifier the opened loop is passive: its poles are real, and show nothing that the grid could miss.
                 open: if looped.open.len() > 1 {
@@ -423,9 +488,15 @@ impl<'m> Solution<'m> {
         })
     }
 
+    /// All of them, for a neighbouring build to start from.
+    #[must_use]
+    pub fn roots(&self) -> Roots {
+        Roots { poles: self.poles().to_vec(), features: self.features().clone() }
+    }
+
     /// Whether a closed-loop pole lies in the right half plane.
     pub fn oscillates(&self) -> bool {
-        self.roots().poles.iter().any(|p| p.re > 1e-13 * magnitude(*p))
+        self.poles().iter().any(|p| p.re > 1e-13 * magnitude(*p))
     }
 
     /// The amplifier input at which the DC operating point does not exist, if there is one.
@@ -439,13 +510,12 @@ impl<'m> Solution<'m> {
             return twin.grid();
         }
         self.grid.get_or_init(|| {
-            let roots = self.roots();
+            let (poles, others) = (self.poles(), self.features());
             let features = || {
-                roots
-                    .poles
+                poles
                     .iter()
-                    .chain(&roots.zeros)
-                    .chain(roots.loop_zeros.iter().chain(&roots.open).flatten())
+                    .chain(&others.zeros)
+                    .chain(others.loop_zeros.iter().chain(&others.open).flatten())
                     .filter(|r| magnitude(**r) > 0.0)
             };
             let low = features().map(|r| magnitude(*r)).fold(f64::INFINITY, f64::min);
@@ -476,12 +546,10 @@ impl<'m> Solution<'m> {
     /// The determinant of a closed expansion over another network of the same build, amplifiers included.
     #[must_use]
     pub fn determinant(&self, expansion: &Expansion, network: &Network) -> Polynomial {
-        let scratch = self.run(expansion, network, None);
-        let mut by_set = vec![Polynomial::default(); 1 << self.amplifiers()];
-        for outcome in &expansion.plan.outcomes {
-            by_set[usize::from(outcome.amplified)].add_scaled(expansion.plan.polynomial(outcome, &scratch), 1.0);
-        }
-        self.combine(&by_set, |_| true)
+        let scratch = &mut *self.model.scratch.borrow_mut();
+        expansion.plan.evaluate(&self.weights_of(expansion, network), scratch);
+        let terms: Vec<f64> = expansion.plan.ends(scratch).iter().map(|[term]| *term).collect();
+        self.combine(&self.by_set(expansion, &terms, GROUND), |_| true)
     }
 
     /// Voltage at a node per unit of a drive.

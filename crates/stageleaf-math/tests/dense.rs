@@ -154,7 +154,7 @@ fn check(seed: u64, kind: Kind, ohms: (f64, f64), farads: (f64, f64)) {
         let closed = solution.looped().closed.at(omega);
         for index in 0..network.amplifiers.len() {
             let Some(voltages) = solved(Drive::AmplifierInput(index)) else { continue };
-            let ours = solution.injection().input[index].at(omega) / closed;
+            let ours = solution.from_input(index).at(omega) / closed;
             compare(seed, &format!("{kind:?} series input {index}"), ours, voltages[load], condition, 0.0);
             // The return ratio: one volt behind the output resistance in the controlled source's place, T = −A·(vp − vn).
             let amplifier = network.amplifiers[index];
@@ -174,7 +174,7 @@ fn check(seed: u64, kind: Kind, ohms: (f64, f64), farads: (f64, f64)) {
         for node in (1..network.nodes).filter(|n| held >> n & 1 == 0 && !stiff(*n)) {
             let to = Node(u8::try_from(node).expect("few"));
             let Some(voltages) = solved(Drive::Current { from: GROUND, to }) else { continue };
-            let ours = solution.injection().current[node].at(omega) / closed * model.scale.0;
+            let ours = solution.from_current(Node(u8::try_from(node).expect("few"))).at(omega) / closed * model.scale.0;
             compare(seed, &format!("{kind:?} transimpedance from {node} at {frequency:e}"), ours, voltages[load], condition, 0.0);
         }
     }

@@ -46,14 +46,13 @@ pub fn budget<'s>(solution: &'s Solution<'_>) -> &'s Budget {
         let model = solution.model;
         let parameters = &model.parameters;
         let below = solution.looped().closed.constant();
-        let injection = solution.injection();
         let away = parameters.temperature().map(|slot| solution.values[slot] - DATA_SHEET_TEMPERATURE);
         let causes = [DcCause::Offset, DcCause::OffsetDrift, DcCause::BiasCurrent, DcCause::OffsetCurrent, DcCause::CommonMode];
         let mut by_amplifier: Vec<Vec<(DcCause, Outcome)>> = Vec::new();
         let mut slopes = Vec::new();
         for (index, amplifier) in model.network.amplifiers.iter().enumerate() {
-            let input = (injection.input[index].constant() / below).abs();
-            let ohms = |node: crate::network::Node| injection.current[usize::from(node.0)].constant() / below * model.scale.0;
+            let input = (solution.from_input(index).constant() / below).abs();
+            let ohms = |node: crate::network::Node| solution.from_current(node).constant() / below * model.scale.0;
             let (at_plus, at_minus) = (ohms(amplifier.plus), ohms(amplifier.minus));
             let part = |figure: PartFigure| match solution.part_of(index, figure) {
                 Some(v) => Outcome::Value(v),
@@ -95,7 +94,7 @@ pub fn budget<'s>(solution: &'s Solution<'_>) -> &'s Budget {
         for (input, source) in (0u8..).zip(&model.stage.sources) {
             if matches!(source, Some(Source::Photodiode { .. })) {
                 let node = model.network.input_node(usize::from(input));
-                let ohms = injection.current[usize::from(node.0)].constant() / below * model.scale.0;
+                let ohms = solution.from_current(node).constant() / below * model.scale.0;
                 let dark = parameters.slot(Parameter::DarkCurrent(input)).map_or(0.0, |slot| solution.values[slot]);
                 lines.push((DcCause::DarkCurrent, Outcome::Value((ohms * dark).abs())));
             }

@@ -18,9 +18,10 @@ use alloc::vec::Vec;
 
 use crate::{
     figure::{Figure, Query},
+    model::Model,
     parameters::touch,
     part::PartFigure,
-    report::{Need, Outcome},
+    report::{Need, Outcome, Parameter},
     solution::Solution,
     stage::Signal,
 };
@@ -61,6 +62,83 @@ pub const fn touched_by(figure: Figure) -> u8 {
         | F::FullPowerBandwidth
         | F::AcquisitionError => touch::SWING,
         F::SupplyCurrent | F::Dissipation | F::JunctionTemperature | F::ResistorDissipation => touch::POWER,
+    }
+}
+
+/// Whether a parameter can change a figure of this stage at all, where [`touched_by`] leaves it open. What it says no to is never
+/// moved for that figure.
+#[must_use]
+pub fn reaches(model: &Model<'_>, parameter: Parameter, figure: Figure) -> bool {
+    use Figure as F;
+    use PartFigure as P;
+    // The heat drives a bias current that doubles with temperature.
+    let by_heat = |part| {
+        matches!(figure, F::OutputOffset | F::InputOffset | F::OffsetDrift | F::ClipMargin | F::FullScaleMargin)
+            && (0..model.network.amplifiers.len()).any(|a| model.parameters.part_slot(a, P::BiasDoubling).is_some())
+            || matches!(figure, F::JunctionTemperature)
+            || part != P::JunctionToAmbient && matches!(figure, F::SupplyCurrent | F::Dissipation)
+    };
+    match parameter {
+        Parameter::Part(part) | Parameter::PartOf(_, part) => match part {
+            P::Offset | P::OffsetCurrent => matches!(figure, F::OutputOffset | F::InputOffset | F::ClipMargin | F::FullScaleMargin),
+            P::OffsetDrift | P::BiasCurrent | P::BiasDoubling => {
+                matches!(figure, F::OutputOffset | F::InputOffset | F::OffsetDrift | F::ClipMargin | F::FullScaleMargin)
+                    || part != P::OffsetDrift && matches!(figure, F::JunctionTemperature)
+            }
+            P::Cmrr => !matches!(figure, F::OffsetDrift | F::InputRangeMargin | F::CurrentMargin | F::SlewMargin | F::FullPowerBandwidth),
+            P::PsrrPositive | P::PsrrNegative => {
+                matches!(
+                    figure,
+                    F::OutputOffset | F::InputOffset | F::StagePsrr | F::StagePsrrAt | F::RippleOutput | F::ClipMargin | F::FullScaleMargin
+                )
+            }
+            P::RangeFromNegative | P::RangeFromPositive => matches!(figure, F::InputRangeMargin),
+            P::SlewRise | P::SlewFall => matches!(figure, F::SlewMargin | F::FullPowerBandwidth | F::AcquisitionError),
+            P::CurrentLimit => {
+                matches!(figure, F::CurrentMargin | F::SlewMargin | F::FullPowerBandwidth | F::AcquisitionError) || by_heat(part)
+            }
+            P::SupplyCurrent | P::JunctionToAmbient => by_heat(part),
+            P::OpenLoop
+            | P::Gbw
+            | P::OutputResistance
+            | P::DifferentialResistance
+            | P::DifferentialCapacitance
+            | P::CommonModeResistance
+            | P::CommonModeCapacitance
+            | P::NoiseVoltage
+            | P::NoiseVoltageCorner
+            | P::NoiseExponent
+            | P::NoiseCurrent
+            | P::NoiseCurrentCorner
+            | P::CmrrCorner
+            | P::PsrrPositiveCorner
+            | P::PsrrNegativeCorner
+            | P::SupplySpanMin
+            | P::SupplySpanMax
+            | P::DifferentialMax
+            | P::ClampCurrentMax
+            | P::StableGainMin
+            | P::OverloadRecovery
+            | P::JunctionMax => true,
+        },
+        Parameter::Headroom => matches!(figure, F::ClipMargin),
+        Parameter::Temperature => !matches!(
+            figure,
+            F::StageCmrr
+                | F::StageCmrrAt
+                | F::StagePsrr
+                | F::StagePsrrAt
+                | F::RippleOutput
+                | F::InputRangeMargin
+                | F::CurrentMargin
+                | F::SlewMargin
+                | F::FullPowerBandwidth
+                | F::AcquisitionError
+                | F::SupplyCurrent
+                | F::Dissipation
+                | F::ResistorDissipation
+        ),
+        _ => true,
     }
 }
 
@@ -169,12 +247,8 @@ pub fn lacking(solution: &Solution<'_>, query: Query) -> Option<Outcome> {
 pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
     use Figure as F;
     let stage = solution.model.stage;
-    if let Some(terminal) = solution.no_dc_path() {
-        return Outcome::NoDcPath(terminal);
-    }
-    let judged_by_roots = !matches!(query.figure, F::Crossover | F::PhaseMargin | F::GainMargin);
-    if judged_by_roots && solution.model.small_signal && solution.oscillates() {
-        return Outcome::Oscillates;
+    if let Some(unfit) = unfit(solution, query) {
+        return unfit;
     }
     let value = match query.figure {
         F::Gain => rejection::gain(solution),
@@ -258,6 +332,75 @@ pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
         },
     };
     if value.is_nan() { Outcome::DoesNotApply("the values leave the range in which it can be computed") } else { Outcome::Value(value) }
+}
+
+/// Why a build has no value for a figure that otherwise has one, if it has none: no operating point, or it oscillates.
+#[must_use]
+pub fn unfit(solution: &Solution<'_>, query: Query) -> Option<Outcome> {
+    use Figure as F;
+    if let Some(terminal) = solution.no_dc_path() {
+        return Some(Outcome::NoDcPath(terminal));
+    }
+    let judged_by_roots = !matches!(query.figure, F::Crossover | F::PhaseMargin | F::GainMargin);
+    (judged_by_roots && solution.model.small_signal && solution.oscillates()).then_some(Outcome::Oscillates)
+}
+
+/// Whether a figure follows from the network at DC alone, so that no capacitance and no gain-bandwidth product reaches it. (They do
+/// where the heat that a signal makes drives a bias current.)
+#[must_use]
+pub fn at_dc(solution: &Solution<'_>, figure: Figure) -> bool {
+    use Figure as F;
+    let stage = solution.model.stage;
+    // Where a group of nodes floats, capacitances divide what is steady.
+    if solution.model.floating.islands > 0 {
+        return false;
+    }
+    let steady = || response::steady(solution);
+    let warmed = || {
+        (0..solution.amplifiers()).any(|a| solution.part_of(a, PartFigure::BiasDoubling).is_some())
+            && stage.signals.iter().flatten().any(|s| s.peak > 0.0)
+    };
+    match figure {
+        F::Gain | F::GainError | F::GainDrift | F::StageCmrr | F::StagePsrr => steady(),
+        F::OutputOffset | F::OffsetDrift => !warmed(),
+        F::InputOffset => steady() && !warmed(),
+        F::GainAtSignal
+        | F::GainAt
+        | F::PhaseAt
+        | F::Bandwidth
+        | F::LowCutoff
+        | F::Peaking
+        | F::Crossover
+        | F::PhaseMargin
+        | F::GainMargin
+        | F::SensitivityPeak
+        | F::NaturalFrequency
+        | F::Q
+        | F::InputImpedance
+        | F::OutputImpedance
+        | F::NoiseBandwidth
+        | F::StageCmrrAt
+        | F::StagePsrrAt
+        | F::RippleOutput
+        | F::OutputNoise
+        | F::InputNoise
+        | F::OutputNoisePeakToPeak
+        | F::NoiseDensityAt
+        | F::Snr
+        | F::SnrBits
+        | F::Enob
+        | F::AcquisitionError
+        | F::FullScaleMargin
+        | F::ClipMargin
+        | F::InputRangeMargin
+        | F::CurrentMargin
+        | F::SlewMargin
+        | F::FullPowerBandwidth
+        | F::SupplyCurrent
+        | F::Dissipation
+        | F::JunctionTemperature
+        | F::ResistorDissipation => false,
+    }
 }
 
 /// A value outcome scaled; others pass through.

@@ -84,13 +84,11 @@ impl Spectrum {
 #[must_use]
 pub fn current_noise_counts(solution: &Solution<'_>, amplifier: usize) -> bool {
     let amplifier = solution.model.network.amplifiers[amplifier];
-    let current = &solution.injection().current;
-    [amplifier.plus, amplifier.minus].iter().any(|n| !current[usize::from(n.0)].is_zero())
+    [amplifier.plus, amplifier.minus].iter().any(|n| !solution.from_current(*n).is_zero())
 }
 
 pub(super) fn generators(solution: &Solution<'_>) -> Vec<Generator> {
     let model = solution.model;
-    let injection = solution.injection();
     let scale = model.scale.0;
     let temperature = model.parameters.temperature().map_or(0.0, |slot| solution.values[slot]);
     let thermal = 4.0 * BOLTZMANN * temperature * scale * scale;
@@ -105,8 +103,8 @@ pub(super) fn generators(solution: &Solution<'_>) -> Vec<Generator> {
             }
             _ => continue,
         };
-        let mut numerator = injection.current[usize::from(element.a.0)].clone();
-        numerator.add_scaled(&injection.current[usize::from(element.b.0)].0, -1.0);
+        let mut numerator = solution.from_current(element.a).clone();
+        numerator.add_scaled(&solution.from_current(element.b).0, -1.0);
         list.push(Generator { origin, numerator, spectrum });
     }
     shot(solution, &mut list);
@@ -116,7 +114,7 @@ pub(super) fn generators(solution: &Solution<'_>) -> Vec<Generator> {
             let exponent = part(PartFigure::NoiseExponent).unwrap_or(1.0);
             list.push(Generator {
                 origin: NoiseOrigin::AmplifierVoltage(index),
-                numerator: injection.input[usize::from(index)].clone(),
+                numerator: solution.from_input(usize::from(index)).clone(),
                 spectrum: Spectrum::Flicker(level * level, corner, exponent),
             });
         }
@@ -124,7 +122,7 @@ pub(super) fn generators(solution: &Solution<'_>) -> Vec<Generator> {
             for (node, origin) in
                 [(amplifier.plus, NoiseOrigin::CurrentNonInverting(index)), (amplifier.minus, NoiseOrigin::CurrentInverting(index))]
             {
-                let numerator = &injection.current[usize::from(node.0)];
+                let numerator = solution.from_current(node);
                 if node != GROUND && !numerator.is_zero() {
                     list.push(Generator {
                         origin,
@@ -149,7 +147,7 @@ fn shot(solution: &Solution<'_>, list: &mut Vec<Generator>) {
         let node = model.network.input_node(usize::from(input));
         list.push(Generator {
             origin: NoiseOrigin::SourceShot(input),
-            numerator: solution.injection().current[usize::from(node.0)].clone(),
+            numerator: solution.from_current(node).clone(),
             spectrum: Spectrum::White(2.0 * ELEMENTARY_CHARGE * (dark + light) * scale * scale),
         });
     }
@@ -303,8 +301,7 @@ fn integrate(solution: &Solution<'_>, from: f64, to: f64, mut f: impl FnMut(f64)
     }
     let (low, high) = (libm::log(from), libm::log(to));
     let mut edges: Vec<f64> = alloc::vec![low, high];
-    let roots = solution.roots();
-    for root in roots.poles.iter() {
+    for root in solution.poles() {
         let size = magnitude(*root);
         if size > 0.0 {
             let middle = libm::log(solution.hertz(size));

@@ -10,10 +10,11 @@ use crate::{
     figure::Figure,
     kind::Reference,
     model::Probe,
-    parameters::touch,
+    parameters::{Entry, touch},
     polynomial::Polynomial,
     report::{ResponsePoint, Root},
     solution::{Solution, magnitude},
+    together,
 };
 
 /// Where the kind's gain is taken, and the gain there.
@@ -54,6 +55,11 @@ pub fn reference(solution: &Solution<'_>) -> ReferencePoint {
             ReferencePoint { omega, gain: signed(solution, solution.transfer(0, omega)) }
         }
     })
+}
+
+/// Whether the kind's gain is the one at DC.
+pub fn steady(solution: &Solution<'_>) -> bool {
+    matches!(solution.model.stage.kind.spec().reference, Reference::Dc) && solution.load_numerator().constant().abs() > 0.0
 }
 
 /// Magnitude with the sign of the ideal gain.
@@ -127,7 +133,7 @@ pub fn own_pair(solution: &Solution<'_>) -> Option<(f64, f64)> {
     let ideal = (stage.kind.spec().working)(stage).into_iter().find(|w| w.query.figure == Figure::NaturalFrequency);
     let Some(wanted) = ideal.map(|w| w.handbook).filter(|f| *f > 0.0 && f.is_finite()) else { return least_damped(solution) };
     let wanted = solution.scaled(wanted);
-    let poles = &solution.roots().poles;
+    let poles = solution.poles();
     let far = |size: f64| libm::log(size / wanted).abs();
     let complex = poles.iter().filter(|p| p.im > 0.0).map(|p| (magnitude(*p), magnitude(*p) / (2.0 * p.re.abs())));
     let mut real: Vec<f64> = poles.iter().filter(|p| p.im.abs() <= 0.0 && p.re < 0.0).map(|p| -p.re).collect();
@@ -143,8 +149,7 @@ pub fn own_pair(solution: &Solution<'_>) -> Option<(f64, f64)> {
 /// Natural frequency in Hz and Q of the least damped complex pair of closed-loop poles.
 pub fn least_damped(solution: &Solution<'_>) -> Option<(f64, f64)> {
     let pair = solution
-        .roots()
-        .poles
+        .poles()
         .iter()
         .filter(|p| p.im > 0.0)
         .max_by(|a, b| (a.im / magnitude(**a) - b.im / magnitude(**b)).total_cmp(&0.0).then((-a.re).total_cmp(&-b.re).reverse()))?;
@@ -175,25 +180,24 @@ fn impedance(solution: &Solution<'_>, probe: &Probe) -> f64 {
 /// Central differences of 1e-4; the worst combination of signs, since a stated coefficient has none.
 pub fn gain_drift(solution: &Solution<'_>) -> f64 {
     const STEP: f64 = 1e-4;
+    let model = solution.model;
+    let at_dc = steady(solution) && model.floating.islands == 0;
+    let counts = |slot: usize, entry: &Entry| entry.drift > 0.0 && entry.touches & touch::NETWORK != 0 && !(at_dc && model.reactive(slot));
+    let slots: Vec<usize> = model.parameters.entries.iter().enumerate().filter(|(s, e)| counts(*s, e)).map(|(s, _)| s).collect();
     let gain = reference(solution).gain;
-    // The cheap DC gain leaves out the scale of a current's transfer.
-    let unit = gain / solution.model.dc_gain(&solution.values);
-    let mut sum = 0.0;
-    for (slot, entry) in solution.model.parameters.entries.iter().enumerate() {
-        if entry.drift > 0.0 && entry.touches & touch::NETWORK != 0 {
-            let moved = |factor: f64| {
-                let mut values = solution.values.clone();
-                values[slot] *= factor;
-                match solution.model.stage.kind.spec().reference {
-                    // A common factor cancels in the quotient below.
-                    Reference::Dc if unit.is_finite() => solution.model.dc_gain(&values) * unit,
-                    _ => reference(&Solution::new(solution.model, values, None)).gain,
-                }
-            };
-            sum += ((moved(1.0 + STEP) - moved(1.0 - STEP)) / (2.0 * STEP * gain)).abs() * entry.drift;
-        }
-    }
-    sum
+    let moved = |slot: usize, factor: f64| {
+        let mut values = solution.values.clone();
+        values[slot] *= factor;
+        values
+    };
+    // By slot: the relative change over both steps.
+    let changes: Vec<f64> = if at_dc {
+        together::dc_changes(solution, &slots, STEP)
+    } else {
+        let there = |slot, factor| reference(&Solution::new(model, moved(slot, factor), None)).gain;
+        slots.iter().map(|&slot| (there(slot, 1.0 + STEP) - there(slot, 1.0 - STEP)) / gain).collect()
+    };
+    slots.iter().zip(changes).map(|(slot, change)| (change / (2.0 * STEP)).abs() * model.parameters.entries[*slot].drift).sum()
 }
 
 /// The curve of a ratio of polynomials over `points` frequencies between two, phase unwrapped from its value at the lowest.

@@ -17,7 +17,7 @@
 
 use alloc::{rc::Rc, vec::Vec};
 
-use super::{lacking, touched_by, value};
+use super::{lacking, reaches, touched_by, value};
 use crate::{
     figure::{Figure, Query},
     kept::Kept,
@@ -27,6 +27,7 @@ use crate::{
     part::PartFigure,
     report::{Coordinate, Outcome, Parameter},
     solution::{Roots, Solution},
+    together,
 };
 
 /// Where a parameter stands in a corner.
@@ -40,7 +41,19 @@ enum Place {
     Inside(u8),
 }
 
+/// How many places there are.
+const PLACES: usize = 5;
+
 impl Place {
+    /// Its number.
+    const fn index(self) -> usize {
+        match self {
+            Self::Low => 0,
+            Self::High => 1,
+            Self::Inside(quarters) => 1 + quarters as usize,
+        }
+    }
+
     /// The value there.
     fn of(self, entry: &Entry) -> f64 {
         match self {
@@ -75,6 +88,11 @@ fn places(entry: &Entry) -> impl Iterator<Item = Place> + use<> {
 /// A parameter's slot and where it stands.
 type Move = (usize, Place);
 
+/// A move as one number.
+fn code(at: Move) -> u16 {
+    u16::try_from(at.0 * PLACES + at.1.index()).unwrap_or(u16::MAX)
+}
+
 /// A stage's builds: the nominal one, one per moved parameter, and the corners that figures ask for.
 #[derive(Debug)]
 pub struct Spread<'m> {
@@ -84,10 +102,26 @@ pub struct Spread<'m> {
     /// Builds by what the network depends on.
     networks: Kept<Vec<(usize, u64)>, Rc<Solution<'m>>>,
     near: &'m Roots,
-    moved: Kept<Move, Rc<Solution<'m>>>,
+    /// By slot and place.
+    moved: Vec<[Option<Rc<Solution<'m>>>; PLACES]>,
     probes: Vec<Option<Rc<Solution<'m>>>>,
-    corners: Kept<Vec<Move>, Rc<Solution<'m>>>,
+    corners: Kept<Vec<u16>, Rc<Solution<'m>>>,
     known: Vec<(Query, Rc<Extremes>)>,
+    /// Searches whose corners are not looked at yet.
+    begun: Vec<(Query, Begun)>,
+    /// Whether what the network depends on was moved.
+    together: bool,
+}
+
+/// A search that knows where to look.
+#[derive(Debug)]
+struct Begun {
+    centre: Outcome,
+    low: Search,
+    high: Search,
+    seen: Vec<(Move, f64)>,
+    again: Vec<usize>,
+    bad: Option<(Outcome, Vec<Move>)>,
 }
 
 /// A figure at its two worst corners.
@@ -125,43 +159,88 @@ impl<'m> Spread<'m> {
             nominal: Rc::new(Solution::new(model, model.parameters.nominal(), Some(near))),
             networks: Kept::default(),
             near,
-            moved: Kept::default(),
+            moved: (0..slots).map(|_| [const { None }; PLACES]).collect(),
             probes: (0..=slots).map(|_| None).collect(),
             corners: Kept::default(),
             known: Vec::new(),
+            begun: Vec::new(),
+            together: false,
+        }
+    }
+
+    /// Begins the search for several figures, and solves the corners that it leads to side by side.
+    pub fn prepare(&mut self, queries: impl Iterator<Item = Query>) {
+        let mut corners: Vec<Vec<(usize, f64)>> = Vec::new();
+        for query in queries {
+            let Ok(begun) = self.begin(query) else { continue };
+            for search in [&begun.low, &begun.high] {
+                let corner: Vec<(usize, f64)> =
+                    search.ends.iter().filter(|at| self.of_network(at.0)).map(|&at| (at.0, self.place(at))).collect();
+                if corner.len() > 1 && !corners.contains(&corner) && self.networks.get(&key(&corner)).is_none() {
+                    corners.push(corner);
+                }
+            }
+            self.begun.push((query, begun));
+        }
+        for (corner, build) in corners.iter().zip(together::solve(&self.nominal, Some(self.near), &corners)) {
+            self.networks.insert(key(corner), Rc::new(build));
+        }
+    }
+
+    /// Whether the network depends on a slot; the factor on the poles stands behind the table.
+    fn of_network(&self, slot: usize) -> bool {
+        self.model.parameters.entries.get(slot).is_none_or(|e| e.touches & touch::NETWORK != 0)
+    }
+
+    /// Moves each parameter that the network depends on, alone, to all its places.
+    fn move_all(&mut self) {
+        self.together = true;
+        let mut moves: Vec<Move> = Vec::new();
+        for (slot, entry) in self.model.parameters.entries.iter().enumerate() {
+            if entry.touches & touch::NETWORK != 0 && entry.low < entry.high {
+                moves.extend(places(entry).filter(|p| (p.of(entry) - entry.nominal).abs() > 0.0).map(|place| (slot, place)));
+            }
+        }
+        let changes: Vec<Vec<(usize, f64)>> = moves.iter().map(|&at| alloc::vec![(at.0, self.place(at))]).collect();
+        for ((at, change), build) in moves.iter().zip(&changes).zip(together::solve(&self.nominal, Some(self.near), &changes)) {
+            let build = Rc::new(build);
+            self.networks.insert(key(change), build.clone());
+            self.moved[at.0][at.1.index()] = Some(build);
         }
     }
 
     /// A build with these values; builds that differ in nothing that the network depends on share its transfers.
     fn build(&mut self, changes: &[(usize, f64)]) -> Rc<Solution<'m>> {
+        let alone: Vec<(usize, f64)> = changes.iter().copied().filter(|(slot, _)| self.of_network(*slot)).collect();
+        let network = match self.networks.get(&key(&alone)) {
+            _ if alone.is_empty() => self.nominal.clone(),
+            Some(network) => network.clone(),
+            None => {
+                let network = Rc::new(self.nominal.moved(Some(self.near), &alone));
+                self.networks.insert(key(&alone), network.clone());
+                network
+            }
+        };
+        if alone.len() == changes.len() {
+            return network;
+        }
         let mut values = self.nominal.values.clone();
         for &(slot, value) in changes {
             values[slot] = value;
         }
-        let entries = &self.model.parameters.entries;
-        // The factor on the poles stands behind the table.
-        let of_network = |slot: usize| entries.get(slot).is_none_or(|e| e.touches & touch::NETWORK != 0);
-        let network: Vec<(usize, u64)> =
-            changes.iter().filter(|(slot, _)| of_network(*slot)).map(|&(slot, value)| (slot, value.to_bits())).collect();
-        if network.len() == changes.len() {
-            let solution = Rc::new(Solution::new(self.model, values, Some(self.near)));
-            self.networks.insert(network, solution.clone());
-            return solution;
-        }
-        if let Some(twin) = self.networks.get(&network) {
-            return Rc::new(Solution::beside(twin.clone(), values));
-        }
-        let alone: Vec<(usize, f64)> = network.iter().map(|&(slot, bits)| (slot, f64::from_bits(bits))).collect();
-        let twin = if alone.is_empty() { self.nominal.clone() } else { self.build(&alone) };
-        Rc::new(Solution::beside(twin, values))
+        Rc::new(Solution::beside(network, values))
     }
 
     fn moved(&mut self, at: Move) -> Rc<Solution<'m>> {
-        if let Some(found) = self.moved.get(&at) {
+        if let Some(found) = &self.moved[at.0][at.1.index()] {
             return found.clone();
         }
+        if !self.together && self.of_network(at.0) {
+            self.move_all();
+            return self.moved(at);
+        }
         let solution = self.build(&[(at.0, self.place(at))]);
-        self.moved.insert(at, solution.clone());
+        self.moved[at.0][at.1.index()] = Some(solution.clone());
         solution
     }
 
@@ -169,12 +248,13 @@ impl<'m> Spread<'m> {
         if let [at] = *ends {
             return self.moved(at);
         }
-        if let Some(found) = self.corners.get(ends) {
+        let places: Vec<u16> = ends.iter().map(|at| code(*at)).collect();
+        if let Some(found) = self.corners.get(&places) {
             return found.clone();
         }
         let changes: Vec<(usize, f64)> = ends.iter().map(|&at| (at.0, self.place(at))).collect();
         let solution = self.build(&changes);
-        self.corners.insert(ends.to_vec(), solution.clone());
+        self.corners.insert(places, solution.clone());
         solution
     }
 
@@ -193,6 +273,27 @@ impl<'m> Spread<'m> {
     }
 
     fn search(&mut self, query: Query) -> Extremes {
+        let begun = match self.begun.iter().position(|(q, _)| *q == query) {
+            Some(at) => Ok(self.begun.swap_remove(at).1),
+            None => self.begin(query),
+        };
+        let Begun { centre, low, high, seen, again, bad } = match begun {
+            Ok(begun) => begun,
+            Err(centre) => {
+                let same = Extreme { outcome: centre.clone(), corner: Vec::new(), effects: Vec::new(), ends: Vec::new() };
+                return Extremes { centre, low: same.clone(), high: same, seen: Vec::new() };
+            }
+        };
+        let mut low = self.finish(query, low, &again, &bad, |a, b| a < b);
+        if matches!(query.figure, Figure::StageCmrr | Figure::StageCmrrAt) && self.model.drives.len() > 1 {
+            self.turn_to_worst_mismatch(query, &mut low);
+        }
+        let high = self.finish(query, high, &again, &bad, |a, b| a > b);
+        Extremes { centre, low, high, seen }
+    }
+
+    /// Moves each parameter alone; the nominal outcome where there is nothing to move.
+    fn begin(&mut self, query: Query) -> Result<Begun, Outcome> {
         let centre = lacking(&self.nominal, query).unwrap_or_else(|| value(&self.nominal, query));
         if matches!(
             centre,
@@ -202,17 +303,17 @@ impl<'m> Spread<'m> {
                 | Outcome::NoDcPath(_)
                 | Outcome::NoSteadyTemperature
         ) {
-            let same = Extreme { outcome: centre.clone(), corner: Vec::new(), effects: Vec::new(), ends: Vec::new() };
-            return Extremes { centre, low: same.clone(), high: same, seen: Vec::new() };
+            return Err(centre);
         }
         let touched = touched_by(query.figure);
         let mut low = Search::new(&centre);
         let mut high = Search::new(&centre);
         let mut all = Vec::new();
         let mut bad: Option<(Outcome, Vec<Move>)> = None;
-        let movable = |e: &Entry| e.touches & touched != 0 && e.low < e.high;
+        let movable = |e: &Entry| e.touches & touched != 0 && e.low < e.high && reaches(self.model, e.parameter, query.figure);
         let slots: Vec<usize> =
             self.model.parameters.entries.iter().enumerate().filter(|(_, e)| movable(e)).map(|(slot, _)| slot).collect();
+        let at_dc = super::at_dc(&self.nominal, query.figure);
         for &slot in &slots {
             let entry = self.model.parameters.entries[slot];
             let mut seen = Vec::new();
@@ -220,7 +321,12 @@ impl<'m> Spread<'m> {
                 if (place.of(&entry) - entry.nominal).abs() <= 0.0 {
                     continue;
                 }
-                let there = value(&self.moved((slot, place)), query);
+                let moved = self.moved((slot, place));
+                let there = if at_dc && self.model.reactive(slot) {
+                    super::unfit(&moved, query).unwrap_or_else(|| centre.clone())
+                } else {
+                    value(&moved, query)
+                };
                 match there.value() {
                     Some(v) => seen.push(((slot, place), v)),
                     // What does not apply there (no complex poles, say) takes nothing away here.
@@ -236,14 +342,10 @@ impl<'m> Spread<'m> {
         let products = touched & (touch::DC | touch::SWING | touch::POWER) != 0;
         // So does a gain, by the common-mode error: its sign times the rejection, on whatever network the corner has.
         let product = |slot: usize| products || self.model.parameters.entries[slot].touches & touch::NETWORK == 0;
+        let reached = |slot: usize| !(at_dc && self.model.reactive(slot));
         let again: Vec<usize> =
-            slots.into_iter().filter(|&slot| product(slot) && self.deserves_another_look(slot, &centre, &all)).collect();
-        let mut low = self.finish(query, low, &again, &bad, |a, b| a < b);
-        if matches!(query.figure, Figure::StageCmrr | Figure::StageCmrrAt) && self.model.drives.len() > 1 {
-            self.turn_to_worst_mismatch(query, &mut low);
-        }
-        let high = self.finish(query, high, &again, &bad, |a, b| a > b);
-        Extremes { centre, low, high, seen: all }
+            slots.into_iter().filter(|&slot| product(slot) && reached(slot) && self.deserves_another_look(slot, &centre, &all)).collect();
+        Ok(Begun { centre, low, high, seen: all, again, bad })
     }
 
     /// The rejection is the magnitude of a mismatch that several resistors make with either sign: alone, each makes it worse both ways,
@@ -446,42 +548,48 @@ impl<'m> Spread<'m> {
             (from, COUNTS * from.value().filter(|v| v.is_finite()).map_or(0.0, f64::abs))
         };
         let (mut guaranteed, mut typical) = (false, false);
-        for slot in 0..self.model.parameters.entries.len() {
-            let entry = self.model.parameters.entries[slot];
-            let of_part = matches!(entry.parameter, Parameter::Part(_) | Parameter::PartOf(..) | Parameter::Headroom);
-            if !of_part || entry.touches & touched == 0 {
-                continue;
-            }
-            let end = extreme.ends.iter().find(|(s, _)| *s == slot).map(|(_, place)| *place);
-            // A rejection acts on a gain by its sign, which nominal values leave out.
-            let at_extreme = turned || entry.touches & touch::NETWORK == 0 && touched & touch::REJECTION != 0;
-            let (from, tolerance) = measure(at_extreme);
-            let counts = if at_extreme {
-                let moved = if end.is_some() { entry.nominal } else { entry.nominal * 1.2 };
-                changes(from, &value(&self.off_corner(&extreme.ends, slot, moved), query), tolerance)
-            } else if entry.low < entry.high {
-                let mut seen = extremes.seen.iter().filter(|((s, _), _)| *s == slot).peekable();
-                seen.peek().is_none() || seen.any(|(_, v)| changes(from, &Outcome::Value(*v), tolerance))
-            } else if matches!(entry.parameter, Parameter::Headroom) {
-                matches!(query.figure, Figure::ClipMargin)
-            } else {
-                let probe = self.probe(slot, entry.nominal * 1.2);
-                changes(from, &value(&probe, query), tolerance)
-            };
-            if counts {
-                match end.map_or(entry.grade[0], |place| place.grade(&entry)) {
-                    Grade::Guaranteed => guaranteed = true,
-                    Grade::Typical => typical = true,
-                    Grade::Stated => {}
+        // What was seen before costs nothing; builds are solved only for a grade that is not found yet.
+        for solve in [false, true] {
+            for slot in 0..self.model.parameters.entries.len() {
+                let entry = self.model.parameters.entries[slot];
+                let of_part = matches!(entry.parameter, Parameter::Part(_) | Parameter::PartOf(..) | Parameter::Headroom);
+                if !of_part || entry.touches & touched == 0 || !reaches(self.model, entry.parameter, query.figure) {
+                    continue;
+                }
+                let end = extreme.ends.iter().find(|(s, _)| *s == slot).map(|(_, place)| *place);
+                let grade = end.map_or(entry.grade[0], |place| place.grade(&entry));
+                let found = match grade {
+                    Grade::Guaranteed => &mut guaranteed,
+                    Grade::Typical => &mut typical,
+                    Grade::Stated => continue,
+                };
+                if *found {
+                    continue;
+                }
+                // A rejection acts on a gain by its sign, which nominal values leave out.
+                let at_extreme = turned || entry.touches & touch::NETWORK == 0 && touched & touch::REJECTION != 0;
+                let (from, tolerance) = measure(at_extreme);
+                if at_extreme {
+                    if solve {
+                        let moved = if end.is_some() { entry.nominal } else { entry.nominal * FIFTH };
+                        *found = changes(from, &value(&self.off_corner(&extreme.ends, slot, moved), query), tolerance);
+                    }
+                } else if entry.low < entry.high {
+                    let mut seen = extremes.seen.iter().filter(|((s, _), _)| *s == slot).peekable();
+                    *found = seen.peek().is_none() || seen.any(|(_, v)| changes(from, &Outcome::Value(*v), tolerance));
+                } else if matches!(entry.parameter, Parameter::Headroom) {
+                    *found = matches!(query.figure, Figure::ClipMargin);
+                } else if solve {
+                    *found = changes(from, &value(&self.probe(slot, entry.nominal * FIFTH), query), tolerance);
                 }
             }
-        }
-        // Higher poles have no guaranteed value on any data sheet.
-        if self.model.poles.iter().flatten().any(|p| !p.is_empty()) && touched & ON_POLES != 0 {
-            let slot = self.model.parameters.pole_factor();
-            let there = if turned { self.off_corner(&extreme.ends, slot, 1.2) } else { self.probe(slot, 1.2) };
-            let (from, tolerance) = measure(turned);
-            typical |= changes(from, &value(&there, query), tolerance);
+            // Higher poles have no guaranteed value on any data sheet.
+            if solve && !typical && self.model.poles.iter().flatten().any(|p| !p.is_empty()) && touched & ON_POLES != 0 {
+                let slot = self.model.parameters.pole_factor();
+                let there = if turned { self.off_corner(&extreme.ends, slot, FIFTH) } else { self.probe(slot, FIFTH) };
+                let (from, tolerance) = measure(turned);
+                typical = changes(from, &value(&there, query), tolerance);
+            }
         }
         match (guaranteed, typical) {
             (true, true) => Basis::Mixed,
@@ -498,12 +606,35 @@ impl<'m> Spread<'m> {
     }
 
     fn probe(&mut self, slot: usize, value: f64) -> Rc<Solution<'m>> {
-        if self.probes[slot].is_none() {
-            self.probes[slot] = Some(self.build(&[(slot, value)]));
+        if let Some(probe) = &self.probes[slot] {
+            return probe.clone();
         }
-        self.probes[slot].clone().expect("just built")
+        if self.of_network(slot) {
+            // The first of them brings all that may be asked for.
+            let entries = &self.model.parameters.entries;
+            let unspread = |e: &Entry| e.touches & touch::NETWORK != 0 && e.low >= e.high;
+            let mut changes: Vec<Vec<(usize, f64)>> = Vec::new();
+            for (slot, entry) in entries.iter().enumerate() {
+                if matches!(entry.parameter, Parameter::Part(_) | Parameter::PartOf(..)) && unspread(entry) {
+                    changes.push(alloc::vec![(slot, entry.nominal * FIFTH)]);
+                }
+            }
+            changes.push(alloc::vec![(self.model.parameters.pole_factor(), FIFTH)]);
+            for (change, build) in changes.iter().zip(together::solve(&self.nominal, Some(self.near), &changes)) {
+                self.probes[change[0].0] = Some(Rc::new(build));
+            }
+            if let Some(probe) = &self.probes[slot] {
+                return probe.clone();
+            }
+        }
+        let build = self.build(&[(slot, value)]);
+        self.probes[slot] = Some(build.clone());
+        build
     }
 }
+
+/// The factor by which a part's figure is moved to ask what rests on it, where it has no spread.
+const FIFTH: f64 = 1.2;
 
 /// Results that higher poles can change.
 const ON_POLES: u8 = touch::NETWORK | touch::NOISE | touch::SWING;
@@ -522,7 +653,13 @@ fn changes(centre: &Outcome, there: &Outcome, tolerance: f64) -> bool {
     }
 }
 
+/// Changed values as a key.
+fn key(changes: &[(usize, f64)]) -> Vec<(usize, u64)> {
+    changes.iter().map(|&(slot, value)| (slot, value.to_bits())).collect()
+}
+
 /// Gathers the corner at which a figure is most extreme in one direction.
+#[derive(Debug)]
 struct Search {
     centre: Option<f64>,
     ends: Vec<Move>,

@@ -67,11 +67,28 @@ pub enum Shape {
 /// Numeric weight of a column: polynomials in s when left out, when taken, and, for an amplifier, the controlled source's
 /// weight is kept symbolic (see [`Outcome::amplified`]).
 #[derive(Clone, Copy, Debug, PartialEq)]
-pub struct Weight {
+pub struct Weight<const N: usize = 1> {
     /// When left out.
-    pub out: [f64; DEGREE + 1],
+    pub out: [[f64; N]; DEGREE + 1],
     /// When taken.
-    pub taken: [f64; DEGREE + 1],
+    pub taken: [[f64; N]; DEGREE + 1],
+}
+
+impl<const N: usize> Weight<N> {
+    /// The same for every build.
+    #[must_use]
+    pub fn alike(weight: &Weight) -> Self {
+        let spread = |of: &[[f64; 1]; DEGREE + 1]| of.map(|[w]| [w; N]);
+        Self { out: spread(&weight.out), taken: spread(&weight.taken) }
+    }
+
+    /// Puts the weight of one build in its lane.
+    pub fn set(&mut self, lane: usize, weight: &Weight) {
+        for power in 0..=DEGREE {
+            self.out[power][lane] = weight.out[power][0];
+            self.taken[power][lane] = weight.taken[power][0];
+        }
+    }
 }
 
 /// Greatest degree of a branch's weight.
@@ -93,7 +110,7 @@ pub struct Outcome {
     pub joined: u32,
     /// Which amplifiers' gains the terms carry as factors (bit set, in the order of the amplifiers' columns).
     pub amplified: u8,
-    /// Its polynomial in the result of [`Plan::evaluate`].
+    /// Its polynomial in the terms that [`Plan::evaluate`] ends with.
     start: usize,
     length: usize,
 }
@@ -121,7 +138,11 @@ enum Which {
 #[derive(Clone, Debug)]
 pub struct Plan {
     steps: Vec<Step>,
+    /// Those that the constant terms need.
+    constant: Vec<Step>,
     size: usize,
+    /// Where the outcomes' terms start.
+    tail: usize,
     /// Where the terms end up.
     pub outcomes: Vec<Outcome>,
 }
@@ -318,6 +339,8 @@ impl Plan {
                 }
             }
         }
+        let ends = (0..layers[last].len()).filter(|&slot| alive[last][slot]);
+        let tail = ends.map(|slot| place[last][slot].0).min().unwrap_or(size);
         let outcomes = layers[last]
             .iter()
             .enumerate()
@@ -326,59 +349,81 @@ impl Plan {
                 let side = if rows_open == 1 { &state.rows } else { &state.columns };
                 let joined = (0..nodes).filter(|&n| side[n] != 0).fold(0u32, |bits, n| bits | 1 << n);
                 let (start, length) = place[last][slot];
+                let start = start - tail;
                 Outcome { joined, amplified: state.amplified, start, length }
             })
             .collect();
-        Self { steps, size, outcomes }
+        let constant = constant(&steps, tail);
+        Self { steps, constant, size, tail, outcomes }
     }
 
-    /// Carries out the expansion. `scratch` is reused between calls.
-    pub fn evaluate(&self, weights: &[Weight], scratch: &mut Vec<f64>) {
+    /// Carries out the expansion for `N` builds side by side. `scratch` is reused between calls; its last part holds the outcomes' terms
+    /// (see [`Plan::ends`]).
+    ///
+    /// Every build goes through the same additions in the same order, whatever `N` is, so it has the same bits.
+    pub fn evaluate<const N: usize>(&self, weights: &[Weight<N>], scratch: &mut Vec<[f64; N]>) {
         scratch.clear();
-        scratch.resize(self.size, 0.0);
-        scratch[0] = 1.0;
+        scratch.resize(self.size, [0.0; N]);
+        scratch[0] = [1.0; N];
         for step in &self.steps {
             let weight = &weights[usize::from(step.column)];
-            let factors = match step.which {
-                Which::Out => &weight.out,
-                Which::Taken => &weight.taken,
-                Which::Controlled => &ONE,
-            };
             let (from, to, length) = (step.from as usize, step.to as usize, usize::from(step.length));
-            let (lowest, highest) = (usize::from(step.powers.0), usize::from(step.powers.1));
-            for (power, factor) in (lowest..).zip(&factors[lowest..=highest]) {
-                let factor = if step.negative { -factor } else { *factor };
+            for power in usize::from(step.powers.0)..=usize::from(step.powers.1) {
+                let mut factor = match step.which {
+                    Which::Out => weight.out[power],
+                    Which::Taken => weight.taken[power],
+                    Which::Controlled => [1.0; N],
+                };
+                if step.negative {
+                    factor = factor.map(|f| -f);
+                }
                 let (low, high) = scratch.split_at_mut(to + power);
                 for (source, sink) in low[from..from + length].iter().zip(&mut high[..length]) {
-                    *sink += factor * source;
+                    for lane in 0..N {
+                        sink[lane] += factor[lane] * source[lane];
+                    }
                 }
             }
         }
     }
 
+    /// The part of [`Plan::evaluate`]'s result that outcomes refer to.
+    #[must_use]
+    pub fn ends<'s, T>(&self, scratch: &'s [T]) -> &'s [T] {
+        &scratch[self.tail..self.size]
+    }
+
+    /// How many terms all outcomes have together.
+    #[must_use]
+    pub const fn terms(&self) -> usize {
+        self.size - self.tail
+    }
+
     /// Carries out the expansion for the constant terms alone: the same additions in the same order, so the same bits.
-    pub fn evaluate_constants(&self, weights: &[Weight], scratch: &mut Vec<f64>) {
+    pub fn evaluate_constants<const N: usize>(&self, weights: &[Weight<N>], scratch: &mut Vec<[f64; N]>) {
         scratch.clear();
-        scratch.resize(self.size, 0.0);
-        scratch[0] = 1.0;
-        for step in &self.steps {
+        scratch.resize(self.size, [0.0; N]);
+        scratch[0] = [1.0; N];
+        for step in &self.constant {
             let weight = &weights[usize::from(step.column)];
             let factor = match step.which {
                 Which::Out => weight.out[0],
                 Which::Taken => weight.taken[0],
-                Which::Controlled => 1.0,
+                Which::Controlled => [1.0; N],
             };
-            if step.powers.0 == 0 {
-                let factor = if step.negative { -factor } else { factor };
-                scratch[step.to as usize] += factor * scratch[step.from as usize];
+            let source = scratch[step.from as usize];
+            let sink = &mut scratch[step.to as usize];
+            for lane in 0..N {
+                let factor = if step.negative { -factor[lane] } else { factor[lane] };
+                sink[lane] += factor * source[lane];
             }
         }
     }
 
-    /// The polynomial of one outcome after [`Plan::evaluate`].
+    /// The polynomial of one outcome in what [`Plan::ends`] gave.
     #[must_use]
-    pub fn polynomial<'s>(&self, outcome: &Outcome, scratch: &'s [f64]) -> &'s [f64] {
-        &scratch[outcome.start..outcome.start + outcome.length]
+    pub fn polynomial<'s, T>(&self, outcome: &Outcome, terms: &'s [T]) -> &'s [T] {
+        &terms[outcome.start..outcome.start + outcome.length]
     }
 
     /// How many multiply-and-add steps an evaluation takes.
@@ -388,7 +433,30 @@ impl Plan {
     }
 }
 
-const ONE: [f64; DEGREE + 1] = [1.0, 0.0, 0.0, 0.0];
+/// The steps that bring a constant term from the start to an end, which are few: a capacitor has none when it is taken.
+fn constant(steps: &[Step], tail: usize) -> Vec<Step> {
+    let mut reached = vec![0];
+    let mut list: Vec<Step> = Vec::new();
+    for step in steps.iter().filter(|s| s.powers.0 == 0) {
+        if reached.binary_search(&step.from).is_ok() {
+            list.push(*step);
+            if let Err(at) = reached.binary_search(&step.to) {
+                reached.insert(at, step.to);
+            }
+        }
+    }
+    let mut needed: Vec<u32> = Vec::new();
+    list.reverse();
+    list.retain(|step| {
+        let leads = step.to as usize >= tail || needed.binary_search(&step.to).is_ok();
+        if leads && let Err(at) = needed.binary_search(&step.from) {
+            needed.insert(at, step.from);
+        }
+        leads
+    });
+    list.reverse();
+    list
+}
 
 /// How many groups of nodes, ground's apart, no remaining column can join to anything.
 fn stranded(partition: &[u8; MAX_NODES], nodes: usize, rest: &[(Column, Powers)], rows: bool) -> u32 {

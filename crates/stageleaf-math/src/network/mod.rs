@@ -50,6 +50,17 @@ pub enum Law {
     SeriesRc(usize, usize),
 }
 
+impl Law {
+    /// Whether it has its value, or one of its values, in this slot.
+    #[must_use]
+    pub const fn depends_on(self, slot: usize) -> bool {
+        match self {
+            Self::Resistance(a) | Self::Capacitance(a) => a == slot,
+            Self::SeriesRc(a, b) => a == slot || b == slot,
+        }
+    }
+}
+
 /// An element between two nodes.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct Element {
