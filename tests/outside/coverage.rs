@@ -7,6 +7,7 @@ use stageleaf_math::{figure::Figure, kind::Kind};
 
 use crate::{
     circuits, dc, floating, gain, kinds, ledger::Ledger, loops, noise, oracle, oracle_around, oracle_kinds, rejection, swing, thermal,
+    whose,
 };
 
 /// Rows that are not checked here, with the reason.
@@ -37,6 +38,7 @@ fn everything() -> Ledger {
     dc::all(&mut ledger);
     swing::all(&mut ledger);
     thermal::all(&mut ledger);
+    whose::all(&mut ledger);
     rejection::all(&mut ledger);
     kinds::all(&mut ledger);
     oracle::all(&mut ledger);

@@ -22,3 +22,4 @@ mod setup;
 mod swing;
 mod table;
 mod thermal;
+mod whose;

@@ -7,9 +7,9 @@ use std::collections::BTreeMap;
 
 use serde::Deserialize;
 use stageleaf_math::{
-    analysis::{margins, sweep},
+    analysis::{self, margins, sweep},
     figure::{Argument, Figure, Query},
-    kind::Kind,
+    kind::{Drives, Kind},
     part::{Part, PartFigure, Rating, Zero},
     report::{NoiseOrigin, Outcome, Report},
     solution::{Solution, magnitude},
@@ -280,6 +280,16 @@ impl Comparison<'_> {
             if stable {
                 self.value(&name("gain margin"), Figure::GainMargin, wanted.gain_margin(), got.gain);
                 self.value(&name("sensitivity peak"), Figure::SensitivityPeak, wanted.sensitivity_peak, got.sensitivity_peak);
+                // The same by the figure's name: `gain_margin of A2`.
+                for (figure, value) in
+                    [(Figure::GainMargin, Some(wanted.gain_margin())), (Figure::PhaseMargin, wanted.worst(true).map(|worst| worst.1))]
+                {
+                    let number = u8::try_from(index + 1).expect("few amplifiers");
+                    let got = analysis::outcome(solution, Query::of(figure).of_amplifier(number));
+                    if let Some(value) = value {
+                        self.value(&name(figure.id()), figure, value, got.value().unwrap_or(f64::NAN));
+                    }
+                }
             }
         }
         let worst = self.expected.loops.iter().filter_map(|l| l.worst(stable)).min_by(|a, b| a.1.total_cmp(&b.1));
@@ -313,6 +323,14 @@ impl Comparison<'_> {
                 // As a figure of its own budget, so that the use of it shows.
                 let wanted = Wanted { id: &self.circuit.id, name: &name, figure: Figure::GainAt, value: size, allowed, source: SOURCE };
                 self.ledger.value(&wanted, size + distance);
+                // The same by its input's name: `gain_at 1 kHz from in2`.
+                let input = (stage.kind.spec().inputs)(stage).get(drive).filter(|_| matches!(stage.kind.spec().drives, Drives::Each));
+                if let Some(input) = input.filter(|_| drive > 0) {
+                    let query = Query::at(Figure::GainAt, frequency).from_input(input.name);
+                    let name = format!("gain_at {frequency} from {}", input.name);
+                    let wanted = Wanted { name: &name, ..wanted };
+                    self.ledger.outcome(&wanted, &analysis::outcome(solution, query));
+                }
             }
         }
         for (k, &frequency) in self.circuit.frequencies.iter().enumerate() {

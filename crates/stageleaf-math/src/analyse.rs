@@ -10,7 +10,8 @@ use crate::{
         swing,
     },
     caution, check,
-    figure::{Argument, Figure, Query},
+    figure::{Argument, Figure, Query, Scope},
+    kind::{Drives, Feed},
     limit::{Bound, Limit, Thin, Verdict},
     model::{Model, Plans},
     report::{DcLine, FigureRow, LimitRow, Outcome, Report},
@@ -95,10 +96,12 @@ pub fn analyse_with(stage: &Stage, detail: Detail, plans: &Plans) -> Result<Repo
             if judged(&query) {
                 figure_row(&mut spread, query)
             } else {
+                let nominal = outcome(&spread.nominal, query);
                 FigureRow {
                     query,
                     dimension: query.figure.dimension_in(stage.kind),
-                    nominal: outcome(&spread.nominal, query),
+                    amplifier: whose(&spread.nominal, query, &nominal),
+                    nominal,
                     range: None,
                     basis: None,
                 }
@@ -128,22 +131,34 @@ pub fn analyse_with(stage: &Stage, detail: Detail, plans: &Plans) -> Result<Repo
     Ok(report)
 }
 
-/// Figures without an argument, and those with one that limits name.
+/// Figures without an argument (gain and its error from every signal's input), and those with one that limits name.
 fn queries(stage: &Stage) -> Vec<Query> {
     let mut list = Vec::new();
+    let spec = stage.kind.spec();
+    let signals = (spec.inputs)(stage).iter().skip(1).filter(|i| i.feed != Feed::Supply && matches!(spec.drives, Drives::Each));
     for &figure in Figure::ALL {
         let silent = figure.is_of_converter() && stage.converter == Converter::default();
         if matches!(figure.argument(), Argument::None) && !silent {
             list.push(Query::of(figure));
-        } else {
-            for limit in &stage.limits {
-                if limit.query.figure == figure && !list.contains(&limit.query) {
-                    list.push(limit.query);
-                }
+            if matches!(figure, Figure::Gain | Figure::GainError) {
+                list.extend(signals.clone().map(|input| Query::of(figure).from_input(input.name)));
+            }
+        }
+        for limit in &stage.limits {
+            if limit.query.figure == figure && !list.contains(&limit.query) {
+                list.push(limit.query);
             }
         }
     }
     list
+}
+
+/// The amplifier, from 1, that makes a figure what it is, where it is the worst of several.
+fn whose(solution: &Solution<'_>, query: Query, found: &Outcome) -> Option<u8> {
+    if query.of.is_some() || query.figure.scope() != Scope::Amplifier || solution.amplifiers() < 2 {
+        return None;
+    }
+    (1u8..).take(solution.amplifiers()).find(|&number| outcome(solution, query.of_amplifier(number)) == *found)
 }
 
 fn range(low: &Extreme, high: &Extreme) -> Option<(f64, f64)> {
@@ -157,7 +172,8 @@ fn figure_row(spread: &mut Spread<'_>, query: Query) -> FigureRow {
         .value()
         .map(|_| spread.basis(query, &extremes, Some(&extremes.low)).max(spread.basis(query, &extremes, Some(&extremes.high))));
     let dimension = query.figure.dimension_in(spread.kind());
-    FigureRow { query, dimension, range: range(&extremes.low, &extremes.high), nominal: extremes.centre.clone(), basis }
+    let amplifier = whose(&spread.nominal, query, &extremes.centre);
+    FigureRow { query, dimension, range: range(&extremes.low, &extremes.high), nominal: extremes.centre.clone(), basis, amplifier }
 }
 
 fn limit_row(spread: &mut Spread<'_>, limit: &Limit) -> LimitRow {
@@ -187,6 +203,10 @@ fn limit_row(spread: &mut Spread<'_>, limit: &Limit) -> LimitRow {
         _ => Verdict::Undetermined,
     };
     let extreme = extreme.clone();
+    let amplifier = match limit.bound {
+        Bound::Report => whose(&spread.nominal, query, &nominal),
+        _ => whose(&spread.at(&extreme), query, &extreme.outcome),
+    };
     let basis = match limit.bound {
         Bound::Report => nominal.value().map(|_| spread.basis(query, &extremes, None)),
         _ => extreme.outcome.value().map(|_| spread.basis(query, &extremes, Some(&extreme))),
@@ -202,6 +222,7 @@ fn limit_row(spread: &mut Spread<'_>, limit: &Limit) -> LimitRow {
     let corner = if matches!(limit.bound, Bound::Report) { Vec::new() } else { extreme.corner };
     LimitRow {
         limit: limit.clone(),
+        amplifier,
         dimension: query.figure.dimension_in(spread.kind()),
         range,
         worst: if matches!(limit.bound, Bound::Report) { nominal.clone() } else { extreme.outcome },

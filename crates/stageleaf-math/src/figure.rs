@@ -1,6 +1,10 @@
 //! The figures that a stage is judged by: stable ids, the same in limits, prose, JSON and code.
 
-use crate::{dimension::Dimension, kind::Kind};
+use crate::{
+    dimension::Dimension,
+    kind::{Drives, Kind},
+    stage::Stage,
+};
 
 macro_rules! figures {
     ($($name:ident $id:literal $dimension:ident $argument:ident $group:ident $title:literal, $meaning:literal;)*) => {
@@ -64,7 +68,7 @@ pub enum Group {
 }
 
 figures! {
-    Gain "gain" Gain None SmallSignal "Gain", "Signed transfer from the signal source to the load at the kind's pass-band reference (DC for DC-coupled kinds).";
+    Gain "gain" Gain None SmallSignal "Gain", "Signed transfer from the signal source to the load at the kind's pass-band reference (DC for DC-coupled kinds); of several inputs the first unless another is named.";
     GainError "gain_error" Fraction None SmallSignal "Gain error", "Relative difference of `gain` from the ideal closed form with the nominal components.";
     GainAtSignal "gain_at_signal" Gain None SmallSignal "Gain at the signal frequency", "Magnitude of the transfer at the signal's highest frequency, with the sign of `gain`.";
     GainAt "gain_at" Gain Frequency SmallSignal "Gain at", "Magnitude of the transfer at a stated frequency.";
@@ -111,6 +115,53 @@ figures! {
 }
 
 impl Figure {
+    /// What it may be narrowed to.
+    #[must_use]
+    pub const fn scope(self) -> Scope {
+        match self {
+            Self::Gain | Self::GainError | Self::GainAtSignal | Self::GainAt | Self::PhaseAt => Scope::Input,
+            Self::Crossover
+            | Self::PhaseMargin
+            | Self::GainMargin
+            | Self::SensitivityPeak
+            | Self::ClipMargin
+            | Self::InputRangeMargin
+            | Self::CurrentMargin
+            | Self::SlewMargin
+            | Self::FullPowerBandwidth
+            | Self::Dissipation
+            | Self::JunctionTemperature => Scope::Amplifier,
+            Self::Bandwidth
+            | Self::LowCutoff
+            | Self::Peaking
+            | Self::NaturalFrequency
+            | Self::Q
+            | Self::InputImpedance
+            | Self::OutputImpedance
+            | Self::OutputOffset
+            | Self::InputOffset
+            | Self::OffsetDrift
+            | Self::GainDrift
+            | Self::StageCmrr
+            | Self::StageCmrrAt
+            | Self::StagePsrr
+            | Self::StagePsrrAt
+            | Self::RippleOutput
+            | Self::OutputNoise
+            | Self::InputNoise
+            | Self::OutputNoisePeakToPeak
+            | Self::NoiseDensityAt
+            | Self::NoiseBandwidth
+            | Self::Snr
+            | Self::SnrBits
+            | Self::SupplyCurrent
+            | Self::Enob
+            | Self::AcquisitionError
+            | Self::FullScaleMargin
+            | Self::ResistorDissipation => Scope::Stage,
+        }
+    }
+
     /// What the number measures on a kind of stage: a transimpedance stage's gain is in Ω, and what is referred to its input in A.
     #[must_use]
     pub const fn dimension_in(self, kind: Kind) -> Dimension {
@@ -137,18 +188,88 @@ pub struct Query {
     pub figure: Figure,
     /// Its frequency in Hz, for figures whose [`Figure::argument`] is [`Argument::Frequency`].
     pub at: Option<f64>,
+    /// Which amplifier's it is, or from which input, where not all of the stage is meant (see [`Figure::scope`]).
+    pub of: Option<Of>,
+}
+
+/// What a figure can be taken of, within a stage.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+pub enum Of {
+    /// An amplifier, numbered from 1: `phase_margin of A2`.
+    Amplifier(u8),
+    /// The transfer from an input other than the first, by its name: `gain from in2`, `gain from reference`.
+    Input(&'static str),
+}
+
+/// What a figure may be narrowed to.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Scope {
+    /// Nothing: it is the stage's.
+    Stage,
+    /// One amplifier; without it, the worst of them.
+    Amplifier,
+    /// One input; without it, the first.
+    Input,
+}
+
+impl Of {
+    /// Every input that a kind may have.
+    pub const INPUTS: &'static [&'static str] = &["in1", "in2", "in3", "in4", "in5", "in6", "in7", "in8", "reference", "supply"];
 }
 
 impl Query {
     /// A figure without an argument.
     #[must_use]
     pub const fn of(figure: Figure) -> Self {
-        Self { figure, at: None }
+        Self { figure, at: None, of: None }
     }
 
     /// A figure at a frequency in Hz.
     #[must_use]
     pub const fn at(figure: Figure, hertz: f64) -> Self {
-        Self { figure, at: Some(hertz) }
+        Self { figure, at: Some(hertz), of: None }
+    }
+
+    /// The same of an amplifier, numbered from 1.
+    #[must_use]
+    pub const fn of_amplifier(self, number: u8) -> Self {
+        Self { of: Some(Of::Amplifier(number)), ..self }
+    }
+
+    /// The same from an input.
+    #[must_use]
+    pub const fn from_input(self, name: &'static str) -> Self {
+        Self { of: Some(Of::Input(name)), ..self }
+    }
+
+    /// The amplifier that is meant, from 0, if one is.
+    #[must_use]
+    pub fn amplifier(self) -> Option<usize> {
+        match self.of {
+            Some(Of::Amplifier(number)) => usize::from(number).checked_sub(1),
+            Some(Of::Input(_)) | None => None,
+        }
+    }
+
+    /// The drive that is meant, from 0; the first where none is named, `None` where the stage has no such input.
+    #[must_use]
+    pub fn drive(self, stage: &Stage) -> Option<usize> {
+        match self.of {
+            Some(Of::Input(name)) => (stage.kind.spec().inputs)(stage)
+                .iter()
+                .position(|input| input.name == name)
+                .filter(|_| matches!(stage.kind.spec().drives, Drives::Each)),
+            Some(Of::Amplifier(_)) | None => Some(0),
+        }
+    }
+
+    /// Whether the stage has what is named.
+    #[must_use]
+    pub fn exists_in(self, stage: &Stage) -> bool {
+        match self.of {
+            Some(Of::Amplifier(number)) => (1..=stage.kind.spec().amplifiers).contains(&usize::from(number)),
+            Some(Of::Input(_)) => self.drive(stage).is_some(),
+            None => true,
+        }
     }
 }

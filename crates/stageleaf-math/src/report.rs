@@ -188,6 +188,8 @@ pub struct FigureRow {
     pub range: Option<(f64, f64)>,
     /// What it rests on.
     pub basis: Option<Basis>,
+    /// Of a figure that is the worst of several amplifiers: whose it is at nominal values, from 1.
+    pub amplifier: Option<u8>,
 }
 
 /// A limit with its verdict.
@@ -213,6 +215,8 @@ pub struct LimitRow {
     pub corner: Vec<Coordinate>,
     /// The parameter that uses most of the margin.
     pub dominant: Option<Parameter>,
+    /// Of a figure that is the worst of several amplifiers: whose it is at the worst case, from 1.
+    pub amplifier: Option<u8>,
 }
 
 /// The transfer from source to load.

@@ -5,7 +5,7 @@
 
 use stageleaf_math::{
     dimension::Dimension,
-    figure::{Argument, Figure, Query},
+    figure::{Argument, Figure, Of, Query, Scope},
 };
 
 use crate::{
@@ -40,9 +40,22 @@ pub fn slug(name: &str) -> String {
 /// A figure with its argument, as limits name it: "bandwidth", "gain_at 20 kHz".
 #[must_use]
 pub fn query_text(q: Query) -> String {
-    match q.at {
+    let mut text: String = match q.at {
         Some(at) => format!("{} {}", q.figure.id(), full(at, Dimension::Frequency)),
         None => q.figure.id().into(),
+    };
+    if let Some(of) = q.of {
+        text += &of_text(of);
+    }
+    text
+}
+
+/// What a figure is taken of: " of A2", " from in2".
+#[must_use]
+pub fn of_text(of: Of) -> String {
+    match of {
+        Of::Amplifier(number) => format!(" of A{number}"),
+        Of::Input(name) => format!(" from {name}"),
     }
 }
 
@@ -70,8 +83,20 @@ pub fn parse_query(text: &str) -> Result<Query, Trouble> {
         return trouble(id_range, message, attempt);
     };
     let argument_range = text.trim_end().len() - argument.len()..text.trim_end().len();
+    let (argument, of) = match narrowed(argument) {
+        None => (argument, None),
+        Some((rest, word, name)) => {
+            let at = argument_range.end - name.len()..argument_range.end;
+            match read_of(figure, word, name) {
+                Ok(of) => (rest, Some(of)),
+                Err((message, allowed)) => return Err(Trouble { range: at, message, allowed, attempt: None }),
+            }
+        }
+    };
+    let argument_range = argument_range.start..argument_range.start + argument.len();
+    let query = |query: Query| Query { of, ..query };
     match (figure.argument(), argument.is_empty()) {
-        (Argument::None, true) => Ok(Query::of(figure)),
+        (Argument::None, true) => Ok(query(Query::of(figure))),
         (Argument::None, false) => {
             trouble(argument_range, format!("`{id}` takes no frequency; {} was given", quoted(argument)), Some(id.into()))
         }
@@ -83,11 +108,46 @@ pub fn parse_query(text: &str) -> Result<Query, Trouble> {
                 t.shifted(argument_range.start)
             })?;
             if at > 0.0 {
-                Ok(Query::at(figure, at))
+                Ok(query(Query::at(figure, at)))
             } else {
                 trouble(argument_range, format!("`{id}` takes a frequency above zero; {} was given", quoted(argument)), None)
             }
         }
+    }
+}
+
+/// "20 kHz", "of", "A1" from "20 kHz of A1"; nothing where neither `of` nor `from` stands in it.
+fn narrowed(argument: &str) -> Option<(&str, &str, &str)> {
+    let (before, name) = argument.rsplit_once(char::is_whitespace)?;
+    let before = before.trim_end();
+    let (rest, word) = before.rsplit_once(char::is_whitespace).unwrap_or(("", before));
+    matches!(word, "of" | "from").then_some((rest.trim_end(), word, name))
+}
+
+/// The amplifier or the input; else what is wrong, and what is allowed.
+fn read_of(figure: Figure, word: &str, name: &str) -> Result<Of, (String, String)> {
+    let id = figure.id();
+    match (figure.scope(), word) {
+        (Scope::Amplifier, "of") => {
+            let number = name.strip_prefix('A').and_then(|n| n.parse::<u8>().ok()).filter(|n| (1..=9).contains(n));
+            number.map(Of::Amplifier).ok_or_else(|| (format!("no amplifier is called {}", quoted(name)), "`of A1`, `of A2`, …".into()))
+        }
+        (Scope::Input, "from") => {
+            let input = Of::INPUTS.iter().find(|input| **input == name);
+            input.map(|input| Of::Input(input)).ok_or_else(|| {
+                (
+                    format!("no input is called {}", quoted(name)),
+                    "`from in2`, …, `from reference`, `from supply`; nothing for the first".into(),
+                )
+            })
+        }
+        (Scope::Amplifier, _) => {
+            Err((format!("`{id}` is an amplifier's: `from` says nothing"), format!("`{id} of A1`, or `{id}` for the worst")))
+        }
+        (Scope::Input, _) => {
+            Err((format!("`{id}` is no amplifier's: `of` says nothing"), format!("`{id} from in2`, or `{id}` for the first input")))
+        }
+        (Scope::Stage, _) => Err((format!("`{id}` is the whole stage's: `{word} {name}` says nothing"), format!("`{id}`"))),
     }
 }
 
@@ -152,6 +212,35 @@ mod tests {
         }
         assert_eq!(parse_anchor("gain_at-2.5-kHz"), parse_query("gain_at 2500 Hz"));
         assert_eq!(parse_anchor("gain_at-20kHz"), parse_query("gain_at 20 kHz"));
+    }
+
+    #[test]
+    fn figures_of_an_amplifier_or_from_an_input_round_trip() {
+        for text in ["phase_margin of A2", "gain from in2", "gain_at 20 kHz from reference", "clip_margin of A1", "gain_error from in8"] {
+            let query = parse_query(text).unwrap_or_else(|trouble| panic!("{text}: {trouble:?}"));
+            assert_eq!(query_text(query), text);
+            assert_eq!(parse_anchor(&query_anchor(query)), Ok(query));
+            assert_eq!(parse_anchor(&text.replace(' ', "%20")), Ok(query));
+        }
+        assert_eq!(parse_query("phase_margin of A2").map(|q| q.amplifier()), Ok(Some(1)));
+    }
+
+    #[test]
+    fn what_a_figure_cannot_be_of_is_told() {
+        assert_eq!(error("phase_margin of B2"), "16..18 no amplifier is called \"B2\" | `of A1`, `of A2`, … | None");
+        assert_eq!(
+            error("gain from in9"),
+            "10..13 no input is called \"in9\" | `from in2`, …, `from reference`, `from supply`; nothing for the first | None"
+        );
+        assert_eq!(
+            error("gain of A1"),
+            "8..10 `gain` is no amplifier's: `of` says nothing | `gain from in2`, or `gain` for the first input | None"
+        );
+        assert_eq!(
+            error("clip_margin from in2"),
+            "17..20 `clip_margin` is an amplifier's: `from` says nothing | `clip_margin of A1`, or `clip_margin` for the worst | None"
+        );
+        assert_eq!(error("output_noise of A1"), "16..18 `output_noise` is the whole stage's: `of A1` says nothing | `output_noise` | None");
     }
 
     #[test]

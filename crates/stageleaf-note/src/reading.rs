@@ -9,7 +9,8 @@ use std::{collections::BTreeSet, ops::Range};
 use stageleaf_math::{
     Error,
     dimension::Dimension,
-    kind::Kind,
+    figure::Scope,
+    kind::{Drives, Kind},
     limit::Limit,
     part::Part,
     stage::{Component, Isolation, Stage},
@@ -21,7 +22,7 @@ use crate::{
     limit::parse_limit,
     problem::{Problem, nearest, quoted},
     quantity::Trouble,
-    query::parse_query,
+    query::{parse_query, query_text},
     settings::Settings,
     shelf::Shelf,
     surroundings,
@@ -112,9 +113,33 @@ pub(crate) fn read_named(text: &str, place: &Place, shelf: &Shelf, settings: &Se
         reader.problem(range, error.to_string(), "", None);
         return (name, Err(reader.into_problems()));
     }
+    for limit in stage.limits.iter().filter(|l| !l.query.exists_in(&stage)) {
+        let named = |f: &&crate::block::Field| f.path.strip_prefix("limits.").and_then(|key| parse_query(key).ok()) == Some(limit.query);
+        let range = reader.fields.iter().find(named).map_or(start.clone(), |f| f.whole.clone());
+        let message = format!("{} has nothing that `{}` could be", kind_text(stage.kind), query_text(limit.query));
+        reader.problem(range, message, whose(&stage, limit.query.figure.scope()), Some(limit.query.figure.id().into()));
+    }
+    if reader.has_problems() {
+        return (name, Err(reader.into_problems()));
+    }
     let mut fields = std::mem::take(&mut reader.fields);
     fields.sort_by_key(|f| f.span.start);
     (name, Ok(Block { stage, text: text.to_owned(), file: place.file.clone(), line: place.first_line, fields, measured }))
+}
+
+/// What a stage's figures can be taken of.
+fn whose(stage: &Stage, scope: Scope) -> String {
+    let names: Vec<String> = match scope {
+        Scope::Stage => Vec::new(),
+        Scope::Amplifier => (1..=stage.kind.spec().amplifiers).map(|n| format!("`of A{n}`")).collect(),
+        Scope::Input => (stage.kind.spec().inputs)(stage)
+            .iter()
+            .filter(|_| matches!(stage.kind.spec().drives, Drives::Each))
+            .skip(1)
+            .map(|input| format!("`from {}`", input.name))
+            .collect(),
+    };
+    if names.is_empty() { "the figure alone".into() } else { format!("{}; or the figure alone", names.join(", ")) }
 }
 
 fn stage_kind(reader: &mut Reader<'_>, entry: Option<Entry<'_>>, start: &Range<usize>) -> Option<Kind> {
@@ -289,7 +314,7 @@ fn limits<'a>(reader: &mut Reader<'a>, entry: Option<Entry<'a>>, kind: Option<Ki
             reader.text(&entry, &path);
             continue;
         };
-        if !named.insert((query.figure, query.at.map(f64::to_bits))) {
+        if !named.insert((query.figure, query.at.map(f64::to_bits), query.of)) {
             reader.problem(entry.key_range(), format!("`{}` has a limit already", shown(entry.key)), "one limit for each figure", None);
         }
         let d = kind.map_or(query.figure.dimension(), |k| query.figure.dimension_in(k));

@@ -9,6 +9,7 @@ use stageleaf_sheet::strip::{Places, places};
 
 fn row(bound: Bound, nominal: f64, range: (f64, f64)) -> LimitRow {
     LimitRow {
+        amplifier: None,
         dimension: Figure::Bandwidth.dimension(),
         limit: Limit { query: Query::of(Figure::Bandwidth), bound, thin: Thin::Fraction(0.1) },
         nominal: Outcome::Value(nominal),

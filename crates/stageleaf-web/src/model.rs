@@ -211,10 +211,11 @@ pub fn announcement(before: &[(String, Verdict)], after: &[(String, Verdict)]) -
 }
 
 fn heading(query: stageleaf_math::figure::Query) -> String {
-    match query.at {
+    let title = match query.at {
         Some(at) => format!("{} {}", query.figure.title(), stageleaf_note::format(at, stageleaf_math::dimension::Dimension::Frequency, 3)),
         None => query.figure.title().to_owned(),
-    }
+    };
+    query.of.map_or(title.clone(), |of| title + &stageleaf_note::of_text(of))
 }
 
 fn analyse(block: &Block, place: &Place, detail: Detail, plans: &Plans) -> Result<Report, Vec<Problem>> {

@@ -11,7 +11,7 @@ use stageleaf_math::{
     NOT_MODELLED,
     definition::not_modelled_for,
     dimension::Dimension,
-    figure::{Argument, Figure, Group, Query},
+    figure::{Argument, Figure, Group, Query, Scope},
     kind::Kind,
     limit::{Bound, Limit, Thin},
     report::{Against, FigureRow, Report, Working},
@@ -109,6 +109,11 @@ fn general(figure: Figure) -> String {
     match figure.argument() {
         Argument::None => labelled(&mut text, "limit", &format!("{} = \"…\"", figure.id())),
         Argument::Frequency => labelled(&mut text, "limit", &format!("\"{} 20 kHz\" = \"…\": it takes a frequency", figure.id())),
+    }
+    match figure.scope() {
+        Scope::Stage => {}
+        Scope::Amplifier => labelled(&mut text, "of", "the worst of several amplifiers, or `of A2`"),
+        Scope::Input => labelled(&mut text, "from", "the first of several inputs, or `from in2`, `from reference`"),
     }
     text
 }

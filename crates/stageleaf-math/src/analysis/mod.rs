@@ -152,6 +152,9 @@ pub fn outcome(solution: &Solution<'_>, query: Query) -> Outcome {
 #[must_use]
 pub fn lacking(solution: &Solution<'_>, query: Query) -> Option<Outcome> {
     use Figure as F;
+    if !query.exists_in(solution.model.stage) {
+        return Some(Outcome::DoesNotApply("the stage has no such amplifier or input"));
+    }
     let mut missing = Missing::default();
     match query.figure {
         F::Gain | F::GainError | F::GainDrift => missing.part(solution, PartFigure::OpenLoop),
@@ -250,17 +253,22 @@ pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
     if let Some(unfit) = unfit(solution, query) {
         return unfit;
     }
+    let (drive, amplifier) = (query.drive(stage).unwrap_or(0), query.amplifier());
+    let margins = || amplifier.map_or_else(|| margins::margins(solution), |a| margins::of(solution, a));
     let value = match query.figure {
-        F::Gain => rejection::gain(solution),
-        F::GainError => rejection::gain(solution) / (stage.kind.spec().ideal_gain)(stage) - 1.0,
+        F::Gain => rejection::gain(solution, drive),
+        F::GainError => match stage.kind.ideal_gain(stage, drive) {
+            Some(ideal) => rejection::gain(solution, drive) / ideal - 1.0,
+            None => return Outcome::DoesNotApply("no closed form says what the supply should pass on"),
+        },
         F::GainAtSignal => {
             let frequency = stage.signal().and_then(|s| s.frequency).unwrap_or(0.0);
-            let sign = if response::reference(solution).gain < 0.0 { -1.0 } else { 1.0 };
-            sign * crate::solution::magnitude(rejection::transfer(solution, solution.scaled(frequency)))
+            let sign = if rejection::gain(solution, drive) < 0.0 { -1.0 } else { 1.0 };
+            sign * crate::solution::magnitude(rejection::transfer(solution, drive, solution.scaled(frequency)))
         }
-        F::GainAt => crate::solution::magnitude(rejection::transfer(solution, solution.scaled(query.at.unwrap_or(0.0)))),
+        F::GainAt => crate::solution::magnitude(rejection::transfer(solution, drive, solution.scaled(query.at.unwrap_or(0.0)))),
         F::PhaseAt => {
-            let h = rejection::transfer(solution, solution.scaled(query.at.unwrap_or(0.0)));
+            let h = rejection::transfer(solution, drive, solution.scaled(query.at.unwrap_or(0.0)));
             libm::atan2(h.im, h.re)
         }
         F::Bandwidth => response::edges(solution).bandwidth,
@@ -269,23 +277,23 @@ pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
             _ => return Outcome::DoesNotApply("the response reaches down to DC"),
         },
         F::Peaking => response::edges(solution).peaking,
-        F::Crossover => match margins::margins(solution).crossover {
+        F::Crossover => match margins().crossover {
             Some(f) => f,
             None => return Outcome::DoesNotApply("the return ratio stays below one"),
         },
-        F::PhaseMargin => match margins::margins(solution).phase {
+        F::PhaseMargin => match margins().phase {
             Some(m) if solution.oscillates() && m > 0.0 => return Outcome::Oscillates,
             Some(m) => m,
             None => return Outcome::DoesNotApply("the return ratio stays below one"),
         },
         F::GainMargin => {
-            let margin = margins::margins(solution).gain;
+            let margin = margins().gain;
             if solution.oscillates() && margin > 1.0 {
                 return Outcome::Oscillates;
             }
             margin
         }
-        F::SensitivityPeak => margins::margins(solution).sensitivity_peak,
+        F::SensitivityPeak => margins().sensitivity_peak,
         F::NaturalFrequency => match response::own_pair(solution) {
             Some((frequency, _)) => frequency,
             None => return Outcome::DoesNotApply("all poles are real"),
@@ -318,14 +326,14 @@ pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
         F::Enob => return converter::enob(solution),
         F::AcquisitionError => return converter::acquisition_error(solution),
         F::FullScaleMargin => return converter::full_scale_margin(solution),
-        F::ClipMargin => return swing::clip_margin(solution),
-        F::InputRangeMargin => return swing::input_range_margin(solution),
-        F::CurrentMargin => return swing::current_margin(solution),
-        F::SlewMargin => return swing::slew_margin(solution),
-        F::FullPowerBandwidth => return swing::full_power_bandwidth(solution),
+        F::ClipMargin => return swing::clip_margin(solution, amplifier),
+        F::InputRangeMargin => return swing::input_range_margin(solution, amplifier),
+        F::CurrentMargin => return swing::current_margin(solution, amplifier),
+        F::SlewMargin => return swing::slew_margin(solution, amplifier),
+        F::FullPowerBandwidth => return swing::full_power_bandwidth(solution, amplifier),
         F::SupplyCurrent => return thermal::power(solution).supply_current.clone(),
-        F::Dissipation => return thermal::hottest(solution, |p| &p.dissipation),
-        F::JunctionTemperature => return thermal::hottest(solution, |p| &p.junction),
+        F::Dissipation => return thermal::hottest(solution, amplifier, |p| &p.dissipation),
+        F::JunctionTemperature => return thermal::hottest(solution, amplifier, |p| &p.junction),
         F::ResistorDissipation => match thermal::hottest_resistor(solution) {
             Some((_, power)) => power,
             None => return Outcome::DoesNotApply("the stage has no resistor"),

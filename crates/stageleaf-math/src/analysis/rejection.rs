@@ -33,23 +33,24 @@ use crate::{
     solution::{Solution, magnitude},
 };
 
-/// The kind's gain with the common-mode errors of this build's signs in it.
+/// A drive's gain at the kind's reference with the common-mode errors of this build's signs in it.
 #[must_use]
-pub fn gain(solution: &Solution<'_>) -> f64 {
+pub fn gain(solution: &Solution<'_>, drive: usize) -> f64 {
     let point = response::reference(solution);
-    match signs(solution) {
-        None => point.gain,
-        Some(signs) => {
-            let h = Errors::new(solution, &signs, point.omega).transfer(0);
-            if point.omega <= 0.0 { h.re } else { magnitude(h) * if point.gain < 0.0 { -1.0 } else { 1.0 } }
-        }
+    let signs = signs(solution);
+    if signs.is_none() && drive == 0 {
+        return point.gain;
     }
+    let h = signs.map_or_else(|| solution.transfer(drive, point.omega), |s| Errors::new(solution, &s, point.omega).transfer(drive));
+    let stage = solution.model.stage;
+    let ideal = stage.kind.ideal_gain(stage, drive).unwrap_or(h.re);
+    if point.omega <= 0.0 { h.re } else { magnitude(h) * if ideal < 0.0 { -1.0 } else { 1.0 } }
 }
 
-/// The first drive's transfer to the load with the common-mode errors of this build's signs in it.
+/// A drive's transfer to the load with the common-mode errors of this build's signs in it.
 #[must_use]
-pub fn transfer(solution: &Solution<'_>, omega: f64) -> Complex64 {
-    signs(solution).map_or_else(|| solution.transfer(0, omega), |signs| Errors::new(solution, &signs, omega).transfer(0))
+pub fn transfer(solution: &Solution<'_>, drive: usize, omega: f64) -> Complex64 {
+    signs(solution).map_or_else(|| solution.transfer(drive, omega), |signs| Errors::new(solution, &signs, omega).transfer(drive))
 }
 
 /// The signs of this build by amplifier, unless all are nothing.

@@ -485,6 +485,11 @@ impl<'m> Spread<'m> {
         self.model.parameters.entries[slot].parameter
     }
 
+    /// The build of an extreme.
+    pub fn at(&mut self, extreme: &Extreme) -> Rc<Solution<'m>> {
+        if extreme.ends.is_empty() { self.nominal.clone() } else { self.corner(&extreme.ends) }
+    }
+
     /// The build at which a figure is greatest, if it has a value there.
     pub fn at_greatest(&mut self, query: Query) -> Option<Rc<Solution<'m>>> {
         let extremes = self.extremes(query);

@@ -258,9 +258,12 @@ impl Rails<'_> {
     }
 }
 
-/// The least of a margin over the amplifiers; what is missing for one is missing for the least of all.
-fn least(solution: &Solution<'_>, of: impl Fn(usize) -> Outcome) -> Outcome {
-    let mut least = of(0);
+/// A margin of one amplifier, else the least over all; what is missing for one is missing for the least of all.
+fn least(solution: &Solution<'_>, amplifier: Option<usize>, of: impl Fn(usize) -> Outcome) -> Outcome {
+    let mut least = of(amplifier.unwrap_or(0));
+    if amplifier.is_some() {
+        return least;
+    }
     for amplifier in 1..solution.amplifiers() {
         let here = of(amplifier);
         if let (Some(a), Some(b)) = (least.value(), here.value()) {
@@ -273,23 +276,24 @@ fn least(solution: &Solution<'_>, of: impl Fn(usize) -> Outcome) -> Outcome {
 }
 
 /// Clip margin, V.
-pub fn clip_margin(solution: &Solution<'_>) -> Outcome {
-    solution.clip.get_or_init(|| least(solution, |a| clip(solution, a, &drives(solution)[a]))).clone()
+pub fn clip_margin(solution: &Solution<'_>, amplifier: Option<usize>) -> Outcome {
+    let least = || least(solution, amplifier, |a| clip(solution, a, &drives(solution)[a]));
+    if amplifier.is_some() { least() } else { solution.clip.get_or_init(least).clone() }
 }
 
 /// Input range margin, V.
-pub fn input_range_margin(solution: &Solution<'_>) -> Outcome {
-    least(solution, |a| range(solution, a))
+pub fn input_range_margin(solution: &Solution<'_>, amplifier: Option<usize>) -> Outcome {
+    least(solution, amplifier, |a| range(solution, a))
 }
 
 /// Output current margin, A.
-pub fn current_margin(solution: &Solution<'_>) -> Outcome {
-    least(solution, |a| current(solution, a, &drives(solution)[a]))
+pub fn current_margin(solution: &Solution<'_>, amplifier: Option<usize>) -> Outcome {
+    least(solution, amplifier, |a| current(solution, a, &drives(solution)[a]))
 }
 
 /// Slew available over slew needed.
-pub fn slew_margin(solution: &Solution<'_>) -> Outcome {
-    least(solution, |a| slew(solution, a, &drives(solution)[a]))
+pub fn slew_margin(solution: &Solution<'_>, amplifier: Option<usize>) -> Outcome {
+    least(solution, amplifier, |a| slew(solution, a, &drives(solution)[a]))
 }
 
 /// The signals at every amplifier's pin.
@@ -459,7 +463,10 @@ fn slew(solution: &Solution<'_>, amplifier: usize, drive: &Drive) -> Outcome {
 ///
 /// # Does not apply
 /// The rails do not depend on frequency: see `clip_margin`.
-pub fn full_power_bandwidth(solution: &Solution<'_>) -> Outcome {
+pub fn full_power_bandwidth(solution: &Solution<'_>, amplifier: Option<usize>) -> Outcome {
+    if let Some(amplifier) = amplifier {
+        return full_power_bandwidth_of(solution, amplifier);
+    }
     let mut lowest: Option<Outcome> = None;
     for amplifier in 0..solution.amplifiers() {
         let here = full_power_bandwidth_of(solution, amplifier);

@@ -179,10 +179,14 @@ pub fn power<'s>(solution: &'s Solution<'_>) -> &'s Power {
     })
 }
 
-/// The greatest of a figure over the packages; what one lacks, the greatest lacks.
-pub fn hottest(solution: &Solution<'_>, of: fn(&Package) -> &Outcome) -> Outcome {
+/// A figure of one amplifier's package, else the greatest over all; what one lacks, the greatest lacks.
+pub fn hottest(solution: &Solution<'_>, amplifier: Option<usize>, of: fn(&Package) -> &Outcome) -> Outcome {
+    let packages = &power(solution).packages;
+    if let Some(package) = amplifier.and_then(|a| packages.get(a)) {
+        return of(package).clone();
+    }
     let mut greatest = 0.0_f64;
-    for package in &power(solution).packages {
+    for package in packages {
         match of(package) {
             Outcome::Value(here) => greatest = greatest.max(*here),
             other => return other.clone(),

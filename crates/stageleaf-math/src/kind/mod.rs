@@ -329,6 +329,31 @@ impl Kind {
         self.spec().id
     }
 
+    /// The ideal gain of a drive (from 0) at the kind's reference, where a closed form says it.
+    #[must_use]
+    pub fn ideal_gain(self, stage: &Stage, drive: usize) -> Option<f64> {
+        match self {
+            _ if drive == 0 => Some((self.spec().ideal_gain)(stage)),
+            Self::Summing => summing::ideal_gain(stage, drive),
+            Self::ScaleAndShift => Some(scale_and_shift::shift(stage)),
+            Self::Follower
+            | Self::NonInverting
+            | Self::Inverting
+            | Self::Difference
+            | Self::Instrumentation
+            | Self::Transimpedance
+            | Self::Charge
+            | Self::Integrator
+            | Self::Differentiator
+            | Self::AcNonInverting
+            | Self::AcInverting
+            | Self::SallenKeyLowPass
+            | Self::SallenKeyHighPass
+            | Self::MultipleFeedbackLowPass
+            | Self::MultipleFeedbackBandPass => None,
+        }
+    }
+
     /// Its components.
     #[must_use]
     pub const fn components(self) -> &'static [ComponentSpec] {

@@ -25,6 +25,11 @@ use crate::network::GROUND;
 const INPUTS: &[InputSpec] =
     &[InputSpec::signal("in", Drive::Voltage), InputSpec { name: "reference", drive: Drive::Voltage, feed: Feed::Reference }];
 
+/// The ideal gain of the reference.
+pub fn shift(stage: &Stage) -> f64 {
+    (1.0 + nominal(stage, "Rf") / nominal(stage, "Rg")) * nominal(stage, "R1") / (nominal(stage, "R1") + nominal(stage, "R2"))
+}
+
 /// The kind.
 pub static SPEC: Spec = Spec {
     id: "scale-and-shift",

@@ -42,6 +42,11 @@ fn inputs(stage: &Stage) -> &'static [InputSpec] {
     &INPUTS[..present(stage).count()]
 }
 
+/// `−Rf/Rin` of any input.
+pub fn ideal_gain(stage: &Stage, input: usize) -> Option<f64> {
+    present(stage).nth(input).map(|name| -nominal(stage, "Rf") / nominal(stage, name))
+}
+
 fn noise_gain(stage: &Stage) -> f64 {
     1.0 + present(stage).map(|n| nominal(stage, "Rf") / nominal(stage, n)).sum::<f64>()
 }

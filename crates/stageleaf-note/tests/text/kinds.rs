@@ -3,6 +3,7 @@
 use crate::common::{problems, read, written};
 use stageleaf_math::{
     dimension::Dimension,
+    figure::{Figure, Query},
     kind::Kind,
     stage::{Source, Span, Toleranced},
 };
@@ -239,6 +240,38 @@ allowed: `voltage`, `resistance`"
   13 | [parts]
      |  ^^^^^
 allowed: `part` above the tables"
+    );
+}
+
+#[test]
+fn figures_of_amplifiers_and_inputs() {
+    let limits = |body: &str, limits: &str| format!("{body}[limits]\n{limits}\n");
+    let block = block("summing", &limits(SUMMING, "\"gain from in3\" = \"-0.2128 ± 1 %\"\ngain = \"-1 ± 1 %\""));
+    assert_eq!(block.stage.limits[0].query, Query::of(Figure::Gain).from_input("in3"));
+    assert_eq!(block.stage.limits[1].query, Query::of(Figure::Gain));
+    assert_eq!(
+        refused("summing", &limits(SUMMING, "\"gain from in4\" = \"report\"")),
+        "notes/a.md:19:19: a summing stage has nothing that `gain from in4` could be
+  19 | \"gain from in4\" = \"report\"
+     |                   ^^^^^^^^
+allowed: `from in2`, `from in3`; or the figure alone
+try: gain"
+    );
+    assert_eq!(
+        refused("summing", &limits(SUMMING, "\"phase_margin of A2\" = \"report\"")),
+        "notes/a.md:19:24: a summing stage has nothing that `phase_margin of A2` could be
+  19 | \"phase_margin of A2\" = \"report\"
+     |                        ^^^^^^^^
+allowed: `of A1`; or the figure alone
+try: phase_margin"
+    );
+    assert_eq!(
+        refused("difference", &limits(DIFFERENCE, "\"gain from in2\" = \"report\"")),
+        "notes/a.md:19:19: a difference stage has nothing that `gain from in2` could be
+  19 | \"gain from in2\" = \"report\"
+     |                   ^^^^^^^^
+allowed: the figure alone
+try: gain"
     );
 }
 

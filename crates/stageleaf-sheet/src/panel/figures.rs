@@ -4,7 +4,7 @@ use maud::{Markup, html};
 use stageleaf_math::{figure::Group, report::FigureRow};
 use stageleaf_note::{query_anchor, query_text};
 
-use super::{limits::basis_cell, needs, scroll, title, value};
+use super::{limits::basis_cell, needs, scroll, title, value, whose};
 use crate::Sheet;
 
 /// The groups with their headings.
@@ -35,7 +35,7 @@ pub fn figures(sheet: &Sheet) -> Markup {
                                 @let d = row.dimension;
                                 // The row of a judged figure, to which prose links, stands among the limits.
                                 tr id=[(first(row) && !judged(row.query)).then(|| format!("{}.{}", sheet.id, query_anchor(row.query)))] {
-                                    th scope="row" { (title(sheet, row.query)) " " samp { (query_text(row.query)) } (needs(sheet, &row.nominal)) }
+                                    th scope="row" { (title(sheet, row.query)) (whose(row.amplifier)) " " samp { (query_text(row.query)) } (needs(sheet, &row.nominal)) }
                                     @if row.nominal.value().is_none() { td class="words" colspan="3" { (super::outcome(&row.nominal, d)) } }
                                     @else {
                                         td { (super::outcome(&row.nominal, d)) }

@@ -8,7 +8,7 @@ use stageleaf_math::{
 };
 use stageleaf_note::{format, limit_text, print::trimmed, query_anchor, words};
 
-use super::{basis_word, needs, outcome, round, title, value};
+use super::{basis_word, needs, outcome, round, title, value, whose};
 use crate::{Sheet, sheet::capital, strip::strip};
 
 /// The shape that stands beside a verdict's word.
@@ -72,7 +72,7 @@ fn limit(sheet: &Sheet, row: &LimitRow, linked: bool) -> Markup {
             div class="asked" {
                 span class=(class(row.verdict)) { span class="shape" aria-hidden="true" { (shape(row.verdict)) } " " (row.verdict.word()) }
                 @if let Some(basis) = row.basis { span class="basis" { " (" (basis.word()) ")" } }
-                b class="figure" { (title(sheet, query)) }
+                b class="figure" { (title(sheet, query)) (whose(row.amplifier)) }
                 span class="asks" { (asks(&row.limit, d)) }
             }
             (strip(row, |v| round(v, d)))

@@ -25,7 +25,7 @@ use stageleaf_math::{
     limit::Basis,
     report::{FigureRow, Outcome},
 };
-use stageleaf_note::{format, print::trimmed, words};
+use stageleaf_note::{format, of_text, print::trimmed, words};
 
 use crate::Sheet;
 
@@ -39,6 +39,16 @@ fn scroll(name: &str, table: &Markup) -> Markup {
 
 /// A figure's title with its argument, or with the frequency that it is at: "Gain at 2 MHz", "Input impedance at 20 kHz".
 fn title(sheet: &Sheet, query: Query) -> String {
+    let of = query.of.map_or_else(String::new, of_text);
+    format!("{}{of}", plain_title(sheet, query))
+}
+
+/// " (A1)": whose a figure is that is the worst of several amplifiers'.
+fn whose(amplifier: Option<u8>) -> String {
+    amplifier.map_or_else(String::new, |number| format!(" (A{number})"))
+}
+
+fn plain_title(sheet: &Sheet, query: Query) -> String {
     let title = query.figure.title();
     let hertz = |f: f64| trimmed(f, Dimension::Frequency, 6);
     let signal = sheet.block.stage.signal().and_then(|s| s.frequency);

@@ -140,6 +140,7 @@ pub fn part() -> ShelfPart {
 
 fn row(query: Query, bound: Bound, numbers: (f64, f64, f64), worst: f64, margin: f64, verdict: Verdict) -> LimitRow {
     LimitRow {
+        amplifier: None,
         dimension: query.figure.dimension(),
         limit: Limit { query, bound, thin: Thin::Fraction(0.1) },
         nominal: Outcome::Value(numbers.0),
@@ -175,6 +176,7 @@ pub fn report(kind: Kind) -> Report {
         row(figure(Figure::FullPowerBandwidth), Bound::AtLeast(20e3), (2.1e6, 0.9e6, 3e6), 0.9e6, 0.88e6, Verdict::Holds),
         row(Query::at(Figure::GainAt, 2e6), Bound::Report, (4.9, 3.1, 5.6), 3.1, 0.0, Verdict::Reported),
         LimitRow {
+            amplifier: None,
             dimension: Dimension::Temperature,
             limit: Limit { query: figure(Figure::JunctionTemperature), bound: Bound::AtMost(358.15), thin: Thin::Distance(10.0) },
             nominal: Outcome::Undetermined(vec![Need::Part(PartFigure::JunctionToAmbient)]),
@@ -191,6 +193,7 @@ pub fn report(kind: Kind) -> Report {
         .iter()
         .filter(|f| f.argument() == Argument::None)
         .map(|f| FigureRow {
+            amplifier: None,
             query: Query::of(*f),
             dimension: f.dimension(),
             nominal: match f {

@@ -203,7 +203,7 @@ fn part_lost(note: &[u8], block: &Block, path: &str, part_file: &str) -> Problem
 fn with_quoted_figures<'a>(stage: &Stage, quotes: impl Iterator<Item = &'a Quote>) -> Stage {
     let mut stage = stage.clone();
     for quote in quotes {
-        if quote.query.at.is_some() && stage.limits.iter().all(|l| l.query != quote.query) {
+        if (quote.query.at.is_some() || quote.query.of.is_some()) && stage.limits.iter().all(|l| l.query != quote.query) {
             stage.limits.push(Limit { query: quote.query, bound: Bound::Report, thin: Thin::Fraction(0.0) });
         }
     }

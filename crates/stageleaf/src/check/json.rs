@@ -132,6 +132,8 @@ enum Figure {
         low: Option<f64>,
         high: Option<f64>,
         basis: Option<&'static str>,
+        #[serde(skip_serializing_if = "Option::is_none")]
+        amplifier: Option<String>,
         #[serde(skip_serializing_if = "is_false")]
         unlimited: bool,
     },
@@ -147,11 +149,16 @@ impl Figure {
                 low: row.range.and_then(|(low, _)| finite(low)),
                 high: row.range.and_then(|(_, high)| finite(high)),
                 basis: row.basis.map(stageleaf_math::limit::Basis::word),
+                amplifier: amplifier(row.amplifier),
                 unlimited: value.is_infinite() || row.range.is_some_and(|(low, high)| low.is_infinite() || high.is_infinite()),
             },
             other => Self::Other(Other::of(other, row.dimension, part)),
         }
     }
+}
+
+fn amplifier(number: Option<u8>) -> Option<String> {
+    number.map(|number| format!("A{number}"))
 }
 
 /// A figure that is not a number.
@@ -189,6 +196,9 @@ enum Worst {
 #[derive(Debug, Serialize)]
 struct Judged {
     figure: String,
+    /// Whose it is, where it is the worst of several.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    amplifier: Option<String>,
     limit: String,
     verdict: &'static str,
     basis: Option<&'static str>,
@@ -216,6 +226,7 @@ impl Judged {
         });
         Self {
             figure: query_text(row.limit.query),
+            amplifier: amplifier(row.amplifier),
             limit: limit.to_owned(),
             verdict: row.verdict.word(),
             basis: row.basis.map(stageleaf_math::limit::Basis::word),

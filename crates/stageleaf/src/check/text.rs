@@ -92,9 +92,10 @@ impl Row {
             }
             outcome => outcome_words(outcome, dimension, &stage.part_file),
         };
+        let whose = row.amplifier.map(|number| format!("of A{number}"));
         if row.verdict != Verdict::Reported && !row.corner.is_empty() {
             let last = row.corner.len() - 1;
-            let mut pieces: Vec<String> = row
+            let mut corner: Vec<String> = row
                 .corner
                 .iter()
                 .enumerate()
@@ -103,10 +104,12 @@ impl Row {
                 })
                 .collect();
             if let Some(most) = row.dominant {
-                pieces[last].push(';');
-                pieces.push(format!("most from {}", words::parameter_text(most).trim_end_matches(" (magnitude)")));
+                corner[last].push(';');
+                corner.push(format!("most from {}", words::parameter_text(most).trim_end_matches(" (magnitude)")));
             }
-            below.extend(wrapped(pieces));
+            below.extend(wrapped(whose.map(|of| format!("{of},")).into_iter().chain(corner).collect::<Vec<_>>()));
+        } else {
+            below.extend(whose);
         }
         let basis = if row.verdict == Verdict::Undetermined { None } else { row.basis };
         let basis = basis.map_or("", stageleaf_math::limit::Basis::word);
