@@ -112,3 +112,18 @@ fn a_choice_that_cannot_be_made_says_why() {
     let said = bench.run(&["choose", "note.md", "gain=3"]);
     assert!(said.code == Some(2) && said.err.contains("allowed: “A”, “B”"), "{}", said.err);
 }
+
+#[test]
+fn the_overview_has_the_worst_first_and_no_markup_of_a_note() {
+    let bench = Bench::new("overview");
+    bench.write("notes/fine.md", note("oak-1", "Fine", "9k"));
+    bench.write("notes/deep/lost.md", note("oak-1", "<script>alert(1)</script> | `x`", "999k"));
+    bench.write("notes/near.md", note("oak-1", "Near", "9k").replace("at least 200 kHz", "at least 960 kHz"));
+    let said = bench.run(&["overview", "notes", "--from", "notes"]);
+    assert_eq!((said.code, said.err.as_str()), (Some(0), ""));
+    let at = |words: &str| said.out.find(words).unwrap_or_else(|| panic!("{words}: {}", said.out));
+    assert!(at("1 break</strong>") < at(">Near<") && at(">Near<") < at(">Fine<"), "{}", said.out);
+    assert!(!said.out.contains("<script>") && said.out.contains("&lt;script&gt;"), "{}", said.out);
+    assert!(said.out.contains("href=\"deep/lost.md#script-alert-1-script-x\""), "{}", said.out);
+    assert!(bench.run(&["overview", "notes", "--from", "."]).out.contains("href=\"notes/near.md#near.bandwidth\""));
+}

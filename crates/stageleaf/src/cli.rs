@@ -9,7 +9,7 @@ use crate::{
     check::{self, Ending},
     choose, diff, embed, explain,
     fault::Fault,
-    needs, new, page,
+    needs, new, overview, page,
     terminal::Terminal,
     walk::show,
 };
@@ -50,6 +50,8 @@ enum Command {
     ///
     /// Every choice is judged in full, with the stage's own limits. Exit code: 0 one keeps them all; 1 none does; 2 bad input.
     Choose(choose::Options),
+    /// Print a chapter with every stage, what is nearest to breaking first
+    Overview(overview::Options),
     /// Put sheets into a book: mdBook's preprocessor
     Embed {
         /// Nothing, or `supports RENDERER`
@@ -93,6 +95,7 @@ fn perform(command: &Command, terminal: &mut Terminal) -> Ending {
         Command::Needs(options) => needs::run(options, terminal),
         Command::Alternates(options) => alternates::run(options, terminal),
         Command::Choose(options) => choose::run(options, terminal),
+        Command::Overview(options) => overview::run(options, terminal),
         Command::Page(options) => write_page(options, terminal),
         Command::Embed { arguments } => match embed::command(arguments, io::stdin().lock(), io::stdout().lock(), io::stderr().lock()) {
             Ok(true) => Ending::Good,

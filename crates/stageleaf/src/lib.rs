@@ -18,6 +18,7 @@ pub mod explain;
 pub mod fault;
 pub mod needs;
 pub mod new;
+pub mod overview;
 pub mod page;
 #[cfg(feature = "site")]
 pub mod site;

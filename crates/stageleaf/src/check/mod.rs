@@ -14,7 +14,7 @@ use std::{collections::BTreeMap, fs, path::PathBuf};
 use clap::{Args, ValueEnum};
 
 pub use self::examine::{Current, Examined, ExaminedStage, QuoteState, examine, examine_with};
-pub use self::text::outcome_words;
+pub use self::text::{margin_text, outcome_words};
 use crate::{
     fault::Fault,
     team::Teams,

@@ -13,7 +13,9 @@ use mdbook_preprocessor::{Preprocessor, PreprocessorContext, book::Book, errors:
 
 use super::{Failure, read, shelf_page, write};
 use crate::{
+    asked,
     embed::{self, SettingsText, Surroundings},
+    overview,
     team::{Team, Teams},
 };
 
@@ -42,7 +44,12 @@ pub fn build(root: &Path, site: &Path) -> Result<PathBuf, Failure> {
     if !faults.is_empty() {
         return Err(faults.iter().map(ToString::to_string).collect::<Vec<_>>().join("\n"));
     }
-    write(&book_root.join("notes/shelf.md"), shelf_page::chapter(&team.shelf))?;
+    let asked = asked::stages(&[notes.to_owned()], None, None);
+    if !asked.faults.is_empty() {
+        return Err(asked.faults.iter().map(ToString::to_string).collect::<Vec<_>>().join("\n"));
+    }
+    write(&book_root.join("notes/shelf.md"), shelf_page::chapter(&team.shelf, &asked.stages))?;
+    write(&book_root.join("notes/overview.md"), overview::chapter(&asked.stages, Some(notes)))?;
 
     let say = |error: Error| format!("book: {error:#}");
     let mut book = MDBook::load(&book_root).map_err(say)?;
