@@ -59,6 +59,8 @@ pub const fn budget(figure: Figure) -> Exactness {
         Figure::CurrentMargin => Absolute(1e-12),                                                  // A, of milliamperes
         Figure::SlewMargin => Relative(1e-9),
         Figure::FullPowerBandwidth => Relative(1e-9), // a closed form, or a root search
+        // The last crossing of a sum of exponentials: the poles' error, more where it crosses at a shallow angle.
+        Figure::StartupTime => Relative(1e-8),
         Figure::SupplyCurrent | Figure::Dissipation | Figure::ResistorDissipation => Relative(1e-9), // closed forms
         Figure::JunctionTemperature => Relative(1e-9), // K; a fixed point where the bias current depends on it
     }

@@ -9,6 +9,9 @@ Transients are sums over the eigenvectors of the matrix pencil, in mpmath with 1
 - converter: its sampling capacitor, charged to a voltage the whole input range away, is connected to the network at t = 0. The error
   is the largest one at that capacitor from the acquisition time on; how steeply each amplifier's controlled source moves and what
   current leaves its pin tell whether the settling is linear. Effective bits from the noise over the band, its own, and LSB/sqrt(12).
+- start-up: supplies, reference and steady signals step to their values with every capacitor empty. The last time at which the output is
+  a hundredth of its final value away from it; where a controlled source would move faster than it slews, its largest value over the
+  slew rate besides; the part's own start-up time. A stage whose pin would leave the rails on its way is told apart.
 - ripple: a sine of the stated peak on each rail that is not the ground. Each amplifier lets a part of it in, as a voltage in
   series with its input of |1 + jf/fc|/PSRR of the ripple; a divider of the positive supply lets it in through the network. Signs
   are unknown, so the magnitudes at the output are added.
@@ -61,6 +64,7 @@ def around(draw, c):
         "signal": [short(draw.uniform(-1, 1)), log(draw, 1e-3, 1.0), c["signal_frequency"]],
         "range": draw.choice([[0.0, 4.096], [-2.5, 2.5], [0.5, 3.0]]),
     }
+    c["around"]["startup"] = [log(draw, 1e-6, 1e-4), draw.choice([1e15, log(draw, 1e4, 1e8)])]
     if c["kind"] in ("transimpedance", "charge"):
         c["around"]["signal"][:2] = [c["signal_dc"], short(c["around"]["signal"][1] * 1e-9)]
     # Slowest of what the kick meets: the time that the shunt capacitor takes, or a time constant in the band's upper half.
@@ -128,29 +132,32 @@ def largest(modes, start):
     a = np.array([complex(a) for _, a in modes])
     size = lambda t: np.abs((a[:, None] * np.exp(p[:, None] * t)).sum(0).real)
     best, at, now = float(abs(value(modes, start))), start, start
+    rest = abs(sum((mp.re(a) for p0, a in modes if p0 == 0), mp.mpf(0)))  # where it ends
     for _ in range(4000):
         left = np.abs(a) * np.exp(p.real * now)
         if left.sum() <= best:
             break
-        live = left > 1e-5 * best
+        live = (left > 1e-5 * max(best, 1e-9 * left.sum())) & (np.abs(p) > 0)
+        if not live.any():
+            break  # what stands still is left
         step = 0.02 / np.abs(p[live]).max()
         t = now + step * np.arange(1, 513)
         v = size(t)
         if v.max() > best:
-            best, at = float(v.max()), float(t[v.argmax()])
+            best, at, width = float(v.max()), float(t[v.argmax()]), step
         now = float(t[-1])
     else:
         return None
     if at == start:
-        return abs(value(modes, start))
-    low, high = mp.mpf(max(start, at - step * 2)), mp.mpf(at + step * 2)
+        return max(rest, abs(value(modes, start)))
+    low, high = mp.mpf(max(start, at - width * 2)), mp.mpf(at + width * 2)
     for _ in range(120):
         x, y = low + (high - low) * mp.mpf("0.382"), low + (high - low) * mp.mpf("0.618")
         if abs(value(modes, x)) < abs(value(modes, y)):
             low = x
         else:
             high = y
-    return abs(value(modes, low))
+    return max(rest, abs(value(modes, low)))
 
 
 def acquisition(c):
@@ -203,8 +210,80 @@ def steady(c, exact):
     return rows
 
 
+def startup(c):
+    exact = Exact(c)
+    net = exact.net
+    rows = []
+    for drive, dc in steady(c, exact):
+        for i, weight in net.drives()[drive]:
+            rows.append((net.branch["s", i] if net.drive == "voltage" else net.at(f"s{i}"), mp.mpf(weight) * mp.mpf(dc)))
+    if net.drive == "charge":
+        return {}  # a steady charge is no current: nothing stands at the output
+    transient = Transient(exact, rows)
+    # A step instead of an impulse: each factor over its pole.
+    step = lambda node: [(p, a / p) for p, a in transient.modes(lambda p, v: v(node))]
+    end = exact.solve(mp.mpf(0), rows)
+    volts = lambda node: mp.mpf(0) if net.at(node) is None else mp.re(end[net.at(node)])
+    if abs(volts("out")) < 1e-12:
+        return {}
+    own, slew = c["around"]["startup"]
+    high, low = c["around"]["supply"]
+    slewing = mp.mpf(0)
+    for k, (_, _, pin) in enumerate(net.amps):
+        excursion = largest(step(pin) + [(mp.mpf(0), volts(pin) - mp.mpf(high + low) / 2)], 0.0)
+        if excursion is None:
+            return {}
+        if excursion > (high - low) / 2 + abs(volts("out")) / 100:
+            return {"startup_clips": True}
+        source = step(f"e{k}")
+        slope = largest([(p, a * p) for p, a in source], 0.0)
+        if slope is None:
+            return {}
+        if slope > slew:
+            most = largest(source + [(mp.mpf(0), volts(f"e{k}"))], 0.0)
+            slewing = max(slewing, most / slew)
+    last = last_beyond(step("out"), abs(volts("out")) / 100)
+    return {} if last is None else {"startup_time": show(own + slewing + last)}
+
+
+def last_beyond(modes, level):
+    """The last time at which a decaying sum has this magnitude: looked for backwards from where its envelope has fallen there."""
+    p = np.array([complex(p) for p, _ in modes])
+    a = np.array([complex(a) for _, a in modes])
+    level = float(level)
+    size = lambda t: np.abs((a[:, None] * np.exp(p[:, None] * t)).sum(0).real)
+    envelope = lambda t: (np.abs(a) * np.exp(p.real * t)).sum()
+    if envelope(0.0) <= level:
+        return mp.mpf(0)
+    high = 1.0 / np.abs(p).max()
+    while envelope(high) > level:
+        high *= 1.1
+    now = high
+    for _ in range(20000):
+        live = np.abs(a) * np.exp(p.real * now) > 1e-6 * level
+        step = 0.01 / np.abs(p[live]).max() if live.any() else now
+        t = np.maximum(now - step * np.arange(0, 513), 0.0)
+        over = np.flatnonzero(size(t) > level)
+        if len(over):
+            k = over[0]
+            if k == 0:
+                return None
+            inside, outside = mp.mpf(t[k]), mp.mpf(t[k - 1])
+            for _ in range(150):
+                middle = (inside + outside) / 2
+                if abs(value(modes, middle)) > level:
+                    inside = middle
+                else:
+                    outside = middle
+            return outside
+        now = float(t[-1])
+        if now <= 0:
+            return mp.mpf(0)
+    return None
+
+
 def solve(c, poles):
-    return {"ripple_output": show(ripple_output(c)), **converter_figures(c, poles)}
+    return {"ripple_output": show(ripple_output(c)), **converter_figures(c, poles), **startup(c)}
 
 
 # ------------------------------------------------------------------ the table

@@ -43,6 +43,8 @@ pub struct Around {
     ripple: [f64; 2],
     /// Steady value, peak and frequency of the first drive.
     signal: [f64; 3],
+    /// The part's own start-up time, and its slew rate while the stage starts.
+    startup: [f64; 2],
     /// The converter's input range.
     range: [f64; 2],
     converter: Sampling,
@@ -68,6 +70,10 @@ struct Expected {
     acquisition_error: Option<f64>,
     /// By amplifier: the steepest slope and the largest current that the kick asks.
     kick: Option<Vec<[f64; 2]>>,
+    startup_time: Option<f64>,
+    /// Whether an output would leave the rails on its way.
+    #[serde(default)]
+    startup_clips: bool,
     enob: f64,
     full_scale_margin: f64,
 }
@@ -129,17 +135,37 @@ pub fn all(ledger: &mut Ledger) {
         circuit.around.as_ref().expect("something stands around every circuit").stand(&mut stage);
         let nominal = |stage: &Stage, of: Figure| solved(stage, |solution| outcome(solution, Query::of(of)));
         let mut compare = |stage: &Stage, of: Figure, value: f64| {
-            // After hundreds of time constants nothing is left but the rounding of volts.
-            let rounding = if of == Figure::AcquisitionError { 1e-15 } else { 0.0 };
-            let allowed = budget(of).around(value) + PRINTED * value.abs() + rounding;
+            let allowed = budget(of).around(value) + PRINTED * value.abs();
             let wanted = Wanted { id: &circuit.id, name: of.id(), figure: of, value, allowed, source: SOURCE };
             ledger.outcome(&wanted, &nominal(stage, of));
         };
         compare(&stage, Figure::RippleOutput, expected.ripple_output);
         compare(&stage, Figure::Enob, expected.enob);
         compare(&stage, Figure::FullScaleMargin, expected.full_scale_margin);
+        let [own, slew] = circuit.around.as_ref().expect("see above").startup;
+        let mut starting = limited(&stage, |_| [slew, 1e30]);
+        for part in parts(&mut starting) {
+            part.state(PartFigure::Startup, Rating::typical(own));
+        }
+        match expected.startup_time {
+            Some(time) => compare(&starting, Figure::StartupTime, time),
+            None if expected.startup_clips => {
+                let got = nominal(&starting, Figure::StartupTime);
+                ledger.fact(
+                    &circuit.id,
+                    "startup_time",
+                    matches!(got, Outcome::NotLinear(_)),
+                    &format!("it leaves the rails, got {got:?}"),
+                );
+            }
+            None => {}
+        }
         let (Some(error), Some(kick)) = (expected.acquisition_error, &expected.kick) else { continue };
-        compare(&limited(&stage, |_| [1e30, 1e30]), Figure::AcquisitionError, error);
+        // After hundreds of time constants nothing is left but the rounding of volts.
+        let allowed = budget(Figure::AcquisitionError).around(error) + PRINTED * error + 1e-15;
+        let name = Figure::AcquisitionError.id();
+        let wanted = Wanted { id: &circuit.id, name, figure: Figure::AcquisitionError, value: error, allowed, source: SOURCE };
+        ledger.outcome(&wanted, &nominal(&limited(&stage, |_| [1e30, 1e30]), Figure::AcquisitionError));
         // Without a signal, so that the kick alone asks for slope and current; the reference and the supply may not stand either.
         stage.signals.clear();
         stage.reference = None;
@@ -151,9 +177,9 @@ pub fn all(ledger: &mut Ledger) {
                     let limit = |index: usize| core::array::from_fn(|i| if (index, i) == (which, bound) { row[i] * factor } else { 1e30 });
                     nominal(&limited(&stage, limit), Figure::AcquisitionError)
                 };
-                let holds = matches!(at(1.0 + 1e-7), Outcome::Value(_)) && matches!(at(1.0 - 1e-7), Outcome::NotLinear(_));
+                let holds = matches!(at(1.0 + 1e-5), Outcome::Value(_)) && matches!(at(1.0 - 1e-5), Outcome::NotLinear(_));
                 let name = format!("{} of the kick at amplifier {}", ["slope", "current"][bound], which + 1);
-                let otherwise = format!("not {:e}: just above it is {:?}, just below {:?}", row[bound], at(1.0 + 1e-7), at(1.0 - 1e-7));
+                let otherwise = format!("not {:e}: just above it is {:?}, just below {:?}", row[bound], at(1.0 + 1e-5), at(1.0 - 1e-5));
                 ledger.fact(&circuit.id, &name, holds, &otherwise);
             }
         }

@@ -66,6 +66,7 @@ impl Figure {
             Self::SupplyCurrent => ("I = I_q + ⟨I⁺⟩ from the positive rail", MEAN),
             Self::Dissipation => ("P = (V₊ − V₋)·I_q + V₊·⟨I⁺⟩ − V₋·⟨I⁻⟩ − ⟨V·I⟩, worst amplitude", MEAN),
             Self::JunctionTemperature => ("T_j = T_a + θ·P", "JEDEC JESD51-2, the definition of θ, from memory"),
+            Self::StartupTime => ("t = t_part + t_slew + last t at which |v(t) − v(∞)| = |v(∞)|/100, v(t) = v(∞) + Σ a·exp(p·t)", NODAL),
             Self::ResistorDissipation => ("P = (V_rms² + V_dc²)/R, the greatest", "definition"),
         };
         Definition { formula, source }
@@ -92,13 +93,13 @@ pub const NOT_MODELLED: &[Omission] = &[
     Omission { what: "output-stage crossover distortion", moves: &[G::LargeSignal] },
     Omission { what: "boosted slew", moves: &[G::LargeSignal] },
     Omission { what: "capacitor voltage coefficient", moves: &[G::SmallSignal, G::LargeSignal] },
-    Omission { what: "dielectric absorption", moves: &[G::Dc, G::LargeSignal] },
+    Omission { what: "dielectric absorption", moves: &[G::Dc, G::LargeSignal, G::Starting] },
     Omission { what: "crosstalk within a package", moves: &[G::SmallSignal, G::Noise] },
     Omission { what: "nonlinearity and aliasing of a converter", moves: &[G::Noise] },
     Omission { what: "phase reversal (a caution only)", moves: &[G::LargeSignal] },
     Omission { what: "ageing", moves: &[G::SmallSignal, G::Dc] },
     Omission { what: "radiation", moves: &[G::SmallSignal, G::Dc, G::Noise, G::Power] },
-    Omission { what: "latch-up", moves: &[G::LargeSignal, G::Power] },
+    Omission { what: "latch-up", moves: &[G::LargeSignal, G::Power, G::Starting] },
 ];
 
 /// What could move a figure of this group and is not modelled.

@@ -65,6 +65,8 @@ pub enum Group {
     LargeSignal,
     /// Supply current, dissipation, temperature.
     Power,
+    /// What happens after switching on.
+    Starting,
 }
 
 figures! {
@@ -112,6 +114,7 @@ figures! {
     Dissipation "dissipation" Power None Power "Dissipation", "Power turned to heat in the amplifier's package, at the worst amplitude up to the stated signal and within the output current limit; of several packages the hottest.";
     JunctionTemperature "junction_temperature" Temperature None Power "Junction temperature", "Ambient plus heat times the thermal resistance, the heat of bias currents that double with temperature included; of several packages the hottest.";
     ResistorDissipation "resistor_dissipation" Power None Power "Resistor dissipation", "Largest power in any one resistor of the stage.";
+    StartupTime "startup_time" Time None Starting "Start-up time (to 1 %)", "Time from switching on, with empty capacitors, until the output stays within 1 % of its final steady value; the part's own start-up time included.";
 }
 
 impl Figure {
@@ -158,6 +161,7 @@ impl Figure {
             | Self::Enob
             | Self::AcquisitionError
             | Self::FullScaleMargin
+            | Self::StartupTime
             | Self::ResistorDissipation => Scope::Stage,
         }
     }

@@ -266,7 +266,7 @@ const fn part_touches(figure: PartFigure) -> u8 {
         | P::CommonModeCapacitance => touch::ALL,
         P::NoiseVoltage | P::NoiseVoltageCorner | P::NoiseExponent | P::NoiseCurrent | P::NoiseCurrentCorner => touch::NOISE,
         P::Offset | P::OffsetDrift | P::OffsetCurrent | P::PsrrPositive | P::PsrrNegative => touch::DC | touch::SWING,
-        P::RangeFromNegative | P::RangeFromPositive | P::SlewRise | P::SlewFall => touch::SWING,
+        P::Startup | P::RangeFromNegative | P::RangeFromPositive | P::SlewRise | P::SlewFall => touch::SWING,
         P::BiasCurrent | P::BiasDoubling | P::CurrentLimit | P::SupplyCurrent | P::JunctionToAmbient => {
             touch::DC | touch::SWING | touch::POWER
         }

@@ -49,6 +49,7 @@ part_figures! {
     SupplySpanMin "supply.span_min" Voltage High "least supply span";
     SupplySpanMax "supply.span_max" Voltage Low "greatest supply span";
     SupplyCurrent "supply.current" Current High "quiescent supply current per amplifier";
+    Startup "supply.startup" Time High "start-up time after the supplies have come on";
     Offset "input.offset" Voltage High "input offset voltage (magnitude)";
     OffsetDrift "input.offset_drift" VoltageDrift High "input offset drift (magnitude)";
     BiasCurrent "input.bias_current" Current High "input bias current (magnitude)";

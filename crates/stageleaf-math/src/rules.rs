@@ -146,6 +146,17 @@ impl<'s> Facts<'s> {
             | F::GainMargin
             | F::FullScaleMargin
             | F::RippleOutput => None,
+            F::StartupTime => {
+                let (upper, lower, c) = (self.component("Rb1")?, self.component("Rb2")?, self.component("Cb")?);
+                let numbers = vec![("Rb1", upper, D::Resistance), ("Rb2", lower, D::Resistance), ("Cb", c, D::Capacitance)];
+                line(
+                    "t ≈ 4.6·Cb·Rb1·Rb2/(Rb1 + Rb2)",
+                    numbers,
+                    4.6 * c * upper * lower / (upper + lower),
+                    COMMON,
+                    "what the other capacitors take: the rule knows the divider's alone",
+                )
+            }
             F::AcquisitionError => {
                 let c = &self.solution.model.stage.converter;
                 let (range, sample, t) = (c.full_scale?, c.sample_capacitance?.nominal, c.acquisition_time?);

@@ -150,6 +150,7 @@ fn part(part: &crate::part::Part) -> Result<(), Error> {
                 | PartFigure::NoiseCurrentCorner
                 | PartFigure::JunctionToAmbient
                 | PartFigure::OverloadRecovery
+                | PartFigure::Startup
         );
         let signed = matches!(figure, PartFigure::RangeFromNegative | PartFigure::RangeFromPositive);
         for value in [rating.min, rating.typ, rating.max].into_iter().flatten() {

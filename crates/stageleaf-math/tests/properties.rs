@@ -9,7 +9,7 @@ use stageleaf_math::{
     part::{Headroom, Part, PartFigure, Rating},
     report::{Need, Outcome, Report},
     solution::Solution,
-    stage::Signal,
+    stage::{Component, Load, Signal, Stage, Toleranced},
 };
 
 #[path = "samples/mod.rs"]
@@ -180,9 +180,8 @@ fn a_signal_that_stands_still_leaves_only_what_moves_undetermined() {
     }
 }
 
-/// By hand: a follower of an amplifier with an endless gain holds its output at the signal's 2 V, 12 V − 1 V − 2 V from the limit.
-#[test]
-fn a_follower_at_a_steady_voltage_clips_by_hand() {
+/// An ideal follower: endless gain and bandwidth, no errors.
+fn ideal_follower() -> Stage {
     let mut stage = stage(Kind::Follower, 1.0, 1.0);
     stage.part = Part { poles: Some(vec![]), ..Part::default() };
     for (figure, value) in [
@@ -201,10 +200,44 @@ fn a_follower_at_a_steady_voltage_clips_by_hand() {
     ] {
         stage.part.state(figure, Rating::typical(value));
     }
+    stage.sources = vec![];
+    stage.load = Load::default();
+    stage
+}
+
+/// By hand: it holds its output at the signal's 2 V, 12 V − 1 V − 2 V from the limit.
+#[test]
+fn a_follower_at_a_steady_voltage_clips_by_hand() {
+    let mut stage = ideal_follower();
     stage.part.headroom_high = vec![Headroom { current: 1.0, volts: Rating::typical(1.0) }];
     stage.part.headroom_low = stage.part.headroom_high.clone();
     stage.signals = vec![Some(Signal { peak: 0.0, frequency: None, dc: 2.0, crest_factor: std::f64::consts::SQRT_2 })];
     let report = analyse(&stage).unwrap();
     let margin = report.figures.iter().find(|row| row.query.figure == Figure::ClipMargin).unwrap().nominal.value().unwrap();
     assert!((margin - 9.0).abs() < 1e-9, "{margin}");
+}
+
+/// By hand: 10 kΩ and 100 nF in front of an ideal follower take ln(100) time constants of 1 ms to the last hundredth, and the part 20 µs.
+#[test]
+fn a_filter_in_front_of_a_follower_starts_by_hand() {
+    let mut stage = ideal_follower();
+    stage.components =
+        vec![Component { name: "Rser", value: Toleranced::exact(1e4) }, Component { name: "Cshunt", value: Toleranced::exact(1e-7) }];
+    stage.signals = vec![Some(Signal { peak: 0.0, frequency: None, dc: 2.0, crest_factor: std::f64::consts::SQRT_2 })];
+    stage.part.state(PartFigure::SlewRise, Rating::typical(1e12));
+    stage.part.state(PartFigure::SlewFall, Rating::typical(1e12));
+    let figure = |stage: &Stage| {
+        let report = analyse(stage).unwrap();
+        report.figures.iter().find(|row| row.query.figure == Figure::StartupTime).unwrap().nominal.clone()
+    };
+    let lacks = figure(&stage);
+    assert!(matches!(&lacks, Outcome::Undetermined(needs) if needs[..] == [Need::Part(PartFigure::Startup)]), "{lacks:?}");
+    stage.part.state(PartFigure::Startup, Rating::typical(20e-6));
+    let time = figure(&stage).value().unwrap();
+    assert!((time - (1e-3 * libm::log(100.0) + 20e-6)).abs() < 1e-9, "{time}");
+    stage.signals[0].as_mut().unwrap().dc = 0.0;
+    assert!(matches!(figure(&stage), Outcome::DoesNotApply(_)));
+    // 20 V lie beyond the rail at 12 V.
+    stage.signals[0].as_mut().unwrap().dc = 20.0;
+    assert!(matches!(figure(&stage), Outcome::NotLinear(_)));
 }

@@ -171,6 +171,7 @@ const fn floor(figure: PartFigure) -> Floor {
         | PartFigure::CommonModeCapacitance
         | PartFigure::OutputResistance
         | PartFigure::OverloadRecovery
+        | PartFigure::Startup
         | PartFigure::NoiseVoltage
         | PartFigure::NoiseVoltageCorner
         | PartFigure::NoiseCurrent

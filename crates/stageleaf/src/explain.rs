@@ -242,6 +242,7 @@ const fn group_words(group: Group) -> &'static str {
         Group::Noise => "noise",
         Group::LargeSignal => "large signal",
         Group::Power => "power",
+        Group::Starting => "starting",
     }
 }
 

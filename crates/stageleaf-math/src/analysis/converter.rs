@@ -27,9 +27,12 @@ use alloc::vec::Vec;
 
 use num_complex::Complex64;
 
-use super::{dc, modes::Modes, noise, swing};
+use super::{
+    dc,
+    modes::{Modes, at_pin},
+    noise, swing,
+};
 use crate::{
-    network::dense::admittance,
     part::PartFigure,
     report::{Outcome, Parameter},
     solution::{Solution, magnitude},
@@ -55,7 +58,7 @@ pub fn kick<'s>(solution: &'s Solution<'_>) -> &'s Kick {
         let (voltages, closed) = solution.driven(sampling);
         let (ohms, omega) = solution.model.scale;
         let charge = solution.model.parameters.slot(Parameter::SampleCapacitance).map_or(0.0, |slot| solution.values[slot]);
-        let (poles, mut residues) = Modes::of(&voltages.iter().collect::<Vec<_>>(), &closed, omega);
+        let (poles, mut residues) = Modes::of(&voltages.iter().collect::<Vec<_>>(), &closed, closed.roots(None), omega);
         for residue in residues.iter_mut().flatten() {
             *residue *= ohms * charge;
         }
@@ -66,22 +69,8 @@ pub fn kick<'s>(solution: &'s Solution<'_>) -> &'s Kick {
         let amplifiers = amplifiers
             .iter()
             .enumerate()
-            .map(|(index, amplifier)| {
-                let ohms = solution.part_of(index, PartFigure::OutputResistance).unwrap_or(0.0);
-                let (mut behind, mut currents) = (Vec::new(), Vec::new());
-                for (i, &pole) in poles.iter().enumerate() {
-                    let mut current = Complex64::new(0.0, 0.0);
-                    for element in &network.elements {
-                        let other = match (element.a == amplifier.pin, element.b == amplifier.pin) {
-                            (true, false) => element.b,
-                            (false, true) => element.a,
-                            _ => continue,
-                        };
-                        current += (at(amplifier.pin, i) - at(other, i)) * admittance(element.law, &solution.values, pole);
-                    }
-                    behind.push(at(amplifier.pin, i) + current * ohms);
-                    currents.push(current);
-                }
+            .map(|(index, _)| {
+                let (behind, currents) = at_pin(solution, network, index, &poles, at);
                 (sum(&behind).slope().largest_from(0.0), sum(&currents).largest_from(0.0))
             })
             .collect();

@@ -10,6 +10,7 @@ pub mod response;
 pub mod search;
 pub mod second_pole;
 pub mod spread;
+pub mod startup;
 pub mod sweep;
 pub mod swing;
 pub mod thermal;
@@ -62,6 +63,7 @@ pub const fn touched_by(figure: Figure) -> u8 {
         | F::FullPowerBandwidth
         | F::AcquisitionError => touch::SWING,
         F::SupplyCurrent | F::Dissipation | F::JunctionTemperature | F::ResistorDissipation => touch::POWER,
+        F::StartupTime => touch::SWING,
     }
 }
 
@@ -93,7 +95,10 @@ pub fn reaches(model: &Model<'_>, parameter: Parameter, figure: Figure) -> bool 
                 )
             }
             P::RangeFromNegative | P::RangeFromPositive => matches!(figure, F::InputRangeMargin),
-            P::SlewRise | P::SlewFall => matches!(figure, F::SlewMargin | F::FullPowerBandwidth | F::AcquisitionError),
+            P::SlewRise | P::SlewFall => {
+                matches!(figure, F::SlewMargin | F::FullPowerBandwidth | F::AcquisitionError | F::StartupTime)
+            }
+            P::Startup => matches!(figure, F::StartupTime),
             P::CurrentLimit => {
                 matches!(figure, F::CurrentMargin | F::SlewMargin | F::FullPowerBandwidth | F::AcquisitionError) || by_heat(part)
             }
@@ -134,6 +139,7 @@ pub fn reaches(model: &Model<'_>, parameter: Parameter, figure: Figure) -> bool 
                 | F::SlewMargin
                 | F::FullPowerBandwidth
                 | F::AcquisitionError
+                | F::StartupTime
                 | F::SupplyCurrent
                 | F::Dissipation
                 | F::ResistorDissipation
@@ -241,6 +247,13 @@ pub fn lacking(solution: &Solution<'_>, query: Query) -> Option<Outcome> {
             }
         }
         F::ResistorDissipation => missing.signal_level(solution),
+        F::StartupTime => {
+            missing.small_signal(solution);
+            missing.supply(solution);
+            for figure in [PartFigure::SlewRise, PartFigure::SlewFall, PartFigure::Startup] {
+                missing.part(solution, figure);
+            }
+        }
     }
     missing.outcome()
 }
@@ -334,6 +347,7 @@ pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
         F::SupplyCurrent => return thermal::power(solution).supply_current.clone(),
         F::Dissipation => return thermal::hottest(solution, amplifier, |p| &p.dissipation),
         F::JunctionTemperature => return thermal::hottest(solution, amplifier, |p| &p.junction),
+        F::StartupTime => return startup::startup_time(solution),
         F::ResistorDissipation => match thermal::hottest_resistor(solution) {
             Some((_, power)) => power,
             None => return Outcome::DoesNotApply("the stage has no resistor"),
@@ -407,7 +421,8 @@ pub fn at_dc(solution: &Solution<'_>, figure: Figure) -> bool {
         | F::SupplyCurrent
         | F::Dissipation
         | F::JunctionTemperature
-        | F::ResistorDissipation => false,
+        | F::ResistorDissipation
+        | F::StartupTime => false,
     }
 }
 

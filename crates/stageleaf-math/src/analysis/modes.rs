@@ -14,7 +14,12 @@ use alloc::vec::Vec;
 
 use num_complex::Complex64;
 
-use crate::{polynomial::Polynomial, solution::magnitude};
+use crate::{
+    network::{Network, Node, dense::admittance},
+    part::PartFigure,
+    polynomial::Polynomial,
+    solution::{Solution, magnitude},
+};
 
 /// A term's share of a step.
 const STEP: f64 = 0.05;
@@ -28,10 +33,14 @@ const MOST_STEPS: usize = 50_000;
 pub struct Modes(pub Vec<(Complex64, Complex64)>);
 
 impl Modes {
-    /// The terms of `numerators/denominator` by partial fractions, in rad/s where the roots are scaled by `omega`: one sum for each
+    /// The terms of `numerators/denominator`, whose roots are `poles`, by partial fractions, in rad/s where the roots are scaled by `omega`: one sum for each
     /// numerator, all over the same poles.
-    pub fn of(numerators: &[&Polynomial], denominator: &Polynomial, omega: f64) -> (Vec<Complex64>, Vec<Vec<Complex64>>) {
-        let mut poles = denominator.roots(None);
+    pub fn of(
+        numerators: &[&Polynomial],
+        denominator: &Polynomial,
+        mut poles: Vec<Complex64>,
+        omega: f64,
+    ) -> (Vec<Complex64>, Vec<Vec<Complex64>>) {
         for i in 1..poles.len() {
             if poles[..i].iter().any(|p| (p - poles[i]).norm_sqr() <= 0.0) {
                 poles[i] *= 1.0 + 1e-7;
@@ -76,20 +85,25 @@ impl Modes {
     /// The largest magnitude from a time on.
     pub fn largest_from(&self, start: f64) -> f64 {
         let size = |t: f64| self.at(t).abs();
-        let (mut time, mut before, mut best) = (start, (start, size(start)), size(start));
+        let (mut before, mut last) = ((start, size(start)), (start, size(start)));
+        // What stands still is reached at the end.
+        let rest: f64 = self.0.iter().filter(|(pole, _)| pole.norm_sqr() <= 0.0).map(|(_, a)| a.re).sum();
+        let mut best = last.1.max(rest.abs());
         for _ in 0..MOST_STEPS {
-            let step = self.step(time, best);
-            if !step.is_finite() || self.envelope(time) <= best {
+            let envelope = self.envelope(last.0);
+            let step = self.step(last.0, best.max(1e-9 * envelope));
+            if !step.is_finite() {
                 break;
             }
-            let here = (time + step, size(time + step));
-            let last = (time, size(time));
+            let here = (last.0 + step, size(last.0 + step));
             if last.1 >= before.1 && last.1 >= here.1 {
                 best = best.max(peak(before.0, here.0, size));
             }
             best = best.max(here.1);
-            before = last;
-            time = here.0;
+            if envelope <= best {
+                break;
+            }
+            (before, last) = (last, here);
         }
         best
     }
@@ -146,6 +160,31 @@ impl Modes {
         }
         Some(time)
     }
+}
+
+/// What an amplifier's controlled source and the current out of its pin take of each term, from what the nodes take of it.
+pub fn at_pin(
+    solution: &Solution<'_>,
+    network: &Network,
+    amplifier: usize,
+    poles: &[Complex64],
+    at: impl Fn(Node, usize) -> Complex64,
+) -> (Vec<Complex64>, Vec<Complex64>) {
+    let pin = network.amplifiers[amplifier].pin;
+    let ohms = solution.part_of(amplifier, PartFigure::OutputResistance).unwrap_or(0.0);
+    let of_pole = |(i, pole): (usize, &Complex64)| {
+        let mut current = Complex64::new(0.0, 0.0);
+        for element in &network.elements {
+            let other = match (element.a == pin, element.b == pin) {
+                (true, false) => element.b,
+                (false, true) => element.a,
+                _ => continue,
+            };
+            current += (at(pin, i) - at(other, i)) * admittance(element.law, &solution.values, *pole);
+        }
+        (at(pin, i) + current * ohms, current)
+    };
+    poles.iter().enumerate().map(of_pole).unzip()
 }
 
 /// `e^(p·t)`.
@@ -206,7 +245,7 @@ mod tests {
     fn partial_fractions_by_hand() {
         // 1/((s + 1)(s + 2)) = 1/(s + 1) − 1/(s + 2)
         let one = |c: &[f64]| Polynomial(crate::polynomial::Coefficients::from_slice(c));
-        let (poles, residues) = Modes::of(&[&one(&[1.0])], &one(&[2.0, 3.0, 1.0]), 1.0);
+        let (poles, residues) = Modes::of(&[&one(&[1.0])], &one(&[2.0, 3.0, 1.0]), one(&[2.0, 3.0, 1.0]).roots(None), 1.0);
         let sum = Modes(poles.into_iter().zip(residues[0].iter().copied()).collect());
         assert!((sum.at(0.7) - (libm::exp(-0.7) - libm::exp(-1.4))).abs() < 1e-14);
     }

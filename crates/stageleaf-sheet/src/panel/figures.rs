@@ -8,12 +8,13 @@ use super::{limits::basis_cell, needs, scroll, title, value, whose};
 use crate::Sheet;
 
 /// The groups with their headings.
-pub const GROUPS: [(Group, &str); 5] = [
+pub const GROUPS: [(Group, &str); 6] = [
     (Group::SmallSignal, "Small signal"),
     (Group::Dc, "DC"),
     (Group::Noise, "Noise"),
     (Group::LargeSignal, "Large signal"),
     (Group::Power, "Power"),
+    (Group::Starting, "Starting"),
 ];
 
 /// The section.
