@@ -146,9 +146,10 @@ fn stage(values: &BTreeMap<String, f64>) -> Stage {
         load: Load { resistance: exact("RL"), capacitance: exact("CL") },
         converter: Default::default(),
         board: Board { inverting_node: exact("Cn"), ..Board::default() },
-        ambient: Some(Ambient { range: Span::exact(value("T")) }),
+        ambient: Some(Ambient::of(Span::exact(value("T")))),
         band: None,
         limits: Vec::new(),
+        measured: Vec::new(),
     }
 }
 

@@ -8,6 +8,7 @@ mod diff;
 mod formats;
 mod json;
 mod made;
+mod measuring;
 mod outlets;
 mod rewriting;
 mod searching;

@@ -82,7 +82,7 @@ fn drift(rows: &Rows, ledger: &mut Ledger) {
     for figure in [PartFigure::Offset, PartFigure::BiasCurrent, PartFigure::OffsetCurrent] {
         stage.part.state(figure, Rating::typical(0.0));
     }
-    stage.ambient = Some(Ambient { range: Span { low: 298.15, nominal: 298.15, high: 298.15 + rise } });
+    stage.ambient = Some(Ambient::of(Span { low: 298.15, nominal: 298.15, high: 298.15 + rise }));
     let slope = figure(&stage, Figure::OffsetDrift);
     row.check(ledger, "rti", Figure::OffsetDrift, &map(slope.clone(), |s| s * rise / gain));
     row.check(ledger, "rto", Figure::OffsetDrift, &map(slope, |s| s * rise));

@@ -109,6 +109,7 @@ pub fn stage(kind: Kind, part: Part) -> Stage {
         ambient: None,
         band: None,
         limits: Vec::new(),
+        measured: Vec::new(),
     }
 }
 
@@ -149,7 +150,7 @@ impl Complete for Stage {
     }
 
     fn at(mut self, kelvin: f64) -> Self {
-        self.ambient = Some(Ambient { range: Span::exact(kelvin) });
+        self.ambient = Some(Ambient::of(Span::exact(kelvin)));
         self
     }
 

@@ -13,6 +13,7 @@ use crate::{
     figure::{Argument, Figure, Query, Scope},
     kind::{Drives, Feed},
     limit::{Bound, Limit, Thin, Verdict},
+    measured,
     model::{Model, Plans},
     report::{DcLine, FigureRow, LimitRow, Outcome, Report},
     rules,
@@ -46,7 +47,7 @@ const ENVELOPE_POINTS: usize = 41;
 ///     part,
 ///     isolation: Isolation::OutsideLoop,
 ///     supply: None, sources: vec![], signals: vec![], common_mode: None, reference: None, parts: vec![], load: Load::default(), converter: Converter::default(), board: Board::default(),
-///     ambient: None, band: None, limits: vec![],
+///     ambient: None, band: None, limits: vec![], measured: vec![],
 /// };
 /// let report = analyse(&stage)?;
 /// let gain = report.figures.iter().find(|f| f.query.figure == Figure::Gain).unwrap();
@@ -113,6 +114,7 @@ pub fn analyse_with(stage: &Stage, detail: Detail, plans: &Plans) -> Result<Repo
         name: stage.name.clone(),
         figures,
         limits,
+        measured: if detail > Detail::Limits { measured::compared(stage, plans)? } else { Vec::new() },
         response: Vec::new(),
         loop_gain: Vec::new(),
         density: Vec::new(),

@@ -29,6 +29,7 @@ pub mod handbook;
 mod kept;
 pub mod kind;
 pub mod limit;
+pub mod measured;
 pub mod model;
 pub mod network;
 pub mod parameters;

@@ -75,7 +75,7 @@ impl Parameters {
     #[must_use]
     pub fn of(stage: &Stage) -> Self {
         let mut entries = Vec::new();
-        let away = stage.ambient.map_or(0.0, |a| f64::max(a.range.high - a.range.nominal, a.range.nominal - a.range.low));
+        let away = stage.ambient.map_or(0.0, |a| a.away());
         let mut passive = |parameter: Parameter, value: &Toleranced| {
             let drift = value.drift * away;
             entries.push(Entry {

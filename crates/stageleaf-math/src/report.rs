@@ -6,6 +6,7 @@ use crate::{
     dimension::Dimension,
     figure::Query,
     limit::{Basis, Limit, Verdict},
+    measured::MeasuredRow,
     part::PartFigure,
 };
 
@@ -433,6 +434,8 @@ pub struct Report {
     pub figures: Vec<FigureRow>,
     /// Limits, in the note's order.
     pub limits: Vec<LimitRow>,
+    /// Measurements beside their predictions, in the note's order.
+    pub measured: Vec<MeasuredRow>,
     /// Transfer from source to load.
     pub response: Vec<ResponsePoint>,
     /// Return ratio.

@@ -2,7 +2,7 @@
 
 use alloc::{string::String, vec::Vec};
 
-use crate::{kind::Kind, limit::Limit, part::Part};
+use crate::{kind::Kind, limit::Limit, measured::Measurement, part::Part};
 
 /// A value with its tolerance and temperature coefficient.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -166,8 +166,25 @@ pub struct Board {
 /// Ambient temperature in K.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Ambient {
-    /// Its range; component values hold at its nominal.
+    /// Its range.
     pub range: Span,
+    /// Temperature at which component values hold; without one, the range's nominal.
+    pub values_at: Option<f64>,
+}
+
+impl Ambient {
+    /// A range at whose nominal component values hold.
+    #[must_use]
+    pub const fn of(range: Span) -> Self {
+        Self { range, values_at: None }
+    }
+
+    /// How far the range reaches from where component values hold, K.
+    #[must_use]
+    pub fn away(&self) -> f64 {
+        let reference = self.values_at.unwrap_or(self.range.nominal);
+        f64::max((self.range.high - reference).abs(), (reference - self.range.low).abs())
+    }
 }
 
 /// A band for integrated noise, in Hz.
@@ -226,6 +243,8 @@ pub struct Stage {
     pub band: Option<Band>,
     /// Limits, in the note's order.
     pub limits: Vec<Limit>,
+    /// What was measured at the bench, in the note's order.
+    pub measured: Vec<Measurement>,
 }
 
 impl Stage {

@@ -100,6 +100,9 @@ pub fn check(stage: &Stage) -> Result<(), Error> {
     if let Some(ambient) = stage.ambient {
         span("ambient.range", ambient.range.low, ambient.range.high)?;
         positive("ambient.range", ambient.range.low)?;
+        if let Some(kelvin) = ambient.values_at {
+            positive("ambient.values_at", kelvin)?;
+        }
     }
     if let Some(band) = stage.band {
         positive("band.from", band.from)?;

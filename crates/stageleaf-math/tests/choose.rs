@@ -42,6 +42,7 @@ fn stage(kind: Kind, components: &[(&'static str, f64)]) -> Stage {
         ambient: None,
         band: None,
         limits: vec![],
+        measured: vec![],
     }
 }
 

@@ -98,6 +98,7 @@ fn random_stage(draw: &mut Draw, kind: Kind, ohms: (f64, f64), farads: (f64, f64
         ambient: None,
         band: None,
         limits: vec![],
+        measured: vec![],
     }
 }
 

@@ -54,9 +54,10 @@ fn stage(limits: Vec<Limit>) -> Stage {
         load: Load::default(),
         converter: Default::default(),
         board: Board::default(),
-        ambient: Some(Ambient { range: Span::exact(298.15) }),
+        ambient: Some(Ambient::of(Span::exact(298.15))),
         band: None,
         limits,
+        measured: vec![],
     }
 }
 

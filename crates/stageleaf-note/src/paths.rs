@@ -21,6 +21,7 @@
 //! | `converter.full_scale`, `converter.bits`, `converter.acquisition_time`, `converter.noise` | every kind | a range in V, a whole number, a time, V rms |
 //! | `board.inverting_node`, `board.non_inverting_node`, `board.across_feedback` | every kind | capacitance, toleranced |
 //! | `ambient.range` or `ambient.temperature` | every kind | temperature, a span |
+//! | `ambient.values_at` | every kind | temperature at which component values hold |
 //! | `band.from`, `band.to` | every kind | frequency |
 //! | `limits.bandwidth`, `limits.gain_at 2 MHz` | every kind | a limit |
 //! | `measured.gain.value` | every kind | what was measured |
@@ -71,7 +72,7 @@ pub fn dimension(path: &str, kind: Kind) -> Option<Dimension> {
         ("converter", "bits") => Some(Dimension::Number),
         ("converter", "acquisition_time") => Some(Dimension::Time),
         ("load", "capacitance") | ("board", "inverting_node" | "non_inverting_node" | "across_feedback") => Some(Dimension::Capacitance),
-        ("ambient", "range" | "temperature") => Some(Dimension::Temperature),
+        ("ambient", "range" | "temperature" | "values_at") => Some(Dimension::Temperature),
         ("band", "from" | "to") => Some(Dimension::Frequency),
         _ => None,
     }
@@ -119,6 +120,7 @@ fn all_inputs(kind: Kind) -> &'static [InputSpec] {
         ambient: None,
         band: None,
         limits: Vec::new(),
+        measured: Vec::new(),
     };
     (kind.spec().inputs)(&whole)
 }

@@ -12,6 +12,7 @@ use stageleaf_math::{
     figure::Scope,
     kind::{Drives, Kind},
     limit::Limit,
+    measured::Measurement,
     part::Part,
     stage::{Component, Isolation, Stage},
 };
@@ -107,6 +108,7 @@ pub(crate) fn read_named(text: &str, place: &Place, shelf: &Shelf, settings: &Se
         ambient: around.ambient,
         band: around.band,
         limits,
+        measured: measured.iter().map(|m| Measurement { query: m.query, value: m.value, temperature: m.temperature }).collect(),
     };
     if let Err(error) = stageleaf_math::check(&stage) {
         let range = place_of(&reader, &error).unwrap_or(start);

@@ -58,7 +58,7 @@ pub fn read<'a>(reader: &mut Reader<'a>, find: &dyn Fn(&str) -> Option<Entry<'a>
 
 /// `[ambient]`, in blocks and in the settings.
 pub fn ambient<'a>(reader: &mut Reader<'a>, entry: &Entry<'a>) -> Option<Ambient> {
-    let table = Table::of(reader, entry, &["range", "temperature"]);
+    let table = Table::of(reader, entry, &["range", "temperature", "values_at"]);
     if let (Some(_), Some(second)) = (table.find("range"), table.find("temperature")) {
         reader.problem(second.key_range(), "`range` and `temperature` state the same thing", "one of `range`, `temperature`", None);
         return None;
@@ -68,7 +68,9 @@ pub fn ambient<'a>(reader: &mut Reader<'a>, entry: &Entry<'a>) -> Option<Ambient
         return None;
     }
     let key = if table.find("range").is_some() { "range" } else { "temperature" };
-    table.read(reader, key, takes(Dimension::Temperature), |t| parse_span(t, Dimension::Temperature)).map(|range| Ambient { range })
+    let range = table.read(reader, key, takes(Dimension::Temperature), |t| parse_span(t, Dimension::Temperature));
+    let values_at = table.read(reader, "values_at", takes(Dimension::Temperature), |t| parse(t, Dimension::Temperature));
+    range.map(|range| Ambient { range, values_at })
 }
 
 #[derive(Clone, Copy, PartialEq, Eq)]

@@ -55,6 +55,7 @@ const PARTS: &[Part] = &[
     ("dc", Frame::Panel, panel::dc),
     ("envelope", Frame::Panel, panel::envelope),
     ("poles", Frame::Panel, panel::poles),
+    ("measured", Frame::Panel, panel::measured),
     ("figures", Frame::Panel, panel::figures),
     ("working", Frame::Panel, panel::working),
     ("model", Frame::Panel, panel::model),

@@ -245,6 +245,7 @@ fn an_empty_report_renders() {
             name: String::new(),
             figures: vec![],
             limits: vec![],
+            measured: vec![],
             response: vec![],
             loop_gain: vec![],
             density: vec![],

@@ -74,9 +74,10 @@ pub fn stage(kind: Kind, impedance: f64, time: f64) -> Stage {
         },
         converter: Converter::default(),
         board: Board::default(),
-        ambient: Some(Ambient { range: Span { low: 263.0, nominal: 293.0, high: 323.0 } }),
+        ambient: Some(Ambient::of(Span { low: 263.0, nominal: 293.0, high: 323.0 })),
         band: Some(Band { from: 10.0, to: 1e5 }),
         limits: vec![],
+        measured: vec![],
     }
 }
 
@@ -102,5 +103,6 @@ fn bare(kind: Kind) -> Stage {
         ambient: None,
         band: None,
         limits: vec![],
+        measured: vec![],
     }
 }

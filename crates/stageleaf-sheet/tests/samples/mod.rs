@@ -67,9 +67,10 @@ pub fn block(kind: Kind, components: &[&str], isolation: Isolation, load: (bool,
         load: Load { resistance: load.0.then(|| value(2e3)), capacitance: load.1.then(|| value(1e-9)) },
         converter: Default::default(),
         board: Board::default(),
-        ambient: Some(Ambient { range: Span { low: 253.15, nominal: 298.15, high: 323.15 } }),
+        ambient: Some(Ambient::of(Span { low: 253.15, nominal: 298.15, high: 323.15 })),
         band: Some(Band { from: 10.0, to: 20e3 }),
         limits: Vec::new(),
+        measured: Vec::new(),
     };
     let mut fields: Vec<Field> = components.iter().map(|c| field(&format!("components.{}", c.0), c.1)).collect();
     for (path, text) in [
@@ -254,6 +255,7 @@ pub fn report(kind: Kind) -> Report {
         name: "Hydrophone line amplifier".into(),
         figures,
         limits,
+        measured: Vec::new(),
         response,
         loop_gain,
         density,

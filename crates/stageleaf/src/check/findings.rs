@@ -2,6 +2,7 @@
 
 use stageleaf_math::{
     limit::Verdict,
+    measured::Agreement,
     report::{LimitRow, Outcome},
     search::alternates::forbids,
 };
@@ -9,7 +10,7 @@ use stageleaf_note::{query_text, words};
 
 use super::{
     examine::{Current, Examined, ExaminedStage},
-    text::{margin_text, outcome_words},
+    text::{margin_text, measured_words, outcome_words},
 };
 use crate::{fault::Fault, terminal::plain};
 
@@ -126,7 +127,23 @@ fn of_stage<'a>(file: &'a str, stage: &'a ExaminedStage) -> impl Iterator<Item =
             message: sentence(row, limit, stage),
         })
     });
-    cautions.chain(limits)
+    let contradicting =
+        stage.report.measured.iter().enumerate().filter(|(_, row)| row.agreement == Agreement::Contradicts).map(move |(i, row)| Finding {
+            weight: Weight::Error,
+            rank: (4, 0.0),
+            file: file.to_owned(),
+            place: Some(measured_place(stage, &query_text(row.measurement.query))),
+            title: format!("{}: measured {}", plain(&stage.block.stage.name), query_text(row.measurement.query)),
+            message: plain(&measured_words(row, i, stage)),
+        });
+    cautions.chain(limits).chain(contradicting)
+}
+
+/// Where the note states a measurement.
+fn measured_place(stage: &ExaminedStage, id: &str) -> (usize, usize) {
+    let path = format!("measured.{id}");
+    let at = stage.block.fields.iter().find(|f| f.path == path || f.path.strip_prefix(&path).is_some_and(|rest| rest.starts_with('.')));
+    at.map_or((stage.block.line, 1), |f| (f.line, f.column))
 }
 
 /// Where the note states a limit.

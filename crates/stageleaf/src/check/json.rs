@@ -1,6 +1,6 @@
 //! `check --format json`, version 1.
 //!
-//! `{"version":1,"stages":[{"file","line","name","kind","figures":{id:…},"limits":[…],"cautions":[…]}],"errors":[{"file","line","column","message"}]}`.
+//! `{"version":1,"stages":[{"file","line","name","kind","figures":{id:…},"limits":[…],"measured":[…],"cautions":[…]}],"errors":[{"file","line","column","message"}]}`.
 //! SI units and full precision: a number read back has the same bits. JSON has no infinity: there a number is `null` with
 //! `"unlimited": true` beside it. A figure that is not a number is `{"undetermined": "why"}`, `{"does_not_apply": "why"}`,
 //! `{"oscillates": true}` or `{"no_dc_path": true}`.
@@ -10,6 +10,7 @@
 use serde::{Serialize, Serializer, ser::SerializeMap};
 use stageleaf_math::{
     dimension::Dimension,
+    measured::MeasuredRow,
     report::{Caution, FigureRow, LimitRow, Outcome},
 };
 use stageleaf_note::{query_text, words};
@@ -64,6 +65,8 @@ struct Stage {
     kind: &'static str,
     figures: Figures,
     limits: Vec<Judged>,
+    #[serde(skip_serializing_if = "Vec::is_empty")]
+    measured: Vec<Measured>,
     cautions: Vec<Warned>,
 }
 
@@ -77,7 +80,42 @@ impl Stage {
             kind: stage.block.stage.kind.id(),
             figures: Figures(stage.figures().iter().map(|row| (query_text(row.query), Figure::of(row, part))).collect()),
             limits: stage.limits_in_words().map(|(row, words)| Judged::of(row, words, stage, part)).collect(),
+            measured: stage.report.measured.iter().enumerate().map(|(i, row)| Measured::of(row, i, stage)).collect(),
             cautions: stage.report.cautions.iter().map(Warned::of).collect(),
+        }
+    }
+}
+
+/// A measurement beside its prediction.
+#[derive(Debug, Serialize)]
+struct Measured {
+    figure: String,
+    value: f64,
+    low: f64,
+    high: f64,
+    unit: &'static str,
+    sample: Option<String>,
+    temperature: Option<f64>,
+    predicted: Figure,
+    agreement: &'static str,
+}
+
+impl Measured {
+    fn of(row: &MeasuredRow, index: usize, stage: &ExaminedStage) -> Self {
+        let measurement = row.measurement;
+        let dimension = measurement.query.figure.dimension_in(stage.block.stage.kind);
+        let predicted =
+            FigureRow { query: measurement.query, dimension, amplifier: None, nominal: row.nominal.clone(), range: row.range, basis: None };
+        Self {
+            figure: query_text(measurement.query),
+            value: measurement.value.nominal,
+            low: measurement.value.low,
+            high: measurement.value.high,
+            unit: dimension.si_unit(),
+            sample: stage.block.measured.get(index).and_then(|m| m.unit.clone()),
+            temperature: measurement.temperature,
+            predicted: Figure::of(&predicted, &stage.part_file),
+            agreement: row.agreement.word(),
         }
     }
 }

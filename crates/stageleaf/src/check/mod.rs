@@ -21,7 +21,10 @@ use crate::{
     terminal::Terminal,
     walk::{self, show, unreadable},
 };
-use stageleaf_math::limit::Verdict;
+use stageleaf_math::{
+    limit::Verdict,
+    measured::{Agreement, MeasuredRow},
+};
 
 /// How results are written.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq, ValueEnum)]
@@ -61,7 +64,8 @@ pub struct Options {
 pub enum Ending {
     /// Every limit holds (or is thin) and every quote agrees.
     Good = 0,
-    /// A limit breaks or is undetermined, a stage cannot work as stated, or the prose quotes a stale number.
+    /// A limit breaks or is undetermined, a stage cannot work as stated, the prose quotes a stale number, or a measurement
+    /// contradicts its prediction.
     Broken = 1,
     /// Something could not be read.
     BadInput = 2,
@@ -86,6 +90,8 @@ pub struct Counts {
     pub undetermined: usize,
     /// Figures shown without a limit.
     pub reported: usize,
+    /// Measurements that lie outside their prediction.
+    pub contradicted: usize,
     /// Quotes in the prose.
     pub quotes: usize,
     /// Quotes that do not agree with their figure.
@@ -112,6 +118,8 @@ impl Counts {
                 Verdict::Reported => &mut self.reported,
             } += 1;
         }
+        let contradicts = |row: &&MeasuredRow| row.agreement == Agreement::Contradicts;
+        self.contradicted += note.stages.iter().flat_map(|stage| &stage.report.measured).filter(contradicts).count();
         self.quotes += note.quotes.len();
         self.stale += note.stale().count();
         self.faults += note.faults.len();
@@ -122,7 +130,7 @@ impl Counts {
     pub const fn ending(&self) -> Ending {
         if self.faults > 0 {
             Ending::BadInput
-        } else if self.breaks + self.undetermined + self.stale + self.unworkable > 0 {
+        } else if self.breaks + self.undetermined + self.stale + self.unworkable + self.contradicted > 0 {
             Ending::Broken
         } else {
             Ending::Good

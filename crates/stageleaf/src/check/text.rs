@@ -6,6 +6,7 @@ use stageleaf_math::{
     dimension::Dimension,
     figure::Query,
     limit::{Bound, Verdict},
+    measured::{Agreement, MeasuredRow},
     report::{Coordinate, LimitRow, Outcome, Parameter},
 };
 use stageleaf_note::{format as quantity_text, query_text, words};
@@ -60,9 +61,37 @@ fn stage(file: &str, stage: &ExaminedStage, colour: bool) -> String {
             writeln!(text, "  {}  {}", " ".repeat(widths[0]), paint(more, Ink::Quiet, colour)).expect("a string takes all");
         }
     }
+    for (index, row) in stage.report.measured.iter().enumerate() {
+        let ink = if row.agreement == Agreement::Contradicts { Ink::Bad } else { Ink::Quiet };
+        writeln!(text, "  {} {}", paint("measured:", ink, colour), plain(&measured_words(row, index, stage))).expect("a string takes all");
+    }
     for caution in &stage.report.cautions {
         writeln!(text, "  {} {}", paint("caution:", Ink::Watch, colour), plain(&words::caution_text(caution))).expect("a string takes all");
     }
+    text
+}
+
+/// "gain 20.31 (20.29 to 20.33), unit 3, at 23 °C; predicted 19.90 to 20.83: agrees".
+#[must_use]
+pub fn measured_words(row: &MeasuredRow, index: usize, stage: &ExaminedStage) -> String {
+    let query = row.measurement.query;
+    let d = query.figure.dimension_in(stage.block.stage.kind);
+    let of = |value: f64| quantity_text(value, d, DIGITS);
+    let mut text = format!("{} {}", query_text(query), of(row.measurement.value.nominal));
+    if row.measurement.value.low < row.measurement.value.high {
+        write!(text, " ({} to {})", of(row.measurement.value.low), of(row.measurement.value.high)).expect("a string takes all");
+    }
+    if let Some(unit) = stage.block.measured.get(index).and_then(|m| m.unit.as_deref()) {
+        write!(text, ", {unit}").expect("a string takes all");
+    }
+    if let Some(kelvin) = row.measurement.temperature {
+        write!(text, ", at {}", without_idle_zeros(&quantity_text(kelvin, Dimension::Temperature, DIGITS))).expect("a string takes all");
+    }
+    let predicted = match row.range {
+        Some((low, high)) => format!("{} to {}", of(low), of(high)),
+        None => outcome_words(&row.nominal, d, &stage.part_file),
+    };
+    write!(text, "; predicted {predicted}: {}", row.agreement.word()).expect("a string takes all");
     text
 }
 
@@ -237,6 +266,14 @@ pub fn closing(counts: &Counts, colour: bool) -> String {
     }
     if counts.unworkable > 0 {
         let words = format!("{} cannot work as stated", many(counts.unworkable, "stage"));
+        write!(text, "; {}", paint(&words, Ink::Bad, colour)).expect("a string takes all");
+    }
+    if counts.contradicted > 0 {
+        let words = format!(
+            "{} outside {} prediction",
+            many(counts.contradicted, "measurement"),
+            if counts.contradicted == 1 { "its" } else { "their" }
+        );
         write!(text, "; {}", paint(&words, Ink::Bad, colour)).expect("a string takes all");
     }
     if counts.quotes > 0 {
