@@ -5,9 +5,10 @@ use alloc::vec::Vec;
 use crate::{
     Error,
     analyse::{Detail, analyse_with},
-    figure::Query,
+    figure::{Figure, Query},
     limit::{Bound, Limit, Thin},
     model::Plans,
+    part::Part,
     report::Outcome,
     stage::{Ambient, Span, Stage},
 };
@@ -53,7 +54,8 @@ pub struct MeasuredRow {
     pub measurement: Measurement,
     /// The prediction at nominal values.
     pub nominal: Outcome,
-    /// The range of builds at those conditions: tolerances, supplies, part figures between typical and guaranteed.
+    /// The range of built circuits at those conditions: tolerances, supplies, part figures from guaranteed to as far on the better
+    /// side of typical.
     pub range: Option<(f64, f64)>,
     /// Whether they fit.
     pub agreement: Agreement,
@@ -80,21 +82,50 @@ pub(crate) fn compared(stage: &Stage, plans: &Plans) -> Result<Vec<MeasuredRow>,
         }
         let here = |m: &&Measurement| same(m.temperature, temperature);
         let asked = |m: &Measurement| Limit { query: m.query, bound: Bound::Report, thin: Thin::Fraction(0.0) };
+        both_ways(&mut variant.part);
+        variant.parts.iter_mut().for_each(|(_, part)| both_ways(part));
         variant.measured = Vec::new();
         variant.limits = stage.measured.iter().filter(here).map(asked).collect();
         let report = analyse_with(&variant, Detail::Limits, plans)?;
         for (measurement, predicted) in stage.measured.iter().filter(here).zip(&report.limits) {
+            let range = predicted.range.map(|range| one_built(measurement.query.figure, range));
             rows.push(MeasuredRow {
                 measurement: *measurement,
                 nominal: predicted.nominal.clone(),
-                range: predicted.range,
-                agreement: agreement(measurement, &predicted.nominal, predicted.range),
+                range,
+                agreement: agreement(measurement, &predicted.nominal, range),
             });
         }
     }
     // In the note's order.
     rows.sort_by_key(|row| stage.measured.iter().position(|m| *m == row.measurement));
     Ok(rows)
+}
+
+/// A part is as often better than typical as it is worse: where a data sheet bounds the worse side alone, the better side is taken
+/// as far away, as a ratio.
+fn both_ways(part: &mut Part) {
+    for rating in &mut part.ratings {
+        match (rating.min, rating.typ, rating.max) {
+            (None, Some(typ), Some(max)) if max > 0.0 && typ > 0.0 => rating.min = Some(typ * typ / max),
+            (Some(min), Some(typ), None) if min > 0.0 && typ > 0.0 => rating.max = Some(typ * typ / min),
+            _ => {}
+        }
+    }
+}
+
+/// The range of one built circuit: errors that are summed by magnitude have either sign in it, and may cancel; a rejection is then
+/// without bound.
+fn one_built(figure: Figure, (low, high): (f64, f64)) -> (f64, f64) {
+    match figure {
+        Figure::OutputOffset | Figure::InputOffset | Figure::OffsetDrift | Figure::GainDrift => {
+            let bound = low.abs().max(high.abs());
+            (-bound, bound)
+        }
+        Figure::RippleOutput => (0.0, high),
+        Figure::StageCmrr | Figure::StageCmrrAt | Figure::StagePsrr | Figure::StagePsrrAt => (low, f64::INFINITY),
+        _ => (low, high),
+    }
 }
 
 fn same(a: Option<f64>, b: Option<f64>) -> bool {

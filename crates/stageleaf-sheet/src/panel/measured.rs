@@ -21,7 +21,7 @@ pub fn measured(sheet: &Sheet) -> Markup {
                 } }
                 tbody { @for (i, row) in rows.iter().enumerate() { (line(sheet, i, row)) } }
             } }))
-            p class="aside" { "The range is that of all builds at the stated temperature: tolerances, supplies, part figures between typical and guaranteed." }
+            p class="aside" { "The range is that of all built circuits at the stated temperature: tolerances, supplies, part figures from guaranteed to as far on the better side of typical, errors of either sign." }
         }
     }
 }
