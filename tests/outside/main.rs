@@ -18,6 +18,7 @@ mod oracle_around;
 mod oracle_kinds;
 mod places;
 mod rejection;
+mod second_pole;
 mod setup;
 mod swing;
 mod table;

@@ -271,7 +271,9 @@ class Network:
         list = [(name, self.at(a), self.at(b), None, lambda f, y=kt4 / ohms: y + 0 * f) for name, a, b, ohms in self.r if name]
         diode = (c["sources"] + [None])[0]
         if diode and "dark_current" in diode:
-            shot = 2 * CHARGE * (diode["dark_current"] + abs(c["signal_dc"]))
+            # At the most light: the steady part and the peak of what stands on it.
+            light = abs(c["signal_dc"]) + c.get("around", {}).get("signal", [0.0, 0.0])[1]
+            shot = 2 * CHARGE * (diode["dark_current"] + light)
             list.append(("shot_0", self.at("t0"), None, None, lambda f: shot + 0 * f))
         for k, (p, n, _) in enumerate(self.amps):
             amp = c["amplifiers"][min(k, len(c["amplifiers"]) - 1)]

@@ -30,15 +30,19 @@ pub(crate) fn cautions(spread: &mut Spread<'_>) -> Vec<Caution> {
     {
         list.push(Caution::TakenAsIdeal(figure));
     }
-    if let (Some(needed), None) = (solution.part(PartFigure::StableGainMin), analysis::missing_small_signal(solution))
-        && let Some(crossover) = margins::margins(solution).crossover
-    {
-        let (above, below) = solution.amplifier(margins::margins(solution).amplifier);
-        let omega = solution.scaled(crossover);
-        // At crossover |A·β| = 1, so the noise gain there is |A|.
-        let noise_gain = crate::solution::magnitude(above.at(omega) / below.at(omega));
-        if noise_gain < needed {
-            list.push(Caution::BelowStableGain { noise_gain, needed });
+    let judged = if analysis::missing_small_signal(solution).is_none() { solution.amplifiers() } else { 0 };
+    for amplifier in 0..judged {
+        if let Some(needed) = solution.part_of(amplifier, PartFigure::StableGainMin)
+            && let Some(crossover) = margins::of(solution, amplifier).last
+        {
+            let (above, below) = solution.amplifier(amplifier);
+            let omega = solution.scaled(crossover);
+            // Where the loop's gain ends |A·β| = 1, so the noise gain there is |A|.
+            let noise_gain = crate::solution::magnitude(above.at(omega) / below.at(omega));
+            if noise_gain < needed {
+                list.push(Caution::BelowStableGain { noise_gain, needed });
+                break;
+            }
         }
     }
     if stage.part.phase_reversal == Some(true) {

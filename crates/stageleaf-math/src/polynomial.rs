@@ -339,6 +339,9 @@ fn pair_up(roots: &mut [Complex64]) {
             let (re, im) = ((roots[i].re + roots[j].re) / 2.0, (roots[i].im - roots[j].im).abs() / 2.0);
             roots[i] = Complex64::new(re, -im);
             roots[j] = Complex64::new(re, im);
+        } else {
+            // The odd one of a cluster that rounding has spread: it is real.
+            roots[i].im = 0.0;
         }
     }
 }

@@ -24,7 +24,9 @@ pub struct Margins {
     pub amplifier: usize,
     /// Hz, of the crossing with the least phase margin.
     pub crossover: Option<f64>,
-    /// rad, at that crossing.
+    /// Hz, of the highest crossing: where the loop's gain ends.
+    pub last: Option<f64>,
+    /// rad, at the crossing with the least phase margin.
     pub phase: Option<f64>,
     /// Factor; infinite without a −180° crossing.
     pub gain: f64,
@@ -108,6 +110,7 @@ pub fn of(solution: &Solution<'_>, amplifier: usize) -> Margins {
             crossings.extend([search::root(w[0], between, size), search::root(between, w[2], size)]);
         }
     }
+    let last = crossings.iter().copied().reduce(f64::max);
     for at in crossings {
         let ratio = solution.return_ratio(amplifier, at);
         let margin = rank(libm::atan2(-ratio.im, -ratio.re));
@@ -120,7 +123,8 @@ pub fn of(solution: &Solution<'_>, amplifier: usize) -> Margins {
     let sensitivity_peak = libm::sqrt(search::highest(grid, &sensitivities, sensitivity).max(ends));
     // A −180° crossing with |T| > 1 says how far a conditionally stable loop may fall, or how far an oscillating one is off.
     let gain = if below > 0.0 && (!stable || above.is_infinite()) { below } else { above };
-    Margins { amplifier, crossover: worst.map(|(w, _)| solution.hertz(w)), phase: worst.map(|(_, m)| m), gain, sensitivity_peak }
+    let last = last.map(|w| solution.hertz(w));
+    Margins { amplifier, last, crossover: worst.map(|(w, _)| solution.hertz(w)), phase: worst.map(|(_, m)| m), gain, sensitivity_peak }
 }
 
 /// `|1/(1+T)|²` at infinite frequency.

@@ -136,14 +136,14 @@ pub(super) fn generators(solution: &Solution<'_>) -> Vec<Generator> {
     list
 }
 
-/// Shot noise `2qI` of photodiodes: dark current and the signal's DC part.
+/// Shot noise `2qI` of photodiodes, at the most light that the signal brings: dark current, the signal's steady part and its peak.
 fn shot(solution: &Solution<'_>, list: &mut Vec<Generator>) {
     let model = solution.model;
     let scale = model.scale.0;
     for (input, source) in (0u8..).zip(&model.stage.sources) {
         let Some(Source::Photodiode { .. }) = source else { continue };
         let dark = model.parameters.slot(Parameter::DarkCurrent(input)).map_or(0.0, |slot| solution.values[slot]);
-        let light = model.stage.signal_of(usize::from(input)).map_or(0.0, |s| s.dc.abs());
+        let light = model.stage.signal_of(usize::from(input)).map_or(0.0, |s| s.dc.abs() + s.peak);
         let node = model.network.input_node(usize::from(input));
         list.push(Generator {
             origin: NoiseOrigin::SourceShot(input),

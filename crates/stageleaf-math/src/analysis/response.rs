@@ -148,11 +148,9 @@ pub fn own_pair(solution: &Solution<'_>) -> Option<(f64, f64)> {
 
 /// Natural frequency in Hz and Q of the least damped complex pair of closed-loop poles.
 pub fn least_damped(solution: &Solution<'_>) -> Option<(f64, f64)> {
-    let pair = solution
-        .poles()
-        .iter()
-        .filter(|p| p.im > 0.0)
-        .max_by(|a, b| (a.im / magnitude(**a) - b.im / magnitude(**b)).total_cmp(&0.0).then((-a.re).total_cmp(&-b.re).reverse()))?;
+    // Not by the imaginary part, which of a pair of high Q is the magnitude to the last digit.
+    let damping = |p: &Complex64| -p.re / magnitude(*p);
+    let pair = solution.poles().iter().filter(|p| p.im > 0.0).min_by(|a, b| damping(a).total_cmp(&damping(b)))?;
     let size = magnitude(*pair);
     Some((solution.hertz(size), size / (2.0 * pair.re.abs())))
 }
