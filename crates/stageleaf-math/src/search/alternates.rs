@@ -97,9 +97,9 @@ pub fn alternate(judge: &mut Judge, stage: &Stage, part: &Part, replaced: Option
     })
 }
 
-/// Ranks: survivors first, then by how many limits are lost, then by the least margin; of equals, by name.
+/// Ranks: survivors first, those last with which the stage cannot work at all; then by how many limits are lost, then by the least margin; of equals, by name.
 pub fn rank(list: &mut [Alternate]) {
-    let lost = |a: &Alternate| (!a.survives(), a.cautions.len() + a.breaks.len(), a.undetermined.len());
+    let lost = |a: &Alternate| (!a.survives(), !a.cautions.is_empty(), a.breaks.len(), a.undetermined.len());
     let margin = |a: &Alternate| a.least.as_ref().map_or(f64::NEG_INFINITY, |l| l.0);
     list.sort_by(|a, b| lost(a).cmp(&lost(b)).then(margin(b).total_cmp(&margin(a))).then(a.part.cmp(&b.part)));
 }
