@@ -8,7 +8,8 @@ fn an_unknown_kind_gets_the_list_and_the_nearest() {
     let said = bench.run(&["new", "folower"]);
     let wanted = "new: no stage kind is called `folower`\nallowed: follower, non-inverting, inverting, summing, difference, instrumentation, \
         transimpedance, charge, integrator, differentiator, scale-and-shift, ac-non-inverting, ac-inverting, sallen-key-low-pass, \
-        sallen-key-high-pass, multiple-feedback-low-pass, multiple-feedback-band-pass\ntry: stageleaf new follower\n";
+        sallen-key-high-pass, multiple-feedback-low-pass, multiple-feedback-band-pass, \
+        comparator-inverting, comparator-non-inverting\ntry: stageleaf new follower\n";
     assert_eq!((said.code, said.out.as_str(), said.err.as_str()), (Some(2), "", wanted));
 }
 

@@ -62,6 +62,10 @@ pub const fn budget(figure: Figure) -> Exactness {
         // The last crossing of a sum of exponentials: the poles' error, more where it crosses at a shallow angle.
         Figure::StartupTime => Relative(1e-8),
         Figure::SupplyCurrent | Figure::Dissipation | Figure::ResistorDissipation => Relative(1e-9), // closed forms
+        // A linear network and pieces of a straight line; thresholds of some volts may lie near zero.
+        Figure::ThresholdHigh | Figure::ThresholdLow | Figure::OutputHigh | Figure::OutputLow => Absolute(1e-10), // V
+        Figure::Hysteresis => Absolute(1e-10), // V: the difference of two thresholds
+        Figure::ResponseTime => Relative(1e-9),
         Figure::JunctionTemperature => Relative(1e-9), // K; a fixed point where the bias current depends on it
     }
 }

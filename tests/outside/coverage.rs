@@ -6,8 +6,8 @@ use serde::Deserialize;
 use stageleaf_math::{figure::Figure, kind::Kind};
 
 use crate::{
-    circuits, dc, floating, gain, kinds, ledger::Ledger, loops, noise, oracle, oracle_around, oracle_kinds, rejection, swing, thermal,
-    whose,
+    circuits, dc, floating, gain, kinds, ledger::Ledger, loops, noise, oracle, oracle_around, oracle_kinds, oracle_switching, rejection,
+    swing, switching, thermal, whose,
 };
 
 /// Rows that are not checked here, with the reason.
@@ -44,6 +44,8 @@ fn everything() -> Ledger {
     oracle::all(&mut ledger);
     oracle_kinds::all(&mut ledger);
     oracle_around::all(&mut ledger);
+    oracle_switching::all(&mut ledger);
+    switching::all(&mut ledger);
     ledger
 }
 
@@ -86,7 +88,7 @@ fn every_listed_value_is_checked_or_stands_in_later() {
 #[test]
 fn every_row_of_the_tables_is_listed() {
     let listed: BTreeMap<String, Vec<String>> = toml::from_str(include_str!("listed.toml")).unwrap_or_else(|error| panic!("{error}"));
-    for text in [gain::TABLE, loops::TABLE, noise::TABLE, dc::TABLE, swing::TABLE, kinds::TABLE] {
+    for text in [gain::TABLE, loops::TABLE, noise::TABLE, dc::TABLE, swing::TABLE, kinds::TABLE, switching::TABLE] {
         let rows = crate::table::Rows::read(text);
         for id in rows.ids() {
             assert!(listed.contains_key(id), "{id} is not in listed.toml");
@@ -108,7 +110,8 @@ fn every_figure_is_checked_against_something_outside() {
 #[test]
 fn every_kind_has_a_circuit_from_outside() {
     let present: BTreeSet<&str> = Kind::ALL.iter().map(|kind| kind.id()).collect();
-    let solved: BTreeSet<String> = circuits::kinds().into_iter().chain(oracle::kinds()).chain(oracle_kinds::kinds()).collect();
+    let solved: BTreeSet<String> =
+        circuits::kinds().into_iter().chain(oracle::kinds()).chain(oracle_kinds::kinds()).chain(oracle_switching::kinds()).collect();
     let without: Vec<_> = present.iter().filter(|kind| !solved.contains(**kind)).collect();
     assert!(without.is_empty(), "kinds without a circuit solved outside: {without:?}");
     let unknown: Vec<_> = solved.iter().filter(|kind| !present.contains(kind.as_str())).collect();

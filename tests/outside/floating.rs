@@ -146,6 +146,7 @@ fn an_input_without_a_dc_path_is_named_and_no_other_is() {
             }
         }
     }
-    let missed: Vec<_> = Kind::ALL.iter().filter(|kind| !seen.contains(kind)).collect();
+    // Of comparators, whose noise does not apply, `stageleaf-math`'s own tests ask for thresholds.
+    let missed: Vec<_> = Kind::ALL.iter().filter(|kind| !kind.switches() && !seen.contains(kind)).collect();
     assert!(missed.is_empty(), "kinds without a capacitive source here: {missed:?}");
 }

@@ -154,7 +154,7 @@ pub fn all(ledger: &mut Ledger) {
                 ledger.fact(
                     &circuit.id,
                     "startup_time",
-                    matches!(got, Outcome::NotLinear(_)),
+                    matches!(got, Outcome::OutOfReach(_)),
                     &format!("it leaves the rails, got {got:?}"),
                 );
             }
@@ -177,7 +177,7 @@ pub fn all(ledger: &mut Ledger) {
                     let limit = |index: usize| core::array::from_fn(|i| if (index, i) == (which, bound) { row[i] * factor } else { 1e30 });
                     nominal(&limited(&stage, limit), Figure::AcquisitionError)
                 };
-                let holds = matches!(at(1.0 + 1e-5), Outcome::Value(_)) && matches!(at(1.0 - 1e-5), Outcome::NotLinear(_));
+                let holds = matches!(at(1.0 + 1e-5), Outcome::Value(_)) && matches!(at(1.0 - 1e-5), Outcome::OutOfReach(_));
                 let name = format!("{} of the kick at amplifier {}", ["slope", "current"][bound], which + 1);
                 let otherwise = format!("not {:e}: just above it is {:?}, just below {:?}", row[bound], at(1.0 + 1e-5), at(1.0 - 1e-5));
                 ledger.fact(&circuit.id, &name, holds, &otherwise);

@@ -119,9 +119,15 @@ mod tests {
 
     #[test]
     fn every_row_names_its_source_and_its_status() {
-        for text in
-            [crate::gain::TABLE, crate::loops::TABLE, crate::noise::TABLE, crate::dc::TABLE, crate::swing::TABLE, crate::kinds::TABLE]
-        {
+        for text in [
+            crate::gain::TABLE,
+            crate::loops::TABLE,
+            crate::noise::TABLE,
+            crate::dc::TABLE,
+            crate::swing::TABLE,
+            crate::kinds::TABLE,
+            crate::switching::TABLE,
+        ] {
             for row in Rows::read(text).check {
                 assert!(!row.title.is_empty() && !row.recomputed_by.is_empty(), "{}", row.id);
                 assert!(!row.source.is_empty(), "{} names no source", row.id);

@@ -7,7 +7,7 @@ use crate::{
     analysis::{
         self, dc, margins, noise, outcome, response,
         spread::{Extreme, Spread},
-        swing,
+        swing, switching,
     },
     caution, check,
     figure::{Argument, Figure, Query, Scope},
@@ -17,7 +17,7 @@ use crate::{
     model::{Model, Plans},
     report::{DcLine, FigureRow, LimitRow, Outcome, Report},
     rules,
-    solution::Solution,
+    solution::{Roots, Solution},
     stage::{Converter, Stage},
 };
 
@@ -86,7 +86,9 @@ pub fn analyse_with(stage: &Stage, detail: Detail, plans: &Plans) -> Result<Repo
     check(stage)?;
     let model = Model::compile_with(stage, plans);
     let first = Solution::new(&model, model.parameters.nominal(), None);
-    let near = first.roots();
+    // A comparator rests at its limits, where its poles say nothing.
+    let switches = stage.kind.switches();
+    let near = if switches { Roots::default() } else { first.roots() };
     let mut spread = Spread::new(&model, &near);
     let queries = queries(stage);
     let judged = |query: &Query| detail == Detail::Full || stage.limits.iter().any(|l| l.query == *query);
@@ -116,17 +118,21 @@ pub fn analyse_with(stage: &Stage, detail: Detail, plans: &Plans) -> Result<Repo
         limits,
         measured: if detail > Detail::Limits { measured::compared(stage, plans)? } else { Vec::new() },
         response: Vec::new(),
+        transfer: Vec::new(),
         loop_gain: Vec::new(),
         density: Vec::new(),
         noise_shares: Vec::new(),
-        dc_budget: if detail > Detail::Limits { dc_budget(&mut spread) } else { Vec::new() },
+        dc_budget: if detail > Detail::Limits && !switches { dc_budget(&mut spread) } else { Vec::new() },
         envelope: Vec::new(),
         poles: Vec::new(),
         zeros: Vec::new(),
         working: Vec::new(),
         cautions: caution::cautions(&mut spread),
     };
-    if detail > Detail::Limits {
+    if switches && detail > Detail::Limits {
+        report.transfer = switching::transfer(&spread.nominal);
+        report.working = rules::working(&spread.nominal, &report.figures);
+    } else if detail > Detail::Limits {
         curves(&spread.nominal, &mut report);
         report.working = rules::working(&spread.nominal, &report.figures);
     }

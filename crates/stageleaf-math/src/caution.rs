@@ -3,7 +3,7 @@
 use alloc::vec::Vec;
 
 use crate::{
-    analysis::{self, margins, outcome, spread::Spread, thermal},
+    analysis::{self, margins, outcome, spread::Spread, switching, thermal},
     figure::{Figure, Query},
     network::GROUND,
     part::PartFigure,
@@ -24,13 +24,15 @@ pub(crate) fn cautions(spread: &mut Spread<'_>) -> Vec<Caution> {
             list.push(Caution::TakenAsIdeal(figure));
         }
     }
-    // An input that stands at ground takes no common mode to speak of.
-    if model.network.amplifiers.iter().any(|a| a.plus != GROUND)
+    let switches = stage.kind.switches();
+    // An input that stands at ground takes no common mode to speak of; a comparator's thresholds are undetermined without it.
+    if !switches
+        && model.network.amplifiers.iter().any(|a| a.plus != GROUND)
         && let Some(figure) = [PartFigure::Cmrr, PartFigure::CmrrCorner].into_iter().find(|&f| solution.part(f).is_none())
     {
         list.push(Caution::TakenAsIdeal(figure));
     }
-    let judged = if analysis::missing_small_signal(solution).is_none() { solution.amplifiers() } else { 0 };
+    let judged = if !switches && analysis::missing_small_signal(solution).is_none() { solution.amplifiers() } else { 0 };
     for amplifier in 0..judged {
         if let Some(needed) = solution.part_of(amplifier, PartFigure::StableGainMin)
             && let Some(crossover) = margins::of(solution, amplifier).last
@@ -65,8 +67,10 @@ pub(crate) fn cautions(spread: &mut Spread<'_>) -> Vec<Caution> {
             list.push(Caution::HighVoltage { span: greatest });
         }
     }
-    if analysis::missing_small_signal(solution).is_none() && solution.no_dc_path().is_none() && !solution.oscillates() {
-        for (origin, power) in thermal::resistors(solution) {
+    let works = switches || analysis::missing_small_signal(solution).is_none() && solution.no_dc_path().is_none();
+    if works && (switches || !solution.oscillates()) {
+        let resistors = if switches { switching::resistors(solution) } else { thermal::resistors(solution).collect() };
+        for (origin, power) in resistors {
             if let NoiseOrigin::Component(component) = origin
                 && let Some(rating) = stage.component(component).and_then(|c| c.rating)
                 && power > rating
@@ -75,8 +79,8 @@ pub(crate) fn cautions(spread: &mut Spread<'_>) -> Vec<Caution> {
             }
         }
     }
-    if analysis::missing_small_signal(solution).is_none() && solution.no_dc_path().is_none() {
-        if solution.oscillates() {
+    if works {
+        if !switches && solution.oscillates() {
             list.push(Caution::Oscillates);
         } else {
             for (figure, edge) in
@@ -95,6 +99,20 @@ pub(crate) fn cautions(spread: &mut Spread<'_>) -> Vec<Caution> {
             }
         }
     }
+    if switches {
+        if let (Some(volts), Some(allowed)) = (switching::differential(solution), solution.part(PartFigure::DifferentialMax))
+            && volts > allowed
+        {
+            list.push(Caution::DifferentialInput { volts, allowed });
+        }
+        let disturbance = switching::disturbance(solution);
+        if let Some(hysteresis) = spread.extremes(Query::of(Figure::Hysteresis)).low.outcome.value()
+            && hysteresis <= disturbance
+        {
+            list.push(Caution::Chatter { hysteresis, disturbance });
+        }
+    }
+    let solution = &spread.nominal;
     let exact: Vec<_> = stage.components.iter().filter(|c| c.value.minus + c.value.plus <= 0.0).map(|c| c.name).collect();
     if !exact.is_empty() {
         list.push(Caution::TakenAsExact(exact));

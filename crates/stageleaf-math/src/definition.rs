@@ -14,6 +14,7 @@ pub struct Definition {
 const NODAL: &str = "modified nodal analysis: C.-W. Ho, A. Ruehli, P. Brennan, IEEE Trans. Circuits and Systems 22 (1975), from memory";
 const RATIO: &str = "return ratio: H. W. Bode, Network Analysis and Feedback Amplifier Design (1945), from memory";
 const NOISE: &str = "adjoint network: R. Rohrer, L. Nagel, R. Meyer, L. Weber, IEEE J. Solid-State Circuits 6 (1971), from memory";
+const KIRCHHOFF: &str = "Kirchhoff's laws for the network at rest, derived here";
 const COMMON: &str = "common practice, no source";
 const MEAN: &str = "class-B output stage: A. Sedra, K. Smith, Microelectronic Circuits, output stages, from memory";
 const CONVERTER: &str = "the relation of a full-scale sine to an ideal converter's quantisation, as in IEEE Std 1241, from memory";
@@ -67,6 +68,12 @@ impl Figure {
             Self::Dissipation => ("P = (V₊ − V₋)·I_q + V₊·⟨I⁺⟩ − V₋·⟨I⁻⟩ − ⟨V·I⟩, worst amplitude", MEAN),
             Self::JunctionTemperature => ("T_j = T_a + θ·P", "JEDEC JESD51-2, the definition of θ, from memory"),
             Self::StartupTime => ("t = t_part + t_slew + last t at which |v(t) − v(∞)| = |v(∞)|/100, v(t) = v(∞) + Σ a·exp(p·t)", NODAL),
+            Self::ThresholdHigh => ("V_in at which V_e + V⁺ − V⁻ = (V_o + I·R_o − V_m)/A0, the signal rising", KIRCHHOFF),
+            Self::ThresholdLow => ("V_in at which V_e + V⁺ − V⁻ = (V_o + I·R_o − V_m)/A0, the signal falling", KIRCHHOFF),
+            Self::Hysteresis => ("V_hys = V_TH − V_TL", "definition"),
+            Self::ResponseTime => ("t = t_recovery + |ΔV_o|/min(SR, (I_limit − |I|)/C_L), the slower way", COMMON),
+            Self::OutputHigh => ("V_o = V₊ − headroom(I) at the pin, carried to the load, the least", KIRCHHOFF),
+            Self::OutputLow => ("V_o = V₋ + headroom(−I) at the pin, carried to the load, the greatest", KIRCHHOFF),
             Self::ResistorDissipation => ("P = (V_rms² + V_dc²)/R, the greatest", "definition"),
         };
         Definition { formula, source }
@@ -86,19 +93,19 @@ use Group as G;
 
 /// What no figure knows about, as the README, the sheet and `explain` say it.
 pub const NOT_MODELLED: &[Omission] = &[
-    Omission { what: "RF rectification", moves: &[G::Dc] },
-    Omission { what: "layout coupling", moves: &[G::SmallSignal, G::Noise] },
-    Omission { what: "thermal gradients", moves: &[G::Dc, G::Power] },
+    Omission { what: "RF rectification", moves: &[G::Dc, G::Switching] },
+    Omission { what: "layout coupling", moves: &[G::SmallSignal, G::Noise, G::Switching] },
+    Omission { what: "thermal gradients", moves: &[G::Dc, G::Power, G::Switching] },
     Omission { what: "long lines", moves: &[G::SmallSignal, G::LargeSignal] },
     Omission { what: "output-stage crossover distortion", moves: &[G::LargeSignal] },
-    Omission { what: "boosted slew", moves: &[G::LargeSignal] },
+    Omission { what: "boosted slew", moves: &[G::LargeSignal, G::Switching] },
     Omission { what: "capacitor voltage coefficient", moves: &[G::SmallSignal, G::LargeSignal] },
     Omission { what: "dielectric absorption", moves: &[G::Dc, G::LargeSignal, G::Starting] },
     Omission { what: "crosstalk within a package", moves: &[G::SmallSignal, G::Noise] },
     Omission { what: "nonlinearity and aliasing of a converter", moves: &[G::Noise] },
-    Omission { what: "phase reversal (a caution only)", moves: &[G::LargeSignal] },
-    Omission { what: "ageing", moves: &[G::SmallSignal, G::Dc] },
-    Omission { what: "radiation", moves: &[G::SmallSignal, G::Dc, G::Noise, G::Power] },
+    Omission { what: "phase reversal (a caution only)", moves: &[G::LargeSignal, G::Switching] },
+    Omission { what: "ageing", moves: &[G::SmallSignal, G::Dc, G::Switching] },
+    Omission { what: "radiation", moves: &[G::SmallSignal, G::Dc, G::Noise, G::Power, G::Switching] },
     Omission { what: "latch-up", moves: &[G::LargeSignal, G::Power, G::Starting] },
 ];
 

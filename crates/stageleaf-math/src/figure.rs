@@ -67,6 +67,8 @@ pub enum Group {
     Power,
     /// What happens after switching on.
     Starting,
+    /// Thresholds, levels and times of a comparator.
+    Switching,
 }
 
 figures! {
@@ -115,6 +117,12 @@ figures! {
     JunctionTemperature "junction_temperature" Temperature None Power "Junction temperature", "Ambient plus heat times the thermal resistance, the heat of bias currents that double with temperature included; of several packages the hottest.";
     ResistorDissipation "resistor_dissipation" Power None Power "Resistor dissipation", "Largest power in any one resistor of the stage.";
     StartupTime "startup_time" Time None Starting "Start-up time (to 1 %)", "Time from switching on, with empty capacitors, until the output stays within 1 % of its final steady value; the part's own start-up time included.";
+    ThresholdHigh "threshold_high" Voltage None Switching "Upper threshold", "Voltage of the signal's source at which the output switches while the signal rises.";
+    ThresholdLow "threshold_low" Voltage None Switching "Lower threshold", "Voltage of the signal's source at which the output switches while the signal falls.";
+    Hysteresis "hysteresis" Voltage None Switching "Hysteresis", "`threshold_high` less `threshold_low`.";
+    ResponseTime "response_time" Time None Switching "Response time", "Overload recovery and the slew of the output from one level to the other, in the slower direction.";
+    OutputHigh "output_high" Voltage None Switching "High output level", "Lowest voltage at the load while the output is high, over the signal's range.";
+    OutputLow "output_low" Voltage None Switching "Low output level", "Highest voltage at the load while the output is low, over the signal's range.";
 }
 
 impl Figure {
@@ -162,7 +170,13 @@ impl Figure {
             | Self::AcquisitionError
             | Self::FullScaleMargin
             | Self::StartupTime
-            | Self::ResistorDissipation => Scope::Stage,
+            | Self::ResistorDissipation
+            | Self::ThresholdHigh
+            | Self::ThresholdLow
+            | Self::Hysteresis
+            | Self::ResponseTime
+            | Self::OutputHigh
+            | Self::OutputLow => Scope::Stage,
         }
     }
 

@@ -78,11 +78,13 @@ impl Parameters {
         let away = stage.ambient.map_or(0.0, |a| a.away());
         let mut passive = |parameter: Parameter, value: &Toleranced| {
             let drift = value.drift * away;
+            // A reference may be below zero.
+            let ends = [value.nominal * (1.0 - value.minus) * (1.0 - drift), value.nominal * (1.0 + value.plus) * (1.0 + drift)];
             entries.push(Entry {
                 parameter,
                 nominal: value.nominal,
-                low: value.nominal * (1.0 - value.minus) * (1.0 - drift),
-                high: value.nominal * (1.0 + value.plus) * (1.0 + drift),
+                low: ends[0].min(ends[1]),
+                high: ends[0].max(ends[1]),
                 grade: [Grade::Stated; 3],
                 drift: value.drift,
                 touches: touch::ALL,
@@ -150,6 +152,10 @@ impl Parameters {
         if let Some(span) = stage.common_mode {
             stated(Parameter::CommonMode, span, touch::DC | touch::SWING);
         }
+        if stage.kind.switches() {
+            // Ahead of the part's figures: with a sign, these are seen to matter.
+            stated(Parameter::ErrorSign, crate::stage::Span { low: -1.0, nominal: 0.0, high: 1.0 }, touch::DC | touch::SWING);
+        }
         let mut parts = Vec::new();
         let mut main = [ABSENT; PartFigure::COUNT];
         for &figure in PartFigure::ALL {
@@ -182,7 +188,7 @@ impl Parameters {
                     high: 1.0,
                     grade: [Grade::Stated; 3],
                     drift: 0.0,
-                    touches: touch::REJECTION,
+                    touches: if stage.kind.switches() { touch::REJECTION | touch::DC | touch::SWING } else { touch::REJECTION },
                 });
             }
         }
@@ -270,13 +276,8 @@ const fn part_touches(figure: PartFigure) -> u8 {
         P::BiasCurrent | P::BiasDoubling | P::CurrentLimit | P::SupplyCurrent | P::JunctionToAmbient => {
             touch::DC | touch::SWING | touch::POWER
         }
-        P::SupplySpanMin
-        | P::SupplySpanMax
-        | P::DifferentialMax
-        | P::ClampCurrentMax
-        | P::StableGainMin
-        | P::OverloadRecovery
-        | P::JunctionMax => 0,
+        P::OverloadRecovery => touch::SWING,
+        P::SupplySpanMin | P::SupplySpanMax | P::DifferentialMax | P::ClampCurrentMax | P::StableGainMin | P::JunctionMax => 0,
         P::Cmrr => touch::DC | touch::SWING | touch::REJECTION,
         P::CmrrCorner => touch::DC | touch::REJECTION,
         P::PsrrPositiveCorner | P::PsrrNegativeCorner => touch::DC,
@@ -297,6 +298,7 @@ fn headroom_entry(stage: &Stage) -> Entry {
         high: 1.0,
         grade: [low_grade, low_grade, high_grade],
         drift: 0.0,
-        touches: touch::SWING,
+        // A comparator's output rests at its headroom, and heats by it.
+        touches: if stage.kind.switches() { touch::SWING | touch::POWER } else { touch::SWING },
     }
 }

@@ -95,12 +95,12 @@ pub enum Outcome {
     DoesNotApply(&'static str),
     /// A pole lies in the right half plane: the stage oscillates, and the figure has no meaning.
     Oscillates,
-    /// The figure is linear, and here the stage is not; why.
-    NotLinear(&'static str),
     /// No DC path for the bias current at an amplifier's input: the operating point does not exist.
     NoDcPath(Terminal),
     /// No junction temperature up to [`HOTTEST`](crate::analysis::thermal::HOTTEST) is steady: the stage runs away thermally.
     NoSteadyTemperature,
+    /// The stage does not get there, or leaves the linear model on the way, so that there is no number; why.
+    OutOfReach(&'static str),
 }
 
 impl Outcome {
@@ -127,6 +127,8 @@ pub enum Parameter {
     DarkCurrent(u8),
     /// Common-mode voltage of the inputs.
     CommonMode,
+    /// Of a comparator: which way the amplifier's input errors shift the thresholds, −1 to 1; data sheets give magnitudes.
+    ErrorSign,
     /// Reference voltage.
     ReferenceVoltage,
     /// Output resistance of the reference.
@@ -218,6 +220,17 @@ pub struct LimitRow {
     pub dominant: Option<Parameter>,
     /// Of a figure that is the worst of several amplifiers: whose it is at the worst case, from 1.
     pub amplifier: Option<u8>,
+}
+
+/// A point of a comparator's transfer: the output at the load on both branches, V.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct TransferPoint {
+    /// Signal, V.
+    pub input: f64,
+    /// While the signal rises.
+    pub rising: f64,
+    /// While it falls.
+    pub falling: f64,
 }
 
 /// The transfer from source to load.
@@ -421,6 +434,20 @@ pub enum Caution {
         /// `output_offset`, V.
         offset: f64,
     },
+    /// Of a comparator: the inputs come further apart than the part allows.
+    DifferentialInput {
+        /// Greatest difference at nominal values, V.
+        volts: f64,
+        /// The part's bound, V.
+        allowed: f64,
+    },
+    /// The least hysteresis is no more than what noise and ripple move the thresholds by: the output chatters.
+    Chatter {
+        /// Least hysteresis over the spread, V.
+        hysteresis: f64,
+        /// Noise over the band and ripple of the supplies, peak to peak at the signal, V.
+        disturbance: f64,
+    },
     /// Components without a tolerance: the worst case takes them as exact.
     TakenAsExact(Vec<&'static str>),
 }
@@ -438,6 +465,8 @@ pub struct Report {
     pub measured: Vec<MeasuredRow>,
     /// Transfer from source to load.
     pub response: Vec<ResponsePoint>,
+    /// Of a comparator: output against input around the thresholds, at each of which two points stand.
+    pub transfer: Vec<TransferPoint>,
     /// Return ratio.
     pub loop_gain: Vec<ResponsePoint>,
     /// Noise density at the output.

@@ -35,9 +35,11 @@ const CLASS_B: &str = "what the feedback network draws, phase between current an
 pub fn working(solution: &Solution<'_>, rows: &[FigureRow]) -> Vec<Working> {
     let stage = solution.model.stage;
     let mut lines = (stage.kind.spec().working)(stage);
-    let facts = Facts::of(solution, &lines);
-    for row in rows {
-        lines.extend(facts.rule(row.query));
+    if !stage.kind.switches() {
+        let facts = Facts::of(solution, &lines);
+        for row in rows {
+            lines.extend(facts.rule(row.query));
+        }
     }
     lines.retain(|l| l.handbook.is_finite() && l.numbers.iter().all(|n| n.1.is_finite()));
     for line in &mut lines {
@@ -145,7 +147,13 @@ impl<'s> Facts<'s> {
             | F::ResistorDissipation
             | F::GainMargin
             | F::FullScaleMargin
-            | F::RippleOutput => None,
+            | F::RippleOutput
+            | F::ThresholdHigh
+            | F::ThresholdLow
+            | F::Hysteresis
+            | F::ResponseTime
+            | F::OutputHigh
+            | F::OutputLow => None,
             F::StartupTime => {
                 let (upper, lower, c) = (self.component("Rb1")?, self.component("Rb2")?, self.component("Cb")?);
                 let numbers = vec![("Rb1", upper, D::Resistance), ("Rb2", lower, D::Resistance), ("Cb", c, D::Capacitance)];

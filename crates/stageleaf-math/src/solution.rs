@@ -46,7 +46,7 @@ struct Inside {
 }
 
 /// Where the network's features lie, in scaled angular frequency.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, Default)]
 pub struct Roots {
     /// Closed-loop poles.
     pub poles: Vec<Complex64>,
@@ -55,7 +55,7 @@ pub struct Roots {
 }
 
 /// Roots that are no closed-loop poles.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, Default)]
 pub struct Features {
     /// Zeros of the first drive's transfer to the load.
     pub zeros: Vec<Complex64>,
@@ -96,6 +96,7 @@ pub struct Solution<'m> {
     pub(crate) drives: OnceCell<Vec<crate::analysis::swing::Drive>>,
     pub(crate) clip: OnceCell<crate::report::Outcome>,
     pub(crate) kick: OnceCell<crate::analysis::converter::Kick>,
+    pub(crate) switch: OnceCell<Result<crate::analysis::switching::Switch, crate::report::Outcome>>,
     pub(crate) reference: OnceCell<crate::analysis::response::ReferencePoint>,
 }
 
@@ -127,6 +128,7 @@ impl<'m> Solution<'m> {
             drives: OnceCell::new(),
             clip: OnceCell::new(),
             kick: OnceCell::new(),
+            switch: OnceCell::new(),
             reference: OnceCell::new(),
         }
     }

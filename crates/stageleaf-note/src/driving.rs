@@ -324,7 +324,14 @@ fn reference<'a>(
     let voltage = "`voltage`, as `2.5 V 0.1%`; and its output `resistance` where it counts";
     let Some(entry) = entry else {
         if has_reference(inputs.kind) {
-            reader.missing(start.clone(), format!("[reference] is missing: {kind} takes its offset from it"), voltage);
+            reader.missing(
+                start.clone(),
+                format!(
+                    "[reference] is missing: {kind} takes its {} from it",
+                    if inputs.kind.switches() { "thresholds" } else { "offset" }
+                ),
+                voltage,
+            );
         }
         return None;
     };

@@ -48,10 +48,12 @@ pub fn template_for(kind: Kind, name: &str, part: &str) -> String {
         let with = component.with.map(|with| format!("; needs {with}")).unwrap_or_default();
         line(&format!("{mark}{} = \"{value}\"", component.name), &format!("{}{with}", component.role));
     }
-    for (text, comment) in drive(kind).iter().chain(AROUND).chain(limits(kind)) {
-        line(text, comment);
-    }
-    for (text, comment) in if is_on_one_supply(kind) { ROOM_ON_ONE_SUPPLY } else { ROOM } {
+    let (exact, room) = match (kind.switches(), is_on_one_supply(kind)) {
+        (true, _) => (NOTHING, ROOM_TO_SWITCH),
+        (false, true) => (EXACT, ROOM_ON_ONE_SUPPLY),
+        (false, false) => (EXACT, ROOM),
+    };
+    for (text, comment) in drive(kind).iter().chain(AROUND).chain(exact).chain(limits(kind)).chain(room) {
         line(text, comment);
     }
     out
@@ -80,7 +82,7 @@ const ONE_SUPPLY: Lines = &[
 
 /// Kinds that exist because there is no second supply.
 const fn is_on_one_supply(kind: Kind) -> bool {
-    matches!(kind, Kind::ScaleAndShift | Kind::AcNonInverting | Kind::AcInverting)
+    matches!(kind, Kind::ScaleAndShift | Kind::AcNonInverting | Kind::AcInverting) || kind.switches()
 }
 
 /// What every block has behind what drives it.
@@ -106,7 +108,18 @@ const AROUND: Lines = &[
     ("to = \"20 kHz\"", ""),
     ("", ""),
     ("[limits]", "what the stage has to keep, at the worst case"),
-    ("gain_error = \"between -5 % and 5 %\"", ""),
+];
+
+const NOTHING: Lines = &[];
+
+const EXACT: Lines = &[("gain_error = \"between -5 % and 5 %\"", "")];
+
+const ROOM_TO_SWITCH: Lines = &[
+    ("hysteresis = \"at least 0.35 V\"", "more than noise and ripple: the output must not chatter"),
+    ("response_time = \"at most 100 µs\"", "overload recovery and slew"),
+    ("input_range_margin = \"at least 0.3 V\"", ""),
+    ("output_high = \"at least 4.5 V\"", "at the load, for what reads it"),
+    ("output_low = \"at most 0.1 V\"", ""),
 ];
 
 const ROOM: Lines = &[
@@ -205,6 +218,19 @@ const fn drive(kind: Kind) -> Lines {
             ("voltage = \"2.5 V 0.2% 25ppm\"", ""),
             ("resistance = \"1 50%\"", "its output resistance"),
         ],
+        Kind::ComparatorInverting | Kind::ComparatorNonInverting => &[
+            ("", ""),
+            ("[source]", ""),
+            ("kind = \"resistive\"", ""),
+            ("resistance = \"50 1%\"", ""),
+            ("", ""),
+            ("[signal]", ""),
+            ("range = \"0.5 V to 4.5 V\"", "where the thresholds must lie; or peak with dc"),
+            ("", ""),
+            ("[reference]", "what the signal is compared with"),
+            ("voltage = \"2.5 V 0.2% 25ppm\"", ""),
+            ("resistance = \"1 50%\"", "its output resistance"),
+        ],
         Kind::AcNonInverting | Kind::AcInverting | Kind::Integrator | Kind::Differentiator | Kind::MultipleFeedbackBandPass => &[
             ("", ""),
             ("[source]", ""),
@@ -257,6 +283,8 @@ const fn limits(kind: Kind) -> Lines {
         Kind::SallenKeyHighPass => {
             &[("low_cutoff = \"1 kHz ± 10 %\"", ""), ("peaking = \"at most 0.5 dB, thin above 0.3 dB\"", "0 dB: the flattest response")]
         }
+        Kind::ComparatorInverting => &[("threshold_high = \"2.73 V ± 3 %\"", ""), ("threshold_low = \"2.27 V ± 3 %\"", "")],
+        Kind::ComparatorNonInverting => &[("threshold_high = \"2.75 V ± 3 %\"", ""), ("threshold_low = \"2.25 V ± 3 %\"", "")],
         Kind::MultipleFeedbackBandPass => &[("natural_frequency = \"1 kHz ± 6 %\"", ""), ("q = \"between 4.5 and 5.5\"", "")],
     }
 }
@@ -328,6 +356,8 @@ fn starting_value(kind: Kind, component: &ComponentSpec) -> &'static str {
         (Kind::MultipleFeedbackBandPass, "R2") => "1k8 1% 50ppm",
         (Kind::MultipleFeedbackBandPass, "R3") => "160k 1% 50ppm",
         (Kind::MultipleFeedbackBandPass, "C1" | "C2") => "10n 1%",
+        // Thresholds half a volt apart around a reference of 2.5 V.
+        (Kind::ComparatorInverting | Kind::ComparatorNonInverting, "R2" | "R3") => "100k 1% 50ppm",
         (_, "Cf") => "10p 5%",
         (_, "Cp") => "100n 10%",
         (_, "Rser") => "100 1%",

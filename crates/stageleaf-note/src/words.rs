@@ -5,7 +5,7 @@ use stageleaf_math::{
     figure::Figure,
     kind::Kind,
     part::{PartFigure, Rating},
-    report::{Caution, DcCause, Need, NoiseOrigin, Outcome, Parameter},
+    report::{Caution, Coordinate, DcCause, Need, NoiseOrigin, Outcome, Parameter},
 };
 
 use crate::{
@@ -43,6 +43,7 @@ pub fn parameter_text(parameter: Parameter) -> String {
         Parameter::SourceShunt(input) => numbered("source shunt resistance", input),
         Parameter::DarkCurrent(input) => numbered("dark current", input),
         Parameter::CommonMode => "common-mode voltage".into(),
+        Parameter::ErrorSign => "sign of the input errors".into(),
         Parameter::ReferenceVoltage => "reference voltage".into(),
         Parameter::ReferenceResistance => "output resistance of the reference".into(),
         Parameter::LoadResistance => "load resistance".into(),
@@ -74,6 +75,17 @@ fn of_amplifier(what: &str, amplifier: u8) -> String {
     if amplifier == 0 { what.into() } else { format!("{what}, A{}", u32::from(amplifier) + 1) }
 }
 
+/// The value of a coordinate that is no quantity: between typical and guaranteed, or a sign.
+#[must_use]
+pub fn coordinate_word(coordinate: &Coordinate) -> Option<String> {
+    let word = |low: &str, high: &str| if coordinate.value > 0.5 { high.to_owned() } else { low.to_owned() };
+    match coordinate.parameter {
+        Parameter::Headroom => Some(word("typical", "guaranteed")),
+        Parameter::ErrorSign | Parameter::RejectionSign(_) => Some(word("−", "+")),
+        _ => None,
+    }
+}
+
 /// What a parameter measures, for its values in a corner.
 ///
 /// The headroom's coordinate is a plain number from 0 (typical) to 1 (guaranteed); a source may be resistive or
@@ -102,7 +114,7 @@ pub fn parameter_dimension(parameter: Parameter, stage: &stageleaf_math::stage::
         Parameter::SupplyPositive | Parameter::SupplyNegative | Parameter::CommonMode | Parameter::ReferenceVoltage => Dimension::Voltage,
         Parameter::Temperature => Dimension::Temperature,
         Parameter::Part(figure) | Parameter::PartOf(_, figure) => figure.dimension(),
-        Parameter::RejectionSign(_) | Parameter::Headroom => Dimension::Number,
+        Parameter::RejectionSign(_) | Parameter::ErrorSign | Parameter::Headroom => Dimension::Number,
     }
 }
 
@@ -198,6 +210,16 @@ pub fn caution_text(caution: &Caution) -> String {
         Caution::OffsetBeyondSupply { offset } => {
             format!("The DC errors alone come to {} at the output: it rests at a rail.", trimmed(*offset, Dimension::Voltage, 3))
         }
+        Caution::DifferentialInput { volts, allowed } => format!(
+            "At nominal values the inputs come {} apart; the part allows {}.",
+            format(*volts, Dimension::Voltage, 3),
+            trimmed(*allowed, Dimension::Voltage, 3)
+        ),
+        Caution::Chatter { hysteresis, disturbance } => format!(
+            "The output may chatter: the hysteresis is {} at the least, and noise and supply ripple move the thresholds by {} peak to peak.",
+            format(*hysteresis, Dimension::Voltage, 3),
+            format(*disturbance, Dimension::Voltage, 3)
+        ),
         Caution::TakenAsExact(names) => format!("Without a tolerance, and exact at the worst case: {}.", names.join(", ")),
     }
 }
@@ -246,12 +268,12 @@ pub fn outcome_text(outcome: &Outcome, d: Dimension, digits: usize) -> String {
         }
         Outcome::DoesNotApply(why) => format!("does not apply: {why}"),
         Outcome::Oscillates => "oscillates".into(),
-        Outcome::NotLinear(why) => format!("undetermined: {why}"),
         Outcome::NoDcPath(at) => {
             let input = if at.inverting { "inverting" } else { "+" };
             of_amplifier(&format!("no DC path for the bias current at the {input} input"), at.amplifier)
         }
         Outcome::NoSteadyTemperature => "no steady temperature below 300 °C (thermal runaway)".into(),
+        Outcome::OutOfReach(why) => format!("undetermined: {why}"),
     }
 }
 

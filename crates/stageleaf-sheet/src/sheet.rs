@@ -1,7 +1,7 @@
 //! Sections, the whole sheet, and a page around it.
 
 use maud::{DOCTYPE, Markup, PreEscaped, html};
-use stageleaf_math::report::Report;
+use stageleaf_math::{kind::Kind, report::Report};
 use stageleaf_note::{Block, ShelfPart};
 
 use crate::{drawing, panel};
@@ -42,13 +42,22 @@ enum Frame {
 
 type Part = (&'static str, Frame, fn(&Sheet) -> Markup);
 
-/// The sections in their order. A panel without data still stands, and says why it is empty.
+/// Panels that a comparator does not have: its output rests, and what they show is of signals that pass through.
+const OF_LINEAR_KINDS: [&str; 6] = ["response", "loop", "noise", "dc", "envelope", "poles"];
+
+/// Whether a section belongs to the sheet of such a kind.
+fn belongs(id: &str, kind: Kind) -> bool {
+    if kind.switches() { !OF_LINEAR_KINDS.contains(&id) } else { id != "transfer" }
+}
+
+/// The sections in their order. A panel without data still stands, and says why it is empty; one of other kinds is empty and hidden.
 const PARTS: &[Part] = &[
     ("head", Frame::Open, panel::head),
     ("drawing", Frame::Open, drawing::drawing),
     ("conditions", Frame::Open, panel::conditions),
     ("problems", Frame::Open, |_| html! {}),
     ("limits", Frame::Open, panel::limits),
+    ("transfer", Frame::Panel, panel::transfer),
     ("response", Frame::Panel, panel::response),
     ("loop", Frame::Panel, panel::loop_gain),
     ("noise", Frame::Panel, panel::noise),
@@ -74,7 +83,10 @@ pub fn sections_where(sheet: &Sheet, wanted: impl Fn(&str, bool) -> bool) -> Vec
     PARTS
         .iter()
         .filter(|(id, frame, _)| wanted(id, *frame == Frame::Panel))
-        .map(|(id, _, content)| Section { id, markup: one_line(content(sheet).into_string()) })
+        .map(|(id, _, content)| {
+            let of_kind = belongs(id, sheet.block.stage.kind);
+            Section { id, markup: if of_kind { one_line(content(sheet).into_string()) } else { String::new() } }
+        })
         .collect()
 }
 
@@ -86,7 +98,7 @@ pub fn render(sheet: &Sheet) -> String {
             @for (section, (_, frame, _)) in sections(sheet).into_iter().zip(PARTS) {
                 @match frame {
                     Frame::Open => section data-section=(section.id) hidden[section.markup.is_empty()] { (PreEscaped(section.markup)) },
-                    Frame::Panel => details data-section=(section.id) { (PreEscaped(section.markup)) },
+                    Frame::Panel => details data-section=(section.id) hidden[section.markup.is_empty()] { (PreEscaped(section.markup)) },
                 }
             }
         }

@@ -242,6 +242,7 @@ fn an_empty_report_renders() {
     for kind in Kind::ALL {
         let mut sample = usual(*kind);
         sample.1 = Report {
+            transfer: vec![],
             name: String::new(),
             figures: vec![],
             limits: vec![],
@@ -286,7 +287,10 @@ fn readings_walk_along_every_plot() {
         assert_eq!(plot::reading_near(&sheet, id, 1e9).unwrap(), last, "{id}");
         for index in 0..chart.x.len() {
             let there = plot::reading(&sheet, id, index).unwrap();
-            assert_eq!(plot::reading_near(&sheet, id, there.x).unwrap().index, index, "{id}: a point is nearest to itself");
+            // Where a curve jumps, two points stand at one place.
+            let near = plot::reading_near(&sheet, id, there.x).unwrap();
+            assert_eq!(near.x.to_bits(), there.x.to_bits(), "{id}: a point is nearest to itself");
+            assert!(near.index == index || id == "transfer", "{id}: {index}");
         }
         let csv = plot::csv(&chart);
         assert_eq!(csv.lines().count(), chart.x.len() + 1, "{id}");

@@ -243,6 +243,7 @@ const fn group_words(group: Group) -> &'static str {
         Group::LargeSignal => "large signal",
         Group::Power => "power",
         Group::Starting => "starting",
+        Group::Switching => "switching",
     }
 }
 

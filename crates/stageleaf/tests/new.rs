@@ -11,7 +11,7 @@ use stageleaf_math::{kind::Kind, limit::Verdict};
 
 /// The block with the demo's part for its supply: alder-10 for ±12 V, hazel-1 for 5 V.
 fn new(kind: Kind, name: Option<&str>) -> String {
-    let single = matches!(kind, Kind::ScaleAndShift | Kind::AcNonInverting | Kind::AcInverting);
+    let single = matches!(kind, Kind::ScaleAndShift | Kind::AcNonInverting | Kind::AcInverting) || kind.switches();
     let part = if single { "hazel-1" } else { "alder-10" };
     let options = Options { kind: kind.id().to_owned(), name: name.map(str::to_owned), part: Some(part.to_owned()) };
     block(&options).unwrap_or_else(|fault| panic!("{fault}"))

@@ -90,11 +90,11 @@ pub fn acquisition_error(solution: &Solution<'_>) -> Outcome {
     for (amplifier, (slope, current)) in kick.amplifiers.iter().enumerate() {
         let drive = &swing::drives(solution)[amplifier];
         if slope * full_scale + swing::slope(solution, amplifier) > swing::slew_rate(solution, amplifier) {
-            return Outcome::NotLinear("the sampling kick is faster than the amplifier slews");
+            return Outcome::OutOfReach("the sampling kick is faster than the amplifier slews");
         }
         let limit = solution.part_of(amplifier, PartFigure::CurrentLimit).unwrap_or(f64::INFINITY);
         if current * full_scale + drive.i0.abs() + drive.ip > limit {
-            return Outcome::NotLinear("the sampling kick reaches the output current limit");
+            return Outcome::OutOfReach("the sampling kick reaches the output current limit");
         }
     }
     Outcome::Value(full_scale * kick.error.largest_from(time))

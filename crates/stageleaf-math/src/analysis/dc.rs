@@ -111,7 +111,7 @@ fn times(outcome: &Outcome, factor: f64) -> Outcome {
 }
 
 /// Bias current at the junction temperature, A.
-fn bias_current(solution: &Solution<'_>, amplifier: usize) -> Outcome {
+pub(super) fn bias_current(solution: &Solution<'_>, amplifier: usize) -> Outcome {
     let Some(bias) = solution.part_of(amplifier, PartFigure::BiasCurrent) else {
         return Outcome::Undetermined(alloc::vec![Need::Part(PartFigure::BiasCurrent)]);
     };

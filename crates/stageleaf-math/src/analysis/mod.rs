@@ -13,6 +13,7 @@ pub mod spread;
 pub mod startup;
 pub mod sweep;
 pub mod swing;
+pub mod switching;
 pub mod thermal;
 
 use alloc::vec::Vec;
@@ -64,6 +65,7 @@ pub const fn touched_by(figure: Figure) -> u8 {
         | F::AcquisitionError => touch::SWING,
         F::SupplyCurrent | F::Dissipation | F::JunctionTemperature | F::ResistorDissipation => touch::POWER,
         F::StartupTime => touch::SWING,
+        F::ThresholdHigh | F::ThresholdLow | F::Hysteresis | F::ResponseTime | F::OutputHigh | F::OutputLow => touch::DC | touch::SWING,
     }
 }
 
@@ -73,6 +75,9 @@ pub const fn touched_by(figure: Figure) -> u8 {
 pub fn reaches(model: &Model<'_>, parameter: Parameter, figure: Figure) -> bool {
     use Figure as F;
     use PartFigure as P;
+    if model.stage.kind.switches() {
+        return true;
+    }
     // The heat drives a bias current that doubles with temperature.
     let by_heat = |part| {
         matches!(figure, F::OutputOffset | F::InputOffset | F::OffsetDrift | F::ClipMargin | F::FullScaleMargin)
@@ -160,6 +165,9 @@ pub fn lacking(solution: &Solution<'_>, query: Query) -> Option<Outcome> {
     use Figure as F;
     if !query.exists_in(solution.model.stage) {
         return Some(Outcome::DoesNotApply("the stage has no such amplifier or input"));
+    }
+    if solution.model.stage.kind.switches() {
+        return switching::lacking(solution, query.figure);
     }
     let mut missing = Missing::default();
     match query.figure {
@@ -254,6 +262,9 @@ pub fn lacking(solution: &Solution<'_>, query: Query) -> Option<Outcome> {
                 missing.part(solution, figure);
             }
         }
+        F::ThresholdHigh | F::ThresholdLow | F::Hysteresis | F::ResponseTime | F::OutputHigh | F::OutputLow => {
+            return Some(Outcome::DoesNotApply(switching::FOLLOWS));
+        }
     }
     missing.outcome()
 }
@@ -263,6 +274,9 @@ pub fn lacking(solution: &Solution<'_>, query: Query) -> Option<Outcome> {
 pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
     use Figure as F;
     let stage = solution.model.stage;
+    if stage.kind.switches() {
+        return switching::value(solution, query.figure);
+    }
     if let Some(unfit) = unfit(solution, query) {
         return unfit;
     }
@@ -352,6 +366,9 @@ pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
             Some((_, power)) => power,
             None => return Outcome::DoesNotApply("the stage has no resistor"),
         },
+        F::ThresholdHigh | F::ThresholdLow | F::Hysteresis | F::ResponseTime | F::OutputHigh | F::OutputLow => {
+            return Outcome::DoesNotApply(switching::FOLLOWS);
+        }
     };
     if value.is_nan() { Outcome::DoesNotApply("the values leave the range in which it can be computed") } else { Outcome::Value(value) }
 }
@@ -373,8 +390,8 @@ pub fn unfit(solution: &Solution<'_>, query: Query) -> Option<Outcome> {
 pub fn at_dc(solution: &Solution<'_>, figure: Figure) -> bool {
     use Figure as F;
     let stage = solution.model.stage;
-    // Where a group of nodes floats, capacitances divide what is steady.
-    if solution.model.floating.islands > 0 {
+    // Where a group of nodes floats, capacitances divide what is steady; a comparator's response is no matter of DC.
+    if solution.model.floating.islands > 0 || stage.kind.switches() {
         return false;
     }
     let steady = || response::steady(solution);
@@ -422,7 +439,13 @@ pub fn at_dc(solution: &Solution<'_>, figure: Figure) -> bool {
         | F::Dissipation
         | F::JunctionTemperature
         | F::ResistorDissipation
-        | F::StartupTime => false,
+        | F::StartupTime
+        | F::ThresholdHigh
+        | F::ThresholdLow
+        | F::Hysteresis
+        | F::ResponseTime
+        | F::OutputHigh
+        | F::OutputLow => false,
     }
 }
 

@@ -5,7 +5,8 @@
 //! a cable's); what that does to a figure picks the corner at which the figure is least, and the one at which it is greatest. At
 //! either corner, parameters that did nothing alone (a drift at the temperature where the offset holds, a rejection without a
 //! deviation of the supply), the temperature and the supplies are moved once more. The range is never narrower than what any solved
-//! build showed.
+//! build showed. A comparator's input errors have either sign and are none at nominal values, so that at its corners every parameter is
+//! moved again.
 //!
 //! # Does not apply
 //! A figure whose extreme lies inside the ranges of several parameters at once, or where parameters act together against their
@@ -164,7 +165,8 @@ impl<'m> Spread<'m> {
             corners: Kept::default(),
             known: Vec::new(),
             begun: Vec::new(),
-            together: false,
+            // A comparator's builds need no expansions.
+            together: model.stage.kind.switches(),
         }
     }
 
@@ -176,7 +178,7 @@ impl<'m> Spread<'m> {
             for search in [&begun.low, &begun.high] {
                 let corner: Vec<(usize, f64)> =
                     search.ends.iter().filter(|at| self.of_network(at.0)).map(|&at| (at.0, self.place(at))).collect();
-                if corner.len() > 1 && !corners.contains(&corner) && self.networks.get(&key(&corner)).is_none() {
+                if !self.kind().switches() && corner.len() > 1 && !corners.contains(&corner) && self.networks.get(&key(&corner)).is_none() {
                     corners.push(corner);
                 }
             }
@@ -299,9 +301,9 @@ impl<'m> Spread<'m> {
             centre,
             Outcome::Undetermined(_)
                 | Outcome::DoesNotApply(_)
-                | Outcome::NotLinear(_)
                 | Outcome::NoDcPath(_)
                 | Outcome::NoSteadyTemperature
+                | Outcome::OutOfReach(_)
         ) {
             return Err(centre);
         }
@@ -340,11 +342,16 @@ impl<'m> Spread<'m> {
         }
         // DC errors are sums of products; swing and heat have them in them. What touches the network or the noise acts alone already.
         let products = touched & (touch::DC | touch::SWING | touch::POWER) != 0;
-        // So does a gain, by the common-mode error: its sign times the rejection, on whatever network the corner has.
-        let product = |slot: usize| products || self.model.parameters.entries[slot].touches & touch::NETWORK == 0;
-        let reached = |slot: usize| !(at_dc && self.model.reactive(slot));
-        let again: Vec<usize> =
-            slots.into_iter().filter(|&slot| product(slot) && reached(slot) && self.deserves_another_look(slot, &centre, &all)).collect();
+        let again: Vec<usize> = if self.kind().switches() {
+            // At nominal values a comparator has no input errors, and its builds cost little: everything is looked at again, three times.
+            slots.iter().cycle().take(3 * slots.len()).copied().collect()
+        } else {
+            // So does a gain, by the common-mode error: its sign times the rejection, on whatever network the corner has.
+            let product = |slot: usize| products || self.model.parameters.entries[slot].touches & touch::NETWORK == 0;
+            let reached = |slot: usize| !(at_dc && self.model.reactive(slot));
+            let deserves = |slot: usize| product(slot) && reached(slot) && self.deserves_another_look(slot, &centre, &all);
+            slots.into_iter().filter(|&slot| deserves(slot)).collect()
+        };
         Ok(Begun { centre, low, high, seen: all, again, bad })
     }
 
@@ -547,7 +554,7 @@ impl<'m> Spread<'m> {
         let nominal = Extreme { outcome: extremes.centre.clone(), corner: Vec::new(), effects: Vec::new(), ends: Vec::new() };
         let extreme = extreme.unwrap_or(&nominal);
         let touched = touched_by(query.figure);
-        let turned = touched == touch::DC || flat(query, &extremes.centre) && !flat(query, &extreme.outcome);
+        let turned = touched & touch::DC != 0 || flat(query, &extremes.centre) && !flat(query, &extreme.outcome);
         let measure = |at_extreme: bool| {
             let from = if at_extreme { &extreme.outcome } else { &extremes.centre };
             (from, COUNTS * from.value().filter(|v| v.is_finite()).map_or(0.0, f64::abs))

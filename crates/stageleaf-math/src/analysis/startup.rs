@@ -78,7 +78,7 @@ pub fn startup_time(solution: &Solution<'_>) -> Outcome {
     for (index, amplifier) in network.amplifiers.iter().enumerate() {
         let pin = usize::from(amplifier.pin.0);
         if steady(&residues[pin], end(amplifier.pin) - middle).largest_from(0.0) > half + NEAR * end_of_load.abs() {
-            return Outcome::NotLinear("on its way the output would leave the rails");
+            return Outcome::OutOfReach("on its way the output would leave the rails");
         }
         let (behind, _) = at_pin(solution, network, index, &poles, |node, i| residues[usize::from(node.0)][i]);
         let rate = swing::slew_rate(solution, index);

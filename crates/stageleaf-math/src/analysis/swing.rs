@@ -156,14 +156,17 @@ impl Drive {
     }
 }
 
+/// A row's headroom between typical (0) and guaranteed (1).
+pub(super) fn row_volts(row: &Headroom, position: f64) -> f64 {
+    let typ = row.volts.typ.or(row.volts.max).unwrap_or(0.0);
+    let max = row.volts.max.or(row.volts.typ).unwrap_or(0.0);
+    typ + position * (max - typ)
+}
+
 /// Headroom at a current, between typical (0) and guaranteed (1), and whether the table states it: beyond its last row the headroom is at
 /// least that row's.
 fn headroom(table: &[Headroom], position: f64, current: f64) -> (f64, bool) {
-    let volts = |row: &Headroom| {
-        let typ = row.volts.typ.or(row.volts.max).unwrap_or(0.0);
-        let max = row.volts.max.or(row.volts.typ).unwrap_or(0.0);
-        typ + position * (max - typ)
-    };
+    let volts = |row: &Headroom| row_volts(row, position);
     let Some(first) = table.first() else { return (0.0, false) };
     if current <= first.current {
         return (volts(first), true);

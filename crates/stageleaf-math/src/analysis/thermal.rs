@@ -26,6 +26,7 @@ use core::f64::consts::PI;
 use super::{
     dc::DATA_SHEET_TEMPERATURE,
     swing::{Drive, drives, levels},
+    switching,
 };
 use crate::{
     network::{Law, dense::admittance},
@@ -148,12 +149,25 @@ pub fn power<'s>(solution: &'s Solution<'_>) -> &'s Power {
             return Power { supply_current: outcome.clone(), packages: alike(outcome.clone(), outcome) };
         }
         let limit = |a: usize| solution.part_of(a, PartFigure::CurrentLimit);
-        let drives = drives(solution);
+        // A comparator's output rests at one of its levels, at one of these ends of its signal.
+        let rests;
+        let drives = if model.stage.kind.switches() {
+            rests = match switching::drives(solution) {
+                Ok(rests) => rests,
+                Err(outcome) => return Power { supply_current: outcome.clone(), packages: alike(outcome.clone(), outcome) },
+            };
+            &rests[..]
+        } else {
+            drives(solution)
+        };
+        let states = if model.stage.kind.switches() { drives.len() } else { 1 };
+        // The drives of an amplifier: of a comparator's only one, all of them, the worst of which counts.
+        let worst_of = |a: usize, of: &dyn Fn(&Drive) -> f64| drives[a..a + states].iter().map(of).fold(f64::NEG_INFINITY, f64::max);
         let packages = packages(solution);
         // A package's unused amplifiers draw their quiescent current too.
         #[expect(clippy::cast_precision_loss, reason = "a few amplifiers")]
         let idle = |p: &(Vec<usize>, usize)| quiescent(p.0[0]).unwrap_or(0.0) * p.1.saturating_sub(p.0.len()) as f64;
-        let drawn: f64 = (0..count).map(|a| quiescent(a).unwrap_or(0.0) + sourced(&drives[a], limit(a))).sum();
+        let drawn: f64 = (0..count).map(|a| quiescent(a).unwrap_or(0.0) + worst_of(a, &|d| sourced(d, limit(a)))).sum();
         let supply_current = Outcome::Value(drawn + packages.iter().map(idle).sum::<f64>());
         let Some((positive, negative)) = model.parameters.supply() else {
             let outcome = lacking(Need::Supply);
@@ -161,7 +175,7 @@ pub fn power<'s>(solution: &'s Solution<'_>) -> &'s Power {
         };
         let (high, low) = (solution.values[positive], solution.values[negative]);
         let heat: Vec<f64> =
-            (0..count).map(|a| quiescent(a).unwrap_or(0.0) * (high - low) + worst_heat(&drives[a], high, low, limit(a))).collect();
+            (0..count).map(|a| quiescent(a).unwrap_or(0.0) * (high - low) + worst_of(a, &|d| worst_heat(d, high, low, limit(a)))).collect();
         let mut found = alike(Outcome::Value(0.0), Outcome::Value(0.0));
         for mut package in packages {
             // The hottest ones together, whichever they are.

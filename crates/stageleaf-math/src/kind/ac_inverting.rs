@@ -56,6 +56,7 @@ pub static SPEC: Spec = Spec {
     amplifiers: 1,
     inputs: |_| INPUTS,
     drives: Drives::Each,
+    switching: None,
     reference: Reference::Frequency(middle),
     gain: Dimension::Gain,
     build: |_, network| {

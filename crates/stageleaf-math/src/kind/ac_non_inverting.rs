@@ -58,6 +58,7 @@ pub static SPEC: Spec = Spec {
     amplifiers: 1,
     inputs: |_| INPUTS,
     drives: Drives::Each,
+    switching: None,
     reference: Reference::Frequency(|stage| middle(stage, gain(stage))),
     gain: Dimension::Gain,
     build: |_, network| {

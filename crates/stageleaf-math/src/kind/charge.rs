@@ -54,6 +54,7 @@ pub static SPEC: Spec = Spec {
     amplifiers: 1,
     inputs: |_| CHARGE_INPUT,
     drives: Drives::Each,
+    switching: None,
     reference: Reference::Frequency(middle),
     gain: Dimension::VoltsPerCoulomb,
     build: |_, network| {

@@ -52,6 +52,7 @@ pub static SPEC: Spec = Spec {
     amplifiers: 3,
     inputs: |_| DIFFERENTIAL_INPUTS,
     drives: Drives::Differential,
+    switching: None,
     reference: Reference::Dc,
     gain: Dimension::Gain,
     build: |_, network| {

@@ -44,6 +44,7 @@ pub static SPEC: Spec = Spec {
     amplifiers: 1,
     inputs: |_| VOLTAGE_INPUT,
     drives: Drives::Each,
+    switching: None,
     reference: Reference::Frequency(at),
     gain: Dimension::Gain,
     build: |_, network| {

@@ -3,6 +3,9 @@
 pub mod ac_inverting;
 pub mod ac_non_inverting;
 pub mod charge;
+pub mod comparator;
+pub mod comparator_inverting;
+pub mod comparator_non_inverting;
 pub mod difference;
 pub mod differentiator;
 pub mod follower;
@@ -119,6 +122,15 @@ pub enum Drives {
     Differential,
 }
 
+/// Which way a comparator's output goes when its input rises through the upper threshold.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Sense {
+    /// Up.
+    NonInverting,
+    /// Down.
+    Inverting,
+}
+
 /// Where a kind's pass-band gain is taken.
 #[derive(Clone, Copy, Debug)]
 pub enum Reference {
@@ -149,6 +161,8 @@ pub struct Spec {
     pub inputs: fn(&Stage) -> &'static [InputSpec],
     /// What its signals are.
     pub drives: Drives,
+    /// Of a comparator, its sense: the feedback is positive, and the output rests at one of two levels.
+    pub switching: Option<Sense>,
     /// Where its gain is taken.
     pub reference: Reference,
     /// What its gain measures.
@@ -314,6 +328,10 @@ kinds! {
     MultipleFeedbackLowPass multiple_feedback_low_pass;
     /// Second-order inverting band-pass.
     MultipleFeedbackBandPass multiple_feedback_band_pass;
+    /// Two thresholds, the output low above them.
+    ComparatorInverting comparator_inverting;
+    /// Two thresholds, the output high above them.
+    ComparatorNonInverting comparator_non_inverting;
 }
 
 impl Kind {
@@ -350,8 +368,16 @@ impl Kind {
             | Self::SallenKeyLowPass
             | Self::SallenKeyHighPass
             | Self::MultipleFeedbackLowPass
-            | Self::MultipleFeedbackBandPass => None,
+            | Self::MultipleFeedbackBandPass
+            | Self::ComparatorInverting
+            | Self::ComparatorNonInverting => None,
         }
+    }
+
+    /// Whether it is a comparator.
+    #[must_use]
+    pub const fn switches(self) -> bool {
+        self.spec().switching.is_some()
     }
 
     /// Its components.

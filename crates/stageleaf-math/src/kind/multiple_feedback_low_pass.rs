@@ -43,6 +43,7 @@ pub static SPEC: Spec = Spec {
     amplifiers: 1,
     inputs: |_| VOLTAGE_INPUT,
     drives: Drives::Each,
+    switching: None,
     reference: Reference::Dc,
     gain: Dimension::Gain,
     build: |_, network| {

@@ -52,6 +52,7 @@ pub static SPEC: Spec = Spec {
     amplifiers: 1,
     inputs: |_| INPUTS,
     drives: Drives::Each,
+    switching: None,
     reference: Reference::Dc,
     gain: Dimension::Gain,
     build: |_, network| {

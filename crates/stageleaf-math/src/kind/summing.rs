@@ -79,6 +79,7 @@ pub static SPEC: Spec = Spec {
     amplifiers: 1,
     inputs,
     drives: Drives::Each,
+    switching: None,
     reference: Reference::Dc,
     gain: Dimension::Gain,
     build: |stage, network| {

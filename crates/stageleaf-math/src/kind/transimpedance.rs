@@ -39,6 +39,7 @@ pub static SPEC: Spec = Spec {
     amplifiers: 1,
     inputs: |_| CURRENT_INPUT,
     drives: Drives::Each,
+    switching: None,
     reference: Reference::Dc,
     gain: Dimension::Resistance,
     build: |_, network| {

@@ -50,6 +50,7 @@ pub const fn forbids(caution: &Caution) -> bool {
             | Caution::ThermalRunaway
             | Caution::ResistorHot { .. }
             | Caution::OffsetBeyondSupply { .. }
+            | Caution::DifferentialInput { .. }
     )
 }
 

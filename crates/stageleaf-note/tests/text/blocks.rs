@@ -276,7 +276,7 @@ try: resistance"#
         r#"notes/a.md:10:9: no stage kind is called "non-invertng"
   10 | stage = "non-invertng"
      |         ^^^^^^^^^^^^^^
-allowed: `follower`, `non-inverting`, `inverting`, `summing`, `difference`, `instrumentation`, `transimpedance`, `charge`, `integrator`, `differentiator`, `scale-and-shift`, `ac-non-inverting`, `ac-inverting`, `sallen-key-low-pass`, `sallen-key-high-pass`, `multiple-feedback-low-pass`, `multiple-feedback-band-pass`
+allowed: `follower`, `non-inverting`, `inverting`, `summing`, `difference`, `instrumentation`, `transimpedance`, `charge`, `integrator`, `differentiator`, `scale-and-shift`, `ac-non-inverting`, `ac-inverting`, `sallen-key-low-pass`, `sallen-key-high-pass`, `multiple-feedback-low-pass`, `multiple-feedback-band-pass`, `comparator-inverting`, `comparator-non-inverting`
 try: stage = "non-inverting""#
     );
     assert_eq!(
@@ -323,7 +323,7 @@ allowed: `Riso` under [components]"#
         "notes/a.md:10:1: `stage` is missing
   10 | 
      | ^
-allowed: `follower`, `non-inverting`, `inverting`, `summing`, `difference`, `instrumentation`, `transimpedance`, `charge`, `integrator`, `differentiator`, `scale-and-shift`, `ac-non-inverting`, `ac-inverting`, `sallen-key-low-pass`, `sallen-key-high-pass`, `multiple-feedback-low-pass`, `multiple-feedback-band-pass`
+allowed: `follower`, `non-inverting`, `inverting`, `summing`, `difference`, `instrumentation`, `transimpedance`, `charge`, `integrator`, `differentiator`, `scale-and-shift`, `ac-non-inverting`, `ac-inverting`, `sallen-key-low-pass`, `sallen-key-high-pass`, `multiple-feedback-low-pass`, `multiple-feedback-band-pass`, `comparator-inverting`, `comparator-non-inverting`
 notes/a.md:10:1: `name` is missing
   10 | 
      | ^

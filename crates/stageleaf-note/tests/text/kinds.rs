@@ -214,7 +214,7 @@ allowed: the same keys under `[source]`"
         "notes/a.md:19:2: an AC-coupled inverting stage takes no [reference]
   19 | [reference]
      |  ^^^^^^^^^
-allowed: [reference] in a stage of kind `scale-and-shift`"
+allowed: [reference] in a stage of kind `scale-and-shift`, `comparator-inverting`, `comparator-non-inverting`"
     );
     assert_eq!(
         refused("scale-and-shift", SHIFT),
@@ -522,6 +522,9 @@ fn paths_and_what_stands_there() {
         (Kind::Follower, "signal.common_mode", None),
         (Kind::Follower, "reference.voltage", None),
         (Kind::ScaleAndShift, "reference.voltage", Some(Voltage)),
+        (Kind::ComparatorInverting, "reference.resistance", Some(Resistance)),
+        (Kind::ComparatorInverting, "components.R4", Some(Resistance)),
+        (Kind::ComparatorNonInverting, "components.R4", None),
         (Kind::ScaleAndShift, "source.resistance", Some(Resistance)),
         (Kind::AcInverting, "signal.peak", Some(Voltage)),
         (Kind::Integrator, "components.Cf", Some(Capacitance)),
@@ -532,6 +535,39 @@ fn paths_and_what_stands_there() {
     for (kind, path, wanted) in cases {
         assert_eq!(paths::dimension(path, kind), wanted, "{}: {path}", kind.id());
     }
+}
+
+#[test]
+fn what_a_comparator_refuses() {
+    let body = "[components]\nR1 = \"10k\"\n";
+    assert_eq!(
+        refused("comparator-inverting", body),
+        "notes/a.md:10:1: [reference] is missing: an inverting comparator with hysteresis takes its thresholds from it
+  10 | stage = \"comparator-inverting\"
+     | ^^^^^^^^^^^^^^^^^^^^^^^^^^^^^^
+allowed: `voltage`, as `2.5 V 0.1%`; and its output `resistance` where it counts
+notes/a.md:13:2: `R2` is missing: an inverting comparator with hysteresis has it from the output to the + input: positive feedback
+  13 | [components]
+     |  ^^^^^^^^^^
+allowed: `R2` under [components], with its value as `91k 1% 50ppm`"
+    );
+    let body = "[components]\nR1 = \"10k\"\nR2 = \"-1M\"\nR4 = \"1k\"\n[reference]\nvoltage = \"2.5 V\"\n";
+    assert_eq!(
+        refused("comparator-inverting", body),
+        "notes/a.md:15:6: `R2` takes a resistance; \"-1M\" is not above zero
+  15 | R2 = \"-1M\"
+     |      ^^^^^
+allowed: ohms, as `91k`, `4k7`, `2R2`, `91 kΩ`
+notes/a.md:16:1: `R4` needs `Rser`, which is not there
+  16 | R4 = \"1k\"
+     | ^^
+allowed: `R4` (from the − input to ground: divides the signal, with `Rser`) and `Rser` together"
+    );
+    let body = "sense = \"inverting\"\n[components]\nR1 = \"10k\"\nR2 = \"1M\"\nRf = \"1k\"\n[reference]\nvoltage = \"2.5 V\"\n";
+    let told = refused("comparator-non-inverting", body);
+    assert!(told.contains("a stage block has no key `sense`"), "{told}");
+    assert!(told.contains("a non-inverting comparator with hysteresis has no component `Rf`"), "{told}");
+    assert!(told.contains("allowed: `R1`, `R2`, `R3`, `Rser`, `Cshunt`, `Riso`"), "{told}");
 }
 
 #[test]
@@ -557,6 +593,8 @@ fn every_kind_in_words() {
             "a Sallen–Key high-pass",
             "a multiple-feedback low-pass",
             "a multiple-feedback band-pass",
+            "an inverting comparator with hysteresis",
+            "a non-inverting comparator with hysteresis",
         ]
     );
 }

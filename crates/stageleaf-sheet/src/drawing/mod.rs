@@ -3,6 +3,8 @@
 pub mod ac_inverting;
 pub mod ac_non_inverting;
 pub mod charge;
+pub mod comparator_inverting;
+pub mod comparator_non_inverting;
 pub mod difference;
 pub mod differentiator;
 pub mod follower;
@@ -205,6 +207,8 @@ pub fn canvas(block: &Block) -> Canvas {
         Kind::SallenKeyHighPass => sallen_key_high_pass::draw(&mut canvas, &labels),
         Kind::MultipleFeedbackLowPass => multiple_feedback_low_pass::draw(&mut canvas, &labels),
         Kind::MultipleFeedbackBandPass => multiple_feedback_band_pass::draw(&mut canvas, &labels),
+        Kind::ComparatorInverting => comparator_inverting::draw(&mut canvas, &labels),
+        Kind::ComparatorNonInverting => comparator_non_inverting::draw(&mut canvas, &labels),
     }
     canvas
 }
@@ -213,6 +217,7 @@ pub fn canvas(block: &Block) -> Canvas {
 const fn feedback_names(kind: Kind) -> [&'static str; 2] {
     match kind {
         Kind::Difference | Kind::Instrumentation => ["R2", "C2"],
+        Kind::ComparatorInverting | Kind::ComparatorNonInverting => ["R2", ""],
         _ => ["Rf", "Cf"],
     }
 }

@@ -63,12 +63,42 @@ pub fn amplifier_and_output(c: &mut Canvas, l: &Labels, node: (i32, i32)) {
 }
 
 /// The amplifier with these feedback paths, the inmost first; with snubber, isolation and load.
-pub fn amplifier_with(c: &mut Canvas, l: &Labels, (x, y): (i32, i32), paths: Vec<Path>) {
+pub fn amplifier_with(c: &mut Canvas, l: &Labels, node: (i32, i32), paths: Vec<Path>) {
+    amplifier_turned(c, l, node, Upper::Inverting, paths);
+}
+
+/// The amplifier of a comparator: its + input above at `node`, to which `R2` leads back; with isolation and load. The line to its other
+/// input, [`PITCH`] below, ends at the column that is returned.
+pub fn comparator(c: &mut Canvas, l: &Labels, (x, y): (i32, i32)) -> i32 {
+    let feedback = l.component("R2").map(|label| Path { from: (x, y), to: End::Sensed, part: Some((Symbol::Resistor, label)) });
+    amplifier_turned(c, l, (x, y), Upper::NonInverting, feedback.into_iter().collect());
+    if let Some(label) = l.component("R3") {
+        c.upright_left(Symbol::Resistor, x, y, y + 64, y + 36, label);
+        c.ground(x, y + 64);
+    }
+    c.dot(x, y);
+    let column = x + 20;
+    c.wire(&[(column, y + PITCH), (x + PINS, y + PITCH)]);
+    column
+}
+
+/// The reference hanging at `(x, y)`, behind its resistance; returns how far down it reaches.
+pub fn reference(c: &mut Canvas, l: &Labels, x: i32, y: i32) -> i32 {
+    let mut end = y;
+    if let Some(label) = l.reference_resistance() {
+        c.upright_left(Symbol::Resistor, x, y, y + 50, y + 26, label);
+        end += 50;
+    }
+    c.steady(x, end, end + 34, l.reference_voltage().ok_or("Vref"));
+    end + 65
+}
+
+fn amplifier_turned(c: &mut Canvas, l: &Labels, (x, y): (i32, i32), upper: Upper, paths: Vec<Path>) {
     let (positive, negative) = l.rails();
     // Of several amplifiers, the last one drives the output.
     let count = l.stage().kind.spec().amplifiers;
     let name = (count > 1).then(|| format!("A{count}"));
-    let (tip, out) = c.amplifier_named((x + PINS, y), Upper::Inverting, name.as_deref(), (&positive, negative.as_deref()));
+    let (tip, out) = c.amplifier_named((x + PINS, y), upper, name.as_deref(), (&positive, negative.as_deref()));
     c.wire(&[(x, y), (x + PINS, y)]);
     let pin = x + OUTPUT;
     let load = pin + LOAD;

@@ -16,6 +16,15 @@ fn plots(sheet: &Sheet, start: &str, empty: &str) -> Markup {
     }
 }
 
+/// Of a comparator: output against signal.
+pub fn transfer(sheet: &Sheet) -> Markup {
+    html! {
+        summary { "Transfer" }
+        (briefs(sheet, &[Figure::ThresholdHigh, Figure::ThresholdLow, Figure::Hysteresis]))
+        (plots(sheet, "transfer", "No threshold could be computed."))
+    }
+}
+
 /// Transfer from source to load.
 pub fn response(sheet: &Sheet) -> Markup {
     // Most kinds work down to DC, and have no lower edge to speak of.

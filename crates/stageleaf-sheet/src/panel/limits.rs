@@ -4,7 +4,7 @@ use maud::{Markup, html};
 use stageleaf_math::{
     dimension::Dimension,
     limit::{Bound, Limit, Verdict},
-    report::{Caution, Coordinate, LimitRow, Outcome, Parameter},
+    report::{Caution, Coordinate, LimitRow, Outcome},
 };
 use stageleaf_note::{format, limit_text, print::trimmed, query_anchor, words};
 
@@ -166,15 +166,8 @@ fn left(row: &LimitRow) -> Option<String> {
 fn coordinate(sheet: &Sheet, c: &Coordinate) -> String {
     let d = words::parameter_dimension(c.parameter, &sheet.block.stage);
     let name = words::parameter_text(c.parameter);
-    if c.parameter == Parameter::Headroom {
-        let text = if c.value <= 0.0 {
-            "typical".into()
-        } else if c.value >= 1.0 {
-            "guaranteed".into()
-        } else {
-            format!("{} between typical and guaranteed", value(c.value, Dimension::Fraction))
-        };
-        return format!("{name} {text}");
+    if let Some(word) = words::coordinate_word(c) {
+        return format!("{name} {word}");
     }
     // Enough digits to see that it differs from the nominal value.
     format!("{name} {}", if c.value.is_nan() { "–".into() } else { trimmed(c.value, d, 4) })

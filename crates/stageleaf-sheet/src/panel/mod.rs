@@ -11,7 +11,7 @@ mod tables;
 mod working;
 
 pub use conditions::{conditions, problems_markup};
-pub use curves::{envelope, loop_gain, noise, response};
+pub use curves::{envelope, loop_gain, noise, response, transfer};
 pub use figures::figures;
 pub use head::head;
 pub use limits::limits;

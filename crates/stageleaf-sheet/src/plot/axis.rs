@@ -151,8 +151,8 @@ impl Axis {
             return ticks;
         };
         // Multiples of the step, so that zero is one of them.
-        let mut k = libm::round(self.low / step);
-        while k * step <= self.high + step / 2.0 && ticks.len() < 40 {
+        let mut k = libm::ceil(self.low / step - 1e-6);
+        while k * step <= self.high + step * 1e-6 && ticks.len() < 40 {
             ticks.push(k * step);
             k += 1.0;
         }

@@ -1,11 +1,11 @@
 //! Which charts a report holds, as data.
 
-use super::axis::{Axis, Unit};
+use super::axis::{Axis, Unit, tick_step};
 use crate::Sheet;
 use stageleaf_math::{
     dimension::Dimension,
     figure::Figure,
-    report::{DensityPoint, EnvelopePoint, NoiseOrigin, Report, ResponsePoint},
+    report::{DensityPoint, EnvelopePoint, NoiseOrigin, Report, ResponsePoint, TransferPoint},
 };
 
 /// Curves of a chart are thinned to this many points.
@@ -48,16 +48,23 @@ pub enum Words {
     Rising,
     /// Behind a curve that falls through the point.
     Falling,
+    /// Left of the point.
+    Left,
+    /// Right of the point.
+    Right,
 }
 
-/// A chart against frequency.
+/// What most charts are over.
+const HERTZ: Dimension = Dimension::Frequency;
+
+/// A chart against frequency, or against the signal.
 #[derive(Clone, Debug)]
 pub struct Chart {
     /// `response-magnitude`: the value of `data-plot`.
     pub id: &'static str,
     /// Title of the vertical axis, with its unit.
     pub title: &'static str,
-    /// Hz.
+    /// Hz, or V of the signal.
     pub x: Vec<f64>,
     /// Curves over `x`.
     pub curves: Vec<Curve>,
@@ -65,16 +72,18 @@ pub struct Chart {
     pub marks: Vec<Mark>,
     /// Level drawn as a reference line.
     pub reference: Option<f64>,
+    /// What `x` measures.
+    pub over: Dimension,
     /// Unit of the heights.
     pub unit: Unit,
-    /// Frequencies.
+    /// Frequencies, or the signal.
     pub x_axis: Axis,
     /// Heights.
     pub y_axis: Axis,
 }
 
 /// Ids of all charts, in the sheet's order.
-pub const IDS: [&str; 6] = ["response-magnitude", "response-phase", "loop-magnitude", "loop-phase", "noise", "envelope"];
+pub const IDS: [&str; 7] = ["transfer", "response-magnitude", "response-phase", "loop-magnitude", "loop-phase", "noise", "envelope"];
 
 /// The charts that the report has data for, by the start of their id.
 #[must_use]
@@ -87,6 +96,7 @@ pub fn charts(sheet: &Sheet, start: &str) -> Vec<Chart> {
 pub fn chart(sheet: &Sheet, id: &str) -> Option<Chart> {
     let r = sheet.report;
     match id {
+        "transfer" => transfer(r),
         "response-magnitude" => response(sheet),
         "response-phase" => phase("response-phase", &r.response, Vec::new(), None),
         "loop-magnitude" => {
@@ -129,7 +139,7 @@ fn magnitude(
     let x_axis = x_axis(&x)?;
     let y_axis = Axis::linear(y.iter().copied().chain(reference), depth, None)?;
     let curves = vec![Curve { name: "magnitude".into(), y }];
-    Some(Chart { id, title, x, curves, marks, reference, unit: Unit::Decibel, x_axis, y_axis })
+    Some(Chart { id, title, x, curves, marks, reference, over: HERTZ, unit: Unit::Decibel, x_axis, y_axis })
 }
 
 fn phase(id: &'static str, points: &[ResponsePoint], marks: Vec<Mark>, reference: Option<f64>) -> Option<Chart> {
@@ -140,7 +150,53 @@ fn phase(id: &'static str, points: &[ResponsePoint], marks: Vec<Mark>, reference
     let step = if probe.high - probe.low > 300.0 { 90.0 } else { 45.0 };
     let y_axis = Axis::linear(y.iter().copied().chain(reference), 2000.0, Some(step))?;
     let curves = vec![Curve { name: "phase".into(), y }];
-    Some(Chart { id, title: "phase, °", x, curves, marks, reference, unit: Unit::Degree, x_axis, y_axis })
+    Some(Chart { id, title: "phase, °", x, curves, marks, reference, over: HERTZ, unit: Unit::Degree, x_axis, y_axis })
+}
+
+impl Chart {
+    /// What the chart is over, in a word.
+    #[must_use]
+    pub fn over_name(&self) -> &'static str {
+        if self.over == Dimension::Voltage { "signal" } else { "frequency" }
+    }
+
+    /// One of its places, as text.
+    #[must_use]
+    pub fn place_text(&self, x: f64) -> String {
+        stageleaf_note::format(x, self.over, if self.over == Dimension::Voltage { 4 } else { 3 })
+    }
+}
+
+/// A comparator's output on both branches, with its thresholds.
+fn transfer(r: &Report) -> Option<Chart> {
+    let x: Vec<f64> = r.transfer.iter().map(|p| p.input).collect();
+    let branch = |name: &str, of: fn(&TransferPoint) -> f64| Curve { name: name.into(), y: r.transfer.iter().map(of).collect() };
+    let curves = vec![branch("rising signal", |p| p.rising), branch("falling signal", |p| p.falling)];
+    // From end to end, so that the branches' names stand beside their ends.
+    let (from, to) = (*x.first()?, *x.last()?);
+    let x_axis = Axis { low: from, high: to, step: Some(tick_step(to - from)) };
+    let y_axis = Axis::linear(curves.iter().flat_map(|c| c.y.iter().copied()), f64::INFINITY, None)?;
+    let (low, high) = curves.iter().flat_map(|c| &c.y).fold((f64::INFINITY, f64::NEG_INFINITY), |(l, h), v| (l.min(*v), h.max(*v)));
+    let thresholds = [(Figure::ThresholdLow, "falling", Words::Left), (Figure::ThresholdHigh, "rising", Words::Right)];
+    let mark = |(figure, way, words): (Figure, &str, Words)| {
+        let x = nominal(r, figure)?;
+        let text = format!("{way} {}", stageleaf_note::format(x, Dimension::Voltage, 4));
+        Some(Mark { x, y: f64::midpoint(low, high), to: None, text, words })
+    };
+    let marks = thresholds.into_iter().filter_map(mark).collect();
+    let unit = Unit::Si(Dimension::Voltage);
+    Some(Chart {
+        id: "transfer",
+        title: "output at the load, V",
+        x,
+        curves,
+        marks,
+        reference: None,
+        over: Dimension::Voltage,
+        unit,
+        x_axis,
+        y_axis,
+    })
 }
 
 /// The transfer's magnitude: in dB where it is a ratio, else in its own unit on an axis of decades.
@@ -159,7 +215,7 @@ fn response(sheet: &Sheet) -> Option<Chart> {
     let mut y_axis = Axis::decades(y.iter().flat_map(|v| [*v, 1.25 * v]), true)?;
     y_axis.low = y_axis.low.max(y_axis.high * 1e-5);
     let (curves, marks) = (vec![Curve { name: "magnitude".into(), y }], edge_marks(r, |m| m));
-    Some(Chart { id, title, x, curves, marks, reference: None, unit: Unit::Si(dimension), x_axis, y_axis })
+    Some(Chart { id, title, x, curves, marks, reference: None, over: HERTZ, unit: Unit::Si(dimension), x_axis, y_axis })
 }
 
 /// Where the response has fallen by 3 dB from the gain; `height` takes a magnitude to the chart's unit.
@@ -200,7 +256,16 @@ fn noise(sheet: &Sheet) -> Option<Chart> {
     curves.retain(|c| c.y.iter().any(|v| *v >= y_axis.low));
     let unit = Unit::Si(Dimension::VoltageDensity);
     Some(Chart {
-        id: "noise", title: "density at the output, V/√Hz", x, curves, marks: Vec::new(), reference: None, unit, x_axis, y_axis
+        id: "noise",
+        title: "density at the output, V/√Hz",
+        x,
+        curves,
+        marks: Vec::new(),
+        reference: None,
+        over: HERTZ,
+        unit,
+        x_axis,
+        y_axis,
     })
 }
 
@@ -262,7 +327,18 @@ fn envelope(sheet: &Sheet) -> Option<Chart> {
     y_axis.high *= 2.0;
     y_axis.low = y_axis.low.max(y_axis.high * 1e-5);
     let unit = Unit::Si(Dimension::Voltage);
-    Some(Chart { id: "envelope", title: "largest clean output, V peak", x, curves, marks, reference: None, unit, x_axis, y_axis })
+    Some(Chart {
+        id: "envelope",
+        title: "largest clean output, V peak",
+        x,
+        curves,
+        marks,
+        reference: None,
+        over: HERTZ,
+        unit,
+        x_axis,
+        y_axis,
+    })
 }
 
 /// A figure at nominal values, if it has a finite one.

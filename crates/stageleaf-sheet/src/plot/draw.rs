@@ -3,7 +3,6 @@
 use std::fmt::Write as _;
 
 use maud::{Markup, PreEscaped, html};
-use stageleaf_math::dimension::Dimension;
 
 use super::{
     AREA_LEFT, AREA_WIDTH,
@@ -62,9 +61,9 @@ pub fn svg(c: &Chart) -> Markup {
                     }
                 }
                 path class="frame" d=(format_args!("M{} {}V{}H{}", whole(AREA_LEFT), whole(TOP), whole(bottom), whole(right))) {}
-                @for x in &x_ticks { text x=(tenth(px(*x))) y=(whole(bottom + 17.0)) text-anchor="middle" { (short(*x)) } }
+                @for x in &x_ticks { text x=(tenth(px(*x))) y=(whole(bottom + 17.0)) text-anchor="middle" { (c.x_axis.step.map_or_else(|| short(*x), |step| plain(*x, decimals(step)))) } }
                 @for y in &y_ticks { text x=(whole(AREA_LEFT - 6.0)) y=(tenth((py(*y) + 4.0).min(bottom + 1.0))) text-anchor="end" { (tick(c, *y)) } }
-                text class="axis" x=(whole(right)) y=(whole(bottom + 33.0)) text-anchor="end" { "frequency, Hz" }
+                text class="axis" x=(whole(right)) y=(whole(bottom + 33.0)) text-anchor="end" { (c.over_name()) ", " (c.over.si_unit()) }
                 text class="axis" x="4" y="12" { (c.title) }
                 @if several { (labels(c, height)) }
                 @for m in &c.marks { (mark(c, m, &px, &py)) }
@@ -73,6 +72,11 @@ pub fn svg(c: &Chart) -> Markup {
             output class="readout" {}
         }
     }
+}
+
+/// Decimals that tell multiples of a step of 1, 2 or 5 apart.
+fn decimals(step: f64) -> usize {
+    (0..9).find(|d| step * libm::pow(10.0, f64::from(*d)) > 0.99).map_or(9, |d| usize::try_from(d).unwrap_or(0))
 }
 
 fn tick(c: &Chart, value: f64) -> String {
@@ -95,7 +99,8 @@ fn mark(c: &Chart, m: &super::Mark, px: &impl Fn(f64) -> f64, py: &impl Fn(f64) 
         (None, Words::Rising) if before < WORDS => (false, y + 34.0),
         (None, Words::Rising) => (true, y + 4.0),
         (None, Words::Falling) if behind < WORDS => (true, y + 19.0),
-        (None, Words::Falling) => (false, y + 4.0),
+        (None, Words::Falling | Words::Right) => (false, y + 4.0),
+        (None, Words::Left) => (true, y + 4.0),
         // Curves fall to the right, so right of the point is free, unless the edge is near.
         (None, words) => {
             let left = behind < AREA_WIDTH * 0.38;
@@ -207,9 +212,9 @@ fn tenth(value: f64) -> String {
 
 /// The chart in one sentence, for those who do not see it.
 fn summary(c: &Chart) -> String {
-    let hertz = |v: f64| stageleaf_note::format(v, Dimension::Frequency, 3);
+    let place = |v: f64| c.place_text(v);
     let (first, last) = (c.x.first().copied().unwrap_or(0.0), c.x.last().copied().unwrap_or(0.0));
-    let mut text = format!("{} against frequency, {} to {}.", capital(c.title), hertz(first), hertz(last));
+    let mut text = format!("{} against {}, {} to {}.", capital(c.title), c.over_name(), place(first), place(last));
     for curve in &c.curves {
         let finite = || curve.y.iter().copied().filter(|v| v.is_finite());
         if let (Some(a), Some(b)) = (finite().next(), finite().next_back()) {
@@ -217,7 +222,7 @@ fn summary(c: &Chart) -> String {
         }
     }
     for m in &c.marks {
-        let at = hertz(m.x);
+        let at = place(m.x);
         let _ = if m.text.contains(&at) { write!(text, " {}.", capital(&m.text)) } else { write!(text, " {} at {at}.", capital(&m.text)) };
     }
     text.push_str(" The numbers are in the table below.");

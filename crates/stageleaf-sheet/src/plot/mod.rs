@@ -1,4 +1,4 @@
-//! Curves against frequency: charts as data, then as SVG, table, CSV and readings.
+//! Curves against frequency or signal: charts as data, then as SVG, table, CSV and readings.
 
 pub mod axis;
 pub mod charts;
@@ -33,7 +33,7 @@ pub fn reading(sheet: &Sheet, plot: &str, index: usize) -> Option<Reading> {
     let chart = chart(sheet, plot)?;
     let index = index.min(chart.x.len().checked_sub(1)?);
     let x = AREA_LEFT + AREA_WIDTH * chart.x_axis.place(chart.x[index]);
-    let mut text = format!("{}:", stageleaf_note::format(chart.x[index], stageleaf_math::dimension::Dimension::Frequency, 3));
+    let mut text = format!("{}:", chart.place_text(chart.x[index]));
     for curve in &chart.curves {
         text.push_str(&format!(" {} {};", curve.name, chart.unit.text(curve.y[index], 3)));
     }
@@ -47,6 +47,8 @@ pub fn reading_near(sheet: &Sheet, plot: &str, x: f64) -> Option<Reading> {
     let chart = chart(sheet, plot)?;
     let wanted = chart.x_axis.value(((x - AREA_LEFT) / AREA_WIDTH).clamp(0.0, 1.0));
     let index = chart.x.partition_point(|f| *f < wanted);
-    let nearer_below = index > 0 && (index == chart.x.len() || wanted / chart.x[index - 1] < chart.x[index] / wanted);
+    let ruler = chart.x_axis.ruler();
+    let apart = |index: usize| (ruler.place(chart.x[index]) - ruler.place(wanted)).abs();
+    let nearer_below = index > 0 && (index == chart.x.len() || apart(index - 1) < apart(index));
     reading(sheet, plot, if nearer_below { index - 1 } else { index })
 }

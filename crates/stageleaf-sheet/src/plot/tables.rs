@@ -7,22 +7,22 @@ use stageleaf_math::dimension::Dimension;
 
 use super::charts::Chart;
 
-/// Charts over the same frequencies as one table, about three rows per decade, closed until opened.
+/// Charts over the same frequencies as one table, about three rows per decade (over a signal, all), closed until opened.
 #[must_use]
 pub fn table(charts: &[Chart]) -> Markup {
     let Some(first) = charts.first() else { return html! {} };
-    let rows = rows(&first.x);
+    let rows = if first.over == Dimension::Frequency { rows(&first.x) } else { (0..first.x.len()).collect() };
     html! {
         details class="numbers" {
             summary { "Numbers" }
             div class="scroll" tabindex="0" role="group" aria-label=(format_args!("{}, numbers", first.title)) {
                 table {
                     thead { tr {
-                        th scope="col" { "frequency" }
+                        th scope="col" { (first.over_name()) }
                         @for chart in charts { @for curve in &chart.curves { th scope="col" { (curve.name) } } }
                     } }
                     tbody { @for i in rows { tr {
-                        th scope="row" { (stageleaf_note::format(first.x[i], Dimension::Frequency, 3)) }
+                        th scope="row" { (first.place_text(first.x[i])) }
                         @for chart in charts { @for curve in &chart.curves {
                             td { (curve.y.get(i).map_or_else(|| "–".into(), |y| chart.unit.text(*y, 3))) }
                         } }
@@ -52,7 +52,7 @@ fn rows(x: &[f64]) -> Vec<usize> {
 /// A chart as CSV (RFC 4180): a line of names with units, then full-precision numbers; an empty field where there is none.
 #[must_use]
 pub fn csv(chart: &Chart) -> String {
-    let mut text = String::from("frequency (Hz)");
+    let mut text = format!("{} ({})", chart.over_name(), chart.over.si_unit());
     for curve in &chart.curves {
         let _ = write!(text, ",\"{} ({})\"", curve.name.replace('"', "\"\""), chart.unit.symbol());
     }

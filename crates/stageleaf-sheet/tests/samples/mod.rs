@@ -9,7 +9,7 @@ use stageleaf_math::{
     part::{Part, PartFigure},
     report::{
         Caution, Coordinate, DcCause, DcLine, DensityPoint, EnvelopePoint, FigureRow, LimitRow, Need, NoiseOrigin, NoiseShare, Outcome,
-        Parameter, Report, ResponsePoint, Root, Working,
+        Parameter, Report, ResponsePoint, Root, TransferPoint, Working,
     },
     stage::{Ambient, Band, Board, Component, Isolation, Load, ReferenceVoltage, Signal, Source, Span, Stage, Supply, Toleranced},
 };
@@ -257,6 +257,9 @@ pub fn report(kind: Kind) -> Report {
         limits,
         measured: Vec::new(),
         response,
+        transfer: [(2.0, 0.1, 0.1), (2.5, 0.1, 0.1), (2.5, 0.1, 4.9), (3.0, 0.1, 4.9), (3.0, 4.9, 4.9), (3.5, 4.9, 4.9)]
+            .map(|(input, rising, falling)| TransferPoint { input, rising, falling })
+            .to_vec(),
         loop_gain,
         density,
         noise_shares: shares.iter().map(|s| NoiseShare { origin: s.0, rms: 61e-6 * libm::sqrt(s.1), share: s.1 }).collect(),

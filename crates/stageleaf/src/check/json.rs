@@ -141,6 +141,8 @@ impl Warned {
             Caution::Oscillates => "oscillates",
             Caution::Exceeded { .. } => "exceeded",
             Caution::OffsetBeyondSupply { .. } => "offset_beyond_supply",
+            Caution::DifferentialInput { .. } => "differential_input",
+            Caution::Chatter { .. } => "chatter",
             Caution::TakenAsExact(_) => "taken_as_exact",
         };
         Self { kind, text: words::caution_text(caution) }
@@ -217,9 +219,8 @@ impl Other {
             Outcome::Oscillates => Self::Oscillates(true),
             Outcome::NoDcPath(_) => Self::NoDcPath(true),
             Outcome::NoSteadyTemperature => Self::NoSteadyTemperature(true),
-            Outcome::Undetermined(_) | Outcome::NotLinear(_) | Outcome::Value(_) => {
-                Self::Undetermined(outcome_words(outcome, dimension, part))
-            }
+            Outcome::OutOfReach(why) => Self::Undetermined((*why).to_owned()),
+            Outcome::Undetermined(_) | Outcome::Value(_) => Self::Undetermined(outcome_words(outcome, dimension, part)),
         }
     }
 }

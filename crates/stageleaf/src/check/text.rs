@@ -7,7 +7,7 @@ use stageleaf_math::{
     figure::Query,
     limit::{Bound, Verdict},
     measured::{Agreement, MeasuredRow},
-    report::{Coordinate, LimitRow, Outcome, Parameter},
+    report::{Coordinate, LimitRow, Outcome},
 };
 use stageleaf_note::{format as quantity_text, query_text, words};
 
@@ -115,7 +115,7 @@ impl Row {
         let mut below = Vec::new();
         let shown = if row.verdict == Verdict::Reported { &row.nominal } else { &row.worst };
         let worst = match shown {
-            Outcome::Undetermined(_) | Outcome::DoesNotApply(_) => {
+            Outcome::Undetermined(_) | Outcome::DoesNotApply(_) | Outcome::OutOfReach(_) => {
                 below.extend(outcome_words(shown, dimension, &stage.part_file).split("; ").map(plain));
                 "–".to_owned()
             }
@@ -204,8 +204,8 @@ pub fn outcome_words(outcome: &Outcome, dimension: Dimension, part_file: &str) -
 
 fn coordinate_text(coordinate: &Coordinate, stage: &ExaminedStage) -> String {
     let name = words::parameter_text(coordinate.parameter);
-    if coordinate.parameter == Parameter::Headroom {
-        return format!("{name} {}", if coordinate.value > 0.5 { "guaranteed" } else { "typical" });
+    if let Some(word) = words::coordinate_word(coordinate) {
+        return format!("{name} {word}");
     }
     let value = quantity_text(coordinate.value, words::parameter_dimension(coordinate.parameter, &stage.block.stage), DIGITS);
     format!("{} {}", name.trim_end_matches(" (magnitude)"), without_idle_zeros(&value))

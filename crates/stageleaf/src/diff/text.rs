@@ -127,7 +127,7 @@ fn figure_text(change: &FigureChange<'_>, all: bool) -> Option<String> {
 const fn short(outcome: &Outcome) -> &'static str {
     match outcome {
         Outcome::Value(_) => "",
-        Outcome::Undetermined(_) | Outcome::NotLinear(_) => "undetermined",
+        Outcome::Undetermined(_) | Outcome::OutOfReach(_) => "undetermined",
         Outcome::DoesNotApply(_) => "does not apply",
         Outcome::Oscillates => "oscillates",
         Outcome::NoDcPath(_) => "no DC path",
