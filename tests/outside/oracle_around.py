@@ -9,6 +9,7 @@ Transients are sums over the eigenvectors of the matrix pencil, in mpmath with 1
 - converter: its sampling capacitor, charged to a voltage the whole input range away, is connected to the network at t = 0. The error
   is the largest one at that capacitor from the acquisition time on; how steeply each amplifier's controlled source moves and what
   current leaves its pin tell whether the settling is linear. Effective bits from the noise over the band, its own, and LSB/sqrt(12).
+- response at three frequencies, with the converter's resistor and capacitor and a noise-gain network in place.
 - start-up: supplies, reference and steady signals step to their values with every capacitor empty. The last time at which the output is
   a hundredth of its final value away from it; where a controlled source would move faster than it slews, its largest value over the
   slew rate besides; the part's own start-up time. A stage whose pin would leave the rails on its way is told apart.
@@ -31,6 +32,8 @@ from oracle_kinds import Exact, Scan, show
 from oracle_kinds_circuits import KINDS, circuit, random_circuit
 
 PLAIN = ["follower", "non-inverting", "inverting"]
+NOISE_GAIN = ("follower", "non-inverting", "inverting", "transimpedance", "charge", "integrator", "differentiator",
+              "multiple-feedback-low-pass", "multiple-feedback-band-pass")
 BIASED = ("ac-non-inverting", "ac-inverting")
 SEED = 41_017
 
@@ -64,6 +67,8 @@ def around(draw, c):
         "signal": [short(draw.uniform(-1, 1)), log(draw, 1e-3, 1.0), c["signal_frequency"]],
         "range": draw.choice([[0.0, 4.096], [-2.5, 2.5], [0.5, 3.0]]),
     }
+    if draw.random() < 0.5 and "Rng" not in c["components"] and c["kind"] in NOISE_GAIN:
+        c["components"] |= {"Rng": log(draw, 10, 1e5), "Cng": log(draw, 1e-11, 1e-8)}
     c["around"]["startup"] = [log(draw, 1e-6, 1e-4), draw.choice([1e15, log(draw, 1e4, 1e8)])]
     if c["kind"] in ("transimpedance", "charge"):
         c["around"]["signal"][:2] = [c["signal_dc"], short(c["around"]["signal"][1] * 1e-9)]
@@ -283,7 +288,9 @@ def last_beyond(modes, level):
 
 
 def solve(c, poles):
-    return {"ripple_output": show(ripple_output(c)), **converter_figures(c, poles), **startup(c)}
+    exact = Exact(c)
+    response = [exact.transfer(f) for f in c["frequencies"]]
+    return {"response": [[show(mp.re(h)), show(mp.im(h))] for h in response], "ripple_output": show(ripple_output(c)), **converter_figures(c, poles), **startup(c)}
 
 
 # ------------------------------------------------------------------ the table

@@ -65,6 +65,8 @@ struct Sampling {
 #[derive(Debug, Deserialize)]
 #[serde(deny_unknown_fields)]
 struct Expected {
+    /// The first drive's transfer at the circuit's frequencies, real and imaginary part.
+    response: Vec<[f64; 2]>,
     ripple_output: f64,
     /// With the slew rate and current limit far away.
     acquisition_error: Option<f64>,
@@ -133,6 +135,13 @@ pub fn all(ledger: &mut Ledger) {
     for Row { circuit, expected } in &rows {
         let mut stage = circuit.stage();
         circuit.around.as_ref().expect("something stands around every circuit").stand(&mut stage);
+        for (&frequency, [re, im]) in circuit.frequencies.iter().zip(&expected.response) {
+            let value = libm::hypot(*re, *im);
+            let allowed = budget(Figure::GainAt).around(value) + PRINTED * value;
+            let name = format!("gain_at {frequency}");
+            let wanted = Wanted { id: &circuit.id, name: &name, figure: Figure::GainAt, value, allowed, source: SOURCE };
+            ledger.outcome(&wanted, &solved(&stage, |solution| outcome(solution, Query::at(Figure::GainAt, frequency))));
+        }
         let nominal = |stage: &Stage, of: Figure| solved(stage, |solution| outcome(solution, Query::of(of)));
         let mut compare = |stage: &Stage, of: Figure, value: f64| {
             let allowed = budget(of).around(value) + PRINTED * value.abs();

@@ -153,22 +153,26 @@ class Network:
         self.wire("t0", "n")
         place("Rf", tap, "n")
         place("Cf", "pin", "n")
+        series("Rng", "Cng", "p", "n")
 
     def lay_charge(self, place, series, tap):
         place("Rser", "t0", "n") or self.wire("t0", "n")
         place("Rf", tap, "n")
         place("Cf", "pin", "n")
+        series("Rng", "Cng", "p", "n")
 
     def lay_integrator(self, place, series, tap):
         place("Rin", "t0", "n")
         place("Rf", tap, "n")
         place("Cf", "pin", "n")
+        series("Rng", "Cng", "p", "n")
 
     def lay_differentiator(self, place, series, tap):
         place("Rin", "t0", "m") or self.wire("t0", "m")
         place("Cin", "m", "n")
         place("Rf", tap, "n")
         place("Cf", "pin", "n")
+        series("Rng", "Cng", "p", "n")
 
     def lay_scale_and_shift(self, place, series, tap):
         for name, a, b in (("R1", "t0", "p"), ("R2", "ref", "p"), ("Cshunt", "p", "0"), ("Rg", "n", "0"), ("Rf", tap, "n"), ("Cf", "pin", "n")):
@@ -205,10 +209,12 @@ class Network:
     def lay_multiple_feedback_low_pass(self, place, series, tap):
         for name, a, b in (("R1", "t0", "a"), ("C1", "a", "0"), ("R3", "a", "n"), ("R2", "a", tap), ("C2", "pin", "n")):
             place(name, a, b)
+        series("Rng", "Cng", "p", "n")
 
     def lay_multiple_feedback_band_pass(self, place, series, tap):
         for name, a, b in (("R1", "t0", "a"), ("R2", "a", "0"), ("C2", "a", "n"), ("R3", tap, "n"), ("C1", "a", tap)):
             place(name, a, b)
+        series("Rng", "Cng", "p", "n")
 
     def find(self, x):
         while self.parent.get(x, x) != x:

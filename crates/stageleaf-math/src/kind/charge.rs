@@ -5,6 +5,7 @@
 //!
 //! # Units
 //! `Cf` in F (required); `Rf`, `Rser` in Ω. Gain in V/C for a charge into the stage.
+//! `Rng` in Ω and `Cng` in F between the inputs raise the noise gain at high frequencies.
 //!
 //! # Does not apply
 //! Without `Rf` there is no DC path for the bias current, and the output ends at a rail: that is a verdict of its own.
@@ -50,6 +51,8 @@ pub static SPEC: Spec = Spec {
         ISOLATION,
         SNUBBER_R,
         SNUBBER_C,
+        NOISE_GAIN_R,
+        NOISE_GAIN_C,
     ],
     amplifiers: 1,
     inputs: |_| CHARGE_INPUT,

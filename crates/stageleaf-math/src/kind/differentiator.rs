@@ -5,6 +5,7 @@
 //!
 //! # Units
 //! `Rf`, `Rin` in Ω; `Cin`, `Cf` in F. `gain` where it is largest, in V/V.
+//! `Rng` in Ω and `Cng` in F between the inputs raise the noise gain at high frequencies.
 //!
 //! # Does not apply
 //! Without `Rin` or `Cf` the loop has next to no phase margin, and the largest gain is the amplifier's resonance.
@@ -42,6 +43,8 @@ pub static SPEC: Spec = Spec {
         ISOLATION,
         SNUBBER_R,
         SNUBBER_C,
+        NOISE_GAIN_R,
+        NOISE_GAIN_C,
     ],
     amplifiers: 1,
     inputs: |_| VOLTAGE_INPUT,

@@ -5,6 +5,7 @@
 //!
 //! # Units
 //! `Rin`, `Rf` in Ω; `Cf` in F. `gain` at DC with `Rf`, else at the unity-gain frequency; in V/V.
+//! `Rng` in Ω and `Cng` in F between the inputs raise the noise gain at high frequencies.
 //!
 //! # Does not apply
 //! Without `Rf` the output drifts to a rail: `output_offset` is the open loop's.
@@ -40,6 +41,8 @@ pub static SPEC: Spec = Spec {
         ISOLATION,
         SNUBBER_R,
         SNUBBER_C,
+        NOISE_GAIN_R,
+        NOISE_GAIN_C,
     ],
     amplifiers: 1,
     inputs: |_| VOLTAGE_INPUT,

@@ -5,6 +5,7 @@
 //!
 //! # Units
 //! `R1` (signal to inner node), `R2` (inner node to ground), `R3` (inverting input to output) in Ω; `C1` (inner node to output), `C2` (inner node to inverting input) in F. Gain where it is largest, in V/V.
+//! `Rng` in Ω and `Cng` in F between the inputs raise the noise gain at high frequencies.
 //!
 //! # Does not apply
 //! A high Q wants an open-loop gain at f0 far above `2·Q²`.
@@ -39,6 +40,8 @@ pub static SPEC: Spec = Spec {
         ISOLATION,
         SNUBBER_R,
         SNUBBER_C,
+        NOISE_GAIN_R,
+        NOISE_GAIN_C,
     ],
     amplifiers: 1,
     inputs: |_| VOLTAGE_INPUT,
@@ -57,6 +60,7 @@ pub static SPEC: Spec = Spec {
         let (pin, sense) = network.pin();
         network.component("R3", sense, minus);
         network.component("C1", inner, sense);
+        network.series_rc("Rng", "Cng", plus, minus);
         network.amplifier(plus, minus, pin);
     },
     ideal_gain: |stage| -nominal(stage, "R3") / nominal(stage, "R1") * nominal(stage, "C2") / (nominal(stage, "C1") + nominal(stage, "C2")),

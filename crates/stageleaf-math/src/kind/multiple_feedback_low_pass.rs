@@ -5,6 +5,7 @@
 //!
 //! # Units
 //! `R1` (signal to inner node), `R2` (inner node to output), `R3` (inner node to inverting input) in Ω; `C1` (inner node to ground), `C2` (inverting input to output) in F. Gain at DC in V/V.
+//! `Rng` in Ω and `Cng` in F between the inputs raise the noise gain at high frequencies.
 //!
 //! # Does not apply
 //! Noise gain and DC errors follow `1 + R2/R1`.
@@ -39,6 +40,8 @@ pub static SPEC: Spec = Spec {
         ISOLATION,
         SNUBBER_R,
         SNUBBER_C,
+        NOISE_GAIN_R,
+        NOISE_GAIN_C,
     ],
     amplifiers: 1,
     inputs: |_| VOLTAGE_INPUT,
@@ -57,6 +60,7 @@ pub static SPEC: Spec = Spec {
         let (pin, sense) = network.pin();
         network.component("R2", inner, sense);
         network.component("C2", pin, minus);
+        network.series_rc("Rng", "Cng", plus, minus);
         network.amplifier(plus, minus, pin);
     },
     ideal_gain: |stage| -nominal(stage, "R2") / nominal(stage, "R1"),

@@ -5,6 +5,7 @@
 //!
 //! # Units
 //! `Rf` in Ω (required); `Cf`, `Cp` in F; `Rp` in Ω. Gain in Ω for a current into the stage.
+//! `Rng` in Ω and `Cng` in F between the inputs raise the noise gain at high frequencies.
 //!
 //! # Does not apply
 //! The source's capacitance sets the noise gain and the loop: a photodiode without one stated is an ideal current.
@@ -35,6 +36,8 @@ pub static SPEC: Spec = Spec {
         ISOLATION,
         SNUBBER_R,
         SNUBBER_C,
+        NOISE_GAIN_R,
+        NOISE_GAIN_C,
     ],
     amplifiers: 1,
     inputs: |_| CURRENT_INPUT,

@@ -9,7 +9,8 @@ use super::{
 
 /// Draws the stage.
 pub fn draw(c: &mut Canvas, l: &Labels) {
-    let (x, y) = (s::INNER + 115, 0);
+    // The noise-gain branch clears the label beside the inner node.
+    let (x, y) = (s::INNER + if l.has("Rng") { 120 } else { 115 }, 0);
     section(c, l, (x, y), [(Symbol::Resistor, "R3", End::Sensed), (Symbol::Capacitor, "C1", End::Sensed)], (Symbol::Capacitor, "C2"));
     if let Some(label) = l.component("R2") {
         c.upright_right(Symbol::Resistor, s::INNER, y, y + 58, y + 32, label);

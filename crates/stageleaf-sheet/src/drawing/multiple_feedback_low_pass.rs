@@ -8,7 +8,8 @@ use super::{
 
 /// Draws the stage.
 pub fn draw(c: &mut Canvas, l: &Labels) {
-    let (x, y) = (s::INNER + 115, 0);
+    // The noise-gain branch clears the label beside the inner node.
+    let (x, y) = (s::INNER + if l.has("Rng") { 120 } else { 115 }, 0);
     section(c, l, (x, y), [(Symbol::Capacitor, "C2", End::Pin), (Symbol::Resistor, "R2", End::Sensed)], (Symbol::Resistor, "R3"));
     if let Some(label) = l.component("C1") {
         c.upright_right(Symbol::Capacitor, s::INNER, y, y + 48, y + 30, label);

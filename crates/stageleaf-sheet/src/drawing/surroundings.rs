@@ -4,7 +4,10 @@ use super::{
     Labels,
     kit::{Canvas, Label, Symbol, Upper},
 };
-use stageleaf_math::stage::{Converter, Isolation, Source};
+use stageleaf_math::{
+    kind::Kind,
+    stage::{Converter, Isolation, Source},
+};
 
 /// Where the source's column stands.
 pub const SOURCE_X: i32 = 20;
@@ -300,8 +303,10 @@ pub fn balance(c: &mut Canvas, l: &Labels, (x, y): (i32, i32), below: i32) {
     if l.has("Rng") {
         let drop = x + DROP;
         c.wire(&[(x + PINS, line), (drop, line)]);
-        line = y + 96;
-        noise_gain(c, l, (x, y), y + 30, line);
+        // Below what stands at the left of the node, where that comes near.
+        let first = if matches!(l.stage().kind, Kind::Inverting | Kind::Summing) { y + 30 } else { below + 24 };
+        line = first + 66;
+        noise_gain(c, l, (x, y), first, line);
         c.wire(&[(x, line), (drop, line), (drop, y + PITCH)]);
         c.dot(x, line);
         column = x;
