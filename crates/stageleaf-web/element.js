@@ -1,5 +1,5 @@
 // The custom element: it carries events into the wasm and brings the static sheet back when anything fails.
-// Its surroundings (see the site builder) define stageleaf_wasm, STAGELEAF_WASM (a character for each byte) and STAGELEAF_STYLE.
+// Its surroundings (see the site builder) define stageleaf_wasm, STAGELEAF_WASM with its key (see unpack.js) and STAGELEAF_STYLE.
 if (!globalThis.customElements || customElements.get("stageleaf-sheet")) return;
 
 const EVENTS = ["keydown", "change", "click", "pointermove", "pointerleave", "focusin", "toggle"];
@@ -10,9 +10,7 @@ let started;
 function start() {
   if (started === undefined) {
     try {
-      const bytes = new Uint8Array(STAGELEAF_WASM.length); // each takes the low eight bits
-      for (let i = 0; i < bytes.length; i++) bytes[i] = STAGELEAF_WASM.charCodeAt(i) ^ 127;
-      stageleaf_wasm.initSync({ module: bytes });
+      stageleaf_wasm.initSync({ module: unpack(STAGELEAF_WASM, STAGELEAF_KEY) });
       started = true;
     } catch {
       started = false; // no WebAssembly, or a policy that refuses it

@@ -41,6 +41,15 @@ async function engine() {
   return opened;
 }
 
+test("the script's text is the wasm, byte by byte", () => {
+  const script = readFileSync(join(site, "stageleaf.js"), "utf8");
+  const [, text, key] = /STAGELEAF_WASM = String\.raw`([^`]*)`;\nconst STAGELEAF_KEY = (.*);\n/.exec(script);
+  const unpack = new Function(`${readFileSync(join(root, "crates/stageleaf-web/unpack.js"), "utf8")}; return unpack;`)();
+  const wanted = readFileSync(join(site, "stageleaf_web_bg.wasm"));
+  assert.ok(wanted.length > 100_000 && WebAssembly.validate(wanted));
+  assert.equal(Buffer.compare(Buffer.from(unpack(text, JSON.parse(key))), wanted), 0);
+});
+
 test("native and browser figures have the same bits", async () => {
   const opened = await engine();
   const stages = native();

@@ -6,6 +6,7 @@
 mod book;
 mod script;
 mod shelf_page;
+mod streams;
 
 use std::{
     fs,

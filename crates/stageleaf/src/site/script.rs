@@ -1,7 +1,7 @@
 //! One classic script: the glue, the wasm as text, the element, the stylesheet.
 //!
-//! The text has one character for each byte, which keeps the repeats that base64 hides from the compressor: as served it
-//! weighs little more than the bytes alone, and 3 % to 5 % less than hex. Classic, not a module: from `file://` browsers refuse modules and
+//! The wasm's bytes are sorted by meaning (see [`super::streams`]), and the text has one character for each, which keeps
+//! the repeats that base64 hides from the compressor: as served it weighs less than the wasm itself. Classic, not a module: from `file://` browsers refuse modules and
 //! `fetch`.
 
 use std::{
@@ -10,10 +10,13 @@ use std::{
     process::Command,
 };
 
-use super::{Failure, read, write};
+use super::{Failure, read, streams, write};
 
 /// The element's hand-written script.
 const ELEMENT: &str = include_str!("../../../stageleaf-web/element.js");
+
+/// Puts the wasm's bytes back in order.
+const UNPACK: &str = include_str!("../../../stageleaf-web/unpack.js");
 
 /// Rules for what only the script or the book adds.
 const LIVE_STYLE: &str = include_str!("../../../stageleaf-web/live.css");
@@ -30,7 +33,7 @@ pub fn build(root: &Path, out: &Path) -> Result<(), Failure> {
     // Tests take the two together.
     write(&at, &bytes)?;
     let style = without_comments(&format!("{}\n{LIVE_STYLE}", stageleaf_sheet::STYLE));
-    let script = bundle(&glue, &bytes, &style);
+    let script = bundle(&glue, &bytes, &style)?;
     for forbidden in ["</script", "<!--"] {
         if script.to_ascii_lowercase().contains(forbidden) {
             return Err(format!("stageleaf.js holds `{forbidden}` and could not stand inside a page"));
@@ -177,10 +180,10 @@ fn without_comments(style: &str) -> String {
 /// makes it a character that costs one. Of several masks tried, this and its neighbour compressed best.
 const MASK: u8 = 127;
 
-/// The wasm as the inside of a raw template text: a character for each byte. `element.js` takes the low eight bits.
-fn text_of(wasm: &[u8]) -> String {
-    let mut text = String::with_capacity(wasm.len() * 3 / 2);
-    for &byte in wasm {
+/// Bytes as the inside of a raw template text: a character for each. `unpack.js` takes the low eight bits.
+fn text_of(bytes: &[u8]) -> String {
+    let mut text = String::with_capacity(bytes.len() * 3 / 2);
+    for &byte in bytes {
         let code = byte ^ MASK;
         // What a page or a template would read as something else stands 256 higher.
         let higher = matches!(code, 0 | b'\r' | b'`' | b'$' | b'<' | b'\\');
@@ -189,25 +192,33 @@ fn text_of(wasm: &[u8]) -> String {
     text
 }
 
-fn bundle(glue: &str, wasm: &[u8], style: &str) -> String {
+fn bundle(glue: &str, wasm: &[u8], style: &str) -> Result<String, Failure> {
+    let sorted = streams::sort(wasm)?;
+    let key = serde_json::json!({
+        "lengths": sorted.lengths, "head": sorted.head, "size": wasm.len(), "shapes": streams::shapes(), "bulk": streams::BULK,
+    });
     let mut script = String::with_capacity(wasm.len() * 2 + glue.len() + 20_000);
     // The mark makes browsers read UTF-8 whatever the page is written in; inside a page it is white space.
     script.push_str("\u{feff}(() => {\n\"use strict\";\n");
     script.push_str(glue.trim());
     script.push_str("\nconst STAGELEAF_WASM = String.raw`");
-    script.push_str(&text_of(wasm));
-    script.push_str("`;\nconst STAGELEAF_STYLE = ");
+    script.push_str(&text_of(&sorted.bytes));
+    script.push_str(&format!("`;\nconst STAGELEAF_KEY = {key};\nconst STAGELEAF_STYLE = "));
     let quoted = serde_json::Value::from(style).to_string().replace('<', "\\u003c");
     script.push_str(&quoted);
     script.push_str(";\n");
+    script.push_str(UNPACK);
     script.push_str(ELEMENT);
     script.push_str("})();\n");
-    script
+    Ok(script)
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    /// A module with an empty code section.
+    const EMPTY: &[u8] = b"\0asm\x01\0\0\0\x0a\x01\0";
 
     #[test]
     fn the_script_address_block_is_cut_and_nothing_else() {
@@ -223,7 +234,7 @@ mod tests {
 
     #[test]
     fn style_text_cannot_close_the_script() {
-        let script = bundle("let stageleaf_wasm;", &[0, 255], "a::after { content: \"</script>\" }");
+        let script = bundle("let stageleaf_wasm;", EMPTY, "a::after { content: \"</script>\" }").unwrap();
         assert!(!script.contains("</script"));
     }
 
@@ -235,7 +246,7 @@ mod tests {
         let back: Vec<u32> = text.chars().map(|c| (u32::from(c) & 255) ^ u32::from(MASK)).collect();
         assert_eq!(back, bytes.iter().copied().map(u32::from).collect::<Vec<_>>());
         let mask = format!("charCodeAt(i) ^ {MASK}");
-        assert!(ELEMENT.contains(&mask), "element.js undoes it with the same byte");
+        assert!(UNPACK.contains(&mask), "unpack.js undoes it with the same byte");
     }
 
     #[test]
