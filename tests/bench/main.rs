@@ -10,6 +10,7 @@ use stageleaf_math::{
     analysis::sweep,
     kind::Kind,
     model::Model,
+    network::lu::Lu,
     part::{Part, PartFigure, Rating},
     report::NoiseOrigin,
     solution::Solution,
@@ -43,6 +44,16 @@ struct Native {
     noise: BTreeMap<String, Vec<f64>>,
     total: Vec<f64>,
     whole_seconds: f64,
+    sweep_seconds: f64,
+    /// The same sweep by the checking solver.
+    lu: Checked,
+}
+
+#[derive(Serialize)]
+struct Checked {
+    response: Vec<[f64; 2]>,
+    total: Vec<f64>,
+    operations: usize,
     sweep_seconds: f64,
 }
 
@@ -91,7 +102,17 @@ fn sweep_circuit(circuit: &Circuit) -> Native {
         let sum = by_name.entry(name(*origin)).or_insert_with(|| vec![0.0; row.len()]);
         sum.iter_mut().zip(row).for_each(|(s, p)| *s += p);
     }
+    let solution = Solution::new(&model, model.parameters.nominal(), None);
+    let lu = Lu::compile(&solution, grid.from, grid.to).expect("the circuit has no short");
+    let check = || lu.sweep(&Solution::new(&model, model.parameters.nominal(), None), &frequencies);
+    let checked = check();
     Native {
+        lu: Checked {
+            response: checked.response.iter().map(|h| [h.re, h.im]).collect(),
+            total: checked.noise.total,
+            operations: lu.operations(),
+            sweep_seconds: median_seconds(501, check),
+        },
         response: response.iter().map(|h| [h.re, h.im]).collect(),
         noise: by_name,
         total: noise.total,

@@ -111,6 +111,9 @@ def main():
     if set(native["noise"]) != set(noise):
         sys.exit(f"different noise sources: {sorted(native['noise'])} against {sorted(noise)}")
     found = {"response": furthest(np.array(native["response"]) @ [1, 1j], response), "noise": furthest(native["total"], total)}
+    checked = native["lu"]
+    found["response by LU"] = furthest(np.array(checked["response"]) @ [1, 1j], response)
+    found["noise by LU"] = furthest(checked["total"], total)
     # The peer's own rounding shows where a source contributes next to nothing.
     for name, theirs in noise.items():
         found[f"noise of {name}"] = furthest(native["noise"][name], theirs, 1e-4 * total)
@@ -120,6 +123,8 @@ def main():
     print(f"  numpy                        {seconds * 1e6:10.1f} µs")
     for name, key in (("native, topology compiled", "sweep_seconds"), ("native, from the stage", "whole_seconds")):
         print(f"  {name:28s} {native[key] * 1e6:10.1f} µs   numpy ÷ native {seconds / native[key]:8.1f}")
+    lu = checked["sweep_seconds"]
+    print(f"  {'native, by sparse LU':28s} {lu * 1e6:10.1f} µs   numpy ÷ native {seconds / lu:8.1f}   ({checked['operations']} operations a frequency)")
     sys.exit(0 if found[worst] <= AGREEMENT else 1)
 
 

@@ -276,3 +276,64 @@ fn a_sweep_has_the_bits_of_single_points() {
         }
     }
 }
+
+/// Response and noise by polynomials and by sparse LU, at sixteen frequencies of random stages. They share the layout and the sources'
+/// spectra; where LU's own bound on its error (see `Swept::doubt`) is below a tenth of what is allowed, both must agree. The bound is
+/// the response's; a noise current between two nodes whose transfers nearly cancel has a condition of its own, which badly scaled stages
+/// do not keep: there `noise` is left out.
+fn kernels(ohms: (f64, f64), farads: (f64, f64), share: f64, with_noise: bool) {
+    use stageleaf_math::{
+        analysis::sweep,
+        network::lu::Lu,
+        stage::{Ambient, Span},
+    };
+
+    const ALLOWED: f64 = 1e-9;
+    let (mut sound, mut all) = (0u32, 0u32);
+    for &kind in Kind::ALL {
+        for seed in 0..60 {
+            let mut stage = random_stage(&mut Draw(seed), kind, ohms, farads);
+            for (figure, value) in [
+                (PartFigure::NoiseVoltage, 5e-9),
+                (PartFigure::NoiseVoltageCorner, 30.0),
+                (PartFigure::NoiseCurrent, 1e-12),
+                (PartFigure::NoiseCurrentCorner, 100.0),
+            ] {
+                stage.part.state(figure, Rating::typical(value));
+            }
+            stage.ambient = Some(Ambient { range: Span::exact(300.0) });
+            let model = Model::compile(&stage);
+            if model.floating.islands > 0 {
+                continue;
+            }
+            let solution = Solution::new(&model, model.parameters.nominal(), None);
+            let frequencies: Vec<f64> = stageleaf_math::analysis::response::frequencies(1.0, 1e9, 16).collect();
+            let Some(lu) = Lu::compile(&solution, 1.0, 1e9) else { continue };
+            let swept = lu.sweep(&solution, &frequencies);
+            let response = sweep::ratio(&solution, solution.load_numerator(), &solution.looped().closed, &frequencies);
+            let noise = sweep::noise(&solution, &frequencies);
+            assert_eq!(noise.origins, swept.noise.origins);
+            for (i, frequency) in frequencies.iter().enumerate() {
+                all += 1;
+                if swept.doubt[i] <= ALLOWED / 10.0 {
+                    sound += 1;
+                    let what = format!("{kind:?} at {frequency:e}");
+                    compare(seed, &what, response[i], swept.response[i], ALLOWED, 0.0);
+                    let (ours, other) = (noise.total[i], swept.noise.total[i]);
+                    assert!(!with_noise || (ours - other).abs() <= ALLOWED * ours, "seed {seed}: noise of {what}: {ours:e} and {other:e}");
+                }
+            }
+        }
+    }
+    assert!(f64::from(sound) >= share * f64::from(all) && all > 5000, "{sound} of {all} points were well conditioned");
+}
+
+#[test]
+fn kernels_agree_on_well_scaled_stages() {
+    kernels((10.0, 1e6), (1e-12, 1e-7), 0.9, true);
+}
+
+#[test]
+fn kernels_agree_on_badly_scaled_stages() {
+    kernels((1e-2, 1e12), (1e-15, 1.0), 0.3, false);
+}

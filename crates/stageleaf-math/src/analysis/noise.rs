@@ -20,7 +20,7 @@ use alloc::vec::Vec;
 use core::f64::consts::TAU;
 
 use crate::{
-    network::{GROUND, Law},
+    network::{GROUND, Law, Node},
     part::PartFigure,
     polynomial::Polynomial,
     report::{DensityPoint, NoiseOrigin, NoiseShare, Parameter},
@@ -46,7 +46,7 @@ pub(super) struct Generator {
 }
 
 #[derive(Clone, Copy, Debug)]
-pub(super) enum Spectrum {
+pub(crate) enum Spectrum {
     /// Constant, V² or A² per Hz (scaled by the network's impedance for currents).
     White(f64),
     /// Thermal current of a series R–C: `4kTR·(ωC)²/(1 + (ωRC)²)`; `(4kTR·C², RC)`.
@@ -71,7 +71,7 @@ impl Spectrum {
         }
     }
 
-    pub(super) fn at_lanes(self, frequencies: &super::sweep::Lane) -> super::sweep::Lane {
+    pub(crate) fn at_lanes(self, frequencies: &super::sweep::Lane) -> super::sweep::Lane {
         match self {
             Self::White(level) => [level; super::sweep::LANES],
             Self::Flicker(level, corner, exponent) if (exponent - 1.0).abs() <= 0.0 => frequencies.map(|f| level * (1.0 + corner / f)),
@@ -87,12 +87,24 @@ pub fn current_noise_counts(solution: &Solution<'_>, amplifier: usize) -> bool {
     [amplifier.plus, amplifier.minus].iter().any(|n| !solution.from_current(*n).is_zero())
 }
 
-pub(super) fn generators(solution: &Solution<'_>) -> Vec<Generator> {
+/// Where a source acts.
+#[derive(Clone, Copy, Debug)]
+pub(crate) enum From {
+    /// A current from the second node to the first.
+    Between(Node, Node),
+    /// A current into a node.
+    Into(Node),
+    /// A voltage in series with an amplifier's input.
+    Input(usize),
+}
+
+/// Every source that reaches the load, with its spectrum.
+pub(crate) fn sources(solution: &Solution<'_>) -> Vec<(NoiseOrigin, From, Spectrum)> {
     let model = solution.model;
     let scale = model.scale.0;
     let temperature = model.parameters.temperature().map_or(0.0, |slot| solution.values[slot]);
     let thermal = 4.0 * BOLTZMANN * temperature * scale * scale;
-    let mut list: Vec<Generator> = Vec::new();
+    let mut list = Vec::new();
     for element in &model.network.elements {
         let Some(origin) = element.noise else { continue };
         let spectrum = match element.law {
@@ -103,32 +115,22 @@ pub(super) fn generators(solution: &Solution<'_>) -> Vec<Generator> {
             }
             _ => continue,
         };
-        let mut numerator = solution.from_current(element.a).clone();
-        numerator.add_scaled(&solution.from_current(element.b).0, -1.0);
-        list.push(Generator { origin, numerator, spectrum });
+        list.push((origin, From::Between(element.a, element.b), spectrum));
     }
     shot(solution, &mut list);
     for (index, amplifier) in (0u8..).zip(&model.network.amplifiers) {
         let part = |figure| solution.part_of(usize::from(index), figure);
         if let (Some(level), Some(corner)) = (part(PartFigure::NoiseVoltage), part(PartFigure::NoiseVoltageCorner)) {
             let exponent = part(PartFigure::NoiseExponent).unwrap_or(1.0);
-            list.push(Generator {
-                origin: NoiseOrigin::AmplifierVoltage(index),
-                numerator: solution.from_input(usize::from(index)).clone(),
-                spectrum: Spectrum::Flicker(level * level, corner, exponent),
-            });
+            let spectrum = Spectrum::Flicker(level * level, corner, exponent);
+            list.push((NoiseOrigin::AmplifierVoltage(index), From::Input(usize::from(index)), spectrum));
         }
         if let (Some(level), Some(corner)) = (part(PartFigure::NoiseCurrent), part(PartFigure::NoiseCurrentCorner)) {
             for (node, origin) in
                 [(amplifier.plus, NoiseOrigin::CurrentNonInverting(index)), (amplifier.minus, NoiseOrigin::CurrentInverting(index))]
             {
-                let numerator = solution.from_current(node);
-                if node != GROUND && !numerator.is_zero() {
-                    list.push(Generator {
-                        origin,
-                        numerator: numerator.clone(),
-                        spectrum: Spectrum::Flicker(level * level * scale * scale, corner, 1.0),
-                    });
+                if node != GROUND && !solution.from_current(node).is_zero() {
+                    list.push((origin, From::Into(node), Spectrum::Flicker(level * level * scale * scale, corner, 1.0)));
                 }
             }
         }
@@ -137,7 +139,7 @@ pub(super) fn generators(solution: &Solution<'_>) -> Vec<Generator> {
 }
 
 /// Shot noise `2qI` of photodiodes, at the most light that the signal brings: dark current, the signal's steady part and its peak.
-fn shot(solution: &Solution<'_>, list: &mut Vec<Generator>) {
+fn shot(solution: &Solution<'_>, list: &mut Vec<(NoiseOrigin, From, Spectrum)>) {
     let model = solution.model;
     let scale = model.scale.0;
     for (input, source) in (0u8..).zip(&model.stage.sources) {
@@ -145,12 +147,24 @@ fn shot(solution: &Solution<'_>, list: &mut Vec<Generator>) {
         let dark = model.parameters.slot(Parameter::DarkCurrent(input)).map_or(0.0, |slot| solution.values[slot]);
         let light = model.stage.signal_of(usize::from(input)).map_or(0.0, |s| s.dc.abs() + s.peak);
         let node = model.network.input_node(usize::from(input));
-        list.push(Generator {
-            origin: NoiseOrigin::SourceShot(input),
-            numerator: solution.from_current(node).clone(),
-            spectrum: Spectrum::White(2.0 * ELEMENTARY_CHARGE * (dark + light) * scale * scale),
-        });
+        let spectrum = Spectrum::White(2.0 * ELEMENTARY_CHARGE * (dark + light) * scale * scale);
+        list.push((NoiseOrigin::SourceShot(input), From::Into(node), spectrum));
     }
+}
+
+/// The sources with their transfers' numerators.
+pub(super) fn generators(solution: &Solution<'_>) -> Vec<Generator> {
+    let numerator = |from| match from {
+        From::Between(a, b) => {
+            let mut numerator = solution.from_current(a).clone();
+            numerator.add_scaled(&solution.from_current(b).0, -1.0);
+            numerator
+        }
+        From::Into(node) => solution.from_current(node).clone(),
+        From::Input(amplifier) => solution.from_input(amplifier).clone(),
+    };
+    let list = sources(solution).into_iter();
+    list.map(|(origin, from, spectrum)| Generator { origin, numerator: numerator(from), spectrum }).collect()
 }
 
 fn power(solution: &Solution<'_>, generator: &Generator, frequency: f64, below: f64) -> f64 {

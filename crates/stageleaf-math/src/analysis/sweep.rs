@@ -115,7 +115,7 @@ pub fn noise(solution: &Solution<'_>, frequencies: &[f64]) -> Noise {
 }
 
 /// A chunk's scaled angular frequencies; unused lanes repeat the last.
-fn lanes(solution: &Solution<'_>, chunk: &[f64]) -> Lane {
+pub(crate) fn lanes(solution: &Solution<'_>, chunk: &[f64]) -> Lane {
     let mut omega = [solution.scaled(chunk[chunk.len() - 1]); LANES];
     for (w, f) in omega.iter_mut().zip(chunk) {
         *w = solution.scaled(*f);

@@ -5,6 +5,7 @@
 
 pub mod dense;
 pub mod expand;
+pub mod lu;
 pub mod steady;
 
 use alloc::vec::Vec;
