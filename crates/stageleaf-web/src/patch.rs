@@ -57,6 +57,12 @@ fn morph(old: &Element, new: &Element) {
 }
 
 fn attributes(old: &Element, new: &Element) {
+    // Most elements on the way to what differs have the same attributes; asking for each costs a call into the page.
+    if let (Ok(there), Ok(wanted)) = (old.clone_node(), new.clone_node())
+        && there.is_equal_node(Some(&wanted))
+    {
+        return;
+    }
     let wanted = new.attributes();
     for index in 0..wanted.length() {
         let Some(attribute) = wanted.item(index) else { continue };
