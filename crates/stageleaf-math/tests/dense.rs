@@ -301,7 +301,7 @@ fn kernels(ohms: (f64, f64), farads: (f64, f64), share: f64, with_noise: bool) {
             ] {
                 stage.part.state(figure, Rating::typical(value));
             }
-            stage.ambient = Some(Ambient { range: Span::exact(300.0) });
+            stage.ambient = Some(Ambient { range: Span::exact(300.0), values_at: None });
             let model = Model::compile(&stage);
             if model.floating.islands > 0 {
                 continue;
