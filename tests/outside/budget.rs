@@ -61,6 +61,11 @@ pub const fn budget(figure: Figure) -> Exactness {
         Figure::FullPowerBandwidth => Relative(1e-9), // a closed form, or a root search
         // The last crossing of a sum of exponentials: the poles' error, more where it crosses at a shallow angle.
         Figure::StartupTime => Relative(1e-8),
+        // Bisected to 2⁻⁴⁰ of a step, on a waveform of rounding alone; where it is small, the output's own rounding over it counts.
+        Figure::Overshoot => Relative(1e-7),
+        Figure::SettlingTime => Relative(2e-6), // the last crossing of a band that is a part in a million of the output
+        // Quadrature of sixth order over steps of a hundredth of a period, and the finite slew at the clip's corners.
+        Figure::SlewClipDistortion => Relative(1e-5),
         Figure::SupplyCurrent | Figure::Dissipation | Figure::ResistorDissipation => Relative(1e-9), // closed forms
         // A linear network and pieces of a straight line; thresholds of some volts may lie near zero.
         Figure::ThresholdHigh | Figure::ThresholdLow | Figure::OutputHigh | Figure::OutputLow => Absolute(1e-10), // V

@@ -7,7 +7,7 @@ use stageleaf_math::{figure::Figure, kind::Kind};
 
 use crate::{
     circuits, dc, floating, gain, kinds, ledger::Ledger, loops, noise, oracle, oracle_around, oracle_kinds, oracle_switching, rejection,
-    swing, switching, thermal, whose,
+    swing, switching, thermal, waveform, whose,
 };
 
 /// Rows that are not checked here, with the reason.
@@ -46,6 +46,7 @@ fn everything() -> Ledger {
     oracle_around::all(&mut ledger);
     oracle_switching::all(&mut ledger);
     switching::all(&mut ledger);
+    waveform::all(&mut ledger);
     ledger
 }
 

@@ -25,4 +25,5 @@ mod swing;
 mod switching;
 mod table;
 mod thermal;
+mod waveform;
 mod whose;

@@ -91,7 +91,9 @@ pub fn analyse_with(stage: &Stage, detail: Detail, plans: &Plans) -> Result<Repo
     let near = if switches { Roots::default() } else { first.roots() };
     let mut spread = Spread::new(&model, &near);
     let queries = queries(stage);
-    let judged = |query: &Query| detail == Detail::Full || stage.limits.iter().any(|l| l.query == *query);
+    // A waveform takes some hundred times what other figures take: its range is sought where a limit asks for it.
+    let costly = |query: &Query| matches!(query.figure, Figure::SlewClipDistortion | Figure::Overshoot);
+    let judged = |query: &Query| detail == Detail::Full && !costly(query) || stage.limits.iter().any(|l| l.query == *query);
     spread.prepare(queries.iter().copied().filter(judged));
     let figures = queries
         .into_iter()
@@ -210,7 +212,14 @@ fn limit_row(spread: &mut Spread<'_>, limit: &Limit) -> LimitRow {
         (Outcome::Oscillates | Outcome::NoDcPath(_) | Outcome::NoSteadyTemperature, ..) => Verdict::Breaks,
         _ => Verdict::Undetermined,
     };
-    let extreme = extreme.clone();
+    let mut extreme = extreme.clone();
+    let (verdict, margin) = match extreme.outcome {
+        Outcome::Value(least) if query.is_lower_bound() && matches!(verdict, Verdict::Holds | Verdict::Thin) => {
+            extreme.outcome = Outcome::AtLeast(least);
+            (Verdict::Undetermined, None)
+        }
+        _ => (verdict, margin),
+    };
     let amplifier = match limit.bound {
         Bound::Report => whose(&spread.nominal, query, &nominal),
         _ => whose(&spread.at(&extreme), query, &extreme.outcome),

@@ -12,6 +12,7 @@ pub struct Definition {
 }
 
 const NODAL: &str = "modified nodal analysis: C.-W. Ho, A. Ruehli, P. Brennan, IEEE Trans. Circuits and Systems 22 (1975), from memory";
+const STATE: &str = "state equations from a tree of capacitors: E. S. Kuh, R. A. Rohrer, Proc. IEEE 53 (1965), from memory; stepped by the matrix exponential";
 const RATIO: &str = "return ratio: H. W. Bode, Network Analysis and Feedback Amplifier Design (1945), from memory";
 const NOISE: &str = "adjoint network: R. Rohrer, L. Nagel, R. Meyer, L. Weber, IEEE J. Solid-State Circuits 6 (1971), from memory";
 const KIRCHHOFF: &str = "Kirchhoff's laws for the network at rest, derived here";
@@ -64,6 +65,11 @@ impl Figure {
             Self::CurrentMargin => ("ΔI = I_limit − |I| at the pin, I = V·(Y_load + Y_feedback)", NODAL),
             Self::SlewMargin => ("SR_available/max |dV/dt| at the pin", COMMON),
             Self::FullPowerBandwidth => ("f at which slew, current or a rail first bounds the stated amplitude", COMMON),
+            Self::Overshoot => ("(max v − v∞)/(v∞ − v0) of the linear step response", STATE),
+            Self::SettlingTime => ("t after which |v − v∞| ≤ ε·step, slew, rails and current limit in v(t)", STATE),
+            Self::SlewClipDistortion => {
+                ("THD = √(Σ V_k², k ≥ 2)/V_1 of the period that repeats itself, slew, rails and current limit in v(t)", STATE)
+            }
             Self::SupplyCurrent => ("I = I_q + ⟨I⁺⟩ from the positive rail", MEAN),
             Self::Dissipation => ("P = (V₊ − V₋)·I_q + V₊·⟨I⁺⟩ − V₋·⟨I⁻⟩ − ⟨V·I⟩, worst amplitude", MEAN),
             Self::JunctionTemperature => ("T_j = T_a + θ·P", "JEDEC JESD51-2, the definition of θ, from memory"),

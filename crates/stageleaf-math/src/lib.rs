@@ -11,7 +11,7 @@
 //! SI throughout: K, rad, fractions for tolerances, V/V for what is read in dB. Text, prefixes and files are other crates' business.
 //!
 //! # What is not modelled
-//! See [`NOT_MODELLED`]; time-domain responses and sampled yields are not there yet.
+//! See [`NOT_MODELLED`]; sampled yields are not there yet.
 //!
 //! # Example
 //! A divider of 9 kΩ and 1 kΩ around an amplifier with an open-loop gain of a million: see [`analyse`].

@@ -89,6 +89,8 @@ pub struct Terminal {
 pub enum Outcome {
     /// The value in SI units. Infinite where a bound is never reached (a gain margin without a −180° crossing).
     Value(f64),
+    /// At least this, in SI units: what the model leaves out would add to it, so no limit holds by it.
+    AtLeast(f64),
     /// Data are missing.
     Undetermined(Vec<Need>),
     /// The figure means nothing here; why.

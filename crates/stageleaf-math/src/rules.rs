@@ -153,7 +153,10 @@ impl<'s> Facts<'s> {
             | F::Hysteresis
             | F::ResponseTime
             | F::OutputHigh
-            | F::OutputLow => None,
+            | F::OutputLow
+            | F::Overshoot
+            | F::SettlingTime
+            | F::SlewClipDistortion => None,
             F::StartupTime => {
                 let (upper, lower, c) = (self.component("Rb1")?, self.component("Rb2")?, self.component("Cb")?);
                 let numbers = vec![("Rb1", upper, D::Resistance), ("Rb2", lower, D::Resistance), ("Cb", c, D::Capacitance)];

@@ -122,8 +122,13 @@ pub fn check(stage: &Stage) -> Result<(), Error> {
         span("signal.common_mode", common.low, common.high)?;
     }
     for limit in &stage.limits {
-        if matches!(limit.query.figure.argument(), Argument::Frequency) {
-            positive(limit.query.figure.id(), limit.query.at.unwrap_or(0.0))?;
+        match limit.query.figure.argument() {
+            Argument::None => {}
+            Argument::Frequency => positive(limit.query.figure.id(), limit.query.at.unwrap_or(0.0))?,
+            Argument::Settling => {
+                positive(limit.query.figure.id(), limit.query.at.unwrap_or(0.0))?;
+                positive(limit.query.figure.id(), limit.query.step.unwrap_or(0.0))?;
+            }
         }
     }
     for amplifier in 0..stage.kind.spec().amplifiers {

@@ -60,7 +60,7 @@ pub use markdown::{Note, Quote, duplicate_names, read_note};
 pub use print::{code, format, full, spoken};
 pub use problem::Problem;
 pub use quantity::{Trouble, parse};
-pub use query::{fingerprint, of_text, parse_query, query_anchor, query_text, slug};
+pub use query::{argument_text, fingerprint, of_text, parse_query, query_anchor, query_text, slug};
 pub use quoting::{quote_agrees, quote_for};
 pub use settings::Settings;
 #[cfg(feature = "toml")]

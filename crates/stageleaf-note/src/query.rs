@@ -16,6 +16,7 @@ use crate::{
 };
 
 const ALLOWED: &str = "a figure id, with its frequency where it takes one (`gain_at 20 kHz`)";
+const SETTLING: &str = "an error and a step of the output, as `settling_time to 0.1 % after 1 V`";
 
 /// A stage's name as it stands in links: lower-case letters and digits with single dashes between.
 ///
@@ -40,14 +41,24 @@ pub fn slug(name: &str) -> String {
 /// A figure with its argument, as limits name it: "bandwidth", "gain_at 20 kHz".
 #[must_use]
 pub fn query_text(q: Query) -> String {
-    let mut text: String = match q.at {
-        Some(at) => format!("{} {}", q.figure.id(), full(at, Dimension::Frequency)),
+    let mut text: String = match argument_text(q, full) {
+        Some(argument) => format!("{} {argument}", q.figure.id()),
         None => q.figure.id().into(),
     };
     if let Some(of) = q.of {
         text += &of_text(of);
     }
     text
+}
+
+/// A figure's argument alone: "20 kHz", "to 0.1 % after 1 V"; `show` makes text of a number.
+#[must_use]
+pub fn argument_text(q: Query, show: impl Fn(f64, Dimension) -> String) -> Option<String> {
+    match (q.at, q.step) {
+        (Some(error), Some(step)) => Some(format!("to {} after {}", show(error, Dimension::Fraction), show(step, Dimension::Voltage))),
+        (Some(at), None) => Some(show(at, Dimension::Frequency)),
+        (None, _) => None,
+    }
 }
 
 /// What a figure is taken of: " of A2", " from in2".
@@ -97,6 +108,7 @@ pub fn parse_query(text: &str) -> Result<Query, Trouble> {
     let query = |query: Query| Query { of, ..query };
     match (figure.argument(), argument.is_empty()) {
         (Argument::None, true) => Ok(query(Query::of(figure))),
+        (Argument::Settling, _) => settling(argument).map(query).map_err(|t| t.shifted(argument_range.start)),
         (Argument::None, false) => {
             trouble(argument_range, format!("`{id}` takes no frequency; {} was given", quoted(argument)), Some(id.into()))
         }
@@ -148,6 +160,23 @@ fn read_of(figure: Figure, word: &str, name: &str) -> Result<Of, (String, String
             Err((format!("`{id}` is no amplifier's: `of` says nothing"), format!("`{id} from in2`, or `{id}` for the first input")))
         }
         (Scope::Stage, _) => Err((format!("`{id}` is the whole stage's: `{word} {name}` says nothing"), format!("`{id}`"))),
+    }
+}
+
+/// Reads "to 0.1 % after 1 V".
+fn settling(argument: &str) -> Result<Query, Trouble> {
+    let whole = |message| Trouble { range: 0..argument.len(), message, allowed: SETTLING.into(), attempt: None };
+    let parts = argument.strip_prefix("to ").and_then(|rest| rest.split_once(" after "));
+    let Some((error, step)) = parts else {
+        let given = if argument.is_empty() { String::new() } else { format!("; {} was given", quoted(argument)) };
+        return Err(whole(format!("`settling_time` needs an error and a step{given}")));
+    };
+    let number = |text: &str, at: usize, dimension| parse(text, dimension).map_err(|t| t.shifted(at));
+    let (error, step) = (number(error, 3, Dimension::Fraction)?, number(step, argument.len() - step.len(), Dimension::Voltage)?);
+    if error > 0.0 && error < 1.0 && step > 0.0 {
+        Ok(Query::settling(error, step))
+    } else {
+        Err(whole(format!("`settling_time` takes an error between 0 and 100 % and a step above zero; {} was given", quoted(argument))))
     }
 }
 
@@ -204,7 +233,7 @@ mod tests {
 
     #[test]
     fn figures_with_arguments_round_trip() {
-        for text in ["bandwidth", "gain_at 20 kHz", "noise_density_at 1.5 MHz", "phase_at 10 Hz"] {
+        for text in ["bandwidth", "settling_time to 0.1 % after 1 V", "gain_at 20 kHz", "noise_density_at 1.5 MHz", "phase_at 10 Hz"] {
             let query = parse_query(text).unwrap();
             assert_eq!(query_text(query), text);
             assert_eq!(parse_anchor(&query_anchor(query)), Ok(query));

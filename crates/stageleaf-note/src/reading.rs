@@ -316,7 +316,7 @@ fn limits<'a>(reader: &mut Reader<'a>, entry: Option<Entry<'a>>, kind: Option<Ki
             reader.text(&entry, &path);
             continue;
         };
-        if !named.insert((query.figure, query.at.map(f64::to_bits), query.of)) {
+        if !named.insert((query.figure, query.at.map(f64::to_bits), query.step.map(f64::to_bits), query.of)) {
             reader.problem(entry.key_range(), format!("`{}` has a limit already", shown(entry.key)), "one limit for each figure", None);
         }
         let d = kind.map_or(query.figure.dimension(), |k| query.figure.dimension_in(k));

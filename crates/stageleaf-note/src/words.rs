@@ -262,6 +262,9 @@ pub fn origin_text(origin: NoiseOrigin) -> String {
 pub fn outcome_text(outcome: &Outcome, d: Dimension, digits: usize) -> String {
     match outcome {
         Outcome::Value(value) => format(*value, d, digits),
+        Outcome::AtLeast(value) => {
+            format!("at least {}, a lower bound: it can break a limit but not make it hold", format(*value, d, digits))
+        }
         Outcome::Undetermined(needs) => {
             let keys: Vec<String> = needs.iter().map(|n| format!("`{}`", n.key())).collect();
             if keys.is_empty() { "undetermined".into() } else { format!("undetermined: needs {}", keys.join(", ")) }

@@ -211,8 +211,8 @@ pub fn announcement(before: &[(String, Verdict)], after: &[(String, Verdict)]) -
 }
 
 fn heading(query: stageleaf_math::figure::Query) -> String {
-    let title = match query.at {
-        Some(at) => format!("{} {}", query.figure.title(), stageleaf_note::format(at, stageleaf_math::dimension::Dimension::Frequency, 3)),
+    let title = match stageleaf_note::argument_text(query, |v, d| stageleaf_note::format(v, d, 3)) {
+        Some(argument) => format!("{} {argument}", query.figure.title()),
         None => query.figure.title().to_owned(),
     };
     query.of.map_or(title.clone(), |of| title + &stageleaf_note::of_text(of))

@@ -108,6 +108,9 @@ fn general(figure: Figure) -> String {
     labelled(&mut text, "group", group_words(figure.group()));
     match figure.argument() {
         Argument::None => labelled(&mut text, "limit", &format!("{} = \"…\"", figure.id())),
+        Argument::Settling => {
+            labelled(&mut text, "limit", &format!("\"{} to 0.1 % after 1 V\" = \"…\": it takes an error and a step", figure.id()));
+        }
         Argument::Frequency => labelled(&mut text, "limit", &format!("\"{} 20 kHz\" = \"…\": it takes a frequency", figure.id())),
     }
     match figure.scope() {
@@ -146,7 +149,7 @@ fn stage(block: &Block, team: &Team, figure: Figure, query: Option<Query>, text:
     let queries: Vec<Query> = match (query, figure.argument()) {
         (Some(query), _) => vec![query],
         (None, Argument::None) => vec![Query::of(figure)],
-        (None, Argument::Frequency) => stage.limits.iter().map(|l| l.query).filter(|q| q.figure == figure).collect(),
+        (None, Argument::Frequency | Argument::Settling) => stage.limits.iter().map(|l| l.query).filter(|q| q.figure == figure).collect(),
     };
     if queries.is_empty() {
         let message = format!("`{}` needs a frequency, and no limit of the stage “{}” states one", figure.id(), plain(&stage.name));

@@ -15,6 +15,7 @@ pub mod sweep;
 pub mod swing;
 pub mod switching;
 pub mod thermal;
+pub mod waveform;
 
 use alloc::vec::Vec;
 
@@ -63,6 +64,8 @@ pub const fn touched_by(figure: Figure) -> u8 {
         | F::SlewMargin
         | F::FullPowerBandwidth
         | F::AcquisitionError => touch::SWING,
+        F::Overshoot => touch::NETWORK,
+        F::SettlingTime | F::SlewClipDistortion => touch::NETWORK | touch::SWING,
         F::SupplyCurrent | F::Dissipation | F::JunctionTemperature | F::ResistorDissipation => touch::POWER,
         F::StartupTime => touch::SWING,
         F::ThresholdHigh | F::ThresholdLow | F::Hysteresis | F::ResponseTime | F::OutputHigh | F::OutputLow => touch::DC | touch::SWING,
@@ -85,6 +88,7 @@ pub fn reaches(model: &Model<'_>, parameter: Parameter, figure: Figure) -> bool 
             || matches!(figure, F::JunctionTemperature)
             || part != P::JunctionToAmbient && matches!(figure, F::SupplyCurrent | F::Dissipation)
     };
+    let is_waveform = matches!(figure, F::SettlingTime | F::SlewClipDistortion);
     match parameter {
         Parameter::Part(part) | Parameter::PartOf(_, part) => match part {
             P::Offset | P::OffsetCurrent => matches!(figure, F::OutputOffset | F::InputOffset | F::ClipMargin | F::FullScaleMargin),
@@ -101,11 +105,13 @@ pub fn reaches(model: &Model<'_>, parameter: Parameter, figure: Figure) -> bool 
             }
             P::RangeFromNegative | P::RangeFromPositive => matches!(figure, F::InputRangeMargin),
             P::SlewRise | P::SlewFall => {
-                matches!(figure, F::SlewMargin | F::FullPowerBandwidth | F::AcquisitionError | F::StartupTime)
+                matches!(figure, F::SlewMargin | F::FullPowerBandwidth | F::AcquisitionError | F::StartupTime) || is_waveform
             }
             P::Startup => matches!(figure, F::StartupTime),
             P::CurrentLimit => {
-                matches!(figure, F::CurrentMargin | F::SlewMargin | F::FullPowerBandwidth | F::AcquisitionError) || by_heat(part)
+                matches!(figure, F::CurrentMargin | F::SlewMargin | F::FullPowerBandwidth | F::AcquisitionError)
+                    || is_waveform
+                    || by_heat(part)
             }
             P::SupplyCurrent | P::JunctionToAmbient => by_heat(part),
             P::OpenLoop
@@ -131,7 +137,7 @@ pub fn reaches(model: &Model<'_>, parameter: Parameter, figure: Figure) -> bool 
             | P::OverloadRecovery
             | P::JunctionMax => true,
         },
-        Parameter::Headroom => matches!(figure, F::ClipMargin),
+        Parameter::Headroom => matches!(figure, F::ClipMargin) || is_waveform,
         Parameter::Temperature => !matches!(
             figure,
             F::StageCmrr
@@ -145,6 +151,9 @@ pub fn reaches(model: &Model<'_>, parameter: Parameter, figure: Figure) -> bool 
                 | F::FullPowerBandwidth
                 | F::AcquisitionError
                 | F::StartupTime
+                | F::Overshoot
+                | F::SettlingTime
+                | F::SlewClipDistortion
                 | F::SupplyCurrent
                 | F::Dissipation
                 | F::ResistorDissipation
@@ -243,6 +252,16 @@ pub fn lacking(solution: &Solution<'_>, query: Query) -> Option<Outcome> {
             missing.signal_level(solution);
             missing.part(solution, PartFigure::SlewRise);
             missing.part(solution, PartFigure::SlewFall);
+        }
+        F::Overshoot => missing.small_signal(solution),
+        F::SettlingTime => {
+            missing.small_signal(solution);
+            missing.limits(solution);
+        }
+        F::SlewClipDistortion => {
+            missing.signal_level(solution);
+            missing.amplitude(solution.model.stage.signals.get(..1).unwrap_or_default().iter().flatten().copied());
+            missing.limits(solution);
         }
         F::SupplyCurrent => missing.part(solution, PartFigure::SupplyCurrent),
         F::Dissipation | F::JunctionTemperature => {
@@ -358,6 +377,12 @@ pub fn value(solution: &Solution<'_>, query: Query) -> Outcome {
         F::CurrentMargin => return swing::current_margin(solution, amplifier),
         F::SlewMargin => return swing::slew_margin(solution, amplifier),
         F::FullPowerBandwidth => return swing::full_power_bandwidth(solution, amplifier),
+        F::Overshoot => return waveform::figures::overshoot(solution),
+        F::SettlingTime => {
+            let (error, step) = (query.at.unwrap_or(0.0), query.step.unwrap_or(0.0));
+            return waveform::figures::settling_time(solution, waveform::figures::Settling { error, step });
+        }
+        F::SlewClipDistortion => return waveform::figures::slew_clip_distortion(solution),
         F::SupplyCurrent => return thermal::power(solution).supply_current.clone(),
         F::Dissipation => return thermal::hottest(solution, amplifier, |p| &p.dissipation),
         F::JunctionTemperature => return thermal::hottest(solution, amplifier, |p| &p.junction),
@@ -445,7 +470,10 @@ pub fn at_dc(solution: &Solution<'_>, figure: Figure) -> bool {
         | F::Hysteresis
         | F::ResponseTime
         | F::OutputHigh
-        | F::OutputLow => false,
+        | F::OutputLow
+        | F::Overshoot
+        | F::SettlingTime
+        | F::SlewClipDistortion => false,
     }
 }
 
@@ -526,6 +554,23 @@ impl Missing {
     pub fn supply(&mut self, solution: &Solution<'_>) {
         if solution.model.parameters.supply().is_none() {
             self.need(Need::Supply);
+        }
+    }
+
+    /// Needs all that bounds an output: slew rate, current limit, rails.
+    pub fn limits(&mut self, solution: &Solution<'_>) {
+        for figure in [PartFigure::SlewRise, PartFigure::SlewFall, PartFigure::CurrentLimit] {
+            self.part(solution, figure);
+        }
+        self.supply(solution);
+        for amplifier in 0..solution.amplifiers() {
+            let part = solution.model.stage.part_of(amplifier);
+            if part.headroom_high.is_empty() {
+                self.need(Need::HeadroomHigh);
+            }
+            if part.headroom_low.is_empty() {
+                self.need(Need::HeadroomLow);
+            }
         }
     }
 

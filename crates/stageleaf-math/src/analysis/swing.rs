@@ -165,7 +165,7 @@ pub(super) fn row_volts(row: &Headroom, position: f64) -> f64 {
 
 /// Headroom at a current, between typical (0) and guaranteed (1), and whether the table states it: beyond its last row the headroom is at
 /// least that row's.
-fn headroom(table: &[Headroom], position: f64, current: f64) -> (f64, bool) {
+pub(super) fn headroom(table: &[Headroom], position: f64, current: f64) -> (f64, bool) {
     let volts = |row: &Headroom| row_volts(row, position);
     let Some(first) = table.first() else { return (0.0, false) };
     if current <= first.current {

@@ -351,6 +351,9 @@ pub fn lacking(solution: &Solution<'_>, figure: Figure) -> Option<Outcome> {
         | F::StagePsrr
         | F::StagePsrrAt
         | F::RippleOutput
+        | F::Overshoot
+        | F::SettlingTime
+        | F::SlewClipDistortion
         | F::OutputNoise
         | F::InputNoise
         | F::OutputNoisePeakToPeak

@@ -55,7 +55,7 @@ fn plain_title(sheet: &Sheet, query: Query) -> String {
     let hertz = |f: f64| trimmed(f, Dimension::Frequency, 6);
     let signal = sheet.block.stage.signal().and_then(|s| s.frequency);
     match (query.at, query.figure) {
-        (Some(f), _) => format!("{title} {}", hertz(f)),
+        (Some(_), _) => format!("{title} {}", stageleaf_note::argument_text(query, |v, d| trimmed(v, d, 6)).unwrap_or_default()),
         (None, Figure::InputImpedance | Figure::OutputImpedance) => {
             let what = title.trim_end_matches(" at the signal");
             signal.map_or_else(|| format!("{what} at DC"), |f| format!("{what} at {}", hertz(f)))

@@ -205,6 +205,7 @@ fn amplifier(number: Option<u8>) -> Option<String> {
 #[derive(Debug, Serialize)]
 #[serde(rename_all = "snake_case")]
 enum Other {
+    AtLeast(f64),
     Undetermined(String),
     DoesNotApply(String),
     Oscillates(bool),
@@ -219,6 +220,7 @@ impl Other {
             Outcome::Oscillates => Self::Oscillates(true),
             Outcome::NoDcPath(_) => Self::NoDcPath(true),
             Outcome::NoSteadyTemperature => Self::NoSteadyTemperature(true),
+            Outcome::AtLeast(least) => Self::AtLeast(*least),
             Outcome::OutOfReach(why) => Self::Undetermined((*why).to_owned()),
             Outcome::Undetermined(_) | Outcome::Value(_) => Self::Undetermined(outcome_words(outcome, dimension, part)),
         }

@@ -127,6 +127,7 @@ fn figure_text(change: &FigureChange<'_>, all: bool) -> Option<String> {
 const fn short(outcome: &Outcome) -> &'static str {
     match outcome {
         Outcome::Value(_) => "",
+        Outcome::AtLeast(_) => "a lower bound",
         Outcome::Undetermined(_) | Outcome::OutOfReach(_) => "undetermined",
         Outcome::DoesNotApply(_) => "does not apply",
         Outcome::Oscillates => "oscillates",
