@@ -112,6 +112,9 @@ pub(crate) fn cautions(spread: &mut Spread<'_>) -> Vec<Caution> {
             list.push(Caution::Chatter { hysteresis, disturbance });
         }
     }
+    if !switches && !list.contains(&Caution::Oscillates) && spread.oscillated() {
+        list.push(Caution::OscillatesWithin);
+    }
     let solution = &spread.nominal;
     let exact: Vec<_> = stage.components.iter().filter(|c| c.value.minus + c.value.plus <= 0.0).map(|c| c.name).collect();
     if !exact.is_empty() {

@@ -424,6 +424,8 @@ pub enum Caution {
     TakenAsIdeal(PartFigure),
     /// A closed-loop pole lies in the right half plane.
     Oscillates,
+    /// Not at nominal values, but in a build that the tolerances allow.
+    OscillatesWithin,
     /// At nominal values the stated signal already exceeds what the amplifier can do.
     Exceeded {
         /// `clip_margin`, `input_range_margin`, `current_margin` or `slew_margin`.

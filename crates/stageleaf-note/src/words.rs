@@ -192,6 +192,7 @@ pub fn caution_text(caution: &Caution) -> String {
             format!("The part states no {} ({}); the small-signal figures take it as ideal.", figure.meaning(), figure.id())
         }
         Caution::Oscillates => "The stage oscillates: a closed-loop pole lies in the right half plane.".into(),
+        Caution::OscillatesWithin => "The stage oscillates in a build that the tolerances allow.".into(),
         Caution::Exceeded { figure, margin } => match figure {
             Figure::ClipMargin => {
                 format!("At nominal values the signal clips: the output lacks {}.", trimmed(-margin, Dimension::Voltage, 3))

@@ -118,6 +118,8 @@ fn text(of: &AskedStage, list: &[Alternate], all: bool, colour: bool) -> String 
             ("undetermined", Ink::Watch)
         } else if a.thin > 0 {
             ("thin", Ink::Watch)
+        } else if a.holds == 0 {
+            ("not judged", Ink::Quiet)
         } else {
             ("holds", Ink::Good)
         };

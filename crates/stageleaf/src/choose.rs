@@ -15,7 +15,7 @@ use stageleaf_math::{
     search::choose::{Choice, Refusal, Response, Stock, Target, choose},
     series::Series,
 };
-use stageleaf_note::{Trouble, code, format as quantity_text, parse, problem::nearest, query_text};
+use stageleaf_note::{Trouble, code, format as quantity_text, parse, problem::nearest, query_text, words::caution_text};
 
 use crate::{
     asked::{self, AskedStage},
@@ -98,7 +98,7 @@ pub fn run(options: &Options, terminal: &mut Terminal) -> Ending {
     match values(options, chosen) {
         Ok((targets, choices)) => {
             terminal.out(&text(chosen, &targets, &choices, terminal.colour()));
-            let kept = choices.iter().any(|c| c.lost.is_empty());
+            let kept = choices.iter().any(Choice::survives);
             match (asked.faults.is_empty(), kept) {
                 (false, _) => Ending::BadInput,
                 (true, false) => Ending::Broken,
@@ -126,6 +126,17 @@ fn values(options: &Options, of: &AskedStage) -> Result<(Vec<Target>, Vec<Choice
             });
         }
     }
+    // The sign is the kind's: nobody can choose it.
+    let inverts = (stage.kind.spec().ideal_gain)(stage) < 0.0;
+    let targets: Vec<Target> = match targets.iter().find(|t| t.figure == Figure::Gain && t.value < 0.0 && !inverts) {
+        Some(_) => {
+            return Err(Fault::path("gain", format!("a stage of kind {} does not invert: its gain is above zero", stage.kind.id())));
+        }
+        None => targets
+            .into_iter()
+            .map(|t| if t.figure == Figure::Gain && inverts { Target { value: -t.value.abs(), ..t } } else { t })
+            .collect(),
+    };
     let stock = stock(options, of)?;
     let held: Vec<&str> = options.hold.iter().map(String::as_str).collect();
     let choices = choose(stage, &targets, &held, &stock).map_err(|refusal| refused(&refusal, stage.kind))?;
@@ -332,7 +343,12 @@ fn text(of: &AskedStage, targets: &[Target], choices: &[Choice], colour: bool) -
     );
     for choice in choices.iter().take(SHOWN) {
         let values: Vec<String> = choice.values.iter().map(|(name, value)| format!("{name} {}", value_text(of, name, *value))).collect();
-        let (word, ink) = if choice.lost.is_empty() { ("holds", Ink::Good) } else { ("breaks", Ink::Bad) };
+        let (word, ink) = match (choice.survives(), choice.cautions.is_empty(), stage.limits.is_empty()) {
+            (true, _, true) => ("fits", Ink::Quiet),
+            (true, _, false) => ("holds", Ink::Good),
+            (false, true, _) => ("breaks", Ink::Bad),
+            (false, false, _) => ("cannot work", Ink::Bad),
+        };
         line(&mut text, &format!("  {}  {}", paint(word, ink, colour), values.join("  ")));
         for reached in &choice.reached {
             let d = reached.target.figure.dimension_in(stage.kind);
@@ -348,14 +364,17 @@ fn text(of: &AskedStage, targets: &[Target], choices: &[Choice], colour: bool) -
         if let Some(noise) = choice.noise {
             line(&mut text, &format!("         output noise {}", quantity_text(noise, Dimension::Voltage, 3)));
         }
+        for caution in &choice.cautions {
+            line(&mut text, &format!("         {}", plain(&caution_text(caution))));
+        }
         if !choice.lost.is_empty() {
             let lost: Vec<String> = choice.lost.iter().map(|l| query_text(l.query)).collect();
             line(&mut text, &format!("         not kept: {}", lost.join(", ")));
         }
     }
-    let rejected = choices.iter().filter(|c| !c.lost.is_empty()).count();
+    let rejected = choices.iter().filter(|c| !c.survives()).count();
     line(&mut text, &format!("  {} judged in full at the worst case; {rejected} lose a limit", choices.len()));
-    if let Some(first) = choices.first().filter(|c| c.lost.is_empty()) {
+    if let Some(first) = choices.first().filter(|c| c.survives()) {
         text.push_str("\n  [components]\n");
         for (name, _) in &first.values {
             let value = first.values.iter().find(|(n, _)| n == name).map_or(0.0, |v| v.1);

@@ -3,10 +3,12 @@
 use std::{fmt::Write as _, path::PathBuf};
 
 use clap::Args;
+use rayon::prelude::*;
 use stageleaf_math::{
     dimension::Dimension,
     limit::Limit,
-    search::needs::{Edge, Needs, Room, needs},
+    part::PartFigure,
+    search::needs::{Edge, Needs, Room, lost_now, part_need, tolerance_need},
 };
 use stageleaf_note::{print::trimmed, query_text, words::rating_text};
 
@@ -38,14 +40,12 @@ pub fn run(options: &Options, terminal: &mut Terminal) -> Ending {
     }
     for of in &asked.stages {
         let stage = &of.stage.block.stage;
-        let found = needs(stage, |done, all| {
-            terminal.progress(&format!("{}: {done} of {all}", plain(&stage.name)));
-            true
-        });
+        terminal.progress(&format!("{}: figures and components, one after the other", plain(&stage.name)));
+        // Each figure and each component is a search of its own.
+        let part = PartFigure::ALL.par_iter().filter_map(|figure| part_need(stage, *figure)).collect();
+        let tolerances = (0..stage.components.len()).into_par_iter().map(|index| tolerance_need(stage, index)).collect();
         terminal.clear();
-        if let Some(found) = found {
-            terminal.out(&text(of, &found));
-        }
+        terminal.out(&text(of, &Needs { part, tolerances, lost_now: lost_now(stage) }));
     }
     if asked.faults.is_empty() { Ending::Good } else { Ending::BadInput }
 }

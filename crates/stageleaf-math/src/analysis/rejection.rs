@@ -26,6 +26,7 @@ use num_complex::Complex64;
 
 use super::response;
 use crate::{
+    dimension::Dimension,
     kind::{Drives, Feed},
     network::Node,
     part::PartFigure,
@@ -84,6 +85,9 @@ pub fn stage_cmrr(solution: &Solution<'_>, frequency: f64) -> Outcome {
 /// Change of a supply over the change that it makes, referred to the input, at a frequency in Hz, 0 for DC; the worse of the two rails.
 #[must_use]
 pub fn stage_psrr(solution: &Solution<'_>, frequency: f64) -> Outcome {
+    if !matches!(solution.model.stage.kind.spec().gain, Dimension::Gain) {
+        return Outcome::DoesNotApply("the input is no voltage to which a supply's change could be referred: see ripple_output");
+    }
     let omega = solution.scaled(frequency);
     // Referred to the input by the gain of the pass band.
     let gain = response::reference(solution).gain.abs();

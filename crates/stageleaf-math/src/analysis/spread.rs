@@ -20,6 +20,7 @@ use alloc::{rc::Rc, vec::Vec};
 
 use super::{lacking, reaches, touched_by, value};
 use crate::{
+    dimension::Dimension,
     figure::{Figure, Query},
     kept::Kept,
     limit::Basis,
@@ -480,6 +481,13 @@ impl<'m> Spread<'m> {
         Extreme { outcome: result, corner, effects, ends }
     }
 
+    /// Whether a build that was looked at oscillates.
+    #[must_use]
+    pub fn oscillated(&self) -> bool {
+        let does = |outcome: &Outcome| matches!(outcome, Outcome::Oscillates);
+        self.known.iter().any(|(_, extremes)| does(&extremes.low.outcome) || does(&extremes.high.outcome))
+    }
+
     /// The stage's kind.
     #[must_use]
     pub fn kind(&self) -> crate::kind::Kind {
@@ -557,7 +565,12 @@ impl<'m> Spread<'m> {
         let turned = touched & touch::DC != 0 || flat(query, &extremes.centre) && !flat(query, &extreme.outcome);
         let measure = |at_extreme: bool| {
             let from = if at_extreme { &extreme.outcome } else { &extremes.centre };
-            (from, COUNTS * from.value().filter(|v| v.is_finite()).map_or(0.0, f64::abs))
+            let scale = match query.figure.dimension() {
+                // Bits are a logarithm: what counts is the ratio behind them.
+                Dimension::Bits => core::f64::consts::LOG2_E,
+                _ => from.value().filter(|v| v.is_finite()).map_or(0.0, f64::abs),
+            };
+            (from, COUNTS * scale)
         };
         let (mut guaranteed, mut typical) = (false, false);
         // What was seen before costs nothing; builds are solved only for a grade that is not found yet.

@@ -45,6 +45,8 @@ pub const fn forbids(caution: &Caution) -> bool {
     matches!(
         caution,
         Caution::Oscillates
+            | Caution::OscillatesWithin
+            | Caution::Exceeded { .. }
             | Caution::SupplySpan { .. }
             | Caution::JunctionHot { .. }
             | Caution::ThermalRunaway

@@ -16,7 +16,7 @@ use crate::{
     figure::{Figure, Query},
     kind::Kind,
     limit::{Bound, Limit, Thin, Verdict},
-    report::Outcome,
+    report::{Caution, Outcome},
     stage::Stage,
 };
 
@@ -24,6 +24,10 @@ use crate::{
 const JUDGED: usize = 40;
 /// Combinations of capacitors that are tried at most.
 const COMBINATIONS: usize = 20_000;
+/// Proposals that miss a target by this much more than the best one are left out.
+const NEAR: f64 = 0.02;
+/// A miss that is no choice any more.
+const FAR: f64 = 0.1;
 
 /// A figure and the value that it should have.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -73,6 +77,16 @@ pub struct Choice {
     pub noise: Option<f64>,
     /// Limits that break or cannot be judged.
     pub lost: Vec<Limit>,
+    /// Cautions by which the stage cannot work with these values.
+    pub cautions: Vec<Caution>,
+}
+
+impl Choice {
+    /// Whether every limit is kept, and nothing says that the stage cannot work.
+    #[must_use]
+    pub fn survives(&self) -> bool {
+        self.lost.is_empty() && self.cautions.is_empty()
+    }
 }
 
 /// Why nothing was chosen.
@@ -138,26 +152,45 @@ impl Response {
 /// # Errors
 /// Why nothing could be chosen.
 pub fn choose(stage: &Stage, targets: &[Target], held: &[&str], stock: &Stock) -> Result<Vec<Choice>, Refusal> {
+    let ties = ties(stage);
     let mut plan = Plan::of(stage, targets, held)?;
     if (!plan.resistors.is_empty() && stock.resistors.is_empty()) || (!plan.capacitors.is_empty() && stock.capacitors.is_empty()) {
         return Err(Refusal::NoValues);
     }
     let mut proposals = plan.proposals(stock)?;
     proposals.sort_by(|a, b| a.0.total_cmp(&b.0));
+    // What misses the targets by far is no choice, whatever else it keeps.
+    let best = proposals.first().map_or(f64::INFINITY, |p| p.0);
+    if best > FAR {
+        return Err(Refusal::Impossible);
+    }
+    proposals.retain(|p| p.0 <= best + NEAR);
     proposals.truncate(JUDGED);
     let mut judge = Judge::default();
-    let mut choices: Vec<Choice> = proposals.iter().filter_map(|(_, values)| judged(&mut judge, stage, targets, values)).collect();
+    let mut choices: Vec<Choice> = proposals.iter().filter_map(|(_, values)| judged(&mut judge, stage, &ties, targets, values)).collect();
     choices.sort_by(|a, b| {
         let noise = |c: &Choice| c.noise.unwrap_or(f64::INFINITY);
-        a.lost.len().cmp(&b.lost.len()).then(a.error.total_cmp(&b.error)).then(noise(a).total_cmp(&noise(b)))
+        let lost = |c: &Choice| c.lost.len() + c.cautions.len();
+        lost(a).cmp(&lost(b)).then(a.error.total_cmp(&b.error)).then(noise(a).total_cmp(&noise(b)))
     });
     Ok(choices)
 }
 
-fn judged(judge: &mut Judge, stage: &Stage, targets: &[Target], values: &[(&'static str, f64)]) -> Option<Choice> {
+fn judged(
+    judge: &mut Judge,
+    stage: &Stage,
+    ties: &[(&'static str, &'static str)],
+    targets: &[Target],
+    values: &[(&'static str, f64)],
+) -> Option<Choice> {
     let mut variant = stage.clone();
+    let mut all: Values = Vec::new();
     for (name, value) in values {
-        set(&mut variant, name, *value);
+        set(&mut variant, ties, name, *value);
+        all.push((*name, *value));
+        all.extend(
+            ties.iter().filter(|(first, second)| first == name && stage.component(second).is_some()).map(|(_, second)| (*second, *value)),
+        );
     }
     let own = variant.limits.len();
     let report_of = |figure: Figure| Limit { query: Query::of(figure), bound: Bound::Report, thin: Thin::Fraction(0.0) };
@@ -183,12 +216,14 @@ fn judged(judge: &mut Judge, stage: &Stage, targets: &[Target], values: &[(&'sta
         .filter(|(_, r)| matches!(r.verdict, Verdict::Breaks | Verdict::Undetermined))
         .map(|(i, _)| i)
         .collect();
+    // A build that oscillates, or cannot work, is no choice even where no limit says so.
+    let cautions = report.cautions.iter().filter(|c| super::alternates::forbids(c)).cloned().collect();
     let noise = report.figures.iter().find(|r| r.query == Query::of(Figure::OutputNoise)).and_then(|r| r.nominal.value());
-    Some(Choice { values: values.to_vec(), reached, error, noise, lost: limits_at(stage, &lost) })
+    Some(Choice { values: all, reached, error, noise, lost: limits_at(stage, &lost), cautions })
 }
 
 /// Components that a kind wants equal: the second follows the first.
-const fn ties(kind: Kind) -> &'static [(&'static str, &'static str)] {
+const fn ties_of(kind: Kind) -> &'static [(&'static str, &'static str)] {
     match kind {
         Kind::Difference => &[("R1", "R3"), ("R2", "R4"), ("C2", "C4")],
         Kind::Instrumentation => &[("Rf1", "Rf2"), ("R1", "R3"), ("R2", "R4"), ("C2", "C4")],
@@ -204,9 +239,21 @@ const fn settled(kind: Kind) -> &'static [&'static str] {
     }
 }
 
-fn set(stage: &mut Stage, name: &str, value: f64) {
-    let follower = ties(stage.kind).iter().find(|(first, _)| *first == name).map(|(_, second)| *second);
-    for component in stage.components.iter_mut().filter(|c| c.name == name || Some(c.name) == follower) {
+/// The components of the stage that follow another one: a kind's pairs, and the input resistors of a summing stage that are equal.
+fn ties(stage: &Stage) -> Vec<(&'static str, &'static str)> {
+    let mut all = ties_of(stage.kind).to_vec();
+    if let (Kind::Summing, Some(first)) = (stage.kind, stage.component("Rin1")) {
+        let equal = |c: &&crate::stage::Component| {
+            c.name.starts_with("Rin") && c.name != "Rin1" && c.value.nominal.to_bits() == first.nominal.to_bits()
+        };
+        all.extend(stage.components.iter().filter(equal).map(|c| ("Rin1", c.name)));
+    }
+    all
+}
+
+fn set(stage: &mut Stage, ties: &[(&'static str, &'static str)], name: &str, value: f64) {
+    let follows = |c: &str| ties.iter().any(|(first, second)| *first == name && *second == c);
+    for component in stage.components.iter_mut().filter(|c| c.name == name || follows(c.name)) {
         component.value.nominal = value;
     }
 }
@@ -225,6 +272,7 @@ fn closed_form(stage: &Stage, figure: Figure) -> Option<f64> {
 
 struct Plan<'a> {
     stage: Stage,
+    ties: Vec<(&'static str, &'static str)>,
     targets: &'a [Target],
     resistors: Vec<&'static str>,
     capacitors: Vec<&'static str>,
@@ -232,8 +280,9 @@ struct Plan<'a> {
 
 impl<'a> Plan<'a> {
     fn of(stage: &Stage, targets: &'a [Target], held: &[&str]) -> Result<Self, Refusal> {
-        let mut plan = Plan { stage: stage.clone(), targets, resistors: Vec::new(), capacitors: Vec::new() };
-        let follows = |name: &str| ties(stage.kind).iter().any(|(_, second)| *second == name);
+        let ties = ties(stage);
+        let mut plan = Plan { stage: stage.clone(), ties: ties.clone(), targets, resistors: Vec::new(), capacitors: Vec::new() };
+        let follows = |name: &str| ties.iter().any(|(_, second)| *second == name);
         for target in targets {
             let before = closed_form(stage, target.figure).ok_or(Refusal::NoClosedForm(target.figure))?;
             let mut moved = false;
@@ -241,7 +290,7 @@ impl<'a> Plan<'a> {
                 stage.components.iter().filter(|c| !held.contains(&c.name) && !follows(c.name) && !settled(stage.kind).contains(&c.name))
             {
                 let mut variant = stage.clone();
-                set(&mut variant, component.name, component.value.nominal * 1.01);
+                set(&mut variant, &ties, component.name, component.value.nominal * 1.01);
                 let after = closed_form(&variant, target.figure).unwrap_or(f64::NAN);
                 if (after / before - 1.0).abs() > 1e-9 {
                     moved = true;
@@ -304,7 +353,7 @@ impl<'a> Plan<'a> {
                 found.sort_by(|a, b| a.0.total_cmp(&b.0));
                 let (_, pair) = found.into_iter().next().ok_or(Refusal::Impossible)?;
                 for (name, value) in &pair {
-                    set(&mut self.stage, name, *value);
+                    set(&mut self.stage, &self.ties, name, *value);
                     self.resistors.retain(|r| r != name);
                 }
                 fixed = pair;
@@ -322,7 +371,7 @@ impl<'a> Plan<'a> {
         let mut digits = vec![0_usize; self.capacitors.len()];
         for _ in 0..combinations {
             for (i, name) in self.capacitors.clone().into_iter().enumerate() {
-                set(&mut self.stage, name, stock.capacitors[digits[i]]);
+                set(&mut self.stage, &self.ties, name, stock.capacitors[digits[i]]);
             }
             if self.resistors.is_empty() || self.newton(&fixed, stock) {
                 let (error, mut values) = self.neighbours(stock);
@@ -350,10 +399,10 @@ impl<'a> Plan<'a> {
         let names = self.resistors.clone();
         let second: &[f64] = if names.len() == 2 { &stock.resistors } else { &[0.0] };
         for &first in &stock.resistors {
-            set(&mut self.stage, names[0], first);
+            set(&mut self.stage, &self.ties, names[0], first);
             for &other in second {
                 if let Some(name) = names.get(1) {
-                    set(&mut self.stage, name, other);
+                    set(&mut self.stage, &self.ties, name, other);
                 }
                 let error = self.error();
                 let worst = best.last().map_or(f64::INFINITY, |b| b.0);
@@ -382,7 +431,7 @@ impl<'a> Plan<'a> {
         }
         let residual = |plan: &mut Self, x: &[f64]| -> Option<Vec<f64>> {
             for (name, value) in names.iter().zip(x) {
-                set(&mut plan.stage, name, libm::exp(*value));
+                set(&mut plan.stage, &plan.ties, name, libm::exp(*value));
             }
             aims.iter().map(|t| closed_form(&plan.stage, t.figure).map(|v| libm::log(v / t.value.abs()))).collect()
         };
@@ -440,7 +489,7 @@ impl<'a> Plan<'a> {
         let mut best = (f64::INFINITY, Vec::new());
         for choice in 0..1_usize << names.len() {
             for (i, name) in names.iter().enumerate() {
-                set(&mut self.stage, name, beside[i][choice >> i & 1]);
+                set(&mut self.stage, &self.ties, name, beside[i][choice >> i & 1]);
             }
             let error = self.error();
             if error < best.0 || best.1.is_empty() {

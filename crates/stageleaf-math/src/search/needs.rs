@@ -7,7 +7,7 @@
 //! holds, which is judged again.
 //!
 //! # Does not apply
-//! A verdict that is lost and found again within half a decade is not seen. Figures move one at a time: two of them at their
+//! A verdict that is lost and found again within two decades and nowhere else is not seen, nor one within half a decade. Figures move one at a time: two of them at their
 //! edges together may break a limit.
 
 use alloc::vec::Vec;
@@ -87,34 +87,48 @@ pub struct Needs {
     pub lost_now: Vec<Limit>,
 }
 
+/// Limits that are lost, or cannot be judged, with the part as it is.
+#[must_use]
+pub fn lost_now(stage: &Stage) -> Vec<Limit> {
+    limits_at(stage, &Judge::default().lost(stage))
+}
+
+/// What the stage needs of one figure; `None` where no limit asks for it.
+#[must_use]
+pub fn part_need(stage: &Stage, figure: PartFigure) -> Option<PartNeed> {
+    let stated = stage.part.rating(figure).clone();
+    let room = room(&mut Judge::default(), stage, figure, &stated);
+    (room != Room::Any).then_some(PartNeed { figure, stated, room })
+}
+
+/// How loose one component may be, by its place in the stage's list.
+#[must_use]
+pub fn tolerance_need(stage: &Stage, index: usize) -> ToleranceNeed {
+    let component = &stage.components[index];
+    let stated = component.value.plus.max(component.value.minus);
+    ToleranceNeed { name: component.name, stated, loosest: loosest(&mut Judge::default(), stage, index, stated) }
+}
+
 /// Works the list out. `progress` is told how many figures and components are done, of how many, and stops the search by `false`.
 ///
 /// Returns `None` where it was stopped.
 #[must_use]
 pub fn needs(stage: &Stage, mut progress: impl FnMut(usize, usize) -> bool) -> Option<Needs> {
-    let mut judge = Judge::default();
-    let lost_now = limits_at(stage, &judge.lost(stage));
     let all = PartFigure::ALL.len() + stage.components.len();
-    let mut part = Vec::new();
+    let mut needs = Needs { part: Vec::new(), tolerances: Vec::new(), lost_now: lost_now(stage) };
     for (done, &figure) in PartFigure::ALL.iter().enumerate() {
         if !progress(done, all) {
             return None;
         }
-        let stated = stage.part.rating(figure).clone();
-        let room = room(&mut judge, stage, figure, &stated);
-        if room != Room::Any {
-            part.push(PartNeed { figure, stated, room });
-        }
+        needs.part.extend(part_need(stage, figure));
     }
-    let mut tolerances = Vec::new();
-    for (i, component) in stage.components.iter().enumerate() {
-        if !progress(PartFigure::ALL.len() + i, all) {
+    for index in 0..stage.components.len() {
+        if !progress(PartFigure::ALL.len() + index, all) {
             return None;
         }
-        let stated = component.value.plus.max(component.value.minus);
-        tolerances.push(ToleranceNeed { name: component.name, stated, loosest: loosest(&mut judge, stage, i, stated) });
+        needs.tolerances.push(tolerance_need(stage, index));
     }
-    progress(all, all).then_some(Needs { part, tolerances, lost_now })
+    progress(all, all).then_some(needs)
 }
 
 /// The stage with the figure at one guaranteed value, in every amplifier of that part.
@@ -175,6 +189,11 @@ fn room(judge: &mut Judge, stage: &Stage, figure: PartFigure, stated: &Rating) -
     let mut lost = |steps: f64| judge.lost(&with(stage, figure, scale.at(steps)));
     #[expect(clippy::cast_precision_loss, reason = "a few steps")]
     let grid: Vec<f64> = (0..=2 * HALF_DECADES).map(|i| i as f64 - HALF_DECADES as f64).collect();
+    // A figure that changes nothing from end to end is not asked for; looked at coarsely first, since most are not.
+    let coarse: Vec<Vec<usize>> = grid.iter().step_by(HALF_DECADES / 3).map(|steps| lost(*steps)).collect();
+    if coarse.iter().all(|there| *there == coarse[0]) {
+        return Room::Any;
+    }
     let mut seen: Vec<Vec<usize>> = grid.iter().map(|steps| lost(*steps)).collect();
     // What is lost wherever the figure lies is not the figure's to mend; it is told once for the stage.
     let elsewhere: Vec<usize> = seen[0].iter().copied().filter(|l| seen.iter().all(|there| there.contains(l))).collect();

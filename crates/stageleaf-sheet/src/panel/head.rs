@@ -41,11 +41,20 @@ pub fn head(sheet: &Sheet) -> Markup {
         .report
         .cautions
         .iter()
-        .filter(|c| !matches!(c, Caution::TakenAsIdeal(_) | Caution::TakenAsExact(_) | Caution::Oscillates | Caution::ThermalRunaway))
+        .filter(|c| {
+            !matches!(
+                c,
+                Caution::TakenAsIdeal(_)
+                    | Caution::TakenAsExact(_)
+                    | Caution::Oscillates
+                    | Caution::OscillatesWithin
+                    | Caution::ThermalRunaway
+            )
+        })
         .collect();
     html! {
         p class="title" role="heading" aria-level="2" { (stage.name) }
-        @for caution in sheet.report.cautions.iter().filter(|c| matches!(c, Caution::Oscillates | Caution::ThermalRunaway)) {
+        @for caution in sheet.report.cautions.iter().filter(|c| matches!(c, Caution::Oscillates | Caution::OscillatesWithin | Caution::ThermalRunaway)) {
             p class="alarm" { span aria-hidden="true" { "✕ " } (words::caution_text(caution)) }
         }
         p class="summary" {

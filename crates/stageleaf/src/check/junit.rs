@@ -25,6 +25,7 @@ impl Document {
     pub fn note(&mut self, note: &Examined) {
         let mut suite = TestSuite::new(note.file.as_str());
         for stage in &note.stages {
+            suite.add_test_case(case("analysed", stage, TestCaseStatus::success(), stage.block.line, &note.file));
             for (row, limit) in stage.limits_in_words() {
                 let message = sentence(row, limit, stage);
                 let status = match row.verdict {
