@@ -62,7 +62,7 @@ pub fn analyse(stage: &Stage) -> Result<Report, Error> {
 /// How much of the spread to work out.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
 pub enum Detail {
-    /// What limits judge, with its ranges; the other figures at nominal values; no curve, no budget.
+    /// What limits judge, with its ranges; the other figures at nominal values, waveforms' left out; no curve, no budget.
     Limits,
     /// The same with curves and budgets.
     Judged,
@@ -97,6 +97,8 @@ pub fn analyse_with(stage: &Stage, detail: Detail, plans: &Plans) -> Result<Repo
     spread.prepare(queries.iter().copied().filter(judged));
     let figures = queries
         .into_iter()
+        // While the hand moves, what is costly and judged by nothing waits.
+        .filter(|query| detail > Detail::Limits || !costly(query) || judged(query))
         .map(|query| {
             if judged(&query) {
                 figure_row(&mut spread, query)

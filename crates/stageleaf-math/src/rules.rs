@@ -122,6 +122,10 @@ impl<'s> Facts<'s> {
     }
 
     fn rule(&self, query: Query) -> Option<Working> {
+        // The rules are the whole stage's; one amplifier's or another input's has none.
+        if query.of.is_some() {
+            return None;
+        }
         let line = |formula, numbers: Vec<Number>, handbook, source, difference| {
             Some(Working {
                 query,

@@ -9,12 +9,13 @@ use std::{
 use clap::Args;
 use stageleaf_math::{
     NOT_MODELLED,
+    analysis::NO_SUCH_SCOPE,
     definition::not_modelled_for,
     dimension::Dimension,
     figure::{Argument, Figure, Group, Query, Scope},
     kind::Kind,
     limit::{Bound, Limit, Thin},
-    report::{Against, FigureRow, Report, Working},
+    report::{Against, FigureRow, Outcome, Report, Working},
 };
 use stageleaf_note::{
     Block, format as quantity_text, parse_query,
@@ -167,6 +168,11 @@ fn stage(block: &Block, team: &Team, figure: Figure, query: Option<Query>, text:
     }
     let report = stageleaf_math::analyse(&stage).map_err(|error| Fault::path(at.clone(), error.to_string()))?;
     let part_file = team.shelf.find(&block.stage.part.id).map_or("", |p| p.file.as_str());
+    let absent = Outcome::DoesNotApply(NO_SUCH_SCOPE);
+    if let Some(row) = report.figures.iter().find(|r| queries.contains(&r.query) && r.nominal == absent) {
+        let message = format!("`{}`: {NO_SUCH_SCOPE} “{}”", query_text(row.query), plain(&stage.name));
+        return Err(Fault::path(at, message));
+    }
     line(text, format_args!("\n{at}  {}  ({}, {})", plain(&stage.name), stage.kind.id(), plain(&stage.part.id)));
     for query in queries {
         if let Some(row) = report.figures.iter().find(|r| r.query == query) {

@@ -29,6 +29,9 @@ use crate::{
     stage::Signal,
 };
 
+/// Why a figure of an amplifier or from an input that is not there does not apply.
+pub const NO_SUCH_SCOPE: &str = "the stage has no such amplifier or input";
+
 /// Which results a figure belongs to (see [`touch`]).
 #[must_use]
 pub const fn touched_by(figure: Figure) -> u8 {
@@ -173,7 +176,7 @@ pub fn outcome(solution: &Solution<'_>, query: Query) -> Outcome {
 pub fn lacking(solution: &Solution<'_>, query: Query) -> Option<Outcome> {
     use Figure as F;
     if !query.exists_in(solution.model.stage) {
-        return Some(Outcome::DoesNotApply("the stage has no such amplifier or input"));
+        return Some(Outcome::DoesNotApply(NO_SUCH_SCOPE));
     }
     if solution.model.stage.kind.switches() {
         return switching::lacking(solution, query.figure);

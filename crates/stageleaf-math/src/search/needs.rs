@@ -3,11 +3,11 @@
 //!
 //! # Formula
 //! The figure is set to one value, guaranteed, and moved from the part's own by half decades (volts of input range: by doubling
-//! steps) until a limit is lost; then the edge is bracketed to a part in a thousand and rounded to three digits on the side that
+//! steps) until a limit is lost; then the edge is bracketed to a few thousandths and rounded to three digits on the side that
 //! holds, which is judged again.
 //!
 //! # Does not apply
-//! A verdict that is lost and found again within two decades and nowhere else is not seen, nor one within half a decade. Figures move one at a time: two of them at their
+//! A verdict that is lost and found again within one and a half decades and nowhere else is not seen, nor one within half a decade. Figures move one at a time: two of them at their
 //! edges together may break a limit.
 
 use alloc::vec::Vec;
@@ -21,11 +21,13 @@ use crate::{
 };
 
 /// How far a figure is moved: half decades either way.
-const HALF_DECADES: usize = 12;
+const HALF_DECADES: usize = 9;
 /// First step of a voltage, V.
 const FIRST: f64 = 0.01;
-/// Steps of a bisection: half a decade to better than a thousandth.
-const BISECTIONS: usize = 11;
+/// Steps of a bisection: half a decade to a few thousandths.
+const BISECTIONS: usize = 9;
+/// Steps of a bisection between a tolerance and the loosest one.
+const TOLERANCE_STEPS: usize = 14;
 /// Loosest tolerance looked at.
 const LOOSEST: f64 = 0.5;
 
@@ -190,11 +192,13 @@ fn room(judge: &mut Judge, stage: &Stage, figure: PartFigure, stated: &Rating) -
     #[expect(clippy::cast_precision_loss, reason = "a few steps")]
     let grid: Vec<f64> = (0..=2 * HALF_DECADES).map(|i| i as f64 - HALF_DECADES as f64).collect();
     // A figure that changes nothing from end to end is not asked for; looked at coarsely first, since most are not.
-    let coarse: Vec<Vec<usize>> = grid.iter().step_by(HALF_DECADES / 3).map(|steps| lost(*steps)).collect();
+    const COARSE: usize = 3;
+    let coarse: Vec<Vec<usize>> = grid.iter().step_by(COARSE).map(|steps| lost(*steps)).collect();
     if coarse.iter().all(|there| *there == coarse[0]) {
         return Room::Any;
     }
-    let mut seen: Vec<Vec<usize>> = grid.iter().map(|steps| lost(*steps)).collect();
+    let fine = grid.iter().enumerate().map(|(i, steps)| if i % COARSE == 0 { coarse[i / COARSE].clone() } else { lost(*steps) });
+    let mut seen: Vec<Vec<usize>> = fine.collect();
     // What is lost wherever the figure lies is not the figure's to mend; it is told once for the stage.
     let elsewhere: Vec<usize> = seen[0].iter().copied().filter(|l| seen.iter().all(|there| there.contains(l))).collect();
     seen.iter_mut().for_each(|there| there.retain(|l| !elsewhere.contains(l)));
@@ -290,7 +294,7 @@ fn loosest(judge: &mut Judge, stage: &Stage, index: usize, stated: f64) -> Optio
     } else {
         return None;
     };
-    for _ in 0..BISECTIONS {
+    for _ in 0..TOLERANCE_STEPS {
         let middle = 0.5 * (good + bad);
         if lost(middle).is_empty() { good = middle } else { bad = middle }
     }
