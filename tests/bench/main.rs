@@ -2,19 +2,13 @@
 //!
 //! Run by `scripts/bench`. Writes the sweep's results and times as JSON to the path given first; prints the sheet's times.
 
+mod kernels;
+
 use std::{collections::BTreeMap, hint::black_box, path::Path, time::Instant};
 
 use serde::{Deserialize, Serialize};
 use stageleaf_math::{
-    Detail, analyse, analyse_in,
-    analysis::sweep,
-    kind::Kind,
-    model::Model,
-    network::lu::Lu,
-    part::{Part, PartFigure, Rating},
-    report::NoiseOrigin,
-    solution::Solution,
-    stage::{Ambient, Board, Component, Isolation, Load, Source, Span, Stage, Toleranced},
+    Detail, analyse, analyse_in, analysis::sweep, model::Model, network::lu::Lu, report::NoiseOrigin, solution::Solution,
 };
 use stageleaf_note::{
     block::{Place, read_block},
@@ -47,6 +41,15 @@ struct Native {
     sweep_seconds: f64,
     /// The same sweep by the checking solver.
     lu: Checked,
+    /// What the WebAssembly module gives too, and how long it takes natively.
+    parity: Parity,
+}
+
+/// Sums by kernel, as bits, and seconds.
+#[derive(Serialize)]
+struct Parity {
+    polynomials: [String; 2],
+    lu: [String; 2],
 }
 
 #[derive(Serialize)]
@@ -82,7 +85,8 @@ fn median_seconds<T>(times: u16, mut action: impl FnMut() -> T) -> f64 {
 }
 
 fn sweep_circuit(circuit: &Circuit) -> Native {
-    let stage = stage(&circuit.values);
+    let value = |name: &str| *circuit.values.get(name).unwrap_or_else(|| panic!("circuit.json has no {name}"));
+    let stage = kernels::stage(&value);
     let grid = &circuit.sweep;
     let ratio = grid.to / grid.from;
     let step = |i: u16| grid.from * libm::pow(ratio, f64::from(i) / f64::from(grid.points - 1));
@@ -106,7 +110,13 @@ fn sweep_circuit(circuit: &Circuit) -> Native {
     let lu = Lu::compile(&solution, grid.from, grid.to).expect("the circuit has no short");
     let check = || lu.sweep(&Solution::new(&model, model.parameters.nominal(), None), &frequencies);
     let checked = check();
+    let timed = |sum: &dyn Fn() -> f64| [format!("{:016x}", sum().to_bits()), median_seconds(1001, sum).to_string()];
+    let parity = Parity {
+        polynomials: timed(&|| kernels::polynomials(black_box(&model), &frequencies)),
+        lu: timed(&|| kernels::checked(&lu, black_box(&model), &frequencies)),
+    };
     Native {
+        parity,
         lu: Checked {
             response: checked.response.iter().map(|h| [h.re, h.im]).collect(),
             total: checked.noise.total,
@@ -131,46 +141,6 @@ fn name(origin: NoiseOrigin) -> String {
         NoiseOrigin::CurrentNonInverting(_) => "CurrentNonInverting".into(),
         NoiseOrigin::CurrentInverting(_) => "CurrentInverting".into(),
         other => format!("{other:?}"),
-    }
-}
-
-fn stage(values: &BTreeMap<String, f64>) -> Stage {
-    let value = |name: &str| *values.get(name).unwrap_or_else(|| panic!("circuit.json has no {name}"));
-    let exact = |name: &str| Some(Toleranced::exact(value(name)));
-    let mut part = Part { name: "bench".into(), poles: Some(vec![value("f2")]), ..Part::default() };
-    for (figure, name) in [
-        (PartFigure::OpenLoop, "Ao"),
-        (PartFigure::Gbw, "GBW"),
-        (PartFigure::OutputResistance, "Ro"),
-        (PartFigure::DifferentialCapacitance, "Cdiff"),
-        (PartFigure::CommonModeCapacitance, "Ccm"),
-        (PartFigure::NoiseVoltage, "en"),
-        (PartFigure::NoiseVoltageCorner, "fcv"),
-        (PartFigure::NoiseCurrent, "in"),
-        (PartFigure::NoiseCurrentCorner, "fci"),
-    ] {
-        part.state(figure, Rating::typical(value(name)));
-    }
-    let components = ["Rf", "Rg", "Cf", "Riso", "Rsn", "Csn"];
-    Stage {
-        name: "bench".into(),
-        kind: Kind::NonInverting,
-        components: components.map(|name| Component { name, value: Toleranced::exact(value(name)) }).into(),
-        part,
-        isolation: Isolation::InsideLoop,
-        supply: None,
-        sources: vec![Some(Source::Resistive { resistance: Toleranced::exact(value("Rs")) })],
-        signals: vec![],
-        common_mode: None,
-        reference: None,
-        parts: vec![],
-        load: Load { resistance: exact("RL"), capacitance: exact("CL") },
-        converter: Default::default(),
-        board: Board { inverting_node: exact("Cn"), ..Board::default() },
-        ambient: Some(Ambient::of(Span::exact(value("T")))),
-        band: None,
-        limits: Vec::new(),
-        measured: Vec::new(),
     }
 }
 
