@@ -5,6 +5,7 @@ use alloc::vec::Vec;
 use crate::{
     analysis::{self, margins, outcome, spread::Spread, switching, thermal},
     figure::{Figure, Query},
+    kind::Kind,
     network::GROUND,
     part::PartFigure,
     report::{Caution, NoiseOrigin, Outcome},
@@ -46,6 +47,9 @@ pub(crate) fn cautions(spread: &mut Spread<'_>) -> Vec<Caution> {
                 break;
             }
         }
+    }
+    if stage.kind == Kind::Instrumentation && judged > 0 {
+        list.push(Caution::PairApart);
     }
     if stage.part.phase_reversal == Some(true) {
         list.push(Caution::PhaseReversal);

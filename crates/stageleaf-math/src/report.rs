@@ -424,6 +424,8 @@ pub enum Caution {
     TakenAsIdeal(PartFigure),
     /// A closed-loop pole lies in the right half plane.
     Oscillates,
+    /// Two amplifiers are coupled, and the margins take each alone: their loop in common mode is not among them.
+    PairApart,
     /// Not at nominal values, but in a build that the tolerances allow.
     OscillatesWithin,
     /// At nominal values the stated signal already exceeds what the amplifier can do.

@@ -192,6 +192,7 @@ pub fn caution_text(caution: &Caution) -> String {
             format!("The part states no {} ({}); the small-signal figures take it as ideal.", figure.meaning(), figure.id())
         }
         Caution::Oscillates => "The stage oscillates: a closed-loop pole lies in the right half plane.".into(),
+        Caution::PairApart => "The margins take one amplifier at a time, the others alive. The loop of the input pair in common mode, where each is a follower with its feedback resistor before its input capacitance, is not among them: work its margin out apart.".into(),
         Caution::OscillatesWithin => "The stage oscillates in a build that the tolerances allow.".into(),
         Caution::Exceeded { figure, margin } => match figure {
             Figure::ClipMargin => {

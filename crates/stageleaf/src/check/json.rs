@@ -139,6 +139,7 @@ impl Warned {
             Caution::PhaseReversal => "phase_reversal",
             Caution::TakenAsIdeal(_) => "taken_as_ideal",
             Caution::Oscillates => "oscillates",
+            Caution::PairApart => "pair_apart",
             Caution::OscillatesWithin => "oscillates_within",
             Caution::Exceeded { .. } => "exceeded",
             Caution::OffsetBeyondSupply { .. } => "offset_beyond_supply",
